@@ -1,0 +1,62 @@
+# Termwise. `make deps demo` sets up and runs the main job; `make deps check` sets up and runs every test.
+VERSION  := 0.1.0
+PREFIX   ?= /usr/local
+BUILD    ?= build
+CC       ?= gcc
+CFLAGS   ?= -O2 -g
+WARN     := -std=c11 -Wall -Wextra -Wmissing-prototypes -Wredundant-decls -Wshadow -Wno-missing-field-initializers
+CPPFLAGS += -I. -D_GNU_SOURCE -DTW_VERSION='"$(VERSION)"' $(shell sh tools/flags.sh --cflags)
+LIBS     := $(shell sh tools/flags.sh --libs)
+ifdef WERROR
+WARN += -Werror
+endif
+ifdef SANITIZE
+BUILD  := build/sanitize
+CFLAGS := -O1 -g -fno-omit-frame-pointer -fsanitize=address,undefined -fno-sanitize-recover=undefined
+endif
+
+ENGINE  := $(wildcard engine/*.c engine/*/*.c)
+LANG_C  := $(filter-out lang/main.c,$(wildcard lang/*.c))
+LANG_RE := $(wildcard lang/*.re)
+UNIT    := $(wildcard tests/engine/*/test_*.c tests/lang/test_*.c)
+
+obj      = $(patsubst %.c,$(BUILD)/%.o,$(1))
+ENGINE_O := $(call obj,$(ENGINE))
+LANG_O   := $(call obj,$(LANG_C)) $(patsubst %.re,$(BUILD)/%.o,$(LANG_RE))
+UNIT_X   := $(patsubst %.c,$(BUILD)/%,$(UNIT))
+
+all: $(BUILD)/termwise $(BUILD)/libtermwise.a
+
+$(BUILD)/libtermwise.a: $(ENGINE_O)
+	@rm -f $@
+	ar rcs $@ $^
+
+$(BUILD)/termwise: $(BUILD)/lang/main.o $(LANG_O) $(BUILD)/libtermwise.a
+	$(CC) $(CFLAGS) $(LDFLAGS) -o $@ $^ -lreadline $(LIBS)
+
+$(BUILD)/%.o: %.c
+	@mkdir -p $(@D)
+	$(CC) $(CFLAGS) $(WARN) $(CPPFLAGS) -MMD -MP -c -o $@ $<
+
+$(BUILD)/%.c: %.re
+	@mkdir -p $(@D)
+	re2c -W --no-generation-date -o $@ $<
+
+$(BUILD)/lang/%.o: $(BUILD)/lang/%.c
+	$(CC) $(CFLAGS) $(WARN) $(CPPFLAGS) -MMD -MP -c -o $@ $<
+
+$(BUILD)/tests/%: tests/%.c $(LANG_O) $(BUILD)/libtermwise.a
+	@mkdir -p $(@D)
+	$(CC) $(CFLAGS) $(WARN) $(CPPFLAGS) -MMD -MP -o $@ $< $(LANG_O) $(BUILD)/libtermwise.a -lcmocka $(LIBS)
+
+unit: $(UNIT_X)
+
+deps:
+	sh tools/deps.sh
+
+clean:
+	rm -rf build
+
+.PHONY: all unit deps clean
+.SECONDARY:
+-include $(shell find $(BUILD) -name '*.d' 2>/dev/null)

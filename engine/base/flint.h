@@ -1,0 +1,44 @@
+/* The one place that knows which FLINT this is. Debian 12 has FLINT 2.9 with Arb 2.23, ANTIC and Calcium 0.4 as
+ * separate libraries; from FLINT 3 on they are one. Every other file includes this header and no FLINT header.
+ *
+ * FLINT reports trouble it cannot return (out of memory, a division by zero that nobody checked) through a process-wide
+ * abort hook. flint.c installs one that jumps to the edge that engine_protect() has set up on this thread. The host's GMP
+ * allocators are never replaced. */
+#ifndef TW_BASE_FLINT_H
+#define TW_BASE_FLINT_H
+
+#include <flint/flint.h>
+#include <flint/fmpz.h>
+#include <flint/fmpz_poly.h>
+#include <flint/fmpz_mpoly.h>
+#include <flint/fmpq.h>
+#include <flint/fmpq_poly.h>
+#include <flint/fmpq_vec.h>
+
+#if __FLINT_RELEASE >= 30000
+#include <flint/arb.h>
+#include <flint/arb_poly.h>
+#include <flint/arb_hypgeom.h>
+#include <flint/acb.h>
+#include <flint/acb_poly.h>
+#include <flint/acb_calc.h>
+#include <flint/acb_hypgeom.h>
+#include <flint/acb_dirichlet.h>
+#include <flint/fmpz_mpoly_q.h>
+#include <flint/ca.h>
+#include <flint/qqbar.h>
+#else
+#include <arb.h>
+#include <arb_poly.h>
+#include <arb_hypgeom.h>
+#include <acb.h>
+#include <acb_poly.h>
+#include <acb_calc.h>
+#include <acb_hypgeom.h>
+#include <acb_dirichlet.h>
+#include <calcium/fmpz_mpoly_q.h>
+#include <calcium/ca.h>
+#include <calcium/qqbar.h>
+#endif
+
+#endif
