@@ -31,7 +31,11 @@ $(BUILD)/libtermwise.a: $(ENGINE_O)
 	@rm -f $@
 	ar rcs $@ $^
 
-$(BUILD)/termwise: $(BUILD)/lang/main.o $(LANG_O) $(BUILD)/libtermwise.a
+$(BUILD)/liblang.a: $(LANG_O)
+	@rm -f $@
+	ar rcs $@ $^
+
+$(BUILD)/termwise: $(BUILD)/lang/main.o $(BUILD)/liblang.a $(BUILD)/libtermwise.a
 	$(CC) $(CFLAGS) $(LDFLAGS) -o $@ $^ -lreadline $(LIBS)
 
 $(BUILD)/%.o: %.c
@@ -45,9 +49,9 @@ $(BUILD)/%.c: %.re
 $(BUILD)/lang/%.o: $(BUILD)/lang/%.c
 	$(CC) $(CFLAGS) $(WARN) $(CPPFLAGS) -MMD -MP -c -o $@ $<
 
-$(BUILD)/tests/%: tests/%.c $(LANG_O) $(BUILD)/libtermwise.a
+$(BUILD)/tests/%: tests/%.c $(BUILD)/liblang.a $(BUILD)/libtermwise.a
 	@mkdir -p $(@D)
-	$(CC) $(CFLAGS) $(WARN) $(CPPFLAGS) -MMD -MP -o $@ $< $(LANG_O) $(BUILD)/libtermwise.a -lcmocka $(LIBS)
+	$(CC) $(CFLAGS) $(WARN) $(CPPFLAGS) -MMD -MP -o $@ $< $(BUILD)/liblang.a $(BUILD)/libtermwise.a -lcmocka -lreadline $(LIBS)
 
 unit: $(UNIT_X)
 

@@ -12,7 +12,6 @@
 #include <stdio.h>
 
 #include "engine/base/arena.h"
-
 #include "engine/termwise.h"
 
 typedef enum tw_status { TW_OK = 0, TW_ERROR = 1 } tw_status;
