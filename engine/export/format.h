@@ -9,7 +9,7 @@ typedef struct format {
     const char *name;   /* the word after `as`: json, csv, text */
     const char *summary;
     /* name: what the user calls the expansion; r: its remainder (never NULL; label may be unknown). */
-    tw_status (*write)(tw_engine *e, text *out, const char *name, expansion *a, const remainder *r);
+    tw_status (*write)(tw_engine *e, text *out, const char *name, expansion *a, const remainder_bound *r);
 } format;
 
 const format *const *format_table(size_t *count);
@@ -17,7 +17,8 @@ const format *format_find(const char *name);
 bool format_is_planned(const char *name); /* latex, c */
 
 /* Pieces shared by json.c and lang's --results json: RFC 8259 strings, balls as decimals whose ball holds the engine's. */
-void json_string(text *out, const char *words);
+void json_string(text *out, const char *words);                 /* null for NULL */
+void json_expr(tw_engine *e, text *out, expr *a);               /* its text as a string; null for NULL */
 void json_ball(text *out, const arb_t x);                       /* {"mid": "...", "radius": "..."} */
 void json_conditions(text *out, const condition_list *c);       /* [{"text": ..., "label": ...}] */
 void json_number(text *out, const char *of, const env *at, const number *n, tw_engine *e); /* export.md "A number" */

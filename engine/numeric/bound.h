@@ -10,7 +10,7 @@ typedef enum label { LABEL_EXACT, LABEL_PROVED, LABEL_CONDITIONAL, LABEL_ESTIMAT
 const char *label_word(label l);
 
 /* |integral - kept terms| <= bound for all s >= from (for small h: 0 < h <= 1/from). */
-typedef struct remainder {
+typedef struct remainder_bound {
     label label;
     const char *manner;      /* "enclosing" or NULL */
     slong terms;             /* kept, of the dominant contributions in order of size */
@@ -23,15 +23,15 @@ typedef struct remainder {
     size_t panel_count;
     char **panel_t, **panel_height; /* decimals, rounded so that the bound holds */
     condition_list conditions;
-} remainder;
+} remainder_bound;
 
-void remainder_init(remainder *r);
-void remainder_clear(remainder *r);
+void remainder_bound_init(remainder_bound *r);
+void remainder_bound_clear(remainder_bound *r);
 
 /* The bound with `terms` kept (negative: as many as `evaluate` keeps at s0), for all s >= s0. s0 NULL: the engine chooses a
  * s0 from which on the bound is useful, as low as it can prove. Parameters must have values in `at` (may be empty); when one is
  * left free the label is UNKNOWN and reason names it, unless the enclosing theorem holds for all of its values. */
-tw_status remainder_for_all(tw_engine *e, remainder *out, expansion *a, const env *at, slong terms, expr *s0);
+tw_status remainder_for_all(tw_engine *e, remainder_bound *out, expansion *a, const env *at, slong terms, expr *s0);
 
 /* The bound at one value of the large parameter, as a ball with a tight upper end: encl = 1 and [low, high] relative to the first
  * omitted term is folded into `error`, an interval that holds integral - partial sum (real case). */

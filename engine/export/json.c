@@ -1,0 +1,165 @@
+/* An expansion as one JSON object (RFC 8259), in the form that the project's page on exports fixes. Exact things are text in
+ * the language's own syntax, so no reader rounds them. */
+#include <stdlib.h>
+
+#include "engine/export/format.h"
+
+static void add_key(text *out, const char *key)
+{
+    text_addf(out, ",\n \"%s\": ", key);
+}
+
+/* Symbols other than the large parameter, each with the facts that mention it. */
+static void add_parameters(tw_engine *e, text *out, const expansion *a)
+{
+    expr **symbols;
+    size_t count = expr_symbols(a->integral, &symbols);
+    bool first = true;
+    text_add_char(out, '[');
+    for (size_t k = 0; k < count; k++) {
+        if (symbols[k] == a->large) continue;
+        text_add(out, first ? "{\"name\": " : ", {\"name\": ");
+        first = false;
+        json_expr(e, out, symbols[k]);
+        text_add(out, ", \"facts\": [");
+        bool first_fact = true;
+        for (size_t f = 0; f < a->fact_count; f++) {
+            if (!expr_has(a->facts[f], symbols[k])) continue;
+            if (!first_fact) text_add(out, ", ");
+            first_fact = false;
+            json_expr(e, out, a->facts[f]);
+        }
+        text_add(out, "]}");
+    }
+    text_add_char(out, ']');
+    free(symbols);
+}
+
+static void add_lane(tw_engine *e, text *out, const lane *l)
+{
+    text_add(out, "\n     {\"constant\": ");
+    json_expr(e, out, l->constant);
+    text_addf(out, ", \"log_power\": %ld, \"first_exponent\": ", (long)l->log_power);
+    json_expr(e, out, l->first_exponent);
+    text_add(out, ", \"step\": ");
+    json_expr(e, out, expr_fmpq(e, l->step));
+    text_add(out, ",\n      \"coefficients\": [");
+    for (slong n = 0; n < l->c.count; n++) {
+        if (n) text_add(out, ", ");
+        json_expr(e, out, coefficient_expr(e, &l->c, n));
+    }
+    text_add(out, "],\n      \"recurrence\": null}");
+}
+
+static void add_contribution(tw_engine *e, text *out, const contribution *c)
+{
+    text place;
+    text_init(&place);
+    if (c->variable) expr_print(e, &place, c->variable);
+    text_add(&place, " = ");
+    expr_print(e, &place, c->place);
+    text_add(out, "\n  {\"point\": ");
+    json_string(out, place.bytes);
+    text_clear(&place);
+    text_addf(out, ", \"kind\": \"%s\", \"method\": \"%s\", \"dominance\": \"%s\", \"prefactor\": ",
+              point_kind_word(c->kind), c->method, c->dominant ? "dominant" : "subdominant");
+    json_expr(e, out, c->prefactor);
+    text_add(out, ",\n   \"lanes\": [");
+    for (size_t k = 0; k < c->lane_count; k++) {
+        if (k) text_add_char(out, ',');
+        add_lane(e, out, &c->lanes[k]);
+    }
+    text_addf(out, "],\n   \"domain\": \"%s\", \"generators\": []}", domain_word(c->domain));
+}
+
+static void add_remainder(tw_engine *e, text *out, const expansion *a, const remainder_bound *r)
+{
+    text_addf(out, "{\"label\": \"%s\", \"manner\": ", label_word(r->label));
+    json_string(out, r->manner);
+    text_addf(out, ", \"terms\": %ld, \"bound\": ", (long)r->terms);
+    json_expr(e, out, r->bound);
+    text_add(out, ", \"from\": ");
+    json_expr(e, out, r->from);
+    text_add(out, ", \"source\": ");
+    json_string(out, r->source);
+    if (r->reason) {
+        text_add(out, ", \"reason\": ");
+        json_string(out, r->reason);
+    }
+    text_add(out, ",\n  \"panels\": ");
+    if (r->panel_count == 0) {
+        text_add(out, "null");
+    } else {
+        text_add(out, "{\"power\": ");
+        json_expr(e, out, r->panel_power);
+        text_add(out, ", \"scale\": ");
+        json_expr(e, out, a->contributions[0].local.scale);
+        text_add(out, ", \"steps\": [");
+        for (size_t k = 0; k < r->panel_count; k++) {
+            text_add(out, k ? ", [" : "[");
+            json_string(out, r->panel_t[k]);
+            text_add(out, ", ");
+            json_string(out, r->panel_height[k]);
+            text_add_char(out, ']');
+        }
+        text_add(out, "]}");
+    }
+    text_add_char(out, '}');
+}
+
+static void add_steps(tw_engine *e, text *out, const derivation *d)
+{
+    text_add_char(out, '[');
+    for (size_t k = 0; k < d->count; k++) {
+        const step *s = &d->steps[k];
+        text_add(out, k ? ",\n  {\"rule\": " : "\n  {\"rule\": ");
+        json_string(out, s->rule);
+        text_add(out, ", \"source\": ");
+        json_string(out, s->source);
+        text_add(out, ", \"form\": ");
+        if (s->after) json_expr(e, out, s->after);
+        else json_string(out, s->form);
+        if (s->detail) {
+            text_add(out, ", \"detail\": ");
+            json_string(out, s->detail);
+        }
+        if (s->remainder) {
+            text_add(out, ", \"remainder\": ");
+            json_expr(e, out, s->remainder);
+        }
+        text_add(out, ", \"conditions\": ");
+        json_conditions(out, &s->conditions);
+        text_add_char(out, '}');
+    }
+    text_add_char(out, ']');
+}
+
+static tw_status write_json(tw_engine *e, text *out, const char *name, expansion *a, const remainder_bound *r)
+{
+    text_add(out, "{\"format\": \"termwise expansion\", \"version\": 1,\n \"name\": ");
+    json_string(out, name);
+    add_key(out, "integral");
+    json_expr(e, out, a->integral);
+    add_key(out, a->small ? "small" : "large");
+    json_expr(e, out, a->large);
+    add_key(out, "parameters");
+    add_parameters(e, out, a);
+    add_key(out, "contributions");
+    text_add_char(out, '[');
+    for (size_t k = 0; k < a->contribution_count; k++) {
+        if (!budget_ok(e)) return TW_ERROR;
+        if (k) text_add_char(out, ',');
+        add_contribution(e, out, &a->contributions[k]);
+    }
+    text_add_char(out, ']');
+    add_key(out, "remainder");
+    add_remainder(e, out, a, r);
+    add_key(out, "conditions");
+    json_conditions(out, &a->conditions);
+    add_key(out, "steps");
+    add_steps(e, out, &a->derivation);
+    text_add(out, "}\n");
+    return TW_OK;
+}
+
+const format format_json = {"json", "one JSON object with everything: coefficients, remainder, conditions, steps", write_json};
