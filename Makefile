@@ -5,7 +5,7 @@ BUILD    ?= build
 CC       ?= gcc
 CFLAGS   ?= -O2 -g
 WARN     := -std=c11 -Wall -Wextra -Wmissing-prototypes -Wredundant-decls -Wshadow -Wno-missing-field-initializers
-CPPFLAGS += -I. -D_GNU_SOURCE -DTW_VERSION='"$(VERSION)"' $(shell sh tools/flags.sh --cflags)
+CPPFLAGS += -I. -D_GNU_SOURCE -DTW_VERSION='"$(VERSION)"' -DTW_DATADIR='"$(PREFIX)/share/termwise"' $(shell sh tools/flags.sh --cflags)
 LIBS     := $(shell sh tools/flags.sh --libs)
 ifdef WERROR
 WARN += -Werror
@@ -55,12 +55,30 @@ $(BUILD)/tests/%: tests/%.c $(BUILD)/liblang.a $(BUILD)/libtermwise.a
 
 unit: $(UNIT_X)
 
+BENCH_X := $(patsubst %.c,$(BUILD)/%,$(wildcard tests/bench/*.c))
+FUZZ_X  := $(patsubst %.c,$(BUILD)/%,$(wildcard tests/fuzz/*.c))
+
 deps:
 	sh tools/deps.sh
+
+check: all unit
+	sh tests/run_all.sh $(BUILD)
+
+demo: all
+	$(BUILD)/termwise examples/dielectric_tail.tw
+
+bench: all $(BENCH_X)
+	sh tests/bench/run.sh $(BUILD)
+
+fuzz:
+	sh tests/fuzz/run.sh
+
+install: all
+	sh tools/install.sh $(BUILD) "$(DESTDIR)" "$(PREFIX)" $(VERSION)
 
 clean:
 	rm -rf build
 
-.PHONY: all unit deps clean
+.PHONY: all unit deps check demo bench fuzz install clean
 .SECONDARY:
 -include $(shell find $(BUILD) -name '*.d' 2>/dev/null)
