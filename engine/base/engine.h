@@ -52,6 +52,7 @@ struct tw_engine {
     arena arena;                         /* what lives as long as the engine: expressions, names */
     tw_error error;
     volatile sig_atomic_t interrupted;   /* set by a signal handler of the host; budget_ok() notices it */
+    double seconds;                      /* allowance of each call through the public header; 0: none */
     double deadline;                     /* seconds of CLOCK_MONOTONIC; 0: none */
     size_t memory_limit;                 /* bytes of resident memory of the process; 0: none */
     unsigned budget_ticks;

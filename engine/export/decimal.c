@@ -93,10 +93,11 @@ static slong accurate_digits(const arb_t x)
     return (slong)((double)bits * 0.30103) + 3;
 }
 
-void json_ball(text *out, const arb_t x)
+void decimal_ball(text *mid_text, text *radius_text, const arb_t x)
 {
     if (!arb_is_finite(x)) {
-        text_add(out, "{\"mid\": null, \"radius\": null}");
+        text_add(mid_text, "0");
+        text_add(radius_text, "inf");
         return;
     }
     fmpz_t mid, rad, exponent;
@@ -104,14 +105,22 @@ void json_ball(text *out, const arb_t x)
     fmpz_init(rad);
     fmpz_init(exponent);
     outward_decimal(mid, rad, exponent, x, accurate_digits(x), 3);
-    text_add(out, "{\"mid\": \"");
-    add_decimal(out, mid, exponent);
-    text_add(out, "\", \"radius\": \"");
-    add_decimal(out, rad, exponent);
-    text_add(out, "\"}");
+    add_decimal(mid_text, mid, exponent);
+    add_decimal(radius_text, rad, exponent);
     fmpz_clear(mid);
     fmpz_clear(rad);
     fmpz_clear(exponent);
+}
+
+void json_ball(text *out, const arb_t x)
+{
+    text mid, radius;
+    text_init(&mid);
+    text_init(&radius);
+    decimal_ball(&mid, &radius, x);
+    text_addf(out, "{\"mid\": \"%s\", \"radius\": \"%s\"}", mid.bytes, radius.bytes);
+    text_clear(&mid);
+    text_clear(&radius);
 }
 
 void print_ball(text *out, const arb_t x, slong digits)

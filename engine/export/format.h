@@ -19,6 +19,8 @@ bool format_is_planned(const char *name); /* latex, c */
 /* Pieces shared by json.c and lang's --results json: RFC 8259 strings, balls as decimals whose ball holds the engine's. */
 void json_string(text *out, const char *words);                 /* null for NULL */
 void json_expr(tw_engine *e, text *out, expr *a);               /* its text as a string; null for NULL */
+/* The ball as two decimals, rounded so that the ball they name holds x; "inf" radius when x is unbounded. */
+void decimal_ball(text *mid, text *radius, const arb_t x);
 void json_ball(text *out, const arb_t x);                       /* {"mid": "...", "radius": "..."} */
 void json_conditions(text *out, const condition_list *c);       /* [{"text": ..., "label": ...}] */
 void json_number(text *out, const char *of, const env *at, const number *n, tw_engine *e); /* export.md "A number" */
