@@ -33,6 +33,9 @@ void source_init(source *s, const char *name, const char *bytes, size_t length);
 /* Where the byte at `offset` (<= length) stands. Asking in rising order costs one walk over the text in all. */
 source_place source_find(source *s, uint32_t offset);
 
+/* How many bytes come before the first that is a NUL or no UTF-8; `length` when all are sound. */
+size_t source_check_bytes(const char *bytes, size_t length);
+
 /* Adds a complaint as language.md shows it, with a line end after each of its lines:
  *     fade.tw:3:23: error: `from` needs a lower limit here
  *        3 | let F = integral from to inf of exp(-s*x) dx

@@ -15,7 +15,8 @@
 #include "engine/base/text.h"
 #include "lang/source.h"
 
-/* How deep brackets, operators and integrals may nest: the limit of every recursive walk over a tree. */
+/* How deep brackets, signs, exponents and integrals may nest in a text. Between two levels lie at most five nodes of a tree,
+ * so a recursive walk over a parsed tree is at most five times as deep. */
 enum { SYNTAX_DEPTH_LIMIT = 1000 };
 
 /* A name where it stands. */
@@ -70,8 +71,7 @@ typedef struct syntax_binding {
 } syntax_binding;
 
 struct syntax {
-    uint8_t kind;    /* syntax_kind */
-    uint16_t height; /* 1 for a leaf; at most SYNTAX_DEPTH_LIMIT */
+    uint8_t kind; /* syntax_kind */
     span at;
     union {
         const char *number; /* as typed: digits, perhaps a point and an exponent */
@@ -146,8 +146,7 @@ typedef enum pass_kind { PASS_NAME, PASS_REPEAT, PASS_EVERYWHERE, PASS_ONCE, PAS
 
 typedef struct syntax_pass syntax_pass;
 struct syntax_pass {
-    uint8_t kind;    /* pass_kind */
-    uint16_t height;
+    uint8_t kind;        /* pass_kind */
     span at;
     const char *name;    /* PASS_NAME */
     size_t count;        /* PASS_THEN, PASS_OR: two or more; PASS_REPEAT, EVERYWHERE, ONCE: one */
@@ -371,7 +370,8 @@ typedef struct syntax_text {
     statement **statements;  /* those without error, in order */
     size_t error_count, error_room;
     syntax_error *errors;    /* by place */
-    bool wants_more;         /* the text ends where its last statement can't end: the prompt asks for another line */
+    bool wants_more;         /* the text ends where its last statement can't end, or with a rule that may go on */
+    bool rule_is_open;       /* wants_more because of such a rule only: an empty line ends it */
 } syntax_text;
 
 void syntax_text_init(syntax_text *t);
