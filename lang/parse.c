@@ -3,7 +3,7 @@
 #include "lang/parse.h"
 
 #include <stdarg.h>
-#include <stdlib.h>
+#include <stdio.h>
 #include <string.h>
 
 #include "engine/base/engine.h"
@@ -20,8 +20,12 @@ void *parser_alloc(parser *p, size_t bytes)
 void parser_push(parser *p, void *item, char sign)
 {
     if (p->pending_count == p->pending_room) {
-        p->pending_room = p->pending_room ? 2 * p->pending_room : 64;
-        p->pending = base_resize(p->pending, p->pending_room * sizeof *p->pending);
+        size_t room = p->pending_room ? 2 * p->pending_room : 64;
+        pending *more = arena_alloc(&p->out->arena, room * sizeof *more);
+        if (p->pending_count > 0)
+            memcpy(more, p->pending, p->pending_count * sizeof *more);
+        p->pending = more;
+        p->pending_room = room;
     }
     p->pending[p->pending_count++] = (pending){item, sign};
 }
@@ -65,8 +69,7 @@ static uint32_t name_hash(const char *bytes, size_t length)
 static void names_grow(parser *p)
 {
     size_t room = p->name_room ? 2 * p->name_room : 256;
-    name_entry *names = base_alloc(room * sizeof *names);
-    memset(names, 0, room * sizeof *names);
+    name_entry *names = parser_alloc(p, room * sizeof *names);
     for (size_t k = 0; k < p->name_room; k++)
         if (p->names[k].text != NULL) {
             size_t at = p->names[k].hash & (room - 1);
@@ -74,7 +77,6 @@ static void names_grow(parser *p)
                 at = (at + 1) & (room - 1);
             names[at] = p->names[k];
         }
-    free(p->names);
     p->names = names;
     p->name_room = room;
 }
@@ -215,14 +217,13 @@ static void errors_add(parser *p, span at, const char *words)
         out->error_room = out->error_room ? 2 * out->error_room : 8;
         out->errors = base_resize(out->errors, out->error_room * sizeof *out->errors);
     }
-    text t;
-    text_init(&t);
-    text_add(&t, words);
-    if (out->error_count == SYNTAX_ERROR_LIMIT - 1)
-        text_add(&t, " (errors after this one are not shown)");
+    const char *more = out->error_count == SYNTAX_ERROR_LIMIT - 1 ? " (errors after this one are not shown)" : "";
+    size_t length = strlen(words), extra = strlen(more);
+    char *copy = parser_alloc(p, length + extra + 1);
+    memcpy(copy, words, length);
+    memcpy(copy + length, more, extra);
     out->errors[out->error_count].at = at;
-    out->errors[out->error_count++].words = arena_copy(&out->arena, t.bytes, t.length);
-    text_clear(&t);
+    out->errors[out->error_count++].words = copy;
 }
 
 static bool fail_with(parser *p, span at, const char *words)
@@ -256,12 +257,9 @@ static span span_here(const parser *p)
 
 static bool fail_bad_token(parser *p)
 {
-    text t;
-    text_init(&t);
-    token_complain(p->source, p->token, &t);
-    fail_with(p, p->token.at, t.bytes);
-    text_clear(&t);
-    return false;
+    text_cut(&p->out->words, 0);
+    token_complain(p->source, p->token, &p->out->words);
+    return fail_with(p, p->token.at, p->out->words.bytes);
 }
 
 bool parser_fail_here(parser *p, const char *format, ...)
@@ -312,24 +310,22 @@ bool parser_expected_one_of(parser *p, const char *what, const char *const *word
         return false;
     if (token_is_bad(p->token.kind))
         return fail_bad_token(p);
-    text t;
-    text_init(&t);
-    text_addf(&t, "expected %s", what);
-    add_found(p, &t);
+    text *t = &p->out->words;
+    text_cut(t, 0);
+    text_addf(t, "expected %s", what);
+    add_found(p, t);
     suggestion meant;
     suggestion_init(&meant, p->token.kind == TOKEN_NAME ? p->name->text : "");
     for (; words && *words; words++)
         suggestion_offer(&meant, *words);
     bool glued = p->last.at.to == p->token.at.from && p->last.kind != TOKEN_NAME;
     if (p->token.kind == TOKEN_LESS || p->token.kind == TOKEN_GREATER || p->token.kind == TOKEN_NOT_EQUAL)
-        text_add(&t, "; a comparison has no place here");
+        text_add(t, "; a comparison has no place here");
     else if (meant.best != NULL && !glued)
-        text_addf(&t, "; did you mean `%s`?", meant.best);
+        text_addf(t, "; did you mean `%s`?", meant.best);
     else if (misses_operator(p))
-        text_add(&t, "; multiplication is always written, with `*`");
-    fail_with(p, span_here(p), t.bytes);
-    text_clear(&t);
-    return false;
+        text_add(t, "; multiplication is always written, with `*`");
+    return fail_with(p, span_here(p), t->bytes);
 }
 
 /* ---- small things that many statements need ---- */
@@ -473,12 +469,6 @@ static void parser_init(parser *p, source *s, syntax_text *out)
     p->last.kind = TOKEN_LINE_END;
 }
 
-static void parser_clear(parser *p)
-{
-    free(p->names);
-    free(p->pending);
-}
-
 void parse_text(source *s, syntax_text *out)
 {
     parser p;
@@ -496,7 +486,6 @@ void parse_text(source *s, syntax_text *out)
     bool sound = out->error_count == 0 || (out->error_count == 1 && p.failed);
     out->wants_more = sound && (p.at_end || p.rule_may_go_on);
     out->rule_is_open = sound && p.rule_may_go_on && !p.at_end;
-    parser_clear(&p);
 }
 
 syntax *parse_expression_text(source *s, syntax_text *out)
@@ -510,7 +499,6 @@ syntax *parse_expression_text(source *s, syntax_text *out)
         parser_expected(&p, "the end of the expression");
         read = NULL;
     }
-    parser_clear(&p);
     return read;
 }
 

@@ -41,7 +41,7 @@ typedef struct parser {
     bool indexed;            /* c[n] is read */
     const char *need;        /* what a missing operand is called: "`from` needs a lower limit here" */
     const char *closer;      /* the word that ends the operand, "" when unknown */
-    name_entry *names;       /* hash table, open addressing */
+    name_entry *names;       /* hash table, open addressing; in the arena, like the pending items */
     size_t name_count, name_room;
     pending *pending;
     size_t pending_count, pending_room;

@@ -8,12 +8,14 @@ void syntax_text_init(syntax_text *t)
 {
     memset(t, 0, sizeof *t);
     arena_init(&t->arena);
+    text_init(&t->words);
 }
 
 void syntax_text_clear(syntax_text *t)
 {
     free(t->statements);
     free(t->errors);
+    text_clear(&t->words);
     arena_clear(&t->arena);
     memset(t, 0, sizeof *t);
 }

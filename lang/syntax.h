@@ -371,6 +371,7 @@ typedef struct syntax_text {
     size_t error_count, error_room;
     syntax_error *errors;    /* by place */
     bool wants_more;         /* the text ends where its last statement can't end, or with a rule that may go on */
+    text words;              /* private: where messages are put together */
     bool rule_is_open;       /* wants_more because of such a rule only: an empty line ends it */
 } syntax_text;
 
