@@ -50,12 +50,14 @@ struct facts;      /* engine/expr/facts.h */
 
 struct tw_engine {
     arena arena;                         /* what lives as long as the engine: expressions, names */
+    arena scratch;                       /* a stack of arrays that live as long as one call; the edge puts it back */
     tw_error error;
     volatile sig_atomic_t interrupted;   /* set by a signal handler of the host; budget_ok() notices it */
     double seconds;                      /* allowance of each call through the public header; 0: none */
     double deadline;                     /* seconds of CLOCK_MONOTONIC; 0: none */
     size_t memory_limit;                 /* bytes of resident memory of the process; 0: none */
     unsigned budget_ticks;
+    double memory_checked;               /* when the resident memory was last looked at */
     long allocations_left;               /* tests: after so many more allocations fail; negative: never */
     struct expr_table *exprs;
     struct facts *facts;
@@ -88,6 +90,9 @@ bool budget_ok(tw_engine *e);
 
 /* Starts a new allowance: seconds from now (0: none). Also clears an old interrupt. */
 void budget_start(tw_engine *e, double seconds);
+
+/* Memory from the scratch stack: take a mark with arena_mark(&e->scratch), give it back with arena_release. */
+void *engine_scratch(tw_engine *e, size_t count, size_t bytes_each);
 
 /* malloc, realloc and a copy of a string that never return NULL: failure leaves through the edge as ERROR_MEMORY. */
 void *base_alloc(size_t bytes);

@@ -8,6 +8,7 @@
 #define TW_BASE_FLINT_H
 
 #include <flint/flint.h>
+#include <flint/arith.h>
 #include <flint/fmpz.h>
 #include <flint/fmpz_poly.h>
 #include <flint/fmpz_mpoly.h>
@@ -40,5 +41,16 @@
 #include <calcium/ca.h>
 #include <calcium/qqbar.h>
 #endif
+
+/* Installs the abort hook; called for each engine, does its work once a process. */
+void flint_hook_install(void);
+
+/* Leaves through the innermost edge of this thread as ERROR_MEMORY; ends the process where there is none. */
+void edge_leave_memory(void) __attribute__((noreturn));
+
+/* Tests count allocations down (tw_engine.allocations_left): is the next one to fail? Counts it. */
+int edge_allocation_fails(void);
+/* Are allocations being counted on this thread? Arenas then ask for memory piece by piece. */
+int edge_counts_allocations(void);
 
 #endif

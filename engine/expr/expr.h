@@ -62,6 +62,8 @@ struct expr {
     uint32_t loose;        /* 1 + the greatest de Bruijn index that points outside, 0 when closed */
     uint32_t count;        /* children */
     uint64_t serial;       /* order of creation */
+    uint64_t size;         /* nodes counted as a tree, saturating at 2^63 */
+    uint64_t names;        /* one bit of 64 for each free symbol: a zero says surely that a symbol is absent */
     union {
         fmpq number;                  /* EXPR_NUMBER */
         expr_constant constant;

@@ -21,6 +21,7 @@ void facts_clear(tw_engine *e);
  * sector: the closed or open range of its argument as typed, or NULL, NULL. */
 tw_status facts_set_large(tw_engine *e, expr *symbol, large_kind kind, expr *arg_from, expr *arg_to);
 large_kind facts_large(tw_engine *e, expr **symbol); /* the kind, and the symbol unless LARGE_NONE */
+bool facts_sector(tw_engine *e, expr **arg_from, expr **arg_to); /* false: none was declared */
 
 /* Adds a condition (EXPR_RELATION). ERROR_VALUE when it contradicts what is known. */
 tw_status facts_add(tw_engine *e, expr *condition, condition_label label /* GIVEN or GRANTED */);
