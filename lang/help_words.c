@@ -1,0 +1,244 @@
+/* The table behind `help`: every word of the language, what it means, and an example that a test runs. A word of a later
+ * version stands here like the others, with `false` in its row: the parser reads it, the session answers that it cannot do
+ * it. One table, so lookup, list, completion and tests agree. */
+#include "lang/help.h"
+
+#define LATER false
+#define HERE true
+
+static const help_entry entries[] = {
+    /* ---- declarations ---- */
+    {"large", HELP_DECLARE, HERE,
+     "large NAME\nlarge NAME, arg(NAME) in (A, B)\nlarge NAME integer",
+     "Declares the parameter that grows to +inf; expansions are in its powers.\nIt is real and positive from then on. A later "
+     "declaration replaces it.",
+     "large s\nexpand integral from 0 to inf of exp(-s*x)*cosh(x) dx to 4 terms", NULL},
+    {"small", HELP_DECLARE, HERE, "small NAME",
+     "Declares a parameter that goes to 0 from above; expansions are in powers\nof it.",
+     "small h\nexpand integral from 0 to inf of exp(-x/h)/(2 + x) dx to 4 terms", NULL},
+    {"given", HELP_DECLARE, HERE, "given CONDITION, ...\ngiven NAME integer\ngiven NAME complex\ngiven NAME real",
+     "States what is known of the parameters. Conditions are decided from these\nfacts; one that contradicts them is an error.",
+     "given a > 0, nu > -1/2, 0 < p < 1, n integer, theta in (-pi/4, pi/4]", NULL},
+    {"grant", HELP_DECLARE, HERE, "grant CONDITION",
+     "Takes a condition as true from here on without proof. A result that needs\nit is `conditional` and lists it as granted.",
+     "grant b > 2", NULL},
+    {"let", HELP_DECLARE, HERE, "let NAME = EXPRESSION\nlet NAME(x, y) = EXPRESSION\nlet NAME = REQUEST",
+     "Names a value, a function, or what a request gives. Names in it are\nresolved now: a later `let` changes nothing earlier.",
+     "large s\nlet tilt(u) = 1/(1 + u)^2\nlet F = integral from 0 to inf of exp(-s*x)*tilt(3*x) dx\n"
+     "let A = expand F to 6 terms", NULL},
+    {"use", HELP_DECLARE, HERE, "use NAME\nuse \"FILE\"",
+     "Runs a file: NAME is one of the standard library, \"FILE\" is looked for\nbeside the file that names it.",
+     "use moments\nevaluate power_moment(3, 2)", NULL},
+
+    /* ---- requests ---- */
+    {"expand", HELP_REQUEST, HERE, "expand INTEGRAL to N terms [by METHOD] [as NAME]",
+     "Expands the integral in powers of the large parameter: N nonzero terms of\neach contribution, with exact coefficients. "
+     "Without `by` the engine\nchooses the method and says why. METHOD: parts, moments, watson.",
+     "large s\nlet F = integral from 0 to inf of exp(-s*x)*sqrt(1 + 4*x) dx\nexpand F to 5 terms by watson as A\nsteps A",
+     NULL},
+    {"steps", HELP_REQUEST, HERE, "steps NAME",
+     "Shows the derivation of an expansion, step by step: the rule and its\nsource, the form after it, the conditions, and the "
+     "exact remainder where\nterms were split off.",
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 4 terms\nsteps A", NULL},
+    {"coefficients", HELP_REQUEST, HERE, "coefficients of NAME [from N to M]",
+     "Lists exact coefficients, a table for each lane. `from N to M` picks their\nnumbers, and computes more when M lies beyond "
+     "the known ones.",
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 4 terms\ncoefficients of A from 2 to 6",
+     NULL},
+    {"recurrence", HELP_REQUEST, LATER, "recurrence of NAME\ncheck recurrence of NAME",
+     "A recurrence or a closed form for the coefficients, and how it is known.",
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 4 terms\nrecurrence of A", NULL},
+    {"growth", HELP_REQUEST, LATER, "growth of NAME",
+     "The form of the coefficients for large n: factor, distance, power.",
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 4 terms\ngrowth of A", NULL},
+    {"remainder", HELP_REQUEST, HERE, "remainder of NAME [with M terms]",
+     "A bound for the integral minus the kept terms, as a formula that holds for\nall values of the large parameter from some "
+     "value on, with the theorem or\ncomputation behind it.",
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 6 terms\nremainder of A with 3 terms", NULL},
+    {"evaluate", HELP_REQUEST, HERE,
+     "evaluate NAME at s = 20 [, nu = 1/3] [to D digits] [with M terms]\n"
+     "              [with all contributions]\nevaluate EXPRESSION [at s = 20] [to D digits]",
+     "A number with its error bound. Of an expansion: the dominant contributions\nare summed up to the term with the least "
+     "bound, or M terms. Of an integral\nor another expression: certified quadrature. Several values after `=` give\na row "
+     "each.",
+     "large s\nlet F = integral from 0 to inf of exp(-s*x)/(1 + x^2) dx\nlet A = expand F to 12 terms\n"
+     "evaluate A at s = 20\nevaluate F at s = 20, 40 to 30 digits", NULL},
+    {"compare", HELP_REQUEST, HERE, "compare NAME at s = 3, 10, 30 [, nu = 1/3]",
+     "Partial sums of an expansion beside certified quadrature: the true error,\nits bound, and how many times wider the bound "
+     "is. A proved bound that the\nvalue contradicts ends with exit status 3.",
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 6 terms\ncompare A at s = 10", NULL},
+    {"plan", HELP_REQUEST, LATER, "plan NAME for relative error 1e-8 [over s from 5 to 100]",
+     "From which value of the large parameter on how many terms suffice.",
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 6 terms\nplan A for relative error 1e-8",
+     NULL},
+
+    /* ---- output and the session ---- */
+    {"plot", HELP_WRITE, LATER, "plot error of NAME at s = 3, 10 to \"FILE\"\nplot terms of NAME at s = 10 to \"FILE\"",
+     "Draws the error or the terms of an expansion.",
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 6 terms\n"
+     "plot terms of A at s = 10 to \"terms.svg\"", NULL},
+    {"write", HELP_WRITE, HERE, "write NAME as FORMAT to \"FILE\"",
+     "Writes an expansion to a file, whole or not at all. FORMAT: json, csv, text.",
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 6 terms\n"
+     "write A as csv to \"coefficients.csv\"", NULL},
+    {"show", HELP_WRITE, HERE, "show NAME", "Shows what a name stands for, all of it; of a parameter, what is known.",
+     "given a > 0\nlet g = exp(-a*x)/(1 + x)^3\nshow g\nshow a", NULL},
+    {"drop", HELP_WRITE, HERE, "drop NAME", "Forgets a name; of a parameter, what was declared of it.",
+     "let g = 1 + x\ndrop g", NULL},
+    {"help", HELP_WRITE, HERE, "help [WORD]", "Explains a word of the language, a function, or lists all of them.",
+     "help expand", NULL},
+    {"quit", HELP_WRITE, HERE, "quit", "Ends the session.", "quit", NULL},
+
+    /* ---- rules and derivations ---- */
+    {"rule", HELP_RULE, LATER, "rule NAME(VARIABLES):\n    PATTERN\n    becomes REPLACEMENT\n    when CONDITIONS\n    because "
+     "\"SOURCE\"",
+     "Defines a rewriting rule.",
+     "rule halve(a): integral from 0 to inf of exp(-2*a*x) dx becomes 1/(2*a) when a > 0", NULL},
+    {"pass", HELP_RULE, LATER, "pass NAME = STRATEGY", "Combines rules with then, or, repeat, everywhere, once.",
+     "pass tidy = repeat everywhere collect_powers", NULL},
+    {"check", HELP_RULE, LATER, "check rule NAME\ncheck \"FILE\"\ncheck recurrence of NAME",
+     "Tries a rule at random admissible values, or checks a certificate again.", "check rule halve", NULL},
+    {"rewrite", HELP_RULE, LATER, "rewrite EXPRESSION with PASS", "Applies a pass to an expression.",
+     "rewrite sin(x)^2 + 1 with tidy", NULL},
+    {"why", HELP_RULE, LATER, "why not RULE", "Says which part or condition of a rule failed for the current form.",
+     "why not halve", NULL},
+    {"derive", HELP_RULE, LATER, "derive INTEGRAL\n    MOVES\ndone as NAME", "Opens a derivation by hand.",
+     "large s\nlet F = integral from 0 to inf of exp(-s*x)/(1 + x^2) dx\nderive F", NULL},
+    {"done", HELP_RULE, LATER, "done [as NAME]", "Ends a derivation by hand and keeps it.", "done as D", NULL},
+    {"undo", HELP_RULE, LATER, "undo", "Takes the last move of a derivation back.", "undo", NULL},
+    {"replay", HELP_RULE, LATER, "replay NAME on INTEGRAL", "Runs a kept derivation on another integral.",
+     "large s\nlet F = integral from 0 to inf of exp(-s*x)/(1 + x^2) dx\nreplay D on F", NULL},
+
+    /* ---- moves ---- */
+    {"substitute", HELP_MOVE, LATER, "substitute VAR = EXPR [with NEW = INVERSE]", "Changes the variable of integration.",
+     "substitute x = t/s", NULL},
+    {"parts", HELP_MOVE, LATER, "parts integrating FACTOR", "Integrates by parts.", "parts integrating exp(-t)", NULL},
+    {"repeat", HELP_MOVE, LATER, "repeat parts N times", "Repeats a move.", "repeat parts 3 times", NULL},
+    {"differentiate", HELP_MOVE, LATER, "differentiate in PARAM", "Differentiates the integral in a parameter.",
+     "differentiate in a", NULL},
+    {"integrate", HELP_MOVE, LATER, "integrate termwise\nintegrate back in PARAM from VALUE",
+     "Integrates a series term by term, or back in a parameter.", "integrate termwise", NULL},
+    {"split", HELP_MOVE, LATER, "split at POINT", "Splits the range of integration.", "split at 1", NULL},
+    {"rotate", HELP_MOVE, LATER, "rotate by ANGLE", "Turns the path of integration.", "rotate by pi/4", NULL},
+    {"swap", HELP_MOVE, LATER, "swap", "Changes the order of integration.", "swap", NULL},
+
+    /* ---- expressions ---- */
+    {"integral", HELP_EXPRESSION, HERE, "integral from A to B of BODY dx\nintegral along P to Q to R of BODY dz",
+     "An integral; the word made of d and a name says which variable and closes\nit. An empty body is written 1. Along a "
+     "path the legs are straight.",
+     "evaluate integral from 0 to 2 of exp(-x^2) dx to 20 digits", NULL},
+    {"sum", HELP_EXPRESSION, HERE, "sum from k = A to B of BODY",
+     "A sum; BODY is one product: it ends before + - a comparison or a comma.", "evaluate sum from k = 1 to 20 of 1/k^2",
+     NULL},
+    {"derivative", HELP_EXPRESSION, HERE, "derivative of F in x [order N]",
+     "The derivative of a product; a sum needs brackets.", "let g = derivative of (x^3*exp(-x)) in x order 2", NULL},
+    {"piecewise", HELP_EXPRESSION, HERE, "piecewise(VALUE when CONDITION, ..., VALUE otherwise)",
+     "A function given in pieces; the first condition that holds counts.",
+     "let ramp = piecewise(x when x < 1, 1 otherwise)", NULL},
+    {"root", HELP_EXPRESSION, HERE, "root of POLYNOMIAL in r near VALUE",
+     "An algebraic number: the root of the polynomial nearest to the value.",
+     "let plastic = root of r^3 - r - 1 in r near 1.3247", NULL},
+    {"at", HELP_EXPRESSION, HERE, "(EXPRESSION at x = 3, y = 2)",
+     "Substitution; the bindings are simultaneous and the brackets are needed.\nIn evaluate and compare it gives the values of "
+     "the parameters.",
+     "let g = (x*y^2 at x = y, y = 3)", NULL},
+
+    /* ---- constants ---- */
+    {"pi", HELP_CONSTANT, HERE, "pi", "The ratio of circumference and diameter of a circle.", "evaluate pi to 30 digits", NULL},
+    {"i", HELP_CONSTANT, HERE, "i", "The imaginary unit.", "evaluate exp(i*pi/3)", NULL},
+    {"inf", HELP_CONSTANT, HERE, "inf\ninf(theta)",
+     "Infinity, as an end of an integral or an interval; inf(theta) lies in the\ndirection of the angle theta.",
+     "evaluate integral from -inf to inf of exp(-x^2) dx", NULL},
+    {"euler_constant", HELP_CONSTANT, HERE, "euler_constant", "Euler's constant, -psi(1) = 0.5772... (DLMF 5.2.3).",
+     "evaluate euler_constant to 30 digits", NULL},
+
+    /* ---- methods ---- */
+    {"watson", HELP_METHOD, HERE, "expand INTEGRAL to N terms by watson",
+     "Watson's lemma (DLMF 2.3(ii)): kernels exp(-c*s*x^mu); powers of x, log(x)\nand other parameters in the rest.",
+     "large s\nexpand integral from 0 to inf of exp(-s*x)*x^(-1/3)/(1 + x^2) dx to 4 terms by watson", NULL},
+    {"parts", HELP_METHOD, HERE, "expand INTEGRAL to N terms by parts",
+     "Repeated integration by parts (DLMF 2.3(i)): the slope of the exponent is\nnot zero on the path. The remainder stays an "
+     "exact integral.",
+     "large s\nexpand integral from 0 to 1 of exp(-s*(x + x^2))*cos(x) dx to 4 terms by parts", NULL},
+    {"moments", HELP_METHOD, HERE, "expand INTEGRAL to N terms by moments",
+     "Families known in closed form by differentiating in a parameter; the\nexpansion ends by itself and is exact.",
+     "large s\nexpand integral from 0 to inf of x^3*exp(-s*x) dx to 4 terms by moments", NULL},
+    {"laplace", HELP_METHOD, LATER, "expand INTEGRAL to N terms by laplace", "Laplace's method (DLMF 2.3(iii)).",
+     "large s\nexpand integral from -1 to 2 of exp(-s*(x^2 + x^4)) dx to 4 terms by laplace", NULL},
+    {"phase", HELP_METHOD, LATER, "expand INTEGRAL to N terms by phase", "Stationary phase (DLMF 2.3(iv)).",
+     "large s\nexpand integral from 0 to 1 of exp(i*s*x^2) dx to 4 terms by phase", NULL},
+    {"descent", HELP_METHOD, LATER, "expand INTEGRAL to N terms by descent", "Steepest descent (DLMF 2.4(iv)).",
+     "large s\nexpand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 4 terms by descent", NULL},
+    {"mellin", HELP_METHOD, LATER, "expand INTEGRAL to N terms by mellin", "Mellin transforms (DLMF 2.5).",
+     "large s\nexpand integral from 0 to inf of exp(-x)/(1 + s*x) dx to 4 terms by mellin", NULL},
+
+    /* ---- formats ---- */
+    {"json", HELP_FORMAT, HERE, "write NAME as json to \"FILE\"",
+     "One JSON object with everything: coefficients, remainder, conditions, steps.",
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 6 terms\nwrite A as json to \"a.json\"", NULL},
+    {"csv", HELP_FORMAT, HERE, "write NAME as csv to \"FILE\"", "One row a coefficient (RFC 4180), with a header.", NULL, "write"},
+    {"text", HELP_FORMAT, HERE, "write NAME as text to \"FILE\"", "One coefficient a line, comment lines between the lanes.",
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 6 terms\nwrite A as text to \"a.txt\"", NULL},
+    {"latex", HELP_FORMAT, LATER, "write NAME as latex to \"FILE\"", "The derivation and the result as LaTeX.",
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 6 terms\nwrite A as latex to \"a.tex\"",
+     NULL},
+    {"c", HELP_FORMAT, LATER, "write NAME as c to \"FILE\"", "A C function that evaluates the expansion.",
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 6 terms\nwrite A as c to \"a.c\"", NULL},
+
+    /* ---- labels: how a thing is known ---- */
+    {"exact", HELP_LABEL, HERE, NULL, "The expansion ends by itself and equals the integral.", NULL, "moments"},
+    {"proved", HELP_LABEL, HERE, NULL,
+     "Follows from the integral as typed and the given facts alone. A manner may\nfollow: `proved, enclosing`: the remainder "
+     "has the sign of the first\nomitted term and is smaller.",
+     NULL, "remainder"},
+    {"enclosing", HELP_LABEL, HERE, NULL,
+     "A manner of `proved`: the remainder has the sign of the first omitted term\nand is smaller.", NULL, "remainder"},
+    {"conditional", HELP_LABEL, HERE, NULL, "Rests on an open or granted condition; the result lists them.", NULL, "grant"},
+    {"estimated", HELP_LABEL, HERE, NULL, "A figure without proof, from the next omitted terms.", NULL, "evaluate"},
+    {"unknown", HELP_LABEL, HERE, NULL, "Nothing is claimed; the reason stands below.", NULL, "remainder"},
+    {"fitted", HELP_LABEL, LATER, NULL, "Of a recurrence: agrees with the computed coefficients, not proved.", NULL,
+     "recurrence"},
+    {"passed", HELP_LABEL, LATER, NULL, "Of a rule: tried at samples without a contradiction.", NULL, "check"},
+    {"refuted", HELP_LABEL, HERE, NULL, "Contradicted by certified numbers.", NULL, "compare"},
+    {"unchecked", HELP_LABEL, LATER, NULL, "Of a rule: not tried.", NULL, "check"},
+    {"granted", HELP_LABEL, HERE, NULL, "Of a condition: taken as true by `grant`.", NULL, "grant"},
+    {"open", HELP_LABEL, HERE, NULL, "Of a condition: neither proved nor refuted; what needs it is conditional.", NULL,
+     "remainder"},
+
+    /* ---- words inside statements ---- */
+    {"from", HELP_CLAUSE, HERE, "from A to B", "The lower limit of an integral or a sum, or the first of a range.", NULL,
+     "integral"},
+    {"to", HELP_CLAUSE, HERE, NULL, "The upper limit; also `to N terms`, `to D digits`, `to \"FILE\"`.", NULL, "integral"},
+    {"of", HELP_CLAUSE, HERE, NULL, "Before what an integral, a sum or a request is taken of.", NULL, "integral"},
+    {"along", HELP_CLAUSE, LATER, "integral along P to Q to R of BODY dz", "A path in the complex plane, of straight legs.",
+     "large s\nexpand integral along inf(-pi/4) to inf(pi/4) of exp(-s*z^2) dz to 4 terms by descent", NULL},
+    {"in", HELP_CLAUSE, HERE, "NAME in (A, B]", "A condition: the value lies in the interval.", NULL, "given"},
+    {"integer", HELP_CLAUSE, HERE, "given NAME integer", "The parameter is an integer.", NULL, "given"},
+    {"real", HELP_CLAUSE, HERE, "given NAME real", "The parameter is real, as every parameter is unless declared.",
+     "given x real", NULL},
+    {"complex", HELP_CLAUSE, HERE, "given NAME complex", "The parameter is complex.", "given z complex", NULL},
+    {"terms", HELP_CLAUSE, HERE, "to N terms\nwith M terms", "How many terms to compute, or to keep.", NULL, "expand"},
+    {"digits", HELP_CLAUSE, HERE, "to D digits", "Relative accuracy, in decimal digits.", NULL, "evaluate"},
+    {"contributions", HELP_CLAUSE, HERE, "with all contributions",
+     "Sums the subdominant contributions, too.", NULL, "evaluate"},
+    {"with", HELP_CLAUSE, HERE, "with M terms\nwith all contributions", "What to keep of an expansion.", NULL, "remainder"},
+    {"by", HELP_CLAUSE, HERE, "by METHOD", "The method to use.", NULL, "expand"},
+    {"as", HELP_CLAUSE, HERE, "as NAME\nas FORMAT", "The name under which to keep it; the format of a file.", NULL, "expand"},
+    {"when", HELP_CLAUSE, HERE, NULL, "A condition, of a piece or of a rule.", NULL, "piecewise"},
+    {"otherwise", HELP_CLAUSE, HERE, NULL, "The last piece.", NULL, "piecewise"},
+    {"near", HELP_CLAUSE, HERE, NULL, "The value next to a root.", NULL, "root"},
+    {"order", HELP_CLAUSE, HERE, NULL, "How many times to differentiate.", NULL, "derivative"},
+    {"becomes", HELP_CLAUSE, LATER, NULL, "Between the two sides of a rule.", NULL, "rule"},
+    {"because", HELP_CLAUSE, LATER, NULL, "The source of a rule.", NULL, "rule"},
+    {"then", HELP_CLAUSE, LATER, NULL, "One after the other, in a pass.",
+     "pass reduce = halve then tidy", NULL},
+    {"or", HELP_CLAUSE, LATER, NULL, "The first that applies, in a pass.", "pass reduce = halve or tidy", NULL},
+    {"everywhere", HELP_CLAUSE, LATER, NULL, "At every place where it applies, in a pass.", NULL, "pass"},
+    {"once", HELP_CLAUSE, LATER, NULL, "At the first place where it applies, in a pass.", "pass reduce = once halve", NULL},
+};
+
+const help_entry *help_table(size_t *count)
+{
+    *count = sizeof entries / sizeof *entries;
+    return entries;
+}

@@ -1,0 +1,76 @@
+/* A session: the engine, what is declared in it, what names stand for. It runs one statement after another and gives each
+ * a result; it prints nothing. A statement that fails leaves the session as it was. */
+#ifndef TW_LANG_SESSION_H
+#define TW_LANG_SESSION_H
+
+#include <stdbool.h>
+
+#include "engine/method/expansion.h"
+#include "engine/numeric/evaluate.h"
+#include "lang/result.h"
+#include "lang/syntax.h"
+
+typedef enum value_kind {
+    VALUE_EXPRESSION, /* integrals, too */
+    VALUE_FUNCTION,
+    VALUE_EXPANSION,
+    VALUE_RESULT,     /* what a request gave that is no expression: a number, a table, steps */
+} value_kind;
+
+typedef struct value {
+    value_kind kind;
+    unsigned holders;      /* names and running requests that hold it */
+    expr *expression;      /* EXPRESSION; FUNCTION: the body */
+    size_t count;          /* FUNCTION: its parameters, fresh symbols in the body, with the names to print */
+    expr **parameters;
+    char **parameter_names;
+    expansion expansion;   /* EXPANSION */
+    result result;         /* RESULT */
+    const char *what;      /* RESULT: "a number", "a table of coefficients", ... */
+} value;
+
+value *value_new(value_kind kind);
+value *value_hold(value *v);
+void value_release(value *v); /* NULL: nothing */
+
+/* What names stand for. */
+typedef struct name_entry {
+    char *name;
+    value *value;
+} name_entry;
+
+typedef struct name_table {
+    size_t count, room;    /* room: a power of two, open addressing; an entry without a name is free */
+    name_entry *entries;
+} name_table;
+
+value *names_find(const name_table *t, const char *name); /* borrowed; NULL when it means nothing */
+void names_set(name_table *t, const char *name, value *v); /* takes a hold over */
+bool names_drop(name_table *t, const char *name);
+void names_each(const name_table *t, void (*take)(void *host, const char *name), void *host);
+
+typedef struct session {
+    tw_engine *e;
+    name_table names;
+    slong digits;          /* significant digits: of tables, and of `evaluate INTEGRAL` without `to D digits` */
+    const char *folder;    /* where `use "FILE"` looks: the folder of the file that runs, "" for the working folder */
+    bool quit;             /* `quit` has run */
+    span at;               /* after a failure: where in the statement's source */
+    /* Runs a file for `use` and says whether all of it succeeded; set by the host. */
+    tw_status (*run_file)(void *host, const char *path);
+    void *host;
+} session;
+
+enum { SESSION_DIGITS = 10, SESSION_DIGITS_LIMIT = 1000000 };
+
+tw_status session_init(session *s); /* TW_ERROR: no memory for an engine */
+void session_clear(session *s);
+
+/* Runs a statement; r is initialised and filled. On failure the engine holds the error, s->at its place, and r holds what is
+ * to be shown nevertheless (nothing, but for a refuted comparison). */
+tw_status session_run(session *s, const statement *st, result *r);
+
+/* What a running statement does, for the progress line: "expand F to 8 terms". */
+void session_describe(const statement *st, text *out);
+
+#endif
