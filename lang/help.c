@@ -6,7 +6,7 @@
 #include <stdlib.h>
 #include <string.h>
 
-#include "engine/expr/function.h"
+#include "engine/export/format.h"
 
 static const char *const group_titles[HELP_GROUPS] = {
     [HELP_DECLARE] = "Declaring",      [HELP_REQUEST] = "Requests",       [HELP_WRITE] = "Output and session",

@@ -28,7 +28,7 @@ static const help_entry entries[] = {
      "let A = expand F to 6 terms", NULL},
     {"use", HELP_DECLARE, HERE, "use NAME\nuse \"FILE\"",
      "Runs a file: NAME is one of the standard library, \"FILE\" is looked for\nbeside the file that names it.",
-     "use moments\nevaluate power_moment(3, 2)", NULL},
+     "use moments\nevaluate exponential_moment(3, 2)", NULL},
 
     /* ---- requests ---- */
     {"expand", HELP_REQUEST, HERE, "expand INTEGRAL to N terms [by METHOD] [as NAME]",

@@ -92,29 +92,29 @@ void result_json(result *r, const char *name, const char *json)
 
 /* ---- lines ---- */
 
-void result_line(result *r, const char *format, ...)
+void result_line(result *r, const char *form, ...)
 {
     va_list args, again;
-    va_start(args, format);
+    va_start(args, form);
     va_copy(again, args);
-    int length = vsnprintf(NULL, 0, format, args);
+    int length = vsnprintf(NULL, 0, form, args);
     va_end(args);
     char *line = base_alloc((size_t)length + 1);
-    vsnprintf(line, (size_t)length + 1, format, again);
+    vsnprintf(line, (size_t)length + 1, form, again);
     va_end(again);
     text_add(&r->words, line);
     text_add_char(&r->words, '\n');
     free(line);
 }
 
-void result_labelled(result *r, const char *words, const char *label, const char *manner)
+void result_labelled(result *r, const char *words, const char *known, const char *manner)
 {
     size_t width = strlen(words);
     text_add(&r->words, words);
     do text_add_char(&r->words, ' ');
     while (++width < LABEL_COLUMN);
     if (width > LABEL_COLUMN) text_add_char(&r->words, ' ');
-    text_add(&r->words, label);
+    text_add(&r->words, known);
     if (manner) text_addf(&r->words, ", %s", manner);
     text_add_char(&r->words, '\n');
 }

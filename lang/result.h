@@ -29,9 +29,9 @@ void result_truth(result *r, const char *name, bool value);
 void result_json(result *r, const char *name, const char *json);    /* a value that is JSON already */
 
 /* Lines of the text. */
-void result_line(result *r, const char *format, ...) __attribute__((format(printf, 2, 3)));
+void result_line(result *r, const char *form, ...) __attribute__((format(printf, 2, 3)));
 /* A line with how it is known behind it, the label in its own column. */
-void result_labelled(result *r, const char *words, const char *label, const char *manner);
+void result_labelled(result *r, const char *words, const char *known, const char *manner);
 /* Conditions below a result: "  rests on: nu > -1 (granted)". */
 void result_conditions(result *r, const condition_list *conditions);
 

@@ -32,6 +32,9 @@ typedef struct value {
 value *value_new(value_kind kind);
 value *value_hold(value *v);
 void value_release(value *v); /* NULL: nothing */
+value *value_of_result(const result *r, const char *what); /* keeps a copy */
+/* An expression or a function as the statement that would define it, without `let`. */
+void value_print(tw_engine *e, text *out, const char *name, const value *v);
 
 /* What names stand for. */
 typedef struct name_entry {
@@ -47,15 +50,18 @@ typedef struct name_table {
 value *names_find(const name_table *t, const char *name); /* borrowed; NULL when it means nothing */
 void names_set(name_table *t, const char *name, value *v); /* takes a hold over */
 bool names_drop(name_table *t, const char *name);
+void names_clear(name_table *t);
 void names_each(const name_table *t, void (*take)(void *host, const char *name), void *host);
 
 typedef struct session {
     tw_engine *e;
     name_table names;
     slong digits;          /* significant digits: of tables, and of `evaluate INTEGRAL` without `to D digits` */
+    bool json;             /* the object of a result is wanted: an expansion's holds its bound, which takes time */
     const char *folder;    /* where `use "FILE"` looks: the folder of the file that runs, "" for the working folder */
     bool quit;             /* `quit` has run */
     span at;               /* after a failure: where in the statement's source */
+    const char *let_name;  /* the name behind a `let` whose request runs, else NULL */
     /* Runs a file for `use` and says whether all of it succeeded; set by the host. */
     tw_status (*run_file)(void *host, const char *path);
     void *host;
@@ -72,5 +78,21 @@ tw_status session_run(session *s, const statement *st, result *r);
 
 /* What a running statement does, for the progress line: "expand F to 8 terms". */
 void session_describe(const statement *st, text *out);
+
+/* The expression that x means now, names put in; NULL with the error set. */
+expr *session_lower(session *s, const syntax *x);
+/* The same with parameters of a function: names[k] means symbols[k]. */
+expr *session_lower_function(session *s, const syntax *x, const syntax_name *names, expr *const *symbols, size_t count);
+/* A condition as one or more relations (`0 < p < 1` is two) into a fresh array (free() it). */
+tw_status session_lower_condition(session *s, const syntax *x, expr ***relations, size_t *count);
+
+/* Is something declared of the symbol: a fact, or that it is the large or small parameter? */
+bool session_declares(session *s, expr *symbol);
+
+/* The error that a name means nothing, with the nearest name that does. */
+tw_status session_unknown_name(session *s, syntax_name name);
+
+/* Out of time, memory or patience, or broken: an error that nobody may pass over. */
+bool error_is_fatal(error_kind kind);
 
 #endif

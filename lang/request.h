@@ -1,0 +1,59 @@
+/* What the files that answer requests share: reading the parts of a statement, failing at a place. Inside lang only. */
+#ifndef TW_LANG_REQUEST_H
+#define TW_LANG_REQUEST_H
+
+#include "lang/session.h"
+
+/* Fails at a place of the statement. */
+tw_status request_fail(session *s, span at, error_kind kind, const char *format, ...)
+    __attribute__((format(printf, 4, 5)));
+/* Returns TW_ERROR for an error that the engine has set; `at` becomes its place. */
+tw_status request_fail_at(session *s, span at);
+/* "`plot` is not available in this version" */
+tw_status request_unavailable(session *s, span at, const char *words);
+
+/* "no method is called `x`; did you mean `y`?", or the list of what there is. */
+tw_status request_no_such(session *s, syntax_name wrong, const char *what, const char *const *names, size_t count);
+
+/* A whole number from `least` to `most` that stands at x; what: "the number of terms". */
+tw_status request_count(session *s, const syntax *x, slong least, slong most, const char *what, slong *out);
+
+/* What a request is about: an expansion or another kept value, or an expression. */
+typedef struct subject {
+    char *name;       /* its name, or the expression as typed */
+    bool is_name;
+    value *kept;      /* held; NULL: an expression */
+    expr *expression; /* of an expression or a kept expression; else NULL */
+} subject;
+
+tw_status subject_read(session *s, subject *out, const syntax *x);
+/* The same, and an error with advice unless it is an expansion. */
+tw_status subject_read_expansion(session *s, subject *out, const syntax *x);
+void subject_clear(subject *x);
+
+/* May a statement define this name here? Sets the error when not: a declared parameter, the large one. */
+tw_status request_may_define(session *s, syntax_name name);
+
+/* The points of `at s = 3, 10, nu = 1/3`: every combination of the values, the first binding changing slowest. */
+typedef struct points {
+    size_t width, count; /* symbols; points */
+    expr **symbols;
+    expr **values;       /* of point k: values + k*width */
+} points;
+
+/* f: the expression or integral whose symbols must all get a value; facts: what the values must not contradict. */
+tw_status points_read(session *s, points *out, const syntax_bindings *at, span place, const char *name, expr *f,
+                      expr *const *facts, size_t fact_count);
+void points_clear(points *p);
+env points_at(const points *p, size_t k); /* borrows from p */
+
+/* Each answers one kind of statement; the kept value is left in *keep unless keep is NULL. */
+typedef tw_status request_function(session *s, const statement *st, result *r, value **keep);
+request_function request_large, request_small, request_given, request_grant, request_let, request_use, request_show,
+    request_drop, request_expand, request_steps, request_coefficients, request_remainder, request_evaluate, request_compare,
+    request_write, request_help, request_quit;
+
+/* Runs the request behind `let NAME =`, or says that it is not available. */
+tw_status request_run(session *s, const statement *st, result *r, value **keep);
+
+#endif

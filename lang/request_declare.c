@@ -1,0 +1,332 @@
+/* Declarations: large, small, given, grant, let, use, drop. The one idea: everything is read and checked first, the session
+ * is changed last, so a statement that fails leaves it as it was. */
+#include <stdlib.h>
+#include <string.h>
+#include <unistd.h>
+
+#include "engine/method/method.h"
+#include "lang/file.h"
+#include "lang/help.h"
+#include "lang/request.h"
+
+static void declared(result *r, const statement *st)
+{
+    text words;
+    text_init(&words);
+    statement_print(&words, st);
+    result_restart(r, "declaration");
+    result_string(r, "text", words.bytes);
+    r->echo = true;
+    text_clear(&words);
+}
+
+/* ---- large, small ---- */
+
+static tw_status must_be_free(session *s, syntax_name name)
+{
+    if (!names_find(&s->names, name.text)) return TW_OK;
+    return request_fail(s, name.at, ERROR_NAME, "`%s` is defined by `let`; a parameter needs a free name (or `drop %s`)",
+                        name.text, name.text);
+}
+
+static bool is_argument_of(const syntax *x, const char *name)
+{
+    return x->kind == SYNTAX_CALL && strcmp(x->as.call.name.text, "arg") == 0 && x->as.call.count == 1 &&
+           x->as.call.arguments[0]->kind == SYNTAX_NAME && strcmp(x->as.call.arguments[0]->as.name, name) == 0;
+}
+
+static tw_status declare_large(session *s, const statement *st, large_kind kind)
+{
+    syntax_name name = st->as.large.name;
+    expr *from = NULL, *to = NULL;
+    if (must_be_free(s, name) != TW_OK) return TW_ERROR;
+    const syntax *sector = st->as.large.sector;
+    if (sector) {
+        if (!is_argument_of(sector->as.range->value, name.text))
+            return request_fail(s, sector->at, ERROR_VALUE, "only a sector `arg(%s) in (A, B)` can stand here", name.text);
+        from = session_lower(s, sector->as.range->from);
+        to = from ? session_lower(s, sector->as.range->to) : NULL;
+        if (!to) return TW_ERROR;
+    }
+    expr *symbol = expr_symbol(s->e, name.text);
+    if (!symbol || facts_set_large(s->e, symbol, kind, from, to) != TW_OK) return request_fail_at(s, name.at);
+    return TW_OK;
+}
+
+tw_status request_large(session *s, const statement *st, result *r, value **keep)
+{
+    (void)keep;
+    declared(r, st);
+    return declare_large(s, st, st->as.large.integer ? LARGE_INTEGER : LARGE_POSITIVE);
+}
+
+tw_status request_small(session *s, const statement *st, result *r, value **keep)
+{
+    (void)keep;
+    declared(r, st);
+    return declare_large(s, st, LARGE_SMALL);
+}
+
+/* ---- given, grant ---- */
+
+static tw_status declare_conditions(session *s, const statement *st, condition_label known)
+{
+    for (size_t k = 0; k < st->as.given.count; k++) {
+        const syntax *x = st->as.given.list[k];
+        expr **conditions;
+        size_t count;
+        if (session_lower_condition(s, x, &conditions, &count) != TW_OK) return TW_ERROR;
+        tw_status status = TW_OK;
+        for (size_t c = 0; status == TW_OK && c < count; c++) status = facts_add(s->e, conditions[c], known);
+        free(conditions);
+        if (status != TW_OK) return request_fail_at(s, x->at);
+    }
+    return TW_OK;
+}
+
+tw_status request_given(session *s, const statement *st, result *r, value **keep)
+{
+    (void)keep;
+    declared(r, st);
+    return declare_conditions(s, st, CONDITION_GIVEN);
+}
+
+tw_status request_grant(session *s, const statement *st, result *r, value **keep)
+{
+    (void)keep;
+    declared(r, st);
+    return declare_conditions(s, st, CONDITION_GRANTED);
+}
+
+/* ---- let ---- */
+
+tw_status request_may_define(session *s, syntax_name name)
+{
+    expr *symbol = expr_symbol(s->e, name.text);
+    if (!symbol) return request_fail_at(s, name.at);
+    if (!session_declares(s, symbol)) return TW_OK;
+    return request_fail(s, name.at, ERROR_NAME, "`%s` is a declared parameter; choose another name, or `drop %s` first",
+                        name.text, name.text);
+}
+
+static void define(session *s, result *r, syntax_name name, const char *kind)
+{
+    (void)s;
+    result_restart(r, "definition");
+    result_string(r, "name", name.text);
+    result_string(r, "kind", kind);
+    r->echo = true;
+}
+
+/* "depends on a, b" */
+static void add_dependence(session *s, text *out, expr *a)
+{
+    (void)s;
+    expr **symbols;
+    size_t count = expr_symbols(a, &symbols);
+    text_add(out, count ? "depends on " : "a fixed number");
+    for (size_t k = 0; k < count; k++) text_addf(out, "%s%s", k ? ", " : "", symbols[k]->is.name);
+    free(symbols);
+}
+
+static bool has_integral(expr *a)
+{
+    if (a->kind == EXPR_INTEGRAL || a->kind == EXPR_CONTOUR) return true;
+    for (uint32_t k = 0; k < a->count; k++)
+        if (has_integral(a->args[k])) return true;
+    return false;
+}
+
+/* What reading an integral finds, for the echo. An integral that cannot be expanded is a value all the same, so what stands
+ * against it is said and the definition holds. */
+static tw_status summarise(session *s, text *out, expr *a)
+{
+    expr *large;
+    if (facts_large(s->e, &large) == LARGE_NONE || !expr_has(a, large)) {
+        add_dependence(s, out, a);
+        return TW_OK;
+    }
+    reading seen;
+    reading_init(&seen);
+    tw_status status = integral_read(s->e, &seen, a);
+    if (status == TW_OK && seen.summary) {
+        text_add(out, seen.summary);
+    } else if (status == TW_OK) {
+        add_dependence(s, out, a);
+    } else if (!error_is_fatal(s->e->error.kind)) {
+        add_dependence(s, out, a);
+        text_addf(out, "; %s", s->e->error.words);
+        engine_forgive(s->e);
+        status = TW_OK;
+    }
+    reading_clear(&seen);
+    return status;
+}
+
+static tw_status let_expression(session *s, const statement *st, result *r)
+{
+    syntax_name name = st->as.let.name;
+    const syntax *x = st->as.let.value;
+    value *same = x->kind == SYNTAX_NAME ? names_find(&s->names, x->as.name) : NULL;
+    if (same && same->kind != VALUE_EXPRESSION) { /* another name for the same thing */
+        define(s, r, name, same->kind == VALUE_EXPANSION ? "expansion" : "value");
+        result_string(r, "text", x->as.name);
+        result_line(r, "%s is %s", name.text, x->as.name);
+        names_set(&s->names, name.text, value_hold(same));
+        return TW_OK;
+    }
+    expr *a = session_lower(s, x);
+    if (!a) return TW_ERROR;
+    bool integral = has_integral(a);
+    text words, summary;
+    text_init(&words);
+    text_init(&summary);
+    expr_print(s->e, &words, a);
+    define(s, r, name, integral ? "integral" : "expression");
+    result_string(r, "text", words.bytes);
+    tw_status status = TW_OK;
+    if (integral) {
+        status = summarise(s, &summary, a);
+        result_string(r, "summary", summary.bytes);
+        result_line(r, "%s: %s", name.text, summary.bytes);
+    } else {
+        result_line(r, "%s = %s", name.text, words.bytes);
+    }
+    text_clear(&words);
+    text_clear(&summary);
+    if (status != TW_OK) return request_fail_at(s, x->at);
+    value *v = value_new(VALUE_EXPRESSION);
+    v->expression = a;
+    names_set(&s->names, name.text, v);
+    return TW_OK;
+}
+
+static tw_status let_function(session *s, const statement *st, result *r)
+{
+    syntax_name name = st->as.let.name;
+    value *v = value_new(VALUE_FUNCTION);
+    v->count = st->as.let.count;
+    v->parameters = base_alloc((v->count + 1) * sizeof *v->parameters);
+    v->parameter_names = base_alloc((v->count + 1) * sizeof *v->parameter_names);
+    memset(v->parameter_names, 0, (v->count + 1) * sizeof *v->parameter_names);
+    for (size_t k = 0; k < v->count; k++) {
+        v->parameter_names[k] = base_copy(st->as.let.parameters[k].text);
+        v->parameters[k] = expr_fresh(s->e, v->parameter_names[k]);
+    }
+    v->expression = session_lower_function(s, st->as.let.value, st->as.let.parameters, v->parameters, v->count);
+    if (!v->expression) {
+        value_release(v);
+        return TW_ERROR;
+    }
+    define(s, r, name, "function");
+    text words;
+    text_init(&words);
+    value_print(s->e, &words, name.text, v);
+    result_string(r, "text", words.bytes);
+    result_line(r, "%s", words.bytes);
+    text_clear(&words);
+    if (function_find(name.text, -1) != FUNCTION_COUNT || strcmp(name.text, "sqrt") == 0) {
+        result_string(r, "notice", "hides the built-in function of this name");
+        result_line(r, "  (hides the built-in function %s)", name.text);
+    }
+    names_set(&s->names, name.text, v);
+    return TW_OK;
+}
+
+static tw_status let_request(session *s, const statement *st, result *r)
+{
+    value *kept = NULL;
+    s->let_name = st->as.let.name.text;
+    tw_status status = request_run(s, st->as.let.request, r, &kept);
+    s->let_name = NULL;
+    if (status != TW_OK) {
+        value_release(kept);
+        return TW_ERROR;
+    }
+    r->echo = true;
+    names_set(&s->names, st->as.let.name.text, kept);
+    return TW_OK;
+}
+
+tw_status request_let(session *s, const statement *st, result *r, value **keep)
+{
+    (void)keep;
+    if (request_may_define(s, st->as.let.name) != TW_OK) return TW_ERROR;
+    if (st->as.let.request) return let_request(s, st, r);
+    if (st->as.let.is_function) return let_function(s, st, r);
+    return let_expression(s, st, r);
+}
+
+/* ---- use ---- */
+
+/* The standard library: where TW_STDLIB says, else with the installed data, else in the source tree that the program was
+ * built in. The first folder that has the file counts. Into a fresh string, NULL when none has it. */
+static char *find_library_file(const char *name)
+{
+    char program[4096];
+    ssize_t length = readlink("/proc/self/exe", program, sizeof program - 1);
+    program[length > 0 ? length : 0] = '\0';
+    char *folder = file_folder(program);
+    const char *places[] = {"../share/termwise/stdlib/", "../stdlib/", "../../stdlib/"};
+    text path;
+    text_init(&path);
+    const char *chosen = getenv("TW_STDLIB");
+    bool found = false;
+    if (chosen && *chosen) {
+        text_addf(&path, "%s/%s.tw", chosen, name);
+        found = file_exists(path.bytes);
+    } else {
+        text_addf(&path, "%s/stdlib/%s.tw", TW_DATADIR, name);
+        found = file_exists(path.bytes);
+        for (size_t k = 0; !found && k < sizeof places / sizeof *places; k++) {
+            text_cut(&path, 0);
+            text_addf(&path, "%s%s%s.tw", folder, places[k], name);
+            found = file_exists(path.bytes);
+        }
+    }
+    free(folder);
+    char *result_path = found ? text_take(&path) : NULL;
+    text_clear(&path);
+    return result_path;
+}
+
+static char *find_user_file(session *s, const char *file)
+{
+    text path;
+    text_init(&path);
+    if (file[0] != '/') text_add(&path, s->folder);
+    text_add(&path, file);
+    return text_take(&path);
+}
+
+tw_status request_use(session *s, const statement *st, result *r, value **keep)
+{
+    (void)keep;
+    const char *file = st->as.use.file;
+    char *path = file ? find_user_file(s, file) : find_library_file(st->as.use.name.text);
+    if (!path)
+        return request_fail(s, st->as.use.name.at, ERROR_FILE, "the standard library has no file `%s`", st->as.use.name.text);
+    span at = st->at;
+    tw_status status = s->run_file ? s->run_file(s->host, path)
+                                   : engine_fail(s->e, ERROR_UNAVAILABLE, "files cannot be used here");
+    result_restart(r, "use");
+    result_string(r, "file", path);
+    r->echo = true;
+    free(path);
+    return status == TW_OK ? TW_OK : request_fail_at(s, at);
+}
+
+/* ---- drop ---- */
+
+tw_status request_drop(session *s, const statement *st, result *r, value **keep)
+{
+    (void)keep;
+    syntax_name name = st->as.name;
+    declared(r, st);
+    if (names_drop(&s->names, name.text)) return TW_OK;
+    expr *symbol = expr_symbol(s->e, name.text);
+    if (!symbol) return request_fail_at(s, name.at);
+    if (!session_declares(s, symbol)) return session_unknown_name(s, name);
+    facts_forget(s->e, symbol);
+    return TW_OK;
+}

@@ -1,0 +1,450 @@
+/* Requests for numbers: evaluate and compare. */
+#include <stdlib.h>
+#include <string.h>
+
+#include "engine/export/format.h"
+#include "lang/describe.h"
+#include "lang/request.h"
+
+enum { SHOWN_DIGITS = 1000, EXTRA_DIGITS = 2 };
+
+/* ---- one number ---- */
+
+/* What an evaluation is of, and how. */
+typedef struct task {
+    subject x;
+    points points;
+    evaluate_options options;
+    slong digits; /* of quadrature */
+    bool typed_digits;
+} task;
+
+static bool holds_kind(expr *a, expr_kind kind)
+{
+    if (a->kind == kind) return true;
+    for (uint32_t k = 0; k < a->count; k++)
+        if (holds_kind(a->args[k], kind)) return true;
+    return false;
+}
+
+static const char *way_of(expr *a)
+{
+    if (holds_kind(a, EXPR_INTEGRAL) || holds_kind(a, EXPR_CONTOUR)) return "quadrature";
+    return holds_kind(a, EXPR_SUMMATION) ? "summation" : "evaluation";
+}
+
+static tw_status find_number(session *s, number *out, const task *t, const env *at)
+{
+    if (t->x.kept) return evaluate_expansion(s->e, out, &t->x.kept->expansion, at, &t->options);
+    out->label = LABEL_PROVED;
+    out->way = way_of(t->x.expression);
+    out->terms = -1;
+    out->least_term = -1;
+    return quadrature(s->e, out->value, t->x.expression, at, t->digits, !t->typed_digits, NULL);
+}
+
+/* Significant digits to print: what the ball is worth, and of a quadrature not many more than were asked for. */
+static slong digits_shown(const task *t)
+{
+    if (t->x.kept) return t->options.digits > 0 ? t->options.digits + EXTRA_DIGITS : SHOWN_DIGITS;
+    return t->digits + EXTRA_DIGITS;
+}
+
+/* The name of the least term: c[n] of its lane; its place in the order of size where that is not to be had. */
+static tw_status add_least_term(session *s, text *out, expansion *a, slong least)
+{
+    size_t dominant = 0, which = 0;
+    for (size_t k = 0; k < a->contribution_count; k++)
+        if (a->contributions[k].dominant) {
+            dominant++;
+            which = k;
+        }
+    term *terms = NULL;
+    slong found = 0;
+    if (dominant == 1 && expansion_order(s->e, a, which, least + 1, &terms, &found) != TW_OK) {
+        if (s->e->error.kind != ERROR_UNDECIDED) return TW_ERROR;
+        engine_forgive(s->e);
+        terms = NULL;
+    }
+    if (terms && found > least) {
+        text_addf(out, "c[%ld]", (long)terms[least].n);
+        if (a->contributions[which].lane_count > 1) {
+            text_add(out, " of the lane ");
+            const lane *l = &a->contributions[which].lanes[terms[least].lane];
+            expr_print(s->e, out, l->constant);
+            if (l->log_power) text_addf(out, ", log(%s)^%ld", a->large->is.name, (long)l->log_power);
+        }
+    } else {
+        text_addf(out, "number %ld in order of size", (long)least + 1);
+    }
+    free(terms);
+    return TW_OK;
+}
+
+static tw_status tell_terms(session *s, result *r, const task *t, const number *n)
+{
+    if (!t->x.kept || n->terms < 0) return TW_OK;
+    text line;
+    text_init(&line);
+    text_addf(&line, "  %ld of %ld terms kept", (long)n->terms, (long)n->terms_known);
+    tw_status status = TW_OK;
+    if (n->least_term >= 0) {
+        text_add(&line, "; the least term is ");
+        status = add_least_term(s, &line, &t->x.kept->expansion, n->least_term);
+    }
+    result_line(r, "%s", line.bytes);
+    text_clear(&line);
+    return status;
+}
+
+static tw_status tell_number(session *s, result *r, const task *t, const number *n)
+{
+    text value_words;
+    text_init(&value_words);
+    describe_value(&value_words, n->value, digits_shown(t));
+    result_labelled(r, value_words.bytes, label_word(n->label), n->manner);
+    text_clear(&value_words);
+    if (tell_terms(s, r, t, n) != TW_OK) return TW_ERROR;
+    if (strcmp(n->way, "quadrature") == 0) result_line(r, "  certified quadrature");
+    if (n->reason) result_line(r, "  not proved: %s", n->reason);
+    if (!conditions_all_sure(&n->conditions)) result_conditions(r, &n->conditions);
+    return TW_OK;
+}
+
+static tw_status evaluate_one(session *s, result *r, const task *t)
+{
+    env at = points_at(&t->points, 0);
+    number n;
+    number_init(&n);
+    tw_status status = find_number(s, &n, t, &at);
+    if (status == TW_OK) {
+        text object;
+        text_init(&object);
+        json_number(&object, t->x.name, &at, &n, s->e);
+        result_object(r, object.bytes);
+        if (s->let_name) result_string(r, "name", s->let_name);
+        text_clear(&object);
+        status = tell_number(s, r, t, &n);
+    }
+    number_clear(&n);
+    return status;
+}
+
+/* ---- several ---- */
+
+static void add_point_cells(session *s, table *t, const points *p, size_t k)
+{
+    for (size_t c = 0; c < p->width; c++) {
+        text cell;
+        text_init(&cell);
+        expr_print(s->e, &cell, p->values[k * p->width + c]);
+        table_take(t, &cell);
+    }
+}
+
+static tw_status add_number_row(session *s, table *rows, text *json, const task *t, size_t k)
+{
+    env at = points_at(&t->points, k);
+    number n;
+    number_init(&n);
+    tw_status status = find_number(s, &n, t, &at);
+    if (status == TW_OK) {
+        add_point_cells(s, rows, &t->points, k);
+        text cell;
+        text_init(&cell);
+        describe_value(&cell, n.value, digits_shown(t));
+        table_take(rows, &cell);
+        text_add(&cell, label_word(n.label));
+        if (n.manner) text_addf(&cell, ", %s", n.manner);
+        table_take(rows, &cell);
+        json_next(json);
+        json_number(json, t->x.name, &at, &n, s->e);
+    }
+    number_clear(&n);
+    return status;
+}
+
+static tw_status evaluate_several(session *s, result *r, const task *t)
+{
+    result_restart(r, "numbers");
+    result_string(r, "of", t->x.name);
+    table rows;
+    table_init(&rows, t->points.width + 2);
+    for (size_t c = 0; c < t->points.width; c++) table_cell(&rows, t->points.symbols[c]->is.name);
+    table_cell(&rows, "value");
+    table_cell(&rows, "known");
+    text json;
+    text_init(&json);
+    text_add_char(&json, '[');
+    tw_status status = TW_OK;
+    for (size_t k = 0; status == TW_OK && k < t->points.count; k++) {
+        status = budget_ok(s->e) ? TW_OK : TW_ERROR;
+        if (status == TW_OK) status = add_number_row(s, &rows, &json, t, k);
+    }
+    text_add_char(&json, ']');
+    result_json(r, "rows", json.bytes);
+    table_print(&rows, &r->words, "  ");
+    table_clear(&rows);
+    text_clear(&json);
+    return status;
+}
+
+/* ---- evaluate ---- */
+
+static tw_status refuse_later_parts(session *s, const statement *st)
+{
+    if (st->as.evaluate->points_file) return request_unavailable(s, st->at, "evaluate ... at points of");
+    if (st->as.evaluate->to_file) return request_unavailable(s, st->at, "evaluate ... to \"FILE\"");
+    return TW_OK;
+}
+
+static tw_status read_options(session *s, const statement *st, task *t)
+{
+    const syntax *digits = st->as.evaluate->digits, *terms = st->as.evaluate->terms;
+    t->digits = s->digits;
+    t->options = (evaluate_options){0, -1, st->as.evaluate->all_contributions};
+    t->typed_digits = digits != NULL;
+    if (digits && request_count(s, digits, 1, SESSION_DIGITS_LIMIT, "the number of digits", &t->digits) != TW_OK)
+        return TW_ERROR;
+    if (digits) t->options.digits = t->digits;
+    if (terms && request_count(s, terms, 0, 1000000, "the number of terms", &t->options.terms) != TW_OK) return TW_ERROR;
+    if (t->x.kept) return TW_OK;
+    if (terms) return request_fail(s, terms->at, ERROR_VALUE, "`with M terms` is for an expansion; `%s` is none", t->x.name);
+    if (st->as.evaluate->all_contributions)
+        return request_fail(s, st->at, ERROR_VALUE, "`with all contributions` is for an expansion; `%s` is none", t->x.name);
+    return TW_OK;
+}
+
+static tw_status read_points(session *s, const statement *st, const syntax_bindings *at, span place, task *t)
+{
+    (void)st;
+    expr *f = t->x.kept ? t->x.kept->expansion.integral : t->x.expression;
+    if (t->x.kept)
+        return points_read(s, &t->points, at, place, t->x.name, f, t->x.kept->expansion.facts,
+                           t->x.kept->expansion.fact_count);
+    size_t count = facts_count(s->e);
+    expr **facts = base_alloc((count + 1) * sizeof *facts);
+    condition_label known;
+    for (size_t k = 0; k < count; k++) facts[k] = facts_at(s->e, k, &known);
+    tw_status status = points_read(s, &t->points, at, place, t->x.name, f, facts, count);
+    free(facts);
+    return status;
+}
+
+tw_status request_evaluate(session *s, const statement *st, result *r, value **keep)
+{
+    const syntax *subject_words = st->as.evaluate->subject;
+    if (refuse_later_parts(s, st) != TW_OK) return TW_ERROR;
+    task t;
+    memset(&t, 0, sizeof t);
+    if (subject_read(s, &t.x, subject_words) != TW_OK) return TW_ERROR;
+    tw_status status = TW_OK;
+    if (t.x.kept && t.x.kept->kind != VALUE_EXPANSION)
+        status = request_fail(s, subject_words->at, ERROR_VALUE, "`%s` is %s, which has no value at a point", t.x.name,
+                              t.x.kept->what);
+    if (status == TW_OK) status = read_options(s, st, &t);
+    if (status == TW_OK) status = read_points(s, st, &st->as.evaluate->at, subject_words->at, &t);
+    if (status == TW_OK) {
+        status = t.points.count == 1 ? evaluate_one(s, r, &t) : evaluate_several(s, r, &t);
+        if (status != TW_OK) request_fail_at(s, subject_words->at);
+    }
+    if (status == TW_OK && keep) *keep = value_of_result(r, t.points.count == 1 ? "a number" : "a table of numbers");
+    points_clear(&t.points);
+    subject_clear(&t.x);
+    return status;
+}
+
+/* ---- compare ---- */
+
+static void take_decimal(table *t, const acb_t x, slong digits)
+{
+    text cell;
+    text_init(&cell);
+    describe_decimal(&cell, x, digits);
+    table_take(t, &cell);
+}
+
+static void take_real(table *t, const arb_t x, slong digits)
+{
+    acb_t z;
+    acb_init(z);
+    acb_set_arb(z, x);
+    take_decimal(t, z, digits);
+    acb_clear(z);
+}
+
+/* bound/|error| as an interval; false when the error's ball holds 0, then *ratio is a lower bound of it. */
+static bool find_ratio(arb_t ratio, const comparison_row *row)
+{
+    arb_t size;
+    arf_t low;
+    arb_init(size);
+    arf_init(low);
+    acb_abs(size, row->error, 64);
+    arb_get_lbound_arf(low, size, 64);
+    bool known = arf_sgn(low) > 0;
+    if (!known) {
+        arb_get_ubound_arf(low, size, 64);
+        arb_set_arf(size, low);
+    }
+    arb_div(ratio, row->bound, size, 64);
+    arf_clear(low);
+    arb_clear(size);
+    return known;
+}
+
+static void take_ratio(table *t, text *json, const comparison_row *row)
+{
+    arb_t ratio;
+    arb_init(ratio);
+    text cell;
+    text_init(&cell);
+    json_member(json, "ratio");
+    bool known = find_ratio(ratio, row);
+    if (!arb_is_finite(ratio)) {
+        text_add(&cell, "-");
+        text_add(json, "null");
+    } else if (known) {
+        char *words = arb_get_str(ratio, 3, ARB_STR_NO_RADIUS);
+        text_add(&cell, words);
+        flint_free(words);
+        json_ball(json, ratio);
+    } else { /* the error is not resolved: only a lower bound of the ratio is known */
+        arf_t low;
+        arf_init(low);
+        arb_get_lbound_arf(low, ratio, 64);
+        text_addf(&cell, "> %.3g", arf_get_d(low, ARF_RND_DOWN));
+        text_add(json, "null");
+        arf_clear(low);
+    }
+    table_take(t, &cell);
+    arb_clear(ratio);
+}
+
+static void add_complex(text *json, const char *name, const acb_t x)
+{
+    json_member(json, name);
+    text_add(json, "{\"re\": ");
+    json_ball(json, acb_realref(x));
+    text_add(json, ", \"im\": ");
+    json_ball(json, acb_imagref(x));
+    text_add_char(json, '}');
+}
+
+static void add_at(session *s, text *json, const env *at)
+{
+    json_member(json, "at");
+    text_add_char(json, '{');
+    for (size_t k = 0; k < at->count; k++) {
+        json_member(json, at->symbols[k]->is.name);
+        json_expr(s->e, json, at->values[k]);
+    }
+    text_add_char(json, '}');
+}
+
+static void add_comparison_row(session *s, table *t, text *json, const env *at, const comparison_row *row, bool best)
+{
+    text cell;
+    text_init(&cell);
+    text_addf(&cell, "%ld%s", (long)row->terms, best ? " *" : "");
+    table_take(t, &cell);
+    take_decimal(t, row->sum, s->digits);
+    take_decimal(t, row->error, 3);
+    take_real(t, row->bound, 3);
+    json_next(json);
+    text_add_char(json, '{');
+    add_at(s, json, at);
+    json_member(json, "terms");
+    text_addf(json, "%ld", (long)row->terms);
+    add_complex(json, "term", row->term);
+    add_complex(json, "sum", row->sum);
+    add_complex(json, "value", row->value);
+    add_complex(json, "error", row->error);
+    json_member(json, "bound");
+    json_ball(json, row->bound);
+    take_ratio(t, json, row);
+    json_member(json, "label");
+    json_string(json, label_word(row->label));
+    json_member(json, "best");
+    text_add(json, best ? "true" : "false");
+    json_member(json, "violated");
+    text_add(json, row->violated ? "true" : "false");
+    text_add_char(json, '}');
+    table_cell(t, row->violated ? "VIOLATED" : label_word(row->label));
+}
+
+static void add_title(session *s, result *r, const comparison *c, const env *at)
+{
+    text line;
+    text_init(&line);
+    text_add(&line, "at ");
+    for (size_t k = 0; k < at->count; k++) {
+        text_addf(&line, "%s%s = ", k ? ", " : "", at->symbols[k]->is.name);
+        expr_print(s->e, &line, at->values[k]);
+    }
+    if (c->count > 0) {
+        text_add(&line, " the value is ");
+        describe_decimal(&line, c->rows[0].value, s->digits + EXTRA_DIGITS);
+    }
+    result_line(r, "%s", line.bytes);
+    text_clear(&line);
+}
+
+static tw_status compare_point(session *s, result *r, text *json, const task *t, size_t k, bool *violated)
+{
+    static const char *const headings[] = {"terms", "partial sum", "error", "bound", "bound/error", "known"};
+    env at = points_at(&t->points, k);
+    comparison c;
+    comparison_init(&c);
+    tw_status status = compare_expansion(s->e, &c, &t->x.kept->expansion, &at);
+    if (status == TW_OK) {
+        table rows;
+        table_init(&rows, 6);
+        for (size_t h = 0; h < 6; h++) table_cell(&rows, headings[h]);
+        for (size_t n = 0; n < c.count; n++) {
+            add_comparison_row(s, &rows, json, &at, &c.rows[n], (slong)n == c.best);
+            *violated = *violated || c.rows[n].violated;
+        }
+        add_title(s, r, &c, &at);
+        table_print(&rows, &r->words, "  ");
+        table_clear(&rows);
+    }
+    comparison_clear(&c);
+    return status;
+}
+
+static tw_status compare_all(session *s, result *r, const task *t, bool *violated)
+{
+    result_restart(r, "comparison");
+    result_string(r, "of", t->x.name);
+    text json;
+    text_init(&json);
+    text_add_char(&json, '[');
+    tw_status status = TW_OK;
+    for (size_t k = 0; status == TW_OK && k < t->points.count; k++) status = compare_point(s, r, &json, t, k, violated);
+    text_add_char(&json, ']');
+    result_json(r, "rows", json.bytes);
+    text_clear(&json);
+    return status;
+}
+
+tw_status request_compare(session *s, const statement *st, result *r, value **keep)
+{
+    task t;
+    memset(&t, 0, sizeof t);
+    const syntax *subject_words = st->as.compare.subject;
+    if (subject_read_expansion(s, &t.x, subject_words) != TW_OK) return TW_ERROR;
+    bool violated = false;
+    tw_status status = read_points(s, st, &st->as.compare.at, subject_words->at, &t);
+    if (status == TW_OK && compare_all(s, r, &t, &violated) != TW_OK) {
+        result_restart(r, "comparison");
+        status = request_fail_at(s, subject_words->at);
+    }
+    if (status == TW_OK && violated)
+        status = request_fail(s, subject_words->at, ERROR_REFUTED,
+                              "a proved bound is contradicted by the certified value: this is an error of the program");
+    if (status == TW_OK && keep) *keep = value_of_result(r, "a comparison");
+    points_clear(&t.points);
+    subject_clear(&t.x);
+    return status;
+}

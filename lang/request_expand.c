@@ -1,0 +1,132 @@
+/* Requests about expansions: expand, steps, coefficients, remainder. */
+#include <stdlib.h>
+#include <string.h>
+
+#include "engine/method/method.h"
+#include "lang/describe.h"
+#include "lang/request.h"
+
+enum { TERMS_LIMIT = 1000000 };
+
+/* ---- expand ---- */
+
+static tw_status check_method(session *s, syntax_name by)
+{
+    if (!by.text || method_find(by.text)) return TW_OK;
+    if (method_is_planned(by.text)) return request_unavailable(s, by.at, by.text);
+    size_t count;
+    const method *const *methods = method_table(&count);
+    const char **names = base_alloc(count * sizeof *names);
+    for (size_t k = 0; k < count; k++) names[k] = methods[k]->name;
+    request_no_such(s, by, "method", names, count);
+    free(names);
+    return TW_ERROR;
+}
+
+/* How the series line begins: the integral's name, or the integral itself while it is short. */
+static const char *title(const subject *x)
+{
+    return x->is_name || strlen(x->name) <= 48 ? x->name : "integral";
+}
+
+static tw_status tell_expansion(session *s, result *r, const char *name, const subject *x, value *v)
+{
+    result_restart(r, "expansion");
+    if (describe_series(s, r, title(x), &v->expansion) != TW_OK) return TW_ERROR;
+    if (v->expansion.why) result_string(r, "why", v->expansion.why);
+    return s->json ? describe_object(s, r, name, &v->expansion) : TW_OK;
+}
+
+static tw_status expand_subject(session *s, const statement *st, result *r, const subject *x, value *v, slong terms)
+{
+    syntax_name by = st->as.expand->by, as = st->as.expand->as;
+    const char *name = s->let_name ? s->let_name : as.text ? as.text : title(x);
+    if (x->kept)
+        return request_fail(s, st->as.expand->subject->at, ERROR_VALUE, "`%s` is not an integral", x->name);
+    if (expand(s->e, &v->expansion, x->expression, terms, by.text) != TW_OK ||
+        tell_expansion(s, r, name, x, v) != TW_OK)
+        return request_fail_at(s, st->as.expand->subject->at);
+    return TW_OK;
+}
+
+tw_status request_expand(session *s, const statement *st, result *r, value **keep)
+{
+    syntax_name as = st->as.expand->as;
+    slong terms;
+    if (request_count(s, st->as.expand->terms, 1, TERMS_LIMIT, "the number of terms", &terms) != TW_OK ||
+        check_method(s, st->as.expand->by) != TW_OK || (as.text && request_may_define(s, as) != TW_OK))
+        return TW_ERROR;
+    subject x;
+    if (subject_read(s, &x, st->as.expand->subject) != TW_OK) return TW_ERROR;
+    value *v = value_new(VALUE_EXPANSION);
+    tw_status status = expand_subject(s, st, r, &x, v, terms);
+    subject_clear(&x);
+    if (status == TW_OK && as.text) names_set(&s->names, as.text, value_hold(v));
+    if (status == TW_OK && keep) *keep = v;
+    else value_release(v);
+    return status;
+}
+
+/* ---- steps, coefficients, remainder ---- */
+
+static void keep_result(value **keep, const result *r, const char *what)
+{
+    if (keep) *keep = value_of_result(r, what);
+}
+
+tw_status request_steps(session *s, const statement *st, result *r, value **keep)
+{
+    if (!st->as.subject) return request_unavailable(s, st->at, "steps of an open derivation");
+    subject x;
+    if (subject_read_expansion(s, &x, st->as.subject) != TW_OK) return TW_ERROR;
+    result_restart(r, "steps");
+    result_string(r, "of", x.name);
+    const expansion *a = &x.kept->expansion;
+    result_string(r, "why", a->why);
+    if (a->why) result_line(r, "%s", a->why);
+    describe_steps(s, r, &a->derivation);
+    subject_clear(&x);
+    keep_result(keep, r, "steps");
+    return s->e->error.kind == ERROR_NONE ? TW_OK : request_fail_at(s, st->at);
+}
+
+tw_status request_coefficients(session *s, const statement *st, result *r, value **keep)
+{
+    slong from = 0, to = -1;
+    if (st->as.coefficients.from &&
+        (request_count(s, st->as.coefficients.from, 0, TERMS_LIMIT, "the first number", &from) != TW_OK ||
+         request_count(s, st->as.coefficients.to, from, TERMS_LIMIT, "the last number", &to) != TW_OK))
+        return TW_ERROR;
+    subject x;
+    if (subject_read_expansion(s, &x, st->as.coefficients.of) != TW_OK) return TW_ERROR;
+    result_restart(r, "coefficients");
+    result_string(r, "of", x.name);
+    tw_status status = describe_coefficients(s, r, &x.kept->expansion, from, to);
+    subject_clear(&x);
+    if (status != TW_OK) return request_fail_at(s, st->as.coefficients.of->at);
+    keep_result(keep, r, "a table of coefficients");
+    return TW_OK;
+}
+
+tw_status request_remainder(session *s, const statement *st, result *r, value **keep)
+{
+    static const env nowhere = {0, NULL, NULL};
+    slong terms = -1;
+    const syntax *typed = st->as.remainder.terms;
+    if (typed && request_count(s, typed, 0, TERMS_LIMIT, "the number of terms", &terms) != TW_OK) return TW_ERROR;
+    subject x;
+    if (subject_read_expansion(s, &x, st->as.remainder.of) != TW_OK) return TW_ERROR;
+    remainder_bound bound;
+    remainder_bound_init(&bound);
+    tw_status status = remainder_for_all(s->e, &bound, &x.kept->expansion, &nowhere, terms, NULL);
+    if (status == TW_OK) {
+        result_restart(r, "remainder");
+        result_string(r, "of", x.name);
+        describe_remainder(s, r, &x.kept->expansion, &bound);
+    }
+    remainder_bound_clear(&bound);
+    subject_clear(&x);
+    if (status != TW_OK) return request_fail_at(s, st->as.remainder.of->at);
+    keep_result(keep, r, "a bound of the remainder");
+    return TW_OK;
+}
