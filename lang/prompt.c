@@ -17,6 +17,7 @@
 #include "engine/expr/function.h"
 #include "lang/file.h"
 #include "lang/interrupt.h"
+#include "lang/parse.h"
 #include "lang/words.h"
 
 enum { HISTORY_LENGTH = 1000 };
@@ -63,24 +64,31 @@ static void keep_history(void)
     prompt.history_file = NULL;
 }
 
-/* A whole statement becomes one entry. Its line ends become spaces, which mean the same, unless a comment stands in it. */
-static void remember(const char *words, size_t length)
+static void add_entry(const char *words, size_t length)
 {
+    while (length > 0 && strchr(" \n", words[length - 1])) length--;
     char *entry = base_alloc(length + 1);
     memcpy(entry, words, length);
     entry[length] = '\0';
-    bool one = strchr(entry, '#') == NULL;
-    char *rest = entry;
-    for (char *line = strsep(&rest, "\n"); line; line = strsep(&rest, "\n")) {
-        if (one && rest) rest[-1] = ' ';
-        else if (one || *line) {
-            char *from = one ? entry : line;
-            for (size_t n = strlen(from); n > 0 && from[n - 1] == ' '; n--) from[n - 1] = '\0';
-            HIST_ENTRY *last = history_length > 0 ? history_get(history_base + history_length - 1) : NULL;
-            if (*from && !(last && strcmp(last->line, from) == 0)) add_history(from);
-        }
-    }
+    for (char *p = entry; *p; p++)
+        if (*p == '\n') *p = ' ';
+    HIST_ENTRY *last = history_length > 0 ? history_get(history_base + history_length - 1) : NULL;
+    if (*entry && !(last && strcmp(last->line, entry) == 0)) add_history(entry);
     free(entry);
+}
+
+/* A whole statement becomes one entry: its line ends turn into spaces, which mean the same, unless a comment stands in it. */
+static void remember(const char *words, size_t length)
+{
+    const char *start = words, *end = words + length;
+    for (const char *line = words; line < end;) {
+        const char *next = memchr(line, '\n', (size_t)(end - line));
+        line = next ? next + 1 : end;
+        bool comment = memchr(start, '#', (size_t)(line - start)) != NULL;
+        if (!comment && line < end && parse_wants_more(start, (size_t)(line - start))) continue;
+        add_entry(start, (size_t)(line - start));
+        start = line;
+    }
 }
 
 /* ---- completion ---- */

@@ -13,25 +13,25 @@
 /* Statements without a row are read and answered as not available. */
 static const struct {
     request_function *run;
-    bool declares; /* changes facts or, through other statements, names as it goes: taken back on failure */
+    enum { CHANGES_LAST, CHANGES_FACTS, CHANGES_ALL } care; /* what it changes as it goes: taken back on failure */
 } requests[STATEMENT_KIND_COUNT] = {
-    [STATEMENT_LARGE] = {request_large, true},
-    [STATEMENT_SMALL] = {request_small, true},
-    [STATEMENT_GIVEN] = {request_given, true},
-    [STATEMENT_GRANT] = {request_grant, true},
-    [STATEMENT_USE] = {request_use, true},
-    [STATEMENT_DROP] = {request_drop, true},
-    [STATEMENT_LET] = {request_let, false},
-    [STATEMENT_EXPAND] = {request_expand, false},
-    [STATEMENT_STEPS] = {request_steps, false},
-    [STATEMENT_COEFFICIENTS] = {request_coefficients, false},
-    [STATEMENT_REMAINDER] = {request_remainder, false},
-    [STATEMENT_EVALUATE] = {request_evaluate, false},
-    [STATEMENT_COMPARE] = {request_compare, false},
-    [STATEMENT_WRITE] = {request_write, false},
-    [STATEMENT_SHOW] = {request_show, false},
-    [STATEMENT_HELP] = {request_help, false},
-    [STATEMENT_QUIT] = {request_quit, false},
+    [STATEMENT_LARGE] = {request_large, CHANGES_FACTS},
+    [STATEMENT_SMALL] = {request_small, CHANGES_FACTS},
+    [STATEMENT_GIVEN] = {request_given, CHANGES_FACTS},
+    [STATEMENT_GRANT] = {request_grant, CHANGES_FACTS},
+    [STATEMENT_USE] = {request_use, CHANGES_ALL},
+    [STATEMENT_DROP] = {request_drop, CHANGES_FACTS},
+    [STATEMENT_LET] = {request_let, CHANGES_LAST},
+    [STATEMENT_EXPAND] = {request_expand, CHANGES_LAST},
+    [STATEMENT_STEPS] = {request_steps, CHANGES_LAST},
+    [STATEMENT_COEFFICIENTS] = {request_coefficients, CHANGES_LAST},
+    [STATEMENT_REMAINDER] = {request_remainder, CHANGES_LAST},
+    [STATEMENT_EVALUATE] = {request_evaluate, CHANGES_LAST},
+    [STATEMENT_COMPARE] = {request_compare, CHANGES_LAST},
+    [STATEMENT_WRITE] = {request_write, CHANGES_LAST},
+    [STATEMENT_SHOW] = {request_show, CHANGES_LAST},
+    [STATEMENT_HELP] = {request_help, CHANGES_LAST},
+    [STATEMENT_QUIT] = {request_quit, CHANGES_LAST},
 };
 
 tw_status request_run(session *s, const statement *st, result *r, value **keep)
@@ -44,6 +44,7 @@ tw_status request_run(session *s, const statement *st, result *r, value **keep)
 /* ---- taking back ---- */
 
 typedef struct mark {
+    bool with_names;
     name_table names;
     size_t fact_count;
     expr **facts;
@@ -52,10 +53,11 @@ typedef struct mark {
     expr *large;
 } mark;
 
-static void mark_set(session *s, mark *m)
+static void mark_set(session *s, mark *m, bool with_names)
 {
     memset(m, 0, sizeof *m);
-    for (size_t k = 0; k < s->names.room; k++)
+    m->with_names = with_names;
+    for (size_t k = 0; with_names && k < s->names.room; k++)
         if (s->names.entries[k].name) names_set(&m->names, s->names.entries[k].name, value_hold(s->names.entries[k].value));
     m->fact_count = facts_count(s->e);
     m->facts = base_alloc((m->fact_count + 1) * sizeof *m->facts);
@@ -73,9 +75,11 @@ static void mark_clear(mark *m)
 
 static void mark_restore(session *s, mark *m)
 {
-    name_table failed = s->names;
-    s->names = m->names;
-    m->names = failed;
+    if (m->with_names) {
+        name_table failed = s->names;
+        s->names = m->names;
+        m->names = failed;
+    }
     facts_clear(s->e);
     facts_init(s->e);
     if (m->kind != LARGE_NONE) (void)facts_set_large(s->e, m->large, m->kind, NULL, NULL);
@@ -100,7 +104,7 @@ static tw_status run_marked(void *host)
 {
     job *j = host;
     mark m;
-    mark_set(j->s, &m);
+    mark_set(j->s, &m, requests[j->st->kind].care == CHANGES_ALL);
     tw_status status = engine_protect(j->s->e, run_job, j);
     if (status != TW_OK) mark_restore(j->s, &m);
     mark_clear(&m);
@@ -112,7 +116,8 @@ tw_status session_run(session *s, const statement *st, result *r)
     job j = {s, st, r};
     s->at = st->at;
     s->let_name = NULL;
-    tw_status status = engine_protect(s->e, requests[st->kind].declares ? run_marked : run_job, &j);
+    engine_forgive(s->e);
+    tw_status status = engine_protect(s->e, requests[st->kind].care != CHANGES_LAST ? run_marked : run_job, &j);
     s->let_name = NULL;
     if (status != TW_OK && s->e->error.kind != ERROR_REFUTED) text_cut(&r->words, 0);
     return status;
