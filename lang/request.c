@@ -7,6 +7,7 @@
 
 #include "engine/ball/decide.h"
 #include "lang/suggest.h"
+#include "lang/words.h"
 
 enum { POINTS_LIMIT = 100000 };
 
@@ -52,24 +53,20 @@ tw_status request_no_such(session *s, syntax_name wrong, const char *what, const
     return TW_ERROR;
 }
 
-tw_status request_count(session *s, const syntax *x, slong least, slong most, const char *what, slong *out)
-{
-    expr *a = session_lower(s, x);
-    if (!a) return TW_ERROR;
-    const fmpq *q = expr_is_number(a) ? expr_number(a) : NULL;
-    if (!q || !fmpz_is_one(fmpq_denref(q)) || fmpz_cmp_si(fmpq_numref(q), least) < 0 ||
-        fmpz_cmp_si(fmpq_numref(q), most) > 0)
-        return request_fail(s, x->at, ERROR_VALUE, "%s must be a whole number from %ld to %ld", what, (long)least,
-                            (long)most);
-    *out = fmpz_get_si(fmpq_numref(q));
-    return TW_OK;
-}
-
 /* ---- subjects ---- */
+
+/* A bare name that is neither defined nor declared nor a constant. */
+static bool means_nothing(session *s, const syntax *x)
+{
+    if (x->kind != SYNTAX_NAME || word_is_reserved(x->as.name) || names_find(&s->names, x->as.name)) return false;
+    expr *symbol = expr_symbol(s->e, x->as.name);
+    return symbol && !session_declares(s, symbol);
+}
 
 tw_status subject_read(session *s, subject *out, const syntax *x)
 {
     memset(out, 0, sizeof *out);
+    if (means_nothing(s, x)) return session_unknown_name(s, (syntax_name){x->as.name, x->at});
     value *v = x->kind == SYNTAX_NAME ? names_find(&s->names, x->as.name) : NULL;
     if (v && v->kind == VALUE_FUNCTION)
         return request_fail(s, x->at, ERROR_VALUE, "`%s` is a function; write it with its arguments", x->as.name);
@@ -162,7 +159,7 @@ static tw_status sweep_steps(session *s, const syntax_binding *b, expr *from, ex
 static tw_status sweep_points(session *s, const syntax_binding *b, expr *from, expr *to, values *out)
 {
     slong count;
-    if (request_count(s, b->points, 2, POINTS_LIMIT, "the number of points", &count) != TW_OK) return TW_ERROR;
+    if (session_lower_count(s, b->points, "the number of points", 2, POINTS_LIMIT, &count) != TW_OK) return TW_ERROR;
     if (b->log_scale && (decide_sign(s->e, from) != 1 || decide_sign(s->e, to) != 1))
         return request_fail(s, b->from->at, ERROR_VALUE, "a log scale needs positive ends");
     expr *range = b->log_scale ? expr_div(s->e, to, from) : expr_sub(s->e, to, from);

@@ -15,9 +15,6 @@ tw_status request_unavailable(session *s, span at, const char *words);
 /* "no method is called `x`; did you mean `y`?", or the list of what there is. */
 tw_status request_no_such(session *s, syntax_name wrong, const char *what, const char *const *names, size_t count);
 
-/* A whole number from `least` to `most` that stands at x; what: "the number of terms". */
-tw_status request_count(session *s, const syntax *x, slong least, slong most, const char *what, slong *out);
-
 /* What a request is about: an expansion or another kept value, or an expression. */
 typedef struct subject {
     char *name;       /* its name, or the expression as typed */

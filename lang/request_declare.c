@@ -73,13 +73,15 @@ static tw_status declare_conditions(session *s, const statement *st, condition_l
 {
     for (size_t k = 0; k < st->as.given.count; k++) {
         const syntax *x = st->as.given.list[k];
-        expr **conditions;
-        size_t count;
-        if (session_lower_condition(s, x, &conditions, &count) != TW_OK) return TW_ERROR;
-        tw_status status = TW_OK;
-        for (size_t c = 0; status == TW_OK && c < count; c++) status = facts_add(s->e, conditions[c], known);
-        free(conditions);
-        if (status != TW_OK) return request_fail_at(s, x->at);
+        lower_conditions said;
+        lower_conditions_init(&said);
+        tw_status status = session_lower_condition(s, x, &said);
+        for (size_t c = 0; status == TW_OK && c < said.count; c++) {
+            s->at = x->at;
+            status = facts_add(s->e, said.list[c], known);
+        }
+        lower_conditions_clear(&said);
+        if (status != TW_OK) return TW_ERROR;
     }
     return TW_OK;
 }
@@ -205,19 +207,12 @@ static tw_status let_function(session *s, const statement *st, result *r)
 {
     syntax_name name = st->as.let.name;
     value *v = value_new(VALUE_FUNCTION);
-    v->count = st->as.let.count;
-    v->parameters = base_alloc((v->count + 1) * sizeof *v->parameters);
-    v->parameter_names = base_alloc((v->count + 1) * sizeof *v->parameter_names);
-    memset(v->parameter_names, 0, (v->count + 1) * sizeof *v->parameter_names);
-    for (size_t k = 0; k < v->count; k++) {
-        v->parameter_names[k] = base_copy(st->as.let.parameters[k].text);
-        v->parameters[k] = expr_fresh(s->e, v->parameter_names[k]);
-    }
-    v->expression = session_lower_function(s, st->as.let.value, st->as.let.parameters, v->parameters, v->count);
-    if (!v->expression) {
+    if (session_lower_function(s, st->as.let.parameters, st->as.let.count, st->as.let.value, &v->function) != TW_OK) {
         value_release(v);
         return TW_ERROR;
     }
+    v->parameter_names = base_alloc((v->function.count + 1) * sizeof *v->parameter_names);
+    for (size_t k = 0; k < v->function.count; k++) v->parameter_names[k] = base_copy(st->as.let.parameters[k].text);
     define(s, r, name, "function");
     text words;
     text_init(&words);

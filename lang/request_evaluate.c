@@ -172,7 +172,7 @@ static tw_status evaluate_several(session *s, result *r, const task *t)
     table_init(&rows, t->points.width + 2);
     for (size_t c = 0; c < t->points.width; c++) table_cell(&rows, t->points.symbols[c]->is.name);
     table_cell(&rows, "value");
-    table_cell(&rows, "known");
+    table_cell(&rows, "label");
     text json;
     text_init(&json);
     text_add_char(&json, '[');
@@ -204,10 +204,10 @@ static tw_status read_options(session *s, const statement *st, task *t)
     t->digits = s->digits;
     t->options = (evaluate_options){0, -1, st->as.evaluate->all_contributions};
     t->typed_digits = digits != NULL;
-    if (digits && request_count(s, digits, 1, SESSION_DIGITS_LIMIT, "the number of digits", &t->digits) != TW_OK)
+    if (digits && session_lower_count(s, digits, "the number of digits", 1, SESSION_DIGITS_LIMIT, &t->digits) != TW_OK)
         return TW_ERROR;
     if (digits) t->options.digits = t->digits;
-    if (terms && request_count(s, terms, 0, 1000000, "the number of terms", &t->options.terms) != TW_OK) return TW_ERROR;
+    if (terms && session_lower_count(s, terms, "the number of terms", 0, 1000000, &t->options.terms) != TW_OK) return TW_ERROR;
     if (t->x.kept) return TW_OK;
     if (terms) return request_fail(s, terms->at, ERROR_VALUE, "`with M terms` is for an expansion; `%s` is none", t->x.name);
     if (st->as.evaluate->all_contributions)
@@ -392,7 +392,7 @@ static void add_title(session *s, result *r, const comparison *c, const env *at)
 
 static tw_status compare_point(session *s, result *r, text *json, const task *t, size_t k, bool *violated)
 {
-    static const char *const headings[] = {"terms", "partial sum", "error", "bound", "bound/error", "known"};
+    static const char *const headings[] = {"terms", "partial sum", "error", "bound", "bound/error", "label"};
     env at = points_at(&t->points, k);
     comparison c;
     comparison_init(&c);

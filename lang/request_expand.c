@@ -53,7 +53,7 @@ tw_status request_expand(session *s, const statement *st, result *r, value **kee
 {
     syntax_name as = st->as.expand->as;
     slong terms;
-    if (request_count(s, st->as.expand->terms, 1, TERMS_LIMIT, "the number of terms", &terms) != TW_OK ||
+    if (session_lower_count(s, st->as.expand->terms, "the number of terms", 1, TERMS_LIMIT, &terms) != TW_OK ||
         check_method(s, st->as.expand->by) != TW_OK || (as.text && request_may_define(s, as) != TW_OK))
         return TW_ERROR;
     subject x;
@@ -94,8 +94,8 @@ tw_status request_coefficients(session *s, const statement *st, result *r, value
 {
     slong from = 0, to = -1;
     if (st->as.coefficients.from &&
-        (request_count(s, st->as.coefficients.from, 0, TERMS_LIMIT, "the first number", &from) != TW_OK ||
-         request_count(s, st->as.coefficients.to, from, TERMS_LIMIT, "the last number", &to) != TW_OK))
+        (session_lower_count(s, st->as.coefficients.from, "the first number", 0, TERMS_LIMIT, &from) != TW_OK ||
+         session_lower_count(s, st->as.coefficients.to, "the last number", from, TERMS_LIMIT, &to) != TW_OK))
         return TW_ERROR;
     subject x;
     if (subject_read_expansion(s, &x, st->as.coefficients.of) != TW_OK) return TW_ERROR;
@@ -113,7 +113,7 @@ tw_status request_remainder(session *s, const statement *st, result *r, value **
     static const env nowhere = {0, NULL, NULL};
     slong terms = -1;
     const syntax *typed = st->as.remainder.terms;
-    if (typed && request_count(s, typed, 0, TERMS_LIMIT, "the number of terms", &terms) != TW_OK) return TW_ERROR;
+    if (typed && session_lower_count(s, typed, "the number of terms", 0, TERMS_LIMIT, &terms) != TW_OK) return TW_ERROR;
     subject x;
     if (subject_read_expansion(s, &x, st->as.remainder.of) != TW_OK) return TW_ERROR;
     remainder_bound bound;

@@ -94,14 +94,12 @@ void result_json(result *r, const char *name, const char *json)
 
 void result_line(result *r, const char *form, ...)
 {
-    va_list args, again;
+    va_list args;
     va_start(args, form);
-    va_copy(again, args);
-    int length = vsnprintf(NULL, 0, form, args);
+    char *line;
+    int length = vasprintf(&line, form, args);
     va_end(args);
-    char *line = base_alloc((size_t)length + 1);
-    vsnprintf(line, (size_t)length + 1, form, again);
-    va_end(again);
+    if (length < 0) return;
     text_add(&r->words, line);
     text_add_char(&r->words, '\n');
     free(line);

@@ -134,7 +134,125 @@ void session_describe(const statement *st, text *out)
     }
 }
 
+/* ---- names within expressions ---- */
+
+static lower_meaning meaning_of(void *host, const char *name, expr **stands_for, const char **what)
+{
+    session *s = host;
+    value *v = names_find(&s->names, name);
+    if (!v || v->kind == VALUE_FUNCTION) {
+        expr *symbol = expr_symbol(s->e, name);
+        return symbol && session_declares(s, symbol) ? MEANING_DECLARED : MEANING_FREE;
+    }
+    *stands_for = v->expression;
+    if (v->kind == VALUE_EXPRESSION) return MEANING_VALUE;
+    s->met_expansion = s->met_expansion || v->kind == VALUE_EXPANSION;
+    *what = v->kind == VALUE_EXPANSION ? "an expansion" : v->what;
+    return MEANING_OTHER;
+}
+
+static const lower_function *function_of(void *host, const char *name)
+{
+    session *s = host;
+    value *v = names_find(&s->names, name);
+    return v && v->kind == VALUE_FUNCTION ? &v->function : NULL;
+}
+
+typedef struct function_offer {
+    session *s;
+    suggestion *to;
+} function_offer;
+
+static void offer_if_function(void *host, const char *name)
+{
+    function_offer *o = host;
+    if (function_of(o->s, name)) suggestion_offer(o->to, name);
+}
+
+static void offer_functions(void *host, suggestion *to)
+{
+    session *s = host;
+    function_offer o = {s, to};
+    names_each(&s->names, offer_if_function, &o);
+}
+
+static void lowering_start(session *s, lowering *l)
+{
+    lowering_init(l, s->e, s);
+    l->meaning = meaning_of;
+    l->function = function_of;
+    l->offer_functions = offer_functions;
+    s->met_expansion = false;
+}
+
+/* Ends it; a failure's place becomes the session's. Expansions within expressions belong to a later version. */
+static tw_status lowering_end(session *s, lowering *l, bool good, span whole)
+{
+    if (!good) s->at = l->failed ? l->place : whole;
+    lowering_clear(l);
+    if (good) return TW_OK;
+    if (s->met_expansion && s->e->error.kind == ERROR_NAME) {
+        engine_forgive(s->e);
+        return request_fail(s, s->at, ERROR_UNAVAILABLE, "arithmetic with expansions is not available in this version");
+    }
+    return TW_ERROR;
+}
+
+expr *session_lower(session *s, const syntax *x)
+{
+    if (syntax_is_condition(x)) {
+        request_fail(s, x->at, ERROR_VALUE, "a condition is no value");
+        return NULL;
+    }
+    lowering l;
+    lowering_start(s, &l);
+    expr *a = lower_expression(&l, x);
+    return lowering_end(s, &l, a != NULL, x->at) == TW_OK ? a : NULL;
+}
+
+tw_status session_lower_function(session *s, const syntax_name *parameters, size_t count, const syntax *body,
+                                 lower_function *out)
+{
+    lowering l;
+    lowering_start(s, &l);
+    tw_status status = lower_function_define(&l, parameters, count, body, out);
+    return lowering_end(s, &l, status == TW_OK, body->at);
+}
+
+tw_status session_lower_condition(session *s, const syntax *x, lower_conditions *out)
+{
+    lowering l;
+    lowering_start(s, &l);
+    tw_status status = lower_condition(&l, x, out);
+    return lowering_end(s, &l, status == TW_OK, x->at);
+}
+
+tw_status session_lower_count(session *s, const syntax *x, const char *what, slong least, slong most, slong *out)
+{
+    lowering l;
+    lowering_start(s, &l);
+    tw_status status = lower_count(&l, x, what, least, most, out);
+    return lowering_end(s, &l, status == TW_OK, x->at);
+}
+
 /* ---- questions ---- */
+
+static void offer_name(void *host, const char *name)
+{
+    suggestion_offer(host, name);
+}
+
+tw_status session_unknown_name(session *s, syntax_name name)
+{
+    suggestion near;
+    suggestion_init(&near, name.text);
+    names_each(&s->names, offer_name, &near);
+    expr *large;
+    if (facts_large(s->e, &large) != LARGE_NONE) suggestion_offer(&near, large->is.name);
+    if (near.best)
+        return request_fail(s, name.at, ERROR_NAME, "`%s` is not defined; did you mean `%s`?", name.text, near.best);
+    return request_fail(s, name.at, ERROR_NAME, "`%s` is not defined", name.text);
+}
 
 bool session_declares(session *s, expr *symbol)
 {

@@ -7,6 +7,7 @@
 
 #include "engine/method/expansion.h"
 #include "engine/numeric/evaluate.h"
+#include "lang/lower.h"
 #include "lang/result.h"
 #include "lang/syntax.h"
 
@@ -20,9 +21,8 @@ typedef enum value_kind {
 typedef struct value {
     value_kind kind;
     unsigned holders;      /* names and running requests that hold it */
-    expr *expression;      /* EXPRESSION; FUNCTION: the body */
-    size_t count;          /* FUNCTION: its parameters, fresh symbols in the body, with the names to print */
-    expr **parameters;
+    expr *expression;      /* EXPRESSION */
+    lower_function function; /* FUNCTION, with the names of its parameters to print */
     char **parameter_names;
     expansion expansion;   /* EXPANSION */
     result result;         /* RESULT */
@@ -61,6 +61,7 @@ typedef struct session {
     const char *folder;    /* where `use "FILE"` looks: the folder of the file that runs, "" for the working folder */
     bool quit;             /* `quit` has run */
     span at;               /* after a failure: where in the statement's source */
+    bool met_expansion;    /* an expression named an expansion: said when it cannot be built */
     const char *let_name;  /* the name behind a `let` whose request runs, else NULL */
     /* Runs a file for `use` and says whether all of it succeeded; set by the host. */
     tw_status (*run_file)(void *host, const char *path);
@@ -81,10 +82,11 @@ void session_describe(const statement *st, text *out);
 
 /* The expression that x means now, names put in; NULL with the error set. */
 expr *session_lower(session *s, const syntax *x);
-/* The same with parameters of a function: names[k] means symbols[k]. */
-expr *session_lower_function(session *s, const syntax *x, const syntax_name *names, expr *const *symbols, size_t count);
-/* A condition as one or more relations (`0 < p < 1` is two) into a fresh array (free() it). */
-tw_status session_lower_condition(session *s, const syntax *x, expr ***relations, size_t *count);
+tw_status session_lower_function(session *s, const syntax_name *parameters, size_t count, const syntax *body,
+                                 lower_function *out);
+/* Appends the relations that a condition says: `0 < p < 1` says two. */
+tw_status session_lower_condition(session *s, const syntax *x, lower_conditions *out);
+tw_status session_lower_count(session *s, const syntax *x, const char *what, slong least, slong most, slong *out);
 
 /* Is something declared of the symbol: a fact, or that it is the large or small parameter? */
 bool session_declares(session *s, expr *symbol);

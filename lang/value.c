@@ -29,9 +29,8 @@ void value_release(value *v)
     if (!v || --v->holders > 0) return;
     if (v->kind == VALUE_EXPANSION) expansion_clear(&v->expansion);
     if (v->kind == VALUE_RESULT) result_clear(&v->result);
-    for (size_t k = 0; k < v->count; k++) free(v->parameter_names[k]);
+    for (size_t k = 0; v->parameter_names && k < v->function.count; k++) free(v->parameter_names[k]);
     free(v->parameter_names);
-    free(v->parameters);
     free(v);
 }
 
@@ -53,13 +52,14 @@ void value_print(tw_engine *e, text *out, const char *name, const value *v)
         expr_print(e, out, v->expression);
         return;
     }
-    expr **named = base_alloc((v->count + 1) * sizeof *named);
-    for (size_t k = 0; k < v->count; k++) {
+    const lower_function *f = &v->function;
+    expr **named = base_alloc((f->count + 1) * sizeof *named);
+    for (size_t k = 0; k < f->count; k++) {
         named[k] = expr_symbol(e, v->parameter_names[k]);
         text_addf(out, "%s%s", k ? ", " : "(", v->parameter_names[k]);
     }
-    text_add(out, v->count ? ") = " : "() = ");
-    expr *body = expr_substitute_all(e, v->expression, v->parameters, named, v->count);
+    text_add(out, ") = ");
+    expr *body = expr_substitute_all(e, f->body, f->parameters, named, f->count);
     if (body) expr_print(e, out, body);
     free(named);
 }

@@ -1,7 +1,7 @@
 """Every word of the language has help, and its example does what the help says. usage: run_help.py BUILD
 
-The words come from the program itself (`help` as JSON) and from the tables that the parser and completion use, so a word
-without help fails here. An example of a word that this version has must run; one of a later word must be read and refused with
+The words come from the program itself (`help` as JSON) and from the table of statements that the parser uses, so a statement
+without help fails here (the table of all words is held against help in tests/lang/test_result.c). An example of a word that this version has must run; one of a later word must be read and refused with
 the words `not available in this version`."""
 import concurrent.futures
 import json
@@ -52,7 +52,6 @@ def check(word):
 
 
 words = json.loads(run("help\n", "--results", "json").stdout)["words"]
-table = open(os.path.join(here, "lang", "words.c"), encoding="utf-8").read()
 statements = open(os.path.join(here, "lang", "syntax.h"), encoding="utf-8").read()
 opening = {w.split()[0] for w in re.findall(r'X\([A-Z_]+, "([a-z ]+)"\)', statements)}
 opening -= {"expansion"}  # stands after `let NAME =` only
