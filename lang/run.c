@@ -26,6 +26,12 @@ static void worsen(run *r, int status)
 
 static void show_error_object(run *r, error_kind kind, const char *words, const char *file, const source_place *place)
 {
+    if (r->depth > 0) { /* the `use` that started it says it in its own object */
+        text_cut(&r->inner, 0);
+        if (place) text_addf(&r->inner, "%s:%u:%u: ", file, place->line, place->column);
+        text_add(&r->inner, words);
+        return;
+    }
     if (!r->options.json) return;
     result object;
     result_init(&object, "error");
@@ -205,52 +211,80 @@ bool run_words(run *r, const char *name, const char *words)
     return run_source(r, &whole, 0);
 }
 
+/* Runs the bytes of a file; `use` within it looks beside it. */
+static bool run_bytes(run *r, const char *path, const text *bytes)
+{
+    if (too_long(r, path, bytes->length)) return false;
+    const char *before = r->session.folder;
+    char *folder = file_folder(path);
+    r->session.folder = folder;
+    source whole;
+    source_init(&whole, path, bytes->bytes, bytes->length);
+    bool go_on = run_source(r, &whole, 0);
+    r->session.folder = before;
+    free(folder);
+    return go_on;
+}
+
 bool run_file(run *r, const char *path)
 {
     text bytes, why;
     text_init(&bytes);
     text_init(&why);
     bool go_on = file_read(path, &bytes, &why);
-    if (!go_on) {
+    if (go_on) {
+        go_on = run_bytes(r, path, &bytes);
+    } else {
         run_complain(r, ERROR_FILE, path, why.bytes);
         go_on = r->options.keep_going || r->options.parse_only;
-    } else if (too_long(r, path, bytes.length)) {
-        go_on = false;
-    } else {
-        const char *before = r->session.folder;
-        char *folder = file_folder(path);
-        r->session.folder = folder;
-        source whole;
-        source_init(&whole, path, bytes.bytes, bytes.length);
-        go_on = run_source(r, &whole, 0);
-        r->session.folder = before;
-        free(folder);
     }
     text_clear(&bytes);
     text_clear(&why);
     return go_on;
 }
 
-/* `use`: the file's statements run in the same session, echoes are silent, the first failure ends it. */
+/* ---- use ---- */
+
+static tw_status refuse_circle(run *r, const char *path)
+{
+    for (const use_frame *f = r->uses; f; f = f->outer)
+        if (strcmp(f->path, path) == 0)
+            return engine_fail(r->session.e, ERROR_FILE, "\"%s\" uses itself", path);
+    if (r->depth < USE_DEPTH_LIMIT) return TW_OK;
+    return engine_fail(r->session.e, ERROR_FILE, "files use one another more than %d deep", USE_DEPTH_LIMIT);
+}
+
+/* The worst that happened inside counts for the program, too. */
+static tw_status run_used(run *r, const char *path, const text *bytes)
+{
+    int before = r->status;
+    use_frame frame = {path, r->uses};
+    r->uses = &frame;
+    r->status = EXIT_DONE;
+    r->depth++;
+    bool good = run_bytes(r, path, bytes);
+    r->depth--;
+    r->uses = frame.outer;
+    int inner = r->status;
+    r->status = before > inner ? before : inner;
+    if (r->session.quit || (good && inner == EXIT_DONE)) return TW_OK;
+    error_kind kind = inner == EXIT_INTERRUPTED ? ERROR_INTERRUPT : inner == EXIT_REFUTED ? ERROR_REFUTED : ERROR_FILE;
+    return engine_fail(r->session.e, kind, "\"%s\" did not run to its end (%.300s)", path, r->inner.bytes);
+}
+
+/* The file's statements run in the same session; definitions do not echo, the first failure ends it. */
 static tw_status use_file(void *host, const char *path)
 {
     run *r = host;
-    tw_engine *e = r->session.e;
-    if (r->depth >= USE_DEPTH_LIMIT)
-        return engine_fail(e, ERROR_FILE, "files use one another more than %d deep; does \"%s\" use itself?",
-                           USE_DEPTH_LIMIT, path);
-    int before = r->status;
-    r->status = EXIT_DONE;
-    r->depth++;
-    bool good = run_file(r, path);
-    r->depth--;
-    if (r->status > EXIT_DONE) good = false;
-    int inner = r->status;
-    r->status = before;
-    worsen(r, inner);
-    if (good || r->session.quit) return TW_OK;
-    return engine_fail(e, inner == EXIT_INTERRUPTED ? ERROR_INTERRUPT : inner == EXIT_REFUTED ? ERROR_REFUTED : ERROR_FILE,
-                       "\"%s\" did not run to its end", path);
+    if (refuse_circle(r, path) != TW_OK) return TW_ERROR;
+    text bytes, why;
+    text_init(&bytes);
+    text_init(&why);
+    tw_status status = file_read(path, &bytes, &why) ? run_used(r, path, &bytes)
+                                                     : engine_fail(r->session.e, ERROR_FILE, "%s", why.bytes);
+    text_clear(&bytes);
+    text_clear(&why);
+    return status;
 }
 
 /* ---- lines as they come ---- */
@@ -347,6 +381,7 @@ bool run_init(run *r, const run_options *options)
 {
     memset(r, 0, sizeof *r);
     r->options = *options;
+    text_init(&r->inner);
     if (session_init(&r->session) != TW_OK) {
         fputs("termwise: error: no memory for an engine\n", stderr);
         return false;
@@ -366,4 +401,5 @@ void run_clear(run *r)
 {
     interrupt_remove();
     session_clear(&r->session);
+    text_clear(&r->inner);
 }

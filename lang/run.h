@@ -17,6 +17,12 @@ typedef struct run_options {
 /* Exit statuses of the program. */
 enum { EXIT_DONE = 0, EXIT_FAILED = 1, EXIT_USAGE = 2, EXIT_REFUTED = 3, EXIT_INTERRUPTED = 130 };
 
+/* The files that `use` is running, innermost first. */
+typedef struct use_frame {
+    const char *path;
+    struct use_frame *outer;
+} use_frame;
+
 typedef struct run {
     run_options options;
     session session;
@@ -24,6 +30,8 @@ typedef struct run {
     bool at_prompt;        /* a failed statement stops nothing */
     bool colour;           /* on standard error */
     unsigned depth;        /* of `use` within `use` */
+    use_frame *uses;
+    text inner;            /* the last complaint within a used file */
 } run;
 
 /* Lines as they come, from a pipe or from the prompt: statements run as soon as they are complete. */
