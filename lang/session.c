@@ -44,46 +44,31 @@ tw_status request_run(session *s, const statement *st, result *r, value **keep)
 /* ---- taking back ---- */
 
 typedef struct mark {
+    struct facts *facts;
     bool with_names;
     name_table names;
-    size_t fact_count;
-    expr **facts;
-    condition_label *labels;
-    large_kind kind;
-    expr *large;
 } mark;
 
 static void mark_set(session *s, mark *m, bool with_names)
 {
     memset(m, 0, sizeof *m);
+    m->facts = facts_copy(s->e);
     m->with_names = with_names;
     for (size_t k = 0; with_names && k < s->names.room; k++)
         if (s->names.entries[k].name) names_set(&m->names, s->names.entries[k].name, value_hold(s->names.entries[k].value));
-    m->fact_count = facts_count(s->e);
-    m->facts = base_alloc((m->fact_count + 1) * sizeof *m->facts);
-    m->labels = base_alloc((m->fact_count + 1) * sizeof *m->labels);
-    for (size_t k = 0; k < m->fact_count; k++) m->facts[k] = facts_at(s->e, k, &m->labels[k]);
-    m->kind = facts_large(s->e, &m->large);
 }
 
-static void mark_clear(mark *m)
+/* Ends the mark: back to it, or on from here. */
+static void mark_end(session *s, mark *m, bool back)
 {
-    names_clear(&m->names);
-    free(m->facts);
-    free(m->labels);
-}
-
-static void mark_restore(session *s, mark *m)
-{
-    if (m->with_names) {
+    if (back) facts_restore(s->e, m->facts);
+    else facts_discard(m->facts);
+    if (back && m->with_names) {
         name_table failed = s->names;
         s->names = m->names;
         m->names = failed;
     }
-    facts_clear(s->e);
-    facts_init(s->e);
-    if (m->kind != LARGE_NONE) (void)facts_set_large(s->e, m->large, m->kind, NULL, NULL);
-    for (size_t k = 0; k < m->fact_count; k++) (void)facts_add(s->e, m->facts[k], m->labels[k]);
+    names_clear(&m->names);
 }
 
 /* ---- running ---- */
@@ -106,8 +91,7 @@ static tw_status run_marked(void *host)
     mark m;
     mark_set(j->s, &m, requests[j->st->kind].care == CHANGES_ALL);
     tw_status status = engine_protect(j->s->e, run_job, j);
-    if (status != TW_OK) mark_restore(j->s, &m);
-    mark_clear(&m);
+    mark_end(j->s, &m, status != TW_OK);
     return status;
 }
 

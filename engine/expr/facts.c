@@ -44,16 +44,47 @@ static void fact_clear(fact *f)
     fmpq_clear(f->upper);
 }
 
-void facts_clear(tw_engine *e)
+static void list_free(struct facts *f)
 {
-    struct facts *f = e->facts;
     if (!f)
         return;
     for (size_t k = 0; k < f->count; k++)
         fact_clear(&f->list[k]);
     free(f->list);
     free(f);
+}
+
+void facts_clear(tw_engine *e)
+{
+    list_free(e->facts);
     e->facts = NULL;
+}
+
+struct facts *facts_copy(tw_engine *e)
+{
+    struct facts *f = base_alloc(sizeof *f);
+    *f = *e->facts;
+    f->room = f->count;
+    f->list = f->count ? base_alloc(f->count * sizeof *f->list) : NULL;
+    for (size_t k = 0; k < f->count; k++) {
+        f->list[k] = e->facts->list[k];
+        fmpq_init(f->list[k].lower);
+        fmpq_init(f->list[k].upper);
+        fmpq_set(f->list[k].lower, e->facts->list[k].lower);
+        fmpq_set(f->list[k].upper, e->facts->list[k].upper);
+    }
+    return f;
+}
+
+void facts_restore(tw_engine *e, struct facts *copy)
+{
+    list_free(e->facts);
+    e->facts = copy;
+}
+
+void facts_discard(struct facts *copy)
+{
+    list_free(copy);
 }
 
 /* ---- intervals ---- */

@@ -17,6 +17,12 @@ typedef enum large_kind { LARGE_NONE, LARGE_POSITIVE, LARGE_INTEGER, LARGE_SMALL
 void facts_init(tw_engine *e);
 void facts_clear(tw_engine *e);
 
+/* A copy of all facts, and the way back to it: what was known since is forgotten. facts_restore and facts_discard take the
+ * copy over. */
+struct facts *facts_copy(tw_engine *e);
+void facts_restore(tw_engine *e, struct facts *copy);
+void facts_discard(struct facts *copy);
+
 /* Declares the large (or small) parameter; it is positive from then on. A later declaration replaces an earlier one.
  * sector: the closed or open range of its argument as typed, or NULL, NULL. */
 tw_status facts_set_large(tw_engine *e, expr *symbol, large_kind kind, expr *arg_from, expr *arg_to);
