@@ -29,15 +29,7 @@ static bool is_nonnegative(tw_engine *e, expr *a, bool bound_real)
         if (a->is.function == FUNCTION_EXP || a->is.function == FUNCTION_COSH)
             return expr_is_real(e, a->args[0], bound_real);
         return a->is.function == FUNCTION_ABS || expr_is_positive_constant(a);
-    case EXPR_SYMBOL: {
-        fmpq_t lower, upper;
-        fmpq_init(lower);
-        fmpq_init(upper);
-        bool known = (facts_interval(e, a, lower, upper) & 1) && fmpq_sgn(lower) >= 0;
-        fmpq_clear(lower);
-        fmpq_clear(upper);
-        return known;
-    }
+    case EXPR_SYMBOL: return facts_symbol_is_positive(e, a);
     default: return expr_is_zero(a) || expr_is_positive_constant(a);
     }
 }
