@@ -12,6 +12,7 @@
 #include <flint/fmpz.h>
 #include <flint/fmpz_poly.h>
 #include <flint/fmpz_mpoly.h>
+#include <flint/fmpz_mpoly_factor.h>
 #include <flint/fmpq.h>
 #include <flint/fmpq_poly.h>
 #include <flint/fmpq_vec.h>
