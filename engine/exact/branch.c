@@ -45,7 +45,7 @@ static tw_status read_phase(work *w, local_variable *v, expr *p)
     tw_status s = evaluate_pieces(w, &g, p);
     work_blame(w, p);
     if (s == TW_OK)
-        s = pieces_gather(w, &lead, &g, "mixes powers and logarithms: no local variable is made of it");
+        s = pieces_gather(w, &lead, &g, "cannot be a new variable (powers and logarithms mix in it)");
     if (s == TW_OK && (!expr_is_zero(lead.sigma) || fmpq_sgn(lead.lead) <= 0))
         s = work_refuse(w, "does not tend to zero like a rational power");
     v->p0 = s == TW_OK ? piece_leading(w, &lead) : NULL;
@@ -177,6 +177,7 @@ static tw_status push_class(work *w, pieces *out, const piece *p, const local_va
     elements_free(&w->f, c.m, c.count);
     c.m = made;
     c.count = count;
+    c.gap = 1;
     c.known = p->c.known == TAIL_EXACT ? TAIL_EXACT : p->c.known > r ? (p->c.known - r - 1) / h + 1 : 0;
     tail_demote(&w->f, &c);
     if (s == TW_OK) {
@@ -207,6 +208,8 @@ static tw_status piece_in_t(work *w, pieces *out, const piece *p, const local_va
     tw_status s = TW_OK;
     for (slong r = 0; r < h && s == TW_OK; r++)
         for (slong j = 0; j <= p->log_power && s == TW_OK; j++) { /* log(t)^j */
+            if (tail_class_is_zero(&p->c, r, h))
+                continue;
             fmpz_t binomial;
             fmpz_init(binomial);
             fmpz_bin_uiui(binomial, (ulong)p->log_power, (ulong)j);
@@ -228,7 +231,9 @@ static tw_status transform(work *w, pieces *out, const change *c, const local_va
     tw_engine *e = w->e;
     pieces g, slope, jacobian;
     pieces_init(&g), pieces_init(&slope), pieces_init(&jacobian);
+    w->depth--; /* q is the user's own */
     tw_status s = evaluate_bound(w, &g, c->q, c->x, x);
+    w->depth++;
     if (s == TW_OK)
         s = pieces_derivative(w, &slope, x);
     if (s == TW_OK)

@@ -160,7 +160,7 @@ tw_status pieces_integral(work *w, pieces *out, const pieces *g, bool from_zero)
         }
         fmpq_clear(minus_one);
         if (from_zero && !integrable) {
-            s = work_refuse(w, "is not integrable there");
+            s = work_refuse(w, "is not integrable");
             break;
         }
         piece p;

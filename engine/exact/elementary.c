@@ -47,7 +47,7 @@ static tw_status take_small_part(work *w, argument *a, const pieces *rest)
         return TW_OK;
     piece p;
     piece_init(w, &p);
-    tw_status s = pieces_gather(w, &p, rest, "mixes powers and logarithms inside a function: its expansion has no fixed step");
+    tw_status s = pieces_gather(w, &p, rest, "has no expansion in powers with a fixed step (powers and logarithms mix inside it)");
     if (s == TW_OK)
         s = piece_fold(w, &p, true);
     if (s == TW_OK) {
@@ -147,6 +147,20 @@ static tw_status take_logs(work *w, pieces *rest, expr **power, const pieces *g)
     return s;
 }
 
+/* What to say of exp(g) when g grows. */
+static const char *exponential_words(work *w, const pieces *g)
+{
+    for (size_t k = 0; k < g->count; k++) {
+        const piece *p = g->at + k;
+        if (fmpq_sgn(p->lead) >= 0 || tail_length(&p->c) == 0)
+            continue;
+        expr *leading = piece_leading(w, p);
+        int sign = leading != NULL && value_is_real(w->e, leading) ? value_sign(w->e, leading) : 2;
+        return sign == -1 ? "is flat" : sign == 1 ? "grows faster than any power" : "is flat, grows or oscillates";
+    }
+    return "is flat or grows faster than any power";
+}
+
 tw_status compose_exp(work *w, pieces *out, const pieces *g)
 {
     pieces rest;
@@ -156,8 +170,9 @@ tw_status compose_exp(work *w, pieces *out, const pieces *g)
     argument_init(&a);
     tw_status s = take_logs(w, &rest, &power, g);
     if (s == TW_OK)
-        s = argument_split_words(w, &a, &rest, "mixes powers and logarithms inside exp: its expansion has no fixed step",
-                                 "is flat there or grows faster than any power");
+        s = argument_split_words(w, &a, &rest,
+                                 "has no expansion in powers with a fixed step (powers and logarithms mix inside exp)",
+                                 exponential_words(w, &rest));
     if (s == TW_OK) {
         expr *value = expr_call1(w->e, FUNCTION_EXP, a.value);
         tail_exp(&w->f, &a.u, &a.u, w->terms);
@@ -180,7 +195,7 @@ tw_status compose_log(work *w, pieces *out, const pieces *g)
     pieces part;
     piece_init(w, &p);
     pieces_init(&part);
-    tw_status s = pieces_gather(w, &p, g, "mixes powers and logarithms inside log: its expansion has no fixed step");
+    tw_status s = pieces_gather(w, &p, g, "has no expansion in powers with a fixed step (powers and logarithms mix inside log)");
     if (s == TW_OK)
         s = piece_need_leading(w, &p);
     if (s == TW_OK && !value_is_real(w->e, p.sigma))
@@ -238,7 +253,10 @@ static tw_status compose_circular(work *w, pieces *out, const pieces *g, bool hy
     pieces cosine;
     argument_init(&a), tail_init(&s), tail_init(&c), pieces_init(&cosine);
     tw_status status = argument_split(w, &a, g);
-    if (status == TW_OK) {
+    if (status == TW_OK && which == 2 && expr_is_zero(a.value) && a.u.rational) {
+        tail_tan(&w->f, &s, &a.u, w->terms, hyperbolic);
+        status = pieces_from_argument(w, out, &a, expr_int(w->e, 1), &s);
+    } else if (status == TW_OK) {
         tail_sin_cos(&w->f, &s, &c, &a.u, w->terms, hyperbolic);
         expr *sine0 = expr_call1(w->e, hyperbolic ? FUNCTION_SINH : FUNCTION_SIN, a.value);
         expr *cosine0 = expr_call1(w->e, hyperbolic ? FUNCTION_COSH : FUNCTION_COS, a.value);

@@ -40,10 +40,8 @@ tw_status work_refuse(work *w, const char *words)
     if (w->thin || w->f.full)
         return TW_ERROR;
     char *name = w->at_fault == NULL ? NULL : expr_text(w->e, w->at_fault);
-    if (name == NULL || strlen(name) > 200)
-        engine_fail(w->e, ERROR_UNSUITABLE, "no power series at %s = 0: %s", w->shown->is.name, words);
-    else
-        engine_fail(w->e, ERROR_UNSUITABLE, "no power series at %s = 0: %s %s", w->shown->is.name, name, words);
+    bool show = name != NULL && strlen(name) <= 200;
+    engine_fail(w->e, ERROR_UNSUITABLE, "%s %s at %s = 0", show ? name : "a part of the function", words, w->shown->is.name);
     free(name);
     return TW_ERROR;
 }

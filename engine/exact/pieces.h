@@ -47,7 +47,7 @@ void work_clear(work *w);
 tw_status work_need_nonzero(work *w, const element *value);
 tw_status work_need(work *w, expr *condition); /* unless known to hold */
 void work_blame(work *w, expr *f); /* f is in work */
-/* ERROR_UNSUITABLE: "WORDS: SUBEXPRESSION", unless an error is set or the work is to be started again. */
+/* ERROR_UNSUITABLE: "SUBEXPRESSION WORDS at x = 0", unless an error is set or the work is to be started again. */
 tw_status work_refuse(work *w, const char *words);
 
 void piece_init(work *w, piece *p); /* 1 * x^0 * 0 */

@@ -289,7 +289,7 @@ tw_status pieces_pow(work *w, pieces *out, const pieces *g, expr *exponent)
     }
     piece p;
     piece_init(w, &p);
-    tw_status s = pieces_gather(w, &p, g, "mixes powers and logarithms inside a power: its expansion has no fixed step");
+    tw_status s = pieces_gather(w, &p, g, "has no expansion in powers with a fixed step (powers and logarithms mix in its base)");
     bool real = g->real;
     if (s == TW_OK)
         s = power_of_piece(w, out, &p, real, exponent);
@@ -341,7 +341,7 @@ tw_status pieces_div(work *w, pieces *out, const pieces *a, const pieces *g, slo
     piece_init(w, &b);
     pieces_init(&quotient);
     quotient.real = a->real && g->real;
-    tw_status s = pieces_gather(w, &b, g, "mixes powers and logarithms in a denominator: its expansion has no fixed step");
+    tw_status s = pieces_gather(w, &b, g, "has no inverse in powers with a fixed step (powers and logarithms mix in it)");
     if (s == TW_OK)
         s = piece_need_leading(w, &b);
     expr *front = s == TW_OK ? expr_pow(w->e, expr_mul(w->e, b.constant, b.factor), expr_int(w->e, -n)) : NULL;

@@ -16,6 +16,8 @@ void rational_log(fmpq_poly_t out, const fmpq_poly_t a, slong n);
 void rational_exp(fmpq_poly_t out, const fmpq_poly_t u, slong n);
 /* Sine and cosine (sinh and cosh when hyperbolic) of u mod x^n; u(0) = 0. The outputs are two polynomials. */
 void rational_sin_cos(fmpq_poly_t s, fmpq_poly_t c, const fmpq_poly_t u, slong n, int hyperbolic);
+/* out = tan(u), or tanh(u) when hyperbolic; u(0) = 0. */
+void rational_tan(fmpq_poly_t out, const fmpq_poly_t u, slong n, int hyperbolic);
 /* out = outer(u) mod x^n; u(0) = 0. */
 void rational_compose(fmpq_poly_t out, const fmpq_poly_t outer, const fmpq_poly_t u, slong n);
 

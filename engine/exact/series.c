@@ -332,7 +332,7 @@ static tw_status evaluate_node(work *w, pieces *out, expr *f)
     case EXPR_PIECEWISE: return evaluate_piecewise(w, out, f);
     case EXPR_INTEGRAL: return evaluate_integral(w, out, f);
     case EXPR_SUMMATION: return evaluate_summation(w, out, f);
-    default: return work_refuse(w, "has no known power series there");
+    default: return work_refuse(w, "has no known power series");
     }
 }
 

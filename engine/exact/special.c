@@ -53,6 +53,7 @@ static tw_status outer_from_exprs(work *w, tail *outer, coefficient_maker make, 
         tail_add(&w->f, outer, outer, &term, 1);
     }
     outer->known = n;
+    outer->gap = 1;
     element_clear(&w->f, &c);
     tail_clear(&w->f, &term);
     return s;
@@ -74,6 +75,7 @@ static void outer_hypergeometric(work *w, tail *outer, const fmpq_t shift, bool 
         fmpq_div(c, c, t);
     }
     outer->known = n;
+    outer->gap = 1;
     fmpq_clear(c), fmpq_clear(t);
 }
 
@@ -125,6 +127,7 @@ static tw_status exponential_integral_at_zero(work *w, pieces *out, bool ei, con
         fmpq_poly_set_coeff_fmpq(outer.q, k, c); /* E1: -(-1)^k/(k k!) */
     }
     outer.known = outer_length(w);
+    outer.gap = 1;
     tw_status s = pieces_sign(w, &sign, g);
     if (s == TW_OK && sign <= 0 && !ei)
         s = work_refuse(w, "lies on its branch cut for small values of the variable");
@@ -516,6 +519,8 @@ static void outer_airy(work *w, tail *outer, slong start)
         fmpq_div_by(c, c, (k + 3) * (k + 2)); /* y'' = z y */
     }
     outer->known = n;
+    outer->offset = start;
+    outer->gap = 3;
     fmpq_clear(c);
 }
 
@@ -643,6 +648,7 @@ static void outer_bessel_harmonic(work *w, tail *outer, slong n, bool alternatin
         fmpq_add(h, h, t);
     }
     outer->known = length;
+    outer->gap = 1;
     fmpq_clear(c), fmpq_clear(t), fmpq_clear(h);
 }
 
@@ -787,6 +793,7 @@ static void outer_bessel_taylor(work *w, tail *outer, const element *c, const el
     outer->m = y;
     outer->count = n;
     outer->known = n;
+    outer->gap = 1;
     tail_demote(f, outer);
     element_clear(f, &t), element_clear(f, &c2), element_clear(f, &den);
 }
@@ -865,6 +872,6 @@ tw_status compose_special(work *w, pieces *out, expr *call, const pieces *args)
     case FUNCTION_BESSEL_Y:
     case FUNCTION_BESSEL_I:
     case FUNCTION_BESSEL_K: return compose_bessel(w, out, call, args);
-    default: return work_refuse(w, "has no known power series there");
+    default: return work_refuse(w, "has no known power series");
     }
 }

@@ -8,9 +8,27 @@
 
 #include "engine/exact/rational.h"
 
+static slong gcd_of(slong a, slong b) { return (slong)n_gcd((ulong)(a < 0 ? -a : a), (ulong)(b < 0 ? -b : b)); }
+
+static void tail_place(tail *t, slong offset, slong gap)
+{
+    if (gap > 0)
+        offset = (offset % gap + gap) % gap;
+    t->offset = offset;
+    t->gap = gap;
+}
+
+static bool tail_is_exact_zero(const tail *t) { return t->known == TAIL_EXACT && tail_length(t) == 0; }
+
+bool tail_class_is_zero(const tail *t, slong r, slong h)
+{
+    return tail_is_exact_zero(t) || (r - t->offset) % gcd_of(h, t->gap) != 0;
+}
+
 void tail_init(tail *t)
 {
     t->known = TAIL_EXACT;
+    t->offset = t->gap = 0;
     t->rational = true;
     fmpq_poly_init(t->q);
     t->count = 0;
@@ -42,6 +60,8 @@ static void tail_reset(field *f, tail *t, slong n, slong known)
     t->count = n;
     t->m = elements_new(f, n);
     t->known = known;
+    t->offset = 0;
+    t->gap = 1;
 }
 
 static void tail_reset_rational(field *f, tail *t, slong known)
@@ -52,6 +72,8 @@ static void tail_reset_rational(field *f, tail *t, slong known)
     t->count = 0;
     t->rational = true;
     t->known = known;
+    t->offset = 0;
+    t->gap = 1;
 }
 
 /* Drops zeros at the end. */
@@ -68,9 +90,11 @@ void tail_set(field *f, tail *out, const tail *a)
     if (a->rational) {
         tail_reset_rational(f, out, a->known);
         fmpq_poly_set(out->q, a->q);
+        tail_place(out, a->offset, a->gap);
         return;
     }
     tail_reset(f, out, a->count, a->known);
+    tail_place(out, a->offset, a->gap);
     for (slong k = 0; k < a->count; k++)
         fmpz_mpoly_q_set(out->m + k, a->m + k, f->ctx);
 }
@@ -79,6 +103,7 @@ void tail_set_q(field *f, tail *out, const fmpq_t c)
 {
     tail_reset_rational(f, out, TAIL_EXACT);
     fmpq_poly_set_fmpq(out->q, c);
+    tail_place(out, 0, 0);
 }
 
 void tail_set_element(field *f, tail *out, const element *c)
@@ -86,6 +111,7 @@ void tail_set_element(field *f, tail *out, const element *c)
     tail_reset(f, out, 1, TAIL_EXACT);
     fmpz_mpoly_q_set(out->m, c, f->ctx);
     tail_trim(f, out);
+    tail_place(out, 0, 0);
 }
 
 slong tail_length(const tail *t) { return t->rational ? fmpq_poly_length(t->q) : t->count; }
@@ -162,7 +188,9 @@ void tail_demote(field *f, tail *t)
         field_is_rational(t->m + k, f, c);
         fmpq_poly_set_coeff_fmpq(q, k, c);
     }
+    slong offset = t->offset, gap = t->gap;
     tail_reset_rational(f, t, t->known);
+    tail_place(t, offset, gap);
     fmpq_poly_swap(t->q, q);
     fmpq_poly_clear(q);
     fmpq_clear(c);
@@ -187,6 +215,7 @@ void tail_shift(field *f, tail *t, slong k)
 {
     if (k == 0)
         return;
+    tail_place(t, t->offset + k, t->gap);
     if (t->known != TAIL_EXACT)
         t->known = FLINT_MAX(t->known + k, 0);
     if (t->rational) {
@@ -209,6 +238,7 @@ void tail_stretch(field *f, tail *t, slong g)
 {
     if (g == 1)
         return;
+    tail_place(t, t->offset * g, t->gap * g);
     if (t->known != TAIL_EXACT)
         t->known *= g;
     if (t->rational) {
@@ -276,6 +306,12 @@ void tail_add(field *f, tail *out, const tail *a, const tail *b, int sign)
     }
     if (known != TAIL_EXACT)
         tail_truncate(f, &sum, known), sum.known = known;
+    if (tail_is_exact_zero(a))
+        tail_place(&sum, b->offset, b->gap);
+    else if (tail_is_exact_zero(b))
+        tail_place(&sum, a->offset, a->gap);
+    else
+        tail_place(&sum, a->offset, gcd_of(gcd_of(a->gap, b->gap), a->offset - b->offset));
     tail_swap(out, &sum);
     tail_clear(f, &sum);
 }
@@ -328,6 +364,7 @@ void tail_mul(field *f, tail *out, const tail *a, const tail *b, slong n)
         tail_trim(f, &product);
     }
     product.known = known;
+    tail_place(&product, a->offset + b->offset, gcd_of(a->gap, b->gap));
     tail_swap(out, &product);
     tail_clear(f, &product);
 }
@@ -397,6 +434,7 @@ void tail_div(field *f, tail *out, const tail *a, const tail *b, slong n)
         quotient.known = known;
         pair_close(f, &p);
     }
+    tail_place(&quotient, a->offset - b->offset, gcd_of(a->gap, b->gap));
     tail_swap(out, &quotient);
     tail_clear(f, &quotient);
 }
@@ -444,6 +482,7 @@ void tail_pow(field *f, tail *out, const tail *a, const element *r, slong n)
         if (known > 0)
             pow_field(f, &power, &base, r, known);
         power.known = known;
+        tail_place(&power, 0, a->gap);
         tail_swap(out, &power);
         tail_clear(f, &power), tail_clear(f, &base);
     }
@@ -468,6 +507,7 @@ static bool pow_exact(field *f, tail *out, const tail *a, const fmpq_t r, slong 
         for (slong k = 0; k < m; k++)
             tail_mul(f, &power, &power, a, n);
     }
+    tail_place(&power, 0, a->gap);
     tail_swap(out, &power);
     tail_clear(f, &power);
     return true;
@@ -493,6 +533,7 @@ void tail_pow_q(field *f, tail *out, const tail *a, const fmpq_t r, slong n)
         element_clear(f, &e);
     }
     power.known = known;
+    tail_place(&power, 0, a->gap);
     tail_swap(out, &power);
     tail_clear(f, &power);
 }
@@ -525,6 +566,7 @@ void tail_log(field *f, tail *out, const tail *a, slong n)
         tail_trim(f, &result);
     }
     result.known = known;
+    tail_place(&result, 0, a->gap);
     tail_swap(out, &result);
     tail_clear(f, &result);
 }
@@ -558,6 +600,7 @@ void tail_exp(field *f, tail *out, const tail *u, slong n)
         tail_trim(f, &result);
     }
     result.known = known;
+    tail_place(&result, 0, gcd_of(u->offset, u->gap));
     tail_swap(out, &result);
     tail_clear(f, &result);
 }
@@ -601,8 +644,25 @@ void tail_sin_cos(field *f, tail *s, tail *c, const tail *u, slong n, int hyperb
     else if (known > 0)
         sin_cos_field(f, &sine, &cosine, u, known, hyperbolic);
     sine.known = cosine.known = known;
+    tail_place(&sine, u->offset, gcd_of(2 * u->offset, u->gap));
+    tail_place(&cosine, 0, gcd_of(2 * u->offset, u->gap));
     tail_swap(s, &sine), tail_swap(c, &cosine);
     tail_clear(f, &sine), tail_clear(f, &cosine);
+}
+
+void tail_tan(field *f, tail *out, const tail *u, slong n, int hyperbolic)
+{
+    tail result;
+    tail_init(&result);
+    slong known = known_least(u->known, n);
+    if (tail_is_exact_zero(u))
+        known = TAIL_EXACT;
+    else
+        rational_tan(result.q, u->q, known, hyperbolic);
+    result.known = known;
+    tail_place(&result, u->offset, gcd_of(2 * u->offset, u->gap));
+    tail_swap(out, &result);
+    tail_clear(f, &result);
 }
 
 /* Horner's rule; a monomial u only scales and spreads. */
@@ -660,6 +720,7 @@ void tail_compose(field *f, tail *out, const tail *outer, const tail *u, slong n
         pair_close(f, &p);
     }
     result.known = known;
+    tail_place(&result, outer->offset * u->offset, gcd_of(outer->gap * u->offset, u->gap));
     tail_swap(out, &result);
     tail_clear(f, &result);
 }

@@ -10,6 +10,7 @@
 
 typedef struct tail {
     slong known;
+    slong offset, gap; /* proved: c[n] = 0 unless n = offset modulo gap; gap 0: unless n = offset. Parity survives truncation */
     bool rational;
     fmpq_poly_t q; /* rational */
     slong count;   /* not rational: stored elements; the further known ones are zero */
@@ -29,6 +30,7 @@ bool tail_coefficient_q(field *f, fmpq_t out, const tail *t, slong k); /* false 
 expr *tail_coefficient_expr(field *f, const tail *t, slong k);
 
 void tail_promote(field *f, tail *t);                      /* into the field */
+bool tail_class_is_zero(const tail *t, slong r, slong h);  /* proved: all c[n] with n = r modulo h vanish */
 void tail_demote(field *f, tail *t);                       /* back to the rationals if all coefficients are */
 void tail_truncate(field *f, tail *t, slong n);            /* at most n known */
 void tail_shift(field *f, tail *t, slong k);               /* times y^k; k < 0 drops coefficients, which must be zero */
@@ -45,6 +47,8 @@ void tail_log(field *f, tail *out, const tail *a, slong n);                 /* a
 void tail_exp(field *f, tail *out, const tail *u, slong n);                 /* u[0] = 0 */
 void tail_sin_cos(field *f, tail *s, tail *c, const tail *u, slong n, int hyperbolic); /* u[0] = 0 */
 void tail_compose(field *f, tail *out, const tail *outer, const tail *u, slong n);     /* u[0] = 0 */
+/* out = tan(u), or tanh(u); u rational, u[0] = 0. */
+void tail_tan(field *f, tail *out, const tail *u, slong n, int hyperbolic);
 /* c[k] times (or over, when `divide`) alpha + lead + k/den; alpha may be NULL. A zero divisor's coefficient must be zero. */
 void tail_weigh(field *f, tail *t, const element *alpha, const fmpq_t lead, slong den, bool divide);
 
