@@ -361,19 +361,20 @@ static void compose_monomial(fmpq_poly_t out, const fmpq_poly_t outer, const fmp
 /* tan x = sum (-1)^(m-1) 2^(2m) (2^(2m) - 1) B_(2m) x^(2m-1)/(2m)!, tanh x the same without signs: DLMF 4.19.3, 4.33.3. */
 static void tan_of_variable(fmpq_poly_t out, slong n, int hyperbolic)
 {
-    fmpz *num = _fmpz_vec_init(n + 2), *den = _fmpz_vec_init(n + 2), *c = _fmpz_vec_init(n);
+    fmpq *bernoulli = _fmpq_vec_init(n + 2);
+    fmpz *c = _fmpz_vec_init(n);
     fmpz_t common, t;
     fmpz_init(t);
     fmpz_init_set_ui(common, 1);
-    arith_bernoulli_number_vec(num, den, n + 2);
+    arith_bernoulli_number_vec(bernoulli, n + 2);
     fmpz_fac_ui(common, (ulong)(n + 1)); /* (2m)! divides it, and T_m = 2^(2m)(2^(2m) - 1) B_(2m)/(2m) is an integer */
     for (slong k = 1; k < n; k += 2) {
         slong two_m = k + 1;
         fmpz_one_2exp(t, two_m);
         fmpz_sub_ui(t, t, 1);
         fmpz_mul_2exp(t, t, (ulong)two_m);
-        fmpz_mul(t, t, num + two_m);
-        fmpz_divexact(t, t, den + two_m);
+        fmpz_mul(t, t, fmpq_numref(bernoulli + two_m));
+        fmpz_divexact(t, t, fmpq_denref(bernoulli + two_m));
         fmpz_mul(c + k, t, common);
         fmpz_fac_ui(t, (ulong)two_m);
         fmpz_divexact(c + k, c + k, t);
@@ -381,7 +382,8 @@ static void tan_of_variable(fmpq_poly_t out, slong n, int hyperbolic)
             fmpz_neg(c + k, c + k);
     }
     poly_take(out, c, n, common);
-    _fmpz_vec_clear(num, n + 2), _fmpz_vec_clear(den, n + 2), _fmpz_vec_clear(c, n);
+    _fmpq_vec_clear(bernoulli, n + 2);
+    _fmpz_vec_clear(c, n);
     fmpz_clear(common), fmpz_clear(t);
 }
 
