@@ -38,5 +38,6 @@ done
 for x in tests/run_*.py; do
     one "$x" python3 "$x" "$build"
 done
+case $build in *sanitize*) ;; *) one tests/shrunk.py python3 tests/shrunk.py ;; esac
 echo "$passed passed, $failed failed, $skipped skipped"
 [ "$failed" -eq 0 ]
