@@ -21,6 +21,7 @@
 #include <flint/arb.h>
 #include <flint/arb_poly.h>
 #include <flint/arb_hypgeom.h>
+#include <flint/arb_fmpz_poly.h>
 #include <flint/acb.h>
 #include <flint/acb_poly.h>
 #include <flint/acb_calc.h>
@@ -33,6 +34,7 @@
 #include <arb.h>
 #include <arb_poly.h>
 #include <arb_hypgeom.h>
+#include <arb_fmpz_poly.h>
 #include <acb.h>
 #include <acb_poly.h>
 #include <acb_calc.h>
