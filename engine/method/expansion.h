@@ -46,7 +46,8 @@ typedef struct contribution {
     size_t lane_count;
     lane *lanes;
     domain_kind domain;
-    local_form local;
+    local_form local;        /* no branches for a far end */
+    local_form formal;       /* far ends only: factor * int_0 q exp(+scale * p), whose terms are (-scale)^-(n+1) times n! g_n */
     bool terminates;         /* no further terms: the lanes are the whole expansion of this contribution */
 } contribution;
 
@@ -73,6 +74,16 @@ typedef struct expansion {
 
 void expansion_init(expansion *a);
 void expansion_clear(expansion *a);
+
+void contribution_init(contribution *c);
+void contribution_clear(contribution *c);
+/* A new empty contribution at the end of the list; valid until the next call. */
+contribution *expansion_add(expansion *a);
+
+void local_form_init(local_form *l);
+void local_form_clear(local_form *l);
+branch *local_form_add(local_form *l, expr *x, expr *end, expr *p, expr *q);
+void local_form_copy(local_form *to, const local_form *from); /* `to` is initialised and empty */
 
 /* Makes sure that each contribution has at least `terms` nonzero terms (or terminates): extends the lanes in place. */
 tw_status expansion_extend(tw_engine *e, expansion *a, slong terms);

@@ -5,21 +5,28 @@
 
 #include "engine/method/expansion.h"
 
-/* What reading an integral found: the form each method starts from. */
+/* What reading an integral found: the form each method starts from. Exactly (the conditions granted),
+ *
+ *   integral = local.factor * sum over local.branches of int_0^end q(x) exp(-local.scale * p(x)) dx
+ *
+ * with p(0) = 0 the only least value on the path; two branches when the path runs on both sides of it. Where p is a constant
+ * times a pure power, the constant is in the scale and p is x^mu. */
 typedef struct reading {
-    expr *integral;       /* as typed */
-    expr *large;          /* symbol; h when small */
+    expr *integral;          /* as typed */
+    expr *large;             /* symbol; h when small */
     bool small;
-    expr *variable;       /* a fresh symbol, real, > 0 on the path unless from < 0 */
-    expr *from, *to;      /* after shift, scale and mirroring; from finite */
-    expr *scale;          /* kernel exp(-scale * p): constant * power of the large parameter, positive */
-    expr *p, *q;          /* phase and amplitude, free of the large parameter; p(place of its least value) = 0 */
-    expr *factor;         /* what stands outside: exp(-2*s), s^(1/2), constants, ... */
-    expr *back;           /* the original variable as an expression in `variable` */
-    expr *original_variable;
+    expr *original_variable; /* for the eye: "x" */
+    expr *place;             /* the original variable where p is least */
+    point_kind kind;         /* POINT_END, POINT_INTERIOR */
+    local_form local;
+    expr *far_places[2];     /* the original variable at each branch's end; NULL where the branch is infinite */
+    fmpq_t power;            /* scale = a constant * large^power */
+    expr *scale_constant;    /* that constant, > 0 */
+    bool pure;               /* p is x^mu on every branch */
+    fmpq_t mu;               /* then */
     condition_list conditions; /* convergence, no other critical point, ... with their labels */
-    derivation derivation; /* steps so far */
-    char *summary;        /* for `let`: "depends on s; one critical point, the end x = 0; converges for s > 0" */
+    derivation derivation;   /* steps so far */
+    char *summary;           /* for `let`: "depends on s; one critical point, the end x = 0; converges for s > 0" */
 } reading;
 
 void reading_init(reading *r);
@@ -28,6 +35,9 @@ void reading_clear(reading *r);
 /* Reads an integral (EXPR_INTEGRAL, or a product of one with factors free of its variable; sums of integrals are handled by
  * expand). Errors: UNSUITABLE with reason and advice, DIVERGENT. */
 tw_status integral_read(tw_engine *e, reading *out, expr *integral);
+
+/* factor * sum over branches of the integrals, as an expression. */
+expr *local_form_integral(tw_engine *e, const local_form *l);
 
 struct method {
     const char *name;                                   /* the word after `by` */

@@ -1,0 +1,239 @@
+/* The expansion as a value: lifetime, the order of its terms by size, a term as an expression. The one idea: the terms of a
+ * contribution's lanes are merged like sorted lists; a lane that is known only so far stops the merge where its next, unknown
+ * term could come first. It may not know how lanes are made. */
+#include "engine/method/expansion.h"
+
+#include <stdlib.h>
+#include <string.h>
+
+#include "engine/ball/decide.h"
+#include "engine/method/lanes.h"
+#include "engine/method/method.h"
+#include "engine/numeric/bound.h"
+
+const char *point_kind_word(point_kind k)
+{
+    static const char *const words[] = {"end", "interior", "stationary", "saddle", "singular", "far-end"};
+    return words[k];
+}
+
+/* ---- lifetime ---- */
+
+void local_form_init(local_form *l)
+{
+    *l = (local_form){NULL, NULL, 0, NULL};
+}
+
+void local_form_clear(local_form *l)
+{
+    free(l->branches);
+    local_form_init(l);
+}
+
+branch *local_form_add(local_form *l, expr *x, expr *end, expr *p, expr *q)
+{
+    l->branches = base_resize(l->branches, (l->count + 1) * sizeof *l->branches);
+    l->branches[l->count] = (branch){x, end, p, q};
+    return &l->branches[l->count++];
+}
+
+void local_form_copy(local_form *to, const local_form *from)
+{
+    to->scale = from->scale;
+    to->factor = from->factor;
+    for (size_t k = 0; k < from->count; k++) {
+        const branch *b = &from->branches[k];
+        local_form_add(to, b->x, b->end, b->p, b->q);
+    }
+}
+
+void lane_init(lane *l)
+{
+    *l = (lane){NULL, 0, NULL, {{0}}, {0}};
+    fmpq_init(l->step);
+    coefficients_init(&l->c);
+}
+
+void lane_clear(lane *l)
+{
+    fmpq_clear(l->step);
+    coefficients_clear(&l->c);
+}
+
+void contribution_init(contribution *c)
+{
+    memset(c, 0, sizeof *c);
+    local_form_init(&c->local);
+    local_form_init(&c->formal);
+}
+
+void contribution_clear_lanes(contribution *c)
+{
+    for (size_t k = 0; k < c->lane_count; k++) lane_clear(&c->lanes[k]);
+    free(c->lanes);
+    c->lanes = NULL;
+    c->lane_count = 0;
+}
+
+void contribution_clear(contribution *c)
+{
+    contribution_clear_lanes(c);
+    local_form_clear(&c->local);
+    local_form_clear(&c->formal);
+}
+
+void expansion_init(expansion *a)
+{
+    memset(a, 0, sizeof *a);
+    conditions_init(&a->conditions);
+    derivation_init(&a->derivation);
+}
+
+void expansion_clear(expansion *a)
+{
+    for (size_t k = 0; k < a->contribution_count; k++) contribution_clear(&a->contributions[k]);
+    free(a->contributions);
+    conditions_clear(&a->conditions);
+    derivation_clear(&a->derivation);
+    free(a->why);
+    free(a->facts);
+    free(a->fact_labels);
+    if (a->cache) bound_cache_free(a->cache);
+    expansion_init(a);
+}
+
+contribution *expansion_add(expansion *a)
+{
+    a->contributions = base_resize(a->contributions, (a->contribution_count + 1) * sizeof *a->contributions);
+    contribution *c = &a->contributions[a->contribution_count++];
+    contribution_init(c);
+    return c;
+}
+
+/* ---- order ---- */
+
+typedef struct order {
+    tw_engine *e;
+    const contribution *c;
+    bool small;
+    slong *next;      /* of each lane: the first index not yet taken, zeros skipped */
+    bool undecided;
+} order;
+
+static bool lane_is_out(const order *o, size_t k)
+{
+    return o->next[k] >= o->c->lanes[k].c.count;
+}
+
+static void skip_zeros(order *o, size_t k)
+{
+    const coefficients *c = &o->c->lanes[k].c;
+    while (o->next[k] < c->count && coefficient_is_zero(c, o->next[k])) o->next[k]++;
+}
+
+/* Sign of the exponent of lane i's next term minus that of lane j's; 2 when it cannot be decided. */
+static int compare_exponents(order *o, size_t i, size_t j)
+{
+    const lane *a = &o->c->lanes[i], *b = &o->c->lanes[j];
+    fmpq_t steps, u;
+    fmpq_init(steps);
+    fmpq_init(u);
+    fmpq_mul_si(steps, a->step, o->next[i]);
+    fmpq_mul_si(u, b->step, o->next[j]);
+    fmpq_sub(steps, steps, u);
+    expr *d = expr_add(o->e, expr_sub(o->e, a->first_exponent, b->first_exponent), expr_fmpq(o->e, steps));
+    fmpq_clear(steps);
+    fmpq_clear(u);
+    if (!d) return 2;
+    return expr_is_number(d) ? fmpq_sgn(expr_number(d)) : decide_sign(o->e, d);
+}
+
+/* Does lane i's next term come before lane j's? */
+static bool comes_before(order *o, size_t i, size_t j)
+{
+    int sign = compare_exponents(o, i, j);
+    if (sign == 2) o->undecided = true;
+    if (sign == 1 || sign == -1) return (sign > 0) != o->small;
+    return o->c->lanes[i].log_power > o->c->lanes[j].log_power;
+}
+
+/* The lane whose next term is the largest; -1 when none is left, or when an unknown term would come first. */
+static slong largest_lane(order *o)
+{
+    slong best = -1;
+    for (size_t k = 0; k < o->c->lane_count; k++) {
+        if (lane_is_out(o, k) && o->c->terminates) continue;
+        if (best < 0 || comes_before(o, k, (size_t)best)) best = (slong)k;
+    }
+    return best >= 0 && lane_is_out(o, (size_t)best) ? -1 : best;
+}
+
+tw_status contribution_order(tw_engine *e, const contribution *c, bool small, slong count, term **terms, slong *found)
+{
+    order o = {e, c, small, base_alloc((c->lane_count + 1) * sizeof(slong)), false};
+    for (size_t k = 0; k < c->lane_count; k++) {
+        o.next[k] = 0;
+        skip_zeros(&o, k);
+    }
+    *terms = base_alloc((size_t)(count > 0 ? count : 1) * sizeof **terms);
+    *found = 0;
+    while (*found < count && budget_ok(e)) {
+        slong k = largest_lane(&o);
+        if (o.undecided) engine_fail(e, ERROR_UNDECIDED, "the facts do not say which of two terms is the larger");
+        if (k < 0 || e->error.kind != ERROR_NONE) break;
+        (*terms)[(*found)++] = (term){(size_t)k, o.next[k]++};
+        skip_zeros(&o, (size_t)k);
+    }
+    free(o.next);
+    if (e->error.kind == ERROR_NONE) return TW_OK;
+    free(*terms);
+    *terms = NULL;
+    *found = 0;
+    return TW_ERROR;
+}
+
+tw_status expansion_order(tw_engine *e, expansion *a, size_t k, slong count, term **terms, slong *found)
+{
+    return contribution_order(e, &a->contributions[k], a->small, count, terms, found);
+}
+
+/* ---- terms ---- */
+
+/* Nonzero coefficients in all lanes. */
+slong contribution_count_terms(const contribution *c)
+{
+    slong count = 0;
+    for (size_t l = 0; l < c->lane_count; l++)
+        for (slong n = 0; n < c->lanes[l].c.count; n++)
+            if (!coefficient_is_zero(&c->lanes[l].c, n)) count++;
+    return count;
+}
+
+tw_status expansion_extend(tw_engine *e, expansion *a, slong terms)
+{
+    for (size_t k = 0; k < a->contribution_count; k++) {
+        const contribution *c = &a->contributions[k];
+        if (c->terminates || contribution_count_terms(c) >= terms) continue;
+        const method *m = method_find(c->method);
+        if (!m) return engine_fail(e, ERROR_INTERNAL, "no method is called %s", c->method);
+        if (m->extend(e, a, terms) != TW_OK) return TW_ERROR;
+    }
+    return TW_OK;
+}
+
+expr *expansion_term(tw_engine *e, const expansion *a, size_t k, term t)
+{
+    const lane *l = &a->contributions[k].lanes[t.lane];
+    fmpq_t steps;
+    fmpq_init(steps);
+    fmpq_mul_si(steps, l->step, t.n);
+    expr *exponent = expr_add(e, l->first_exponent, expr_fmpq(e, steps));
+    fmpq_clear(steps);
+    expr *log_part = l->log_power == 0
+                         ? expr_int(e, 1)
+                         : expr_pow(e, expr_call1(e, FUNCTION_LOG, a->large), expr_int(e, l->log_power));
+    expr *parts[] = {coefficient_expr(e, &l->c, t.n), l->constant, log_part, expr_pow(e, a->large, exponent)};
+    for (size_t n = 0; n < 4; n++)
+        if (!parts[n]) return NULL;
+    return expr_product(e, parts, 4);
+}

@@ -1,0 +1,187 @@
+/* Filling a contribution from its local form: series of the amplitude, branch by branch, then lanes, cut where the terms asked
+ * for end. The one idea: everything is made anew from the local form with a greater length when more is wanted (lengths grow
+ * by half at least, so the work in all is a small multiple of the last). */
+#include <stdlib.h>
+#include <string.h>
+
+#include "engine/method/lanes.h"
+
+bool is_pure_power(tw_engine *e, expr *p, expr *x, fmpq_t mu)
+{
+    expr *base, *exponent;
+    expr_as_power(e, p, &base, &exponent);
+    if (base != x || !expr_is_number(exponent) || fmpq_sgn(expr_number(exponent)) <= 0) return false;
+    fmpq_set(mu, expr_number(exponent));
+    return true;
+}
+
+void factor_split(tw_engine *e, expr *factor, expr *large, fmpq_t number, fmpq_t power, expr **rest)
+{
+    expr *left;
+    fmpq_zero(power);
+    expr_as_coefficient(e, factor, number, &left);
+    expr *const *parts;
+    size_t count = expr_factors(&left, &parts);
+    *rest = expr_int(e, 1);
+    for (size_t k = 0; k < count; k++) {
+        expr *base, *exponent;
+        expr_as_power(e, parts[k], &base, &exponent);
+        if (base == large && expr_is_number(exponent)) fmpq_add(power, power, expr_number(exponent));
+        else *rest = expr_mul(e, *rest, parts[k]);
+    }
+}
+
+/* ---- the kernel of a local form ---- */
+
+static tw_status kernel_read(tw_engine *e, kernel *k, const contribution *c, expr *large)
+{
+    const local_form *l = c->local.count > 0 ? &c->local : &c->formal;
+    fmpq_t number;
+    fmpq_init(number);
+    expr *rest;
+    factor_split(e, l->scale, large, number, k->power, &rest);
+    k->constant = expr_mul(e, expr_fmpq(e, number), rest);
+    fmpq_clear(number);
+    factor_split(e, l->factor, large, k->factor_number, k->factor_power, &rest);
+    k->far_end = c->local.count == 0;
+    fmpq_one(k->mu);
+    for (size_t n = 0; n < l->count && !k->far_end; n++)
+        if (!is_pure_power(e, l->branches[n].p, l->branches[n].x, k->mu)) fmpq_one(k->mu);
+    if (!k->constant || !rest) return TW_ERROR;
+    if (expr_has(k->constant, large)) return engine_fail(e, ERROR_INTERNAL, "the scale is no power of the large parameter");
+    return TW_OK;
+}
+
+/* ---- series of all branches ---- */
+
+static void take_conditions(tw_engine *e, condition_list *to, expr **conditions, size_t count)
+{
+    for (size_t k = 0; to && k < count && e->error.kind == ERROR_NONE; k++) conditions_require(e, to, conditions[k]);
+    free(conditions);
+}
+
+static tw_status branch_series(tw_engine *e, series *out, const branch *b, bool far_end, slong length, condition_list *to)
+{
+    fmpq_t mu;
+    fmpq_init(mu);
+    bool pure = far_end ? b->p == b->x : is_pure_power(e, b->p, b->x, mu);
+    fmpq_clear(mu);
+    expr **conditions = NULL;
+    size_t count = 0;
+    tw_status status = pure ? series_at_zero(e, out, b->q, b->x, length, &conditions, &count)
+                            : series_branch(e, out, b->p, b->q, b->x, length, &conditions, &count);
+    if (status != TW_OK) count = 0;
+    take_conditions(e, to, conditions, count);
+    return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
+}
+
+/* Lanes from the first `length` coefficients of every strand. */
+static tw_status fill_to_length(tw_engine *e, contribution *c, const kernel *k, slong length, condition_list *to)
+{
+    const local_form *l = c->local.count > 0 ? &c->local : &c->formal;
+    drafts d;
+    drafts_init(&d);
+    c->terminates = true;
+    tw_status status = TW_OK;
+    for (size_t n = 0; n < l->count && status == TW_OK; n++) {
+        series q;
+        series_init(&q);
+        status = branch_series(e, &q, &l->branches[n], k->far_end, length, to);
+        c->terminates = c->terminates && q.terminates;
+        if (status == TW_OK) status = drafts_add(e, &d, &q, k);
+        series_clear(&q);
+    }
+    if (status == TW_OK) status = drafts_finish(e, &d, c, k);
+    drafts_clear(&d);
+    return status;
+}
+
+/* ---- cutting ---- */
+
+static void lane_cut(lane *l, slong count)
+{
+    coefficients *c = &l->c;
+    if (count >= c->count) return;
+    if (c->q) {
+        fmpq *q = _fmpq_vec_init(count);
+        for (slong n = 0; n < count; n++) fmpq_swap(&q[n], &c->q[n]);
+        _fmpq_vec_clear(c->q, c->count);
+        c->q = q;
+    }
+    c->count = count;
+}
+
+/* How many coefficients of lane l belong to the terms kept: one past the last kept one, and on over zeros while these come
+ * before the last kept term of all (else the lane's unknown rest would seem to come first). */
+static slong kept_in_lane(const contribution *c, size_t l, const term *terms, slong found)
+{
+    slong count = 0;
+    for (slong k = 0; k < found; k++)
+        if (terms[k].lane == l) count = terms[k].n + 1;
+    const coefficients *x = &c->lanes[l].c;
+    while (count < x->count && coefficient_is_zero(x, count)) count++;
+    return count;
+}
+
+/* Zeros at the end of a lane that reach beyond the last kept term say nothing; the lane that holds the last term has none. */
+static void lanes_cut(contribution *c, const term *terms, slong found)
+{
+    size_t last = terms[found - 1].lane, kept = 0;
+    for (size_t l = 0; l < c->lane_count; l++) {
+        slong count = l == last && c->lane_count == 1 ? terms[found - 1].n + 1 : kept_in_lane(c, l, terms, found);
+        lane_cut(&c->lanes[l], count);
+    }
+    for (size_t l = 0; l < c->lane_count; l++) {
+        bool zero = true;
+        for (slong n = 0; n < c->lanes[l].c.count && zero; n++) zero = coefficient_is_zero(&c->lanes[l].c, n);
+        if (zero) lane_clear(&c->lanes[l]);
+        else c->lanes[kept++] = c->lanes[l];
+    }
+    c->lane_count = kept;
+}
+
+static void lane_cut_zeros(lane *l)
+{
+    slong count = l->c.count;
+    while (count > 0 && coefficient_is_zero(&l->c, count - 1)) count--;
+    lane_cut(l, count);
+}
+
+/* Keeps the terms asked for when they are there; *enough says whether. */
+static tw_status keep_terms(tw_engine *e, contribution *c, bool small, slong wanted, slong *found)
+{
+    term *terms;
+    if (c->terminates) {
+        for (size_t l = 0; l < c->lane_count; l++) lane_cut_zeros(&c->lanes[l]);
+        *found = wanted;
+        return TW_OK;
+    }
+    if (contribution_order(e, c, small, wanted, &terms, found) != TW_OK) return TW_ERROR;
+    if (*found >= wanted) lanes_cut(c, terms, *found);
+    free(terms);
+    return TW_OK;
+}
+
+enum { ZEROS_AT_MOST = 512 }; /* coefficients that all vanish before the amplitude is taken to be flat */
+
+tw_status contribution_fill(tw_engine *e, contribution *c, expr *large, bool small, slong terms, condition_list *conditions)
+{
+    kernel k;
+    kernel_init(&k);
+    tw_status status = kernel_read(e, &k, c, large);
+    slong length = terms + 4, found = 0;
+    while (status == TW_OK && budget_ok(e)) {
+        status = fill_to_length(e, c, &k, length, conditions);
+        if (status == TW_OK) status = keep_terms(e, c, small, terms, &found);
+        if (status != TW_OK || found >= terms) break;
+        if (found == 0 && length > ZEROS_AT_MOST) {
+            status = engine_fail(e, ERROR_UNSUITABLE, "the first %ld coefficients at the critical point all vanish: the "
+                                                      "integral is smaller than every power of %s", (long)length, large->is.name);
+            break;
+        }
+        slong guess = found > 0 ? length / found * terms + terms : 0;
+        length = guess > length + length / 2 && guess < 8 * length ? guess : 2 * length;
+    }
+    kernel_clear(&k);
+    return status == TW_OK && e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
+}

@@ -1,0 +1,64 @@
+/* From strands of a series to lanes of an expansion: Watson's lemma termwise (DLMF 2.3.8, 2.3.9). The last step that all local
+ * methods share; private to this room. */
+#ifndef TW_METHOD_LANES_H
+#define TW_METHOD_LANES_H
+
+#include "engine/method/expansion.h"
+
+/* What the kernel is: exp(-scale * x^mu) with scale = constant * large^power; far ends: exp(+scale * x). */
+typedef struct kernel {
+    fmpq_t mu;             /* > 0 */
+    expr *constant;        /* > 0, free of the large parameter */
+    fmpq_t power;
+    bool far_end;          /* the formal integral with exp(+scale * x): mu = 1, terms get (-1)^z; integer z only */
+    fmpq_t factor_power;   /* the factor's power of the large parameter, added to every exponent */
+    fmpq_t factor_number;  /* the factor's rational number, multiplied into the coefficients */
+} kernel;
+
+void kernel_init(kernel *k);
+void kernel_clear(kernel *k);
+
+void lane_init(lane *l);
+void lane_clear(lane *l);
+void contribution_clear_lanes(contribution *c);
+
+/* Nonzero coefficients in all lanes. */
+slong contribution_count_terms(const contribution *c);
+
+/* As expansion_order, for a contribution by itself. */
+tw_status contribution_order(tw_engine *e, const contribution *c, bool small, slong count, term **terms, slong *found);
+
+/* Lanes being collected. */
+typedef struct draft draft;
+typedef struct drafts {
+    size_t count;
+    draft **list;
+} drafts;
+void drafts_init(drafts *d);
+void drafts_clear(drafts *d);
+
+/* Adds what the strands give under the kernel. ERROR_DIVERGENT when a term's integral does not converge at 0;
+ * ERROR_UNSUITABLE for a far end whose exponents are no integers or that has logarithms. */
+tw_status drafts_add(tw_engine *e, drafts *d, const series *q, const kernel *k);
+
+/* Turns the drafts into the lanes of c (old ones are cleared) and sets its domain. */
+tw_status drafts_finish(tw_engine *e, drafts *d, contribution *c, const kernel *k);
+
+/* One more lane with these coefficients (copied) and no logarithm; the contribution's domain is widened. */
+tw_status contribution_set_lane(tw_engine *e, contribution *c, expr *constant, expr *first_exponent, const fmpq_t step,
+                                expr *const *x, slong count);
+
+/* Fills the lanes of c from its local form (or the formal one): at least `terms` nonzero terms in order of size and no more,
+ * or all of them when it terminates. conditions: of the coefficients, appended; may be NULL. */
+tw_status contribution_fill(tw_engine *e, contribution *c, expr *large, bool small, slong terms, condition_list *conditions);
+
+/* Splits factor = number * large^power * rest. */
+void factor_split(tw_engine *e, expr *factor, expr *large, fmpq_t number, fmpq_t power, expr **rest);
+
+/* p = x^mu exactly: true and mu set. */
+bool is_pure_power(tw_engine *e, expr *p, expr *x, fmpq_t mu);
+
+/* psi^(order)(r) for rational r in (0, 1], in known constants where there are (DLMF 5.4(ii), 5.15). */
+expr *polygamma_value(tw_engine *e, slong order, const fmpq_t r);
+
+#endif

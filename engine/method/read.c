@@ -1,0 +1,412 @@
+/* Reading an integral: from what was typed to factor * sum of int_0^end q exp(-scale p) dx (methods in their own files start
+ * from there). The one idea: the form is only ever changed by named, recorded, exact rewrites (take out factors, mirror, stretch,
+ * shift, split), so that the integral read is the integral typed. integral_read lists the stages in order. */
+#include <stdarg.h>
+#include <stdlib.h>
+#include <string.h>
+
+#include "engine/ball/decide.h"
+#include "engine/method/convergence.h"
+#include "engine/method/place.h"
+#include "engine/method/scale.h"
+
+void reading_init(reading *r)
+{
+    memset(r, 0, sizeof *r);
+    fmpq_init(r->power);
+    fmpq_init(r->mu);
+    local_form_init(&r->local);
+    conditions_init(&r->conditions);
+    derivation_init(&r->derivation);
+}
+
+void reading_clear(reading *r)
+{
+    fmpq_clear(r->power);
+    fmpq_clear(r->mu);
+    local_form_clear(&r->local);
+    conditions_clear(&r->conditions);
+    derivation_clear(&r->derivation);
+    free(r->summary);
+    memset(r, 0, sizeof *r);
+}
+
+/* What is known half way. */
+typedef struct frame {
+    tw_engine *e;
+    reading *r;
+    expr *binder;          /* the EXPR_INTEGRAL */
+    expr *x, *from, *to;   /* opened; x a fresh symbol */
+    expr *body, *outside;  /* integral = outside * int body dx */
+    bool mirrored;
+    separation s;
+    place p;
+} frame;
+
+/* ---- the record ---- */
+
+static step *record(frame *f, const char *rule, const char *source, expr *after, const char *format, ...)
+    __attribute__((format(printf, 5, 6)));
+
+static step *record(frame *f, const char *rule, const char *source, expr *after, const char *format, ...)
+{
+    step *s = derivation_add(&f->r->derivation, rule, source);
+    s->after = after;
+    if (format) {
+        char words[512];
+        va_list list;
+        va_start(list, format);
+        vsnprintf(words, sizeof words, format, list);
+        va_end(list);
+        s->detail = base_copy(words);
+    }
+    return s;
+}
+
+static expr *form_so_far(const frame *f)
+{
+    return expr_mul(f->e, f->outside, expr_integral(f->e, f->x, f->from, f->to, f->body));
+}
+
+expr *local_form_integral(tw_engine *e, const local_form *l)
+{
+    expr *sum = expr_int(e, 0), *zero = expr_int(e, 0);
+    for (size_t k = 0; k < l->count; k++) {
+        const branch *b = &l->branches[k];
+        expr *kernel = expr_call1(e, FUNCTION_EXP, expr_neg(e, expr_mul(e, l->scale, b->p)));
+        sum = expr_add(e, sum, expr_integral(e, b->x, zero, b->end, expr_mul(e, b->q, kernel)));
+    }
+    return expr_mul(e, l->factor, sum);
+}
+
+/* ---- taking apart ---- */
+
+static bool holds_kind(expr *a, expr_kind kind)
+{
+    if (a->kind == kind) return true;
+    for (uint32_t k = 0; k < a->count; k++)
+        if (holds_kind(a->args[k], kind)) return true;
+    return false;
+}
+
+static bool holds_i(expr *a)
+{
+    if (expr_is_constant(a, CONSTANT_I)) return true;
+    for (uint32_t k = 0; k < a->count; k++)
+        if (holds_i(a->args[k])) return true;
+    return false;
+}
+
+static tw_status find_binder(frame *f, expr *integral)
+{
+    tw_engine *e = f->e;
+    expr *const *factors;
+    size_t count = expr_factors(&integral, &factors);
+    f->outside = expr_int(e, 1);
+    for (size_t k = 0; k < count; k++) {
+        if (factors[k]->kind == EXPR_CONTOUR)
+            return engine_fail(e, ERROR_UNAVAILABLE, "an integral along a contour needs the method `descent`, which this version "
+                                                     "does not have");
+        if (factors[k]->kind == EXPR_INTEGRAL && f->binder)
+            return engine_fail(e, ERROR_UNSUITABLE, "this is a product of integrals: expand each by itself");
+        if (factors[k]->kind == EXPR_INTEGRAL) f->binder = factors[k];
+        else f->outside = expr_mul(e, f->outside, factors[k]);
+    }
+    if (!f->binder)
+        return engine_fail(e, ERROR_UNSUITABLE, holds_kind(integral, EXPR_INTEGRAL)
+                                                    ? "the integral stands inside a power or a function: expand the integral by itself"
+                                                    : "there is no integral in it");
+    return f->outside ? TW_OK : TW_ERROR;
+}
+
+static tw_status open_binder(frame *f)
+{
+    tw_engine *e = f->e;
+    const char *name = expr_binder_name(f->binder);
+    f->x = expr_fresh(e, name);
+    f->r->original_variable = expr_symbol(e, name);
+    f->from = f->binder->args[0];
+    f->to = f->binder->args[1];
+    f->body = expr_open(e, f->binder, f->x);
+    if (!f->body || !f->x || !f->r->original_variable) return TW_ERROR;
+    if (holds_kind(f->body, EXPR_INTEGRAL) || holds_kind(f->body, EXPR_CONTOUR))
+        return engine_fail(e, ERROR_UNSUITABLE, "this is an integral over an integral: the methods need one variable, so carry out "
+                                                "the inner integral first");
+    if (holds_kind(f->from, EXPR_INTEGRAL) || holds_kind(f->to, EXPR_INTEGRAL))
+        return engine_fail(e, ERROR_UNSUITABLE, "an end of the path is an integral");
+    return TW_OK;
+}
+
+static tw_status find_large(frame *f)
+{
+    tw_engine *e = f->e;
+    large_kind kind = facts_large(e, &f->r->large);
+    if (kind == LARGE_NONE)
+        return engine_fail(e, ERROR_UNSUITABLE, "no parameter is declared large or small: say for example `large s` first");
+    f->r->small = kind == LARGE_SMALL;
+    const char *name = f->r->large->is.name;
+    if (!expr_has(f->body, f->r->large) && !expr_has(f->from, f->r->large) && !expr_has(f->to, f->r->large))
+        return engine_fail(e, ERROR_UNSUITABLE, "%s does not occur in the integral: there is nothing to expand in", name);
+    return TW_OK;
+}
+
+/* ---- the path's direction ---- */
+
+static tw_status turn_path(frame *f)
+{
+    tw_engine *e = f->e;
+    bool down = expr_is_inf(f->from) || expr_is_minus_inf(f->to);
+    if (!down && !expr_is_minus_inf(f->from) && !expr_is_inf(f->to)) {
+        int sign = decide_sign(e, expr_sub(e, f->to, f->from));
+        if (e->error.kind != ERROR_NONE) return TW_ERROR;
+        if (sign == 0) return engine_fail(e, ERROR_UNSUITABLE, "the path has length 0: the integral is 0");
+        down = sign == -1;
+        if (sign == 2 && conditions_require(e, &f->r->conditions, expr_relation_of(e, RELATION_LESS, f->from, f->to)) != TW_OK)
+            return TW_ERROR;
+    }
+    if (!down) return TW_OK;
+    expr *swap = f->from;
+    f->from = f->to;
+    f->to = swap;
+    f->outside = expr_neg(e, f->outside);
+    record(f, "turn the path round", NULL, form_so_far(f), NULL);
+    return TW_OK;
+}
+
+static tw_status mirror_path(frame *f)
+{
+    tw_engine *e = f->e;
+    if (!expr_is_minus_inf(f->from) || expr_is_inf(f->to)) return TW_OK;
+    expr *y = expr_fresh(e, expr_binder_name(f->binder));
+    f->body = expr_substitute(e, f->body, f->x, expr_neg(e, y));
+    f->from = expr_neg(e, f->to);
+    f->to = expr_constant_of(e, CONSTANT_INF);
+    f->x = y;
+    f->mirrored = true;
+    if (!f->body || !f->from) return TW_ERROR;
+    record(f, "mirror the path", NULL, form_so_far(f), "%s is replaced by -%s", f->r->original_variable->is.name,
+           f->r->original_variable->is.name);
+    return TW_OK;
+}
+
+/* ---- kernel and amplitude ---- */
+
+static tw_status separate(frame *f)
+{
+    tw_engine *e = f->e;
+    reading *r = f->r;
+    if (body_separate(e, &f->s, f->body, f->x, f->from, f->to, r->large, r->small) != TW_OK) return TW_ERROR;
+    if (holds_i(f->s.phase))
+        return engine_fail(e, ERROR_UNAVAILABLE, "the exponent is not real on the path: an oscillating kernel needs the method "
+                                                 "`phase` or `descent`, which this version does not have");
+    fmpq_set(r->power, f->s.power);
+    f->outside = expr_mul(e, f->outside, f->s.factor);
+    bool stretched = !fmpq_is_zero(f->s.stretch);
+    f->x = f->s.variable;
+    f->from = f->s.from;
+    f->to = f->s.to;
+    expr *scale = expr_pow(e, r->large, expr_fmpq(e, r->power));
+    expr *kernel = expr_call1(e, FUNCTION_EXP, expr_neg(e, expr_mul(e, scale, f->s.phase)));
+    f->body = expr_mul(e, f->s.amplitude, kernel);
+    expr *form = form_so_far(f);
+    if (!form) return TW_ERROR;
+    if (stretched) {
+        char *by = expr_text(e, expr_pow(e, r->large, expr_fmpq(e, f->s.stretch)));
+        record(f, "stretch the variable", NULL, form, "%s = %s*t separates %s from the variable", r->original_variable->is.name,
+               by ? by : "", r->large->is.name);
+        free(by);
+    } else {
+        record(f, "separate kernel and amplitude", NULL, form, NULL);
+    }
+    return TW_OK;
+}
+
+/* The original variable at t. */
+static expr *original_place(const frame *f, expr *t)
+{
+    tw_engine *e = f->e;
+    expr *x = expr_mul(e, expr_pow(e, f->r->large, expr_fmpq(e, f->s.stretch)), t);
+    return f->mirrored ? expr_neg(e, x) : x;
+}
+
+/* ---- branches ---- */
+
+static expr *without_abs(tw_engine *e, expr *f, expr *x, expr *end);
+
+static expr *rebuild(tw_engine *e, expr *f, expr *x, expr *end)
+{
+    expr **args = base_alloc((f->count + 1) * sizeof *args);
+    bool good = true, same = true;
+    for (uint32_t k = 0; k < f->count; k++) {
+        args[k] = without_abs(e, f->args[k], x, end);
+        good = good && args[k];
+        same = same && args[k] == f->args[k];
+    }
+    expr *made = !good                     ? NULL
+                 : same                    ? f
+                 : f->kind == EXPR_SUM     ? expr_sum(e, args, f->count)
+                 : f->kind == EXPR_PRODUCT ? expr_product(e, args, f->count)
+                 : f->kind == EXPR_POWER   ? expr_pow(e, args[0], args[1])
+                                           : expr_call(e, f->is.function, args, f->count);
+    free(args);
+    return made;
+}
+
+/* abs(u) and sign(u) replaced where u has one sign on (0, end). */
+static expr *without_abs(tw_engine *e, expr *f, expr *x, expr *end)
+{
+    if (!expr_has(f, x) || f->count == 0) return f;
+    if (f->kind != EXPR_SUM && f->kind != EXPR_PRODUCT && f->kind != EXPR_POWER && f->kind != EXPR_CALL) return f;
+    if (expr_is_call(f, FUNCTION_ABS) || expr_is_call(f, FUNCTION_SIGN)) {
+        bool modulus = f->is.function == FUNCTION_ABS;
+        expr *u = f->args[0], *minus = expr_neg(e, u);
+        if (positive_on_branch(e, u, x, end) == ANSWER_YES) return modulus ? u : expr_int(e, 1);
+        if (positive_on_branch(e, minus, x, end) == ANSWER_YES) return modulus ? minus : expr_int(e, -1);
+    }
+    return rebuild(e, f, x, end);
+}
+
+/* The branch that starts at the least point and runs up (sign 1) or down (-1) to `far`. */
+static tw_status add_branch(frame *f, int sign, expr *far)
+{
+    tw_engine *e = f->e;
+    reading *r = f->r;
+    expr *y = expr_fresh(e, expr_binder_name(f->binder));
+    bool endless = expr_is_inf(far) || expr_is_minus_inf(far);
+    expr *end = endless ? expr_constant_of(e, CONSTANT_INF) : expr_mul(e, expr_int(e, sign), expr_sub(e, far, f->p.center));
+    end = normal_under_facts(e, end, NULL, 0);
+    expr *x = expr_add(e, f->p.center, expr_mul(e, expr_int(e, sign), y));
+    expr *q = normal_under_facts(e, expr_substitute(e, f->s.amplitude, f->x, x), &y, 1);
+    if (!q || !end) return TW_ERROR;
+    q = normal_under_facts(e, without_abs(e, q, y, end), &y, 1);
+    expr *p = f->p.pure ? expr_pow(e, y, expr_fmpq(e, f->p.mu)) : NULL;
+    if (!p) {
+        expr *level = expr_substitute(e, f->s.phase, f->x, f->p.center);
+        p = expr_sub(e, expr_substitute(e, f->s.phase, f->x, x), level);
+        p = normal_under_facts(e, expr_expand(e, p), &y, 1);
+        f->p.level = level;
+    }
+    if (!p || !q) return TW_ERROR;
+    r->far_places[r->local.count] = endless ? NULL : original_place(f, far);
+    local_form_add(&r->local, y, end, p, q);
+    return TW_OK;
+}
+
+static tw_status make_branches(frame *f)
+{
+    tw_engine *e = f->e;
+    reading *r = f->r;
+    place *p = &f->p;
+    r->kind = p->kind == PLACE_INSIDE ? POINT_INTERIOR : POINT_END;
+    r->pure = p->pure;
+    fmpq_set(r->mu, p->mu);
+    r->place = original_place(f, p->center);
+    if (p->kind != PLACE_TO && add_branch(f, 1, f->to) != TW_OK) return TW_ERROR;
+    if (p->kind != PLACE_FROM && add_branch(f, -1, f->from) != TW_OK) return TW_ERROR;
+    expr *large = expr_pow(e, r->large, expr_fmpq(e, r->power));
+    r->scale_constant = p->pure ? p->c : expr_int(e, 1);
+    r->local.scale = expr_mul(e, r->scale_constant, large);
+    expr *height = expr_call1(e, FUNCTION_EXP, expr_neg(e, expr_mul(e, large, p->level)));
+    r->local.factor = normal_under_facts(e, expr_mul(e, f->outside, height), &r->large, 1);
+    if (!r->place || !r->local.scale || !r->local.factor) return TW_ERROR;
+    char *words = expr_text(e, r->place);
+    record(f, p->kind == PLACE_INSIDE ? "split at the critical point" : "shift to the critical point", NULL,
+           local_form_integral(e, &r->local), "the exponent is greatest at %s = %s only", r->original_variable->is.name,
+           words ? words : "");
+    free(words);
+    return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
+}
+
+/* ---- convergence, in the large parameter ---- */
+
+/* scale > least as a bound on the parameter itself; NULL when it is no restriction. */
+static expr *parameter_bound(frame *f, expr *least)
+{
+    tw_engine *e = f->e;
+    int sign = expr_is_number(least) ? fmpq_sgn(expr_number(least)) : decide_sign(e, least);
+    if (sign == 0 || sign == -1) return NULL;
+    fmpq_t inverse;
+    fmpq_init(inverse);
+    fmpq_inv(inverse, f->r->power);
+    expr *bound = expr_pow(e, expr_div(e, least, f->r->scale_constant), expr_fmpq(e, inverse));
+    fmpq_clear(inverse);
+    return bound;
+}
+
+static tw_status check_convergence(frame *f, text *summary)
+{
+    tw_engine *e = f->e;
+    reading *r = f->r;
+    expr *least = NULL;
+    bool proved = true;
+    for (size_t k = 0; k < r->local.count; k++)
+        if (branch_converges(e, r, &r->local.branches[k], r->far_places[k], &least, &proved) != TW_OK) return TW_ERROR;
+    const char *s = r->large->is.name, *sign = r->small ? "<" : ">";
+    expr *bound = least ? parameter_bound(f, least) : NULL;
+    if (e->error.kind != ERROR_NONE) return TW_ERROR;
+    step *last = &r->derivation.steps[r->derivation.count - 1];
+    text words;
+    text_init(&words);
+    if (!proved) {
+        text_addf(&words, "the integral converges absolutely for %s %s", r->small ? "small" : "large", s);
+        conditions_add(&r->conditions, words.bytes, NULL, CONDITION_OPEN);
+        conditions_add(&last->conditions, words.bytes, NULL, CONDITION_OPEN);
+        text_addf(summary, "; convergence for %s %s is not proved", r->small ? "small" : "large", s);
+    } else {
+        char *number = bound ? expr_text(e, bound) : base_copy("0");
+        const char *relation = bound ? sign : ">";
+        text_addf(&words, "the integral converges absolutely for %s %s %s", s, relation, number ? number : "");
+        if (bound) conditions_add(&r->conditions, words.bytes, NULL, CONDITION_PROVED);
+        conditions_add(&last->conditions, words.bytes, NULL, CONDITION_PROVED);
+        text_addf(summary, "; converges for %s %s %s", s, relation, number ? number : "");
+        free(number);
+    }
+    text_clear(&words);
+    return TW_OK;
+}
+
+/* ---- the whole ---- */
+
+static void begin_summary(frame *f, text *t)
+{
+    expr **symbols;
+    size_t count = expr_symbols(f->r->integral, &symbols);
+    text_addf(t, "depends on %s", f->r->large->is.name);
+    for (size_t k = 0; k < count; k++)
+        if (symbols[k] != f->r->large) text_addf(t, ", %s", symbols[k]->is.name);
+    free(symbols);
+    char *place = expr_text(f->e, f->r->place);
+    text_addf(t, "; one critical point, %s%s = %s%s", f->r->kind == POINT_END ? "the end " : "", f->r->original_variable->is.name,
+              place ? place : "", f->r->kind == POINT_END ? "" : " inside the path");
+    free(place);
+}
+
+static tw_status read_stages(frame *f, text *summary)
+{
+    tw_engine *e = f->e;
+    reading *r = f->r;
+    if (find_binder(f, r->integral) != TW_OK || open_binder(f) != TW_OK || find_large(f) != TW_OK) return TW_ERROR;
+    step *first = record(f, "as typed", NULL, r->integral, NULL);
+    first->before = r->integral;
+    if (turn_path(f) != TW_OK || mirror_path(f) != TW_OK || separate(f) != TW_OK) return TW_ERROR;
+    if (place_find(e, &f->p, f->s.phase, f->x, f->from, f->to, r->large, &r->conditions) != TW_OK) return TW_ERROR;
+    if (make_branches(f) != TW_OK) return TW_ERROR;
+    begin_summary(f, summary);
+    return check_convergence(f, summary);
+}
+
+tw_status integral_read(tw_engine *e, reading *out, expr *integral)
+{
+    frame f = {.e = e, .r = out};
+    separation_init(&f.s);
+    place_init(&f.p);
+    out->integral = integral;
+    text summary;
+    text_init(&summary);
+    tw_status status = read_stages(&f, &summary);
+    if (status == TW_OK) out->summary = base_copy(summary.bytes ? summary.bytes : "");
+    text_clear(&summary);
+    separation_clear(&f.s);
+    place_clear(&f.p);
+    return status == TW_OK && e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
+}
