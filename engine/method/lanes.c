@@ -310,11 +310,11 @@ static bool draft_offset(tw_engine *e, const draft *d, expr *base, slong *offset
 }
 
 /* The draft with this constant and class, its base at or below `base`; *offset: where base stands. */
-static draft *drafts_find(tw_engine *e, drafts *d, expr *constant, slong log_power, expr *base, slong step, slong *offset)
+static draft *drafts_find(tw_engine *e, drafts *d, expr *constant, slong log_power, expr *base, slong stride, slong *offset)
 {
     for (size_t k = 0; k < d->count; k++) {
         draft *old = d->list[k];
-        if (old->constant != constant || old->log_power != log_power || old->step != step) continue;
+        if (old->constant != constant || old->log_power != log_power || old->step != stride) continue;
         if (!draft_offset(e, old, base, offset)) continue;
         if (*offset < 0) {
             draft_shift(e, old, -*offset);
@@ -323,7 +323,7 @@ static draft *drafts_find(tw_engine *e, drafts *d, expr *constant, slong log_pow
         return old;
     }
     draft *made = base_alloc(sizeof *made);
-    *made = (draft){constant, log_power, base, step, 0, NULL, NULL};
+    *made = (draft){constant, log_power, base, stride, 0, NULL, NULL};
     d->list = base_resize(d->list, (d->count + 1) * sizeof *d->list);
     d->list[d->count++] = made;
     *offset = 0;
@@ -501,14 +501,17 @@ tw_status drafts_add(tw_engine *e, drafts *d, const series *q, const kernel *k)
 {
     for (size_t s = 0; s < q->count; s++) {
         const strand *one = &q->strands[s];
-        fmpq_t step;
-        fmpq_init(step);
-        fmpq_inv(step, k->mu);
-        fmpq_div_fmpz(step, step, (fmpz[]){one->den});
-        slong period = fmpz_get_si(fmpq_denref(step)), forward = fmpz_get_si(fmpq_numref(step));
-        fmpq_clear(step);
+        fmpq_t forward, unit;
+        fmpq_init(forward);
+        fmpq_init(unit);
+        fmpq_inv(forward, k->mu);
+        fmpq_set_si(unit, 1, (ulong)one->den);
+        fmpq_mul(forward, forward, unit);
+        fmpq_clear(unit);
+        slong period = fmpz_get_si(fmpq_denref(forward)), steps = fmpz_get_si(fmpq_numref(forward));
+        fmpq_clear(forward);
         for (slong j = 0; j < period && j < one->c.count; j++) {
-            class_of c = {e, d, one, k, j, period, forward, NULL, NULL, 0, {{0}}, NULL};
+            class_of c = {e, d, one, k, j, period, steps, NULL, NULL, 0, {{0}}, NULL};
             if (class_add(&c) != TW_OK) return TW_ERROR;
         }
     }
@@ -558,7 +561,7 @@ static void widen_domain(contribution *c, domain_kind d)
     else if (d != c->domain && d != DOMAIN_RATIONAL) c->domain = DOMAIN_MIXED;
 }
 
-tw_status contribution_set_lane(tw_engine *e, contribution *c, expr *constant, expr *first_exponent, const fmpq_t step,
+tw_status contribution_set_lane(tw_engine *e, contribution *c, expr *constant, expr *first_exponent, const fmpq_t forward,
                                 expr *const *x, slong count)
 {
     for (slong n = 0; n < count; n++)
@@ -569,7 +572,7 @@ tw_status contribution_set_lane(tw_engine *e, contribution *c, expr *constant, e
     lane_init(l);
     l->constant = constant;
     l->first_exponent = first_exponent;
-    fmpq_set(l->step, step);
+    fmpq_set(l->step, forward);
     coefficients_take(&l->c, NULL, x, count);
     widen_domain(c, l->c.domain);
     return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;

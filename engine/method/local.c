@@ -23,13 +23,13 @@ static expr *factor_rest(tw_engine *e, expr *factor, expr *large)
     return rest;
 }
 
-tw_status local_expand(tw_engine *e, expansion *out, const reading *r, slong terms, const char *method)
+tw_status local_expand(tw_engine *e, expansion *out, const reading *r, slong terms, const char *name)
 {
     contribution *c = expansion_add(out);
     c->variable = r->original_variable;
     c->place = r->place;
     c->kind = r->kind;
-    c->method = method;
+    c->method = name;
     c->dominant = true;
     c->prefactor = factor_rest(e, r->local.factor, r->large);
     local_form_copy(&c->local, &r->local);
@@ -51,13 +51,13 @@ static tw_status far_form(tw_engine *e, local_form *out, const reading *r, const
     return TW_OK;
 }
 
-static tw_status add_far_end(tw_engine *e, expansion *out, const reading *r, size_t k, slong terms, const char *method)
+static tw_status add_far_end(tw_engine *e, expansion *out, const reading *r, size_t k, slong terms, const char *name)
 {
     contribution *c = expansion_add(out);
     c->variable = r->original_variable;
     c->place = r->far_places[k];
     c->kind = POINT_FAR_END;
-    c->method = method;
+    c->method = name;
     c->dominant = false;
     tw_status status = far_form(e, &c->formal, r, &r->local.branches[k]);
     if (status == TW_OK) {
@@ -70,14 +70,14 @@ static tw_status add_far_end(tw_engine *e, expansion *out, const reading *r, siz
     return TW_ERROR;
 }
 
-tw_status local_expand_far_ends(tw_engine *e, expansion *out, const reading *r, slong terms, const char *method, bool *all)
+tw_status local_expand_far_ends(tw_engine *e, expansion *out, const reading *r, slong terms, const char *name, bool *all)
 {
     *all = true;
     for (size_t k = 0; k < r->local.count; k++) {
         if (!r->far_places[k]) continue;
         char *place = expr_text(e, r->far_places[k]);
         if (!place) return TW_ERROR;
-        tw_status status = add_far_end(e, out, r, k, terms, method);
+        tw_status status = add_far_end(e, out, r, k, terms, name);
         bool left_out = status != TW_OK && e->error.kind == ERROR_UNSUITABLE;
         text words;
         text_init(&words);
@@ -97,11 +97,11 @@ tw_status local_expand_far_ends(tw_engine *e, expansion *out, const reading *r, 
     return TW_OK;
 }
 
-tw_status local_extend(tw_engine *e, expansion *a, slong terms, const char *method)
+tw_status local_extend(tw_engine *e, expansion *a, slong terms, const char *name)
 {
     for (size_t k = 0; k < a->contribution_count; k++) {
         contribution *c = &a->contributions[k];
-        if (strcmp(c->method, method) != 0 || c->terminates) continue;
+        if (strcmp(c->method, name) != 0 || c->terminates) continue;
         if (contribution_count_terms(c) >= terms) continue;
         if (contribution_fill(e, c, a->large, a->small, terms, NULL) != TW_OK) return TW_ERROR;
     }

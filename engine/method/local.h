@@ -5,14 +5,14 @@
 #include "engine/method/method.h"
 
 /* The contribution of the critical point, lanes filled with `terms` terms. */
-tw_status local_expand(tw_engine *e, expansion *out, const reading *r, slong terms, const char *method);
+tw_status local_expand(tw_engine *e, expansion *out, const reading *r, slong terms, const char *name);
 
 /* The contributions of finite far ends, exponentially small, behind it. One that has no such form (a branch point there) is left
  * out with a note in the derivation; *all: none was left out. */
-tw_status local_expand_far_ends(tw_engine *e, expansion *out, const reading *r, slong terms, const char *method, bool *all);
+tw_status local_expand_far_ends(tw_engine *e, expansion *out, const reading *r, slong terms, const char *name, bool *all);
 
-/* More terms for every contribution made by `method` that has fewer and does not end. */
-tw_status local_extend(tw_engine *e, expansion *a, slong terms, const char *method);
+/* More terms for every contribution made by the method `name` that has fewer and does not end. */
+tw_status local_extend(tw_engine *e, expansion *a, slong terms, const char *name);
 
 /* prefactor*(first terms + ...) of contribution k; an expression with at most `terms` terms. */
 expr *local_partial_sum(tw_engine *e, expansion *a, size_t k, slong terms);

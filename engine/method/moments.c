@@ -91,7 +91,7 @@ typedef struct moved {
     const reading *r;
     expr *shift;
     const lane *from;    /* in powers of S */
-    slong last, step;    /* last index; z moves by `step` an index */
+    slong last, stride;  /* last index; z moves by `stride` an index */
 } moved;
 
 /* The coefficient of s^(K j). */
@@ -102,7 +102,7 @@ static expr *moved_coefficient(const moved *m, slong j)
     fmpz_t binomial;
     fmpz_init(binomial);
     for (slong n = 0; n <= m->last; n++) {
-        slong high = (m->last - n) * m->step;
+        slong high = (m->last - n) * m->stride;
         if (high < j || coefficient_is_zero(&m->from->c, n)) continue;
         fmpz_bin_uiui(binomial, (ulong)high, (ulong)j);
         expr *part = expr_mul(e, coefficient_expr(e, &m->from->c, n), expr_fmpz(e, binomial));
@@ -115,23 +115,19 @@ static expr *moved_coefficient(const moved *m, slong j)
 static tw_status lane_of_moved(moved *m, contribution *c, const kernel *k)
 {
     tw_engine *e = m->e;
-    slong top = m->last * m->step;
-    drafts d;
-    drafts_init(&d);
-    fmpq_t power;
+    slong top = m->last * m->stride;
+    fmpq_t power, forward;
     fmpq_init(power);
+    fmpq_init(forward);
     fmpq_mul_si(power, m->r->power, top);
     fmpq_add(power, power, k->factor_power);
     expr **x = base_alloc((size_t)(top + 1) * sizeof *x);
     for (slong j = 0; j <= top; j++) x[j] = expr_mul(e, moved_coefficient(m, top - j), expr_fmpq(e, k->factor_number));
-    fmpq_t step;
-    fmpq_init(step);
-    fmpq_neg(step, m->r->power);
-    tw_status status = contribution_set_lane(e, c, expr_int(e, 1), expr_fmpq(e, power), step, x, top + 1);
+    fmpq_neg(forward, m->r->power);
+    tw_status status = contribution_set_lane(e, c, expr_int(e, 1), expr_fmpq(e, power), forward, x, top + 1);
     free(x);
-    fmpq_clear(step);
+    fmpq_clear(forward);
     fmpq_clear(power);
-    drafts_clear(&d);
     return status;
 }
 
@@ -148,7 +144,7 @@ static tw_status add_moved(moved *m, expansion *out, const kernel *k, expr *rest
     c->terminates = true;
     local_form_copy(&c->local, &r->local);
     expr *scale = expr_add(e, r->local.scale, m->shift);
-    expr *z = expr_add(e, m->from->first_exponent, expr_int(e, -m->last * m->step));
+    expr *z = expr_add(e, m->from->first_exponent, expr_int(e, -m->last * m->stride));
     expr *parts[] = {rest, m->from->constant, expr_pow(e, scale, z)};
     if (!scale || !z || !parts[2]) return TW_ERROR;
     c->prefactor = expr_product(e, parts, 3);
@@ -194,7 +190,7 @@ static tw_status expand_moved(tw_engine *e, expansion *out, const reading *r, ex
     for (size_t n = 0; n < plain.lane_count && status == TW_OK; n++) {
         moved m = {e, r, shift, &plain.lanes[n], plain.lanes[n].c.count - 1, 1};
         while (m.last > 0 && coefficient_is_zero(&m.from->c, m.last)) m.last--;
-        m.step = -fmpz_get_si(fmpq_numref(m.from->step));
+        m.stride = -fmpz_get_si(fmpq_numref(m.from->step));
         status = add_moved(&m, out, &k, rest);
     }
     kernel_clear(&k);

@@ -296,7 +296,7 @@ static tw_status make_branches(frame *f)
 {
     tw_engine *e = f->e;
     reading *r = f->r;
-    place *p = &f->p;
+    const place *p = &f->p;
     r->kind = p->kind == PLACE_INSIDE ? POINT_INTERIOR : POINT_END;
     r->pure = p->pure;
     fmpq_set(r->mu, p->mu);
@@ -375,10 +375,10 @@ static void begin_summary(frame *f, text *t)
     for (size_t k = 0; k < count; k++)
         if (symbols[k] != f->r->large) text_addf(t, ", %s", symbols[k]->is.name);
     free(symbols);
-    char *place = expr_text(f->e, f->r->place);
+    char *words = expr_text(f->e, f->r->place);
     text_addf(t, "; one critical point, %s%s = %s%s", f->r->kind == POINT_END ? "the end " : "", f->r->original_variable->is.name,
-              place ? place : "", f->r->kind == POINT_END ? "" : " inside the path");
-    free(place);
+              words ? words : "", f->r->kind == POINT_END ? "" : " inside the path");
+    free(words);
 }
 
 static tw_status read_stages(frame *f, text *summary)
