@@ -379,8 +379,8 @@ static void weight_of_log(fmpq_t out, const class_of *c, slong i)
     fmpq_clear(u);
 }
 
-/* One term: its rational weight, and what is not rational of it (NULL: nothing). Sums of fixed constants are multiplied out, so
- * that like ones meet; products of parameters stay as they are. */
+/* One term: its rational weight, and what is not rational of it (NULL: nothing). Numbers are multiplied into sums, and sums of
+ * fixed constants into each other, so that like ones meet; products of parameters stay as they are. */
 static void add_term(class_of *c, draft *d, slong n, const fmpq_t weight, expr *rest, slong index)
 {
     if (coefficient_is_zero(&c->s->c, index)) return;
@@ -395,7 +395,7 @@ static void add_term(class_of *c, draft *d, slong n, const fmpq_t weight, expr *
     expr *value = expr_mul(c->e, coefficient_expr(c->e, &c->s->c, index), expr_fmpq(c->e, weight));
     if (rest) value = expr_mul(c->e, value, rest);
     bool constants = c->s->log_power > 0 && expr_is_number(c->z) && c->s->c.domain == DOMAIN_RATIONAL;
-    draft_add_x(c->e, d, n, constants ? expr_expand(c->e, value) : value);
+    draft_add_x(c->e, d, n, !rest || constants ? expr_expand(c->e, value) : value);
 }
 
 /* c^-(i): into the weight when c is rational, else into *rest. */

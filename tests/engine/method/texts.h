@@ -1,0 +1,106 @@
+/* Texts for the tests of this room: parse an expression in the language, declare facts, expand, evaluate the terms of an
+ * expansion at a point in high precision. Independent of engine/numeric. */
+#ifndef TW_TESTS_METHOD_TEXTS_H
+#define TW_TESTS_METHOD_TEXTS_H
+
+#include <setjmp.h>
+#include <stdarg.h>
+#include <stddef.h>
+#include <stdlib.h>
+#include <string.h>
+
+#include <cmocka.h>
+
+#include "engine/ball/tape.h"
+#include "engine/method/method.h"
+#include "lang/lower.h"
+#include "lang/parse.h"
+
+static inline expr *text_parse(tw_engine *e, const char *words)
+{
+    source s;
+    syntax_text t;
+    source_init(&s, "<test>", words, strlen(words));
+    syntax_text_init(&t);
+    syntax *a = parse_expression_text(&s, &t);
+    expr *made = NULL;
+    if (a) {
+        lowering l;
+        lowering_init(&l, e, NULL);
+        made = lower_expression(&l, a);
+        lowering_clear(&l);
+    }
+    syntax_text_clear(&t);
+    if (!made) fail_msg("cannot read `%s`: %s", words, e->error.words ? e->error.words : "syntax");
+    return made;
+}
+
+/* A condition of the language, such as "0 < p < 1", as facts. */
+static inline void text_given(tw_engine *e, const char *words)
+{
+    source s;
+    syntax_text t;
+    source_init(&s, "<test>", words, strlen(words));
+    syntax_text_init(&t);
+    syntax *a = parse_expression_text(&s, &t);
+    lower_conditions list;
+    lower_conditions_init(&list);
+    lowering l;
+    lowering_init(&l, e, NULL);
+    if (!a || lower_condition(&l, a, &list) != TW_OK) fail_msg("cannot read the condition `%s`", words);
+    for (size_t k = 0; k < list.count; k++) assert_int_equal(facts_add(e, list.list[k], CONDITION_GIVEN), TW_OK);
+    lowering_clear(&l);
+    lower_conditions_clear(&list);
+    syntax_text_clear(&t);
+}
+
+static inline tw_engine *text_engine(const char *large, large_kind kind)
+{
+    tw_engine *e = tw_engine_new();
+    assert_non_null(e);
+    if (large) assert_int_equal(facts_set_large(e, expr_symbol(e, large), kind, NULL, NULL), TW_OK);
+    return e;
+}
+
+/* value of a (closed after substitution) as a ball. */
+static inline void text_value(tw_engine *e, acb_t out, expr *a, expr *const *symbols, expr *const *values, size_t n, slong bits)
+{
+    expr *closed = expr_substitute_all(e, a, symbols, values, n);
+    assert_non_null(closed);
+    if (ball_value(e, out, closed, bits) != TW_OK) fail_msg("no value: %s", e->error.words);
+}
+
+static inline void assert_text(tw_engine *e, expr *a, const char *words)
+{
+    if (!a) fail_msg("no expression where `%s` was expected: %s", words, e->error.words ? e->error.words : "");
+    char *made = expr_text(e, a);
+    assert_string_equal(made, words);
+    free(made);
+}
+
+/* a and the expression `words` are the same number at the sample values of their symbols, to 60 digits. */
+static inline void assert_same_value(tw_engine *e, expr *a, const char *words)
+{
+    expr *d = expr_sub(e, a, text_parse(e, words));
+    assert_non_null(d);
+    expr **symbols;
+    size_t n = expr_symbols(d, &symbols);
+    expr **values = malloc((n + 1) * sizeof *values);
+    for (size_t k = 0; k < n; k++) values[k] = expr_frac(e, 7 + (slong)k, 5 + 2 * (slong)k);
+    acb_t v;
+    acb_init(v);
+    text_value(e, v, d, symbols, values, n, 400);
+    arf_t up;
+    arf_init(up);
+    acb_get_abs_ubound_arf(up, v, 30);
+    if (arf_cmp_2exp_si(up, -200) > 0) {
+        char *left = expr_text(e, a);
+        fail_msg("`%s` is not `%s`", left, words);
+    }
+    arf_clear(up);
+    acb_clear(v);
+    free(symbols);
+    free(values);
+}
+
+#endif
