@@ -97,5 +97,7 @@ int expr_order(expr *a, expr *b)
         break;
     default: break;
     }
+    if (a->kind != EXPR_SUM && a->depth != b->depth) /* deep towers of calls are told apart at their tops */
+        return sign_of((int64_t)a->depth - (int64_t)b->depth);
     return order_lists(a->args, a->count, b->args, b->count);
 }

@@ -1,13 +1,19 @@
 /* An expression read as a polynomial in one symbol. Knows sums, products and natural powers; coefficients are expressions
- * free of the symbol. Its one idea: polynomials are arrays of coefficients, computed bottom-up and remembered by node. */
+ * free of the symbol. Its one idea: polynomials are lists of the terms that are there, rising in degree, computed bottom-up
+ * and remembered by node. */
 #include "engine/expr/node.h"
 
 #include <stdlib.h>
 #include <string.h>
 
-typedef struct polynomial {
+typedef struct monomial {
     slong degree;
-    expr *c[];
+    expr *coefficient; /* free of the symbol, not 0 */
+} monomial;
+
+typedef struct polynomial {
+    size_t count; /* 0: the zero polynomial */
+    monomial terms[];
 } polynomial;
 
 typedef struct polynomial_walk {
@@ -17,64 +23,82 @@ typedef struct polynomial_walk {
     memo memo;
 } polynomial_walk;
 
-static polynomial *polynomial_new(polynomial_walk *w, slong degree)
+static polynomial *walk(polynomial_walk *w, expr *a);
+
+static polynomial *polynomial_new(polynomial_walk *w, size_t room)
 {
-    polynomial *p = engine_scratch(w->engine, 1, sizeof *p + ((size_t)degree + 1) * sizeof(expr *));
-    p->degree = degree;
-    for (slong k = 0; k <= degree; k++)
-        p->c[k] = expr_int(w->engine, 0);
+    polynomial *p = engine_scratch(w->engine, 1, sizeof *p + room * sizeof *p->terms);
+    p->count = 0;
     return p;
 }
 
-static polynomial *polynomial_trim(polynomial *p)
+static polynomial *polynomial_of_term(polynomial_walk *w, slong degree, expr *coefficient)
 {
-    while (p->degree > 0 && expr_is_zero(p->c[p->degree]))
-        p->degree--;
+    if (!coefficient)
+        return NULL;
+    polynomial *p = polynomial_new(w, 1);
+    p->count = !expr_is_zero(coefficient);
+    p->terms[0] = (monomial){degree, coefficient};
+    return p;
+}
+
+static int compare_degrees(const void *a, const void *b)
+{
+    const monomial *p = a, *q = b;
+    return (p->degree > q->degree) - (p->degree < q->degree);
+}
+
+/* Terms in any order, some of equal degree, become a polynomial. */
+static polynomial *polynomial_collect(polynomial_walk *w, monomial *terms, size_t n)
+{
+    polynomial *p = polynomial_new(w, n);
+    expr **same = engine_scratch(w->engine, n, sizeof *same);
+    qsort(terms, n, sizeof *terms, compare_degrees);
+    for (size_t k = 0, end; k < n; k = end) {
+        size_t count = 0;
+        for (end = k; end < n && terms[end].degree == terms[k].degree; end++)
+            same[count++] = terms[end].coefficient;
+        expr *sum = expr_sum(w->engine, same, count);
+        if (!sum || !budget_ok(w->engine))
+            return NULL;
+        if (!expr_is_zero(sum))
+            p->terms[p->count++] = (monomial){terms[k].degree, sum};
+    }
     return p;
 }
 
 static polynomial *polynomial_multiply(polynomial_walk *w, const polynomial *p, const polynomial *q)
 {
-    tw_engine *e = w->engine;
-    if (p->degree + q->degree > w->limit)
-        return NULL;
-    polynomial *product = polynomial_new(w, p->degree + q->degree);
-    expr **terms = engine_scratch(e, (size_t)FLINT_MIN(p->degree, q->degree) + 1, sizeof *terms);
-    for (slong n = 0; n <= product->degree; n++) {
-        size_t count = 0;
-        for (slong k = FLINT_MAX(0, n - q->degree); k <= FLINT_MIN(n, p->degree); k++)
-            terms[count++] = expr_mul(e, p->c[k], q->c[n - k]);
-        product->c[n] = expr_sum(e, terms, count);
-        if (!product->c[n] || !budget_ok(e))
-            return NULL;
+    monomial *terms = engine_scratch(w->engine, p->count * q->count, sizeof *terms);
+    size_t count = 0;
+    for (size_t j = 0; j < p->count; j++) {
+        for (size_t k = 0; k < q->count; k++) {
+            const slong degree = p->terms[j].degree + q->terms[k].degree;
+            expr *coefficient = expr_mul(w->engine, p->terms[j].coefficient, q->terms[k].coefficient);
+            if (!coefficient || degree > w->limit || !budget_ok(w->engine))
+                return NULL;
+            terms[count++] = (monomial){degree, coefficient};
+        }
     }
-    return product;
+    return polynomial_collect(w, terms, count);
 }
-
-static polynomial *walk(polynomial_walk *w, expr *a);
 
 static polynomial *walk_sum(polynomial_walk *w, expr *a)
 {
     const polynomial **parts = engine_scratch(w->engine, a->count, sizeof *parts);
-    expr **terms = engine_scratch(w->engine, a->count, sizeof *terms);
-    slong degree = 0;
+    size_t count = 0;
     for (size_t k = 0; k < a->count; k++) {
         parts[k] = walk(w, a->args[k]);
         if (!parts[k])
             return NULL;
-        degree = FLINT_MAX(degree, parts[k]->degree);
+        count += parts[k]->count;
     }
-    polynomial *sum = polynomial_new(w, degree);
-    for (slong n = 0; n <= degree; n++) {
-        size_t count = 0;
-        for (size_t k = 0; k < a->count; k++)
-            if (n <= parts[k]->degree && !expr_is_zero(parts[k]->c[n]))
-                terms[count++] = parts[k]->c[n];
-        sum->c[n] = expr_sum(w->engine, terms, count);
-        if (!sum->c[n])
-            return NULL;
-    }
-    return polynomial_trim(sum);
+    monomial *terms = engine_scratch(w->engine, count, sizeof *terms);
+    count = 0;
+    for (size_t k = 0; k < a->count; k++)
+        for (size_t j = 0; j < parts[k]->count; j++)
+            terms[count++] = parts[k]->terms[j];
+    return polynomial_collect(w, terms, count);
 }
 
 static polynomial *walk_product(polynomial_walk *w, expr *a)
@@ -87,19 +111,27 @@ static polynomial *walk_product(polynomial_walk *w, expr *a)
     return product;
 }
 
+/* A natural power within the limit; -1 for anything else. */
+static slong natural_exponent(const polynomial_walk *w, expr *exponent)
+{
+    if (exponent->kind != EXPR_NUMBER || !fmpz_is_one(fmpq_denref(&exponent->is.number)) ||
+        fmpq_sgn(&exponent->is.number) < 0 || fmpz_cmp_si(fmpq_numref(&exponent->is.number), w->limit) > 0)
+        return -1;
+    return fmpz_get_si(fmpq_numref(&exponent->is.number));
+}
+
 static polynomial *walk_power(polynomial_walk *w, expr *a)
 {
-    if (a->args[1]->kind != EXPR_NUMBER || fmpq_sgn(&a->args[1]->is.number) < 0 ||
-        !fmpz_is_one(fmpq_denref(&a->args[1]->is.number)) || fmpz_cmp_si(fmpq_numref(&a->args[1]->is.number), w->limit) > 0)
+    tw_engine *e = w->engine;
+    const slong n = natural_exponent(w, a->args[1]);
+    const polynomial *base = n < 0 ? NULL : walk(w, a->args[0]);
+    if (!base || base->count == 0)
+        return (polynomial *)base;
+    if (base->terms[base->count - 1].degree > w->limit / n)
         return NULL;
-    const polynomial *base = walk(w, a->args[0]);
-    if (!base)
-        return NULL;
-    const slong n = fmpz_get_si(fmpq_numref(&a->args[1]->is.number));
-    if (base->degree * n > w->limit)
-        return NULL;
-    polynomial *power = polynomial_new(w, 0);
-    power->c[0] = expr_int(w->engine, 1);
+    if (base->count == 1)
+        return polynomial_of_term(w, base->terms[0].degree * n, expr_pow(e, base->terms[0].coefficient, a->args[1]));
+    polynomial *power = polynomial_of_term(w, 0, expr_int(e, 1));
     for (slong k = 0; power && k < n; k++)
         power = polynomial_multiply(w, power, base);
     return power;
@@ -121,15 +153,10 @@ static polynomial *walk(polynomial_walk *w, expr *a)
     polynomial *known = memo_find(&w->memo, a, 0);
     if (known)
         return known;
-    if (a == w->symbol && w->limit >= 1) {
-        known = polynomial_new(w, 1);
-        known->c[1] = expr_int(w->engine, 1);
-    } else if (!expr_has(a, w->symbol)) {
-        known = polynomial_new(w, 0);
-        known->c[0] = a;
-    } else {
-        known = walk_kind(w, a);
-    }
+    if (a == w->symbol)
+        known = w->limit >= 1 ? polynomial_of_term(w, 1, expr_int(w->engine, 1)) : NULL;
+    else
+        known = expr_has(a, w->symbol) ? walk_kind(w, a) : polynomial_of_term(w, 0, a);
     if (known)
         memo_keep(&w->memo, a, 0, known);
     return known;
@@ -145,10 +172,12 @@ tw_status expr_polynomial(tw_engine *e, expr *a, expr *symbol, slong limit, expr
     memo_init(&w.memo, e);
     polynomial *p = walk(&w, a);
     if (p) {
-        polynomial_trim(p);
-        *degree = p->degree;
-        *coefficients = base_alloc(((size_t)p->degree + 1) * sizeof(expr *));
-        memcpy(*coefficients, p->c, ((size_t)p->degree + 1) * sizeof(expr *));
+        *degree = p->count ? p->terms[p->count - 1].degree : 0;
+        *coefficients = base_alloc(((size_t)*degree + 1) * sizeof(expr *));
+        for (slong n = 0; n <= *degree; n++)
+            (*coefficients)[n] = expr_int(e, 0);
+        for (size_t n = 0; n < p->count; n++)
+            (*coefficients)[p->terms[n].degree] = p->terms[n].coefficient;
     }
     arena_release(&e->scratch, mark);
     return p ? TW_OK : TW_ERROR;

@@ -361,25 +361,42 @@ static void print_lone_power(printer *p, expr *a, int level)
 typedef struct placed_term {
     expr *term;
     double degree; /* in all names together */
+    expr *front;   /* the first factor's base if it is a name, and its power */
+    double front_power;
     size_t place;
 } placed_term;
 
-static double term_degree(expr *term)
+static double exponent_value(expr *exponent)
+{
+    return exponent->kind != EXPR_NUMBER ? 0
+         : fmpz_get_d(fmpq_numref(&exponent->is.number)) / fmpz_get_d(fmpq_denref(&exponent->is.number));
+}
+
+static placed_term term_place(expr *term, size_t place)
 {
     expr *const *factors;
     const size_t n = expr_factors(&term, &factors);
-    double degree = 0;
+    placed_term t = {.term = term, .place = place};
     for (size_t k = 0; k < n; k++) {
         expr *base = factors[k]->kind == EXPR_POWER ? factors[k]->args[0] : factors[k];
         if (base->kind != EXPR_SYMBOL && base->kind != EXPR_BOUND)
             continue;
-        if (factors[k]->kind != EXPR_POWER)
-            degree += 1;
-        else if (factors[k]->args[1]->kind == EXPR_NUMBER)
-            degree += fmpz_get_d(fmpq_numref(&factors[k]->args[1]->is.number)) /
-                      fmpz_get_d(fmpq_denref(&factors[k]->args[1]->is.number));
+        const double power = factors[k]->kind == EXPR_POWER ? exponent_value(factors[k]->args[1]) : 1;
+        if (k == (n > 1 && factors[0]->kind == EXPR_NUMBER)) {
+            t.front = base;
+            t.front_power = power;
+        }
+        t.degree += power;
     }
-    return degree;
+    return t;
+}
+
+/* In equal degree the higher power of the name in front comes first: x^2 + 2*x*y + y^2. */
+static int compare_equal_degree(const placed_term *s, const placed_term *t)
+{
+    if (s->front && s->front == t->front && s->front_power != t->front_power)
+        return s->front_power > t->front_power ? -1 : 1;
+    return (s->place > t->place) - (s->place < t->place);
 }
 
 static int compare_rising(const void *a, const void *b)
@@ -387,7 +404,7 @@ static int compare_rising(const void *a, const void *b)
     const placed_term *s = a, *t = b;
     if (s->degree != t->degree)
         return s->degree < t->degree ? -1 : 1;
-    return (s->place > t->place) - (s->place < t->place);
+    return compare_equal_degree(s, t);
 }
 
 static int compare_falling(const void *a, const void *b)
@@ -395,7 +412,7 @@ static int compare_falling(const void *a, const void *b)
     const placed_term *s = a, *t = b;
     if (s->degree != t->degree)
         return s->degree > t->degree ? -1 : 1;
-    return (s->place > t->place) - (s->place < t->place);
+    return compare_equal_degree(s, t);
 }
 
 /* Does the number come last, as in n + 1, nu + 1/2, x - 1? It comes first in 1 + x. */
@@ -436,7 +453,7 @@ static placed_term *order_terms(printer *p, expr *a)
     placed_term *t = engine_scratch(p->engine, a->count, sizeof *t);
     bool falling = true;
     for (size_t k = 0; k < a->count; k++) {
-        t[k] = (placed_term){a->args[k], term_degree(a->args[k]), k};
+        t[k] = term_place(a->args[k], k);
         falling = falling && t[k].degree <= 0;
     }
     const bool number = t[0].term->kind == EXPR_NUMBER;

@@ -18,6 +18,8 @@ struct number_list {
     struct number_list *next;
 };
 
+static const uint64_t SIZE_CEILING = (uint64_t)1 << 63;
+
 static uint64_t mix(uint64_t h, uint64_t value)
 {
     h = (h ^ value) * 0x9e3779b97f4a7c15u;
@@ -103,7 +105,7 @@ static expr_node *node_new(tw_engine *e, expr_kind kind, uint64_t hash, expr *co
             outside--;
         loose = outside > loose ? outside : loose;
         depth = child->depth > depth ? child->depth : depth;
-        size = size + child->size > ((uint64_t)1 << 63) ? (uint64_t)1 << 63 : size + child->size;
+        size = child->size >= SIZE_CEILING - size ? SIZE_CEILING : size + child->size;
         names |= child->names;
     }
     if (depth >= EXPR_DEPTH_LIMIT) {
