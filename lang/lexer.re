@@ -58,14 +58,14 @@ token lexer_next(lexer *l)
     letter = [a-zA-Z] | unicode_letter;
     name   = letter (letter | [0-9_] | unicode_mark)*;
     number = [0-9]+ ("." [0-9]+)? ([eE] [+\-]? [0-9]+)?;
-    inside = [^"\\\r\n\x00] | "\\" ["\\];
+    inside = [^"\\\r\n\x00\ud800-\udfff] | "\\" ["\\]; // half of a UTF-16 pair is no character
 */
 next:
     from = cursor;
 /*!re2c
     $                   { kind = TOKEN_END; goto done; }
     [ \t\r]+            { goto next; }
-    "#" [^\n\x00]*      { goto next; }
+    "#" [^\n\x00\ud800-\udfff]*    { goto next; }
     "\n"                { kind = TOKEN_LINE_END; goto done; }
     name | "\u221e"     { kind = TOKEN_NAME; goto done; }
     number              { kind = number_is_too_long((const char *)from, (const char *)cursor) ? TOKEN_LONG_NUMBER
@@ -92,7 +92,7 @@ next:
     ">=" | "\u2265"     { kind = TOKEN_GREATER_EQUAL; goto done; }
     "!=" | "\u2260"     { kind = TOKEN_NOT_EQUAL; goto done; }
     "\x00"              { kind = TOKEN_BAD_BYTE; goto done; }
-    [^]                 { kind = TOKEN_BAD_CHARACTER; goto done; }
+    [^\ud800-\udfff]    { kind = TOKEN_BAD_CHARACTER; goto done; }
     *                   { kind = TOKEN_BAD_BYTE; goto done; }
 */
 broken_text:

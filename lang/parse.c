@@ -230,7 +230,6 @@ static bool fail_with(parser *p, span at, const char *words)
 {
     if (!p->failed) {
         p->failed = true;
-        p->at_end = p->token.kind == TOKEN_END && at.from >= p->token.at.from;
         errors_add(p, at, words);
     }
     return false;
@@ -246,13 +245,15 @@ bool parser_fail(parser *p, span at, const char *format, ...)
     return fail_with(p, at, words);
 }
 
-/* The next token's place; a line's end is marked behind its last word. */
-static span span_here(const parser *p)
+/* Fails at the next token; a line's end is marked behind its last word. */
+static bool fail_here_with(parser *p, const char *words)
 {
-    if (!parser_at_line_end(p))
-        return p->token.at;
-    span s = {p->token.at.from, p->token.at.from};
-    return s;
+    span at = p->token.at;
+    if (parser_at_line_end(p) && p->last.kind != TOKEN_LINE_END)
+        at = (span){p->last.at.to, p->last.at.to};
+    if (!p->failed)
+        p->at_end = p->token.kind == TOKEN_END;
+    return fail_with(p, at, words);
 }
 
 static bool fail_bad_token(parser *p)
@@ -271,7 +272,7 @@ bool parser_fail_here(parser *p, const char *format, ...)
     va_start(arguments, format);
     vsnprintf(words, sizeof words, format, arguments);
     va_end(arguments);
-    return fail_with(p, span_here(p), words);
+    return fail_here_with(p, words);
 }
 
 /* Does another operand follow an operand, as if a `*` could be left out? */
@@ -289,9 +290,9 @@ static bool misses_operator(const parser *p)
 static void add_found(const parser *p, text *t)
 {
     size_t length = p->token.at.to - p->token.at.from;
-    if (p->token.kind == TOKEN_END)
+    if (p->token.kind == TOKEN_END && p->open > 0)
         text_add(t, ", but the text ends");
-    else if (p->token.kind == TOKEN_LINE_END)
+    else if (parser_at_line_end(p))
         text_add(t, ", but the line ends");
     else if (p->token.kind == TOKEN_TEXT || length > 60)
         text_addf(t, ", found %s", token_kind_words(p->token.kind));
@@ -314,18 +315,20 @@ bool parser_expected_one_of(parser *p, const char *what, const char *const *word
     text_cut(t, 0);
     text_addf(t, "expected %s", what);
     add_found(p, t);
+    bool operand = misses_operator(p), glued = operand && p->last.at.to == p->token.at.from;
+    if (glued)
+        words = NULL;
     suggestion meant;
     suggestion_init(&meant, p->token.kind == TOKEN_NAME ? p->name->text : "");
-    for (; words && *words; words++)
-        suggestion_offer(&meant, *words);
-    bool glued = p->last.at.to == p->token.at.from && p->last.kind != TOKEN_NAME;
+    for (size_t k = 0; words && words[k]; k++)
+        suggestion_offer(&meant, words[k]);
     if (p->token.kind == TOKEN_LESS || p->token.kind == TOKEN_GREATER || p->token.kind == TOKEN_NOT_EQUAL)
         text_add(t, "; a comparison has no place here");
-    else if (meant.best != NULL && !glued)
+    else if (meant.best != NULL)
         text_addf(t, "; did you mean `%s`?", meant.best);
-    else if (misses_operator(p))
+    else if (operand && words == NULL)
         text_add(t, "; multiplication is always written, with `*`");
-    return fail_with(p, span_here(p), t->bytes);
+    return fail_here_with(p, t->bytes);
 }
 
 /* ---- small things that many statements need ---- */
@@ -392,11 +395,16 @@ bool parser_name(parser *p, syntax_name *out, const char *what)
     return true;
 }
 
+bool parser_fail_reserved(parser *p, const char *name)
+{
+    return parser_fail_here(p, "`%s` is a %s: it can't be defined, bound or declared", name,
+                            word_find(name) == WORD_CONSTANT ? "constant" : "word of the language");
+}
+
 bool parser_new_name(parser *p, syntax_name *out, const char *what)
 {
     if (parser_at(p, TOKEN_NAME) && p->name->reserved)
-        return parser_fail_here(p, "`%s` is a %s: it can't be defined, bound or declared", p->name->text,
-                                p->name->is == WORD_CONSTANT ? "constant" : "word of the language");
+        return parser_fail_reserved(p, p->name->text);
     return parser_name(p, out, what);
 }
 
@@ -462,6 +470,7 @@ static void parser_init(parser *p, source *s, syntax_text *out)
     p->source = s;
     p->out = out;
     p->closer = "";
+    p->operand_end = UINT32_MAX;
     p->need = "expected an expression here";
     lexer_init(&p->lexer, s);
     p->token.kind = TOKEN_LINE_END; /* the first token stands at the start of a line */

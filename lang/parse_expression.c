@@ -119,7 +119,7 @@ static bool parse_differential(parser *p, const syntax *body, token opening, syn
         variable->text = p->name->differential;
         variable->at = (span){p->token.at.from + 1, p->token.at.to};
         if (word_is_reserved(variable->text))
-            return parser_fail(p, p->token.at, "`%s` is a word of the language: an integral can't bind it", variable->text);
+            return parser_fail_reserved(p, variable->text);
         parser_advance(p);
         return true;
     }
@@ -127,6 +127,8 @@ static bool parse_differential(parser *p, const syntax *body, token opening, syn
         return false;
     if (body->kind == SYNTAX_NAME && body->as.name[0] == 'd' && lexer_is_name(body->as.name + 1, strlen(body->as.name) - 1))
         return parser_fail(p, body->at, "the integral has no body: write `of 1 %s`", body->as.name);
+    if (parser_at_word(p, "d") && parser_peek(p).kind == TOKEN_NAME)
+        return parser_fail_here(p, "the `d` and the variable that close an integral are one word, such as `dx`");
     if (token_is_bad(p->token.kind) || parser_at(p, TOKEN_NAME) || parser_at(p, TOKEN_OPEN) || parser_at(p, TOKEN_NUMBER))
         return parser_expected(p, "an operator, or the `d...` that closes the integral, such as `dx`");
     return parser_fail_here(p, "the integral of line %u is not closed here: expected its variable, such as `dx`",
@@ -333,13 +335,16 @@ static syntax *parse_opened(parser *p)
     return openers[k].parse(p);
 }
 
-/* A linking word where an operand should stand: is it a name all the same? It is when what follows can only follow an operand. */
+/* A linking word where an operand should stand: is it a name all the same? It is when what comes next can only follow an
+ * operand. */
 static bool link_is_a_name(const parser *p)
 {
     token next = parser_peek(p);
     switch (next.kind) {
-    case TOKEN_NUMBER: case TOKEN_OPEN: case TOKEN_TEXT:
+    case TOKEN_NUMBER: case TOKEN_TEXT:
         return false;
+    case TOKEN_OPEN: /* at(x) is a call, `to (x)` more likely lacks what stands before it */
+        return next.at.from == p->token.at.to;
     case TOKEN_NAME:
         return parser_peek_word(p, p->closer);
     case TOKEN_END: case TOKEN_LINE_END:
@@ -604,19 +609,24 @@ bool parse_conditions(parser *p, syntax_conditions *out, const char *need)
 
 /* ---- bindings ---- */
 
+static bool token_is(const parser *p, token t, const char *word)
+{
+    size_t length = t.at.to - t.at.from;
+    return t.kind == TOKEN_NAME && length == strlen(word) && memcmp(p->source->bytes + t.at.from, word, length) == 0;
+}
+
 /* At a comma: does `NAME =` or `NAME from` come after it? Then it belongs to the list of bindings, not of values. */
 static bool binding_follows(const parser *p)
 {
     lexer ahead = p->lexer;
-    token t;
+    token name, next;
     do
-        t = lexer_next(&ahead);
-    while (t.kind == TOKEN_LINE_END);
-    if (t.kind != TOKEN_NAME)
-        return false;
-    t = lexer_next(&ahead);
-    return t.kind == TOKEN_EQUAL
-        || (t.kind == TOKEN_NAME && t.at.to - t.at.from == 4 && memcmp(p->source->bytes + t.at.from, "from", 4) == 0);
+        name = lexer_next(&ahead);
+    while (name.kind == TOKEN_LINE_END);
+    next = lexer_next(&ahead);
+    return name.kind == TOKEN_NAME
+        && (next.kind == TOKEN_EQUAL
+            || (token_is(p, next, "from") && !token_is(p, name, "integral") && !token_is(p, name, "sum")));
 }
 
 /* from A to B, then step H or in N points [on a log scale]. */

@@ -72,7 +72,7 @@ static bool parse_repeat(parser *p, statement *out)
     if (!parser_expect_word(p, "parts", "`parts` and how many times after `repeat`"))
         return false;
     return (out->as.move->as.times = parse_sum(p, "`repeat parts` needs a number here", "times")) != NULL
-        && parser_expect_word(p, "times", "`times` after their number");
+        && parser_expect_word(p, "times", "`times` after the number");
 }
 
 static bool parse_differentiate(parser *p, statement *out)
@@ -195,5 +195,5 @@ bool parse_expand_move(parser *p, statement *out, syntax *factor)
         return false;
     parser_skip_lines(p);
     return (out->as.move->as.expand.terms = parse_sum(p, "`to` needs a number of terms here", "terms")) != NULL
-        && parser_expect_word(p, "terms", "`terms` after their number") && parse_which_integral(p, out);
+        && parser_expect_word(p, "terms", "`terms` after the number") && parse_which_integral(p, out);
 }

@@ -120,7 +120,7 @@ static bool parse_expand_options(parser *p, statement *out)
             if (out->as.expand->terms != NULL)
                 return fail_twice(p, "to");
             if (!parse_count(p, &out->as.expand->terms, "`to` needs a number of terms here", "terms",
-                             "`terms` after their number"))
+                             "`terms` after the number"))
                 return false;
         } else if (parser_at_word(p, "by")) {
             if (out->as.expand->by.text != NULL)
@@ -191,7 +191,7 @@ bool parse_remainder(parser *p, statement *out)
         return false;
     return !parser_at_word(p, "with")
         || parse_count(p, &out->as.remainder.terms, "`with` needs a number of terms here", "terms",
-                       "`terms` after their number");
+                       "`terms` after the number");
 }
 
 /* ---- numbers ---- */
@@ -221,22 +221,29 @@ static bool parse_evaluate_to(parser *p, statement *out)
     if (out->as.evaluate->digits != NULL)
         return fail_twice(p, "to");
     return parse_count(p, &out->as.evaluate->digits, "`to` needs a number of digits, or a file in quotes, here", "digits",
-                       "`digits` after their number");
+                       "`digits` after the number");
+}
+
+/* At `all`: is it the word, and no name of a number of terms? */
+static bool all_is_a_word(const parser *p)
+{
+    token_kind next = parser_peek(p).kind;
+    return next == TOKEN_LINE_END || next == TOKEN_END || (next == TOKEN_NAME && !parser_peek_word(p, "terms"));
 }
 
 /* with all contributions, or with M terms, at `with`. */
 static bool parse_evaluate_with(parser *p, statement *out)
 {
-    if (parser_peek_word(p, "all")) {
-        parser_go_on(p);
+    parser_go_on(p);
+    if (parser_at_word(p, "all") && all_is_a_word(p)) {
         parser_go_on(p);
         out->as.evaluate->all_contributions = true;
         return parser_expect_word(p, "contributions", "`contributions` after `with all`");
     }
     if (out->as.evaluate->terms != NULL)
-        return fail_twice(p, "with");
-    return parse_count(p, &out->as.evaluate->terms, "`with` needs a number of terms, or `all contributions`, here", "terms",
-                       "`terms` after their number");
+        return parser_fail_here(p, "a second number of terms after `with`");
+    out->as.evaluate->terms = parse_sum(p, "`with` needs a number of terms, or `all contributions`, here", "terms");
+    return out->as.evaluate->terms != NULL && parser_expect_word(p, "terms", "`terms` after the number");
 }
 
 bool parse_evaluate(parser *p, statement *out)

@@ -67,6 +67,8 @@ bool parser_expected(parser *p, const char *what); /* expected WHAT, found the n
 /* The next token, a name, is none of the words offered so far: adds what was meant. words: NULL-terminated. */
 bool parser_expected_one_of(parser *p, const char *what, const char *const *words);
 
+bool parser_fail_reserved(parser *p, const char *name); /* at the name, which nobody may define */
+
 bool parser_take_word(parser *p, const char *word);                     /* consumes it if it is there */
 bool parser_expect_word(parser *p, const char *word, const char *what); /* `what` as in parser_expected */
 bool parser_expect_sign(parser *p, token_kind k, const char *what);     /* a sign that cannot end a statement */

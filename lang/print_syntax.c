@@ -32,9 +32,13 @@ static bool has_open_end(const syntax *a)
     return a->kind == SYNTAX_SUMMATION || a->kind == SYNTAX_ROOT;
 }
 
-static bool is_linking_name(const syntax *a)
+/* A name that is also a linking word would often be taken for that where an operand may begin. */
+static bool begins_with_linking_name(const syntax *a)
 {
-    return a->kind == SYNTAX_NAME && word_find(a->as.name) == WORD_LINK;
+    const char *name = a->kind == SYNTAX_NAME ? a->as.name
+        : a->kind == SYNTAX_CALL              ? a->as.call.name.text
+        : a->kind == SYNTAX_INDEXED           ? a->as.indexed.name : NULL;
+    return name != NULL && word_find(name) == WORD_LINK;
 }
 
 /* ended: what follows is no operator that would bind more tightly than `+`. */
@@ -238,7 +242,7 @@ static void print_bare(text *out, const syntax *a, bool ended)
 
 static void print_at(text *out, const syntax *a, int binding, bool ended)
 {
-    bool brackets = binding_of(a) < binding || (has_open_end(a) && !ended) || is_linking_name(a);
+    bool brackets = binding_of(a) < binding || (has_open_end(a) && !ended) || begins_with_linking_name(a);
     text_add(out, brackets ? "(" : "");
     print_bare(out, a, ended || brackets);
     text_add(out, brackets ? ")" : "");
