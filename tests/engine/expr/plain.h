@@ -270,7 +270,7 @@ static inline double plain_distance(const acb_t z, const acb_t w)
 
 /* ---- random numbers ---- */
 
-static inline uint64_t plain_state;
+static uint64_t plain_state;
 
 static inline void plain_seed(const char *program)
 {
