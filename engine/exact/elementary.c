@@ -193,6 +193,7 @@ tw_status compose_log(work *w, pieces *out, const pieces *g)
 {
     piece p;
     pieces part;
+    bool real = g->real; /* out may be g */
     piece_init(w, &p);
     pieces_init(&part);
     tw_status s = pieces_gather(w, &p, g, "has no expansion in powers with a fixed step (powers and logarithms mix inside log)");
@@ -201,7 +202,7 @@ tw_status compose_log(work *w, pieces *out, const pieces *g)
     if (s == TW_OK && !value_is_real(w->e, p.sigma))
         s = work_refuse(w, "has a power whose exponent is not known to be real");
     if (s == TW_OK)
-        s = piece_need_split(w, &p, g->real, false);
+        s = piece_need_split(w, &p, real, false);
     expr *leading = s == TW_OK ? piece_leading(w, &p) : NULL;
     expr *front = leading == NULL ? NULL : log_of_value(w, leading);
     if (front == NULL)
@@ -209,7 +210,7 @@ tw_status compose_log(work *w, pieces *out, const pieces *g)
     if (s == TW_OK) {
         tail_make_monic(w, &p.c);
         tail_log(&w->f, &p.c, &p.c, w->terms);
-        s = pieces_from_tail(w, out, expr_int(w->e, 1), expr_int(w->e, 0), &p.c, p.den, g->real);
+        s = pieces_from_tail(w, out, expr_int(w->e, 1), expr_int(w->e, 0), &p.c, p.den, real);
     }
     if (s == TW_OK) /* the exponent times log x */
         s = pieces_from_value(w, &part, piece_exponent(w, &p));
@@ -222,7 +223,7 @@ tw_status compose_log(work *w, pieces *out, const pieces *g)
     if (s == TW_OK)
         s = pieces_add(w, out, out, &part, 1);
     if (s == TW_OK)
-        out->real = g->real && value_is_real(w->e, front);
+        out->real = real && value_is_real(w->e, front);
     pieces_clear(w, &part);
     piece_clear(w, &p);
     return s;

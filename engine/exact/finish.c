@@ -5,6 +5,7 @@
 
 #include <stdlib.h>
 
+#include "engine/exact/rational.h"
 #include "engine/exact/values.h"
 
 enum { FIRST_ROOM = 8, MOST_ROOM = 512, MOST_EXTRA = 256 };
@@ -168,11 +169,9 @@ static tw_status export_coefficients(work *w, coefficients *c, const tail *t, sl
     c->count = count;
     if (t->rational) {
         c->q = base_alloc((size_t)FLINT_MAX(count, 1) * sizeof *c->q);
-        for (slong k = 0; k < count; k++) {
+        for (slong k = 0; k < count; k++)
             fmpq_init(c->q + k);
-            if (k < tail_length(t))
-                fmpq_poly_get_coeff_fmpq(c->q + k, t->q, k);
-        }
+        rational_coefficients(c->q, t->q, count);
         return TW_OK;
     }
     c->x = base_alloc((size_t)FLINT_MAX(count, 1) * sizeof *c->x);

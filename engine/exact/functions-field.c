@@ -64,12 +64,83 @@ static bool reduce_polynomial(field *f, fmpz_mpoly_t p)
     return changed;
 }
 
+/* adjoint = the product of den's other conjugates over g, g^degree = c, so that den * adjoint is free of g: for
+ * A + B g the element A - B g, for A + B g + C g^2 (degree 3) the element A^2 - B C c + (C^2 c - A B) g + (B^2 - A C) g^2,
+ * for a monomial in g of any degree the missing power. False when none of these fits. */
+static bool adjoint_of(field *f, fmpz_mpoly_t adjoint, const fmpz_mpoly_t den, slong k)
+{
+    fmpz_mpoly_struct part[3], power, c, t;
+    slong variable = variable_of(f, k), degree = f->generators[k].degree;
+    bool fits = true, monomial = true;
+    fmpz_mpoly_init(&power, f->ctx), fmpz_mpoly_init(&c, f->ctx), fmpz_mpoly_init(&t, f->ctx);
+    for (int j = 0; j < 3; j++)
+        fmpz_mpoly_init(part + j, f->ctx);
+    fmpz_mpoly_gen(&power, variable, f->ctx);
+    ulong top = (ulong)fmpz_mpoly_degree_si(den, variable, f->ctx);
+    for (ulong j = 0; j < top && monomial; j++) {
+        fmpz_mpoly_get_coeff_vars_ui(&t, den, &variable, &j, 1, f->ctx);
+        monomial = fmpz_mpoly_is_zero(&t, f->ctx);
+    }
+    for (ulong j = 0; j < 3; j++)
+        fmpz_mpoly_get_coeff_vars_ui(part + j, den, &variable, &j, 1, f->ctx);
+    if (monomial)
+        fmpz_mpoly_pow_ui(adjoint, &power, (ulong)degree - top, f->ctx);
+    else if (degree == 2) {
+        fmpz_mpoly_scalar_mul_si(adjoint, part, 2, f->ctx);
+        fmpz_mpoly_sub(adjoint, adjoint, den, f->ctx);
+    } else if (degree == 3) {
+        fmpz_mpoly_pow_ui(&c, &power, 3, f->ctx);
+        fmpz_mpoly_sub(&c, &c, f->generators[k].relation, f->ctx);
+        fmpz_mpoly_mul(&t, part + 1, part + 2, f->ctx), fmpz_mpoly_mul(&t, &t, &c, f->ctx);
+        fmpz_mpoly_mul(adjoint, part, part, f->ctx), fmpz_mpoly_sub(adjoint, adjoint, &t, f->ctx);
+        fmpz_mpoly_mul(&t, part + 2, part + 2, f->ctx), fmpz_mpoly_mul(&t, &t, &c, f->ctx);
+        fmpz_mpoly_mul(&c, part, part + 1, f->ctx), fmpz_mpoly_sub(&t, &t, &c, f->ctx);
+        fmpz_mpoly_mul(&t, &t, &power, f->ctx), fmpz_mpoly_add(adjoint, adjoint, &t, f->ctx);
+        fmpz_mpoly_mul(&t, part + 1, part + 1, f->ctx), fmpz_mpoly_mul(&c, part, part + 2, f->ctx);
+        fmpz_mpoly_sub(&t, &t, &c, f->ctx), fmpz_mpoly_mul(&t, &t, &power, f->ctx);
+        fmpz_mpoly_mul(&t, &t, &power, f->ctx), fmpz_mpoly_add(adjoint, adjoint, &t, f->ctx);
+    } else
+        fits = false;
+    for (int j = 0; j < 3; j++)
+        fmpz_mpoly_clear(part + j, f->ctx);
+    fmpz_mpoly_clear(&power, f->ctx), fmpz_mpoly_clear(&c, f->ctx), fmpz_mpoly_clear(&t, f->ctx);
+    return fits;
+}
+
+/* Frees denominators of algebraic generators: else common factors that a relation hides pile up (measured: degree 119 in
+ * log(2) in the fourth coefficient of tanh(log(x - 2)^(-2/3)), 2 with it). */
+static void rationalise(field *f, element *a)
+{
+    fmpz_mpoly_t adjoint, den;
+    fmpz_mpoly_init(adjoint, f->ctx), fmpz_mpoly_init(den, f->ctx);
+    for (slong k = f->count - 1; k >= 0; k--) {
+        if (f->generators[k].degree == 0 || fmpz_mpoly_degree_si(fmpz_mpoly_q_denref(a), variable_of(f, k), f->ctx) == 0 ||
+            !adjoint_of(f, adjoint, fmpz_mpoly_q_denref(a), k))
+            continue;
+        fmpz_mpoly_mul(den, fmpz_mpoly_q_denref(a), adjoint, f->ctx);
+        reduce_polynomial(f, den);
+        if (fmpz_mpoly_is_zero(den, f->ctx)) /* relations that are not independent: leave it */
+            continue;
+        fmpz_mpoly_mul(fmpz_mpoly_q_numref(a), fmpz_mpoly_q_numref(a), adjoint, f->ctx);
+        reduce_polynomial(f, fmpz_mpoly_q_numref(a));
+        fmpz_mpoly_swap(fmpz_mpoly_q_denref(a), den, f->ctx);
+        fmpz_mpoly_q_canonicalise(a, f->ctx);
+    }
+    fmpz_mpoly_clear(adjoint, f->ctx), fmpz_mpoly_clear(den, f->ctx);
+}
+
 static void reduce(field *f, element *a)
 {
-    bool changed = reduce_polynomial(f, fmpz_mpoly_q_numref(a));
+    bool algebraic = false, changed;
+    for (slong k = 0; k < f->count && !algebraic; k++)
+        algebraic = f->generators[k].degree > 0;
+    if (!algebraic)
+        return;
+    changed = reduce_polynomial(f, fmpz_mpoly_q_numref(a));
     changed |= reduce_polynomial(f, fmpz_mpoly_q_denref(a));
     if (changed)
         fmpz_mpoly_q_canonicalise(a, f->ctx);
+    rationalise(f, a);
 }
 
 void field_mul(field *f, element *out, const element *a, const element *b)

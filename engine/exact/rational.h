@@ -18,6 +18,8 @@ void rational_exp(fmpq_poly_t out, const fmpq_poly_t u, slong n);
 void rational_sin_cos(fmpq_poly_t s, fmpq_poly_t c, const fmpq_poly_t u, slong n, int hyperbolic);
 /* out = tan(u), or tanh(u) when hyperbolic; u(0) = 0. */
 void rational_tan(fmpq_poly_t out, const fmpq_poly_t u, slong n, int hyperbolic);
+/* out[0..n-1] = the coefficients of a in lowest terms; out is initialised. */
+void rational_coefficients(fmpq *out, const fmpq_poly_t a, slong n);
 /* out = outer(u) mod x^n; u(0) = 0. */
 void rational_compose(fmpq_poly_t out, const fmpq_poly_t outer, const fmpq_poly_t u, slong n);
 

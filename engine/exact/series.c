@@ -136,14 +136,31 @@ static tw_status evaluate_product(work *w, pieces *out, expr *f)
     return s;
 }
 
+/* b^c = exp(c log b), DLMF 4.2.26. */
+static tw_status evaluate_general_power(work *w, pieces *out, expr *f)
+{
+    pieces base, exponent;
+    pieces_init(&base), pieces_init(&exponent);
+    tw_status s = evaluate_pieces(w, &base, f->args[0]);
+    if (s == TW_OK)
+        s = evaluate_pieces(w, &exponent, f->args[1]);
+    work_blame(w, f);
+    if (s == TW_OK)
+        s = compose_log(w, &base, &base);
+    if (s == TW_OK)
+        s = pieces_mul(w, &exponent, &exponent, &base);
+    if (s == TW_OK)
+        s = compose_exp(w, out, &exponent);
+    pieces_clear(w, &base), pieces_clear(w, &exponent);
+    return s;
+}
+
 static tw_status evaluate_power(work *w, pieces *out, expr *f)
 {
     expr *base = f->args[0], *exponent = f->args[1];
     slong times;
-    if (expr_has(exponent, w->x)) /* b^c = exp(c log b), DLMF 4.2.26 */
-        return evaluate_pieces(w, out,
-                               expr_call1(w->e, FUNCTION_EXP,
-                                          expr_mul(w->e, exponent, expr_call1(w->e, FUNCTION_LOG, base))));
+    if (expr_has(exponent, w->x))
+        return evaluate_general_power(w, out, f);
     if (is_divisor(w, f, &times)) {
         tw_status s = pieces_from_value(w, out, expr_int(w->e, 1));
         return s == TW_OK ? divide_by(w, out, base, times) : s;

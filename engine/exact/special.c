@@ -743,8 +743,9 @@ static tw_status bessel_kind_at_zero(work *w, pieces *out, function_id id, expr 
         return work_refuse(w, "has too large an order");
     slong n = integer ? fmpz_get_si(fmpq_numref(expr_number(nu))) : 0;
     if (!first && !integer && !expr_is_number(nu)) {
-        expr *gap = expr_sub(e, expr_int(e, 1), expr_mul(e, nu, nu));
-        if (gap == NULL || value_sign(e, gap) != 1 || value_sign(e, nu) == 0 || value_sign(e, nu) == 2)
+        expr *above = expr_add(e, expr_int(e, 1), nu), *below = expr_sub(e, expr_int(e, 1), nu);
+        if (above == NULL || below == NULL || value_sign(e, above) != 1 || value_sign(e, below) != 1 ||
+            value_sign(e, nu) == 0 || value_sign(e, nu) == 2)
             return work_refuse(w, "has an order that is not known to lie between two integers next to 0");
     }
     if (!first && !integer)
