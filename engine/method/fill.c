@@ -45,8 +45,9 @@ static tw_status kernel_read(tw_engine *e, kernel *k, const contribution *c, exp
     factor_split(e, l->factor, large, k->factor_number, k->factor_power, &rest);
     k->far_end = c->local.count == 0;
     fmpq_one(k->mu);
-    for (size_t n = 0; n < l->count && !k->far_end; n++)
-        if (!is_pure_power(e, l->branches[n].p, l->branches[n].x, k->mu)) fmpq_one(k->mu);
+    k->pure = !k->far_end;
+    for (size_t n = 0; n < l->count && k->pure; n++) k->pure = is_pure_power(e, l->branches[n].p, l->branches[n].x, k->mu);
+    if (!k->pure) fmpq_one(k->mu);
     if (!k->constant || !rest) return TW_ERROR;
     if (expr_has(k->constant, large)) return engine_fail(e, ERROR_INTERNAL, "the scale is no power of the large parameter");
     return TW_OK;
@@ -60,8 +61,18 @@ static void take_conditions(tw_engine *e, condition_list *to, expr **conditions,
     free(conditions);
 }
 
+/* Pure powers on both sides: one amplitude, the sum of both, so that what cancels does so in the coefficients' own domain. */
+static branch branches_joined(tw_engine *e, const local_form *l)
+{
+    branch b = l->branches[0];
+    for (size_t k = 1; k < l->count; k++)
+        b.q = expr_add(e, b.q, expr_substitute(e, l->branches[k].q, l->branches[k].x, b.x));
+    return b;
+}
+
 static tw_status branch_series(tw_engine *e, series *out, const branch *b, bool far_end, slong length, condition_list *to)
 {
+    if (!b->q) return TW_ERROR;
     fmpq_t mu;
     fmpq_init(mu);
     bool pure = far_end ? b->p == b->x : is_pure_power(e, b->p, b->x, mu);
@@ -83,10 +94,12 @@ static tw_status fill_to_length(tw_engine *e, contribution *c, const kernel *k, 
     drafts_init(&d);
     c->terminates = true;
     tw_status status = TW_OK;
-    for (size_t n = 0; n < l->count && status == TW_OK; n++) {
+    bool join = l->count > 1 && k->pure;
+    for (size_t n = 0; n < (join ? 1 : l->count) && status == TW_OK; n++) {
         series q;
         series_init(&q);
-        status = branch_series(e, &q, &l->branches[n], k->far_end, length, to);
+        branch b = join ? branches_joined(e, l) : l->branches[n];
+        status = branch_series(e, &q, &b, k->far_end, length, to);
         c->terminates = c->terminates && q.terminates;
         if (status == TW_OK) status = drafts_add(e, &d, &q, k);
         series_clear(&q);

@@ -379,6 +379,16 @@ static void weight_of_log(fmpq_t out, const class_of *c, slong i)
     fmpq_clear(u);
 }
 
+/* A number into the terms of a sum: 2 - 3*a, not 2*(1 - 3*a/2). */
+static expr *number_times(tw_engine *e, expr *a, const fmpq_t number)
+{
+    expr *factor = expr_fmpq(e, number);
+    if (!a || a->kind != EXPR_SUM) return expr_mul(e, a, factor);
+    expr *sum = expr_int(e, 0);
+    for (uint32_t k = 0; k < a->count; k++) sum = expr_add(e, sum, expr_mul(e, a->args[k], factor));
+    return sum;
+}
+
 /* One term: its rational weight, and what is not rational of it (NULL: nothing). Numbers are multiplied into sums, and sums of
  * fixed constants into each other, so that like ones meet; products of parameters stay as they are. */
 static void add_term(class_of *c, draft *d, slong n, const fmpq_t weight, expr *rest, slong index)
@@ -392,10 +402,10 @@ static void add_term(class_of *c, draft *d, slong n, const fmpq_t weight, expr *
         fmpq_clear(value);
         return;
     }
-    expr *value = expr_mul(c->e, coefficient_expr(c->e, &c->s->c, index), expr_fmpq(c->e, weight));
+    expr *value = number_times(c->e, coefficient_expr(c->e, &c->s->c, index), weight);
     if (rest) value = expr_mul(c->e, value, rest);
     bool constants = c->s->log_power > 0 && expr_is_number(c->z) && c->s->c.domain == DOMAIN_RATIONAL;
-    draft_add_x(c->e, d, n, !rest || constants ? expr_expand(c->e, value) : value);
+    draft_add_x(c->e, d, n, constants ? expr_expand(c->e, value) : value);
 }
 
 /* c^-(i): into the weight when c is rational, else into *rest. */
@@ -585,6 +595,24 @@ static bool draft_is_zero(const draft *d)
     return true;
 }
 
+/* The order of size of the lanes' first terms, where their exponents are numbers: only for the eye. */
+static bool lane_leads(const lane *a, const lane *b, bool small)
+{
+    if (!expr_is_number(a->first_exponent) || !expr_is_number(b->first_exponent)) return false;
+    int order = fmpq_cmp(expr_number(a->first_exponent), expr_number(b->first_exponent));
+    return order == 0 ? a->log_power > b->log_power : (order > 0) != small;
+}
+
+static void lanes_sort(contribution *c, bool small)
+{
+    for (size_t k = 1; k < c->lane_count; k++)
+        for (size_t n = k; n > 0 && lane_leads(&c->lanes[n], &c->lanes[n - 1], small); n--) {
+            lane swap = c->lanes[n];
+            c->lanes[n] = c->lanes[n - 1];
+            c->lanes[n - 1] = swap;
+        }
+}
+
 tw_status drafts_finish(tw_engine *e, drafts *d, contribution *c, const kernel *k)
 {
     if (e->error.kind != ERROR_NONE) return TW_ERROR;
@@ -607,5 +635,7 @@ tw_status drafts_finish(tw_engine *e, drafts *d, contribution *c, const kernel *
         widen_domain(c, l->c.domain);
     }
     fmpq_clear(minus);
-    return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
+    if (e->error.kind != ERROR_NONE) return TW_ERROR;
+    lanes_sort(c, fmpq_sgn(k->power) < 0);
+    return TW_OK;
 }

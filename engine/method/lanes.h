@@ -10,6 +10,7 @@ typedef struct kernel {
     fmpq_t mu;             /* > 0 */
     expr *constant;        /* > 0, free of the large parameter */
     fmpq_t power;
+    bool pure;             /* the phase is x^mu on every branch */
     bool far_end;          /* the formal integral with exp(+scale * x): mu = 1, terms get (-1)^z; integer z only */
     fmpq_t factor_power;   /* the factor's power of the large parameter, added to every exponent */
     fmpq_t factor_number;  /* the factor's rational number, multiplied into the coefficients */

@@ -50,7 +50,7 @@ static answer parts_suits(tw_engine *e, const reading *r, char **why)
     return suits_answer(why, ANSWER_YES, "the slope of the exponent is not zero at the end and the amplitude is smooth there");
 }
 
-enum { REMAINDER_SIZE_LIMIT = 400 };
+enum { REMAINDER_SIZE_LIMIT = 120 };
 
 /* D f = (f / p')' */
 static expr *apply_operator(tw_engine *e, expr *f, const branch *b)

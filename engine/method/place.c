@@ -147,37 +147,77 @@ static tw_status growing_kernel(tw_engine *e, expr *large)
 
 /* ---- general phases ---- */
 
-static tw_status refuse_interior(tw_engine *e, expr *phase)
+static tw_status refuse_interior(tw_engine *e, expr *phase, bool known)
 {
     char *words = expr_text(e, phase);
-    engine_fail(e, ERROR_UNAVAILABLE, "%s is not monotone on the path, so its least value may lie inside: that needs the method "
-                                      "`laplace`, which this version does not have", words ? words : "");
+    engine_fail(e, known ? ERROR_UNAVAILABLE : ERROR_UNDECIDED, "%s %s monotone on the path, so its least value may lie inside: that "
+                "needs the method `laplace`, which this version does not have", words ? words : "",
+                known ? "is not" : "could not be shown to be");
     free(words);
     return TW_ERROR;
 }
 
-/* The slope's sign on the whole path: 1, -1, 2 (not one sign, or not known). */
-static int slope_sign(tw_engine *e, expr *slope, expr *x, expr *from, expr *to)
+enum { SAMPLES = 40 };
+
+/* The slope at the k-th sample point of (0, length): its sign, 2 when it has none. */
+static int sample_sign(tw_engine *e, expr *slope, expr *y, expr *length, slong k)
+{
+    expr *at = expr_is_inf(length) ? expr_frac(e, k * k, SAMPLES) : expr_mul(e, length, expr_frac(e, k, SAMPLES));
+    expr *there = expr_substitute(e, slope, y, at);
+    acb_t v;
+    acb_init(v);
+    int sign = 2;
+    if (there && ball_value(e, v, there, 64) == TW_OK && acb_is_finite(v))
+        sign = arb_is_positive(acb_realref(v)) ? 1 : arb_is_negative(acb_realref(v)) ? -1 : 2;
+    acb_clear(v);
+    if (e->error.kind == ERROR_VALUE || e->error.kind == ERROR_UNDECIDED) engine_forgive(e);
+    return sign;
+}
+
+/* One sign at all samples: seen, not proved. */
+static int seen_sign(tw_engine *e, expr *slope, expr *y, expr *length)
+{
+    int sign = sample_sign(e, slope, y, length, 1);
+    for (slong k = 2; k < SAMPLES && sign != 2; k++)
+        if (sample_sign(e, slope, y, length, k) != sign) sign = 2;
+    return sign;
+}
+
+/* The slope's sign on the whole path: 1, -1, 2 (not one sign, or not known; *known tells which). *seen: from samples only. */
+static int slope_sign(tw_engine *e, expr *slope, expr *x, expr *from, expr *to, bool *known, bool *seen)
 {
     expr *y = expr_fresh(e, "x");
     expr *moved = expr_substitute(e, slope, x, expr_add(e, from, y));
     expr *length = expr_is_inf(to) ? to : expr_sub(e, to, from);
+    *known = *seen = false;
     if (!moved || !length) return 2;
-    if (positive_on_branch(e, moved, y, length) == ANSWER_YES) return 1;
-    if (positive_on_branch(e, expr_neg(e, moved), y, length) == ANSWER_YES) return -1;
-    expr *zero = expr_int(e, 0);
-    if (decide_positive_on(e, moved, y, zero, length, true) == ANSWER_YES) return 1;
-    if (decide_positive_on(e, expr_neg(e, moved), y, zero, length, true) == ANSWER_YES) return -1;
-    return 2;
+    expr *zero = expr_int(e, 0), *minus = expr_neg(e, moved);
+    answer up = positive_on_branch(e, moved, y, length), down = positive_on_branch(e, minus, y, length);
+    if (up == ANSWER_YES || down == ANSWER_YES) return up == ANSWER_YES ? 1 : -1;
+    answer weak_up = decide_positive_on(e, moved, y, zero, length, true);
+    if (weak_up == ANSWER_YES) return 1;
+    answer weak_down = decide_positive_on(e, minus, y, zero, length, true);
+    if (weak_down == ANSWER_YES) return -1;
+    *known = weak_up == ANSWER_NO && weak_down == ANSWER_NO;
+    if (*known) return 2;
+    expr **symbols;
+    size_t count = expr_symbols(moved, &symbols);
+    free(symbols);
+    int sign = count == 1 && expr_has(moved, y) ? seen_sign(e, moved, y, length) : 2;
+    *seen = sign != 2;
+    return sign;
 }
 
-static tw_status place_by_slope(tw_engine *e, place *out, expr *phase, expr *x, expr *from, expr *to, expr *large)
+static tw_status place_by_slope(tw_engine *e, place *out, expr *phase, expr *x, expr *from, expr *to, expr *large,
+                                condition_list *conditions)
 {
-    if (expr_is_minus_inf(from)) return refuse_interior(e, phase);
-    int sign = slope_sign(e, expr_derivative(e, phase, x), x, from, to);
+    if (expr_is_minus_inf(from)) return refuse_interior(e, phase, true);
+    bool known, seen;
+    int sign = slope_sign(e, expr_derivative(e, phase, x), x, from, to, &known, &seen);
     if (e->error.kind != ERROR_NONE) return TW_ERROR;
-    if (sign == 2) return refuse_interior(e, phase);
+    if (sign == 2) return refuse_interior(e, phase, known);
     if (sign < 0 && expr_is_inf(to)) return growing_kernel(e, large);
+    if (seen) conditions_add(conditions, "the exponent has no other greatest point on the path", NULL, CONDITION_OPEN);
     out->kind = sign > 0 ? PLACE_FROM : PLACE_TO;
     out->pure = false;
     out->center = sign > 0 ? from : to;
@@ -238,7 +278,7 @@ tw_status place_find(tw_engine *e, place *out, expr *phase, expr *x, expr *from,
 {
     power_shape shape = read_shape(e, out, phase, x);
     if (e->error.kind != ERROR_NONE) return TW_ERROR;
-    if (shape == SHAPE_NONE) return place_by_slope(e, out, phase, x, from, to, large);
+    if (shape == SHAPE_NONE) return place_by_slope(e, out, phase, x, from, to, large, conditions);
     int sign;
     if (power_sign(e, out->c, conditions, &sign) != TW_OK) return TW_ERROR;
     if (shape == SHAPE_LINEAR) return place_linear(e, out, sign, from, to, large);
@@ -247,5 +287,5 @@ tw_status place_find(tw_engine *e, place *out, expr *phase, expr *x, expr *from,
     bool found = false;
     if (sign > 0 && place_power(e, out, shape, x, from, to, &found) != TW_OK) return TW_ERROR;
     if (found) return TW_OK;
-    return place_by_slope(e, out, phase, x, from, to, large);
+    return place_by_slope(e, out, phase, x, from, to, large, conditions);
 }

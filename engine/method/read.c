@@ -215,7 +215,7 @@ static tw_status separate(frame *f)
         record(f, "stretch the variable", NULL, form, "%s = %s*t separates %s from the variable", r->original_variable->is.name,
                by ? by : "", r->large->is.name);
         free(by);
-    } else {
+    } else if (form != r->derivation.steps[r->derivation.count - 1].after) {
         record(f, "separate kernel and amplitude", NULL, form, NULL);
     }
     return TW_OK;
@@ -310,8 +310,10 @@ static tw_status make_branches(frame *f)
     r->local.factor = normal_under_facts(e, expr_mul(e, f->outside, height), &r->large, 1);
     if (!r->place || !r->local.scale || !r->local.factor) return TW_ERROR;
     char *words = expr_text(e, r->place);
-    record(f, p->kind == PLACE_INSIDE ? "split at the critical point" : "shift to the critical point", NULL,
-           local_form_integral(e, &r->local), "the exponent is greatest at %s = %s only", r->original_variable->is.name,
+    const char *rule = p->kind == PLACE_INSIDE         ? "split at the critical point"
+                       : expr_is_zero(p->center)       ? "find the critical point"
+                                                       : "shift to the critical point";
+    record(f, rule, NULL, local_form_integral(e, &r->local), "the exponent is greatest at %s = %s only", r->original_variable->is.name,
            words ? words : "");
     free(words);
     return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
@@ -362,6 +364,7 @@ static tw_status check_convergence(frame *f, text *summary)
         free(number);
     }
     text_clear(&words);
+    conditions_append(&last->conditions, &r->conditions);
     return TW_OK;
 }
 
@@ -381,6 +384,27 @@ static void begin_summary(frame *f, text *t)
     free(words);
 }
 
+static bool holds_decaying_exponential(expr *a, expr *x)
+{
+    if (expr_is_call(a, FUNCTION_EXP)) return expr_has(a, x);
+    for (uint32_t k = 0; k < a->count; k++)
+        if (holds_decaying_exponential(a->args[k], x)) return true;
+    return false;
+}
+
+/* Where the kernel grows but the amplitude has an exponential of its own (x^s*exp(-x)), the least point moves with s. */
+static tw_status find_place(frame *f)
+{
+    tw_engine *e = f->e;
+    tw_status status = place_find(e, &f->p, f->s.phase, f->x, f->from, f->to, f->r->large, &f->r->conditions);
+    if (status == TW_OK || e->error.kind != ERROR_DIVERGENT || !holds_decaying_exponential(f->s.amplitude, f->x)) return status;
+    engine_forgive(e);
+    const char *x = f->r->original_variable->is.name, *s = f->r->large->is.name;
+    return engine_fail(e, ERROR_UNAVAILABLE, "the kernel grows along the path and only the amplitude holds it, so the critical point "
+                                             "moves with %s: put %s = %s^a*t with an a that keeps it in place; a critical point "
+                                             "inside the path needs the method `laplace`, which this version does not have", s, x, s);
+}
+
 static tw_status read_stages(frame *f, text *summary)
 {
     tw_engine *e = f->e;
@@ -389,7 +413,7 @@ static tw_status read_stages(frame *f, text *summary)
     step *first = record(f, "as typed", NULL, r->integral, NULL);
     first->before = r->integral;
     if (turn_path(f) != TW_OK || mirror_path(f) != TW_OK || separate(f) != TW_OK) return TW_ERROR;
-    if (place_find(e, &f->p, f->s.phase, f->x, f->from, f->to, r->large, &r->conditions) != TW_OK) return TW_ERROR;
+    if (find_place(f) != TW_OK) return TW_ERROR;
     if (make_branches(f) != TW_OK) return TW_ERROR;
     begin_summary(f, summary);
     return check_convergence(f, summary);

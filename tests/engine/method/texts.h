@@ -35,22 +35,26 @@ static inline expr *text_parse(tw_engine *e, const char *words)
     return made;
 }
 
-/* A condition of the language, such as "0 < p < 1", as facts. */
-static inline void text_given(tw_engine *e, const char *words)
+/* What stands after `given`, such as "a > 0, 0 < p < 1", as facts. */
+static inline void text_given(tw_engine *e, const char *conditions)
 {
+    char words[256] = "given ";
+    strncat(words, conditions, sizeof words - 8);
     source s;
     syntax_text t;
     source_init(&s, "<test>", words, strlen(words));
     syntax_text_init(&t);
-    syntax *a = parse_expression_text(&s, &t);
-    lower_conditions list;
-    lower_conditions_init(&list);
+    parse_text(&s, &t);
+    if (t.count != 1) fail_msg("cannot read `%s`", words);
     lowering l;
     lowering_init(&l, e, NULL);
-    if (!a || lower_condition(&l, a, &list) != TW_OK) fail_msg("cannot read the condition `%s`", words);
+    lower_conditions list;
+    lower_conditions_init(&list);
+    for (size_t k = 0; k < t.statements[0]->as.given.count; k++)
+        assert_int_equal(lower_condition(&l, t.statements[0]->as.given.list[k], &list), TW_OK);
     for (size_t k = 0; k < list.count; k++) assert_int_equal(facts_add(e, list.list[k], CONDITION_GIVEN), TW_OK);
-    lowering_clear(&l);
     lower_conditions_clear(&list);
+    lowering_clear(&l);
     syntax_text_clear(&t);
 }
 
