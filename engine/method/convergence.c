@@ -28,15 +28,46 @@ static bool symbol_at_least_zero(tw_engine *e, expr *symbol, bool *strict)
 
 static int plain_sign(tw_engine *e, expr *f, expr *x);
 
+static bool is_real_symbolic(tw_engine *e, expr *a);
+
+/* What a term with a number in front is at least, beyond what its sign says: 3*exp(u) > 3 for u > 0, -2*cos(u) >= -2 for real u. */
+static bool term_bound(tw_engine *e, expr *term, expr *x, fmpq_t low, bool *strict)
+{
+    expr *rest;
+    expr_as_coefficient(e, term, low, &rest);
+    *strict = false;
+    if (term->kind == EXPR_NUMBER) return true;
+    if (!rest || rest->kind != EXPR_CALL) return false;
+    function_id F = rest->is.function;
+    if ((F == FUNCTION_SIN || F == FUNCTION_COS) && is_real_symbolic(e, rest->args[0])) {
+        fmpq_abs(low, low);
+        fmpq_neg(low, low);
+        return true;
+    }
+    *strict = (F == FUNCTION_EXP || F == FUNCTION_COSH) && fmpq_sgn(low) > 0 && plain_sign(e, rest->args[0], x) == 1;
+    return *strict;
+}
+
 /* 1: positive; 0: at least zero; -1: not seen. */
 static int plain_sign_of_sum(tw_engine *e, expr *f, expr *x)
 {
     int sign = 0;
-    for (uint32_t k = 0; k < f->count; k++) {
+    fmpq_t low, one;
+    fmpq_init(low);
+    fmpq_init(one);
+    for (uint32_t k = 0; k < f->count && sign >= 0; k++) {
+        bool strict;
+        if (term_bound(e, f->args[k], x, one, &strict)) {
+            fmpq_add(low, low, one);
+            if (strict) sign = 1;
+            continue;
+        }
         int part = plain_sign(e, f->args[k], x);
-        if (part < 0) return -1;
-        if (part > 0) sign = 1;
+        if (part != 0) sign = part;
     }
+    if (sign >= 0 && fmpq_sgn(low) != 0) sign = fmpq_sgn(low);
+    fmpq_clear(low);
+    fmpq_clear(one);
     return sign;
 }
 
@@ -112,6 +143,37 @@ answer positive_on_branch(tw_engine *e, expr *f, expr *x, expr *end)
     return decide_positive_on(e, f, x, zero, end, false);
 }
 
+/* ---- samples ---- */
+
+enum { SAMPLES = 40 };
+
+static int sample_sign(tw_engine *e, expr *f, expr *x, expr *end, slong k)
+{
+    expr *at = expr_is_inf(end) ? expr_frac(e, k * k, SAMPLES) : expr_mul(e, end, expr_frac(e, k, SAMPLES));
+    expr *there = expr_substitute(e, f, x, at);
+    acb_t v;
+    acb_init(v);
+    int seen = 0;
+    if (there && ball_value(e, v, there, 64) == TW_OK && acb_is_finite(v) && arb_contains_zero(acb_imagref(v)))
+        seen = arb_is_positive(acb_realref(v)) ? SIGN_SEEN_POSITIVE : arb_is_negative(acb_realref(v)) ? SIGN_SEEN_NEGATIVE : 0;
+    acb_clear(v);
+    if (e->error.kind == ERROR_VALUE || e->error.kind == ERROR_UNDECIDED) engine_forgive(e);
+    return seen ? seen : SIGN_SEEN_NONE;
+}
+
+int signs_seen(tw_engine *e, expr *f, expr *x, expr *end)
+{
+    expr *whole = expr_is_inf(end) ? f : expr_mul(e, f, end);
+    expr **symbols;
+    size_t count = whole ? expr_symbols(whole, &symbols) : 0;
+    if (!whole) return SIGN_SEEN_NONE;
+    free(symbols);
+    if (count != 1) return SIGN_SEEN_NONE;
+    int seen = 0;
+    for (slong k = 1; k < SAMPLES && budget_ok(e); k++) seen |= sample_sign(e, f, x, end, k);
+    return seen;
+}
+
 /* ---- the open path ---- */
 
 typedef struct path {
@@ -135,6 +197,39 @@ static void add_open(path *p, const char *format, expr *u)
     p->unsure = true;
 }
 
+/* Functions that are analytic at every real argument. */
+static bool is_entire_on_reals(function_id F)
+{
+    switch (F) {
+    case FUNCTION_EXP: case FUNCTION_SIN: case FUNCTION_COS: case FUNCTION_SINH: case FUNCTION_COSH: case FUNCTION_TANH:
+    case FUNCTION_ATAN: case FUNCTION_ASINH: case FUNCTION_ERF: case FUNCTION_ERFC: case FUNCTION_AI: case FUNCTION_BI:
+    case FUNCTION_ABS: case FUNCTION_MIN: case FUNCTION_MAX: case FUNCTION_RE: case FUNCTION_IM: case FUNCTION_CONJ:
+        return true;
+    default:
+        return false;
+    }
+}
+
+/* Continuous at every real x for certain: sums, products, whole powers, functions that are entire on the reals. */
+static bool is_continuous(expr *u, expr *x)
+{
+    if (!expr_has(u, x) || u == x) return true;
+    bool power = u->kind == EXPR_POWER && expr_is_number(u->args[1]) && fmpz_is_one(fmpq_denref(expr_number(u->args[1]))) &&
+                 fmpq_sgn(expr_number(u->args[1])) > 0;
+    bool call = u->kind == EXPR_CALL && is_entire_on_reals(u->is.function);
+    if (!power && !call && u->kind != EXPR_SUM && u->kind != EXPR_PRODUCT) return false;
+    for (uint32_t k = 0; k < u->count; k++)
+        if (!is_continuous(u->args[k], x)) return false;
+    return true;
+}
+
+/* u takes both signs at samples where balls prove it, so it has a zero between. */
+static bool has_zero(path *p, expr *u)
+{
+    const int both = SIGN_SEEN_POSITIVE | SIGN_SEEN_NEGATIVE;
+    return is_continuous(u, p->b->x) && (signs_seen(p->e, u, p->b->x, p->b->end) & both) == both;
+}
+
 /* u must not vanish inside the path. */
 static tw_status keep_from_zero(path *p, expr *u, bool is_pole)
 {
@@ -145,7 +240,7 @@ static tw_status keep_from_zero(path *p, expr *u, bool is_pole)
     answer negative = positive_on_branch(e, expr_neg(e, u), p->b->x, p->b->end);
     if (e->error.kind != ERROR_NONE) return TW_ERROR;
     if (negative == ANSWER_YES) return TW_OK;
-    if (positive == ANSWER_NO && negative == ANSWER_NO && is_pole) {
+    if (is_pole && has_zero(p, u)) {
         char *words = expr_text(e, u);
         if (words)
             engine_fail(e, ERROR_DIVERGENT, "the integrand has a pole on the path, where %s = 0: the integral does not converge "
@@ -168,19 +263,6 @@ static tw_status power_is_smooth(path *p, expr *f)
     }
     bool strong = expr_is_number(r) && fmpq_cmp_si(expr_number(r), -1) <= 0;
     return keep_from_zero(p, f->args[0], strong);
-}
-
-/* Functions that are analytic at every real argument. */
-static bool is_entire_on_reals(function_id F)
-{
-    switch (F) {
-    case FUNCTION_EXP: case FUNCTION_SIN: case FUNCTION_COS: case FUNCTION_SINH: case FUNCTION_COSH: case FUNCTION_TANH:
-    case FUNCTION_ATAN: case FUNCTION_ASINH: case FUNCTION_ERF: case FUNCTION_ERFC: case FUNCTION_AI: case FUNCTION_BI:
-    case FUNCTION_ABS: case FUNCTION_MIN: case FUNCTION_MAX: case FUNCTION_RE: case FUNCTION_IM: case FUNCTION_CONJ:
-        return true;
-    default:
-        return false;
-    }
 }
 
 static tw_status call_is_smooth(path *p, expr *f)

@@ -25,6 +25,11 @@ bool plainly_positive(tw_engine *e, expr *f, expr *x);
 /* f > 0 on (0, end): plainly, or by branch and bound. */
 answer positive_on_branch(tw_engine *e, expr *f, expr *x, expr *end);
 
+/* The signs that f(x), real, is proved by balls to take at sample points of (0, end). NONE: at some sample the sign is not known, or f
+ * has other symbols than x. */
+enum { SIGN_SEEN_POSITIVE = 1, SIGN_SEEN_NEGATIVE = 2, SIGN_SEEN_NONE = 4 };
+int signs_seen(tw_engine *e, expr *f, expr *x, expr *end);
+
 /* Adds the conditions under which the integral over branch b converges, and q is continuous inside, to r->conditions with
  * their labels. *least: raised to the value of the scale beyond which it converges (0 at first). DIVERGENT when it never does. */
 tw_status branch_converges(tw_engine *e, reading *r, const branch *b, expr *far_place, expr **least, bool *proved);

@@ -157,32 +157,6 @@ static tw_status refuse_interior(tw_engine *e, expr *phase, bool known)
     return TW_ERROR;
 }
 
-enum { SAMPLES = 40 };
-
-/* The slope at the k-th sample point of (0, length): its sign, 2 when it has none. */
-static int sample_sign(tw_engine *e, expr *slope, expr *y, expr *length, slong k)
-{
-    expr *at = expr_is_inf(length) ? expr_frac(e, k * k, SAMPLES) : expr_mul(e, length, expr_frac(e, k, SAMPLES));
-    expr *there = expr_substitute(e, slope, y, at);
-    acb_t v;
-    acb_init(v);
-    int sign = 2;
-    if (there && ball_value(e, v, there, 64) == TW_OK && acb_is_finite(v))
-        sign = arb_is_positive(acb_realref(v)) ? 1 : arb_is_negative(acb_realref(v)) ? -1 : 2;
-    acb_clear(v);
-    if (e->error.kind == ERROR_VALUE || e->error.kind == ERROR_UNDECIDED) engine_forgive(e);
-    return sign;
-}
-
-/* One sign at all samples: seen, not proved. */
-static int seen_sign(tw_engine *e, expr *slope, expr *y, expr *length)
-{
-    int sign = sample_sign(e, slope, y, length, 1);
-    for (slong k = 2; k < SAMPLES && sign != 2; k++)
-        if (sample_sign(e, slope, y, length, k) != sign) sign = 2;
-    return sign;
-}
-
 /* The slope's sign on the whole path: 1, -1, 2 (not one sign, or not known; *known tells which). *seen: from samples only. */
 static int slope_sign(tw_engine *e, expr *slope, expr *x, expr *from, expr *to, bool *known, bool *seen)
 {
@@ -198,14 +172,11 @@ static int slope_sign(tw_engine *e, expr *slope, expr *x, expr *from, expr *to, 
     if (weak_up == ANSWER_YES) return 1;
     answer weak_down = decide_positive_on(e, minus, y, zero, length, true);
     if (weak_down == ANSWER_YES) return -1;
-    *known = weak_up == ANSWER_NO && weak_down == ANSWER_NO;
-    if (*known) return 2;
-    expr **symbols;
-    size_t count = expr_symbols(moved, &symbols);
-    free(symbols);
-    int sign = count == 1 && expr_has(moved, y) ? seen_sign(e, moved, y, length) : 2;
-    *seen = sign != 2;
-    return sign;
+    int signs = signs_seen(e, moved, y, length);
+    const int both = SIGN_SEEN_POSITIVE | SIGN_SEEN_NEGATIVE;
+    *known = (signs & both) == both || (weak_up == ANSWER_NO && weak_down == ANSWER_NO);
+    *seen = !*known && (signs == SIGN_SEEN_POSITIVE || signs == SIGN_SEEN_NEGATIVE);
+    return !*seen ? 2 : signs == SIGN_SEEN_POSITIVE ? 1 : -1;
 }
 
 static tw_status place_by_slope(tw_engine *e, place *out, expr *phase, expr *x, expr *from, expr *to, expr *large,
