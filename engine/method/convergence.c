@@ -31,12 +31,12 @@ static int plain_sign(tw_engine *e, expr *f, expr *x);
 static bool is_real_symbolic(tw_engine *e, expr *a);
 
 /* What a term with a number in front is at least, beyond what its sign says: 3*exp(u) > 3 for u > 0, -2*cos(u) >= -2 for real u. */
-static bool term_bound(tw_engine *e, expr *term, expr *x, fmpq_t low, bool *strict)
+static bool term_bound(tw_engine *e, expr *part, expr *x, fmpq_t low, bool *strict)
 {
     expr *rest;
-    expr_as_coefficient(e, term, low, &rest);
+    expr_as_coefficient(e, part, low, &rest);
     *strict = false;
-    if (term->kind == EXPR_NUMBER) return true;
+    if (part->kind == EXPR_NUMBER) return true;
     if (!rest || rest->kind != EXPR_CALL) return false;
     function_id F = rest->is.function;
     if ((F == FUNCTION_SIN || F == FUNCTION_COS) && is_real_symbolic(e, rest->args[0])) {

@@ -407,7 +407,6 @@ static tw_status find_place(frame *f)
 
 static tw_status read_stages(frame *f, text *summary)
 {
-    tw_engine *e = f->e;
     reading *r = f->r;
     if (find_binder(f, r->integral) != TW_OK || open_binder(f) != TW_OK || find_large(f) != TW_OK) return TW_ERROR;
     step *first = record(f, "as typed", NULL, r->integral, NULL);
