@@ -168,26 +168,43 @@ static bool constant_bound(expr *a, bool below, fmpq_t end, bool *exact)
     return ok;
 }
 
+/* The one symbol of the condition, or NULL. */
+static expr *only_symbol(tw_engine *e, expr *condition)
+{
+    const arena_place mark = arena_mark(&e->scratch);
+    expr **symbols;
+    expr *symbol = node_symbols(e, condition, &symbols) == 1 ? symbols[0] : NULL;
+    arena_release(&e->scratch, mark);
+    return symbol;
+}
+
+/* Where the linear f vanishes, and whether it rises there; NULL with no error when f is not linear with a rational slope. */
+static expr *linear_root(tw_engine *e, expr *f, expr *symbol, bool *rising)
+{
+    expr **c;
+    slong degree;
+    if (expr_polynomial(e, f, symbol, 1, &c, &degree) != TW_OK)
+        return NULL;
+    expr *constant = c[0], *slope = degree == 1 ? c[1] : NULL;
+    free(c);
+    if (!slope || slope->kind != EXPR_NUMBER)
+        return NULL;
+    *rising = fmpq_sgn(&slope->is.number) > 0;
+    return expr_neg(e, expr_div(e, constant, slope));
+}
+
 /* What the condition says of its only symbol, if it is linear in it: sets symbol, bits and ends of f. */
 static tw_status fact_analyse(tw_engine *e, fact *f)
 {
-    expr **symbols, **c = NULL;
-    expr *left = f->condition->args[0], *right = f->condition->args[1];
     const expr_relation r = f->condition->is.relation;
-    size_t n = expr_symbols(f->condition, &symbols);
-    expr *symbol = n == 1 ? symbols[0] : NULL;
-    free(symbols);
+    expr *symbol = only_symbol(e, f->condition);
     if (!symbol || r > RELATION_EQUAL)
         return TW_OK;
-    expr *difference = expr_sub(e, right, left); /* 0 < c0 + c1*x */
-    slong degree;
-    if (!difference)
-        return e->error.kind == ERROR_VALUE ? (engine_forgive(e), TW_OK) : TW_ERROR; /* inf - inf: tells nothing */
-    if (expr_polynomial(e, difference, symbol, 1, &c, &degree) != TW_OK)
-        return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
-    expr *root = degree == 1 && c[1]->kind == EXPR_NUMBER ? expr_neg(e, expr_div(e, c[0], c[1])) : NULL;
-    const bool rising = root && fmpq_sgn(&c[1]->is.number) > 0;
-    free(c);
+    bool rising = false;
+    expr *difference = expr_sub(e, f->condition->args[1], f->condition->args[0]); /* 0 < difference */
+    if (!difference && e->error.kind == ERROR_VALUE)
+        engine_forgive(e); /* inf - inf and the like tell nothing */
+    expr *root = difference ? linear_root(e, difference, symbol, &rising) : NULL;
     if (!root)
         return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
     f->symbol = symbol;
@@ -315,13 +332,10 @@ static bool relation_is_false(expr *a)
 
 static tw_status fail_contradiction(tw_engine *e, expr *condition, expr *known)
 {
-    char *words = expr_text(e, condition), *known_words = known ? expr_text(e, known) : NULL;
-    if (known_words)
-        engine_fail(e, ERROR_VALUE, "%s contradicts %s", words, known_words);
-    else
-        engine_fail(e, ERROR_VALUE, "%s contradicts what is known", words);
-    free(words);
-    free(known_words);
+    const arena_place mark = arena_mark(&e->scratch);
+    const char *words = node_text(e, condition);
+    engine_fail(e, ERROR_VALUE, "%s contradicts %s", words, known ? node_text(e, known) : "what is known");
+    arena_release(&e->scratch, mark);
     return TW_ERROR;
 }
 

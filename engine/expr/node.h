@@ -39,6 +39,12 @@ void memo_init(memo *m, tw_engine *e);
 void *memo_find(const memo *m, expr *a, uint32_t level); /* NULL: unknown */
 void memo_keep(memo *m, expr *a, uint32_t level, void *value);
 
+/* As expr_symbols, into scratch memory of the caller's mark. */
+size_t node_symbols(tw_engine *e, expr *a, expr ***symbols);
+
+/* As expr_text, into scratch memory of the caller's mark. */
+const char *node_text(tw_engine *e, expr *a);
+
 expr *fail_too_large(tw_engine *e);
 bool number_fits(const fmpq_t q);
 /* number.c: base != 0 to a rational power, and to a power that is no number; (-1)^r. */

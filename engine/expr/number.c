@@ -11,30 +11,47 @@ enum {
     FACTOR_HUGE_PRIMES = 4      /* beyond that: 2, 3, 5, 7 only, for the powers of ten */
 };
 
-static void factor_append(fmpz_factor_t f, const fmpz_t n, ulong multiplicity)
+typedef struct prime_factor {
+    fmpz_t p;         /* a prime where that is cheap to find out */
+    ulong multiplicity;
+} prime_factor;
+
+typedef struct factors {
+    size_t count;
+    prime_factor *list; /* in scratch memory, but for the inside of large p */
+} factors;
+
+static void factors_clear(factors *f)
 {
-    fmpz_factor_t inner;
-    if (fmpz_is_one(n))
-        return;
-    if (fmpz_bits(n) > FACTOR_FULL_BITS) {
-        _fmpz_factor_append(f, n, multiplicity);
-        return;
-    }
-    fmpz_factor_init(inner);
-    fmpz_factor(inner, n);
-    for (slong k = 0; k < inner->num; k++)
-        _fmpz_factor_append(f, inner->p + k, inner->exp[k] * multiplicity);
-    fmpz_factor_clear(inner);
+    for (size_t k = 0; k < f->count; k++)
+        fmpz_clear(f->list[k].p);
 }
 
-/* n > 0 as a product; the factors are primes where it is cheap to find them. Initialises f. */
-static void factor_some(fmpz_factor_t f, const fmpz_t n)
+static void factors_push(factors *f, const fmpz_t p, ulong multiplicity)
 {
-    fmpz_factor_init(f);
-    if (fmpz_bits(n) <= FACTOR_FULL_BITS) {
-        factor_append(f, n, 1);
+    if (fmpz_is_one(p))
+        return;
+    fmpz_init_set(f->list[f->count].p, p);
+    f->list[f->count++].multiplicity = multiplicity;
+}
+
+static void factors_append(factors *f, const fmpz_t n, ulong multiplicity)
+{
+    fmpz_factor_t small;
+    if (fmpz_bits(n) > FACTOR_FULL_BITS) {
+        factors_push(f, n, multiplicity);
         return;
     }
+    fmpz_factor_init(small);
+    fmpz_factor(small, n);
+    for (slong k = 0; k < small->num; k++)
+        factors_push(f, small->p + k, small->exp[k] * multiplicity);
+    fmpz_factor_clear(small);
+}
+
+/* n > FACTOR_FULL_BITS bits: small primes first, then a perfect power, then what is left. */
+static void factors_of_large(factors *f, const fmpz_t n)
+{
     fmpz_t rest, p;
     fmpz_init_set(rest, n);
     fmpz_init(p);
@@ -45,19 +62,29 @@ static void factor_some(fmpz_factor_t f, const fmpz_t n)
             continue;
         fmpz_set_ui(p, primes[k]);
         slong multiplicity = fmpz_remove(rest, rest, p);
-        _fmpz_factor_append(f, p, (ulong)multiplicity);
+        factors_push(f, p, (ulong)multiplicity);
     }
+    int power = 1;
     if (fmpz_bits(rest) <= FACTOR_TRIAL_BITS && fmpz_bits(rest) > FACTOR_FULL_BITS) {
-        int multiplicity = fmpz_is_perfect_power(p, rest);
-        if (multiplicity > 1)
-            factor_append(f, p, (ulong)multiplicity);
-        else
-            factor_append(f, rest, 1);
-    } else {
-        factor_append(f, rest, 1);
+        power = fmpz_is_perfect_power(p, rest);
+        if (power > 1)
+            fmpz_swap(rest, p);
     }
+    factors_append(f, rest, power > 1 ? (ulong)power : 1);
     fmpz_clear(rest);
     fmpz_clear(p);
+}
+
+/* n > 0 as a product. The list is taken before FLINT is asked for anything, so that nothing is lost at the edge. */
+static factors factor_some(tw_engine *e, const fmpz_t n)
+{
+    const bool large = fmpz_bits(n) > FACTOR_FULL_BITS;
+    factors f = {0, engine_scratch(e, large ? FACTOR_TRIAL_PRIMES + 16 : 16, sizeof(prime_factor))};
+    if (large)
+        factors_of_large(&f, n);
+    else
+        factors_append(&f, n, 1);
+    return f;
 }
 
 static bool power_fits(const fmpq_t base, const fmpz_t exponent)
@@ -133,50 +160,55 @@ static expr *prime_power(tw_engine *e, fmpq_t rational, const fmpz_t factor, con
 }
 
 /* Appends the powers of n's factors; n > 0, sign is 1 above the bar and -1 below. */
-static bool append_factors(tw_engine *e, expr **factors, size_t *count, fmpq_t rational, const fmpz_factor_t f,
+static bool append_factors(tw_engine *e, expr **list, size_t *count, fmpq_t rational, const factors *f,
                            const fmpq_t exponent, int sign)
 {
     fmpq_t each;
     fmpq_init(each);
     bool ok = true;
-    for (slong k = 0; ok && k < f->num; k++) {
-        fmpq_mul_ui(each, exponent, f->exp[k]);
+    for (size_t k = 0; ok && k < f->count; k++) {
+        fmpq_mul_ui(each, exponent, f->list[k].multiplicity);
         if (sign < 0)
             fmpq_neg(each, each);
-        factors[*count] = prime_power(e, rational, f->p + k, each);
-        ok = factors[(*count)++] != NULL;
+        list[*count] = prime_power(e, rational, f->list[k].p, each);
+        ok = list[(*count)++] != NULL;
     }
     fmpq_clear(each);
     return ok;
 }
 
-static expr *rational_power(tw_engine *e, const fmpq_t base, const fmpq_t exponent)
+static void factor_both(tw_engine *e, const fmpq_t q, factors *above, factors *below)
 {
-    fmpz_factor_t above, below;
-    fmpq_t rational;
     fmpz_t modulus;
     fmpz_init(modulus);
+    fmpz_abs(modulus, fmpq_numref(q));
+    *above = factor_some(e, modulus);
+    *below = factor_some(e, fmpq_denref(q));
+    fmpz_clear(modulus);
+}
+
+static expr *rational_power(tw_engine *e, const fmpq_t base, const fmpq_t exponent)
+{
+    const arena_place mark = arena_mark(&e->scratch);
+    factors above, below;
+    factor_both(e, base, &above, &below);
+    expr **list = engine_scratch(e, above.count + below.count + 2, sizeof *list);
+    size_t count = 0;
+    fmpq_t rational;
     fmpq_init(rational);
     fmpq_one(rational);
-    fmpz_abs(modulus, fmpq_numref(base));
-    factor_some(above, modulus);
-    factor_some(below, fmpq_denref(base));
-    const arena_place mark = arena_mark(&e->scratch);
-    expr **factors = engine_scratch(e, (size_t)(above->num + below->num) + 2, sizeof *factors);
-    size_t count = 0;
     if (fmpq_sgn(base) < 0)
-        factors[count++] = minus_one_power(e, exponent);
+        list[count++] = minus_one_power(e, exponent);
     expr *power = NULL;
-    if (append_factors(e, factors, &count, rational, above, exponent, 1) &&
-        append_factors(e, factors, &count, rational, below, exponent, -1)) {
-        factors[count++] = expr_fmpq(e, rational);
-        power = expr_product(e, factors, count);
+    if (append_factors(e, list, &count, rational, &above, exponent, 1) &&
+        append_factors(e, list, &count, rational, &below, exponent, -1)) {
+        list[count++] = expr_fmpq(e, rational);
+        power = expr_product(e, list, count);
     }
-    arena_release(&e->scratch, mark);
-    fmpz_factor_clear(above);
-    fmpz_factor_clear(below);
+    factors_clear(&above);
+    factors_clear(&below);
     fmpq_clear(rational);
-    fmpz_clear(modulus);
+    arena_release(&e->scratch, mark);
     return power;
 }
 
@@ -199,14 +231,12 @@ expr *number_power(tw_engine *e, const fmpq_t base, const fmpq_t exponent)
     return rational_power(e, base, exponent);
 }
 
-static bool append_symbolic(tw_engine *e, expr **factors, size_t *count, const fmpz_factor_t f, expr *exponent, slong sign)
+static bool append_symbolic(tw_engine *e, expr **list, size_t *count, const factors *f, expr *exponent, slong sign)
 {
-    for (slong k = 0; k < f->num; k++) {
-        expr *each = expr_mul(e, expr_int(e, sign * (slong)f->exp[k]), exponent);
-        if (!each)
-            return false;
-        factors[*count] = node_power(e, expr_fmpz(e, f->p + k), each);
-        if (!factors[(*count)++])
+    for (size_t k = 0; k < f->count; k++) {
+        expr *each = expr_mul(e, expr_int(e, sign * (slong)f->list[k].multiplicity), exponent);
+        list[*count] = node_power(e, expr_fmpz(e, f->list[k].p), each);
+        if (!list[(*count)++])
             return false;
     }
     return true;
@@ -215,27 +245,19 @@ static bool append_symbolic(tw_engine *e, expr **factors, size_t *count, const f
 /* The exponent is no number and no sum that starts with one. b^u = (-1)^u * 2^(..*u) * 3^(..*u) ..., true for all u. */
 static expr *number_power_split(tw_engine *e, const fmpq_t base, expr *exponent)
 {
-    fmpz_factor_t above, below;
-    fmpz_t modulus;
-    fmpz_init(modulus);
-    fmpz_abs(modulus, fmpq_numref(base));
-    factor_some(above, modulus);
-    factor_some(below, fmpq_denref(base));
     const arena_place mark = arena_mark(&e->scratch);
-    expr **factors = engine_scratch(e, (size_t)(above->num + below->num) + 1, sizeof *factors);
+    factors above, below;
+    factor_both(e, base, &above, &below);
+    expr **list = engine_scratch(e, above.count + below.count + 1, sizeof *list);
     size_t count = 0;
     expr *power = NULL;
-    if (fmpq_sgn(base) < 0) {
-        factors[0] = node_power(e, expr_int(e, -1), exponent);
-        count = 1;
-    }
-    if ((count == 0 || factors[0]) && append_symbolic(e, factors, &count, above, exponent, 1) &&
-        append_symbolic(e, factors, &count, below, exponent, -1))
-        power = expr_product(e, factors, count);
+    if (fmpq_sgn(base) < 0)
+        list[count++] = node_power(e, expr_int(e, -1), exponent);
+    if (append_symbolic(e, list, &count, &above, exponent, 1) && append_symbolic(e, list, &count, &below, exponent, -1))
+        power = expr_product(e, list, count);
+    factors_clear(&above);
+    factors_clear(&below);
     arena_release(&e->scratch, mark);
-    fmpz_factor_clear(above);
-    fmpz_factor_clear(below);
-    fmpz_clear(modulus);
     return power;
 }
 

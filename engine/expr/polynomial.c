@@ -5,6 +5,7 @@
 
 #include <stdlib.h>
 #include <string.h>
+#include <string.h>
 
 typedef struct monomial {
     slong degree;
@@ -172,12 +173,15 @@ tw_status expr_polynomial(tw_engine *e, expr *a, expr *symbol, slong limit, expr
     memo_init(&w.memo, e);
     polynomial *p = walk(&w, a);
     if (p) {
-        *degree = p->count ? p->terms[p->count - 1].degree : 0;
-        *coefficients = base_alloc(((size_t)*degree + 1) * sizeof(expr *));
-        for (slong n = 0; n <= *degree; n++)
-            (*coefficients)[n] = expr_int(e, 0);
+        const size_t count = p->count ? (size_t)p->terms[p->count - 1].degree + 1 : 1;
+        expr **list = engine_scratch(e, count, sizeof *list);
+        for (size_t n = 0; n < count; n++)
+            list[n] = expr_int(e, 0);
         for (size_t n = 0; n < p->count; n++)
-            (*coefficients)[p->terms[n].degree] = p->terms[n].coefficient;
+            list[p->terms[n].degree] = p->terms[n].coefficient;
+        *degree = (slong)count - 1;
+        *coefficients = base_alloc(count * sizeof *list); /* last: nothing after it can leave through the edge */
+        memcpy(*coefficients, list, count * sizeof *list);
     }
     arena_release(&e->scratch, mark);
     return p ? TW_OK : TW_ERROR;

@@ -76,7 +76,7 @@ static char *name_choose(printer *p, const char *hint, expr *const *symbols, siz
 static void name_fresh_symbols(printer *p, expr *a)
 {
     expr **symbols;
-    size_t n = expr_symbols(a, &symbols);
+    size_t n = node_symbols(p->engine, a, &symbols);
     p->fresh = engine_scratch(p->engine, n, sizeof *p->fresh);
     for (size_t k = 0; k < n; k++) {
         if (!symbols[k]->fresh)
@@ -90,7 +90,6 @@ static void name_fresh_symbols(printer *p, expr *a)
         symbols[k] = symbol;
         p->fresh[p->fresh_count++] = (fresh_name){symbol, name};
     }
-    free(symbols);
 }
 
 static const char *leaf_name(const printer *p, expr *a)
@@ -104,14 +103,24 @@ static const char *leaf_name(const printer *p, expr *a)
 
 static void print_fmpz(printer *p, const fmpz_t n)
 {
-    char *digits = fmpz_get_str(NULL, 10, n);
-    text_add(p->out, digits);
-    flint_free(digits);
+    const arena_place mark = arena_mark(&p->engine->scratch);
+    char *digits = engine_scratch(p->engine, fmpz_sizeinbase(n, 10) + 2, 1);
+    text_add(p->out, fmpz_get_str(digits, 10, n));
+    arena_release(&p->engine->scratch, mark);
 }
 
-static void print_fmpq(printer *p, const fmpq_t q)
+static void print_fmpz_modulus(printer *p, const fmpz_t n)
 {
-    print_fmpz(p, fmpq_numref(q));
+    const arena_place mark = arena_mark(&p->engine->scratch);
+    char *digits = engine_scratch(p->engine, fmpz_sizeinbase(n, 10) + 2, 1);
+    fmpz_get_str(digits, 10, n);
+    text_add(p->out, digits + (digits[0] == '-'));
+    arena_release(&p->engine->scratch, mark);
+}
+
+static void print_fmpq_modulus(printer *p, const fmpq_t q)
+{
+    print_fmpz_modulus(p, fmpq_numref(q));
     if (fmpz_is_one(fmpq_denref(q)))
         return;
     text_add_char(p->out, '/');
@@ -121,19 +130,12 @@ static void print_fmpq(printer *p, const fmpq_t q)
 static void print_number(printer *p, expr *a, bool negate, int level)
 {
     const fmpq *q = &a->is.number;
-    const bool minus = (fmpq_sgn(q) < 0) != negate;
+    const bool minus = fmpq_sgn(q) != 0 && (fmpq_sgn(q) < 0) != negate;
     const int own = minus ? LEVEL_SUM : fmpz_is_one(fmpq_denref(q)) ? LEVEL_BASE : LEVEL_PRODUCT;
-    fmpq_t shown;
-    fmpq_init(shown);
-    fmpq_set(shown, q);
-    if (negate)
-        fmpq_neg(shown, shown);
-    if (own < level)
-        text_add_char(p->out, '(');
-    print_fmpq(p, shown);
-    if (own < level)
-        text_add_char(p->out, ')');
-    fmpq_clear(shown);
+    text_add(p->out, own < level ? "(" : "");
+    text_add(p->out, minus ? "-" : "");
+    print_fmpq_modulus(p, q);
+    text_add(p->out, own < level ? ")" : "");
 }
 
 /* ---- powers ---- */
@@ -284,7 +286,7 @@ static void print_layout(printer *p, layout *l)
 {
     const fmpz *above = fmpq_numref(l->number), *below = fmpq_denref(l->number);
     if (!l->bar && l->series && !fmpz_is_one(below)) {
-        print_fmpq(p, l->number);
+        print_fmpq_modulus(p, l->number);
         print_items(p, l, false, true);
         return;
     }
@@ -516,10 +518,8 @@ static void print_limit(printer *p, expr *a)
 static const char *binder_name(printer *p, expr *a)
 {
     expr **symbols;
-    size_t n = expr_symbols(a->args[a->kind == EXPR_ROOT ? 0 : a->count - 1], &symbols);
-    const char *name = name_choose(p, a->is.name, symbols, n);
-    free(symbols);
-    return name;
+    size_t n = node_symbols(p->engine, a->args[a->kind == EXPR_ROOT ? 0 : a->count - 1], &symbols);
+    return name_choose(p, a->is.name, symbols, n);
 }
 
 static void print_body(printer *p, expr *body, const char *name, int level)
@@ -660,10 +660,50 @@ void expr_print(tw_engine *e, text *out, expr *a)
     arena_release(&e->scratch, mark);
 }
 
+/* A text under construction is freed when memory runs out: these jobs have an edge of their own, and then go on to the
+ * caller's. */
+typedef struct text_job {
+    tw_engine *engine;
+    expr *expression;
+    text out;
+    char *copy; /* in scratch memory */
+} text_job;
+
+static tw_status text_run(void *host)
+{
+    text_job *job = host;
+    text_init(&job->out);
+    expr_print(job->engine, &job->out, job->expression);
+    return TW_OK;
+}
+
+static tw_status text_run_copy(void *host)
+{
+    text_job *job = host;
+    text_run(job);
+    job->copy = arena_copy(&job->engine->scratch, job->out.bytes, job->out.length);
+    return TW_OK;
+}
+
+static void text_protect(text_job *job, tw_status (*run)(void *host))
+{
+    if (engine_protect(job->engine, run, job) == TW_OK)
+        return;
+    text_clear(&job->out);
+    edge_leave_memory();
+}
+
 char *expr_text(tw_engine *e, expr *a)
 {
-    text t;
-    text_init(&t);
-    expr_print(e, &t, a);
-    return text_take(&t);
+    text_job job = {.engine = e, .expression = a};
+    text_protect(&job, text_run);
+    return text_take(&job.out);
+}
+
+const char *node_text(tw_engine *e, expr *a)
+{
+    text_job job = {.engine = e, .expression = a};
+    text_protect(&job, text_run_copy);
+    text_clear(&job.out);
+    return job.copy;
 }

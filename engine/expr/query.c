@@ -100,28 +100,53 @@ void expr_as_coefficient(tw_engine *e, expr *a, fmpq_t coefficient, expr **rest)
 
 /* ---- walks: a set of the nodes seen keeps shared trees linear ---- */
 
+/* These walks have no engine, so their memory is their own: when it runs out, all of it is freed before the edge is left. */
 typedef struct seen {
     size_t count, room;
     expr **slots;
+    bool out_of_memory;
 } seen;
 
-static bool seen_add(seen *s, expr *a) /* false when it was there */
+static void *array_grow(void *old, size_t count, size_t bytes_each)
 {
-    if ((s->count + 1) * 2 > s->room) {
-        seen larger = {0, s->room ? s->room * 4 : 64, NULL};
-        larger.slots = base_alloc(larger.room * sizeof *larger.slots);
-        memset(larger.slots, 0, larger.room * sizeof *larger.slots);
-        for (size_t k = 0; k < s->room; k++)
-            if (s->slots[k])
-                seen_add(&larger, s->slots[k]);
-        free(s->slots);
-        *s = larger;
+    return edge_allocation_fails() || count > SIZE_MAX / bytes_each ? NULL : realloc(old, count * bytes_each);
+}
+
+static expr **seen_slot(expr **slots, size_t room, expr *a)
+{
+    size_t at = (a->hash ^ (uint32_t)(a->serial * 0x9e3779b9u)) & (room - 1);
+    while (slots[at] && slots[at] != a)
+        at = (at + 1) & (room - 1);
+    return slots + at;
+}
+
+static bool seen_grow(seen *s)
+{
+    const size_t room = s->room ? s->room * 4 : 64;
+    expr **slots = array_grow(NULL, room, sizeof *slots);
+    if (!slots) {
+        s->out_of_memory = true;
+        return false;
     }
-    size_t at = (a->hash ^ (uint32_t)(a->serial * 0x9e3779b9u)) & (s->room - 1);
-    for (; s->slots[at]; at = (at + 1) & (s->room - 1))
-        if (s->slots[at] == a)
-            return false;
-    s->slots[at] = a;
+    memset(slots, 0, room * sizeof *slots);
+    for (size_t k = 0; k < s->room; k++)
+        if (s->slots[k])
+            *seen_slot(slots, room, s->slots[k]) = s->slots[k];
+    free(s->slots);
+    s->slots = slots;
+    s->room = room;
+    return true;
+}
+
+/* False when it was there, or when memory is out. */
+static bool seen_add(seen *s, expr *a)
+{
+    if ((s->count + 1) * 2 > s->room && !seen_grow(s))
+        return false;
+    expr **slot = seen_slot(s->slots, s->room, a);
+    if (*slot)
+        return false;
+    *slot = a;
     s->count++;
     return true;
 }
@@ -164,27 +189,35 @@ bool expr_has(expr *a, expr *symbol)
     seen s = {0};
     bool has = has_walk(&s, a, symbol);
     free(s.slots);
+    if (s.out_of_memory)
+        edge_leave_memory();
     return has;
 }
 
 typedef struct symbol_list {
+    seen seen;
     size_t count, room;
     expr **list;
 } symbol_list;
 
-static void symbols_walk(seen *s, symbol_list *l, expr *a)
+static void symbols_walk(symbol_list *l, expr *a)
 {
-    if (a->names == 0 || !seen_add(s, a))
+    if (a->names == 0 || !seen_add(&l->seen, a))
         return;
     if (a->kind == EXPR_SYMBOL) {
         if (l->count == l->room) {
+            expr **list = array_grow(l->list, l->room * 2 + 4, sizeof *list);
+            if (!list) {
+                l->seen.out_of_memory = true;
+                return;
+            }
+            l->list = list;
             l->room = l->room * 2 + 4;
-            l->list = base_resize(l->list, l->room * sizeof *l->list);
         }
         l->list[l->count++] = a;
     }
-    for (size_t k = 0; k < a->count; k++)
-        symbols_walk(s, l, a->args[k]);
+    for (size_t k = 0; k < a->count && !l->seen.out_of_memory; k++)
+        symbols_walk(l, a->args[k]);
 }
 
 static int symbol_compare(const void *a, const void *b)
@@ -194,13 +227,50 @@ static int symbol_compare(const void *a, const void *b)
 
 size_t expr_symbols(expr *a, expr ***symbols)
 {
-    seen s = {0};
-    symbol_list l = {0, 4, base_alloc(4 * sizeof(expr *))};
-    symbols_walk(&s, &l, a);
-    free(s.slots);
+    symbol_list l = {.room = 4, .list = array_grow(NULL, 4, sizeof(expr *))};
+    l.seen.out_of_memory = !l.list;
+    if (l.list)
+        symbols_walk(&l, a);
+    free(l.seen.slots);
+    if (l.seen.out_of_memory) {
+        free(l.list);
+        edge_leave_memory();
+    }
     qsort(l.list, l.count, sizeof *l.list, symbol_compare);
     *symbols = l.list;
     return l.count;
+}
+
+static void node_symbols_walk(memo *m, expr ***list, size_t *count, size_t *room, expr *a)
+{
+    if (a->names == 0 || memo_find(m, a, 0))
+        return;
+    memo_keep(m, a, 0, m);
+    if (a->kind == EXPR_SYMBOL) {
+        if (*count == *room) {
+            expr **larger = engine_scratch(m->engine, *room * 2 + 8, sizeof *larger);
+            if (*count)
+                memcpy(larger, *list, *count * sizeof *larger);
+            *list = larger;
+            *room = *room * 2 + 8;
+        }
+        (*list)[(*count)++] = a;
+    }
+    for (size_t k = 0; k < a->count; k++)
+        node_symbols_walk(m, list, count, room, a->args[k]);
+}
+
+size_t node_symbols(tw_engine *e, expr *a, expr ***symbols)
+{
+    memo m;
+    size_t count = 0, room = 0;
+    *symbols = NULL;
+    if (a->names == 0)
+        return 0;
+    memo_init(&m, e);
+    node_symbols_walk(&m, symbols, &count, &room, a);
+    qsort(*symbols, count, sizeof **symbols, symbol_compare);
+    return count;
 }
 
 /* ---- what the form alone tells ---- */
