@@ -22,6 +22,21 @@ static syntax *node_done(parser *p, syntax *a)
     return a;
 }
 
+static bool token_is(const parser *p, token t, const char *word)
+{
+    size_t length = t.at.to - t.at.from;
+    return t.kind == TOKEN_NAME && length == strlen(word) && memcmp(p->source->bytes + t.at.from, word, length) == 0;
+}
+
+static bool token_is_differential(const parser *p, token t)
+{
+    const char *at = p->source->bytes + t.at.from;
+    return t.kind == TOKEN_NAME && *at == 'd' && lexer_is_name(at + 1, t.at.to - t.at.from - 1);
+}
+
+/* In place of the word that ends an operand: any dx. */
+static const char differential[] = "dx";
+
 /* ---- operands ---- */
 
 static syntax *parse_number(parser *p)
@@ -125,7 +140,7 @@ static bool parse_differential(parser *p, const syntax *body, token opening, syn
     }
     if (p->failed)
         return false;
-    if (body->kind == SYNTAX_NAME && body->as.name[0] == 'd' && lexer_is_name(body->as.name + 1, strlen(body->as.name) - 1))
+    if (body->kind == SYNTAX_NAME && body->as.name[0] == 'd' && lexer_is_name(body->as.name + 1, strlen(body->as.name + 1)))
         return parser_fail(p, body->at, "the integral has no body: write `of 1 %s`", body->as.name);
     if (parser_at_word(p, "d") && parser_peek(p).kind == TOKEN_NAME)
         return parser_fail_here(p, "the `d` and the variable that close an integral are one word, such as `dx`");
@@ -148,7 +163,7 @@ static syntax *parse_line_integral(parser *p, token opening)
         || !parser_expect_word(p, "of", "`of` and the integral's body"))
         return NULL;
     parser_skip_lines(p);
-    a->as.binder->body = parse_sum(p, "`of` needs the integral's body here", "");
+    a->as.binder->body = parse_sum(p, "`of` needs the integral's body here", differential);
     if (a->as.binder->body == NULL || !parse_differential(p, a->as.binder->body, opening, &a->as.binder->variable))
         return NULL;
     return node_done(p, a);
@@ -177,7 +192,7 @@ static syntax *parse_contour(parser *p, token opening)
     if (!parser_expect_word(p, "of", "`to` and another point, or `of` and the integral's body"))
         return NULL;
     parser_skip_lines(p);
-    a->as.contour->body = parse_sum(p, "`of` needs the integral's body here", "");
+    a->as.contour->body = parse_sum(p, "`of` needs the integral's body here", differential);
     if (a->as.contour->body == NULL || !parse_differential(p, a->as.contour->body, opening, &a->as.contour->variable))
         return NULL;
     return node_done(p, a);
@@ -346,7 +361,7 @@ static bool link_is_a_name(const parser *p)
     case TOKEN_OPEN: /* at(x) is a call, `to (x)` more likely lacks what stands before it */
         return next.at.from == p->token.at.to;
     case TOKEN_NAME:
-        return parser_peek_word(p, p->closer);
+        return p->closer == differential ? token_is_differential(p, next) : token_is(p, next, p->closer);
     case TOKEN_END: case TOKEN_LINE_END:
         return p->last_goes_on == false || p->last.kind != TOKEN_NAME; /* not: `from to` at the end of a line */
     default:
@@ -608,12 +623,6 @@ bool parse_conditions(parser *p, syntax_conditions *out, const char *need)
 }
 
 /* ---- bindings ---- */
-
-static bool token_is(const parser *p, token t, const char *word)
-{
-    size_t length = t.at.to - t.at.from;
-    return t.kind == TOKEN_NAME && length == strlen(word) && memcmp(p->source->bytes + t.at.from, word, length) == 0;
-}
 
 /* At a comma: does `NAME =` or `NAME from` come after it? Then it belongs to the list of bindings, not of values. */
 static bool binding_follows(const parser *p)

@@ -13,7 +13,7 @@ void suggestion_init(suggestion *s, const char *wrong)
     s->wrong = wrong;
     s->best = NULL;
     size_t letters = strlen(wrong);
-    s->distance = letters < 3 ? 2 : 2 * ((letters + 2) / 3) + 1; /* below this a name is near */
+    s->distance = letters < 3 ? 2 : 2 * (letters / 3) + 1; /* below this a name is near */
 }
 
 static size_t least(size_t a, size_t b)
