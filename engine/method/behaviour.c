@@ -70,6 +70,16 @@ static int compare(tw_engine *e, const behaviour *f, const behaviour *g)
     return sign;
 }
 
+/* Two powers of which the facts do not say which is the larger: the greater of both bounds them. */
+static void larger_power(tw_engine *e, behaviour *out, const behaviour *g)
+{
+    expr *both[] = {out->a, g->a};
+    out->a = expr_call(e, FUNCTION_MAX, both, 2);
+    out->k = out->k > g->k ? out->k : g->k;
+    out->sharp = false;
+    out->known = out->a != NULL;
+}
+
 static void of_sum(tw_engine *e, behaviour *out, expr *f, expr *x)
 {
     behaviour part;
@@ -78,7 +88,8 @@ static void of_sum(tw_engine *e, behaviour *out, expr *f, expr *x)
     for (uint32_t k = 1; k < f->count && out->known; k++) {
         behaviour_at_infinity(e, &part, f->args[k], x);
         int order = part.known ? compare(e, &part, out) : 2;
-        if (order == 2) out->known = false;
+        if (order == 2 && part.known && expr_is_zero(part.b) && expr_is_zero(out->b)) larger_power(e, out, &part);
+        else if (order == 2) out->known = false;
         else if (order > 0) copy(out, &part);
         else if (order == 0) out->sharp = out->sharp && part.sharp && plainly_positive(e, f, x);
     }

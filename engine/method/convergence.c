@@ -44,7 +44,10 @@ static bool term_bound(tw_engine *e, expr *part, expr *x, fmpq_t low, bool *stri
         fmpq_neg(low, low);
         return true;
     }
-    *strict = (F == FUNCTION_EXP || F == FUNCTION_COSH) && fmpq_sgn(low) > 0 && plain_sign(e, rest->args[0], x) == 1;
+    if (fmpq_sgn(low) < 0 && F == FUNCTION_EXP) /* -2*exp(-u) > -2 */
+        *strict = plain_sign(e, expr_neg(e, rest->args[0]), x) == 1;
+    else
+        *strict = (F == FUNCTION_EXP || F == FUNCTION_COSH) && fmpq_sgn(low) > 0 && plain_sign(e, rest->args[0], x) == 1;
     return *strict;
 }
 
@@ -135,10 +138,35 @@ bool plainly_positive(tw_engine *e, expr *f, expr *x)
     return f && plain_sign(e, f, x) == 1;
 }
 
+/* a + b x on (0, end): at least 0 at both ends, and at one of them more. */
+static bool positive_between_ends(tw_engine *e, expr *f, expr *x, expr *end)
+{
+    expr **a;
+    slong degree;
+    if (expr_polynomial(e, f, x, 1, &a, &degree) != TW_OK) return false;
+    int left = decide_sign(e, a[0]), right = decide_sign(e, degree == 1 ? expr_add(e, a[0], expr_mul(e, a[1], end)) : a[0]);
+    free(a);
+    return (left == 0 || left == 1) && (right == 0 || right == 1) && left + right > 0;
+}
+
+/* All factors of a product, the base of a power. */
+static bool positive_by_parts(tw_engine *e, expr *f, expr *x, expr *end)
+{
+    if (f->kind == EXPR_POWER)
+        return is_real_symbolic(e, f->args[1]) && positive_on_branch(e, f->args[0], x, end) == ANSWER_YES;
+    if (f->kind != EXPR_PRODUCT) return false;
+    for (uint32_t k = 0; k < f->count; k++)
+        if (positive_on_branch(e, f->args[k], x, end) != ANSWER_YES) return false;
+    return true;
+}
+
 answer positive_on_branch(tw_engine *e, expr *f, expr *x, expr *end)
 {
     if (!f) return ANSWER_UNKNOWN;
-    if (plainly_positive(e, f, x)) return ANSWER_YES;
+    if (!expr_has(f, x)) return decide_sign(e, f) == 1 ? ANSWER_YES : ANSWER_UNKNOWN;
+    if (plainly_positive(e, f, x) || (!expr_is_inf(end) && positive_between_ends(e, f, x, end)) ||
+        positive_by_parts(e, f, x, end))
+        return ANSWER_YES;
     expr *zero = expr_int(e, 0);
     return decide_positive_on(e, f, x, zero, end, false);
 }
@@ -270,6 +298,7 @@ static tw_status call_is_smooth(path *p, expr *f)
     expr *last = f->args[f->count - 1];
     if (is_entire_on_reals(f->is.function)) return TW_OK;
     switch (f->is.function) {
+    case FUNCTION_TAN: return keep_from_zero(p, expr_call1(p->e, FUNCTION_COS, last), true);
     case FUNCTION_LOG: case FUNCTION_LNGAMMA: case FUNCTION_GAMMA: case FUNCTION_PSI: case FUNCTION_E1: case FUNCTION_EI:
     case FUNCTION_BESSEL_J: case FUNCTION_BESSEL_Y: case FUNCTION_BESSEL_I: case FUNCTION_BESSEL_K: case FUNCTION_GAMMA_UPPER:
         if (last == p->b->x || positive_on_branch(p->e, last, p->b->x, p->b->end) == ANSWER_YES) return TW_OK;
@@ -299,6 +328,26 @@ static tw_status path_is_smooth(path *p, expr *f)
 
 /* ---- the ends ---- */
 
+/* a > -1, said of the parameter itself where a = c*parameter + d: p < 1 rather than -p > -1. */
+static tw_status require_above(tw_engine *e, condition_list *conditions, expr *a)
+{
+    expr *minus = expr_int(e, -1), *low = minus, *high = a;
+    expr **symbols, **c;
+    slong degree;
+    size_t count = expr_symbols(a, &symbols);
+    if (count == 1 && expr_polynomial(e, a, symbols[0], 1, &c, &degree) == TW_OK) {
+        int sign = degree == 1 ? decide_sign(e, c[1]) : 2;
+        expr *bound = sign == 1 || sign == -1 ? expr_div(e, expr_sub(e, minus, c[0]), c[1]) : NULL;
+        if (bound) {
+            low = sign > 0 ? bound : symbols[0];
+            high = sign > 0 ? symbols[0] : bound;
+        }
+        free(c);
+    }
+    free(symbols);
+    return conditions_require(e, conditions, expr_relation_of(e, RELATION_LESS, low, high));
+}
+
 /* a > -1 for the leading exponents of f at x = 0. words: which place, for the error. */
 static tw_status end_converges(tw_engine *e, reading *r, expr *f, expr *x, expr *place, bool *sure)
 {
@@ -312,7 +361,6 @@ static tw_status end_converges(tw_engine *e, reading *r, expr *f, expr *x, expr 
         *sure = false;
         return TW_OK;
     }
-    expr *one = expr_int(e, 1);
     for (size_t k = 0; k < s.count && status == TW_OK; k++) {
         expr *a = s.strands[k].exponent;
         if (expr_is_number(a) && fmpq_cmp_si(expr_number(a), -1) > 0) continue;
@@ -325,7 +373,7 @@ static tw_status end_converges(tw_engine *e, reading *r, expr *f, expr *x, expr 
             free(where);
             status = TW_ERROR;
         } else {
-            status = conditions_require(e, &r->conditions, expr_relation_of(e, RELATION_LESS, expr_neg(e, one), a));
+            status = require_above(e, &r->conditions, a);
         }
     }
     series_clear(&s);

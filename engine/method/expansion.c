@@ -117,7 +117,6 @@ typedef struct order {
     const contribution *c;
     bool small;
     slong *next;      /* of each lane: the first index not yet taken, zeros skipped */
-    bool undecided;
 } order;
 
 static bool lane_is_out(const order *o, size_t k)
@@ -152,7 +151,13 @@ static int compare_exponents(order *o, size_t i, size_t j)
 static bool comes_before(order *o, size_t i, size_t j)
 {
     int sign = compare_exponents(o, i, j);
-    if (sign == 2) o->undecided = true;
+    if (sign == 2 && o->e->error.kind == ERROR_NONE) {
+        char *a = expr_text(o->e, o->c->lanes[i].first_exponent), *b = expr_text(o->e, o->c->lanes[j].first_exponent);
+        engine_fail(o->e, ERROR_UNDECIDED, "the facts do not order the exponents %s and %s (up to whole steps): declare more of their "
+                                           "parameters with `given`", a ? a : "", b ? b : "");
+        free(a);
+        free(b);
+    }
     if (sign == 1 || sign == -1) return (sign > 0) != o->small;
     return o->c->lanes[i].log_power > o->c->lanes[j].log_power;
 }
@@ -170,7 +175,7 @@ static slong largest_lane(order *o)
 
 tw_status contribution_order(tw_engine *e, const contribution *c, bool small, slong count, term **terms, slong *found)
 {
-    order o = {e, c, small, base_alloc((c->lane_count + 1) * sizeof(slong)), false};
+    order o = {e, c, small, base_alloc((c->lane_count + 1) * sizeof(slong))};
     for (size_t k = 0; k < c->lane_count; k++) {
         o.next[k] = 0;
         skip_zeros(&o, k);
@@ -179,7 +184,6 @@ tw_status contribution_order(tw_engine *e, const contribution *c, bool small, sl
     *found = 0;
     while (*found < count && budget_ok(e)) {
         slong k = largest_lane(&o);
-        if (o.undecided) engine_fail(e, ERROR_UNDECIDED, "the facts do not say which of two terms is the larger");
         if (k < 0 || e->error.kind != ERROR_NONE) break;
         (*terms)[(*found)++] = (term){(size_t)k, o.next[k]++};
         skip_zeros(&o, (size_t)k);

@@ -357,6 +357,7 @@ typedef struct class_of {
     slong lead;                /* z - base */
     fmpq_t number;             /* the rational number of the constant */
     expr *constant;
+    expr *folded;              /* the strand's constant, where it goes into the coefficients; else NULL */
 } class_of;
 
 /* (1/mu)^(k+1), the factor's number, C(k,i) (-K)^i. */
@@ -404,7 +405,7 @@ static void add_term(class_of *c, draft *d, slong n, const fmpq_t weight, expr *
     }
     expr *value = number_times(c->e, coefficient_expr(c->e, &c->s->c, index), weight);
     if (rest) value = expr_mul(c->e, value, rest);
-    bool constants = c->s->log_power > 0 && expr_is_number(c->z) && c->s->c.domain == DOMAIN_RATIONAL;
+    bool constants = (c->s->log_power > 0 || c->folded) && expr_is_number(c->z) && c->s->c.domain == DOMAIN_RATIONAL;
     draft_add_x(c->e, d, n, constants ? expr_expand(c->e, value) : value);
 }
 
@@ -449,6 +450,7 @@ static tw_status class_add_log(class_of *c, slong i)
             rest = rest ? expr_mul(e, rest, value) : value;
         }
         scale_weight(c, weight, &rest, w.i);
+        if (c->folded) rest = rest ? expr_mul(e, rest, c->folded) : c->folded;
         add_term(c, d, offset + n, weight, rest, index);
     }
     if (d->count < offset + n) draft_widen(e, d, offset + n);
@@ -486,11 +488,13 @@ static tw_status class_place(class_of *c)
     return TW_OK;
 }
 
-/* strand constant * Gamma(base) * c^-base, its rational number apart. */
+/* strand constant * Gamma(base) * c^-base, its rational number apart. Beside logarithms the strand's constant (log(2), say) may
+ * meet psi values, so it goes into the coefficients. */
 static tw_status class_constant(class_of *c)
 {
     tw_engine *e = c->e;
-    expr *parts[] = {c->s->constant, expr_call1(e, FUNCTION_GAMMA, c->base), expr_pow(e, c->k->constant, expr_neg(e, c->base))};
+    if (c->folded && expr_is_one(c->folded)) c->folded = NULL;
+    expr *parts[] = {c->folded ? expr_int(e, 1) : c->s->constant, expr_call1(e, FUNCTION_GAMMA, c->base), expr_pow(e, c->k->constant, expr_neg(e, c->base))};
     if (!parts[1] || !parts[2]) return TW_ERROR;
     expr *constant = expr_product(e, parts, 3);
     if (!constant) return TW_ERROR;
@@ -509,6 +513,8 @@ static tw_status class_add(class_of *c)
 
 tw_status drafts_add(tw_engine *e, drafts *d, const series *q, const kernel *k)
 {
+    bool logs = false;
+    for (size_t s = 0; s < q->count; s++) logs = logs || q->strands[s].log_power > 0;
     for (size_t s = 0; s < q->count; s++) {
         const strand *one = &q->strands[s];
         fmpq_t forward, unit;
@@ -521,7 +527,8 @@ tw_status drafts_add(tw_engine *e, drafts *d, const series *q, const kernel *k)
         slong period = fmpz_get_si(fmpq_denref(forward)), steps = fmpz_get_si(fmpq_numref(forward));
         fmpq_clear(forward);
         for (slong j = 0; j < period && j < one->c.count; j++) {
-            class_of c = {e, d, one, k, j, period, steps, NULL, NULL, 0, {{0}}, NULL};
+            class_of c = {.e = e, .to = d, .s = one, .k = k, .first = j, .period = period, .step = steps};
+            c.folded = logs ? one->constant : NULL;
             if (class_add(&c) != TW_OK) return TW_ERROR;
         }
     }

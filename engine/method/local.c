@@ -78,11 +78,12 @@ tw_status local_expand_far_ends(tw_engine *e, expansion *out, const reading *r, 
         char *place = expr_text(e, r->far_places[k]);
         if (!place) return TW_ERROR;
         tw_status status = add_far_end(e, out, r, k, terms, name);
-        bool left_out = status != TW_OK && e->error.kind == ERROR_UNSUITABLE;
+        bool left_out = status != TW_OK && (e->error.kind == ERROR_UNSUITABLE || e->error.kind == ERROR_VALUE);
         text words;
         text_init(&words);
         text_addf(&words, "%s = %s: %s", r->original_variable->is.name, place,
-                  left_out ? e->error.words : "exponentially small, listed as a contribution of its own");
+                  left_out ? (e->error.kind == ERROR_VALUE ? "the exponent has no finite value there" : e->error.words)
+                           : "exponentially small, listed as a contribution of its own");
         free(place);
         if (status == TW_OK || left_out) {
             step *s = derivation_add(&out->derivation, left_out ? "leave out the far end" : "add the far end", "DLMF 2.3.4");

@@ -32,9 +32,31 @@ static bool split_shift(tw_engine *e, const reading *r, const branch *b, expr **
     return *shift && *core;
 }
 
-/* The series of core ends; into *out (initialised). */
+/* x^a, log(x)^k, anything free of x, and products of these. */
+static bool is_moment_term(expr *t, expr *x)
+{
+    expr *const *factors;
+    size_t count = expr_factors(&t, &factors);
+    for (size_t k = 0; k < count; k++) {
+        expr *f = factors[k];
+        if (!expr_has(f, x) || f == x) continue;
+        bool power = f->kind == EXPR_POWER && !expr_has(f->args[1], x);
+        expr *base = power ? f->args[0] : f;
+        if (base == x || (expr_is_call(base, FUNCTION_LOG) && base->args[0] == x)) continue;
+        return false;
+    }
+    return true;
+}
+
+/* core is a finite sum of such terms, and so is its series; into *out (initialised). */
 static bool ends(tw_engine *e, series *out, expr *core, expr *x)
 {
+    core = expr_expand(e, core);
+    if (!core) return false;
+    expr *const *terms;
+    size_t count = expr_terms(&core, &terms);
+    for (size_t k = 0; k < count; k++)
+        if (!is_moment_term(terms[k], x)) return false;
     bool good = series_at_zero(e, out, core, x, LENGTH_LIMIT, NULL, NULL) == TW_OK && out->terminates;
     if (e->error.kind == ERROR_UNSUITABLE || e->error.kind == ERROR_UNDECIDED || e->error.kind == ERROR_VALUE) engine_forgive(e);
     return good;

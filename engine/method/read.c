@@ -266,6 +266,38 @@ static expr *without_abs(tw_engine *e, expr *f, expr *x, expr *end)
     return rebuild(e, f, x, end);
 }
 
+/* A part of f that has a kink or a jump where nobody said it has none; NULL when there is none. */
+static expr *find_kink(expr *f, expr *x)
+{
+    if (!expr_has(f, x)) return NULL;
+    if (f->kind == EXPR_PIECEWISE) return f;
+    if (f->kind == EXPR_CALL) {
+        switch (f->is.function) {
+        case FUNCTION_ABS: case FUNCTION_SIGN: case FUNCTION_MIN: case FUNCTION_MAX: case FUNCTION_RE: case FUNCTION_IM:
+        case FUNCTION_CONJ: case FUNCTION_ARG:
+            return f;
+        default: break;
+        }
+    }
+    for (uint32_t k = 0; k < f->count; k++) {
+        expr *found = find_kink(f->args[k], x);
+        if (found) return found;
+    }
+    return NULL;
+}
+
+/* The methods take the amplitude for analytic inside the path: an expansion at its end knows nothing of what a kink adds. */
+static tw_status refuse_kinks(tw_engine *e, expr *q, expr *y)
+{
+    expr *kink = find_kink(q, y);
+    if (!kink) return TW_OK;
+    char *words = expr_text(e, kink);
+    engine_fail(e, ERROR_UNSUITABLE, "the amplitude holds %s (%s measured from the critical point), which is not analytic on the whole "
+                                     "path: split the integral where it changes and expand the parts", words ? words : "", y->is.name);
+    free(words);
+    return TW_ERROR;
+}
+
 /* The branch that starts at the least point and runs up (sign 1) or down (-1) to `far`. */
 static tw_status add_branch(frame *f, int sign, expr *far)
 {
@@ -286,7 +318,7 @@ static tw_status add_branch(frame *f, int sign, expr *far)
         p = normal_under_facts(e, expr_expand(e, p), &y, 1);
         f->p.level = level;
     }
-    if (!p || !q) return TW_ERROR;
+    if (!p || !q || refuse_kinks(e, q, y) != TW_OK) return TW_ERROR;
     r->far_places[r->local.count] = endless ? NULL : original_place(f, far);
     local_form_add(&r->local, y, end, p, q);
     return TW_OK;
