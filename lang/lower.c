@@ -249,28 +249,36 @@ static expr *lower_call(lowering *l, const syntax *a)
 
 /* ---- operators ---- */
 
+/* Pushes part k of a sum or product. A factor's minus sign becomes a factor of its own, so that -(x + y)*z is not taken for
+ * (-x - y)*z. */
+static bool push_part(lowering *l, const syntax *a, size_t k)
+{
+    const syntax *part = a->as.list.parts[k];
+    while (a->kind == SYNTAX_PRODUCT && part->kind == SYNTAX_NEGATE) {
+        push(l, expr_int(l->engine, -1));
+        part = part->as.operand;
+    }
+    expr *item = lower(l, part);
+    if (a->as.list.signs[k] == '-')
+        item = placed(l, expr_neg(l->engine, item), part->at);
+    else if (a->as.list.signs[k] == '/')
+        item = placed(l, expr_pow(l->engine, item, expr_int(l->engine, -1)), part->at);
+    push(l, item);
+    return item != NULL;
+}
+
 static expr *lower_list(lowering *l, const syntax *a)
 {
     size_t base = l->pending_count;
-    expr *minus_one = expr_int(l->engine, -1);
-    for (size_t k = 0; k < a->as.list.count; k++) {
-        const syntax *part = a->as.list.parts[k];
-        expr *item = lower(l, part);
-        if (a->as.list.signs[k] == '-')
-            item = placed(l, expr_neg(l->engine, item), part->at);
-        else if (a->as.list.signs[k] == '/')
-            item = placed(l, expr_pow(l->engine, item, minus_one), part->at);
-        if (item == NULL) {
-            l->pending_count = base;
-            return NULL;
-        }
-        push(l, item);
-    }
+    bool sound = true;
+    for (size_t k = 0; sound && k < a->as.list.count; k++)
+        sound = push_part(l, a, k);
+    expr *const *parts = l->pending + base;
     size_t n = l->pending_count - base;
-    expr *result = a->kind == SYNTAX_SUM ? expr_sum(l->engine, l->pending + base, n)
-                                         : expr_product(l->engine, l->pending + base, n);
     l->pending_count = base;
-    return result;
+    if (!sound)
+        return NULL;
+    return a->kind == SYNTAX_SUM ? expr_sum(l->engine, parts, n) : expr_product(l->engine, parts, n);
 }
 
 /* ---- binders ---- */

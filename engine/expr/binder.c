@@ -224,11 +224,20 @@ static answer_of_numbers relation_of_numbers(expr *relation)
     return holds ? NUMBERS_YES : NUMBERS_NO;
 }
 
+/* What holds otherwise may be piecewise again: its cases follow. */
 static expr *piecewise_flat(tw_engine *e, expr *const *args, size_t n)
 {
+    expr *otherwise = args[n - 1];
+    if (otherwise->kind == EXPR_PIECEWISE) {
+        expr **all = engine_scratch(e, n - 1 + otherwise->count, sizeof *all);
+        memcpy(all, args, (n - 1) * sizeof *all);
+        memcpy(all + n - 1, otherwise->args, otherwise->count * sizeof *all);
+        n += otherwise->count - 1;
+        args = all;
+        otherwise = args[n - 1];
+    }
     expr **kept = engine_scratch(e, n, sizeof *kept);
     size_t count = 0;
-    expr *otherwise = args[n - 1];
     for (size_t k = 0; k + 1 < n; k += 2) {
         answer_of_numbers holds = relation_of_numbers(args[k]);
         if (holds == NUMBERS_YES) {

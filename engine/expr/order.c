@@ -86,7 +86,7 @@ int expr_order(expr *a, expr *b)
     switch (a->kind) {
     case EXPR_CONSTANT: return sign_of((int64_t)a->is.constant - (int64_t)b->is.constant);
     case EXPR_SYMBOL: return order_symbols(a, b);
-    case EXPR_BOUND: return sign_of((int64_t)a->is.index - (int64_t)b->is.index);
+    case EXPR_BOUND: return sign_of((int64_t)b->is.index - (int64_t)a->is.index); /* outer ones first */
     case EXPR_CALL:
         if (a->is.function != b->is.function)
             return sign_of((int64_t)a->is.function - (int64_t)b->is.function);

@@ -281,6 +281,17 @@ static size_t count_items(const layout *l, bool below)
     return count;
 }
 
+/* Would a minus in front meet a sum at once? `-(a + b)*c` reads as (-a - b)*c, another node. */
+static bool begins_with_sum(const layout *l)
+{
+    if (!fmpz_is_one(fmpq_numref(l->number)))
+        return false;
+    for (size_t k = 0; k < l->count; k++)
+        if (!l->items[k].below)
+            return !l->items[k].exponent && l->items[k].base->kind == EXPR_SUM;
+    return false;
+}
+
 /* The layout with a positive coefficient: 3*x*y/(2*(1 + z)), or 9/2*s^-3. */
 static void print_layout(printer *p, layout *l)
 {
@@ -324,11 +335,16 @@ static void print_product(printer *p, expr *a, bool negate, int level)
     const bool minus = fmpq_sgn(l.number) < 0;
     const int own = minus ? LEVEL_SUM : LEVEL_PRODUCT;
     fmpq_abs(l.number, l.number);
+    const bool meets_sum = minus && begins_with_sum(&l);
+    const bool apart = meets_sum && (l.bar || fmpz_is_one(fmpq_denref(l.number)));
+    l.series = l.series || meets_sum; /* -1/2*(a + b) */
     if (own < level)
         text_add_char(p->out, '(');
     if (minus)
-        text_add_char(p->out, '-');
+        text_add(p->out, apart ? "-(" : "-");
     print_layout(p, &l);
+    if (apart)
+        text_add_char(p->out, ')');
     if (own < level)
         text_add_char(p->out, ')');
     for (size_t k = 0; k < l.count; k++)
@@ -381,7 +397,7 @@ static placed_term term_place(expr *term, size_t place)
     placed_term t = {.term = term, .place = place};
     for (size_t k = 0; k < n; k++) {
         expr *base = factors[k]->kind == EXPR_POWER ? factors[k]->args[0] : factors[k];
-        if (base->kind != EXPR_SYMBOL && base->kind != EXPR_BOUND)
+        if (base->kind != EXPR_SYMBOL && base->kind != EXPR_BOUND && base->kind != EXPR_SUM)
             continue;
         const double power = factors[k]->kind == EXPR_POWER ? exponent_value(factors[k]->args[1]) : 1;
         if (k == (n > 1 && factors[0]->kind == EXPR_NUMBER)) {

@@ -26,20 +26,20 @@ typedef struct plain_env {
     acb_struct values[16];
 } plain_env;
 
-static void plain_env_init(plain_env *v)
+static inline void plain_env_init(plain_env *v)
 {
     v->count = 0;
     for (size_t k = 0; k < 16; k++)
         acb_init(v->values + k);
 }
 
-static void plain_env_clear(plain_env *v)
+static inline void plain_env_clear(plain_env *v)
 {
     for (size_t k = 0; k < 16; k++)
         acb_clear(v->values + k);
 }
 
-static void plain_bind(plain_env *v, expr *symbol, const acb_t value)
+static inline void plain_bind(plain_env *v, expr *symbol, const acb_t value)
 {
     size_t k = 0;
     while (k < v->count && v->symbols[k] != symbol)
@@ -51,9 +51,9 @@ static void plain_bind(plain_env *v, expr *symbol, const acb_t value)
         v->count++;
 }
 
-static void plain_eval(tw_engine *e, acb_t out, expr *a, plain_env *v);
+static inline void plain_eval(tw_engine *e, acb_t out, expr *a, plain_env *v);
 
-static void plain_call(tw_engine *e, acb_t out, expr *a, plain_env *v)
+static inline void plain_call(tw_engine *e, acb_t out, expr *a, plain_env *v)
 {
     const slong p = PLAIN_BITS;
     acb_t z, w;
@@ -116,7 +116,7 @@ static void plain_call(tw_engine *e, acb_t out, expr *a, plain_env *v)
     acb_clear(w);
 }
 
-static void plain_binder(tw_engine *e, acb_t out, expr *a, plain_env *v)
+static inline void plain_binder(tw_engine *e, acb_t out, expr *a, plain_env *v)
 {
     const slong p = PLAIN_BITS;
     expr *t = expr_fresh(e, "t");
@@ -166,7 +166,7 @@ static void plain_binder(tw_engine *e, acb_t out, expr *a, plain_env *v)
     arb_clear(weight);
 }
 
-static bool plain_holds(tw_engine *e, expr *relation, plain_env *v)
+static inline bool plain_holds(tw_engine *e, expr *relation, plain_env *v)
 {
     acb_t left, right;
     acb_init(left);
@@ -185,7 +185,7 @@ static bool plain_holds(tw_engine *e, expr *relation, plain_env *v)
     }
 }
 
-static void plain_piecewise(tw_engine *e, acb_t out, expr *a, plain_env *v)
+static inline void plain_piecewise(tw_engine *e, acb_t out, expr *a, plain_env *v)
 {
     for (size_t k = 0; k + 1 < a->count; k += 2)
         if (plain_holds(e, a->args[k], v)) {
@@ -195,7 +195,7 @@ static void plain_piecewise(tw_engine *e, acb_t out, expr *a, plain_env *v)
     plain_eval(e, out, a->args[a->count - 1], v);
 }
 
-static void plain_eval(tw_engine *e, acb_t out, expr *a, plain_env *v)
+static inline void plain_eval(tw_engine *e, acb_t out, expr *a, plain_env *v)
 {
     const slong p = PLAIN_BITS;
     acb_t part, total;
@@ -246,13 +246,13 @@ static void plain_eval(tw_engine *e, acb_t out, expr *a, plain_env *v)
 }
 
 /* Is the ball known well enough to be compared? */
-static bool plain_is_sharp(const acb_t z)
+static inline bool plain_is_sharp(const acb_t z)
 {
     return acb_is_finite(z) && acb_rel_accuracy_bits(z) > 60;
 }
 
 /* Distance relative to 1 + |z|, as a double. */
-static double plain_distance(const acb_t z, const acb_t w)
+static inline double plain_distance(const acb_t z, const acb_t w)
 {
     acb_t difference;
     arb_t size;
@@ -272,7 +272,7 @@ static double plain_distance(const acb_t z, const acb_t w)
 
 static uint64_t plain_state;
 
-static void plain_seed(const char *program)
+static inline void plain_seed(const char *program)
 {
     const char *given = getenv("TW_SEED");
     plain_state = given ? strtoull(given, NULL, 10) : (uint64_t)time(NULL) * 2654435761u;
@@ -280,13 +280,13 @@ static void plain_seed(const char *program)
     plain_state |= 1;
 }
 
-static uint64_t plain_random(uint64_t below)
+static inline uint64_t plain_random(uint64_t below)
 {
     plain_state = plain_state * 6364136223846793005u + 1442695040888963407u;
     return (plain_state >> 33) % below;
 }
 
-static double plain_uniform(double from, double to)
+static inline double plain_uniform(double from, double to)
 {
     return from + (to - from) * (double)plain_random(1u << 30) / (double)(1u << 30);
 }

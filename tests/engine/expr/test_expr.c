@@ -240,10 +240,10 @@ static void nested_binders_shift(void **state)
     expr *t = expr_symbol(e, "t"), *u = expr_symbol(e, "u");
     expr *inner = expr_integral(e, u, n(0), t, expr_mul(e, t, expr_pow(e, u, n(2))));
     expr *outer = expr_integral(e, t, n(0), y, inner);
-    reads(outer, "integral from 0 to y of integral from 0 to t of u^2*t du dt");
+    reads(outer, "integral from 0 to y of integral from 0 to t of t*u^2 du dt");
     expr *summed = expr_summation(e, y, n(1), n(3), outer);
-    reads(summed, "sum from y = 1 to 3 of integral from 0 to y of integral from 0 to t of u^2*t du dt");
-    reads(expr_open(e, summed, n(2)), "integral from 0 to 2 of integral from 0 to t of u^2*t du dt");
+    reads(summed, "sum from y = 1 to 3 of integral from 0 to y of integral from 0 to t of t*u^2 du dt");
+    reads(expr_open(e, summed, n(2)), "integral from 0 to 2 of integral from 0 to t of t*u^2 du dt");
     reads(expr_open(e, expr_open(e, summed, x), x), "integral from 0 to x of x*u^2 du");
     assert_ptr_equal(expr_open(e, outer, t), inner);
 }
