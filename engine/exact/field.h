@@ -13,6 +13,8 @@ typedef struct generator {
     bool closed;    /* no symbols inside */
     slong degree;   /* atom^degree is a polynomial in earlier generators; 0: no relation */
     fmpz_mpoly_t relation; /* atom^degree - that polynomial */
+    bool valued;
+    acb_t value;    /* its ball at a sample of the parameters, once `valued` */
 } generator;
 
 typedef struct field {

@@ -7,6 +7,7 @@
 #include <stdlib.h>
 #include <string.h>
 
+#include "engine/ball/tape.h"
 #include "engine/exact/values.h"
 
 static slong variable_of(const field *f, slong k) { return f->room - 1 - k; } /* of generator k */
@@ -22,8 +23,10 @@ void field_init(field *f, tw_engine *e, slong room)
 
 void field_clear(field *f)
 {
-    for (slong k = 0; k < f->count; k++)
+    for (slong k = 0; k < f->count; k++) {
         fmpz_mpoly_clear(f->generators[k].relation, f->ctx);
+        acb_clear(f->generators[k].value);
+    }
     free(f->generators);
     fmpz_mpoly_ctx_clear(f->ctx);
 }
@@ -107,6 +110,45 @@ static bool adjoint_of(field *f, fmpz_mpoly_t adjoint, const fmpz_mpoly_t den, s
     return fits;
 }
 
+enum { SAMPLE_BITS = 128 };
+
+static acb_srcptr generator_value(field *f, slong k)
+{
+    generator *g = f->generators + k;
+    if (!g->valued) {
+        expr *at = value_sample(f->e, g->atom, 0);
+        if (at == NULL || ball_value(f->e, g->value, at, SAMPLE_BITS) != TW_OK) {
+            engine_forgive(f->e);
+            acb_indeterminate(g->value);
+        }
+        g->valued = true;
+    }
+    return g->value;
+}
+
+/* Is p proved nonzero, by its ball at a sample? Relations that the field does not know could make a polynomial vanish. */
+static bool polynomial_is_nonzero(field *f, const fmpz_mpoly_t p)
+{
+    acb_ptr values = _acb_vec_init(f->room);
+    acb_t ball;
+    acb_init(ball);
+    int *used = base_alloc((size_t)f->room * sizeof *used);
+    element whole;
+    element_init(f, &whole);
+    fmpz_mpoly_set(fmpz_mpoly_q_numref(&whole), p, f->ctx);
+    fmpz_mpoly_q_used_vars(used, &whole, f->ctx);
+    for (slong k = 0; k < f->count; k++)
+        if (used[variable_of(f, k)])
+            acb_set(values + variable_of(f, k), generator_value(f, k));
+    fmpz_mpoly_q_evaluate_acb(ball, &whole, values, SAMPLE_BITS, f->ctx);
+    bool nonzero = acb_is_finite(ball) && !acb_contains_zero(ball);
+    element_clear(f, &whole);
+    free(used);
+    acb_clear(ball);
+    _acb_vec_clear(values, f->room);
+    return nonzero;
+}
+
 /* Frees denominators of algebraic generators: else common factors that a relation hides pile up (measured: degree 119 in
  * log(2) in the fourth coefficient of tanh(log(x - 2)^(-2/3)), 2 with it). */
 static void rationalise(field *f, element *a)
@@ -115,11 +157,11 @@ static void rationalise(field *f, element *a)
     fmpz_mpoly_init(adjoint, f->ctx), fmpz_mpoly_init(den, f->ctx);
     for (slong k = f->count - 1; k >= 0; k--) {
         if (f->generators[k].degree == 0 || fmpz_mpoly_degree_si(fmpz_mpoly_q_denref(a), variable_of(f, k), f->ctx) == 0 ||
-            !adjoint_of(f, adjoint, fmpz_mpoly_q_denref(a), k))
+            !adjoint_of(f, adjoint, fmpz_mpoly_q_denref(a), k) || !polynomial_is_nonzero(f, adjoint))
             continue;
         fmpz_mpoly_mul(den, fmpz_mpoly_q_denref(a), adjoint, f->ctx);
         reduce_polynomial(f, den);
-        if (fmpz_mpoly_is_zero(den, f->ctx)) /* relations that are not independent: leave it */
+        if (fmpz_mpoly_is_zero(den, f->ctx)) /* relations that are not independent: left as it is */
             continue;
         fmpz_mpoly_mul(fmpz_mpoly_q_numref(a), fmpz_mpoly_q_numref(a), adjoint, f->ctx);
         reduce_polynomial(f, fmpz_mpoly_q_numref(a));
@@ -228,6 +270,8 @@ static tw_status generator_find(field *f, element *out, expr *atom, slong degree
         g->parameter = atom->kind == EXPR_SYMBOL;
         g->closed = expr_is_closed_value(atom);
         g->degree = degree;
+        g->valued = false;
+        acb_init(g->value);
         fmpz_mpoly_init(g->relation, f->ctx);
         if (degree > 0) {
             fmpz_mpoly_gen(g->relation, variable_of(f, k), f->ctx);

@@ -410,7 +410,7 @@ tw_status pieces_from_tail(work *w, pieces *g, expr *value, expr *exponent, cons
     if (n == 1)
         terms = &value;
     pieces_clear(w, g);
-    g->real = real;
+    g->real = real && value_is_real(w->e, exponent);
     if (expr_is_zero(value))
         return TW_OK;
     for (size_t k = 0; k < n; k++) {

@@ -327,7 +327,9 @@ static bool has_infinity(expr *f)
 static tw_status evaluate_value(work *w, pieces *out, expr *f)
 {
     work_blame(w, f);
-    return has_infinity(f) ? work_refuse(w, "is not finite") : pieces_from_value(w, out, f);
+    if (has_infinity(f) || value_is_singular(w->e, f))
+        return work_refuse(w, "is not finite");
+    return pieces_from_value(w, out, f);
 }
 
 static tw_status evaluate_variable(work *w, pieces *out)

@@ -505,6 +505,51 @@ static tw_status compose_beta(work *w, pieces *out, expr *call)
     return f == NULL ? TW_ERROR : evaluate_pieces(w, out, f);
 }
 
+/* A second-order linear equation at an ordinary point c: fills y[2..n-1] of the Taylor coefficients from y[0], y[1]. */
+typedef void (*taylor_rule)(work *w, element *y, slong n, const element *c, const element *nu2, int sign);
+
+/* out = y(c) * (solution 1, 0) + y'(c) * (solution 0, 1), each in powers of the argument's small part. nu may be NULL. */
+static tw_status push_solutions(work *w, pieces *out, const argument *a, expr *y, expr *slope, expr *nu, taylor_rule rule,
+                                int sign)
+{
+    field *f = &w->f;
+    expr *initial[2] = {y, slope};
+    element c, nu2;
+    pieces part;
+    element_init(f, &c), element_init(f, &nu2), pieces_init(&part);
+    pieces_clear(w, out);
+    tw_status s = field_from_expr(f, &c, a->value);
+    if (s == TW_OK && nu != NULL)
+        s = field_from_expr(f, &nu2, nu);
+    if (s == TW_OK)
+        field_mul(f, &nu2, &nu2, &nu2);
+    for (int k = 0; k < 2 && s == TW_OK; k++) {
+        tail outer;
+        tail_init(&outer);
+        tail_promote(f, &outer);
+        elements_free(f, outer.m, outer.count);
+        outer.count = outer.known = outer_length(w) + 1;
+        outer.gap = 1;
+        outer.m = elements_new(f, outer.count);
+        fmpz_mpoly_q_one(outer.m + k, f->ctx);
+        rule(w, outer.m, outer.count, &c, &nu2, sign);
+        tail_demote(f, &outer);
+        s = push_outer(w, &part, a, initial[k], &outer);
+        if (s == TW_OK)
+            s = pieces_add(w, out, out, &part, 1);
+        tail_clear(f, &outer);
+    }
+    element_clear(f, &c), element_clear(f, &nu2), pieces_clear(w, &part);
+    return s;
+}
+
+/* The derivative in z of f(z), at a value. */
+static expr *slope_at(tw_engine *e, expr *f, expr *z, expr *value)
+{
+    expr *slope = f == NULL ? NULL : expr_derivative(e, f, z);
+    return slope == NULL ? NULL : expr_substitute(e, slope, z, value);
+}
+
 /* ---- Airy functions ---- */
 
 /* The two power series of DLMF 9.4.1 and 9.4.3: f (start 0) and g (start 1). */
@@ -534,6 +579,29 @@ static expr *airy_initial(tw_engine *e, bool bi, slong derivative)
     return !bi && derivative ? expr_neg(e, value) : value;
 }
 
+/* y'' = z y: y_(k+2) (k + 2)(k + 1) = c y_k + y_(k-1). */
+static void airy_taylor(work *w, element *y, slong n, const element *c, const element *nu2, int sign)
+{
+    field *f = &w->f;
+    (void)nu2, (void)sign;
+    for (slong k = 0; k + 2 < n && budget_ok(w->e); k++) {
+        field_mul(f, y + k + 2, c, y + k);
+        if (k > 0)
+            fmpz_mpoly_q_add(y + k + 2, y + k + 2, y + k - 1, f->ctx);
+        fmpz_mpoly_q_div_si(y + k + 2, y + k + 2, (k + 2) * (k + 1), f->ctx);
+    }
+}
+
+static tw_status airy_at_point(work *w, pieces *out, function_id id, const argument *a)
+{
+    tw_engine *e = w->e;
+    expr *z = expr_fresh(e, "z");
+    if (!value_is_real(e, a->value)) /* Ai' has a name along the real axis only */
+        return work_refuse(w, "has an argument that is not known to be real");
+    return push_solutions(w, out, a, expr_call1(e, id, a->value), slope_at(e, expr_call1(e, id, z), z, a->value), NULL,
+                          airy_taylor, 0);
+}
+
 static tw_status compose_airy(work *w, pieces *out, expr *call, const pieces *g)
 {
     argument a;
@@ -543,16 +611,16 @@ static tw_status compose_airy(work *w, pieces *out, expr *call, const pieces *g)
     bool bi = call->is.function == FUNCTION_BI;
     tw_status s = argument_split(w, &a, g);
     if (s == TW_OK && !expr_is_zero(a.value))
-        s = work_refuse(w, "is expanded at 0 only");
-    if (s == TW_OK) {
+        s = airy_at_point(w, out, call->is.function, &a);
+    else if (s == TW_OK) {
         outer_airy(w, &f, 0);
         outer_airy(w, &h, 1);
         s = push_outer(w, out, &a, airy_initial(w->e, bi, 0), &f);
+        if (s == TW_OK)
+            s = push_outer(w, &second, &a, airy_initial(w->e, bi, 1), &h);
+        if (s == TW_OK)
+            s = pieces_add(w, out, out, &second, 1);
     }
-    if (s == TW_OK)
-        s = push_outer(w, &second, &a, airy_initial(w->e, bi, 1), &h);
-    if (s == TW_OK)
-        s = pieces_add(w, out, out, &second, 1);
     argument_clear(w, &a), tail_clear(&w->f, &f), tail_clear(&w->f, &h), pieces_clear(w, &second);
     return s;
 }
@@ -758,23 +826,18 @@ static tw_status bessel_kind_at_zero(work *w, pieces *out, function_id id, expr 
     return s;
 }
 
-/* Taylor coefficients at c of the solution of z^2 y'' + z y' + (sign z^2 - nu^2) y = 0 (DLMF 10.2.1, 10.25.1) with
- * y(c) = 1 - start, y'(c) = start. */
-static void outer_bessel_taylor(work *w, tail *outer, const element *c, const element *nu2, int sign, slong start)
+/* z^2 y'' + z y' + (sign z^2 - nu^2) y = 0 (DLMF 10.2.1, 10.25.1). */
+static void bessel_taylor(work *w, element *y, slong n, const element *c, const element *nu2, int sign)
 {
     field *f = &w->f;
-    slong n = outer_length(w) + 1;
-    element *y = elements_new(f, n), t, c2, den;
+    element t, c2, den;
     element_init(f, &t), element_init(f, &c2), element_init(f, &den);
     field_mul(f, &c2, c, c);
-    fmpz_mpoly_q_one(y + start, f->ctx);
     for (slong k = 0; k + 2 < n && budget_ok(w->e); k++) {
         element *next = y + k + 2;
-        /* -(k + 1)(2 k + 1) c y_(k+1) */
-        fmpz_mpoly_q_mul_si(&t, c, -(k + 1) * (2 * k + 1), f->ctx);
+        fmpz_mpoly_q_mul_si(&t, c, -(k + 1) * (2 * k + 1), f->ctx); /* -(k + 1)(2 k + 1) c y_(k+1) */
         field_addmul(f, next, &t, y + k + 1);
-        /* -(k^2 + sign c^2 - nu^2) y_k */
-        fmpz_mpoly_q_mul_si(&t, &c2, -sign, f->ctx);
+        fmpz_mpoly_q_mul_si(&t, &c2, -sign, f->ctx); /* -(k^2 + sign c^2 - nu^2) y_k */
         fmpz_mpoly_q_add(&t, &t, nu2, f->ctx);
         fmpz_mpoly_q_sub_si(&t, &t, k * k, f->ctx);
         field_addmul(f, next, &t, y + k);
@@ -789,47 +852,18 @@ static void outer_bessel_taylor(work *w, tail *outer, const element *c, const el
         fmpz_mpoly_q_mul_si(&den, &c2, (k + 2) * (k + 1), f->ctx);
         field_div(f, next, next, &den);
     }
-    tail_promote(f, outer);
-    elements_free(f, outer->m, outer->count);
-    outer->m = y;
-    outer->count = n;
-    outer->known = n;
-    outer->gap = 1;
-    tail_demote(f, outer);
     element_clear(f, &t), element_clear(f, &c2), element_clear(f, &den);
 }
 
 static tw_status bessel_at_point(work *w, pieces *out, function_id id, expr *nu, const argument *a)
 {
     tw_engine *e = w->e;
-    field *f = &w->f;
     int sign = id == FUNCTION_BESSEL_J || id == FUNCTION_BESSEL_Y ? 1 : -1;
     if (!value_off_cut(e, a->value))
         return work_refuse(w, "has an argument that is not known to be off its branch cut");
     expr *z = expr_fresh(e, "z");
-    expr *slope = expr_derivative(e, bessel(e, id, nu, z), z);
-    expr *initial[2] = {bessel(e, id, nu, a->value), slope == NULL ? NULL : expr_substitute(e, slope, z, a->value)};
-    element c, nu2;
-    element_init(f, &c), element_init(f, &nu2);
-    tw_status s = field_from_expr(f, &c, a->value);
-    if (s == TW_OK)
-        s = field_from_expr(f, &nu2, nu);
-    if (s == TW_OK)
-        field_mul(f, &nu2, &nu2, &nu2);
-    pieces part;
-    pieces_init(&part);
-    for (int k = 0; k < 2 && s == TW_OK; k++) {
-        tail outer;
-        tail_init(&outer);
-        outer_bessel_taylor(w, &outer, &c, &nu2, sign, k);
-        s = initial[k] == NULL ? TW_ERROR : push_outer(w, &part, a, initial[k], &outer);
-        if (s == TW_OK)
-            s = pieces_add(w, out, out, &part, 1);
-        tail_clear(f, &outer);
-    }
-    pieces_clear(w, &part);
-    element_clear(f, &c), element_clear(f, &nu2);
-    return s;
+    return push_solutions(w, out, a, bessel(e, id, nu, a->value), slope_at(e, bessel(e, id, nu, z), z, a->value), nu,
+                          bessel_taylor, sign);
 }
 
 static tw_status compose_bessel(work *w, pieces *out, expr *call, const pieces *args)

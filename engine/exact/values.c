@@ -54,18 +54,22 @@ static bool exact_power(ca_t out, expr *a, ca_ctx_t ctx)
 
 static bool exact_call(ca_t out, expr *a, ca_ctx_t ctx)
 {
-    if (a->count != 1 || !to_exact(out, a->args[0], ctx))
-        return false;
-    switch (a->is.function) {
-    case FUNCTION_EXP: ca_exp(out, out, ctx); return true;
-    case FUNCTION_LOG: ca_log(out, out, ctx); return true;
-    case FUNCTION_SIN: ca_sin_cos(out, NULL, out, ctx); return true;
-    case FUNCTION_COS: ca_sin_cos(NULL, out, out, ctx); return true;
-    case FUNCTION_ATAN: ca_atan(out, out, ctx); return true;
-    case FUNCTION_GAMMA: ca_gamma(out, out, ctx); return true;
-    case FUNCTION_ERF: ca_erf(out, out, ctx); return true;
-    default: return false;
-    }
+    ca_t z, other;
+    ca_init(z, ctx), ca_init(other, ctx);
+    bool ok = a->count == 1 && to_exact(z, a->args[0], ctx);
+    if (ok)
+        switch (a->is.function) {
+        case FUNCTION_EXP: ca_exp(out, z, ctx); break;
+        case FUNCTION_LOG: ca_log(out, z, ctx); break;
+        case FUNCTION_SIN: ca_sin_cos(out, other, z, ctx); break;
+        case FUNCTION_COS: ca_sin_cos(other, out, z, ctx); break;
+        case FUNCTION_ATAN: ca_atan(out, z, ctx); break;
+        case FUNCTION_GAMMA: ca_gamma(out, z, ctx); break;
+        case FUNCTION_ERF: ca_erf(out, z, ctx); break;
+        default: ok = false;
+        }
+    ca_clear(z, ctx), ca_clear(other, ctx);
+    return ok;
 }
 
 static bool to_exact(ca_t out, expr *a, ca_ctx_t ctx)
@@ -129,13 +133,14 @@ static int ball_excludes_zero(tw_engine *e, acb_t out, expr *a, slong most)
     return result;
 }
 
-/* A rational inside what the facts say of a symbol, the `trial`-th. */
-static expr *sample(tw_engine *e, expr *symbol, slong index, slong trial)
+/* A rational inside what the facts say of a symbol, the `trial`-th; the same for every expression that holds the symbol. */
+static expr *sample(tw_engine *e, expr *symbol, slong trial)
 {
+    slong index = (slong)(symbol->serial % 9973);
     fmpq_t low, high;
     fmpq_init(low), fmpq_init(high);
     int known = facts_interval(e, symbol, low, high);
-    expr *shift = expr_frac(e, 7 + 4 * index + 10 * trial, 11 + 6 * index); /* positive, different for each symbol */
+    expr *shift = expr_frac(e, 7 + 4 * index + 10 * trial, 11 + 3 * index); /* positive, different for each symbol */
     expr *part = expr_frac(e, 2 + index + trial, 5 + 3 * index + 2 * trial); /* in (0, 1) */
     expr *value;
     if (facts_is_integer(e, symbol))
@@ -152,26 +157,32 @@ static expr *sample(tw_engine *e, expr *symbol, slong index, slong trial)
     return value;
 }
 
-static answer is_zero_by_samples(tw_engine *e, expr *a)
+expr *value_sample(tw_engine *e, expr *a, slong trial)
 {
     expr **symbols;
     size_t n = expr_symbols(a, &symbols);
     expr **values = base_alloc((n + 1) * sizeof *values);
+    for (size_t k = 0; k < n; k++)
+        values[k] = sample(e, symbols[k], trial);
+    expr *at = expr_substitute_all(e, a, symbols, values, n);
+    free(values);
+    free(symbols);
+    return at;
+}
+
+static answer is_zero_by_samples(tw_engine *e, expr *a)
+{
     acb_t ball;
     acb_init(ball);
     answer result = ANSWER_UNKNOWN;
     for (slong trial = 0; trial < 3 && result == ANSWER_UNKNOWN; trial++) {
-        for (size_t k = 0; k < n; k++)
-            values[k] = sample(e, symbols[k], (slong)k, trial);
-        expr *at = expr_substitute_all(e, a, symbols, values, n);
+        expr *at = value_sample(e, a, trial);
         if (at == NULL)
             engine_forgive(e);
         else if (ball_excludes_zero(e, ball, at, 256) == 1)
             result = ANSWER_NO;
     }
     acb_clear(ball);
-    free(values);
-    free(symbols);
     return result;
 }
 
@@ -183,7 +194,10 @@ answer value_is_zero(tw_engine *e, expr *a)
         return is_zero_by_samples(e, a);
     acb_t ball;
     acb_init(ball);
-    answer result = ball_excludes_zero(e, ball, a, 1024) == 1 ? ANSWER_NO : exact_is_zero(a);
+    int excludes = ball_excludes_zero(e, ball, a, 1024);
+    answer result = excludes == 1 ? ANSWER_NO : ANSWER_UNKNOWN;
+    if (excludes == 0 && exact_is_zero(a) == ANSWER_YES)
+        result = ANSWER_YES;
     acb_clear(ball);
     return result;
 }
@@ -203,6 +217,18 @@ int value_sign(tw_engine *e, expr *a)
         sign = 0;
     acb_clear(ball);
     return sign;
+}
+
+bool value_is_singular(tw_engine *e, expr *a)
+{
+    acb_t ball;
+    acb_init(ball);
+    bool singular = expr_is_closed_value(a) && !expr_is_number(a) && ball_value(e, ball, a, 128) == TW_OK &&
+                    !acb_is_finite(ball) && ball_value(e, ball, a, 1024) == TW_OK && !acb_is_finite(ball);
+    if (!singular)
+        engine_forgive(e);
+    acb_clear(ball);
+    return singular;
 }
 
 bool value_off_cut(tw_engine *e, expr *a)
