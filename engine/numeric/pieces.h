@@ -1,0 +1,52 @@
+/* h = (F - kept terms)/T^first as polynomials on pieces of the path, with errors: near 0 from the coefficients, away from it from
+ * discs. Private. */
+#ifndef TW_NUMERIC_PIECES_H
+#define TW_NUMERIC_PIECES_H
+
+#include "engine/numeric/problem.h"
+
+/* h = sum over k of (poly_k(z) + error_k) * ell^k for the coordinate centre + width * z, z in [-1, 1]; the coordinate is T when
+ * `near`, else y. Every coefficient list has `length` entries. t_left and t_right are where the piece's part of the path starts and
+ * ends: exact reals known as balls, the same ball on both sides of a joint. */
+typedef struct piece {
+    bool near;
+    arf_t centre, width;
+    slong lanes, length;
+    arb_ptr poly;
+    mag_t error[PROBLEM_LOGS];
+    arb_t t_left, t_right;
+    bool ended; /* all sheets have ended */
+} piece;
+
+typedef struct pieces {
+    slong count, room;
+    piece *list;
+    slong first;     /* index of the first omitted nonzero coefficient */
+    double rho;      /* of the contour, for the record */
+    slong discs;
+    const char *reason; /* why the pieces could not be made, in words; NULL: made */
+} pieces;
+
+void pieces_init(pieces *s);
+void pieces_clear(pieces *s);
+
+/* Adds an empty piece and returns it. */
+piece *pieces_add(pieces *s, slong lanes, slong length);
+
+/* Pieces from 0 to the coordinate y_far. False: s->reason says why. */
+bool pieces_build(pieces *s, problem *p, slong first, double y_far);
+
+/* From 0 up to about 0.8 of the contour; *T_near is where they end. */
+bool near_build(pieces *s, problem *p, double T_needed, double *T_near);
+/* From there to y_far. */
+bool discs_build(pieces *s, problem *p, double T_near, double y_far);
+
+/* h over z0 <= z <= z1 as a ball. */
+void piece_range(arb_t h, const problem *p, const piece *s, double z0, double z1);
+/* t at z; the ends are t_left and t_right. */
+void piece_t(arb_t t, const problem *p, const piece *s, double z);
+
+/* Taylor coefficients, `length` of them, of sum f[n] x^n (n < count) at x = c. */
+void kept_taylor(arb_ptr out, slong length, arb_srcptr f, slong count, const arb_t c, slong bits);
+
+#endif

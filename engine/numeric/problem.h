@@ -1,0 +1,62 @@
+/* What the panel machine works on: one contribution with numbers put in for the parameters, brought to one coordinate y > 0 in
+ * which everything has integer steps. Private to engine/numeric.
+ *
+ *   contribution = factor * sum over sheets of  int_0^end A(y) exp(-scale * p(y)) dy
+ *   t = p(y) = T(y)^m,  T = y (1 + ...);  pure: p = y^m and T = y
+ *   F(y) = A / T' * T^-v  =  m * A / p' * p^(1 - (v+1)/m)  =  sum over k, n of f[k][n] * T^n * ell^k,   ell = log(t) * ell_factor
+ *   contribution = factor/m * int F * t^((v+1)/m - 1) * exp(-scale * t) dt                                  (methods.md, 9) */
+#ifndef TW_NUMERIC_PROBLEM_H
+#define TW_NUMERIC_PROBLEM_H
+
+#include "engine/numeric/bound.h"
+
+enum { PROBLEM_LOGS = 6 }; /* highest power of the logarithm + 1 */
+
+/* One branch in the coordinate y. regular[k]: y^-v times the part of A that goes with ell^k, analytic at 0. */
+typedef struct sheet {
+    expr *amplitude;             /* A(y) */
+    expr *end;                   /* NULL: infinite */
+    tape *value;                 /* F(y), logarithms included, for y > 0 */
+    expr *regular_expr[PROBLEM_LOGS];
+    tape *regular[PROBLEM_LOGS]; /* NULL: this power does not occur */
+    arb_t end_y, end_t;          /* finite ends only */
+} sheet;
+
+typedef struct problem {
+    tw_engine *e;
+    expr *y;
+    size_t sheet_count;
+    sheet *sheets;
+    bool pure;
+    expr *phase_expr;       /* p(y) */
+    tape *phase, *slope;    /* p, p'; NULL when pure */
+    fmpq_t m;
+    expr *v_expr;
+    arb_t v;
+    arb_t ell_factor;
+    slong lanes;            /* powers of the logarithm 0 .. lanes - 1 */
+    slong known;            /* coefficients in f */
+    slong bits;             /* their precision */
+    bool terminates;        /* the series is F itself: no further coefficients */
+    arb_ptr f[PROBLEM_LOGS]; /* exact zeros are zero balls */
+    struct problem_source *source; /* what problem_coefficients needs */
+} problem;
+
+/* Makes the problem of contribution k; *reason (static words) and TW_OK with *out NULL when the machine does not apply. */
+tw_status problem_new(tw_engine *e, problem **out, const expansion *a, size_t k, const env *at, const char **reason);
+void problem_free(problem *p);
+
+/* At least `count` coefficients to `bits` bits of precision; TW_OK also when the series terminates earlier (then zeros). */
+tw_status problem_coefficients(problem *p, slong count, slong bits);
+
+/* t at the exact coordinate y, as a ball. */
+void problem_t(arb_t t, const problem *p, const arb_t y, slong bits);
+
+/* (v + 1 + n)/m */
+void problem_alpha(arb_t alpha, const problem *p, slong n, slong bits);
+
+/* Upper bound of the integral of |A| exp(-S p) over y >= *y of all sheets that reach beyond it (far.c). *y is raised when a growth
+ * record is valid only later. False: no bound is known. */
+bool far_bound(mag_t bound, problem *p, expr *S, double *y);
+
+#endif
