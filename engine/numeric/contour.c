@@ -49,14 +49,14 @@ static bool phase_near(const problem *p, double complex y, double complex *value
 static bool solve_phase(const problem *p, double complex target, double complex *y)
 {
     for (int k = 0; k < 30; k++) {
-        double complex value, slope, step;
+        double complex value, slope, move;
         if (!phase_near(p, *y, &value, &slope) || cabs(slope) == 0)
             return false;
-        step = (target - value) / slope;
-        *y += step;
-        if (cabs(step) < 1e-9 * cabs(*y))
+        move = (target - value) / slope;
+        *y += move;
+        if (cabs(move) < 1e-9 * cabs(*y))
             return true;
-        if (cabs(step) > 0.5 * cabs(*y))
+        if (cabs(move) > 0.5 * cabs(*y))
             return false;
     }
     return false;

@@ -501,7 +501,7 @@ bool discs_build(pieces *s, problem *p, double T_near, double y_far)
     arb_init(right);
     arb_init(t_right);
     arb_set_d(left, T_near);
-    arb_pow_fmpq(t_left, left, p->m, p->bits + LOW_BITS);
+    problem_power(t_left, p, left, p->bits + LOW_BITS);
     if (!p->pure)
         fine = start_point(left, p, t_left);
     if (!fine)

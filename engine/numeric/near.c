@@ -172,11 +172,11 @@ static void near_piece(pieces *s, const problem *p, const lemma *l, double a, do
         mag_add(q->error[k], cut, tail);
     }
     arb_set_d(T, a);
-    arb_pow_fmpq(q->t_left, T, p->m, p->bits + NEAR_BITS);
+    problem_power(q->t_left, p, T, p->bits + NEAR_BITS);
     if (a == 0)
         arb_zero(q->t_left);
     arb_set_d(T, b);
-    arb_pow_fmpq(q->t_right, T, p->m, p->bits + NEAR_BITS);
+    problem_power(q->t_right, p, T, p->bits + NEAR_BITS);
     mag_clear(ratio);
     mag_clear(cut);
     mag_clear(tail);

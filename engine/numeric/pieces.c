@@ -144,7 +144,7 @@ void piece_t(arb_t t, const problem *p, const piece *s, double z)
     arb_mul_arf(y, y, s->width, ARF_PREC_EXACT);
     arb_add_arf(y, y, s->centre, ARF_PREC_EXACT);
     if (s->near)
-        arb_pow_fmpq(t, y, p->m, 2 * PIECE_BITS);
+        problem_power(t, p, y, 2 * PIECE_BITS);
     else
         problem_t(t, p, y, 2 * PIECE_BITS);
     arb_clear(y);
@@ -162,6 +162,16 @@ static void ell_range(arb_t ell, const problem *p, const piece *s, double z0, do
     arb_union(ell, ell, other, PIECE_BITS);
     arb_mul(ell, ell, p->ell_factor, PIECE_BITS);
     arb_clear(other);
+}
+
+void piece_lane_bound(mag_t bound, const piece *s, slong k, double z0, double z1)
+{
+    arb_t part;
+    arb_init(part);
+    poly_range(part, s->poly + k * s->length, s->length, z0 / 2 + z1 / 2, (z1 / 2 - z0 / 2) * (1 + 1e-15));
+    mag_add(arb_radref(part), arb_radref(part), s->error[k]);
+    arb_get_mag(bound, part);
+    arb_clear(part);
 }
 
 void piece_range(arb_t h, const problem *p, const piece *s, double z0, double z1)

@@ -43,6 +43,8 @@ bool discs_build(pieces *s, problem *p, double T_near, double y_far);
 
 /* h over z0 <= z <= z1 as a ball. */
 void piece_range(arb_t h, const problem *p, const piece *s, double z0, double z1);
+/* Upper bound of the factor of ell^k over z0 <= z <= z1. */
+void piece_lane_bound(mag_t bound, const piece *s, slong k, double z0, double z1);
 /* t at z; the ends are t_left and t_right. */
 void piece_t(arb_t t, const problem *p, const piece *s, double z);
 

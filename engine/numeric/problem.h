@@ -52,6 +52,9 @@ tw_status problem_coefficients(problem *p, slong count, slong bits);
 /* t at the exact coordinate y, as a ball. */
 void problem_t(arb_t t, const problem *p, const arb_t y, slong bits);
 
+/* T^m */
+void problem_power(arb_t t, const problem *p, const arb_t T, slong bits);
+
 /* (v + 1 + n)/m */
 void problem_alpha(arb_t alpha, const problem *p, slong n, slong bits);
 
