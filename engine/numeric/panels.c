@@ -265,7 +265,6 @@ static void far_kept(mag_t out, sheaf *s, slong first, const arb_t t)
         for (slong n = 0; n < first && n < p->known; n++) {
             arb_abs(part, p->f[k] + n);
             arb_div(sum, sum, T, SUM_BITS);
-            arb_pow_ui(x, T, 0, SUM_BITS);
             arb_add(sum, sum, part, SUM_BITS);
         }
         /* sum = sum of |f_n| T^(n - (first-1)) */
@@ -961,6 +960,11 @@ tw_status panels_kept_sum(problem *p, slong first, const arb_t S, arb_t sum, slo
     arb_log(log_S, S, bits);
     arb_zero(sum);
     for (slong n = 0; status == TW_OK && n < first && n < p->known; n++) {
+        bool any = false;
+        for (slong k = 0; k < lanes; k++)
+            any = any || !arb_is_zero(p->f[k] + n);
+        if (!any)
+            continue;
         /* d^k/dalpha^k of Gamma(alpha) S^-alpha, over k!, as the product of two series */
         problem_alpha(alpha, p, n, bits);
         _arb_vec_zero(gamma, lanes + 1);

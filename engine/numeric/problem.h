@@ -10,6 +10,12 @@
 
 #include "engine/numeric/bound.h"
 
+/* gcc 12 takes the first member's address (arb_midref, fmpq_numref) for the whole object in later calls and warns wrongly. */
+#if defined(__GNUC__) && !defined(__clang__)
+#pragma GCC diagnostic ignored "-Wstringop-overread"
+#pragma GCC diagnostic ignored "-Wstringop-overflow"
+#endif
+
 enum { PROBLEM_LOGS = 6 }; /* highest power of the logarithm + 1 */
 
 /* One branch in the coordinate y. regular[k]: y^-v times the part of A that goes with ell^k, analytic at 0. */
@@ -42,8 +48,9 @@ typedef struct problem {
     struct problem_source *source; /* what problem_coefficients needs */
 } problem;
 
-/* Makes the problem of contribution k; *reason (static words) and TW_OK with *out NULL when the machine does not apply. */
-tw_status problem_new(tw_engine *e, problem **out, const expansion *a, size_t k, const env *at, const char **reason);
+/* Makes the problem of a local form with values for the parameters. *out NULL with TW_OK: the machine does not apply, *reason
+ * (fresh words) says why. */
+tw_status problem_new(tw_engine *e, problem **out, const local_form *l, expr *large, const env *at, char **reason);
 void problem_free(problem *p);
 
 /* At least `count` coefficients to `bits` bits of precision; TW_OK also when the series terminates earlier (then zeros). */
