@@ -5,13 +5,13 @@
 #include <math.h>
 
 #include "engine/numeric/analytic.h"
-#include "engine/numeric/pieces.h"
+#include "engine/numeric/patches.h"
 
 enum { DISC_LENGTH = 20, LOW_BITS = 64, DISCS_MOST = 3000 };
 
 typedef struct walker {
     problem *p;
-    pieces *s;
+    patches *s;
     slong first;
     fmpq_t inverse_m;
 } walker;
@@ -270,12 +270,12 @@ static bool disc_prove(mag_t size, walker *w, const arf_t c, const arf_t R)
     return fine && mag_is_finite(size);
 }
 
-/* The piece around c; false when the disc is too large to be proved. On precision: raised until the first coefficient is good. */
-static bool disc_piece(walker *w, double c, double width)
+/* The patch around c; false when the disc is too large to be proved. On precision: raised until the first coefficient is good. */
+static bool disc_patch(walker *w, double c, double width)
 {
     arf_t centre, half, R;
     mag_t size, ratio;
-    piece *q = NULL;
+    patch *q = NULL;
     bool fine;
     arf_init(centre);
     arf_init(half);
@@ -288,7 +288,7 @@ static bool disc_piece(walker *w, double c, double width)
     fine = slope_positive(w, centre, half) && disc_prove(size, w, centre, R);
     if (fine) {
         slong bits = w->p->bits, length = DISC_LENGTH;
-        q = pieces_add(w->s, 1, length);
+        q = patches_add(w->s, 1, length);
         fine = disc_series(q->poly, w, centre, half, length, bits);
         if (fine) {
             arf_set(q->centre, centre);
@@ -321,7 +321,7 @@ static bool disc_piece(walker *w, double c, double width)
 }
 
 /* The range of h over the real interval [a, b] by plain balls, for the last bit before an end at which F is not analytic. */
-static bool crude_piece(walker *w, const arb_t a, const arb_t b)
+static bool crude_patch(walker *w, const arb_t a, const arb_t b)
 {
     problem *p = w->p;
     acb_t at, value;
@@ -355,12 +355,12 @@ static bool crude_piece(walker *w, const arb_t a, const arb_t b)
             arb_add(sum, sum, acb_realref(value), LOW_BITS);
         }
     if (fine) {
-        piece *q;
+        patch *q;
         arb_pow_ui(T, T, (ulong)w->first, LOW_BITS);
         arb_div(sum, sum, T, LOW_BITS);
         fine = arb_is_finite(sum);
         if (fine) {
-            q = pieces_add(w->s, 1, 2);
+            q = patches_add(w->s, 1, 2);
             arb_set(q->poly, sum);
             arf_set(q->centre, arb_midref(acb_realref(at)));
             arf_set_mag(q->width, arb_radref(acb_realref(at)));
@@ -377,7 +377,7 @@ static bool crude_piece(walker *w, const arb_t a, const arb_t b)
     return fine;
 }
 
-/* Pieces from the exact real `left` to `right` (balls, t_left and t_right their heights), no sheet ending in between. */
+/* Patches from the exact real `left` to `right` (balls, t_left and t_right their heights), no sheet ending in between. */
 static bool walk_stretch(walker *w, const arb_t left, const arb_t t_left, const arb_t right, const arb_t t_right)
 {
     problem *p = w->p;
@@ -394,13 +394,13 @@ static bool walk_stretch(walker *w, const arb_t left, const arb_t t_left, const 
         if (at + 2 * width > end - 0.2 * width)
             width = (end - at) / 2 * (1 + 1e-12);
         fine = w->s->count < DISCS_MOST && budget_ok(p->e);
-        while (fine && !disc_piece(w, at + width, width)) {
+        while (fine && !disc_patch(w, at + width, width)) {
             width /= 1.6;
             if (width < 1e-7 * at) {
                 arb_set_d(y, at);
                 if (start)
                     arb_set(y, left);
-                fine = (end - at) < 1e-4 * at && crude_piece(w, y, right);
+                fine = (end - at) < 1e-4 * at && crude_patch(w, y, right);
                 if (fine)
                     width = end - at;
                 else
@@ -488,7 +488,7 @@ static bool all_ended(const problem *p, double y)
     return true;
 }
 
-bool discs_build(pieces *s, problem *p, double T_near, double y_far)
+bool discs_build(patches *s, problem *p, double T_near, double y_far)
 {
     walker w = {.p = p, .s = s, .first = s->first};
     arb_t left, t_left, right, t_right;

@@ -1,6 +1,6 @@
 /* h near 0 from its exact coefficients. One idea: the coefficients beyond the kept ones, up to the M-th, are the function; what is
  * left beyond them is a geometric series by the lemma on a contour (contour.c), and the contour reaches as far as it can be proved. */
-#include "engine/numeric/pieces.h"
+#include "engine/numeric/patches.h"
 
 #include <math.h>
 
@@ -120,12 +120,12 @@ static bool tail_small(const problem *p, const lemma *l, slong first, double T)
     return small;
 }
 
-/* One piece [a, b] of T: Taylor coefficients at its middle, truncated; what is cut off is bounded by Cauchy's inequality on the
+/* One patch [a, b] of T: Taylor coefficients at its middle, truncated; what is cut off is bounded by Cauchy's inequality on the
  * circle of radius R around the middle, R = 3 half widths or as far as the contour lets. */
-static void near_piece(pieces *s, const problem *p, const lemma *l, double a, double b)
+static void near_patch(patches *s, const problem *p, const lemma *l, double a, double b)
 {
     slong first = s->first, count = p->known - first;
-    piece *q = pieces_add(s, p->lanes, NEAR_LENGTH);
+    patch *q = patches_add(s, p->lanes, NEAR_LENGTH);
     arb_t c, T, power;
     mag_t tail, cut, ratio;
     double w = (b - a) / 2 * (1 + 1e-12), R = 3.2 * w;
@@ -195,7 +195,7 @@ static double first_end(const problem *p)
     return least * (1 - 1e-9);
 }
 
-static bool near_cut(pieces *s, problem *p, lemma *l, double *T)
+static bool near_cut(patches *s, problem *p, lemma *l, double *T)
 {
     slong most = s->first + 60 + 4 * s->first;
     while (!tail_small(p, l, s->first, *T)) {
@@ -214,7 +214,7 @@ static bool near_cut(pieces *s, problem *p, lemma *l, double *T)
     return true;
 }
 
-bool near_build(pieces *s, problem *p, double T_needed, double *T_near)
+bool near_build(patches *s, problem *p, double T_needed, double *T_near)
 {
     lemma l;
     bool fine = true;
@@ -238,7 +238,7 @@ bool near_build(pieces *s, problem *p, double T_needed, double *T_near)
             b = a == 0 ? T / 8 : 2 * a;
         if (b > 0.93 * T)
             b = T;
-        near_piece(s, p, &l, a, b);
+        near_patch(s, p, &l, a, b);
         a = b;
         fine = budget_ok(p->e);
     }

@@ -1,28 +1,26 @@
-/* From h on pieces to proved bounds. One idea: the remainder is (1/m) int h(t) t^(alpha-1) exp(-S t) dt with h known on panels as
+/* From h on patches to proved bounds. One idea: the remainder is (1/m) int h(t) t^(alpha-1) exp(-S t) dt with h known on panels as
  * balls. At one S: the sum of ball times mass, signs kept. For all S >= S0: with running maxima H of |h|, because as S grows the
- * weight moves towards 0 (monotone likelihood ratio), so the mean of a non-decreasing H falls; and for a panel beyond the
- * weight's mean at S0 the share of the weight falls by itself, so that no running maximum is needed there. Panels are split where
+ * weight moves towards 0 (monotone likelihood ratio), so the mean of a non-decreasing H falls; beyond the weight's mean at S0
+ * a panel's share of the weight falls by itself, so there H may stay as it is and the excess of |h| is added. Panels are split where
  * they lose most. All sums are ball sums. */
 #include "engine/numeric/panels.h"
 
 #include <math.h>
 #include <string.h>
 
-#ifndef TW_BOUND_FACTOR
-#define TW_BOUND_FACTOR 1 /* tests multiply every bound by it, to see that a wrong bound is noticed */
-#endif
+#include "engine/numeric/shared.h"
 
 enum { SUM_BITS = 64, PANELS_MOST = 6000, PASSES_MOST = 14 };
 
 typedef struct panel {
-    slong piece, left, right; /* joints */
+    slong patch, left, right; /* joints */
     double z0, z1;
     arb_t h, mass;
 } panel;
 
 typedef struct sheaf {
     problem *p;
-    pieces pieces;
+    patches patches;
     weight w;
     slong joint_count, joint_room, panel_count, panel_room;
     joint *joints;
@@ -38,7 +36,7 @@ static void sheaf_init(sheaf *s, problem *p)
 {
     memset(s, 0, sizeof *s);
     s->p = p;
-    pieces_init(&s->pieces);
+    patches_init(&s->patches);
     mag_init(s->crumb);
     mag_init(s->far);
     arb_init(s->t_far);
@@ -48,7 +46,7 @@ static void sheaf_init(sheaf *s, problem *p)
 
 static void sheaf_clear(sheaf *s)
 {
-    pieces_clear(&s->pieces);
+    patches_clear(&s->patches);
     for (slong k = 0; k < s->joint_count; k++)
         joint_clear(s->joints + k);
     for (slong k = 0; k < s->panel_count; k++) {
@@ -76,7 +74,7 @@ static slong sheaf_joint(sheaf *s, const arb_t t)
 
 static void panel_measure(sheaf *s, panel *q)
 {
-    piece_range(q->h, s->p, s->pieces.list + q->piece, q->z0, q->z1);
+    patch_range(q->h, s->p, s->patches.list + q->patch, q->z0, q->z1);
     joint_mass(q->mass, s->joints + q->left, s->joints + q->right, s->w.bits);
 }
 
@@ -88,7 +86,7 @@ static panel *sheaf_panel(sheaf *s, slong k, double z0, double z1, slong left, s
         s->panels = flint_realloc(s->panels, s->panel_room * sizeof(panel));
     }
     q = s->panels + s->panel_count++;
-    q->piece = k;
+    q->patch = k;
     q->z0 = z0;
     q->z1 = z1;
     q->left = left;
@@ -114,11 +112,11 @@ static slong sheaf_start_logs(sheaf *s)
     mag_init(part);
     mag_init(bound);
     mag_init(ell);
-    piece_t(t, s->p, s->pieces.list, z);
+    patch_t(t, s->p, s->patches.list, z);
     arb_get_mag(ell, s->p->ell_factor);
     s->has_crumb = true;
     for (slong k = 0; k < s->lanes; k++) {
-        piece_lane_bound(bound, s->pieces.list, k, -1, z);
+        patch_lane_bound(bound, s->patches.list, k, -1, z);
         omega_crumb(part, s->w.alpha, zero, t, k);
         mag_mul(bound, bound, part);
         mag_pow_ui(part, ell, (ulong)k);
@@ -132,7 +130,7 @@ static slong sheaf_start_logs(sheaf *s)
     for (int j = HALVINGS - 1; j >= 1; j--) {
         double z1 = -1 + exp2(1 - j);
         slong right;
-        piece_t(t, s->p, s->pieces.list, z1);
+        patch_t(t, s->p, s->patches.list, z1);
         right = sheaf_joint(s, t);
         sheaf_panel(s, 0, z, z1, left, right);
         left = right;
@@ -155,10 +153,10 @@ static void sheaf_panels(sheaf *s)
         left = sheaf_start_logs(s);
         z0 = 0;
     } else {
-        left = sheaf_joint(s, s->pieces.list[0].t_left);
+        left = sheaf_joint(s, s->patches.list[0].t_left);
     }
-    for (slong k = 0; k < s->pieces.count; k++) {
-        slong right = sheaf_joint(s, s->pieces.list[k].t_right);
+    for (slong k = 0; k < s->patches.count; k++) {
+        slong right = sheaf_joint(s, s->patches.list[k].t_right);
         sheaf_panel(s, k, z0, 1, left, right);
         left = right;
         z0 = -1;
@@ -170,10 +168,10 @@ static void sheaf_split(sheaf *s, slong k)
 {
     panel *q = s->panels + k, *half;
     double z = q->z0 / 2 + q->z1 / 2, z1 = q->z1;
-    slong right = q->right, middle, from = q->piece;
+    slong right = q->right, middle, from = q->patch;
     arb_t t;
     arb_init(t);
-    piece_t(t, s->p, s->pieces.list + q->piece, z);
+    patch_t(t, s->p, s->patches.list + q->patch, z);
     middle = sheaf_joint(s, t);
     q->z1 = z;
     q->right = middle;
@@ -186,8 +184,8 @@ static void sheaf_split(sheaf *s, slong k)
 static int panel_compare(const void *a, const void *b)
 {
     const panel *x = a, *y = b;
-    if (x->piece != y->piece)
-        return x->piece < y->piece ? -1 : 1;
+    if (x->patch != y->patch)
+        return x->patch < y->patch ? -1 : 1;
     return x->z0 < y->z0 ? -1 : x->z0 > y->z0;
 }
 
@@ -386,7 +384,7 @@ static bool sheaf_far(sheaf *s, slong first, expr *S_expr, double *y_far, bool p
     mag_clear(kept);
     arb_clear(y);
     if (!fine)
-        s->pieces.reason = "no bound of the integrand far out on the path is known";
+        s->patches.reason = "no bound of the integrand far out on the path is known";
     return fine;
 }
 
@@ -420,7 +418,7 @@ static tw_status sheaf_make(sheaf *s, slong *first, expr *S_expr, const arb_t S,
         return TW_ERROR;
     *first = skip_zeros(p, *first);
     if (*first == p->known && !p->terminates) {
-        s->pieces.reason = "no further nonzero coefficient was found";
+        s->patches.reason = "no further nonzero coefficient was found";
         return TW_OK;
     }
     arb_init(alpha);
@@ -438,7 +436,7 @@ static tw_status sheaf_make(sheaf *s, slong *first, expr *S_expr, const arb_t S,
     s->lanes = p->lanes;
     if (!sheaf_far(s, *first, S_expr, &y_far, false))
         return p->e->error.kind ? TW_ERROR : TW_OK;
-    if (!pieces_build(&s->pieces, p, *first, y_far))
+    if (!patches_build(&s->patches, p, *first, y_far))
         return p->e->error.kind ? TW_ERROR : TW_OK;
     sheaf_panels(s);
     *made = true;
@@ -448,11 +446,11 @@ static tw_status sheaf_make(sheaf *s, slong *first, expr *S_expr, const arb_t S,
 static void sheaf_report(const sheaf *s, panel_report *r)
 {
     r->panels = s->panel_count;
-    r->discs = s->pieces.discs;
+    r->discs = s->patches.discs;
     r->bits = s->p->bits;
     r->known = s->p->known;
-    r->rho = s->pieces.rho;
-    r->reason = s->pieces.reason;
+    r->rho = s->patches.rho;
+    r->reason = s->patches.reason;
 }
 
 /* ---- at one S ---- */
@@ -579,7 +577,6 @@ typedef struct majorant {
     arb_t total;      /* int omega t^(alpha-1) exp(-S t), over Gamma(alpha) S^-alpha */
     double t_mean;    /* beyond it no running maximum is needed; rounded up */
     slong ended;      /* first panel beyond the last end; panel_count when there is none */
-    bool frozen;      /* the end lies before the mean */
     mag_t crumb_h, crumb_mass;
     arb_t mean;       /* sum of H * mass, in units of Gamma(alpha) S^-alpha */
     arb_t end;        /* the same of what goes with exp(-(S - S0) end_t) */
@@ -589,7 +586,7 @@ typedef struct majorant {
 static void majorant_shift(majorant *m)
 {
     const problem *p = m->s->p;
-    slong first = m->s->pieces.first;
+    slong first = m->s->patches.first;
     arb_t top;
     arb_init(top);
     arb_zero(m->c);
@@ -666,7 +663,7 @@ static void majorant_crumb(majorant *m)
         double z = s->panels[0].z0;
         arb_set(t, s->joints[s->panels[0].left].t);
         for (slong k = 0; k <= m->K; k++) {
-            piece_lane_bound(bound, s->pieces.list, k, -1, z);
+            patch_lane_bound(bound, s->patches.list, k, -1, z);
             arb_log(x, t, SUM_BITS);
             arb_abs(x, x);
             arb_pow_ui(x, x, (ulong)(m->K - k), SUM_BITS);
@@ -731,14 +728,13 @@ static bool beyond_mean(const majorant *m, const panel *q)
 static void majorant_sum(majorant *m, double *losses, arb_ptr heights)
 {
     sheaf *s = m->s;
-    mag_t running, h, frozen;
+    mag_t running, h;
     arb_t mass, H, part;
     slong holder = -1;
     double *excess = flint_calloc((size_t)s->panel_count + 1, sizeof(double));
     double *charge = flint_calloc((size_t)s->panel_count + 1, sizeof(double));
     mag_init(running);
     mag_init(h);
-    mag_init(frozen);
     arb_init(mass);
     arb_init(H);
     arb_init(part);
@@ -750,36 +746,29 @@ static void majorant_sum(majorant *m, double *losses, arb_ptr heights)
     arb_mul(m->mean, m->mean, part, SUM_BITS);
     m->ended = s->panel_count;
     for (slong k = 0; k < s->panel_count; k++)
-        if (s->pieces.list[s->panels[k].piece].ended) {
+        if (s->patches.list[s->panels[k].patch].ended) {
             m->ended = k;
             break;
         }
-    m->frozen = m->ended < s->panel_count && !beyond_mean(m, s->panels + m->ended);
     for (slong k = 0; k < s->panel_count; k++) {
         panel *q = s->panels + k;
         bool late = beyond_mean(m, q), after = k >= m->ended;
         majorant_panel(h, mass, m, q);
         excess[k] = mag_get_d(h) * fmin(1, 2 * mag_get_d(arb_radref(q->h)) / (arb_size(q->h) + 1e-300));
-        if (after && m->frozen) { /* running maximum up to the end, the rest to the second term */
+        if (late || after) {
+            /* The running maximum stays as it is, which keeps it non-decreasing; what exceeds it here falls by itself: with
+             * exp(-(S - S0) end_t) beyond the end, with the panel's share of the weight beyond the mean. */
             arf_set_mag(arb_midref(H), running);
             arb_addmul(m->mean, H, mass, SUM_BITS);
             if (mag_cmp(h, running) > 0) {
                 arf_set_mag(arb_midref(part), h);
                 arb_sub(part, part, H, SUM_BITS);
-                arb_addmul(m->end, part, mass, SUM_BITS);
+                arb_addmul(after ? m->end : m->mean, part, mass, SUM_BITS);
                 charge[k] += arb_size(mass);
                 arf_set_mag(arb_midref(H), h);
             } else if (holder >= 0) {
                 charge[holder] += arb_size(mass);
             }
-        } else if (after) {
-            arf_set_mag(arb_midref(H), h);
-            arb_addmul(m->end, H, mass, SUM_BITS);
-            charge[k] += arb_size(mass);
-        } else if (late) {
-            arf_set_mag(arb_midref(H), h);
-            arb_addmul(m->mean, H, mass, SUM_BITS);
-            charge[k] += arb_size(mass);
         } else {
             if (mag_cmp(h, running) > 0) {
                 mag_set(running, h);
@@ -799,7 +788,6 @@ static void majorant_sum(majorant *m, double *losses, arb_ptr heights)
     arb_clear(part);
     arb_clear(H);
     arb_clear(mass);
-    mag_clear(frozen);
     mag_clear(h);
     mag_clear(running);
     flint_free(excess);
@@ -922,12 +910,12 @@ tw_status panels_for_all(problem *p, slong first, expr *S_expr, const arb_t S, p
         majorant_crumb(&m);
         if (!arb_is_finite(m.total) || !arb_is_positive(m.total)) {
             *made = false;
-            s.pieces.reason = "the weight's mass could not be computed";
+            s.patches.reason = "the weight's mass could not be computed";
         } else if (!refine_signed(&s, sum) || !refine_majorant(&m)) {
             status = TW_ERROR;
         } else if (!arb_is_finite(m.mean) || !arb_is_finite(m.end)) {
             *made = false;
-            s.pieces.reason = "the bounds on the panels are not finite";
+            s.patches.reason = "the bounds on the panels are not finite";
         } else {
             majorant_finish(out, &m);
         }

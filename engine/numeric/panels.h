@@ -1,8 +1,8 @@
-/* The machine of methods.md section 9: from pieces to bounds. Private to engine/numeric. */
+/* The machine of methods.md section 9: from patches to bounds. Private to engine/numeric. */
 #ifndef TW_NUMERIC_PANELS_H
 #define TW_NUMERIC_PANELS_H
 
-#include "engine/numeric/pieces.h"
+#include "engine/numeric/patches.h"
 #include "engine/numeric/weights.h"
 
 /* A bound valid for all S >= S0, without the contribution's factor:

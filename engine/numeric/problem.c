@@ -15,6 +15,7 @@ struct problem_source {
     branch *branches; /* in x, end NULL when infinite */
     slong spread;     /* D: x = y^D */
     expr *v;          /* exponent of y in front of A */
+    expr *least;      /* least exponent of x in the series of q */
     slong length;     /* coefficients a strand had last time */
     bool made;
     size_t series_count;
@@ -227,17 +228,15 @@ static bool common_step(tw_engine *e, const series *list, size_t count, slong *D
 static bool find_step(problem *p, slong *D, char **reason)
 {
     struct problem_source *s = p->source;
-    expr *least = NULL;
     *D = 1;
     if (source_make(p, 6) != TW_OK)
         return false;
-    if (!common_step(p->e, s->series, s->series_count, D, &least))
+    if (!common_step(p->e, s->series, s->series_count, D, &s->least))
         *reason = base_copy("the powers in the series at the critical point have no common step");
     source_forget(s);
     if (!*reason && !p->pure) { /* the coordinate must suit p and q in x, not only G in t */
         series both[2];
         bool fine;
-        least = NULL;
         *D = 1;
         series_init(both);
         series_init(both + 1);
@@ -246,7 +245,8 @@ static bool find_step(problem *p, slong *D, char **reason)
         if (fine) {
             expr *own = NULL;
             slong steps = 1;
-            if (!common_step(p->e, both, 1, D, &least) || !common_step(p->e, both + 1, 1, &steps, &own) ||
+            s->least = NULL;
+            if (!common_step(p->e, both, 1, D, &s->least) || !common_step(p->e, both + 1, 1, &steps, &own) ||
                 !expr_is_number(own))
                 *reason = base_copy("the powers in the series at the critical point have no common step");
             else {
@@ -274,7 +274,10 @@ static tape *tape_in(problem *p, expr *f)
 static bool sheets_regular(problem *p, char **reason)
 {
     tw_engine *e = p->e;
-    expr *L = expr_fresh(e, "L"), *v = NULL;
+    /* the exponent of the series' first term, which the written powers may exceed: y/(exp(y) - 1) */
+    expr *D = expr_int(e, p->source->spread);
+    expr *L = expr_fresh(e, "L");
+    expr *v = expr_sub(e, expr_mul(e, D, expr_add(e, p->source->least, expr_int(e, 1))), expr_int(e, 1));
     expr **powers = base_alloc(p->sheet_count * sizeof *powers), **rests = base_alloc(p->sheet_count * sizeof *rests);
     bool fine = true;
     for (size_t b = 0; b < p->sheet_count && fine; b++) {

@@ -1,20 +1,20 @@
-/* Pieces of the path: storing them, reading h and t from them. One idea: once the kept terms have cancelled in exact Taylor
+/* Patches of the path: storing them, reading h and t from them. One idea: once the kept terms have cancelled in exact Taylor
  * coefficients, a short polynomial in balls of 64 bits is all that a bound needs, and splitting a panel costs only evaluations. */
-#include "engine/numeric/pieces.h"
+#include "engine/numeric/patches.h"
 
 #include <string.h>
 
-enum { PIECE_BITS = 64 };
+enum { PATCH_BITS = 64 };
 
-void pieces_init(pieces *s)
+void patches_init(patches *s)
 {
     memset(s, 0, sizeof *s);
 }
 
-void pieces_clear(pieces *s)
+void patches_clear(patches *s)
 {
     for (slong k = 0; k < s->count; k++) {
-        piece *q = s->list + k;
+        patch *q = s->list + k;
         arf_clear(q->centre);
         arf_clear(q->width);
         _arb_vec_clear(q->poly, q->lanes * q->length);
@@ -24,15 +24,15 @@ void pieces_clear(pieces *s)
         arb_clear(q->t_right);
     }
     flint_free(s->list);
-    pieces_init(s);
+    patches_init(s);
 }
 
-piece *pieces_add(pieces *s, slong lanes, slong length)
+patch *patches_add(patches *s, slong lanes, slong length)
 {
-    piece *q;
+    patch *q;
     if (s->count == s->room) {
         s->room = 2 * s->room + 16;
-        s->list = flint_realloc(s->list, s->room * sizeof(piece));
+        s->list = flint_realloc(s->list, s->room * sizeof(patch));
     }
     q = s->list + s->count++;
     memset(q, 0, sizeof *q);
@@ -48,7 +48,7 @@ piece *pieces_add(pieces *s, slong lanes, slong length)
     return q;
 }
 
-bool pieces_build(pieces *s, problem *p, slong first, double y_far)
+bool patches_build(patches *s, problem *p, slong first, double y_far)
 {
     double T_needed = y_far, T_near;
     s->first = first;
@@ -59,9 +59,9 @@ bool pieces_build(pieces *s, problem *p, slong first, double y_far)
         arb_init(t);
         fmpq_init(inverse);
         arb_set_d(y, y_far);
-        problem_t(t, p, y, PIECE_BITS);
+        problem_t(t, p, y, PATCH_BITS);
         fmpq_inv(inverse, p->m);
-        arb_pow_fmpq(t, t, inverse, PIECE_BITS);
+        arb_pow_fmpq(t, t, inverse, PATCH_BITS);
         T_needed = arf_get_d(arb_midref(t), ARF_RND_UP);
         fmpq_clear(inverse);
         arb_clear(t);
@@ -99,10 +99,10 @@ static void poly_range(arb_t out, arb_srcptr a, slong length, double centre, dou
     arb_set_d(c, centre);
     for (slong j = length - 1; j >= 0; j--) {
         if (j < length - 1)
-            arb_mul(slope, slope, c, PIECE_BITS);
-        arb_add(slope, slope, value, PIECE_BITS);
-        arb_mul(value, value, c, PIECE_BITS);
-        arb_add(value, value, a + j, PIECE_BITS);
+            arb_mul(slope, slope, c, PATCH_BITS);
+        arb_add(slope, slope, value, PATCH_BITS);
+        arb_mul(value, value, c, PATCH_BITS);
+        arb_add(value, value, a + j, PATCH_BITS);
     }
     mag_set_d(z, (centre < 0 ? -centre : centre) + half);
     for (slong j = length - 1; j >= 2; j--) {
@@ -128,7 +128,7 @@ static void poly_range(arb_t out, arb_srcptr a, slong length, double centre, dou
     arb_clear(c);
 }
 
-void piece_t(arb_t t, const problem *p, const piece *s, double z)
+void patch_t(arb_t t, const problem *p, const patch *s, double z)
 {
     arb_t y;
     if (z <= -1) {
@@ -144,27 +144,27 @@ void piece_t(arb_t t, const problem *p, const piece *s, double z)
     arb_mul_arf(y, y, s->width, ARF_PREC_EXACT);
     arb_add_arf(y, y, s->centre, ARF_PREC_EXACT);
     if (s->near)
-        problem_power(t, p, y, 2 * PIECE_BITS);
+        problem_power(t, p, y, 2 * PATCH_BITS);
     else
-        problem_t(t, p, y, 2 * PIECE_BITS);
+        problem_t(t, p, y, 2 * PATCH_BITS);
     arb_clear(y);
 }
 
 /* ell over the part of the path between z0 and z1; t > 0 there. */
-static void ell_range(arb_t ell, const problem *p, const piece *s, double z0, double z1)
+static void ell_range(arb_t ell, const problem *p, const patch *s, double z0, double z1)
 {
     arb_t other;
     arb_init(other);
-    piece_t(ell, p, s, z0);
-    piece_t(other, p, s, z1);
-    arb_log(ell, ell, PIECE_BITS);
-    arb_log(other, other, PIECE_BITS);
-    arb_union(ell, ell, other, PIECE_BITS);
-    arb_mul(ell, ell, p->ell_factor, PIECE_BITS);
+    patch_t(ell, p, s, z0);
+    patch_t(other, p, s, z1);
+    arb_log(ell, ell, PATCH_BITS);
+    arb_log(other, other, PATCH_BITS);
+    arb_union(ell, ell, other, PATCH_BITS);
+    arb_mul(ell, ell, p->ell_factor, PATCH_BITS);
     arb_clear(other);
 }
 
-void piece_lane_bound(mag_t bound, const piece *s, slong k, double z0, double z1)
+void patch_lane_bound(mag_t bound, const patch *s, slong k, double z0, double z1)
 {
     arb_t part;
     arb_init(part);
@@ -174,7 +174,7 @@ void piece_lane_bound(mag_t bound, const piece *s, slong k, double z0, double z1
     arb_clear(part);
 }
 
-void piece_range(arb_t h, const problem *p, const piece *s, double z0, double z1)
+void patch_range(arb_t h, const problem *p, const patch *s, double z0, double z1)
 {
     arb_t ell, part;
     double centre = z0 / 2 + z1 / 2, half = z1 / 2 - z0 / 2;
@@ -186,10 +186,10 @@ void piece_range(arb_t h, const problem *p, const piece *s, double z0, double z1
     arb_zero(h);
     for (slong k = s->lanes - 1; k >= 0; k--) {
         if (k < s->lanes - 1)
-            arb_mul(h, h, ell, PIECE_BITS);
+            arb_mul(h, h, ell, PATCH_BITS);
         poly_range(part, s->poly + k * s->length, s->length, centre, half);
         mag_add(arb_radref(part), arb_radref(part), s->error[k]);
-        arb_add(h, h, part, PIECE_BITS);
+        arb_add(h, h, part, PATCH_BITS);
     }
     arb_clear(part);
     arb_clear(ell);

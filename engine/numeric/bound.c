@@ -1,0 +1,406 @@
+/* The remainder of an expansion: which proof applies, what it gives, under which label. One idea: the strongest proof that holds:
+ * the enclosing theorem, then panels, then an estimate that says why it is one. A dominant contribution's local form is its whole
+ * integral, so the bound covers other ends and tails.
+ *
+ * Panels keep whole groups of terms (one power of t with all its logarithms); the difference between the groups' sum and the terms
+ * that were asked for is computed, not assumed to be 0. */
+#include "engine/numeric/bound.h"
+
+#include <math.h>
+#include <stdlib.h>
+#include <string.h>
+
+#include "engine/numeric/enclosing.h"
+#include "engine/numeric/panels.h"
+#include "engine/numeric/shared.h"
+#include "engine/numeric/terms.h"
+
+const char *label_word(label l)
+{
+    static const char *const names[] = {"exact", "proved", "conditional", "estimated", "unknown"};
+    return names[l];
+}
+
+void point_bound_init(point_bound *b)
+{
+    memset(b, 0, sizeof *b);
+    arb_init(b->error);
+    conditions_init(&b->conditions);
+}
+
+void point_bound_clear(point_bound *b)
+{
+    arb_clear(b->error);
+    free(b->reason);
+    conditions_clear(&b->conditions);
+    memset(b, 0, sizeof *b);
+}
+
+/* ---- memory ---- */
+
+typedef struct known_problem {
+    size_t index, value_count;
+    expr **symbols, **values; /* without the large parameter */
+    problem *p;               /* NULL: the machine does not apply, reason says why */
+    char *reason;
+    answer encloses;
+    bool encloses_known;
+    struct known_problem *next;
+} known_problem;
+
+struct bound_cache {
+    known_problem *first;
+};
+
+void bound_cache_free(struct bound_cache *c)
+{
+    known_problem *k = c ? c->first : NULL;
+    while (k) {
+        known_problem *next = k->next;
+        problem_free(k->p);
+        free(k->reason);
+        free(k->symbols);
+        free(k->values);
+        free(k);
+        k = next;
+    }
+    free(c);
+}
+
+static bool same_values(const known_problem *k, const env *at, expr *large)
+{
+    size_t n = 0;
+    for (size_t j = 0; j < at->count; j++) {
+        if (at->symbols[j] == large)
+            continue;
+        if (n >= k->value_count || k->symbols[n] != at->symbols[j] || k->values[n] != at->values[j])
+            return false;
+        n++;
+    }
+    return n == k->value_count;
+}
+
+static known_problem *known_find(tw_engine *e, expansion *a, size_t index, const env *at)
+{
+    known_problem *k;
+    (void)e;
+    if (!a->cache) {
+        a->cache = base_alloc(sizeof *a->cache);
+        a->cache->first = NULL;
+    }
+    for (k = a->cache->first; k; k = k->next)
+        if (k->index == index && same_values(k, at, a->large))
+            return k;
+    k = base_alloc(sizeof *k);
+    memset(k, 0, sizeof *k);
+    k->index = index;
+    k->symbols = base_alloc((at->count + 1) * sizeof *k->symbols);
+    k->values = base_alloc((at->count + 1) * sizeof *k->values);
+    for (size_t j = 0; j < at->count; j++)
+        if (at->symbols[j] != a->large) {
+            k->symbols[k->value_count] = at->symbols[j];
+            k->values[k->value_count++] = at->values[j];
+        }
+    k->next = a->cache->first;
+    a->cache->first = k;
+    return k;
+}
+
+static tw_status known_problem_of(tw_engine *e, known_problem **out, expansion *a, size_t index, const env *at)
+{
+    known_problem *k = known_find(e, a, index, at);
+    *out = k;
+    if (k->p || k->reason)
+        return TW_OK;
+    if (problem_new(e, &k->p, &a->contributions[index].local, a->large, at, &k->reason) != TW_OK)
+        return TW_ERROR;
+    if (!k->p && !k->reason)
+        k->reason = base_copy("the machine does not apply");
+    return TW_OK;
+}
+
+answer known_encloses(tw_engine *e, expansion *a, size_t index, const env *at)
+{
+    known_problem *k = known_find(e, a, index, at);
+    if (!k->encloses_known) {
+        k->encloses = contribution_encloses(e, &a->contributions[index].local, a->large, at);
+        k->encloses_known = e->error.kind == ERROR_NONE;
+    }
+    return k->encloses;
+}
+
+/* ---- which groups ---- */
+
+/* The first index that is not kept when `terms` terms are: whole groups only; *left: kept terms beyond them. */
+static tw_status groups_kept(problem *p, slong terms, slong *first, slong *left)
+{
+    slong n = 0, gone = 0;
+    if (problem_coefficients(p, terms + 32, FLINT_MAX(p->bits, 128)) != TW_OK)
+        return TW_ERROR;
+    for (;; n++) {
+        slong here = 0;
+        if (n == p->known) {
+            if (p->terminates || n > 4000)
+                break;
+            if (problem_coefficients(p, 2 * n + 32, p->bits) != TW_OK)
+                return TW_ERROR;
+        }
+        for (slong k = p->lanes - 1; k >= 0 && !here; k--)
+            if (!arb_is_zero(p->f[k] + n))
+                here = k + 1;
+        if (here && gone + here > terms)
+            break;
+        gone += here;
+    }
+    *first = n;
+    *left = terms - gone;
+    return TW_OK;
+}
+
+/* ---- at one point ---- */
+
+static void sum_terms(arb_t sum, const term_values *t, slong terms, slong bits)
+{
+    arb_zero(sum);
+    for (slong k = 0; k < terms && k < t->count; k++)
+        arb_add(sum, sum, t->value + k, bits);
+}
+
+/* [0, T] or [T, 0]. */
+static void enclosing_error(arb_t error, const arb_t T)
+{
+    arb_t zero;
+    arb_init(zero);
+    arb_union(error, zero, T, 64);
+    if (TW_BOUND_FACTOR != 1) {
+        arb_set_d(zero, TW_BOUND_FACTOR);
+        arb_mul(error, error, zero, 64);
+    }
+    arb_clear(zero);
+}
+
+/* The largest of the next omitted terms, three times. */
+static tw_status estimate_error(tw_engine *e, arb_t error, expansion *a, size_t index, const env *at, slong terms)
+{
+    term_table t;
+    mag_t most, part;
+    tw_status status;
+    if (expansion_extend(e, a, terms + 3) != TW_OK)
+        engine_forgive(e);
+    status = terms_at(e, &t, a, at, terms + 3, false, 64);
+    if (status != TW_OK)
+        return status;
+    mag_init(most);
+    mag_init(part);
+    for (size_t b = 0; b < t.count; b++)
+        if (t.list[b].contribution == index) {
+            slong from = FLINT_MIN(terms, t.list[b].count - 1);
+            for (slong k = FLINT_MAX(from, 0); k < t.list[b].count; k++) {
+                arb_get_mag(part, t.list[b].value + k);
+                mag_max(most, most, part);
+            }
+        }
+    mag_mul_ui(most, most, 3);
+    arb_zero(error);
+    mag_set(arb_radref(error), most);
+    mag_clear(part);
+    mag_clear(most);
+    terms_clear(&t);
+    return TW_OK;
+}
+
+typedef struct piece_bound {
+    label label;
+    bool enclosing;
+    arb_t error;
+    const char *reason;
+} piece_bound;
+
+/* By panels, for contribution t: error = R_K + (S_K - sum of the kept terms). */
+static tw_status panel_error(tw_engine *e, piece_bound *out, expansion *a, const term_values *t, const env *at, slong terms,
+                             slong bits)
+{
+    const contribution *c = a->contributions + t->contribution;
+    known_problem *k;
+    arb_t S, factor, groups, kept;
+    expr *scale = put_values(e, c->local.scale, at);
+    panel_report report = {0};
+    slong first, left;
+    bool made = false;
+    tw_status status = known_problem_of(e, &k, a, t->contribution, at);
+    if (status != TW_OK)
+        return status;
+    if (!k->p) {
+        out->label = LABEL_ESTIMATED;
+        out->reason = k->reason;
+        return TW_OK;
+    }
+    arb_init(S);
+    arb_init(factor);
+    arb_init(groups);
+    arb_init(kept);
+    status = real_ball(e, S, scale, bits + 64);
+    if (status == TW_OK)
+        status = real_ball(e, factor, put_values(e, c->local.factor, at), bits + 64);
+    if (status == TW_OK)
+        status = groups_kept(k->p, terms, &first, &left);
+    if (status == TW_OK)
+        status = panels_at(k->p, first, scale, S, out->error, &made, &report);
+    if (status == TW_OK && made)
+        status = panels_kept_sum(k->p, first, S, groups, bits + 64);
+    if (status == TW_OK && made) {
+        arb_add(out->error, out->error, groups, bits + 64);
+        arb_mul(out->error, out->error, factor, bits + 64);
+        sum_terms(kept, t, terms, bits + 64);
+        arb_sub(out->error, out->error, kept, bits + 64);
+        out->label = LABEL_PROVED;
+        if (!arb_is_finite(out->error))
+            made = false;
+    }
+    if (status == TW_OK && !made) {
+        out->label = LABEL_ESTIMATED;
+        out->reason = report.reason ? report.reason : "the bound is not finite there";
+    }
+    arb_clear(kept);
+    arb_clear(groups);
+    arb_clear(factor);
+    arb_clear(S);
+    return status;
+}
+
+static tw_status contribution_error(tw_engine *e, piece_bound *out, expansion *a, const term_values *t, const env *at,
+                                    slong terms, slong bits, bool sharp)
+{
+    const contribution *c = a->contributions + t->contribution;
+    tw_status status = TW_OK;
+    out->label = LABEL_ESTIMATED;
+    out->enclosing = false;
+    out->reason = NULL;
+    if (c->terminates && terms >= t->count && a->exact) {
+        arb_zero(out->error);
+        out->label = LABEL_EXACT;
+        return TW_OK;
+    }
+    if (c->local.count == 0) {
+        out->reason = "the contribution has no integral of its own";
+    } else if (!sharp && terms < t->count && known_encloses(e, a, t->contribution, at) == ANSWER_YES) {
+        enclosing_error(out->error, t->value + terms);
+        out->label = LABEL_PROVED;
+        out->enclosing = true;
+        return TW_OK;
+    } else {
+        status = panel_error(e, out, a, t, at, terms, bits);
+    }
+    if (status == TW_OK && out->label == LABEL_ESTIMATED)
+        status = estimate_error(e, out->error, a, t->contribution, at, terms);
+    return status;
+}
+
+tw_status remainder_at_as(tw_engine *e, point_bound *out, expansion *a, const env *at, slong terms, slong bits, bool sharp)
+{
+    term_table t;
+    piece_bound one;
+    tw_status status = point_complete(e, a, at);
+    bool all_enclosing = true;
+    if (status != TW_OK)
+        return status;
+    if (expansion_extend(e, a, terms + 1) != TW_OK)
+        engine_forgive(e); /* fewer terms are known: the enclosing theorem then has none to use */
+    status = terms_at(e, &t, a, at, terms + 1, false, bits + 64);
+    if (status != TW_OK)
+        return status;
+    arb_init(one.error);
+    arb_zero(out->error);
+    out->label = LABEL_EXACT;
+    for (size_t k = 0; k < t.count && status == TW_OK; k++) {
+        status = contribution_error(e, &one, a, t.list + k, at, terms, bits, sharp);
+        if (status != TW_OK)
+            break;
+        arb_add(out->error, out->error, one.error, bits + 64);
+        out->label = FLINT_MAX(out->label, one.label);
+        all_enclosing = all_enclosing && one.enclosing;
+        if (one.reason && !out->reason)
+            out->reason = base_copy(one.reason);
+    }
+    conditions_append(&out->conditions, &a->conditions);
+    if (out->label <= LABEL_PROVED && !conditions_all_sure(&a->conditions))
+        out->label = LABEL_CONDITIONAL;
+    out->manner = all_enclosing && t.count > 0 ? "enclosing" : NULL;
+    arb_clear(one.error);
+    terms_clear(&t);
+    return status;
+}
+
+tw_status remainder_at(tw_engine *e, point_bound *out, expansion *a, const env *at, slong terms, slong bits)
+{
+    return remainder_at_as(e, out, a, at, terms, bits, false);
+}
+
+tw_status power_bound_of(tw_engine *e, power_bound *out, expansion *a, size_t index, const env *at, slong terms,
+                         bool *made, slong *left, char **reason)
+{
+    const contribution *c = a->contributions + index;
+    known_problem *k;
+    arb_t S;
+    panel_report report = {0};
+    slong first;
+    expr *scale = put_values(e, c->local.scale, at);
+    tw_status status = known_problem_of(e, &k, a, index, at);
+    *made = false;
+    if (status != TW_OK)
+        return status;
+    if (!k->p) {
+        *reason = base_copy(k->reason);
+        return TW_OK;
+    }
+    arb_init(S);
+    status = real_ball(e, S, scale, 256);
+    if (status == TW_OK)
+        status = groups_kept(k->p, terms, &first, left);
+    if (status == TW_OK)
+        status = panels_for_all(k->p, first, scale, S, out, made, &report);
+    if (status == TW_OK && !*made)
+        *reason = base_copy(report.reason ? report.reason : "the machine could not prove it");
+    arb_clear(S);
+    return status;
+}
+
+tw_status groups_agree(tw_engine *e, expansion *a, size_t index, const env *at, slong terms, bool *agree)
+{
+    enum { BITS = 256 };
+    const contribution *c = a->contributions + index;
+    known_problem *k;
+    term_table t;
+    arb_t S, sum, kept;
+    slong first, left;
+    tw_status status = known_problem_of(e, &k, a, index, at);
+    if (status != TW_OK)
+        return status;
+    status = terms_at(e, &t, a, at, terms, false, BITS);
+    if (status != TW_OK)
+        return status;
+    arb_init(S);
+    arb_init(sum);
+    arb_init(kept);
+    *agree = false;
+    if (k->p) {
+        status = real_ball(e, S, put_values(e, c->local.scale, at), BITS);
+        if (status == TW_OK)
+            status = groups_kept(k->p, terms, &first, &left);
+        if (status == TW_OK)
+            status = panels_kept_sum(k->p, first, S, sum, BITS);
+        if (status == TW_OK)
+            status = real_ball(e, S, put_values(e, c->local.factor, at), BITS);
+        arb_mul(sum, sum, S, BITS);
+        for (size_t b = 0; b < t.count; b++)
+            if (t.list[b].contribution == index)
+                sum_terms(kept, t.list + b, terms - left, BITS);
+        /* both come from the same exact series: this guards against a mistake in between */
+        *agree = status == TW_OK && arb_overlaps(sum, kept);
+    }
+    arb_clear(kept);
+    arb_clear(sum);
+    arb_clear(S);
+    terms_clear(&t);
+    return status;
+}

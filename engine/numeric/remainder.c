@@ -1,0 +1,618 @@
+/* The remainder's bound as a formula in the large parameter, for all values from some on. One idea: the first omitted term where the
+ * enclosing theorem holds; else the panels' power bound with its constants rounded up to a few digits, the factor in front of the
+ * contribution carried along as it stands. */
+#include <math.h>
+#include <stdlib.h>
+#include <string.h>
+
+#include "engine/ball/decide.h"
+#include "engine/numeric/shared.h"
+#include "engine/numeric/terms.h"
+
+void remainder_bound_init(remainder_bound *r)
+{
+    memset(r, 0, sizeof *r);
+    r->label = LABEL_UNKNOWN;
+    conditions_init(&r->conditions);
+}
+
+void remainder_bound_clear(remainder_bound *r)
+{
+    free(r->source);
+    free(r->reason);
+    for (size_t k = 0; r->panel_t && k < r->panel_count; k++) {
+        free(r->panel_t[k]);
+        free(r->panel_height[k]);
+    }
+    free(r->panel_t);
+    free(r->panel_height);
+    conditions_clear(&r->conditions);
+    memset(r, 0, sizeof *r);
+}
+
+/* ---- numbers for people ---- */
+
+/* x > 0 as a rational of `digits` significant decimal digits, rounded up (or down). */
+static void short_decimal(fmpq_t out, const arb_t x, slong digits, bool up)
+{
+    arf_t bound;
+    fmpz_t mantissa, ten;
+    arb_t scaled, power;
+    slong exponent;
+    mag_t m;
+    arf_init(bound);
+    fmpz_init(mantissa);
+    fmpz_init(ten);
+    arb_init(scaled);
+    arb_init(power);
+    mag_init(m);
+    arb_get_mag(m, x);
+    fmpq_zero(out);
+    if (!mag_is_zero(m) && mag_is_finite(m)) {
+        exponent = (slong)floor(mag_get_d_log2_approx(m) * 0.30102999566398) - digits + 1;
+        arb_set_ui(power, 10);
+        arb_pow_ui(power, power, (ulong)labs(exponent), 128);
+        if (exponent >= 0)
+            arb_div(scaled, x, power, 128);
+        else
+            arb_mul(scaled, x, power, 128);
+        if (up)
+            arb_get_ubound_arf(bound, scaled, 128);
+        else
+            arb_get_lbound_arf(bound, scaled, 128);
+        arf_get_fmpz(mantissa, bound, up ? ARF_RND_CEIL : ARF_RND_FLOOR);
+        fmpz_set_ui(ten, 10);
+        fmpz_pow_ui(ten, ten, (ulong)labs(exponent));
+        fmpq_set_fmpz(out, mantissa);
+        if (exponent >= 0)
+            fmpq_mul_fmpz(out, out, ten);
+        else
+            fmpq_div_fmpz(out, out, ten);
+    }
+    mag_clear(m);
+    arb_clear(power);
+    arb_clear(scaled);
+    fmpz_clear(ten);
+    fmpz_clear(mantissa);
+    arf_clear(bound);
+}
+
+static expr *decimal_expr(tw_engine *e, const arb_t x, slong digits, bool up)
+{
+    fmpq_t q;
+    expr *made;
+    arb_t positive;
+    fmpq_init(q);
+    arb_init(positive);
+    if (arb_is_negative(x)) { /* up for a negative number: its modulus down */
+        arb_neg(positive, x);
+        short_decimal(q, positive, digits, !up);
+        fmpq_neg(q, q);
+    } else {
+        short_decimal(q, x, digits, up);
+    }
+    made = expr_fmpq(e, q);
+    arb_clear(positive);
+    fmpq_clear(q);
+    return made;
+}
+
+static char *decimal_words(const arb_t x, bool up)
+{
+    fmpq_t q;
+    arb_t y;
+    char *words;
+    fmpq_init(q);
+    arb_init(y);
+    short_decimal(q, x, 15, up);
+    arb_set_fmpq(y, q, 128);
+    words = arb_get_str(y, 15, ARB_STR_NO_RADIUS);
+    arb_clear(y);
+    fmpq_clear(q);
+    char *copy = base_copy(words);
+    flint_free(words);
+    return copy;
+}
+
+/* ---- positive factors ---- */
+
+/* |f| for an expression that is real where it stands. */
+static expr *modulus(tw_engine *e, expr *f)
+{
+    int sign = f ? decide_sign(e, f) : 2;
+    if (!f)
+        return NULL;
+    if (sign == 1 || sign == 0)
+        return f;
+    if (sign == -1)
+        return expr_neg(e, f);
+    if (f->kind == EXPR_PRODUCT) {
+        expr *product = expr_int(e, 1);
+        for (uint32_t k = 0; k < f->count; k++)
+            product = expr_mul(e, product, modulus(e, f->args[k]));
+        return product;
+    }
+    return expr_call1(e, FUNCTION_ABS, f);
+}
+
+static const env *without_large(env *out, const env *at, expr *large)
+{
+    out->count = 0;
+    out->symbols = base_alloc((at->count + 1) * sizeof *out->symbols);
+    out->values = base_alloc((at->count + 1) * sizeof *out->values);
+    for (size_t k = 0; k < at->count; k++)
+        if (at->symbols[k] != large) {
+            out->symbols[out->count] = at->symbols[k];
+            out->values[out->count++] = at->values[k];
+        }
+    return out;
+}
+
+static void env_add(env *v, expr *symbol, expr *value)
+{
+    v->symbols[v->count] = symbol;
+    v->values[v->count++] = value;
+}
+
+static void env_free(env *v)
+{
+    free(v->symbols);
+    free(v->values);
+}
+
+/* ---- how many terms, from where ---- */
+
+/* The term as a formula, with its prefactor and the parameters' values. */
+static expr *term_formula(tw_engine *e, const expansion *a, size_t k, term t, const env *values)
+{
+    expr *f = expr_mul(e, a->contributions[k].prefactor, expansion_term(e, a, k, t));
+    return f ? put_values(e, f, values) : NULL;
+}
+
+/* A value of the large parameter (or small h), two digits: from there on term `terms` of contribution k is at most the one before
+ * it, so that keeping it pays. */
+static tw_status useful_from(tw_engine *e, expr **out, expansion *a, const env *values, slong terms)
+{
+    enum { BITS = 64 };
+    double s = a->small ? 1e-6 : 1e6, best;
+    arb_t x;
+    double stride = a->small ? 1.25 : 0.8;
+    best = s;
+    arb_init(x);
+    /* down from far out while the last kept term is larger than the first omitted one */
+    for (int k = 0; k < 130; k++) {
+        term_table t;
+        env at;
+        bool fine;
+        double rounded = s;
+        tw_status status;
+        expr *value;
+        arb_set_d(x, rounded);
+        value = decimal_expr(e, x, 2, !a->small);
+        without_large(&at, values, a->large);
+        env_add(&at, a->large, value);
+        status = value ? terms_at(e, &t, a, &at, terms + 2, false, BITS) : TW_ERROR;
+        env_free(&at);
+        if (status != TW_OK) {
+            arb_clear(x);
+            return TW_ERROR;
+        }
+        fine = true;
+        for (size_t b = 0; b < t.count && fine; b++) {
+            const term_values *one = t.list + b;
+            double last, omitted = -HUGE_VAL;
+            mag_t m;
+            if (one->count <= terms || terms == 0)
+                continue;
+            mag_init(m);
+            arb_get_mag(m, one->value + terms - 1);
+            last = mag_get_d_log2_approx(m);
+            for (slong j = terms; j < one->count; j++) {
+                arb_get_mag(m, one->value + j);
+                omitted = fmax(omitted, mag_get_d_log2_approx(m));
+            }
+            fine = omitted <= last + 0.05;
+            mag_clear(m);
+        }
+        terms_clear(&t);
+        if (!fine)
+            break;
+        best = s;
+        if (a->small ? s > 1 : s < 1)
+            break;
+        s *= stride;
+    }
+    arb_set_d(x, best);
+    *out = decimal_expr(e, x, 2, !a->small);
+    arb_clear(x);
+    return *out ? TW_OK : TW_ERROR;
+}
+
+/* ---- enclosing ---- */
+
+static bool all_enclose(tw_engine *e, expansion *a, const env *at)
+{
+    bool any = false;
+    for (size_t k = 0; k < a->contribution_count; k++) {
+        if (!contribution_counts(a, k, false))
+            continue;
+        if (a->contributions[k].local.count == 0 || known_encloses(e, a, k, at) != ANSWER_YES)
+            return false;
+        any = true;
+    }
+    return any;
+}
+
+static tw_status enclosing_bound(tw_engine *e, remainder_bound *out, expansion *a, const env *values)
+{
+    expr *sum = expr_int(e, 0);
+    if (expansion_extend(e, a, out->terms + 1) != TW_OK)
+        return TW_ERROR;
+    for (size_t k = 0; k < a->contribution_count; k++) {
+        term *order = NULL;
+        slong found = 0;
+        if (!contribution_counts(a, k, false))
+            continue;
+        if (expansion_order(e, a, k, out->terms + 1, &order, &found) != TW_OK)
+            return TW_ERROR;
+        if (found > out->terms)
+            sum = expr_add(e, sum, modulus(e, term_formula(e, a, k, order[out->terms], values)));
+        free(order);
+    }
+    if (TW_BOUND_FACTOR != 1) {
+        arb_t x;
+        arb_init(x);
+        arb_set_d(x, TW_BOUND_FACTOR);
+        sum = expr_mul(e, sum, decimal_expr(e, x, 6, true));
+        arb_clear(x);
+    }
+    out->bound = sum;
+    out->label = LABEL_PROVED;
+    out->manner = "enclosing";
+    out->source = base_copy("the amplitude is completely monotone, so that each partial sum encloses (Olver 1974, ch. 3)");
+    return sum ? TW_OK : TW_ERROR;
+}
+
+/* ---- panels ---- */
+
+/* scale^r as a formula: constants as a ball into *front, the rest as an expression. */
+static tw_status scale_power(tw_engine *e, arb_t front, expr **rest, expr *scale, expr *r, expr *large)
+{
+    expr *base, *exponent, *constant = expr_int(e, 1), *power = expr_int(e, 0);
+    expr *const *parts;
+    size_t n = expr_factors(&scale, &parts);
+    for (size_t k = 0; k < n; k++) {
+        expr_as_power(e, parts[k], &base, &exponent);
+        if (base == large)
+            power = expr_add(e, power, exponent);
+        else
+            constant = expr_mul(e, constant, parts[k]);
+    }
+    *rest = expr_pow(e, large, expr_mul(e, power, r));
+    if (!*rest || expr_has(constant, large))
+        return engine_fail(e, ERROR_INTERNAL, "the scale is no power of the large parameter");
+    return real_ball(e, front, expr_pow(e, constant, r), 128);
+}
+
+/* The constants of |factor| into *front, the rest as an expression. */
+static tw_status factor_modulus(tw_engine *e, arb_t front, expr **rest, expr *factor, expr *large)
+{
+    expr *constant = expr_int(e, 1), *moving = expr_int(e, 1);
+    expr *const *parts;
+    size_t n = expr_factors(&factor, &parts);
+    for (size_t k = 0; k < n; k++)
+        if (expr_has(parts[k], large))
+            moving = expr_mul(e, moving, parts[k]);
+        else
+            constant = expr_mul(e, constant, parts[k]);
+    *rest = modulus(e, moving);
+    if (!*rest)
+        return TW_ERROR;
+    if (real_ball(e, front, constant, 128) != TW_OK)
+        return TW_ERROR;
+    arb_abs(front, front);
+    return TW_OK;
+}
+
+static bool from_one(const arb_t S0)
+{
+    arb_t one;
+    bool yes;
+    arb_init(one);
+    arb_one(one);
+    yes = arb_ge(S0, one);
+    arb_clear(one);
+    return yes;
+}
+
+/* The exponent alpha as an exact expression: it comes from exact rationals with small denominators, so it is recognised from a
+ * ball of some hundred bits; *exact false: an irrational one, made a little smaller, which is weaker for S >= 1. */
+static expr *alpha_expr(tw_engine *e, const power_bound *b, bool *exact)
+{
+    fmpq_t q;
+    expr *made = NULL;
+    fmpq_init(q);
+    for (slong d = 1; d <= 4096 && !made; d++) {
+        arb_t x;
+        fmpz_t n;
+        arb_init(x);
+        fmpz_init(n);
+        arb_mul_si(x, b->alpha, d, 256);
+        if (arb_get_unique_fmpz(n, x) && mag_cmp_2exp_si(arb_radref(x), -60) < 0) {
+            arb_t check;
+            arb_init(check);
+            arb_sub_fmpz(check, x, n, 256);
+            if (arb_contains_zero(check)) {
+                fmpq_set_fmpz(q, n);
+                fmpq_div_fmpz(q, q, (fmpz[]){d});
+                made = expr_fmpq(e, q);
+            }
+            arb_clear(check);
+        }
+        fmpz_clear(n);
+        arb_clear(x);
+    }
+    *exact = made != NULL;
+    if (!made)
+        made = decimal_expr(e, b->alpha, 8, false);
+    fmpq_clear(q);
+    return made;
+}
+
+static bool exponent_exact(tw_engine *e, const power_bound *b)
+{
+    bool exact;
+    return alpha_expr(e, b, &exact) && exact;
+}
+
+static tw_status add_power_bound(tw_engine *e, expr **sum, const power_bound *b, expr *scale, expr *factor, expr *s0, expr *end_t,
+                                 expr *large)
+{
+    arb_t front, power, c;
+    bool exact;
+    expr *factor_rest, *alpha = alpha_expr(e, b, &exact), *scale0 = expr_substitute(e, scale, large, s0);
+    tw_status status = TW_OK;
+    slong K = b->K;
+    arb_init(front);
+    arb_init(power);
+    arb_init(c);
+    status = alpha ? factor_modulus(e, front, &factor_rest, factor, large) : TW_ERROR;
+    for (slong i = 0; i <= K && status == TW_OK; i++) {
+        expr *rest, *inner = expr_int(e, 0);
+        status = scale_power(e, power, &rest, scale, expr_neg(e, expr_add(e, alpha, expr_int(e, i))), large);
+        if (status != TW_OK)
+            break;
+        for (slong j = K; j >= 0; j--) {
+            expr *log_part = j ? expr_pow(e, expr_call1(e, FUNCTION_LOG, scale), expr_int(e, j)) : expr_int(e, 1);
+            if (arb_is_zero(b->table + i * (K + 1) + j))
+                continue;
+            arb_mul(c, b->table + i * (K + 1) + j, power, 128);
+            arb_mul(c, c, front, 128);
+            inner = expr_add(e, inner, expr_mul(e, decimal_expr(e, c, 4, true), log_part));
+        }
+        *sum = expr_add(e, *sum, expr_mul(e, inner, expr_mul(e, rest, factor_rest)));
+        if (!*sum)
+            status = TW_ERROR;
+    }
+    if (status == TW_OK && !arb_is_zero(b->end)) {
+        expr *fall = expr_call1(e, FUNCTION_EXP, expr_neg(e, expr_mul(e, expr_sub(e, scale, scale0), end_t)));
+        arb_mul(c, b->end, front, 128);
+        *sum = expr_add(e, *sum, expr_mul(e, expr_mul(e, decimal_expr(e, c, 4, true), factor_rest), fall));
+        if (!*sum)
+            status = TW_ERROR;
+    }
+    arb_clear(c);
+    arb_clear(power);
+    arb_clear(front);
+    return status;
+}
+
+static void keep_steps(tw_engine *e, remainder_bound *out, const power_bound *b)
+{
+    bool exact;
+    if (b->step_count == 0 || out->panel_t)
+        return;
+    out->panel_count = (size_t)b->step_count + 1;
+    out->panel_t = base_alloc(out->panel_count * sizeof(char *));
+    out->panel_height = base_alloc(out->panel_count * sizeof(char *));
+    /* a joint is rounded towards its lower step, so that the higher one loses no width */
+    for (slong k = 0; k <= b->step_count; k++) {
+        arb_t h;
+        arb_init(h);
+        if (k < b->step_count)
+            arb_set(h, b->step_height + k);
+        out->panel_t[k] = decimal_words(b->step_t + k, false);
+        if (k > 0 && k < b->step_count && arb_gt(b->step_height + k - 1, h)) {
+            free(out->panel_t[k]);
+            out->panel_t[k] = decimal_words(b->step_t + k, true);
+        }
+        out->panel_height[k] = decimal_words(h, true);
+        arb_clear(h);
+    }
+    free(out->panel_t[b->step_count]);
+    out->panel_t[b->step_count] = decimal_words(b->step_t + b->step_count, true);
+    out->panel_power = expr_sub(e, alpha_expr(e, b, &exact), expr_int(e, 1));
+}
+
+/* The exact height of the last end, p(end), as an expression in the problem's own terms. */
+static expr *end_height(tw_engine *e, const local_form *l, const env *values)
+{
+    expr *height = NULL;
+    for (size_t k = 0; k < l->count; k++) {
+        const branch *b = l->branches + k;
+        expr *t;
+        if (expr_is_inf(b->end))
+            return NULL;
+        t = put_values(e, expr_substitute(e, b->p, b->x, b->end), values);
+        height = height && height != t ? NULL : t;
+        if (!height)
+            return NULL;
+    }
+    return height;
+}
+
+static tw_status panel_bound(tw_engine *e, remainder_bound *out, expansion *a, size_t index, const env *at, const env *values,
+                             expr **sum)
+{
+    const contribution *c = a->contributions + index;
+    power_bound b;
+    bool made = false, agree = false;
+    slong left = 0;
+    char *reason = NULL;
+    tw_status status;
+    power_bound_init(&b);
+    status = power_bound_of(e, &b, a, index, at, out->terms, &made, &left, &reason);
+    if (status == TW_OK && made)
+        status = groups_agree(e, a, index, at, out->terms, &agree);
+    if (status == TW_OK && made && !agree) {
+        made = false;
+        reason = base_copy("the terms do not group as the machine keeps them");
+    }
+    if (status == TW_OK && made && (b.K > 0 || !exponent_exact(e, &b)) && !from_one(b.S0)) {
+        made = false;
+        reason = base_copy("the bound with logarithms or an irrational power holds from scale 1 on only");
+    }
+    if (status == TW_OK && made) {
+        expr *end = end_height(e, &c->local, values), *large = a->large, *s0 = out->from;
+        if (!end && !arb_is_zero(b.end))
+            end = decimal_expr(e, b.end_t, 12, false);
+        status = add_power_bound(e, sum, &b, put_values(e, c->local.scale, values), put_values(e, c->local.factor, values), s0, end,
+                                 large);
+        keep_steps(e, out, &b);
+    }
+    for (slong k = 0; k < left && status == TW_OK && made; k++) { /* kept terms beyond whole groups */
+        term *order = NULL;
+        slong found = 0;
+        status = expansion_order(e, a, index, out->terms, &order, &found);
+        if (status == TW_OK && out->terms - 1 - k < found && out->terms - 1 - k >= 0)
+            *sum = expr_add(e, *sum, modulus(e, term_formula(e, a, index, order[out->terms - 1 - k], values)));
+        free(order);
+    }
+    if (status == TW_OK && !made) {
+        out->label = LABEL_ESTIMATED;
+        if (!out->reason)
+            out->reason = reason, reason = NULL;
+    }
+    free(reason);
+    power_bound_clear(&b);
+    return status;
+}
+
+/* Not proved: three times the first omitted terms, as a formula. */
+static tw_status estimated_bound(tw_engine *e, remainder_bound *out, expansion *a, const env *values)
+{
+    expr *sum = expr_int(e, 0);
+    if (expansion_extend(e, a, out->terms + 2) != TW_OK)
+        return TW_ERROR;
+    for (size_t k = 0; k < a->contribution_count; k++) {
+        term *order = NULL;
+        slong found = 0;
+        if (!contribution_counts(a, k, false))
+            continue;
+        if (expansion_order(e, a, k, out->terms + 2, &order, &found) != TW_OK)
+            return TW_ERROR;
+        for (slong j = out->terms; j < found; j++)
+            sum = expr_add(e, sum, expr_mul(e, expr_int(e, 3), modulus(e, term_formula(e, a, k, order[j], values))));
+        free(order);
+    }
+    out->bound = sum;
+    out->source = base_copy("three times the next omitted terms");
+    return sum ? TW_OK : TW_ERROR;
+}
+
+static tw_status panels_everywhere(tw_engine *e, remainder_bound *out, expansion *a, const env *values)
+{
+    env at;
+    expr *sum = expr_int(e, 0);
+    tw_status status = TW_OK;
+    without_large(&at, values, a->large);
+    env_add(&at, a->large, out->from);
+    out->label = LABEL_PROVED;
+    for (size_t k = 0; k < a->contribution_count && status == TW_OK && out->label == LABEL_PROVED; k++)
+        if (contribution_counts(a, k, false) && !(a->contributions[k].terminates && a->exact)) {
+            if (a->contributions[k].local.count == 0) {
+                out->label = LABEL_ESTIMATED;
+                out->reason = base_copy("the contribution has no integral of its own");
+            } else {
+                status = panel_bound(e, out, a, k, &at, values, &sum);
+            }
+        }
+    env_free(&at);
+    if (status != TW_OK)
+        return status;
+    if (out->label == LABEL_ESTIMATED)
+        return estimated_bound(e, out, a, values);
+    out->bound = sum;
+    out->source = base_copy("bounds of the amplitude's remainder on panels, computed in ball arithmetic");
+    return sum ? TW_OK : TW_ERROR;
+}
+
+/* A parameter of the expansion without a value, or NULL. */
+static const char *missing_parameter(const expansion *a, const env *at)
+{
+    expr **symbols;
+    size_t n = expr_symbols(a->integral, &symbols);
+    const char *name = NULL;
+    for (size_t k = 0; k < n && !name; k++) {
+        bool known = symbols[k] == a->large;
+        for (size_t j = 0; j < at->count; j++)
+            known = known || at->symbols[j] == symbols[k];
+        if (!known)
+            name = symbols[k]->is.name;
+    }
+    free(symbols);
+    return name;
+}
+
+static tw_status default_terms(tw_engine *e, remainder_bound *out, expansion *a, const env *values, expr *s0)
+{
+    env at;
+    slong least;
+    tw_status status = TW_OK;
+    out->terms = a->terms_asked;
+    if (!s0 || missing_parameter(a, values))
+        return TW_OK;
+    without_large(&at, values, a->large);
+    env_add(&at, a->large, s0);
+    status = best_terms(e, a, &at, a->terms_asked, &out->terms, &least);
+    env_free(&at);
+    return status;
+}
+
+tw_status remainder_for_all(tw_engine *e, remainder_bound *out, expansion *a, const env *at, slong terms, expr *s0)
+{
+    env values;
+    const char *missing;
+    tw_status status = TW_OK;
+    without_large(&values, at, a->large);
+    out->terms = terms;
+    out->from = s0;
+    conditions_append(&out->conditions, &a->conditions);
+    if (terms < 0)
+        status = default_terms(e, out, a, &values, s0);
+    missing = missing_parameter(a, &values);
+    if (status != TW_OK) {
+    } else if (a->exact && out->terms >= a->terms_asked) {
+        out->label = LABEL_EXACT;
+        out->bound = expr_int(e, 0);
+    } else if (all_enclose(e, a, &values)) {
+        status = enclosing_bound(e, out, a, &values);
+    } else if (missing) {
+        text words;
+        text_init(&words);
+        text_addf(&words, "the parameter %s has no value; with a value the bound can be computed", missing);
+        out->reason = text_take(&words);
+        out->label = LABEL_UNKNOWN;
+    } else {
+        if (!s0 && expansion_extend(e, a, out->terms + 2) != TW_OK)
+            status = TW_ERROR;
+        if (!s0 && status == TW_OK)
+            status = useful_from(e, &out->from, a, &values, out->terms);
+        if (status == TW_OK)
+            status = panels_everywhere(e, out, a, &values);
+    }
+    if (status == TW_OK && out->label == LABEL_PROVED && !conditions_all_sure(&out->conditions))
+        out->label = LABEL_CONDITIONAL;
+    env_free(&values);
+    return status;
+}

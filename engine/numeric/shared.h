@@ -1,0 +1,30 @@
+/* What bound.c, remainder.c and evaluate.c share. Private to engine/numeric. */
+#ifndef TW_NUMERIC_SHARED_H
+#define TW_NUMERIC_SHARED_H
+
+#include "engine/numeric/panels.h"
+
+/* Tests build with -DTW_BOUND_FACTOR=0.3 to see that a wrong bound is noticed. */
+#ifndef TW_BOUND_FACTOR
+#define TW_BOUND_FACTOR 1
+#endif
+
+/* Does the enclosing theorem hold for the contribution at these values? */
+answer known_encloses(tw_engine *e, expansion *a, size_t index, const env *at);
+
+/* As remainder_at; sharp: by panels even where the enclosing theorem holds, because they come closer. */
+tw_status remainder_at_as(tw_engine *e, point_bound *out, expansion *a, const env *at, slong terms, slong bits, bool sharp);
+
+/* The panels' bound for all S from the scale at this point on; *left: kept terms beyond whole groups, to be added to it. *made
+ * false: *reason, fresh words, says why. */
+tw_status power_bound_of(tw_engine *e, power_bound *out, expansion *a, size_t index, const env *at, slong terms,
+                         bool *made, slong *left, char **reason);
+
+/* Are the machine's kept groups and the expansion's kept terms the same sum, as far as balls see at this point? */
+tw_status groups_agree(tw_engine *e, expansion *a, size_t index, const env *at, slong terms, bool *agree);
+
+/* The number of terms with the least bound by the envelope of the terms at the point, at most `most`; *least: index of the least
+ * term. */
+tw_status best_terms(tw_engine *e, expansion *a, const env *at, slong most, slong *terms, slong *least);
+
+#endif
