@@ -12,7 +12,7 @@
 /* |f(x)| <= exp(log_C) * x^a * (log x)^k * exp(-b x^c)  for all real x >= X (b may be negative: growth; c > 0 or b = 0). */
 typedef struct growth_bound {
     arf_t X;
-    arb_t log_C; /* kept as a logarithm: C itself may leave every exponent range */
+    arb_t log_C; /* kept as a logarithm: C itself may leave every exponent range; a negative infinity: f is 0 */
     fmpq_t a, c;
     slong k;
     arb_t b;
@@ -21,11 +21,26 @@ typedef struct growth_bound {
 void growth_bound_init(growth_bound *g);
 void growth_bound_clear(growth_bound *g);
 
-/* A bound of f as x -> +inf along the real axis, all parameters in `at` substituted, valid from some X >= X_wanted on.
+/* A bound of f as x -> +inf along the real axis, all parameters in `at` substituted, valid from some X >= X_wanted on (X is
+ * at least 4, and greater where the bound would not be integrable otherwise, if that helps).
  * TW_ERROR with ERROR_UNDECIDED when no record can be made (the words say which part of f resists). */
 tw_status growth_at_infinity(tw_engine *e, growth_bound *out, expr *f, expr *x, const env *at, double X_wanted);
 
 /* Upper bound of int_X^inf of the bound; ERROR_DIVERGENT if it does not converge (bound not integrable). As log. */
 tw_status growth_tail(tw_engine *e, arb_t log_tail, const growth_bound *g);
+
+/* The same in two steps, for several X: f closed but for x. growth_run gives the record at X (an exact number > e); false: none
+ * found there. After a successful run growth_diverges says whether f is proved not to be integrable at infinity (in modulus
+ * and without: its values stay in a half-plane). growth_resists is the part of f that failed in the last run. */
+typedef struct growth_program growth_program;
+growth_program *growth_compile(tw_engine *e, expr *f, expr *x);
+bool growth_run(growth_program *t, growth_bound *out, const arf_t X);
+bool growth_diverges(const growth_program *t);
+expr *growth_resists(const growth_program *t);
+void growth_free(growth_program *t);
+/* Can the bound be integrated to infinity? */
+bool growth_integrable(const growth_bound *g);
+/* Bounds of the last run's value for tests: the real and imaginary parts of f(x), x >= X, by the two-sided record. */
+void growth_value(acb_t value, const growth_program *t, const arb_t x, slong prec);
 
 #endif
