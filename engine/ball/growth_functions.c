@@ -151,9 +151,34 @@ static bool times_i(growth_record *out, const growth_record *u, int sign, const 
     return ok;
 }
 
-static void minus_sin(acb_t out, const acb_t z, slong prec)
+/* f even with f(0) = 1, f of something decaying: 1 + w^2 h, h in f''(star)/2. */
+static bool near_zero_even(growth_record *out, const growth_record *u, void (*second)(acb_t, const acb_t, slong),
+                           const growth_place *p)
 {
-    acb_sin(out, z, prec);
+    if (!record_decays(u))
+        return false;
+    growth_record square;
+    acb_t star;
+    fmpq_t one;
+    record_init(&square);
+    acb_init(star);
+    fmpq_init(one);
+    fmpq_one(one);
+    bool ok = record_star(star, u, p) && record_mul(&square, u, u, p);
+    if (ok) {
+        second(star, star, p->prec);
+        acb_mul_2exp_si(star, star, -1);
+        ok = record_near(out, one, &square, star, p);
+    }
+    record_clear(&square);
+    acb_clear(star);
+    fmpq_clear(one);
+    return ok;
+}
+
+static void minus_cos(acb_t out, const acb_t z, slong prec)
+{
+    acb_cos(out, z, prec);
     acb_neg(out, out);
 }
 
@@ -174,7 +199,7 @@ static bool growth_sin(growth_record *out, const growth_record *u, const growth_
 
 static bool growth_cos(growth_record *out, const growth_record *u, const growth_place *p)
 {
-    if (near_zero(out, 1, u, minus_sin, p) || bounded_value(out, u, acb_cos, p))
+    if (near_zero_even(out, u, minus_cos, p) || bounded_value(out, u, acb_cos, p))
         return true;
     if (record_is_real(u)) {
         set_unit_interval(out);
@@ -194,7 +219,7 @@ static bool growth_sinh(growth_record *out, const growth_record *u, const growth
 
 static bool growth_cosh(growth_record *out, const growth_record *u, const growth_place *p)
 {
-    return near_zero(out, 1, u, acb_sinh, p) || bounded_value(out, u, acb_cosh, p) || half_exponentials(out, u, 1, p);
+    return near_zero_even(out, u, acb_cosh, p) || bounded_value(out, u, acb_cosh, p) || half_exponentials(out, u, 1, p);
 }
 
 static void sech_squared(acb_t out, const acb_t z, slong prec)
