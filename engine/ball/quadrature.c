@@ -1,3 +1,563 @@
+/* Certified quadrature as others see it: an expression that may hold integrals, its value as a ball of the relative accuracy
+ * that was asked. This file splits ranges into pieces, adds the pieces up, and tries again with another tolerance or precision
+ * until the sum is good enough; what one piece is and how it is integrated is quadrature_piece.c. Knows no methods.
+ *
+ * The one idea: accuracy is relative, so a guess of the size comes first (a scan), a ball second; that ball then gives a
+ * proved lower bound of the size, and the tolerance of the next attempt where one is needed. */
 #include "engine/ball/quadrature.h"
+
+#include <math.h>
+#include <stdlib.h>
+#include <string.h>
+#include <time.h>
+
+#include "engine/ball/quadrature_kinks.h"
+#include "engine/ball/quadrature_piece.h"
+
+enum { ATTEMPTS = 24, GUARD_BITS = 12, GAP_LIMIT = 4200, TEXT_LIMIT = 60 };
+
+/* One integral: a sum of pieces, each with a sign or factor, and thin slices around points that are known only closely. */
+typedef struct quad_slice {
+    tape *values;
+    arb_t place;
+} quad_slice;
+
+typedef struct quad_sum {
+    tw_engine *e;
+    quad_piece *pieces;
+    slong *factors;
+    char **names;
+    size_t count, room, name_count;
+    quad_slice *slices;
+    size_t slice_count;
+    slong evaluations, bits;
+} quad_sum;
+
+static void sum_clear(quad_sum *s)
+{
+    for (size_t k = 0; k < s->count; k++)
+        quad_piece_clear(&s->pieces[k]);
+    for (size_t k = 0; k < s->name_count; k++)
+        free(s->names[k]);
+    for (size_t k = 0; k < s->slice_count; k++) {
+        tape_free(s->slices[k].values);
+        arb_clear(s->slices[k].place);
+    }
+    free(s->slices);
+    free(s->pieces);
+    free(s->factors);
+    free(s->names);
+}
+
+/* ---- from a range to pieces ---- */
+
+/* Words for a point of the range; owned by the sum. */
+static const char *point_words(quad_sum *s, expr *x)
+{
+    char *words = expr_text(s->e, x);
+    if (words && strlen(words) > TEXT_LIMIT) {
+        acb_t v;
+        acb_init(v);
+        if (ball_value(s->e, v, x, 64) == TW_OK) {
+            char *digits = arb_get_str(acb_realref(v), 8, ARB_STR_NO_RADIUS);
+            free(words);
+            words = base_copy(digits);
+            flint_free(digits);
+        }
+        acb_clear(v);
+    }
+    s->names = base_resize(s->names, (s->name_count + 1) * sizeof *s->names);
+    return s->names[s->name_count++] = words ? words : base_copy("an end");
+}
+
+/* Takes g(y), y > 0, up to `length` (NULL: infinite). */
+static tw_status add_piece(quad_sum *s, slong factor, expr *g, expr *y, expr *length, const char *from, const char *to)
+{
+    if (!g)
+        return TW_ERROR;
+    if (expr_is_zero(g))
+        return TW_OK;
+    if (s->count == s->room) {
+        s->room = s->room ? 2 * s->room : 4;
+        s->pieces = base_resize(s->pieces, s->room * sizeof *s->pieces);
+        s->factors = base_resize(s->factors, s->room * sizeof *s->factors);
+    }
+    s->factors[s->count] = factor;
+    return quad_piece_init(&s->pieces[s->count++], s->e, g, y, length, from, to);
+}
+
+/* f(from + y) or f(from - y). */
+static expr *moved(tw_engine *e, expr *f, expr *x, expr *from, expr *y, bool backwards)
+{
+    return expr_substitute(e, f, x, backwards ? expr_sub(e, from, y) : expr_add(e, from, y));
+}
+
+static bool end_is_regular(tw_engine *e, expr *f, expr *x, expr *from, bool backwards, double log2_length)
+{
+    expr *y = expr_fresh(e, "y"), *g = moved(e, f, x, from, y, backwards);
+    tape *values = g ? tape_new(e, g, &y, 1) : NULL;
+    bool regular = values && quad_is_regular(values, log2_length);
+    tape_free(values);
+    return regular;
+}
+
+static double log2_length(tw_engine *e, expr *length)
+{
+    acb_t v;
+    mag_t m;
+    acb_init(v);
+    mag_init(m);
+    double out = 0;
+    if (ball_value(e, v, length, 64) == TW_OK) {
+        acb_get_mag(m, v);
+        out = mag_is_zero(m) ? -1000 : mag_get_d_log2_approx(m);
+    }
+    acb_clear(v);
+    mag_clear(m);
+    return out;
+}
+
+/* A range without interior kinks, from < to. */
+static tw_status add_range(quad_sum *s, slong factor, expr *f, expr *x, expr *from, expr *to)
+{
+    tw_engine *e = s->e;
+    expr *y = expr_fresh(e, "y");
+    if (!f || !from || !to)
+        return TW_ERROR;
+    const char *a = point_words(s, from), *b = point_words(s, to);
+    if (expr_is_minus_inf(from) && expr_is_inf(to)) {
+        expr *right = expr_substitute(e, f, x, y), *left = expr_substitute(e, f, x, expr_neg(e, y));
+        const char *zero = point_words(s, expr_int(e, 0));
+        if (right && right == left)
+            return add_piece(s, 2 * factor, right, y, NULL, zero, b);
+        tw_status status = add_piece(s, factor, right, y, NULL, zero, b);
+        return status == TW_OK ? add_piece(s, factor, left, y, NULL, zero, a) : status;
+    }
+    if (expr_is_inf(to))
+        return add_piece(s, factor, moved(e, f, x, from, y, false), y, NULL, a, b);
+    if (expr_is_minus_inf(from))
+        return add_piece(s, factor, moved(e, f, x, to, y, true), y, NULL, b, a);
+    expr *length = expr_sub(e, to, from);
+    if (!length)
+        return TW_ERROR;
+    double size = log2_length(e, length);
+    if (end_is_regular(e, f, x, to, true, size))
+        return add_piece(s, factor, moved(e, f, x, from, y, false), y, length, a, b);
+    if (end_is_regular(e, f, x, from, false, size))
+        return add_piece(s, factor, moved(e, f, x, to, y, true), y, length, b, a);
+    expr *half = expr_mul(e, expr_frac(e, 1, 2), length);
+    const char *middle = point_words(s, expr_add(e, from, half));
+    tw_status status = add_piece(s, factor, moved(e, f, x, from, y, false), y, half, a, middle);
+    return status == TW_OK ? add_piece(s, factor, moved(e, f, x, to, y, true), y, half, b, middle) : status;
+}
+
+static void add_slice(quad_sum *s, expr *f, expr *x, const arb_t place)
+{
+    s->slices = base_resize(s->slices, (s->slice_count + 1) * sizeof *s->slices);
+    s->slices[s->slice_count].values = tape_new(s->e, f, &x, 1);
+    arb_init(s->slices[s->slice_count].place);
+    arb_set(s->slices[s->slice_count++].place, place);
+}
+
+/* A number inside (from, to): the middle, or a point at distance 1 of a finite end. */
+static void inner_point(arf_t out, const arb_t from, bool from_infinite, const arb_t to, bool to_infinite)
+{
+    arb_t t;
+    arb_init(t);
+    if (from_infinite && to_infinite)
+        arb_zero(t);
+    else if (from_infinite)
+        arb_sub_ui(t, to, 1, 64);
+    else if (to_infinite)
+        arb_add_ui(t, from, 1, 64);
+    else {
+        arb_add(t, from, to, 256);
+        arb_mul_2exp_si(t, t, -1);
+    }
+    arf_set(out, arb_midref(t));
+    arb_clear(t);
+}
+
+/* The range cut at the integrand's kinks and branch points. */
+static tw_status add_with_kinks(quad_sum *s, slong factor, expr *f, expr *x, expr *from, expr *to, const arb_t a, const arb_t b,
+                                slong prec)
+{
+    tw_engine *e = s->e;
+    bool low_infinite = expr_is_minus_inf(from), high_infinite = expr_is_inf(to);
+    quad_points points;
+    arf_t inside;
+    quad_points_init(&points);
+    arf_init(inside);
+    tw_status status = quad_points_find(&points, e, f, x, a, low_infinite, b, high_infinite, prec);
+    expr *start = from;
+    for (size_t k = 0; status == TW_OK && k <= points.count; k++) {
+        bool last = k == points.count;
+        inner_point(inside, k ? points.list[k - 1].place : a, !k && low_infinite, last ? b : points.list[k].place,
+                    last && high_infinite);
+        expr *g = quad_resolve(e, f, x, inside);
+        expr *end = last ? to : points.list[k].low;
+        status = g ? add_range(s, factor, g, x, start, end) : TW_ERROR;
+        if (!last) {
+            start = points.list[k].high;
+            if (points.list[k].low != points.list[k].high)
+                add_slice(s, f, x, points.list[k].place);
+        }
+    }
+    quad_points_clear(&points);
+    arf_clear(inside);
+    return status;
+}
+
+/* The value of an end as a real ball; infinite ends give zero. */
+static tw_status end_value(tw_engine *e, arb_t out, expr *end)
+{
+    if (expr_is_inf(end) || expr_is_minus_inf(end))
+        return TW_OK;
+    acb_t v;
+    acb_init(v);
+    tw_status status = ball_value(e, v, end, 256);
+    if (status == TW_OK && (!acb_is_finite(v) || !arb_contains_zero(acb_imagref(v))))
+        status = engine_fail(e, ERROR_UNSUITABLE, "quadrature needs real ends");
+    arb_set(out, acb_realref(v));
+    acb_clear(v);
+    return status;
+}
+
+static bool holds_integral(expr *f)
+{
+    if (f->kind == EXPR_INTEGRAL || f->kind == EXPR_CONTOUR)
+        return true;
+    for (uint32_t k = 0; k < f->count; k++)
+        if (holds_integral(f->args[k]))
+            return true;
+    return false;
+}
+
+/* +1: from < to, -1: from > to, 0: equal. */
+static tw_status range_order(tw_engine *e, expr *from, expr *to, const arb_t a, const arb_t b, int *order)
+{
+    bool low = expr_is_minus_inf(from) || expr_is_inf(to), high = expr_is_inf(from) || expr_is_minus_inf(to);
+    *order = from == to ? 0 : low ? 1 : high || arb_gt(a, b) ? -1 : 1;
+    if (!low && !high && from != to && !arb_lt(a, b) && !arb_gt(a, b))
+        return engine_fail(e, ERROR_UNDECIDED, "the order of the ends of the range could not be decided");
+    return TW_OK;
+}
+
+static tw_status sum_build(quad_sum *s, expr *integral, slong prec)
+{
+    tw_engine *e = s->e;
+    expr *from = integral->args[0], *to = integral->args[1], *x = expr_fresh(e, expr_binder_name(integral));
+    expr *f = expr_open(e, integral, x);
+    if (!f)
+        return TW_ERROR;
+    if (holds_integral(f) || holds_integral(from) || holds_integral(to))
+        return engine_fail(e, ERROR_UNSUITABLE, "quadrature takes one integral at a time: the integrand or an end holds another");
+    arb_t a, b;
+    arb_init(a);
+    arb_init(b);
+    int order = 0;
+    tw_status status = end_value(e, a, from);
+    if (status == TW_OK)
+        status = end_value(e, b, to);
+    if (status == TW_OK)
+        status = range_order(e, from, to, a, b, &order);
+    if (status == TW_OK && order && from == expr_neg(e, to)) { /* parity */
+        expr *mirrored = expr_substitute(e, f, x, expr_neg(e, x));
+        if (mirrored && mirrored == expr_neg(e, f)) { /* 0, once the half is seen to converge */
+            status = order > 0 ? add_with_kinks(s, 0, f, x, expr_int(e, 0), to, b, b, prec)
+                               : add_with_kinks(s, 0, f, x, expr_int(e, 0), from, a, a, prec);
+            order = 0;
+        }
+    }
+    if (status == TW_OK && order > 0)
+        status = add_with_kinks(s, 1, f, x, from, to, a, b, prec);
+    else if (status == TW_OK && order < 0)
+        status = add_with_kinks(s, -1, f, x, to, from, b, a, prec);
+    arb_clear(a);
+    arb_clear(b);
+    return status;
+}
+
+/* ---- attempts ---- */
+
+/* Bits of relative accuracy: log2(|value|/radius), from a proved lower bound; less than 0 where the ball holds 0. */
+static slong accuracy(const acb_t v)
+{
+    arf_t low, radius;
+    mag_t m;
+    arf_init(low);
+    arf_init(radius);
+    mag_init(m);
+    acb_get_abs_lbound_arf(low, v, 64);
+    mag_hypot(m, arb_radref(acb_realref(v)), arb_radref(acb_imagref(v)));
+    arf_set_mag(radius, m);
+    slong bits = -1;
+    if (arf_is_zero(radius))
+        bits = WORD_MAX / 4;
+    else if (arf_sgn(low) > 0) {
+        arf_div(low, low, radius, 30, ARF_RND_FLOOR);
+        bits = arf_cmp_si(low, 1) < 0 ? -1 : arf_abs_bound_lt_2exp_si(low) - 1;
+    }
+    arf_clear(low);
+    arf_clear(radius);
+    mag_clear(m);
+    return bits;
+}
+
+static double log2_upper(const acb_t v)
+{
+    mag_t m;
+    mag_init(m);
+    acb_get_mag(m, v);
+    double out = mag_is_zero(m) ? -1e300 : mag_get_d_log2_approx(m);
+    mag_clear(m);
+    return out;
+}
+
+static double log2_radius(const acb_t v)
+{
+    mag_t m;
+    mag_init(m);
+    mag_hypot(m, arb_radref(acb_realref(v)), arb_radref(acb_imagref(v)));
+    double out = mag_is_zero(m) ? -1e300 : mag_get_d_log2_approx(m);
+    mag_clear(m);
+    return out;
+}
+
+/* The thin slices around closely known points: width times the values there. */
+static void add_slices(quad_sum *s, acb_t value, slong prec)
+{
+    acb_t x, v;
+    arf_t width, zero;
+    arb_t factor;
+    acb_init(x);
+    acb_init(v);
+    arf_init(width);
+    arf_init(zero);
+    arb_init(factor);
+    for (size_t k = 0; k < s->slice_count; k++) {
+        if (!s->slices[k].values) {
+            acb_indeterminate(value);
+            continue;
+        }
+        arb_set(acb_realref(x), s->slices[k].place);
+        tape_eval(v, s->slices[k].values, x, false, prec);
+        arf_set_mag(width, arb_radref(s->slices[k].place));
+        arf_mul_2exp_si(width, width, 1);
+        arb_set_interval_arf(factor, zero, width, prec);
+        acb_mul_arb(v, v, factor, prec);
+        acb_add(value, value, v, prec);
+    }
+    acb_clear(x);
+    acb_clear(v);
+    arf_clear(width);
+    arf_clear(zero);
+    arb_clear(factor);
+}
+
+static tw_status sum_attempt(quad_sum *s, acb_t value, double log2_size, slong goal, slong prec)
+{
+    acb_t part;
+    acb_init(part);
+    acb_zero(value);
+    tw_status status = TW_OK;
+    slong tolerance = (slong)floor(log2_size) - goal - 2 - (slong)FLINT_BIT_COUNT(s->count);
+    engine_progress(s->e, "quadrature");
+    for (size_t k = 0; status == TW_OK && k < s->count; k++) {
+        if (!s->factors[k])
+            continue;
+        status = quad_piece_integrate(&s->pieces[k], part, tolerance, goal + 2, prec);
+        acb_addmul_si(value, part, s->factors[k], prec);
+        if (status == TW_OK && !acb_is_finite(part))
+            status = engine_fail(s->e, ERROR_UNDECIDED, "no finite enclosure between %s and %s: the integrand may have a pole there",
+                                 s->pieces[k].from, s->pieces[k].to);
+    }
+    if (status == TW_OK)
+        add_slices(s, value, prec);
+    acb_clear(part);
+    return status;
+}
+
+static double seconds_now(void)
+{
+    struct timespec t;
+    clock_gettime(CLOCK_MONOTONIC, &t);
+    return (double)t.tv_sec + 1e-9 * (double)t.tv_nsec;
+}
+
+/* The value of one integral to `goal` relative bits. On TW_OK with *reached < goal the ball is the best that was found. */
+static tw_status integral_value(quad_sum *s, acb_t value, slong goal, slong *reached)
+{
+    double size = -1e300, first;
+    slong lost = 0;
+    for (size_t k = 0; k < s->count; k++) {
+        if (s->factors[k] && s->pieces[k].scan.log2_mass > size)
+            size = s->pieces[k].scan.log2_mass;
+        if (s->pieces[k].scan.lost > lost)
+            lost = s->pieces[k].scan.lost;
+    }
+    acb_zero(value);
+    *reached = WORD_MAX / 4;
+    if (size < -1e299)
+        return TW_OK;
+    first = size;
+    size -= 2;
+    slong prec = goal + lost + GUARD_BITS, best = -2, gap = 64, stalled = 0;
+    acb_t attempt;
+    acb_init(attempt);
+    tw_status status = TW_OK;
+    for (int k = 0; k < ATTEMPTS && best < goal && stalled < 3; k++) {
+        double start = seconds_now();
+        status = sum_attempt(s, attempt, size, goal, prec);
+        s->bits = prec;
+        if (status != TW_OK)
+            break;
+        slong bits = accuracy(attempt);
+        if (bits > best || k == 0) {
+            stalled = 0;
+            best = bits;
+            acb_set(value, attempt);
+        } else if (bits >= 0) {
+            stalled++;
+        }
+        if (bits >= goal)
+            break;
+        double radius = log2_radius(attempt), aimed = size - (double)goal;
+        if (radius > aimed + 3) /* rounding, not the tolerance, is what hurts */
+            prec += (slong)fmin(fmax(radius - aimed, 8), 1e5) + 8;
+        if (bits >= 0) {
+            size = fmin(size, log2_upper(attempt) - 1);
+        } else {
+            if (first - size > GAP_LIMIT || seconds_now() - start > 3)
+                break;
+            size = fmin(size - (double)gap, log2_upper(attempt));
+            prec += gap;
+            gap *= 2;
+        }
+    }
+    acb_clear(attempt);
+    *reached = best;
+    return status;
+}
+
+/* ---- expressions that hold integrals ---- */
+
+typedef struct integrals {
+    expr **nodes, **symbols;
+    size_t count;
+} integrals;
+
+/* Integrals of f that are not inside another one replaced by symbols. */
+static expr *take_integrals(tw_engine *e, integrals *list, expr *f)
+{
+    if (!f || !holds_integral(f))
+        return f;
+    if (f->kind == EXPR_INTEGRAL) {
+        for (size_t k = 0; k < list->count; k++)
+            if (list->nodes[k] == f)
+                return list->symbols[k];
+        list->nodes = base_resize(list->nodes, (list->count + 1) * sizeof *list->nodes);
+        list->symbols = base_resize(list->symbols, (list->count + 1) * sizeof *list->symbols);
+        list->nodes[list->count] = f;
+        return list->symbols[list->count++] = expr_fresh(e, "J");
+    }
+    expr **args = base_alloc((f->count + 1) * sizeof *args);
+    for (uint32_t k = 0; k < f->count; k++)
+        args[k] = take_integrals(e, list, f->args[k]);
+    expr *out = NULL;
+    switch ((expr_kind)f->kind) {
+    case EXPR_SUM:
+        out = expr_sum(e, args, f->count);
+        break;
+    case EXPR_PRODUCT:
+        out = expr_product(e, args, f->count);
+        break;
+    case EXPR_POWER:
+        out = expr_pow(e, args[0], args[1]);
+        break;
+    case EXPR_CALL:
+        out = expr_call(e, f->is.function, args, f->count);
+        break;
+    case EXPR_CONTOUR:
+        engine_fail(e, ERROR_UNAVAILABLE, "quadrature along a path in the complex plane is not available");
+        break;
+    default:
+        engine_fail(e, ERROR_UNSUITABLE, "quadrature takes integrals in sums, products, powers and functions only");
+    }
+    free(args);
+    return out;
+}
+
+static tw_status values_of(tw_engine *e, const integrals *list, acb_ptr values, slong goal, slong *reached,
+                           quadrature_report *report)
+{
+    *reached = WORD_MAX / 4;
+    tw_status status = TW_OK;
+    for (size_t k = 0; status == TW_OK && k < list->count; k++) {
+        quad_sum s = {.e = e};
+        slong bits = 0;
+        status = sum_build(&s, list->nodes[k], goal + 60);
+        if (status == TW_OK)
+            status = integral_value(&s, values + k, goal, &bits);
+        if (bits < *reached)
+            *reached = bits;
+        for (size_t j = 0; j < s.count; j++)
+            report->evaluations += s.pieces[j].evaluations;
+        if (s.bits > report->bits)
+            report->bits = s.bits;
+        sum_clear(&s);
+    }
+    return status;
+}
+
+static tw_status combine(tw_engine *e, acb_t value, expr *f, integrals *list, slong goal, slong *reached,
+                         quadrature_report *report)
+{
+    tape *values = tape_new(e, f, list->symbols, list->count);
+    if (!values)
+        return TW_ERROR;
+    acb_ptr at = _acb_vec_init((slong)list->count + 1);
+    tw_status status = TW_OK;
+    slong extra = list->count == 1 && f == list->symbols[0] ? 0 : 6;
+    *reached = -2;
+    for (int k = 0; k < 5 && status == TW_OK && *reached < goal; k++) {
+        slong inner = 0;
+        status = values_of(e, list, at, goal + extra, &inner, report);
+        if (status == TW_OK) {
+            tape_eval(value, values, at, false, goal + extra + 40);
+            *reached = accuracy(value);
+            if (inner < goal && *reached < goal)
+                break;
+            extra = 2 * extra + (*reached < 0 ? goal : goal - *reached) + 16;
+        }
+    }
+    _acb_vec_clear(at, (slong)list->count + 1);
+    tape_free(values);
+    return status;
+}
+
 tw_status quadrature(tw_engine *e, acb_t value, expr *f, const env *at, slong digits, bool accept_less,
-                     quadrature_report *report) { (void)value;(void)f;(void)at;(void)digits;(void)accept_less;(void)report; return engine_fail(e, ERROR_UNDECIDED,"x");}
+                     quadrature_report *report)
+{
+    quadrature_report own = {0, 0}, *r = report ? report : &own;
+    *r = own;
+    if (digits < 1 || digits > 1000000)
+        return engine_fail(e, ERROR_VALUE, "digits must be between 1 and 1000000");
+    expr *g = at && at->count ? expr_substitute_all(e, f, at->symbols, at->values, at->count) : f;
+    if (!g)
+        return TW_ERROR;
+    slong goal = (slong)ceil((double)digits * 3.3219280948873624) + 1, reached = -2;
+    integrals list = {0};
+    expr *h = take_integrals(e, &list, g);
+    tw_status status = h && !e->error.kind ? combine(e, value, h, &list, goal, &reached, r) : TW_ERROR;
+    free(list.nodes);
+    free(list.symbols);
+    if (status != TW_OK || reached >= goal - 1 || accept_less)
+        return status;
+    if (!acb_is_finite(value))
+        return engine_fail(e, ERROR_UNDECIDED, "no finite value was found");
+    if (reached < 1)
+        return engine_fail(e, ERROR_PRECISION, "the value is 0 or too near to it: it lies within 10^%ld of 0, and no relative accuracy can be had",
+                           (long)ceil(log2_upper(value) * 0.30103));
+    return engine_fail(e, ERROR_PRECISION, "%ld digits cannot be had here; %ld can", (long)digits, (long)(reached * 0.30103));
+}

@@ -426,36 +426,45 @@ static bool exponent_is_dull(const acb_t L, double negligible)
     return dull;
 }
 
+/* Q exp(L), L in the better of its two forms where the ball is wide. */
+static void exponential_form(acb_t out, run *r, const acb_t t, bool analytic, slong prec)
+{
+    quad_part *a = r->part;
+    acb_t L, M;
+    acb_init(L);
+    acb_init(M);
+    bool wide = is_wide(t, prec);
+    slong bits = wide ? 64 : prec;
+    tape_eval(L, a->L, t, analytic, bits);
+    if (wide && !exponent_is_dull(L, r->negligible)) {
+        second_order(M, a, t, bits);
+        if (acb_is_finite(M) && mag_cmp(arb_radref(acb_realref(M)), arb_radref(acb_realref(L))) < 0)
+            acb_swap(L, M);
+    }
+    acb_indeterminate(out);
+    if (acb_is_finite(L)) {
+        tape_eval(M, a->Q, t, analytic, bits);
+        acb_exp(L, L, bits);
+        acb_mul(out, L, M, bits);
+    }
+    acb_clear(L);
+    acb_clear(M);
+}
+
 static int integrand(acb_ptr out, const acb_t t, void *param, slong order, slong prec)
 {
     run *r = param;
-    quad_part *a = r->part;
     if (order > 1 || !budget_ok(r->piece->e)) {
         acb_indeterminate(out);
         return 0;
     }
     r->piece->evaluations++;
-    if (a->L && is_wide(t, prec)) {
-        acb_t L, M;
-        acb_init(L);
-        acb_init(M);
-        tape_eval(L, a->L, t, order == 1, 64);
-        bool better = false;
-        if (!exponent_is_dull(L, r->negligible)) {
-            second_order(M, a, t, 64);
-            better = acb_is_finite(M) && mag_cmp(arb_radref(acb_realref(M)), arb_radref(acb_realref(L))) < 0;
-        }
-        if (better) {
-            tape_eval(L, a->Q, t, order == 1, 64);
-            acb_exp(M, M, 64);
-            acb_mul(out, L, M, 64);
-        }
-        acb_clear(L);
-        acb_clear(M);
-        if (better)
+    if (r->part->L) {
+        exponential_form(out, r, t, order == 1, prec);
+        if (acb_is_finite(out))
             return 0;
     }
-    tape_eval(out, a->plain, t, order == 1, prec);
+    tape_eval(out, r->part->plain, t, order == 1, prec);
     return 0;
 }
 
@@ -617,7 +626,7 @@ tw_status quad_piece_integrate(quad_piece *p, acb_t value, slong tolerance, slon
         status = find_cut(high, high_rest, p, true, tolerance - 2);
     for (size_t k = 0; status == TW_OK && k < p->part_count; k++) {
         part_range(from, to, p, k, low, high, acb_realref(length), prec + 20);
-        if (arb_lt(from, to))
+        if (!arb_gt(from, to))
             status = part_integrate(p, &p->parts[k], value, from, to, tolerance - 2, goal, prec);
     }
     if (status == TW_OK && p->cut_low)

@@ -7,6 +7,13 @@
 #ifndef TW_BASE_FLINT_H
 #define TW_BASE_FLINT_H
 
+/* FLINT's numbers are arrays of one element; where such a member stands first in a struct, gcc 12 and 13 take its size for that
+ * of its own first member and warn of reads beyond it. */
+#if defined(__GNUC__) && !defined(__clang__)
+#pragma GCC diagnostic ignored "-Wstringop-overread"
+#pragma GCC diagnostic ignored "-Wstringop-overflow"
+#endif
+
 #include <flint/flint.h>
 #include <flint/arith.h>
 #include <flint/fmpz.h>
