@@ -4,6 +4,8 @@
  * the whole ball u_0. */
 #include "engine/ball/functions.h"
 
+#include "engine/ball/interval.h"
+
 static acb_srcptr term_at(const acb_poly_struct *u, slong k)
 {
     static const acb_struct zero; /* all bits 0 is the exact 0 */
@@ -520,14 +522,88 @@ void jet_power(acb_poly_t out, const acb_poly_t base, const acb_poly_t exponent,
     }
 }
 
+/* (u0 + u1 y)^e with sharp powers of a wide real u0 > 0: the coefficients are binomial(e, k) u1^k u0^(e - k). */
+static void power_of_wide_line(acb_poly_t out, const acb_poly_t base, const fmpq_t exponent, slong len, slong prec)
+{
+    fmpq_t e, factor;
+    acb_t c, slope, u0;
+    fmpq_init(e);
+    fmpq_init(factor);
+    acb_init(c);
+    acb_init(slope);
+    acb_init(u0);
+    acb_set(u0, term_at(base, 0));
+    acb_set(slope, term_at(base, 1));
+    fmpq_set(e, exponent);
+    fmpq_one(factor);
+    acb_poly_zero(out);
+    for (slong k = 0; k < len && !fmpq_is_zero(factor); k++) {
+        arb_t f;
+        arb_init(f);
+        arb_set_fmpq(f, factor, prec);
+        ball_power_rational(c, u0, e, true, prec);
+        if (fmpq_is_zero(e)) acb_one(c);
+        acb_mul_arb(c, c, f, prec);
+        arb_clear(f);
+        acb_t p;
+        acb_init(p);
+        acb_pow_ui(p, slope, (ulong)k, prec);
+        ball_mul(c, c, p, prec);
+        acb_clear(p);
+        acb_poly_set_coeff_acb(out, k, c);
+        fmpq_mul(factor, factor, e);
+        fmpq_div_fmpz(factor, factor, (fmpz[]){k + 1});
+        fmpq_sub_si(e, e, 1);
+    }
+    fmpq_clear(e);
+    fmpq_clear(factor);
+    acb_clear(c);
+    acb_clear(slope);
+    acb_clear(u0);
+}
+
+enum { WIDE_LENGTH = 6 }; /* longer series on wide balls are not asked for their sharpness */
+
 void jet_power_rational(acb_poly_t out, const acb_poly_t base, const fmpq_t exponent, slong len, slong prec)
 {
+    acb_srcptr u0 = term_at(base, 0);
+    const bool whole = fmpz_is_one(fmpq_denref(exponent));
+    if (len <= WIDE_LENGTH && base->length <= 2 && ball_is_wide(u0) &&
+        (whole ? fmpq_sgn(exponent) > 0 || !acb_contains_zero(u0) : arb_is_positive(acb_realref(u0)))) {
+        power_of_wide_line(out, base, exponent, len, prec);
+        return;
+    }
     acb_poly_t e;
     acb_poly_init2(e, 1);
     arb_set_fmpq(acb_realref(e->coeffs), exponent, prec);
     _acb_poly_set_length(e, 1);
     jet_power(out, base, e, len, prec);
     acb_poly_clear(e);
+}
+
+void jet_mul(acb_poly_t out, const acb_poly_t a, const acb_poly_t b, slong len, slong prec)
+{
+    if (len > WIDE_LENGTH || !(ball_is_wide(term_at(a, 0)) || ball_is_wide(term_at(b, 0)))) {
+        acb_poly_mullow(out, a, b, len, prec);
+        return;
+    }
+    acb_poly_t p;
+    acb_t sum, term;
+    acb_poly_init(p);
+    acb_init(sum);
+    acb_init(term);
+    for (slong k = 0; k < len; k++) {
+        acb_zero(sum);
+        for (slong j = 0; j <= k; j++) {
+            ball_mul(term, term_at(a, j), term_at(b, k - j), prec);
+            acb_add(sum, sum, term, prec);
+        }
+        acb_poly_set_coeff_acb(p, k, sum);
+    }
+    acb_poly_swap(out, p);
+    acb_poly_clear(p);
+    acb_clear(sum);
+    acb_clear(term);
 }
 
 static const jet_function table[] = {
