@@ -353,13 +353,65 @@ static void bessel_taylor(acb_poly_t c, const acb_t nu, const acb_t z, const acb
     acb_clear(nu2);
 }
 
+/* J and I of whole order n are entire in z: the kth derivative is 2^-k sum_j sign^j
+ * binomial(k, j) w(n - k + 2j), sign -1 for J and +1 for I (DLMF 10.6.7, 10.29.5). Serves where z may be 0 or lie on the cut of the general order. */
+__attribute__((noinline)) /* inlined after acb_is_int(n), gcc 12 mistakes n's size (-Wstringop-overread) */
+static void bessel_whole_order(acb_poly_t c, const acb_t n, const acb_t z, void (*call)(acb_t, const acb_t, const acb_t, slong),
+                               int sign, slong len, slong prec)
+{
+    const slong count = 2 * len - 1;
+    acb_ptr w = _acb_vec_init(count); /* w[j]: order n - len + 1 + j */
+    acb_t order, sum, term;
+    acb_init(order);
+    acb_init(sum);
+    acb_init(term);
+    acb_set(order, n);
+    acb_sub_ui(order, order, (ulong)len - 1, prec);
+    for (slong j = 0; j < count; j++) {
+        call(w + j, order, z, prec);
+        acb_add_ui(order, order, 1, prec);
+    }
+    fmpz_t binomial, factorial;
+    fmpz_init(binomial);
+    fmpz_init(factorial);
+    fmpz_one(factorial);
+    acb_poly_zero(c);
+    for (slong k = 0; k < len; k++) {
+        acb_zero(sum);
+        for (slong j = 0; j <= k; j++) {
+            fmpz_bin_uiui(binomial, (ulong)k, (ulong)j);
+            acb_mul_fmpz(term, w + (len - 1 - k + 2 * j), binomial, prec);
+            if (sign > 0 && j % 2) acb_sub(sum, sum, term, prec);
+            else acb_add(sum, sum, term, prec);
+        }
+        if (k) fmpz_mul_ui(factorial, factorial, (ulong)k);
+        acb_mul_2exp_si(sum, sum, -k);
+        acb_div_fmpz(sum, sum, factorial, prec);
+        acb_poly_set_coeff_acb(c, k, sum);
+    }
+    fmpz_clear(binomial);
+    fmpz_clear(factorial);
+    acb_clear(order);
+    acb_clear(sum);
+    acb_clear(term);
+    _acb_vec_clear(w, count);
+}
+
 typedef void (*bessel_call)(acb_t out, const acb_t nu, const acb_t z, slong prec);
 
-/* w' = next*w(nu + 1) + (nu/z) w(nu), next = -1 for J, Y, K and +1 for I (DLMF 10.6.2, 10.29.2). */
+/* sign: +1 for J and Y, -1 for I and K.  w' = next*w(nu + 1) + (nu/z) w(nu), next = -1 for J, Y, K and +1 for I (DLMF 10.6.2, 10.29.2). */
 static void bessel_jet(acb_poly_t out, const acb_poly_struct *const *a, bessel_call call, int sign, int next, slong len,
                        slong prec)
 {
     acb_srcptr nu = term_at(a[0], 0), z = term_at(a[1], 0);
+    if (a[0]->length <= 1 && acb_is_int(nu) && sign == -next && ball_meets_cut(z)) { /* J and I */
+        acb_poly_t w;
+        acb_poly_init(w);
+        bessel_whole_order(w, nu, z, call, sign, len, prec);
+        compose_at(out, w, a[1], len, prec);
+        acb_poly_clear(w);
+        return;
+    }
     if (a[0]->length > 1 || acb_contains_zero(z) || ball_meets_cut(z)) {
         jet_unknown(out, len);
         return;

@@ -266,6 +266,14 @@ static void run_special(acb_t out, const op *o, const acb_t u, bool analytic, sl
     }
 }
 
+/* A value that is real because its operands' balls are: what the function's own arithmetic left as imaginary part goes. */
+static bool operands_are_real(const tape *t, const op *o)
+{
+    for (size_t k = 0; k < o->count; k++)
+        if (!acb_is_real(t->values + t->operands[o->first + k])) return false;
+    return o->count > 0;
+}
+
 static void run_op(tape *t, size_t k, acb_srcptr at, bool analytic, slong prec)
 {
     op *o = &t->ops[k];
@@ -295,6 +303,7 @@ static void run_op(tape *t, size_t k, acb_srcptr at, bool analytic, slong prec)
     default: leaf_value(t, out, o, prec); break;
     }
     t->real[k] = is_real(t, o, plain_value);
+    if (t->real[k] && !acb_is_real(out) && operands_are_real(t, o)) arb_zero(acb_imagref(out));
 }
 
 /* Constants need no analyticity: abs(3 + 4*i) is 5. */
@@ -357,6 +366,16 @@ static void jet_special(acb_poly_t out, const op *o, const acb_poly_struct *u, c
     acb_clear(c);
 }
 
+static bool operand_jets_are_real(const tape *t, const op *o)
+{
+    for (size_t k = 0; k < o->count; k++) {
+        const acb_poly_struct *u = &t->jets[t->operands[o->first + k]];
+        for (slong j = 0; j < u->length; j++)
+            if (!acb_is_real(u->coeffs + j)) return false;
+    }
+    return o->count > 0;
+}
+
 static void jet_op(tape *t, size_t k, acb_srcptr at, slong len, slong prec)
 {
     op *o = &t->ops[k];
@@ -383,6 +402,8 @@ static void jet_op(tape *t, size_t k, acb_srcptr at, slong len, slong prec)
     default: jet_special(out, o, &t->jets[from[0]], jet_value(t, from[0]), len, prec); break;
     }
     t->real[k] = is_real(t, o, jet_value);
+    if (t->real[k] && operand_jets_are_real(t, o))
+        for (slong j = 0; j < out->length; j++) arb_zero(acb_imagref(out->coeffs + j));
 }
 
 void tape_jet(acb_ptr out, tape *t, acb_srcptr at, slong len, slong prec)
