@@ -17,4 +17,7 @@ int decide_sign(tw_engine *e, expr *f);
  * balls, the growth record at infinity, jets at a zero end. UNKNOWN when the work limit is met. */
 answer decide_positive_on(tw_engine *e, expr *f, expr *x, expr *from, expr *to, bool weak);
 
+/* Is the value of f (no free symbols; integrals allowed) real for a reason of structure? false: not known. */
+bool decide_real_value(tw_engine *e, expr *f);
+
 #endif

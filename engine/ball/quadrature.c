@@ -11,6 +11,7 @@
 #include <string.h>
 #include <time.h>
 
+#include "engine/ball/decide.h"
 #include "engine/ball/quadrature_kinks.h"
 #include "engine/ball/quadrature_piece.h"
 
@@ -552,6 +553,8 @@ tw_status quadrature(tw_engine *e, acb_t value, expr *f, const env *at, slong di
     tw_status status = h && !e->error.kind ? combine(e, value, h, &list, goal, &reached, r) : TW_ERROR;
     free(list.nodes);
     free(list.symbols);
+    if (status == TW_OK && !arb_is_zero(acb_imagref(value)) && arb_contains_zero(acb_imagref(value)) && decide_real_value(e, g))
+        arb_zero(acb_imagref(value));
     if (status != TW_OK || reached >= goal - 1 || accept_less)
         return status;
     if (!acb_is_finite(value))

@@ -5,8 +5,8 @@
 
 #include "engine/export/format.h"
 
-/* mid * 10^exponent as text: plain notation near 1, else with e. */
-static void add_decimal(text *out, const fmpz_t mid, const fmpz_t exponent)
+/* mid * 10^exponent as text: plain notation from 10^least to 10^20, else with e. */
+static void add_decimal(text *out, const fmpz_t mid, const fmpz_t exponent, slong least)
 {
     fmpz_t m, ten, place;
     fmpz_init_set(m, mid);
@@ -26,7 +26,7 @@ static void add_decimal(text *out, const fmpz_t mid, const fmpz_t exponent)
     fmpz_add_si(lead, place, count - 1);
     if (fmpz_is_zero(m)) {
         text_add_char(out, '0');
-    } else if (fmpz_cmp_si(lead, -7) < 0 || fmpz_cmp_si(lead, 20) > 0) {
+    } else if (fmpz_cmp_si(lead, least) < 0 || fmpz_cmp_si(lead, 20) > 0) {
         text_add_char(out, d[0]);
         if (count > 1) {
             text_add_char(out, '.');
@@ -105,8 +105,8 @@ void decimal_ball(text *mid_text, text *radius_text, const arb_t x)
     fmpz_init(rad);
     fmpz_init(exponent);
     outward_decimal(mid, rad, exponent, x, accurate_digits(x), 3);
-    add_decimal(mid_text, mid, exponent);
-    add_decimal(radius_text, rad, exponent);
+    add_decimal(mid_text, mid, exponent, -7);
+    add_decimal(radius_text, rad, exponent, -3);
     fmpz_clear(mid);
     fmpz_clear(rad);
     fmpz_clear(exponent);
@@ -140,10 +140,10 @@ void print_ball(text *out, const arb_t x, slong digits)
         fmpz_add(rad, rad, mid);
         fmpz_zero(mid);
     }
-    add_decimal(out, mid, exponent);
+    add_decimal(out, mid, exponent, -7);
     if (!fmpz_is_zero(rad)) {
         text_add(out, " +/- ");
-        add_decimal(out, rad, exponent);
+        add_decimal(out, rad, exponent, -3);
     }
     fmpz_clear(mid);
     fmpz_clear(rad);
