@@ -37,8 +37,15 @@ static const struct {
 tw_status request_run(session *s, const statement *st, result *r, value **keep)
 {
     request_function *run = requests[st->kind].run;
-    if (!run) return request_unavailable(s, st->at, statement_words(st));
-    return run(s, st, r, keep);
+    if (run) return run(s, st, r, keep);
+    const char *words = statement_words(st);
+    size_t length = strlen(words);
+    span opening = {st->at.from, st->at.from + (uint32_t)strcspn(words, " ")};
+    if (length > 3 && strcmp(words + length - 3, " of") == 0) length -= 3;
+    char *named = strndup(words, length);
+    request_unavailable(s, opening, named ? named : words);
+    free(named);
+    return TW_ERROR;
 }
 
 /* ---- taking back ---- */
