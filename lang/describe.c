@@ -235,7 +235,7 @@ static tw_status reach(session *s, expansion *a, slong to)
     return TW_OK;
 }
 
-static void add_lane_title(session *s, text *out, const contribution *c, const lane *l)
+static void add_lane_title(session *s, text *out, const expansion *a, const contribution *c, const lane *l)
 {
     text_add(out, "lane of ");
     add_place(s, out, c);
@@ -245,6 +245,8 @@ static void add_lane_title(session *s, text *out, const contribution *c, const l
         text_add(out, " * ");
     }
     add_expr(s, out, l->constant, l->constant->kind == EXPR_SUM);
+    if (l->log_power) text_addf(out, " * log(%s)", a->large->is.name);
+    if (l->log_power > 1) text_addf(out, "^%ld", (long)l->log_power);
 }
 
 static bool lane_is_plain(const contribution *c, const lane *l)
@@ -252,7 +254,7 @@ static bool lane_is_plain(const contribution *c, const lane *l)
     return expr_is_one(c->prefactor) && expr_is_one(l->constant) && l->log_power == 0 && c->lane_count == 1;
 }
 
-static void add_row(session *s, table *t, text *json, const lane *l, slong n, expr *large)
+static void add_row(session *s, table *t, text *json, const lane *l, slong n, bool zeros)
 {
     fmpq_t shift;
     fmpq_init(shift);
@@ -261,15 +263,16 @@ static void add_row(session *s, table *t, text *json, const lane *l, slong n, ex
     fmpq_clear(shift);
     expr *c = coefficient_expr(s->e, &l->c, n);
     if (!exponent || !c) return;
-    text cell;
-    text_init(&cell);
-    text_addf(&cell, "%ld", (long)n);
-    table_take(t, &cell);
-    expr_print(s->e, &cell, exponent);
-    if (l->log_power) text_addf(&cell, ", log(%s)^%ld", large->is.name, (long)l->log_power);
-    table_take(t, &cell);
-    expr_print(s->e, &cell, c);
-    table_take(t, &cell);
+    if (zeros || !coefficient_is_zero(&l->c, n)) {
+        text cell;
+        text_init(&cell);
+        text_addf(&cell, "%ld", (long)n);
+        table_take(t, &cell);
+        expr_print(s->e, &cell, exponent);
+        table_take(t, &cell);
+        expr_print(s->e, &cell, c);
+        table_take(t, &cell);
+    }
     json_next(json);
     text_addf(json, "{\"n\": %ld, \"exponent\": ", (long)n);
     json_expr(s->e, json, exponent);
@@ -289,7 +292,7 @@ static tw_status add_lane(session *s, result *r, text *json, const expansion *a,
     if (!lane_is_plain(c, l) || a->contribution_count > 1) {
         text title;
         text_init(&title);
-        add_lane_title(s, &title, c, l);
+        add_lane_title(s, &title, a, c, l);
         result_line(r, "%s", title.bytes);
         text_clear(&title);
     }
@@ -303,7 +306,7 @@ static tw_status add_lane(session *s, result *r, text *json, const expansion *a,
     bool good = true;
     for (slong n = from; good && n <= last; n++) {
         good = budget_ok(s->e);
-        if (good) add_row(s, &t, json, l, n, a->large);
+        if (good) add_row(s, &t, json, l, n, to >= 0);
     }
     text_add(json, "]}");
     table_print(&t, &r->words, "  ");

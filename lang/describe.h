@@ -7,8 +7,8 @@
 /* "F ~ s^-1 - s^-3 + 9*s^-5 - ...   (Watson's lemma at x = 0)", and a line for each lesser contribution. */
 tw_status describe_series(session *s, result *r, const char *name, expansion *a);
 
-/* Tables of coefficients number from..to (to < 0: as many as there are), a table for each lane; members of the result, too.
- * Extends the expansion when more are wanted than known. */
+/* Tables of coefficients number from..to, a table for each lane; members of the result, too. Extends the expansion when more
+ * are wanted than known. to < 0: as many as there are, and the text leaves out zeros. */
 tw_status describe_coefficients(session *s, result *r, expansion *a, slong from, slong to);
 
 /* The bound as a formula, from where on it holds, its label and source. */

@@ -153,20 +153,31 @@ static void add_entry(text *lines, text *json, const char *word, const char *for
     text_add_char(json, '}');
 }
 
-/* Arguments at which every function of the table has a value: the last is 1/2, those before it 1. */
+/* How a function is typed: as its summary begins ("J(nu, z): ..."), else with arguments named here. Returns what is left of
+ * the summary. */
+static const char *add_form(text *form, const char *name, int arguments, bool more, const char *about)
+{
+    size_t length = strlen(name);
+    const char *end = strstr(about, "): ");
+    if (strncmp(about, name, length) == 0 && about[length] == '(' && end) {
+        text_add_bytes(form, about, (size_t)(end + 1 - about));
+        return end + 3;
+    }
+    text_addf(form, "%s(", name);
+    for (int k = 0; k < arguments; k++) text_add(form, k + 1 == arguments ? "z" : "a, ");
+    text_add(form, more ? ", ...)" : ")");
+    return about;
+}
+
+/* The example's arguments are ones at which every function of the table has a value: the last is 1/2, those before it 1. */
 static void add_function(text *lines, text *json, const char *name, int arguments, bool more, const char *about)
 {
     text form, example;
     text_init(&form);
     text_init(&example);
-    text_addf(&form, "%s(", name);
+    about = add_form(&form, name, arguments, more, about);
     text_addf(&example, "evaluate %s(", name);
-    for (int k = 0; k < arguments; k++) {
-        bool last = k + 1 == arguments;
-        text_add(&form, last ? "z" : k == 0 ? "a, " : "b, ");
-        text_add(&example, last ? "1/2" : "1, ");
-    }
-    text_add(&form, more ? ", ...)" : ")");
+    for (int k = 0; k < arguments; k++) text_add(&example, k + 1 == arguments ? "1/2" : "1, ");
     text_add(&example, ") to 15 digits");
     add_entry(lines, json, name, form.bytes, about, example.bytes, true);
     text_clear(&form);

@@ -85,4 +85,5 @@ def main():
     return failed != 0
 
 
-sys.exit(main())
+if __name__ == "__main__":
+    sys.exit(main())
