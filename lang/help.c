@@ -24,12 +24,6 @@ const help_entry *help_find(const char *word)
     return NULL;
 }
 
-bool help_is_available(const char *word)
-{
-    const help_entry *h = help_find(word);
-    return h && h->available;
-}
-
 void help_each_word(void (*take)(void *host, const char *word), void *host)
 {
     size_t count;

@@ -34,7 +34,4 @@ void help_each_word(void (*take)(void *host, const char *word), void *host);
 /* Fills r with the list of all words, or with the entries of one word. False when there is no such word. */
 bool help_answer(result *r, const char *word /* NULL or "": the list */);
 
-/* True when this version has the statement that starts with the word. */
-bool help_is_available(const char *word);
-
 #endif
