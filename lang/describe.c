@@ -349,7 +349,7 @@ void describe_remainder(session *s, result *r, const expansion *a, const remaind
 {
     text line;
     text_init(&line);
-    if (bound->bound) {
+    if (bound->bound && !expr_is_zero(bound->bound)) {
         text_addf(&line, "|rest after %ld term%s| <= ", (long)bound->terms, bound->terms == 1 ? "" : "s");
         expr_print(s->e, &line, bound->bound);
         if (bound->from) {
@@ -357,7 +357,7 @@ void describe_remainder(session *s, result *r, const expansion *a, const remaind
             expr_print(s->e, &line, bound->from);
         }
     } else {
-        text_add(&line, a->exact ? "nothing remains" : "no bound");
+        text_add(&line, bound->bound || a->exact ? "nothing remains" : "no bound");
     }
     result_labelled(r, line.bytes, label_word(bound->label), bound->manner);
     text_clear(&line);

@@ -40,7 +40,9 @@ static tw_status find_number(session *s, number *out, const task *t, const env *
     out->way = way_of(t->x.expression);
     out->terms = -1;
     out->least_term = -1;
-    return quadrature(s->e, out->value, t->x.expression, at, t->digits, !t->typed_digits, NULL);
+    if (quadrature(s->e, out->value, t->x.expression, at, t->digits, !t->typed_digits, NULL) != TW_OK) return TW_ERROR;
+    if (acb_is_finite(out->value)) return TW_OK;
+    return engine_fail(s->e, ERROR_PRECISION, "the value cannot be enclosed: it is not finite, or beyond every exponent");
 }
 
 /* Significant digits to print: what the ball is worth, and of a quadrature not many more than were asked for. */

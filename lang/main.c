@@ -1,0 +1,157 @@
+/* The program: reads the command line and runs what it names in one session. */
+#include <errno.h>
+#include <getopt.h>
+#include <stdio.h>
+#include <stdlib.h>
+#include <string.h>
+#include <unistd.h>
+
+#include "lang/prompt.h"
+#include "lang/run.h"
+
+static const char usage[] =
+    "usage: termwise [OPTIONS] [FILE.tw ...]\n"
+    "       termwise [OPTIONS] -e 'STATEMENT' ...\n"
+    "Without files: the prompt at a terminal, else statements from standard input (also `-`).\n"
+    "\n"
+    "  -e STATEMENT          run a statement; may stand several times, and between files\n"
+    "  --parse-only          read, report errors, do nothing\n"
+    "  --results json        each result as one JSON object a line on standard output\n"
+    "  --digits N            significant digits of printed numbers and of quadrature (default 10)\n"
+    "  --quiet               no echo of declarations and definitions\n"
+    "  --keep-going          go on after a failed statement\n"
+    "  --time-limit SECONDS  allowance of each statement (default: none)\n"
+    "  --memory-limit MIB    resident memory the program may use (default: none)\n"
+    "  --version             print the version\n"
+    "  --help                print this\n"
+    "\n"
+    "Exit status: 0 all done; 1 a statement failed; 2 wrong usage; 3 refuted; 130 interrupted.\n";
+
+/* What to run, in the order of the command line. */
+typedef struct job {
+    bool is_statement;
+    const char *words;
+} job;
+
+typedef struct command {
+    run_options options;
+    bool version, help;
+    size_t count;
+    job *jobs;
+} command;
+
+static bool misused(const char *format, const char *word)
+{
+    fputs("termwise: error: ", stderr);
+    fprintf(stderr, format, word);
+    fputs("; `termwise --help` lists the options\n", stderr);
+    return false;
+}
+
+static bool read_number(const char *words, double least, double most, double *out)
+{
+    char *end;
+    errno = 0;
+    *out = strtod(words, &end);
+    return end != words && *end == '\0' && errno == 0 && *out >= least && *out <= most;
+}
+
+enum { OPTION_PARSE = 256, OPTION_RESULTS, OPTION_DIGITS, OPTION_QUIET, OPTION_KEEP, OPTION_TIME, OPTION_MEMORY, OPTION_VERSION,
+       OPTION_HELP };
+
+static const struct option options[] = {
+    {"parse-only", no_argument, NULL, OPTION_PARSE},
+    {"results", required_argument, NULL, OPTION_RESULTS},
+    {"digits", required_argument, NULL, OPTION_DIGITS},
+    {"quiet", no_argument, NULL, OPTION_QUIET},
+    {"keep-going", no_argument, NULL, OPTION_KEEP},
+    {"time-limit", required_argument, NULL, OPTION_TIME},
+    {"memory-limit", required_argument, NULL, OPTION_MEMORY},
+    {"version", no_argument, NULL, OPTION_VERSION},
+    {"help", no_argument, NULL, OPTION_HELP},
+    {NULL, 0, NULL, 0},
+};
+
+static bool take_option(command *c, int option, const char *word)
+{
+    double x;
+    switch (option) {
+    case 1: c->jobs[c->count++] = (job){false, word}; return true;
+    case 'e': c->jobs[c->count++] = (job){true, word}; return true;
+    case OPTION_PARSE: c->options.parse_only = true; return true;
+    case OPTION_QUIET: c->options.quiet = true; return true;
+    case OPTION_KEEP: c->options.keep_going = true; return true;
+    case OPTION_VERSION: c->version = true; return true;
+    case OPTION_HELP: c->help = true; return true;
+    case OPTION_RESULTS:
+        if (strcmp(word, "json") != 0) return misused("--results knows only json, not \"%s\"", word);
+        c->options.json = true;
+        return true;
+    case OPTION_DIGITS:
+        if (!read_number(word, 1, SESSION_DIGITS_LIMIT, &x) || x != (long)x)
+            return misused("--digits needs a whole number from 1 to 1000000, not \"%s\"", word);
+        c->options.digits = (long)x;
+        return true;
+    case OPTION_TIME:
+        if (!read_number(word, 0, 1e9, &x) || x == 0) return misused("--time-limit needs seconds above 0, not \"%s\"", word);
+        c->options.time_limit = x;
+        return true;
+    case OPTION_MEMORY:
+        if (!read_number(word, 1, 1e9, &x)) return misused("--memory-limit needs MiB, 1 or more, not \"%s\"", word);
+        c->options.memory_limit = (size_t)x;
+        return true;
+    default: return false;
+    }
+}
+
+static bool read_command(command *c, int argc, char **argv)
+{
+    opterr = 0;
+    for (;;) {
+        int option = getopt_long(argc, argv, "-:e:", options, NULL);
+        if (option == -1) break;
+        const char *typed = argv[optind - 1];
+        if (option == ':') return misused("`%s` needs a value", typed);
+        if (option == '?' && optopt > 255) return misused("`%s` takes no value", typed);
+        if (option == '?') return misused("unknown option `%s`", typed);
+        if (!take_option(c, option, optarg)) return false;
+    }
+    for (; optind < argc; optind++) c->jobs[c->count++] = (job){false, argv[optind]}; /* after -- */
+    return true;
+}
+
+static void run_jobs(run *r, const command *c)
+{
+    bool go_on = true;
+    for (size_t k = 0; go_on && k < c->count; k++) {
+        const job *j = &c->jobs[k];
+        if (j->is_statement) go_on = run_words(r, "-e", j->words);
+        else if (strcmp(j->words, "-") == 0) go_on = run_input(r, STDIN_FILENO);
+        else go_on = run_file(r, j->words);
+    }
+    if (c->count > 0) return;
+    if (isatty(STDIN_FILENO) && isatty(STDOUT_FILENO) && !c->options.parse_only) run_prompt(r);
+    else run_input(r, STDIN_FILENO);
+}
+
+int main(int argc, char **argv)
+{
+    command c = {0};
+    c.jobs = calloc((size_t)argc + 1, sizeof *c.jobs);
+    int status = EXIT_USAGE;
+    run r;
+    if (!c.jobs || !read_command(&c, argc, argv)) {
+        status = EXIT_USAGE;
+    } else if (c.help || c.version) {
+        fputs(c.help ? usage : "termwise " TW_VERSION "\n", stdout);
+        status = fflush(stdout) == 0 ? EXIT_DONE : EXIT_FAILED;
+    } else if (!run_init(&r, &c.options)) {
+        status = EXIT_FAILED;
+    } else {
+        run_jobs(&r, &c);
+        status = r.status;
+        run_clear(&r);
+    }
+    free(c.jobs);
+    return status;
+}
