@@ -77,6 +77,16 @@ static void add_entry(const char *words, size_t length)
     free(entry);
 }
 
+static bool goes_on(const char *start, const char *end)
+{
+    text lines; /* the parser wants its text closed by a NUL */
+    text_init(&lines);
+    text_add_bytes(&lines, start, (size_t)(end - start));
+    bool more = parse_wants_more(lines.bytes, lines.length);
+    text_clear(&lines);
+    return more;
+}
+
 /* A whole statement becomes one entry: its line ends turn into spaces, which mean the same, unless a comment stands in it. */
 static void remember(const char *words, size_t length)
 {
@@ -85,7 +95,7 @@ static void remember(const char *words, size_t length)
         const char *next = memchr(line, '\n', (size_t)(end - line));
         line = next ? next + 1 : end;
         bool comment = memchr(start, '#', (size_t)(line - start)) != NULL;
-        if (!comment && line < end && parse_wants_more(start, (size_t)(line - start))) continue;
+        if (!comment && line < end && goes_on(start, line)) continue;
         add_entry(start, (size_t)(line - start));
         start = line;
     }
