@@ -124,7 +124,7 @@ for line in lines:
     except ValueError as trouble:
         check(False, "a line that is no JSON: %s: %s" % (trouble, line[:200]))
 statements = [l for l in script.splitlines()]
-check(len(objects) == len(statements) - 1, "one object for each statement (the open bracket takes its next line along)",
+check(len(objects) == len(statements), "one object for each statement",
       len(objects), len(statements))
 kinds = [o.get("result", o.get("format")) for o in objects]
 check(all(k for k in kinds), "every object says what it is", kinds)
