@@ -1,6 +1,6 @@
-/* The lexer, for re2c: one rule a kind of token, the last two for what is none. It reads between two pointers, so a NUL is a
- * byte like any other, and the end of the text is where the length says. It knows no word of the language: whether `from`
- * is a word or a name is the parser's business. */
+/* The lexer, for re2c: one rule a kind of token, the last two for what is none. It reads between two pointers, so a
+ * NUL is a byte like any other, and the end of the text is where the length says. It knows no word of the language:
+ * whether `from` is a word or a name is the parser's business. */
 #include "lang/lexer.h"
 
 #include <stdio.h>
@@ -138,7 +138,8 @@ static const struct {
     {"\u2018", "`\"`"},  {"\u2019", "`\"`"},  {"'", "`\"` around a text"}, {"\u221a", "`sqrt(...)`"}, 
     {"\u222b", "`integral from ... to ... of ... dx`"},
     {"\u2211", "`sum from k = ... to ... of ...`"}, {"\u00b2", "`^2`"},  {"\u00b3", "`^3`"},       {"\u00b9", "`^1`"},
-    {"\u00bd", "`1/2`"}, {"\u2208", "`in`"},  {"{", "`(`"},             {"}", "`)`"},             {"\u00a0", "a plain space"},
+    {"\u00bd", "`1/2`"}, {"\u2208", "`in`"},  {"{", "`(`"},             {"}", "`)`"},
+    {"\u00a0", "a plain space"},
     {"\u2202", "`derivative of ... in ...`"}, {"|", "`abs(...)`"},      {";", "each statement on a line of its own"},
     {".", "a decimal number with a digit on both sides of its point"},  {"_", "a letter first in a name"},
 };

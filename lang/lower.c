@@ -1,5 +1,6 @@
-/* From syntax to expressions. One function a form; bound names are a chain of scopes on the C stack, which the parser's limit on
- * nesting keeps short. The first failure fixes the place to complain about: the innermost form that could not be built. */
+/* From syntax to expressions. One function a form; bound names are a chain of scopes on the C stack, which the
+ * parser's limit on nesting keeps short. The first failure fixes the place to complain about: the innermost form that
+ * could not be built. */
 #include "lang/lower.h"
 
 #include <stdlib.h>
@@ -135,8 +136,8 @@ static expr *lower_free_name(lowering *l, const char *name, span at)
         return FAIL(l, at, ERROR_NAME, "`%s` is %s, not an expression", name, what);
     case MEANING_FREE:
         if (strcmp(name, "e") == 0)
-            return FAIL(l, at, ERROR_NAME, "`e` is not declared: Euler's number is exp(1); for a parameter of that name "
-                        "write `given e real` first");
+            return FAIL(l, at, ERROR_NAME, "`e` is not declared: Euler's number is exp(1); "
+                        "for a parameter of that name write `given e real` first");
         break;
     case MEANING_DECLARED:
         break;
@@ -192,8 +193,8 @@ static expr *fail_unknown_function(lowering *l, const syntax *a)
     expr *value;
     lower_meaning m = ask_meaning(l, name, &value, &what);
     if (constant_find(name, &c) || scope_find(l, name) != NULL || m == MEANING_VALUE || m == MEANING_DECLARED)
-        return FAIL(l, a->as.call.name.at, ERROR_NAME, "`%s` is no function; multiplication is always written: `%s*(...)`",
-                    name, name);
+        return FAIL(l, a->as.call.name.at, ERROR_NAME,
+                    "`%s` is no function; multiplication is always written: `%s*(...)`", name, name);
     suggestion s;
     suggestion_init(&s, name);
     suggestion_offer(&s, "sqrt");
@@ -225,7 +226,8 @@ static expr *apply(lowering *l, const syntax *a, expr *const *arguments)
     size_t n = a->as.call.count;
     const lower_function *own = l->function ? l->function(l->host, name) : NULL;
     if (own != NULL && own->count != n)
-        return FAIL(l, a->at, ERROR_VALUE, "`%s` takes %zu argument%s, not %zu", name, own->count, own->count == 1 ? "" : "s", n);
+        return FAIL(l, a->at, ERROR_VALUE, "`%s` takes %zu argument%s, not %zu", name, own->count,
+                    own->count == 1 ? "" : "s", n);
     if (own != NULL)
         return expr_substitute_all(l->engine, own->body, own->parameters, arguments, n);
     if (strcmp(name, "sqrt") == 0 || strcmp(name, "inf") == 0) {
@@ -249,8 +251,8 @@ static expr *lower_call(lowering *l, const syntax *a)
 
 /* ---- operators ---- */
 
-/* Pushes part k of a sum or product. A factor's minus sign becomes a factor of its own, so that -(x + y)*z is not taken for
- * (-x - y)*z. */
+/* Pushes part k of a sum or product. A factor's minus sign becomes a factor of its own, so that -(x + y)*z is not
+ * taken for (-x - y)*z. */
 static bool push_part(lowering *l, const syntax *a, size_t k)
 {
     const syntax *part = a->as.list.parts[k];
@@ -283,8 +285,8 @@ static expr *lower_list(lowering *l, const syntax *a)
 
 /* ---- binders ---- */
 
-/* Lowers a body in which `name` stands for the symbol of that name. The symbol is the plain one, so that a defined name's value
- * that holds it is meant too. */
+/* Lowers a body in which `name` stands for the symbol of that name. The symbol is the plain one, so that a defined
+ * name's value that holds it is meant too. */
 static expr *lower_under(lowering *l, const char *name, const syntax *body, expr **symbol)
 {
     lower_scope s = {name, expr_symbol(l->engine, name), l->scope};
@@ -461,7 +463,8 @@ static tw_status lower_range(lowering *l, const syntax *a, lower_conditions *out
         return TW_ERROR;
     expr_relation lower_end = a->as.range->with_from ? RELATION_LESS_EQUAL : RELATION_LESS;
     expr_relation upper_end = a->as.range->with_to ? RELATION_LESS_EQUAL : RELATION_LESS;
-    if (!expr_is_minus_inf(from) && conditions_push(l, out, expr_relation_of(e, lower_end, from, value), a->at) != TW_OK)
+    if (!expr_is_minus_inf(from)
+        && conditions_push(l, out, expr_relation_of(e, lower_end, from, value), a->at) != TW_OK)
         return TW_ERROR;
     if (!expr_is_inf(to))
         return conditions_push(l, out, expr_relation_of(e, upper_end, value, to), a->at);
@@ -597,11 +600,12 @@ tw_status lower_count(lowering *l, const syntax *a, const char *what, slong leas
     expr *value = lower(l, a);
     if (value == NULL)
         return TW_ERROR;
-    if (!expr_is_number(value) || !fmpz_is_one(fmpq_denref(expr_number(value)))
-        || fmpz_cmp_si(fmpq_numref(expr_number(value)), least) < 0 || fmpz_cmp_si(fmpq_numref(expr_number(value)), most) > 0) {
+    const fmpq *q = expr_is_number(value) ? expr_number(value) : NULL;
+    if (q == NULL || !fmpz_is_one(fmpq_denref(q)) || fmpz_cmp_si(fmpq_numref(q), least) < 0
+        || fmpz_cmp_si(fmpq_numref(q), most) > 0) {
         FAIL(l, a->at, ERROR_VALUE, "%s must be a whole number from %ld to %ld", what, (long)least, (long)most);
         return TW_ERROR;
     }
-    *out = fmpz_get_si(fmpq_numref(expr_number(value)));
+    *out = fmpz_get_si(fmpq_numref(q));
     return TW_OK;
 }

@@ -1,5 +1,5 @@
-/* From syntax to expressions: names are resolved, functions found, everything is built through the engine's constructors.
- * Knows what is bound where; what a free name stands for it asks the host. */
+/* From syntax to expressions: names are resolved, functions found, everything is built through the engine's
+ * constructors. Knows what is bound where; what a free name stands for it asks the host. */
 #ifndef TW_LANG_LOWER_H
 #define TW_LANG_LOWER_H
 
@@ -43,9 +43,10 @@ typedef struct lowering {
 void lowering_init(lowering *l, tw_engine *e, void *host);
 void lowering_clear(lowering *l);
 
-/* The expression, or NULL with the engine's error set (ERROR_NAME, ERROR_VALUE or what a constructor says) and l->place. Inside an
- * integral, a sum, a root, a derivative or `at`, its variable hides everything else of that name. A defined name's value may hold
- * the variable: let q = 1/(1 + x) can be integrated over x. A factorial n! is Gamma(n + 1). a must not be a condition. */
+/* The expression, or NULL with the engine's error set (ERROR_NAME, ERROR_VALUE or what a constructor says) and
+ * l->place. Inside an integral, a sum, a root, a derivative or `at`, its variable hides everything else of that name.
+ * A defined name's value may hold the variable: let q = 1/(1 + x) can be integrated over x. A factorial n! is Gamma(n
+ * + 1). a must not be a condition. */
 expr *lower_expression(lowering *l, const syntax *a);
 
 /* A list of conditions that all hold; relations are EXPR_RELATION. */
@@ -64,8 +65,8 @@ tw_status lower_condition(lowering *l, const syntax *a, lower_conditions *out);
 tw_status lower_function_define(lowering *l, const syntax_name *parameters, size_t count, const syntax *body,
                                 lower_function *out);
 
-/* A whole number between least and most that is fixed by what is defined now; `what` names it in the error: "the number of
- * terms". */
+/* A whole number between least and most that is fixed by what is defined now; `what` names it in the error: "the
+ * number of terms". */
 tw_status lower_count(lowering *l, const syntax *a, const char *what, slong least, slong most, slong *out);
 
 /* A number as typed, e.g. 0.25 or 1e-8, exactly. q is initialised. */

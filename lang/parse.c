@@ -1,5 +1,6 @@
-/* The parser's ground floor: tokens with one of lookahead, names looked up once, errors, and what happens after one. It knows
- * what a word may be used for, and no statement's grammar. Its one idea: an error costs its statement and nothing else. */
+/* The parser's ground floor: tokens with one of lookahead, names looked up once, errors, and what happens after one.
+ * It knows what a word may be used for, and no statement's grammar. Its one idea: an error costs its statement and
+ * nothing else. */
 #include "lang/parse.h"
 
 #include <stdarg.h>
@@ -93,7 +94,8 @@ static const name_entry *name_find(parser *p, const char *bytes, size_t length)
     uint32_t hash = name_hash(bytes, length);
     size_t at = hash & (p->name_room - 1);
     for (; p->names[at].text != NULL; at = (at + 1) & (p->name_room - 1))
-        if (p->names[at].hash == hash && strncmp(p->names[at].text, bytes, length) == 0 && p->names[at].text[length] == 0)
+        if (p->names[at].hash == hash && strncmp(p->names[at].text, bytes, length) == 0
+            && p->names[at].text[length] == 0)
             return &p->names[at];
     name_entry *n = &p->names[at];
     n->text = arena_copy(&p->out->arena, bytes, length);
@@ -201,7 +203,8 @@ span parser_span(const parser *p, uint32_t from)
 bool parser_enter(parser *p)
 {
     if (p->depth >= SYNTAX_DEPTH_LIMIT)
-        return parser_fail_here(p, "brackets, signs and exponents nest deeper here than the limit of %d levels", SYNTAX_DEPTH_LIMIT);
+        return parser_fail_here(p, "brackets, signs and exponents nest deeper here than the limit of %d levels",
+                                SYNTAX_DEPTH_LIMIT);
     p->depth++;
     return true;
 }
@@ -235,12 +238,23 @@ static bool fail_with(parser *p, span at, const char *words)
     return false;
 }
 
+/* The words of a message, in the arena. */
+static const char *format_words(parser *p, const char *format, va_list arguments)
+{
+    va_list again;
+    va_copy(again, arguments);
+    int length = vsnprintf(NULL, 0, format, arguments);
+    char *words = parser_alloc(p, (size_t)length + 1);
+    vsnprintf(words, (size_t)length + 1, format, again);
+    va_end(again);
+    return words;
+}
+
 bool parser_fail(parser *p, span at, const char *format, ...)
 {
-    char words[512];
     va_list arguments;
     va_start(arguments, format);
-    vsnprintf(words, sizeof words, format, arguments);
+    const char *words = format_words(p, format, arguments);
     va_end(arguments);
     return fail_with(p, at, words);
 }
@@ -267,10 +281,9 @@ bool parser_fail_here(parser *p, const char *format, ...)
 {
     if (token_is_bad(p->token.kind))
         return fail_bad_token(p);
-    char words[512];
     va_list arguments;
     va_start(arguments, format);
-    vsnprintf(words, sizeof words, format, arguments);
+    const char *words = format_words(p, format, arguments);
     va_end(arguments);
     return fail_here_with(p, words);
 }
@@ -378,9 +391,11 @@ bool parser_close(parser *p, token bracket, token_kind k)
     const char *opening = token_kind_words(bracket.kind), *closing = token_kind_words(k);
     char what[160];
     if (parser_at(p, TOKEN_CLOSE) || parser_at(p, TOKEN_CLOSE_SQUARE))
-        return parser_fail_here(p, "%s does not close the %s of line %u", token_kind_words(p->token.kind), opening, line);
+        return parser_fail_here(p, "%s does not close the %s of line %u", token_kind_words(p->token.kind), opening,
+                                line);
     if (p->token.kind == TOKEN_END)
-        return parser_fail_here(p, "the %s of line %u is still open: expected %s, but the text ends", opening, line, closing);
+        return parser_fail_here(p, "the %s of line %u is still open: expected %s, but the text ends", opening, line,
+                                closing);
     snprintf(what, sizeof what, "%s for the %s of line %u", closing, opening, line);
     return parser_expected(p, what);
 }
@@ -432,8 +447,9 @@ static bool at_opener(const parser *p)
     return p->token.kind == TOKEN_NAME && (p->name->is == WORD_STATEMENT || p->name->is == WORD_MOVE);
 }
 
-/* After an error: on to the end of the broken statement, by the rules by which a line goes on. A line that begins with the
- * opening word of a statement is a new one even while a bracket is open; one that begins with a linking word never is. */
+/* After an error: on to the end of the broken statement, by the rules by which a line goes on. A line that begins
+ * with the opening word of a statement is a new one even while a bracket is open; one that begins with a linking word
+ * never is. */
 static void skip_statement(parser *p)
 {
     long open = p->open;

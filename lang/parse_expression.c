@@ -1,6 +1,6 @@
-/* Expressions and conditions: one function a level of binding, from sums down to operands. Knows which words open an expression
- * and which names can't be bound; what a name means is not asked here. Sums and products are flat lists, so that a long one is
- * not a deep one. */
+/* Expressions and conditions: one function a level of binding, from sums down to operands. Knows which words open an
+ * expression and which names can't be bound; what a name means is not asked here. Sums and products are flat lists,
+ * so that a long one is not a deep one. */
 #include "lang/parser.h"
 
 #include <string.h>
@@ -140,11 +140,13 @@ static bool parse_differential(parser *p, const syntax *body, token opening, syn
     }
     if (p->failed)
         return false;
-    if (body->kind == SYNTAX_NAME && body->as.name[0] == 'd' && lexer_is_name(body->as.name + 1, strlen(body->as.name + 1)))
-        return parser_fail(p, body->at, "the integral has no body: write `of 1 %s`", body->as.name);
+    const char *name = body->kind == SYNTAX_NAME ? body->as.name : "";
+    if (name[0] == 'd' && lexer_is_name(name + 1, strlen(name + 1)))
+        return parser_fail(p, body->at, "the integral has no body: write `of 1 %s`", name);
     if (parser_at_word(p, "d") && parser_peek(p).kind == TOKEN_NAME)
         return parser_fail_here(p, "the `d` and the variable that close an integral are one word, such as `dx`");
-    if (token_is_bad(p->token.kind) || parser_at(p, TOKEN_NAME) || parser_at(p, TOKEN_OPEN) || parser_at(p, TOKEN_NUMBER))
+    if (token_is_bad(p->token.kind) || parser_at(p, TOKEN_NAME) || parser_at(p, TOKEN_OPEN)
+        || parser_at(p, TOKEN_NUMBER))
         return parser_expected(p, "an operator, or the `d...` that closes the integral, such as `dx`");
     return parser_fail_here(p, "the integral of line %u is not closed here: expected its variable, such as `dx`",
                             source_find(p->source, opening.at.from).line);
@@ -350,8 +352,8 @@ static syntax *parse_opened(parser *p)
     return openers[k].parse(p);
 }
 
-/* A linking word where an operand should stand: is it a name all the same? It is when what comes next can only follow an
- * operand. */
+/* A linking word where an operand should stand: is it a name all the same? It is when what comes next can only follow
+ * an operand. */
 static bool link_is_a_name(const parser *p)
 {
     token next = parser_peek(p);
@@ -412,8 +414,8 @@ static syntax *parse_factorial(parser *p)
     if (a == NULL)
         return NULL;
     if (!in_brackets && takes_no_power(a) && (parser_at(p, TOKEN_FACTORIAL) || parser_at(p, TOKEN_POWER))) {
-        parser_fail_here(p, "%s takes %s only in brackets",
-                         a->kind == SYNTAX_DERIVATIVE ? "a derivative" : "an integral", token_kind_words(p->token.kind));
+        parser_fail_here(p, "%s takes %s only in brackets", a->kind == SYNTAX_DERIVATIVE ? "a derivative" : "an integral",
+                         token_kind_words(p->token.kind));
         return NULL;
     }
     unsigned depth = p->depth;
@@ -473,7 +475,8 @@ static syntax *parse_signed(parser *p)
 /* Operands joined by either of two operators, as one flat list. */
 static syntax *parse_list(parser *p, syntax_kind kind, syntax *(*parse_part)(parser *p))
 {
-    token_kind plain = kind == SYNTAX_SUM ? TOKEN_PLUS : TOKEN_TIMES, inverse = kind == SYNTAX_SUM ? TOKEN_MINUS : TOKEN_OVER;
+    token_kind plain = kind == SYNTAX_SUM ? TOKEN_PLUS : TOKEN_TIMES;
+    token_kind inverse = kind == SYNTAX_SUM ? TOKEN_MINUS : TOKEN_OVER;
     static const char *const needs[][2] = {{"`+` needs an operand here", "`-` needs an operand here"},
                                            {"`*` needs an operand here", "`/` needs an operand here"}};
     parser_skip_lines(p);

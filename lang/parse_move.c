@@ -1,5 +1,5 @@
-/* The grammar of derivations by hand: derive, the moves, done, undo, steps. Each line is a statement of its own, so that a
- * prompt can take it at once; whether a derivation is open is the session's business. */
+/* The grammar of derivations by hand: derive, the moves, done, undo, steps. Each line is a statement of its own, so
+ * that a prompt can take it at once; whether a derivation is open is the session's business. */
 #include <string.h>
 
 #include "lang/parser.h"
@@ -34,7 +34,9 @@ bool parse_steps(parser *p, statement *out)
     parser_advance(p);
     if (parser_at_word(p, "of"))
         return parser_fail_here(p, "`steps` takes the name without `of`: `steps A`");
-    return parser_at_line_end(p) || (out->as.subject = parse_sum(p, "`steps` takes the name of a result here", "")) != NULL;
+    if (parser_at_line_end(p))
+        return true;
+    return (out->as.subject = parse_sum(p, "`steps` takes the name of a result here", "")) != NULL;
 }
 
 /* ---- the moves ---- */

@@ -1,5 +1,5 @@
-/* Strategies over rules: `repeat`, `everywhere`, `once` bind tightest, then `then`, then `or`. What a name in one stands for is
- * not asked here. */
+/* Strategies over rules: `repeat`, `everywhere`, `once` bind tightest, then `then`, then `or`. What a name in one
+ * stands for is not asked here. */
 #include <string.h>
 
 #include "lang/parser.h"

@@ -1,5 +1,5 @@
-/* The grammar of requests: what a session is asked to do with expansions, integrals, rules and files. Options may come in any
- * order; the printer knows the usual one. Whether a request can be met is not asked here. */
+/* The grammar of requests: what a session is asked to do with expansions, integrals, rules and files. Options may
+ * come in any order; the printer knows the usual one. Whether a request can be met is not asked here. */
 #include <string.h>
 
 #include "lang/parser.h"
@@ -220,8 +220,8 @@ static bool parse_evaluate_to(parser *p, statement *out)
     }
     if (out->as.evaluate->digits != NULL)
         return fail_twice(p, "to");
-    return parse_count(p, &out->as.evaluate->digits, "`to` needs a number of digits, or a file in quotes, here", "digits",
-                       "`digits` after the number");
+    return parse_count(p, &out->as.evaluate->digits, "`to` needs a number of digits, or a file in quotes, here",
+                       "digits", "`digits` after the number");
 }
 
 /* At `all`: is it the word, and no name of a number of terms? */

@@ -1,5 +1,5 @@
-/* The table of statements, and the grammar of those that declare: large, small, given, grant, let, use, rule, pass. A new
- * statement is a row here, a kind in syntax.h and a line in the printer. */
+/* The table of statements, and the grammar of those that declare: large, small, given, grant, let, use, rule, pass. A
+ * new statement is a row here, a kind in syntax.h and a line in the printer. */
 #include <string.h>
 
 #include "lang/parser.h"
@@ -14,9 +14,9 @@ static bool parse_sector(parser *p, statement *out)
         return false;
     const char *name = out->as.large.name.text;
     if (c->kind == SYNTAX_RANGE && c->as.range->value->kind == SYNTAX_CALL) {
-        const syntax *call = c->as.range->value;
-        if (strcmp(call->as.call.name.text, "arg") == 0 && call->as.call.count == 1
-            && call->as.call.arguments[0]->kind == SYNTAX_NAME && strcmp(call->as.call.arguments[0]->as.name, name) == 0) {
+        const syntax *call = c->as.range->value, *argument = call->as.call.arguments[0];
+        if (strcmp(call->as.call.name.text, "arg") == 0 && call->as.call.count == 1 && argument->kind == SYNTAX_NAME
+            && strcmp(argument->as.name, name) == 0) {
             out->as.large.sector = c;
             return true;
         }
@@ -281,7 +281,8 @@ static bool fail_opening(parser *p)
     if (parser_peek(p).kind == TOKEN_EQUAL)
         return parser_fail_here(p, "a name is defined with `let`: `let %s = ...`", p->name->text);
     if (p->name->is == WORD_EXPRESSION || p->name->is == WORD_FUNCTION || p->name->is == WORD_CONSTANT)
-        return parser_fail_here(p, "an expression alone is no statement: write `let NAME = ...`, `evaluate ...`, `expand ...`");
+        return parser_fail_here(p, "an expression alone is no statement: write `let NAME = ...`, `evaluate ...` or "
+                                "`expand ...`");
     const char *words[OPENER_COUNT + 1] = {NULL};
     for (size_t k = 0; k < OPENER_COUNT; k++)
         words[k] = openers[k].word;

@@ -1,6 +1,7 @@
-/* What the files of the parser share; nobody else includes it. Recursive descent with one token of lookahead. A function that
- * parses something returns NULL (or false) once the statement has failed, and the first error of a statement is the only one
- * that is kept. Line ends are tokens; they are passed over within brackets and after anything that cannot end a statement. */
+/* What the files of the parser share; nobody else includes it. Recursive descent with one token of lookahead. A
+ * function that parses something returns NULL (or false) once the statement has failed, and the first error of a
+ * statement is the only one that is kept. Line ends are tokens; they are passed over within brackets and after
+ * anything that cannot end a statement. */
 #ifndef TW_LANG_PARSER_H
 #define TW_LANG_PARSER_H
 
@@ -105,9 +106,9 @@ statement *parse_statement(parser *p);
 /* A request after `let NAME =`; NULL without an error when none begins here. */
 statement *parse_kept_request(parser *p);
 
-statement_parser parse_check, parse_rewrite, parse_why, parse_replay, parse_expand, parse_coefficients, parse_recurrence,
-    parse_growth, parse_remainder, parse_evaluate, parse_compare, parse_plan, parse_plot, parse_write, parse_show, parse_drop,
-    parse_help, parse_quit;
+statement_parser parse_check, parse_rewrite, parse_why, parse_replay, parse_expand, parse_coefficients;
+statement_parser parse_recurrence, parse_growth, parse_remainder, parse_evaluate, parse_compare, parse_plan;
+statement_parser parse_plot, parse_write, parse_show, parse_drop, parse_help, parse_quit;
 statement_parser parse_derive, parse_done, parse_undo, parse_steps, parse_move;
 /* The rest of `use rule NAME` and `rewrite with PASS`, at `rule` and `with`. */
 bool parse_use_rule_move(parser *p, statement *out);

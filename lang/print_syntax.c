@@ -1,6 +1,6 @@
-/* The one printer of syntax. It puts back the brackets that the grammar needs and no others, so a printed tree never nests
- * deeper than the text it came from. Two things decide about brackets: how tightly the surroundings bind, and whether what
- * follows would end an operand that has no end of its own (a sum's body, the value after `near`). */
+/* The one printer of syntax. It puts back the brackets that the grammar needs and no others, so a printed tree never
+ * nests deeper than the text it came from. Two things decide about brackets: how tightly the surroundings bind, and
+ * whether what follows would end an operand that has no end of its own (a sum's body, the value after `near`). */
 #include <string.h>
 
 #include "lang/syntax.h"

@@ -1,5 +1,5 @@
-/* Places in a source, and how a complaint shows them. It knows nothing of the language; it must stand any bytes, lines of
- * megabytes included. Its one idea: nothing is computed until a message needs it. */
+/* Places in a source, and how a complaint shows them. It knows nothing of the language; it must stand any bytes,
+ * lines of megabytes included. Its one idea: nothing is computed until a message needs it. */
 #include "lang/source.h"
 
 #include <stdbool.h>
@@ -19,7 +19,8 @@ void source_init(source *s, const char *name, const char *bytes, size_t length)
     s->known_line = 1;
 }
 
-/* One character: its bytes, how many columns a terminal gives it, whether it is UTF-8, and whether it can be shown as it is. */
+/* One character: its bytes, how many columns a terminal gives it, whether it is UTF-8, and whether it can be shown as
+ * it is. */
 typedef struct glyph {
     size_t bytes;
     int width;
@@ -34,8 +35,8 @@ static bool code_is_in(uint32_t code, const uint32_t (*ranges)[2], size_t count)
     return false;
 }
 
-/* Columns of a character, by the blocks that matter: combining marks stand on the letter before them; the scripts of East Asia
- * and pictures take two columns. */
+/* Columns of a character, by the blocks that matter: combining marks stand on the letter before them; the scripts of
+ * East Asia and pictures take two columns. */
 static int code_width(uint32_t code)
 {
     static const uint32_t none[][2] = {{0x300, 0x36F},   {0x483, 0x489},   {0x591, 0x5BD},   {0x610, 0x61A},
@@ -56,7 +57,7 @@ static glyph glyph_read(const char *at, const char *end)
 {
     const unsigned char *u = (const unsigned char *)at;
     glyph g = {1, 1, u[0] < 128, u[0] >= ' ' && u[0] < 127};
-    size_t length = u[0] >= 0xF0 && u[0] < 0xF5 ? 4 : u[0] >= 0xE0 && u[0] < 0xF0 ? 3 : u[0] >= 0xC2 && u[0] < 0xE0 ? 2 : 1;
+    size_t length = u[0] < 0xC2 || u[0] > 0xF4 ? 1 : u[0] < 0xE0 ? 2 : u[0] < 0xF0 ? 3 : 4;
     if (length == 1 || (size_t)(end - at) < length)
         return g;
     uint32_t code = u[0] & (0xFFu >> (length + 1));

@@ -1,6 +1,6 @@
-/* Distance of two names: letters left out, added, mistaken or swapped with their neighbour, counted in halves so that a
- * letter in the wrong case costs less (Damerau's distance, the variant in which no place is edited twice). It works on bytes;
- * a mistaken letter outside ASCII may count twice. Knows no list of words: the caller offers them. */
+/* Distance of two names: letters left out, added, mistaken or swapped with their neighbour, counted in halves so that
+ * a letter in the wrong case costs less (Damerau's distance, the variant in which no place is edited twice). It works
+ * on bytes; a mistaken letter outside ASCII may count twice. Knows no list of words: the caller offers them. */
 #include "lang/suggest.h"
 
 #include <ctype.h>

@@ -12,8 +12,9 @@ typedef struct suggestion {
 } suggestion;
 
 void suggestion_init(suggestion *s, const char *wrong);
-/* name must outlive the suggestion. A name is near when few letters were mistaken, left out, added or swapped: at most one
- * in three begun; letters that differ in case only count half. A name of one or two letters is near in another case only. */
+/* name must outlive the suggestion. A name is near when few letters were mistaken, left out, added or swapped: at
+ * most one in three begun; letters that differ in case only count half. A name of one or two letters is near in
+ * another case only. */
 void suggestion_offer(suggestion *s, const char *name);
 
 #endif

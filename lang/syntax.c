@@ -43,9 +43,10 @@ const char *statement_words(const statement *s)
 bool statement_gives_value(statement_kind kind)
 {
     switch (kind) {
-    case STATEMENT_REWRITE: case STATEMENT_REPLAY: case STATEMENT_EXPAND: case STATEMENT_STEPS: case STATEMENT_COEFFICIENTS:
-    case STATEMENT_RECURRENCE: case STATEMENT_GROWTH: case STATEMENT_REMAINDER: case STATEMENT_EVALUATE: case STATEMENT_COMPARE:
-    case STATEMENT_PLAN: case STATEMENT_EXPANSION_OF: case STATEMENT_RULE_FROM:
+    case STATEMENT_REWRITE: case STATEMENT_REPLAY: case STATEMENT_EXPAND: case STATEMENT_STEPS:
+    case STATEMENT_COEFFICIENTS: case STATEMENT_RECURRENCE: case STATEMENT_GROWTH: case STATEMENT_REMAINDER:
+    case STATEMENT_EVALUATE: case STATEMENT_COMPARE: case STATEMENT_PLAN: case STATEMENT_EXPANSION_OF:
+    case STATEMENT_RULE_FROM:
         return true;
     default:
         return false;
@@ -107,14 +108,16 @@ bool syntax_equal(const syntax *a, const syntax *b)
         return names_equal(a->as.call.name, b->as.call.name) && a->as.call.count == b->as.call.count
             && lists_equal(a->as.call.arguments, b->as.call.arguments, a->as.call.count);
     case SYNTAX_INDEXED:
-        return words_equal(a->as.indexed.name, b->as.indexed.name) && syntax_equal(a->as.indexed.index, b->as.indexed.index);
+        return words_equal(a->as.indexed.name, b->as.indexed.name)
+            && syntax_equal(a->as.indexed.index, b->as.indexed.index);
     case SYNTAX_SUM: case SYNTAX_PRODUCT:
         return a->as.list.count == b->as.list.count && memcmp(a->as.list.signs, b->as.list.signs, a->as.list.count) == 0
             && lists_equal(a->as.list.parts, b->as.list.parts, a->as.list.count);
     case SYNTAX_NEGATE: case SYNTAX_FACTORIAL:
         return syntax_equal(a->as.operand, b->as.operand);
     case SYNTAX_POWER:
-        return syntax_equal(a->as.power.base, b->as.power.base) && syntax_equal(a->as.power.exponent, b->as.power.exponent);
+        return syntax_equal(a->as.power.base, b->as.power.base)
+            && syntax_equal(a->as.power.exponent, b->as.power.exponent);
     case SYNTAX_INTEGRAL: case SYNTAX_SUMMATION:
         return names_equal(a->as.binder->variable, b->as.binder->variable)
             && syntax_equal(a->as.binder->from, b->as.binder->from) && syntax_equal(a->as.binder->to, b->as.binder->to)
@@ -204,8 +207,10 @@ static bool rules_equal(const statement *a, const statement *b)
     for (size_t k = 0; k < a->as.rule->count; k++)
         if (!parameters_equal(&a->as.rule->parameters[k], &b->as.rule->parameters[k]))
             return false;
-    return syntax_equal(a->as.rule->pattern, b->as.rule->pattern) && syntax_equal(a->as.rule->becomes, b->as.rule->becomes)
-        && conditions_equal(a->as.rule->when, b->as.rule->when) && words_equal(a->as.rule->because, b->as.rule->because);
+    return syntax_equal(a->as.rule->pattern, b->as.rule->pattern)
+        && syntax_equal(a->as.rule->becomes, b->as.rule->becomes)
+        && conditions_equal(a->as.rule->when, b->as.rule->when)
+        && words_equal(a->as.rule->because, b->as.rule->because);
 }
 
 static bool moves_equal(const statement *a, const statement *b)
@@ -305,14 +310,17 @@ bool statement_equal(const statement *a, const statement *b)
         return syntax_equal(a->as.compare.subject, b->as.compare.subject)
             && binding_lists_equal(a->as.compare.at, b->as.compare.at);
     case STATEMENT_PLAN:
-        return syntax_equal(a->as.plan->subject, b->as.plan->subject) && syntax_equal(a->as.plan->error, b->as.plan->error)
+        return syntax_equal(a->as.plan->subject, b->as.plan->subject)
+            && syntax_equal(a->as.plan->error, b->as.plan->error)
             && names_equal(a->as.plan->over, b->as.plan->over) && syntax_equal(a->as.plan->from, b->as.plan->from)
             && syntax_equal(a->as.plan->to, b->as.plan->to);
     case STATEMENT_PLOT:
         return a->as.plot->terms == b->as.plot->terms && syntax_equal(a->as.plot->of, b->as.plot->of)
-            && binding_lists_equal(a->as.plot->at, b->as.plot->at) && words_equal(a->as.plot->to_file, b->as.plot->to_file);
+            && binding_lists_equal(a->as.plot->at, b->as.plot->at)
+            && words_equal(a->as.plot->to_file, b->as.plot->to_file);
     case STATEMENT_WRITE:
-        return syntax_equal(a->as.write.subject, b->as.write.subject) && names_equal(a->as.write.format, b->as.write.format)
+        return syntax_equal(a->as.write.subject, b->as.write.subject)
+            && names_equal(a->as.write.format, b->as.write.format)
             && words_equal(a->as.write.to_file, b->as.write.to_file);
     case STATEMENT_HELP:
         return words_equal(a->as.help, b->as.help);

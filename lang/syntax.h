@@ -1,9 +1,9 @@
-/* The syntax tree: what a text says, before anybody asks what it means. One node type for expressions and conditions, one
- * for passes, one for statements; each node has its place in the source. Trees live in the arena of the syntax_text that
- * they were parsed into, and go with it. Brackets leave no node: the printer puts them back where they are needed.
+/* The syntax tree: what a text says, before anybody asks what it means. One node type for expressions and conditions,
+ * one for passes, one for statements; each node has its place in the source. Trees live in the arena of the syntax_text
+ * that they were parsed into, and go with it. Brackets leave no node: the printer puts them back where they are needed.
  *
- * All names and texts are NUL-terminated UTF-8 (a NUL in a source is an error). A pointer documented as optional is NULL when
- * the words were not typed. */
+ * All names and texts are NUL-terminated UTF-8 (a NUL in a source is an error). A pointer documented as optional is
+ * NULL when the words were not typed. */
 #ifndef TW_LANG_SYNTAX_H
 #define TW_LANG_SYNTAX_H
 
@@ -15,8 +15,8 @@
 #include "engine/base/text.h"
 #include "lang/source.h"
 
-/* How deep brackets, signs, exponents and integrals may nest in a text. Between two levels lie at most five nodes of a tree,
- * so a recursive walk over a parsed tree is at most five times as deep. */
+/* How deep brackets, signs, exponents and integrals may nest in a text. Between two levels lie at most five nodes of
+ * a tree, so a recursive walk over a parsed tree is at most five times as deep. */
 enum { SYNTAX_DEPTH_LIMIT = 1000 };
 
 /* A name where it stands. */
@@ -284,7 +284,7 @@ struct statement {
             syntax *value;
             syntax_pass *with;
         } rewrite;
-        syntax *subject;   /* DERIVE; STEPS (NULL: of the open derivation); RECURRENCE, GROWTH; EXPANSION_OF, RULE_FROM */
+        syntax *subject;   /* DERIVE, RECURRENCE, GROWTH, EXPANSION_OF, RULE_FROM; STEPS (NULL: of the open derivation) */
         struct {
             uint8_t kind;     /* move_kind */
             syntax *integral; /* optional: in integral K */

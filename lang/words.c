@@ -1,5 +1,5 @@
-/* The table of words. It knows what a word is for, not what it does: the parser gives the openers their functions, help its
- * texts. A word is listed once; the names of functions are the engine's. */
+/* The table of words. It knows what a word is for, not what it does: the parser gives the openers their functions,
+ * help its texts. A word is listed once; the names of functions are the engine's. */
 #include "lang/words.h"
 
 #include <string.h>

@@ -1,5 +1,5 @@
-/* All words of the language in one table: what completion offers, help explains and `did you mean` knows. The functions'
- * names come from the engine's table. */
+/* All words of the language in one table: what completion offers, help explains and `did you mean` knows. The
+ * functions' names come from the engine's table. */
 #ifndef TW_LANG_WORDS_H
 #define TW_LANG_WORDS_H
 

@@ -1,4 +1,5 @@
-/* Tokens, written out as KIND:bytes and compared as text; bytes that are no token; the words table that stands behind names. */
+/* Tokens, written out as KIND:bytes and compared as text; bytes that are no token; the words table that stands behind
+ * names. */
 #include <setjmp.h>
 #include <stdarg.h>
 #include <stddef.h>

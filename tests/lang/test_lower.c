@@ -1,5 +1,5 @@
-/* Lowering: texts that must give the same expression, what names stand for, conditions as relations, errors with their place,
- * and the way back: an expression's printed text gives the same expression. */
+/* Lowering: texts that must give the same expression, what names stand for, conditions as relations, errors with
+ * their place, and the way back: an expression's printed text gives the same expression. */
 #include <setjmp.h>
 #include <stdarg.h>
 #include <stddef.h>

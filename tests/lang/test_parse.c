@@ -1,5 +1,5 @@
-/* The parser: which tree a text has, written out with all its brackets; when a line goes on; what is left of a text with errors;
- * depth, length and time. */
+/* The parser: which tree a text has, written out with all its brackets; when a line goes on; what is left of a text
+ * with errors; depth, length and time. */
 #include <setjmp.h>
 #include <stdarg.h>
 #include <stddef.h>
@@ -558,7 +558,8 @@ static double seconds_to_parse(const char *unit, const char *prefix, size_t byte
     return (double)(to.tv_sec - from.tv_sec) + 1e-9 * (double)(to.tv_nsec - from.tv_nsec);
 }
 
-/* Time grows with the length: eight times the text takes no more than some twenty times as long, also where all is wrong. */
+/* Time grows with the length: eight times the text takes no more than some twenty times as long, also where all is
+ * wrong. */
 static void time_and_memory_are_proportional(void **state)
 {
     static const char *const units[][2] = {

@@ -1,5 +1,5 @@
-/* Round trips: what is printed parses back to an equal tree, and prints the same again. Trees are made at random and must cover
- * every form of statement, move, pass and expression; the seed is printed and taken from TW_SEED. */
+/* Round trips: what is printed parses back to an equal tree, and prints the same again. Trees are made at random and
+ * must cover every form of statement, move, pass and expression; the seed is printed and taken from TW_SEED. */
 #include <setjmp.h>
 #include <stdarg.h>
 #include <stddef.h>

@@ -1,5 +1,5 @@
-/* Whole complaints, as text: file, line, column, words, the line, carets. Also places in odd texts: tabs, wide characters, bytes that
- * are no UTF-8, long lines. */
+/* Whole complaints, as text: file, line, column, words, the line, carets. Also places in odd texts: tabs, wide
+ * characters, bytes that are no UTF-8, long lines. */
 #include <setjmp.h>
 #include <stdarg.h>
 #include <stddef.h>
@@ -216,7 +216,8 @@ static const struct {
          "   1 | A = 3\n"
          "       ^\n"},
         {"exp(-x)",
-         "bad.tw:1:1: error: an expression alone is no statement: write `let NAME = ...`, `evaluate ...`, `expand ...`\n"
+         "bad.tw:1:1: error: an expression alone is no statement: write `let NAME = ...`, `evaluate ...` or "
+         "`expand ...`\n"
          "   1 | exp(-x)\n"
          "       ^^^\n"},
         {"1 + 2",
@@ -474,7 +475,8 @@ static void a_nul_is_reported_and_ends_nothing(void **state)
 static void bytes_that_are_no_utf_8_are_reported(void **state)
 {
     (void)state;
-    static const char *const wrong[] = {"\x80", "\xC0\x80", "\xE2\x82", "\xED\xA0\x80", "\xF8\x88\x80\x80\x80", "\xF4\x90\x80\x80"};
+    static const char *const wrong[] = {"\x80", "\xC0\x80", "\xE2\x82", "\xED\xA0\x80", "\xF8\x88\x80\x80\x80",
+                                        "\xF4\x90\x80\x80"};
     for (size_t k = 0; k < sizeof wrong / sizeof *wrong; k++) {
         text in, out;
         text_init(&in);
@@ -552,8 +554,8 @@ static void places_are_found_in_any_order(void **state)
     static const char bytes[] = "a\nbé\xFFz\r\n\n\xE5\xA4\x89x";
     static const struct {
         uint32_t offset, line, column;
-    } places[] = {{0, 1, 1}, {1, 1, 2}, {2, 2, 1}, {3, 2, 2}, {5, 2, 3}, {6, 2, 4}, {7, 2, 5}, {9, 3, 1}, {10, 4, 1}, {13, 4, 2},
-                  {14, 4, 3}};
+    } places[] = {{0, 1, 1}, {1, 1, 2}, {2, 2, 1}, {3, 2, 2}, {5, 2, 3}, {6, 2, 4}, {7, 2, 5}, {9, 3, 1}, {10, 4, 1},
+                  {13, 4, 2}, {14, 4, 3}};
     enum { COUNT = sizeof places / sizeof *places };
     source s;
     source_init(&s, "x", bytes, sizeof bytes - 1);
