@@ -10,7 +10,7 @@
 #include "engine/ball/decide.h"
 #include "engine/exact/values.h"
 
-enum { PIECE_LIMIT = 200 };
+enum { PIECE_LIMIT = 200, FAR_STEPS = 20000 };
 
 /* ---- the work ---- */
 
@@ -190,8 +190,12 @@ static bool grids_meet(const piece *a, const piece *b)
     return steps_between(&steps, a->lead, b->lead, lcm_of(a->den, b->den));
 }
 
+/* Coefficients beyond those wanted are dropped before they are spread out; a short polynomial stays whole. */
 void piece_refine(work *w, piece *p, slong den)
 {
+    slong finer = den / p->den;
+    if (finer > 1 && (p->c.known != TAIL_EXACT || tail_length(&p->c) > FAR_STEPS / finer))
+        tail_truncate(&w->f, &p->c, w->terms / finer + 2);
     tail_stretch(&w->f, &p->c, den / p->den);
     p->den = den;
 }
@@ -246,6 +250,21 @@ tw_status piece_fold(work *w, piece *p, bool constants)
     return s;
 }
 
+void tail_add_shifted(work *w, tail *c, tail *d, slong steps)
+{
+    if (steps > FAR_STEPS && steps > 4 * w->terms) { /* far beyond what is wanted: unknown from there on */
+        tail zero;
+        tail_init(&zero);
+        zero.known = steps;
+        zero.gap = 1;
+        tail_add(&w->f, c, c, &zero, 1);
+        tail_clear(&w->f, &zero);
+        return;
+    }
+    tail_shift(&w->f, d, steps);
+    tail_add(&w->f, c, c, d, 1);
+}
+
 /* p += q on the common grid; same constant, sigma, log_power. */
 static tw_status piece_merge(work *w, piece *p, piece *q)
 {
@@ -257,11 +276,11 @@ static tw_status piece_merge(work *w, piece *p, piece *q)
     piece_refine(w, q, den);
     steps_between(&steps, p->lead, q->lead, den);
     if (steps < 0) {
-        tail_shift(&w->f, &p->c, -steps);
+        tail_swap(&p->c, &q->c);
         fmpq_set(p->lead, q->lead);
-    } else
-        tail_shift(&w->f, &q->c, steps);
-    tail_add(&w->f, &p->c, &p->c, &q->c, 1);
+        steps = -steps;
+    }
+    tail_add_shifted(w, &p->c, &q->c, steps);
     tail_demote(&w->f, &p->c);
     piece_coarsen(w, p);
     return TW_OK;

@@ -85,6 +85,8 @@ expr *piece_exponent(work *w, const piece *p);
 bool steps_between(slong *steps, const fmpq_t a, const fmpq_t b, slong den);
 slong lcm_of(slong a, slong b);
 void piece_refine(work *w, piece *p, slong den); /* den a multiple of the old one */
+/* c += y^steps d, steps >= 0; d is used up. Where d begins far beyond what is wanted c becomes unknown from there on. */
+void tail_add_shifted(work *w, tail *c, tail *d, slong steps);
 void piece_strip(work *w, piece *p);             /* moves leading zeros (as polynomials) into the exponent */
 /* Strips until c[0] is proved nonzero; thin when nothing known is left. */
 tw_status piece_prove_leading(work *w, piece *p);

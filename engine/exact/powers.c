@@ -117,9 +117,9 @@ tw_status pieces_gather(work *w, piece *out, const pieces *g, const char *refusa
             s = piece_fold(w, &p, false);
         if (s == TW_OK) {
             piece_refine(w, &p, den);
-            steps_between(&steps, least, p.lead, den);
-            tail_shift(&w->f, &p.c, steps);
-            tail_add(&w->f, &sum.c, &sum.c, &p.c, 1);
+            if (!steps_between(&steps, least, p.lead, den))
+                steps = WORD_MAX / 2;
+            tail_add_shifted(w, &sum.c, &p.c, steps);
         }
         piece_clear(w, &p);
     }

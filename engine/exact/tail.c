@@ -245,6 +245,7 @@ void tail_stretch(field *f, tail *t, slong g)
         slong length = fmpq_poly_length(t->q);
         if (length > 1) {
             fmpq_poly_fit_length(t->q, (length - 1) * g + 1);
+            _fmpz_vec_zero(t->q->coeffs + length, (length - 1) * (g - 1)); /* FLINT leaves what was cut off there */
             _fmpq_poly_set_length(t->q, (length - 1) * g + 1);
             for (slong k = length - 1; k > 0; k--)
                 fmpz_swap(t->q->coeffs + k * g, t->q->coeffs + k);
