@@ -56,7 +56,8 @@ typedef const struct expr expr;
 
 struct expr {
     uint8_t kind;          /* expr_kind */
-    uint8_t fresh;         /* EXPR_SYMBOL: made by expr_fresh */
+    uint8_t fresh : 1;     /* EXPR_SYMBOL: made by expr_fresh */
+    uint8_t infinite : 1;  /* inf, or a sum, product or power that holds it */
     uint16_t depth;        /* 1 for a leaf; at most EXPR_DEPTH_LIMIT */
     uint32_t hash;
     uint32_t loose;        /* 1 + the greatest de Bruijn index that points outside, 0 when closed */

@@ -51,9 +51,7 @@ bool number_fits(const fmpq_t q);
 expr *number_power(tw_engine *e, const fmpq_t base, const fmpq_t exponent);
 expr *number_power_symbolic(tw_engine *e, const fmpq_t base, expr *exponent);
 expr *minus_one_power(tw_engine *e, const fmpq_t r);
-/* Does inf (or inf in a direction) occur outside binders and function arguments? */
-bool expr_mentions_inf(expr *a);
-/* A value known to be a real number (closed, made of rationals, pi, euler_constant, positive powers, exp of such ...). */
+/* A value known by its form to be a real number (closed, small, made of rationals, pi, euler_constant, positive powers, exp of such ...). */
 bool expr_is_real_constant(expr *a);
 /* Known to be a positive real number by its form alone: rationals, pi, euler_constant, their products and real powers. */
 bool expr_is_positive_constant(expr *a);
@@ -65,7 +63,8 @@ bool expr_enclose_constant(expr *a, arb_t value, slong prec);
 /* Positive by the given facts (granted ones left aside) or as the large or small parameter? */
 bool facts_symbol_is_positive(tw_engine *e, expr *symbol);
 /* Real by its form and the declarations (names are real unless declared complex)? Bound variables count as real when
- * bound_real. Conservative: false means unknown. */
+ * bound_real. Conservative: false means unknown, as it is for trees larger than REAL_SIZE_LIMIT. */
+enum { REAL_SIZE_LIMIT = 10000 };
 bool expr_is_real(tw_engine *e, expr *a, bool bound_real);
 
 #endif

@@ -30,6 +30,8 @@ static bool is_listed(const normal_walk *w, expr *a)
 
 static bool is_positive(normal_walk *w, expr *a)
 {
+    if (a->size > REAL_SIZE_LIMIT)
+        return false;
     switch (a->kind) {
     case EXPR_SYMBOL: return is_listed(w, a) || facts_symbol_is_positive(w->engine, a);
     case EXPR_SUM: case EXPR_PRODUCT:
@@ -48,6 +50,8 @@ static bool is_positive(normal_walk *w, expr *a)
 
 static bool is_real(normal_walk *w, expr *a)
 {
+    if (a->size > REAL_SIZE_LIMIT)
+        return false;
     if (expr_is_real(w->engine, a, false) || is_positive(w, a))
         return true;
     if (a->kind == EXPR_CALL && a->is.function == FUNCTION_LOG)

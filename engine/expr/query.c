@@ -275,8 +275,13 @@ size_t node_symbols(tw_engine *e, expr *a, expr ***symbols)
 
 /* ---- what the form alone tells ---- */
 
+/* Larger trees are not looked through: shared parts could make that endless. */
+enum { CONSTANT_SIZE_LIMIT = 2000 };
+
 bool expr_is_real_constant(expr *a)
 {
+    if (a->names != 0 || a->loose != 0 || a->size > CONSTANT_SIZE_LIMIT)
+        return false;
     switch (a->kind) {
     case EXPR_NUMBER: return true;
     case EXPR_CONSTANT: return a->is.constant == CONSTANT_PI || a->is.constant == CONSTANT_EULER;
@@ -306,6 +311,8 @@ bool expr_is_real_constant(expr *a)
 
 bool expr_is_positive_constant(expr *a)
 {
+    if (a->names != 0 || a->loose != 0 || a->size > CONSTANT_SIZE_LIMIT)
+        return false;
     switch (a->kind) {
     case EXPR_NUMBER: return fmpq_sgn(&a->is.number) > 0;
     case EXPR_CONSTANT: return a->is.constant == CONSTANT_PI || a->is.constant == CONSTANT_EULER;
@@ -321,18 +328,6 @@ bool expr_is_positive_constant(expr *a)
         return a->is.function == FUNCTION_GAMMA && expr_is_positive_constant(a->args[0]);
     default: return false;
     }
-}
-
-bool expr_mentions_inf(expr *a)
-{
-    if (expr_is_inf(a))
-        return true;
-    if (a->kind != EXPR_SUM && a->kind != EXPR_PRODUCT && a->kind != EXPR_POWER)
-        return false;
-    for (size_t k = 0; k < a->count; k++)
-        if (expr_mentions_inf(a->args[k]))
-            return true;
-    return false;
 }
 
 bool expr_leads_negative(expr *a)

@@ -50,6 +50,8 @@ static bool is_real_call(tw_engine *e, expr *a, bool bound_real)
 
 bool expr_is_real(tw_engine *e, expr *a, bool bound_real)
 {
+    if (a->size > REAL_SIZE_LIMIT)
+        return false;
     switch (a->kind) {
     case EXPR_NUMBER: return true;
     case EXPR_CONSTANT: return a->is.constant != CONSTANT_I && a->is.constant != CONSTANT_INF;

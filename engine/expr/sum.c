@@ -87,7 +87,7 @@ static expr *merge_run(tw_engine *e, const term_part *parts, size_t n, size_t *k
         if (!number_fits(total))
             break;
     }
-    if (first->rest && signs_differ(first, (size_t)(parts + *k - first)) && expr_mentions_inf(first->rest)) {
+    if (first->rest && signs_differ(first, (size_t)(parts + *k - first)) && first->rest->infinite) {
         fmpq_clear(total);
         return fail_inf_minus_inf(e);
     }
@@ -114,7 +114,7 @@ static expr *const *absorb_infinite(tw_engine *e, expr **terms, size_t *n)
     }
     size_t kept = 0;
     for (size_t k = 0; k < *n; k++)
-        if (expr_is_inf(terms[k]) || expr_is_minus_inf(terms[k]) || expr_mentions_inf(terms[k]))
+        if (terms[k]->infinite)
             terms[kept++] = terms[k];
     *n = kept;
     return terms;

@@ -98,6 +98,7 @@ static expr_node *node_new(tw_engine *e, expr_kind kind, uint64_t hash, expr *co
     unsigned depth = 0;
     uint64_t size = 1, names = 0;
     uint32_t loose = 0;
+    bool infinite = false;
     for (size_t k = 0; k < n; k++) {
         expr *child = args[k];
         uint32_t outside = child->loose;
@@ -107,6 +108,7 @@ static expr_node *node_new(tw_engine *e, expr_kind kind, uint64_t hash, expr *co
         depth = child->depth > depth ? child->depth : depth;
         size = child->size >= SIZE_CEILING - size ? SIZE_CEILING : size + child->size;
         names |= child->names;
+        infinite = infinite || child->infinite;
     }
     if (depth >= EXPR_DEPTH_LIMIT) {
         engine_fail(e, ERROR_VALUE, "the expression nests deeper than %d levels", EXPR_DEPTH_LIMIT);
@@ -126,6 +128,7 @@ static expr_node *node_new(tw_engine *e, expr_kind kind, uint64_t hash, expr *co
     a->serial = ++e->exprs->serial;
     a->size = size;
     a->names = names;
+    a->infinite = infinite && (kind == EXPR_SUM || kind == EXPR_PRODUCT || kind == EXPR_POWER);
     for (size_t k = 0; k < n; k++)
         a->args[k] = args[k];
     return a;
@@ -175,6 +178,8 @@ static expr *node_intern(tw_engine *e, expr_kind kind, unsigned tag, const char 
     node_set_tag(a, tag, name);
     if (kind == EXPR_BOUND)
         a->loose = tag + 1;
+    if (kind == EXPR_CONSTANT)
+        a->infinite = tag == CONSTANT_INF;
     table_add(t, a);
     return a;
 }

@@ -541,6 +541,14 @@ static void shared_trees_stay_small(void **state)
     char *t = expr_text(e, a);
     assert_true(strlen(t) < 100);
     free(t);
+    expr *c = expr_constant_of(e, CONSTANT_PI), *g = y; /* questions of reality are no walks over 2^100 nodes */
+    for (int k = 0; k < 100; k++) {
+        c = expr_sqrt(e, expr_add(e, c, expr_mul(e, n(2), expr_call1(e, FUNCTION_EXP, c))));
+        g = expr_pow(e, expr_add(e, expr_call1(e, FUNCTION_EXP, g), expr_call1(e, FUNCTION_ABS, g)), q(2, 3));
+    }
+    assert_non_null(expr_normal(e, expr_mul(e, c, g), &y, 1));
+    assert_non_null(expr_derivative(e, g, y));
+    assert_true(expr_is_inf(expr_add(e, expr_constant_of(e, CONSTANT_INF), g)));
     expr *b = x; /* a polynomial that grows: the limit stops it */
     for (int k = 0; k < 100; k++)
         b = expr_add(e, expr_pow(e, b, n(2)), b);
