@@ -94,17 +94,21 @@ static tw_status fill_to_length(tw_engine *e, contribution *c, const kernel *k, 
     drafts_init(&d);
     c->terminates = true;
     tw_status status = TW_OK;
+    slong stride = 0; /* common to all branches */
     bool join = l->count > 1 && k->pure;
     for (size_t n = 0; n < (join ? 1 : l->count) && status == TW_OK; n++) {
         series q;
         series_init(&q);
         branch b = join ? branches_joined(e, l) : l->branches[n];
         status = branch_series(e, &q, &b, k->far_end, length, to);
+        slong one = local_stride(e, &b, k->pure, k->mu);
+        stride = n == 0 || one == stride ? one : 1;
         c->terminates = c->terminates && q.terminates;
         if (status == TW_OK) status = drafts_add(e, &d, &q, k);
         series_clear(&q);
     }
     if (status == TW_OK) status = drafts_finish(e, &d, c, k);
+    for (size_t n = 0; n < c->lane_count && status == TW_OK; n++) lane_thin(e, &c->lanes[n], stride);
     drafts_clear(&d);
     return status;
 }

@@ -62,4 +62,10 @@ bool is_pure_power(tw_engine *e, expr *p, expr *x, fmpq_t mu);
 /* psi^(order)(r) for rational r in (0, 1], in known constants where there are (DLMF 5.4(ii), 5.15). */
 expr *polygamma_value(tw_engine *e, slong order, const fmpq_t r);
 
+/* stride.c: the amplitude's coefficients in the branch's own variable t (pure: x with p = x^mu) vanish for a reason of structure
+ * but at every so-many-th place of a lane; 1 when no such reason is known. */
+slong local_stride(tw_engine *e, const branch *b, bool pure, const fmpq_t mu);
+/* Leaves those zeros out of the lane; a lane that has something else there stays as it is. */
+void lane_thin(tw_engine *e, lane *l, slong stride);
+
 #endif
