@@ -10,6 +10,7 @@
 #include <stdlib.h>
 #include <string.h>
 
+#include "engine/ball/decide.h"
 #include "engine/numeric/enclosing.h"
 #include "engine/numeric/panels.h"
 #include "engine/numeric/shared.h"
@@ -131,29 +132,71 @@ answer known_encloses(tw_engine *e, expansion *a, size_t index, const env *at)
 
 /* ---- which groups ---- */
 
-/* The first index that is not kept when `terms` terms are: whole groups only; *left: kept terms beyond them. */
-static tw_status groups_kept(problem *p, slong terms, slong *first, slong *left)
+static expr *term_exponent(tw_engine *e, const expansion *a, size_t index, term t, const env *at)
 {
-    slong n = 0, gone = 0;
-    if (problem_coefficients(p, terms + 32, FLINT_MAX(p->bits, 128)) != TW_OK)
+    const lane *l = a->contributions[index].lanes + t.lane;
+    fmpq_t steps;
+    expr *exponent;
+    fmpq_init(steps);
+    fmpq_mul_si(steps, l->step, t.n);
+    exponent = expr_add(e, l->first_exponent, expr_fmpq(e, steps));
+    fmpq_clear(steps);
+    return exponent ? put_values(e, exponent, at) : NULL;
+}
+
+/* How many different powers the first `terms` terms have when only whole groups count, a group being all the terms of one power:
+ * lanes with several constants and powers of the logarithm. *left: terms beyond whole groups. */
+static tw_status count_groups(tw_engine *e, expansion *a, size_t index, const env *at, slong terms, slong *groups, slong *left)
+{
+    term *order = NULL;
+    slong found = 0, same = 0;
+    expr *last = NULL;
+    if (expansion_order(e, a, index, terms + 1, &order, &found) != TW_OK)
+        return TW_ERROR;
+    *groups = 0;
+    for (slong k = 0; k < found && k <= terms; k++) {
+        expr *here = term_exponent(e, a, index, order[k], at);
+        if (here != last && k < terms) {
+            ++*groups;
+            same = 0;
+        } else if (here != last) {
+            same = -1; /* the first omitted term opens a group of its own */
+        }
+        if (k < terms)
+            same++;
+        last = here;
+    }
+    free(order);
+    *left = 0;
+    if (found > terms && same > 0) {
+        *left = same;
+        --*groups;
+    }
+    return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
+}
+
+/* The first index of the problem that is not kept when `terms` terms are: whole groups only; *left: kept terms beyond them. */
+static tw_status groups_kept(tw_engine *e, expansion *a, size_t index, const env *at, problem *p, slong terms, slong *first,
+                             slong *left)
+{
+    slong n = 0, groups;
+    if (count_groups(e, a, index, at, terms, &groups, left) != TW_OK ||
+        problem_coefficients(p, terms + 32, FLINT_MAX(p->bits, 128)) != TW_OK)
         return TW_ERROR;
     for (;; n++) {
-        slong here = 0;
+        bool here = false;
         if (n == p->known) {
             if (p->terminates || n > 4000)
                 break;
             if (problem_coefficients(p, 2 * n + 32, p->bits) != TW_OK)
                 return TW_ERROR;
         }
-        for (slong k = p->lanes - 1; k >= 0 && !here; k--)
-            if (!arb_is_zero(p->f[k] + n))
-                here = k + 1;
-        if (here && gone + here > terms)
+        for (slong k = 0; k < p->lanes; k++)
+            here = here || !arb_is_zero(p->f[k] + n);
+        if (here && groups-- == 0)
             break;
-        gone += here;
     }
     *first = n;
-    *left = terms - gone;
     return TW_OK;
 }
 
@@ -243,7 +286,7 @@ static tw_status panel_error(tw_engine *e, piece_bound *out, expansion *a, const
     if (status == TW_OK)
         status = real_ball(e, factor, put_values(e, c->local.factor, at), bits + 64);
     if (status == TW_OK)
-        status = groups_kept(k->p, terms, &first, &left);
+        status = groups_kept(e, a, t->contribution, at, k->p, terms, &first, &left);
     if (status == TW_OK)
         status = panels_at(k->p, first, scale, S, out->error, &made, &report);
     if (status == TW_OK && made)
@@ -296,6 +339,27 @@ static tw_status contribution_error(tw_engine *e, piece_bound *out, expansion *a
     return status;
 }
 
+tw_status conditions_at(tw_engine *e, condition_list *out, const expansion *a, const env *at)
+{
+    for (size_t k = 0; k < a->conditions.count; k++) {
+        const condition *c = a->conditions.list + k;
+        condition_label l = c->label;
+        if (c->relation && (l == CONDITION_OPEN || l == CONDITION_GRANTED)) {
+            expr *here = put_values(e, c->relation, at);
+            condition_label known;
+            answer holds = here && here->kind == EXPR_RELATION ? decide(e, here, &known) : ANSWER_UNKNOWN;
+            if (holds == ANSWER_YES && known != CONDITION_GRANTED)
+                l = CONDITION_PROVED;
+            else if (holds == ANSWER_NO)
+                return engine_fail(e, ERROR_VALUE, "the expansion needs %s, which fails there", c->words);
+        }
+        if (e->error.kind != ERROR_NONE)
+            return TW_ERROR;
+        conditions_add(out, c->words, c->relation, l);
+    }
+    return TW_OK;
+}
+
 tw_status remainder_at_as(tw_engine *e, point_bound *out, expansion *a, const env *at, slong terms, slong bits, bool sharp)
 {
     term_table t;
@@ -322,8 +386,9 @@ tw_status remainder_at_as(tw_engine *e, point_bound *out, expansion *a, const en
         if (one.reason && !out->reason)
             out->reason = base_copy(one.reason);
     }
-    conditions_append(&out->conditions, &a->conditions);
-    if (out->label <= LABEL_PROVED && !conditions_all_sure(&a->conditions))
+    if (status == TW_OK)
+        status = conditions_at(e, &out->conditions, a, at);
+    if (out->label <= LABEL_PROVED && !conditions_all_sure(&out->conditions))
         out->label = LABEL_CONDITIONAL;
     out->manner = all_enclosing && t.count > 0 ? "enclosing" : NULL;
     arb_clear(one.error);
@@ -356,7 +421,7 @@ tw_status power_bound_of(tw_engine *e, power_bound *out, expansion *a, size_t in
     arb_init(S);
     status = real_ball(e, S, scale, 256);
     if (status == TW_OK)
-        status = groups_kept(k->p, terms, &first, left);
+        status = groups_kept(e, a, index, at, k->p, terms, &first, left);
     if (status == TW_OK)
         status = panels_for_all(k->p, first, scale, S, out, made, &report);
     if (status == TW_OK && !*made)
@@ -386,7 +451,7 @@ tw_status groups_agree(tw_engine *e, expansion *a, size_t index, const env *at, 
     if (k->p) {
         status = real_ball(e, S, put_values(e, c->local.scale, at), BITS);
         if (status == TW_OK)
-            status = groups_kept(k->p, terms, &first, &left);
+            status = groups_kept(e, a, index, at, k->p, terms, &first, &left);
         if (status == TW_OK)
             status = panels_kept_sum(k->p, first, S, sum, BITS);
         if (status == TW_OK)

@@ -19,11 +19,6 @@ void contour_clear(contour *c)
     c->count = 0;
 }
 
-static double mpow(const problem *p, double x)
-{
-    return pow(x, fmpz_get_d(fmpq_numref(p->m)) / fmpz_get_d(fmpq_denref(p->m)));
-}
-
 /* p(y) and p'(y) near the point y, in doubles. */
 static bool phase_near(const problem *p, double complex y, double complex *value, double complex *slope)
 {
@@ -71,16 +66,22 @@ static void contour_allocate(contour *c, slong count)
 
 static bool trace_level(contour *out, const problem *p, double rho)
 {
-    double m = mpow(p, exp(1));
+    double m = fmpz_get_d(fmpq_numref(p->m)) / fmpz_get_d(fmpq_denref(p->m)), level, start = rho;
     double complex y;
-    double level, start = rho;
-    m = log(m);
-    /* Out along the real axis: p grows there like y^m. */
+    /* Out along the real axis: p grows there like a constant times y^m. */
     y = 1e-3 * rho;
-    for (level = 1e-3 * rho; level < start * 1.0001; level *= 1.12) {
-        double to = fmin(level, start);
-        y *= 1 + 1e-9;
-        if (!solve_phase(p, pow(to, m), &y) || creal(y) <= 0)
+    for (int k = 0; k < 60; k++) {
+        double complex value, slope;
+        double factor;
+        if (!phase_near(p, y, &value, &slope) || creal(value) <= 0)
+            return false;
+        factor = pow(pow(1e-3 * rho, m) / creal(value), 1 / m);
+        y *= factor;
+        if (fabs(factor - 1) < 0.1)
+            break;
+    }
+    for (level = 1e-3 * rho; level < start * 1.12; level *= 1.12) {
+        if (!solve_phase(p, pow(fmin(level, start), m), &y) || creal(y) <= 0)
             return false;
     }
     y = creal(y);

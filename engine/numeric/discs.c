@@ -298,8 +298,8 @@ static bool disc_patch(walker *w, double c, double width)
             mag_div_ui(ratio, ratio, 5);
             mag_pow_ui(ratio, ratio, (ulong)length);
             mag_mul(q->error[0], size, ratio);
-            mag_mul_ui(q->error[0], q->error[0], 5);
-            mag_mul_2exp_si(q->error[0], q->error[0], -2);
+            mag_mul_ui(q->error[0], q->error[0], 11); /* 5/4 and a tenth for |z| a little above 1, see patch_range */
+            mag_mul_2exp_si(q->error[0], q->error[0], -3);
             w->s->discs++;
         } else {
             w->s->count--;
@@ -351,7 +351,7 @@ static bool crude_patch(walker *w, const arb_t a, const arb_t b)
     for (size_t k = 0; k < p->sheet_count && fine; k++)
         if (sheet_alive(p->sheets + k, y)) {
             tape_eval(value, p->sheets[k].value, at, false, LOW_BITS);
-            fine = acb_is_finite(value);
+            fine = acb_is_finite(value) && arb_contains_zero(acb_imagref(value));
             arb_add(sum, sum, acb_realref(value), LOW_BITS);
         }
     if (fine) {
@@ -447,17 +447,15 @@ static bool start_point(arb_t y, const problem *p, const arb_t t)
     fine = arb_gt(value, t);
     low = 0;
     for (int k = 0; k < 200 && fine && high - low > 1e-13 * high; k++) {
-        double middle = low + (high - low) / 2;
+        double middle = low + (high - low) * (k % 2 ? 0.47 : 0.5);
         arb_set_d(at, middle);
         problem_t(value, p, at, 128);
         if (arb_gt(value, t))
             high = middle;
         else if (arb_lt(value, t))
-            low = middle;
-        else
-            break;
+            low = middle; /* where neither is known the next round tries another point */
     }
-    fine = fine && low > 0;
+    fine = fine && low > 0 && high - low < 4e-13 * high;
     arb_set_d(y, low);
     arb_set_d(at, high);
     arb_union(y, y, at, 128);

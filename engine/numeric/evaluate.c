@@ -347,10 +347,11 @@ static tw_status sum_exact(tw_engine *e, number *out, expansion *a, const env *a
             arb_add(sum, sum, t.list[b].value + k, bits);
     out->terms = out->terms_known = table_length(&t);
     acb_set_arb(out->value, sum);
-    out->label = conditions_all_sure(&a->conditions) ? LABEL_EXACT : LABEL_CONDITIONAL;
-    conditions_append(&out->conditions, &a->conditions);
     arb_clear(sum);
     terms_clear(&t);
+    if (conditions_at(e, &out->conditions, a, at) != TW_OK)
+        return TW_ERROR;
+    out->label = conditions_all_sure(&out->conditions) ? LABEL_EXACT : LABEL_CONDITIONAL;
     return TW_OK;
 }
 

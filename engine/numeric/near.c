@@ -163,11 +163,11 @@ static void near_patch(patches *s, const problem *p, const lemma *l, double a, d
             mag_set_d(ratio, 1 / 3.19999);
             mag_pow_ui(ratio, ratio, NEAR_LENGTH);
             mag_mul(cut, cut, ratio);
-            mag_mul_2exp_si(cut, cut, 1);
+            mag_mul_2exp_si(cut, cut, 1); /* 1/(1 - 1/3.2) and some for |z| a little above 1 */
             mag_clear(part);
             mag_clear(reach);
         }
-        arb_set_d(T, b);
+        arb_set_d(T, b * (1 + 1e-5));
         tail_bound(tail, p, l, k, first, T);
         mag_add(q->error[k], cut, tail);
     }

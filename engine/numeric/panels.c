@@ -913,6 +913,9 @@ tw_status panels_for_all(problem *p, slong first, expr *S_expr, const arb_t S, p
             s.patches.reason = "the weight's mass could not be computed";
         } else if (!refine_signed(&s, sum) || !refine_majorant(&m)) {
             status = TW_ERROR;
+        } else if (arf_cmp_d(arb_midref(s.t_far), m.t_mean) < 0) {
+            *made = false;
+            s.patches.reason = "the weight's mean lies too far out";
         } else if (!arb_is_finite(m.mean) || !arb_is_finite(m.end)) {
             *made = false;
             s.patches.reason = "the bounds on the panels are not finite";

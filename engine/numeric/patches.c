@@ -6,6 +6,9 @@
 
 enum { PATCH_BITS = 64 };
 
+/* Patches are laid side by side in doubles; each is read a little beyond its ends, so that no sliver is left between two. */
+#define SLACK 1e-6
+
 void patches_init(patches *s)
 {
     memset(s, 0, sizeof *s);
@@ -168,7 +171,7 @@ void patch_lane_bound(mag_t bound, const patch *s, slong k, double z0, double z1
 {
     arb_t part;
     arb_init(part);
-    poly_range(part, s->poly + k * s->length, s->length, z0 / 2 + z1 / 2, (z1 / 2 - z0 / 2) * (1 + 1e-15));
+    poly_range(part, s->poly + k * s->length, s->length, z0 / 2 + z1 / 2, z1 / 2 - z0 / 2 + SLACK);
     mag_add(arb_radref(part), arb_radref(part), s->error[k]);
     arb_get_mag(bound, part);
     arb_clear(part);
@@ -180,7 +183,7 @@ void patch_range(arb_t h, const problem *p, const patch *s, double z0, double z1
     double centre = z0 / 2 + z1 / 2, half = z1 / 2 - z0 / 2;
     arb_init(ell);
     arb_init(part);
-    half *= 1 + 1e-15;
+    half += SLACK;
     if (s->lanes > 1)
         ell_range(ell, p, s, z0, z1);
     arb_zero(h);

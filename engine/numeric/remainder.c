@@ -587,8 +587,8 @@ tw_status remainder_for_all(tw_engine *e, remainder_bound *out, expansion *a, co
     without_large(&values, at, a->large);
     out->terms = terms;
     out->from = s0;
-    conditions_append(&out->conditions, &a->conditions);
-    if (terms < 0)
+    status = conditions_at(e, &out->conditions, a, &values);
+    if (status == TW_OK && terms < 0)
         status = default_terms(e, out, a, &values, s0);
     missing = missing_parameter(a, &values);
     if (status != TW_OK) {

@@ -23,6 +23,10 @@ tw_status power_bound_of(tw_engine *e, power_bound *out, expansion *a, size_t in
 /* Are the machine's kept groups and the expansion's kept terms the same sum, as far as balls see at this point? */
 tw_status groups_agree(tw_engine *e, expansion *a, size_t index, const env *at, slong terms, bool *agree);
 
+/* The expansion's conditions with the point's values put in: an open one that holds there is proved, one that fails is
+ * ERROR_VALUE. */
+tw_status conditions_at(tw_engine *e, condition_list *out, const expansion *a, const env *at);
+
 /* The number of terms with the least bound by the envelope of the terms at the point, at most `most`; *least: index of the least
  * term. */
 tw_status best_terms(tw_engine *e, expansion *a, const env *at, slong most, slong *terms, slong *least);
