@@ -2,8 +2,8 @@
  * the enclosing theorem, then panels, then an estimate that says why it is one. A dominant contribution's local form is its whole
  * integral, so the bound covers other ends and tails.
  *
- * Panels keep whole groups of terms (one power of t with all its logarithms); the difference between the groups' sum and the terms
- * that were asked for is computed, not assumed to be 0. */
+ * Panels keep whole groups of terms (one power of t with all its logarithms and constants); the difference between the groups' sum
+ * and the terms that were asked for is computed, not assumed to be 0. */
 #include "engine/numeric/bound.h"
 
 #include <math.h>
@@ -144,43 +144,42 @@ static expr *term_exponent(tw_engine *e, const expansion *a, size_t index, term 
     return exponent ? put_values(e, exponent, at) : NULL;
 }
 
-/* How many different powers the first `terms` terms have when only whole groups count, a group being all the terms of one power:
- * lanes with several constants and powers of the logarithm. *left: terms beyond whole groups. */
-static tw_status count_groups(tw_engine *e, expansion *a, size_t index, const env *at, slong terms, slong *groups, slong *left)
+/* How many different powers the first `terms` terms have, a group being all the terms of one power: lanes with several constants
+ * and powers of the logarithm. *extra: terms of the last group that are not kept. */
+static tw_status count_groups(tw_engine *e, expansion *a, size_t index, const env *at, slong terms, slong *groups, slong *extra)
 {
+    enum { GROUP_MOST = 24 };
     term *order = NULL;
-    slong found = 0, same = 0;
+    slong found = 0;
     expr *last = NULL;
-    if (expansion_order(e, a, index, terms + 1, &order, &found) != TW_OK)
+    *groups = *extra = 0;
+    if (expansion_extend(e, a, terms + 1) != TW_OK)
+        engine_forgive(e);
+    if (terms == 0)
+        return TW_OK;
+    if (expansion_order(e, a, index, terms + GROUP_MOST, &order, &found) != TW_OK)
         return TW_ERROR;
-    *groups = 0;
-    for (slong k = 0; k < found && k <= terms; k++) {
+    for (slong k = 0; k < found; k++) {
         expr *here = term_exponent(e, a, index, order[k], at);
-        if (here != last && k < terms) {
+        if (k >= terms && here != last)
+            break;
+        if (here != last)
             ++*groups;
-            same = 0;
-        } else if (here != last) {
-            same = -1; /* the first omitted term opens a group of its own */
-        }
-        if (k < terms)
-            same++;
+        if (k >= terms)
+            ++*extra;
         last = here;
     }
     free(order);
-    *left = 0;
-    if (found > terms && same > 0) {
-        *left = same;
-        --*groups;
-    }
     return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
 }
 
-/* The first index of the problem that is not kept when `terms` terms are: whole groups only; *left: kept terms beyond them. */
+/* The first index of the problem that is not kept when `terms` terms are: whole groups, *extra terms of the last
+ * one are not among the kept. */
 static tw_status groups_kept(tw_engine *e, expansion *a, size_t index, const env *at, problem *p, slong terms, slong *first,
-                             slong *left)
+                             slong *extra)
 {
     slong n = 0, groups;
-    if (count_groups(e, a, index, at, terms, &groups, left) != TW_OK ||
+    if (count_groups(e, a, index, at, terms, &groups, extra) != TW_OK ||
         problem_coefficients(p, terms + 32, FLINT_MAX(p->bits, 128)) != TW_OK)
         return TW_ERROR;
     for (;; n++) {
@@ -268,7 +267,7 @@ static tw_status panel_error(tw_engine *e, piece_bound *out, expansion *a, const
     arb_t S, factor, groups, kept;
     expr *scale = put_values(e, c->local.scale, at);
     panel_report report = {0};
-    slong first, left;
+    slong first, extra;
     bool made = false;
     tw_status status = known_problem_of(e, &k, a, t->contribution, at);
     if (status != TW_OK)
@@ -286,7 +285,7 @@ static tw_status panel_error(tw_engine *e, piece_bound *out, expansion *a, const
     if (status == TW_OK)
         status = real_ball(e, factor, put_values(e, c->local.factor, at), bits + 64);
     if (status == TW_OK)
-        status = groups_kept(e, a, t->contribution, at, k->p, terms, &first, &left);
+        status = groups_kept(e, a, t->contribution, at, k->p, terms, &first, &extra);
     if (status == TW_OK)
         status = panels_at(k->p, first, scale, S, out->error, &made, &report);
     if (status == TW_OK && made)
@@ -402,7 +401,7 @@ tw_status remainder_at(tw_engine *e, point_bound *out, expansion *a, const env *
 }
 
 tw_status power_bound_of(tw_engine *e, power_bound *out, expansion *a, size_t index, const env *at, slong terms,
-                         bool *made, slong *left, char **reason)
+                         bool *made, slong *extra, char **reason)
 {
     const contribution *c = a->contributions + index;
     known_problem *k;
@@ -421,7 +420,7 @@ tw_status power_bound_of(tw_engine *e, power_bound *out, expansion *a, size_t in
     arb_init(S);
     status = real_ball(e, S, scale, 256);
     if (status == TW_OK)
-        status = groups_kept(e, a, index, at, k->p, terms, &first, left);
+        status = groups_kept(e, a, index, at, k->p, terms, &first, extra);
     if (status == TW_OK)
         status = panels_for_all(k->p, first, scale, S, out, made, &report);
     if (status == TW_OK && !*made)
@@ -437,11 +436,11 @@ tw_status groups_agree(tw_engine *e, expansion *a, size_t index, const env *at, 
     known_problem *k;
     term_table t;
     arb_t S, sum, kept;
-    slong first, left;
+    slong first, extra;
     tw_status status = known_problem_of(e, &k, a, index, at);
     if (status != TW_OK)
         return status;
-    status = terms_at(e, &t, a, at, terms, false, BITS);
+    status = terms_at(e, &t, a, at, terms + 24, false, BITS);
     if (status != TW_OK)
         return status;
     arb_init(S);
@@ -451,7 +450,7 @@ tw_status groups_agree(tw_engine *e, expansion *a, size_t index, const env *at, 
     if (k->p) {
         status = real_ball(e, S, put_values(e, c->local.scale, at), BITS);
         if (status == TW_OK)
-            status = groups_kept(e, a, index, at, k->p, terms, &first, &left);
+            status = groups_kept(e, a, index, at, k->p, terms, &first, &extra);
         if (status == TW_OK)
             status = panels_kept_sum(k->p, first, S, sum, BITS);
         if (status == TW_OK)
@@ -459,7 +458,7 @@ tw_status groups_agree(tw_engine *e, expansion *a, size_t index, const env *at, 
         arb_mul(sum, sum, S, BITS);
         for (size_t b = 0; b < t.count; b++)
             if (t.list[b].contribution == index)
-                sum_terms(kept, t.list + b, terms - left, BITS);
+                sum_terms(kept, t.list + b, terms + extra, BITS);
         /* both come from the same exact series: this guards against a mistake in between */
         *agree = status == TW_OK && arb_overlaps(sum, kept);
     }

@@ -451,17 +451,58 @@ static expr *end_height(tw_engine *e, const local_form *l, const env *values)
     return height;
 }
 
+/* What is missing from the last group of one power: terms of one power of the logarithm are added up before the modulus is taken,
+ * because constants of different lanes may cancel. */
+static tw_status add_missing(tw_engine *e, const remainder_bound *out, expansion *a, size_t index, const env *values, slong extra,
+                             expr **sum)
+{
+    enum { LOGS = 16 };
+    expr *coefficients[LOGS] = {0}, *rest[LOGS] = {0};
+    const contribution *c = a->contributions + index;
+    term *order = NULL;
+    slong found = 0;
+    arb_t x;
+    tw_status status = expansion_order(e, a, index, out->terms + extra, &order, &found);
+    arb_init(x);
+    for (slong k = out->terms; k < found && status == TW_OK; k++) {
+        const lane *l = c->lanes + order[k].lane;
+        expr *whole = expansion_term(e, a, index, order[k]);
+        expr *one = put_values(e, expr_mul(e, coefficient_expr(e, &l->c, order[k].n), l->constant), values);
+        slong j = FLINT_MIN(l->log_power, LOGS - 1);
+        if (!whole || !one)
+            status = TW_ERROR;
+        else if (!coefficients[j])
+            coefficients[j] = one, rest[j] = expr_div(e, put_values(e, whole, values), one);
+        else
+            coefficients[j] = expr_add(e, coefficients[j], one);
+    }
+    for (int j = 0; j < LOGS && status == TW_OK; j++) {
+        expr *size;
+        if (!coefficients[j])
+            continue;
+        status = real_ball(e, x, coefficients[j], 128);
+        arb_abs(x, x);
+        size = status == TW_OK ? decimal_expr(e, x, 4, true) : NULL;
+        *sum = expr_add(e, *sum, modulus(e, expr_mul(e, expr_mul(e, size, rest[j]), put_values(e, c->prefactor, values))));
+        if (!*sum)
+            status = TW_ERROR;
+    }
+    arb_clear(x);
+    free(order);
+    return status;
+}
+
 static tw_status panel_bound(tw_engine *e, remainder_bound *out, expansion *a, size_t index, const env *at, const env *values,
                              expr **sum)
 {
     const contribution *c = a->contributions + index;
     power_bound b;
     bool made = false, agree = false;
-    slong left = 0;
+    slong extra = 0;
     char *reason = NULL;
     tw_status status;
     power_bound_init(&b);
-    status = power_bound_of(e, &b, a, index, at, out->terms, &made, &left, &reason);
+    status = power_bound_of(e, &b, a, index, at, out->terms, &made, &extra, &reason);
     if (status == TW_OK && made)
         status = groups_agree(e, a, index, at, out->terms, &agree);
     if (status == TW_OK && made && !agree) {
@@ -480,14 +521,8 @@ static tw_status panel_bound(tw_engine *e, remainder_bound *out, expansion *a, s
                                  large);
         keep_steps(e, out, &b);
     }
-    for (slong k = 0; k < left && status == TW_OK && made; k++) { /* kept terms beyond whole groups */
-        term *order = NULL;
-        slong found = 0;
-        status = expansion_order(e, a, index, out->terms, &order, &found);
-        if (status == TW_OK && out->terms - 1 - k < found && out->terms - 1 - k >= 0)
-            *sum = expr_add(e, *sum, modulus(e, term_formula(e, a, index, order[out->terms - 1 - k], values)));
-        free(order);
-    }
+    if (status == TW_OK && made && extra > 0)
+        status = add_missing(e, out, a, index, values, extra, sum);
     if (status == TW_OK && !made) {
         out->label = LABEL_ESTIMATED;
         if (!out->reason)

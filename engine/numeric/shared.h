@@ -15,10 +15,10 @@ answer known_encloses(tw_engine *e, expansion *a, size_t index, const env *at);
 /* As remainder_at; sharp: by panels even where the enclosing theorem holds, because they come closer. */
 tw_status remainder_at_as(tw_engine *e, point_bound *out, expansion *a, const env *at, slong terms, slong bits, bool sharp);
 
-/* The panels' bound for all S from the scale at this point on; *left: kept terms beyond whole groups, to be added to it. *made
- * false: *reason, fresh words, says why. */
+/* The panels' bound for all S from the scale at this point on; *extra: terms of the last group that are not kept, to be added
+ * to it. *made false: *reason, fresh words, says why. */
 tw_status power_bound_of(tw_engine *e, power_bound *out, expansion *a, size_t index, const env *at, slong terms,
-                         bool *made, slong *left, char **reason);
+                         bool *made, slong *extra, char **reason);
 
 /* Are the machine's kept groups and the expansion's kept terms the same sum, as far as balls see at this point? */
 tw_status groups_agree(tw_engine *e, expansion *a, size_t index, const env *at, slong terms, bool *agree);

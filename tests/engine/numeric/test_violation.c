@@ -18,7 +18,7 @@ enum { BITS = 256 };
 typedef struct tally {
     long trials, counted, unproved, unjudged, violated, all_s;
     double worst_one, worst_all; /* bound over truth, log2 */
-    char which_one[500], which_all[500];
+    char which_one[600], which_all[600];
 } tally;
 
 static double log2_of(const arb_t x)
