@@ -8,16 +8,10 @@
 #include "engine/ball/functions.h"
 #include "engine/ball/interval.h"
 #include "engine/ball/quadrature.h"
+#include "engine/ball/sign.h"
 #include "engine/expr/facts.h"
 
 /* ---- constants ---- */
-
-/* The value is then unknown, which the ball says; only an exhausted budget or an interrupt stays an error. */
-static void forgive_unless_spent(tw_engine *e)
-{
-    error_kind k = e->error.kind;
-    if (k != ERROR_TIME && k != ERROR_MEMORY && k != ERROR_INTERRUPT) engine_forgive(e);
-}
 
 /* The root of a rational polynomial nearest to the value given; non-finite when two are equally near or it is no polynomial. */
 static void root_value(tw_engine *e, acb_t out, expr *a, slong prec)
@@ -81,13 +75,13 @@ static void fixed_value(tape *t, acb_t out, op *o, slong prec)
     if (o->kept_prec < prec) {
         if (o->node->kind == EXPR_ROOT) {
             root_value(t->e, o->kept, o->node, prec);
-            forgive_unless_spent(t->e);
+            forgive_trouble(t->e);
         } else {
             env nowhere = {0};
             slong digits = (slong)((double)prec * 0.30103) + 1;
             if (quadrature(t->e, o->kept, o->node, &nowhere, digits, true, NULL) != TW_OK) {
                 acb_indeterminate(o->kept);
-                forgive_unless_spent(t->e);
+                forgive_trouble(t->e);
             }
         }
         o->kept_prec = prec;

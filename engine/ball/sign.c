@@ -7,7 +7,13 @@
 #include "engine/ball/tape.h"
 #include "engine/expr/facts.h"
 
-static int times(int a, int b)
+void forgive_trouble(tw_engine *e)
+{
+    error_kind k = e->error.kind;
+    if (k != ERROR_TIME && k != ERROR_MEMORY && k != ERROR_INTERRUPT && k != ERROR_INTERNAL) engine_forgive(e);
+}
+
+int sign_times(int a, int b)
 {
     int signs = 0;
     if ((a | b) & SIGN_ZERO) signs |= SIGN_ZERO;
@@ -16,7 +22,7 @@ static int times(int a, int b)
     return signs;
 }
 
-static int plus(int a, int b)
+int sign_plus(int a, int b)
 {
     if (a == SIGN_ZERO) return b;
     if (b == SIGN_ZERO) return a;
@@ -30,6 +36,18 @@ static int number_sign(const fmpq *q)
 {
     int s = fmpq_sgn(q);
     return s > 0 ? SIGN_POSITIVE : s < 0 ? SIGN_NEGATIVE : SIGN_ZERO;
+}
+
+/* A fact a != 0 takes the zero out. */
+static int signs_without_zero(tw_engine *e, expr *a, int signs)
+{
+    for (size_t k = 0; (signs & SIGN_ZERO) && k < facts_count(e); k++) {
+        condition_label l;
+        expr *fact = facts_at(e, k, &l);
+        if (fact->is.relation == RELATION_NOT_EQUAL && fact->args[0] == a && expr_is_zero(fact->args[1]) && !facts_is_complex(e, a))
+            signs &= ~SIGN_ZERO;
+    }
+    return signs;
 }
 
 static int symbol_sign(tw_engine *e, expr *a, const sign_context *c)
@@ -52,42 +70,41 @@ static int symbol_sign(tw_engine *e, expr *a, const sign_context *c)
     }
     fmpq_clear(low);
     fmpq_clear(high);
-    return signs;
+    return signs_without_zero(e, a, signs);
 }
 
 static int power_sign(tw_engine *e, expr *a, const sign_context *c)
 {
+    if (expr_is_inf(a->args[0])) return SIGN_ANY;
     int base = sign_of(e, a->args[0], c);
-    if (base == SIGN_POSITIVE) return SIGN_POSITIVE;
+    if (base == SIGN_POSITIVE) return sign_is_real(e, a->args[1]) || sign_of(e, a->args[1], c) != SIGN_ANY ? SIGN_POSITIVE : SIGN_ANY;
     if (!expr_is_number(a->args[1])) return SIGN_ANY;
     const fmpq *q = expr_number(a->args[1]);
     if (fmpz_is_one(fmpq_denref(q))) {
+        if (base == SIGN_ANY && !sign_is_real(e, a->args[0])) return SIGN_ANY;
         if (fmpq_sgn(q) < 0) base &= ~SIGN_ZERO; /* a value 0 has no such power */
         if (base == 0) return SIGN_ANY;
         if (fmpz_is_odd(fmpq_numref(q))) return base;
-        /* an even power of a real value */
-        if (base == SIGN_ANY) return SIGN_ANY;
         return (base & SIGN_ZERO) | ((base & ~SIGN_ZERO) ? SIGN_POSITIVE : 0);
     }
-    if (!(base & SIGN_NEGATIVE) && fmpq_sgn(q) > 0) return base;
-    if (!(base & SIGN_NEGATIVE) && fmpq_sgn(q) < 0) return SIGN_POSITIVE;
+    if (!(base & SIGN_NEGATIVE)) return fmpq_sgn(q) > 0 ? base : SIGN_POSITIVE;
     return SIGN_ANY;
 }
 
 /* Is the value real whatever the real symbols are? Enough of an answer for even powers and exponentials. */
-static bool plainly_real(tw_engine *e, expr *a)
+bool sign_is_real(tw_engine *e, expr *a)
 {
     switch ((expr_kind)a->kind) {
     case EXPR_NUMBER: return true;
     case EXPR_CONSTANT: return a->is.constant == CONSTANT_PI || a->is.constant == CONSTANT_EULER;
     case EXPR_SYMBOL: return !facts_is_complex(e, a);
     case EXPR_POWER:
-        if (!expr_is_number(a->args[1]) || !fmpz_is_one(fmpq_denref(expr_number(a->args[1])))) return false;
-        return plainly_real(e, a->args[0]);
+        if (expr_is_number(a->args[1]) && fmpz_is_one(fmpq_denref(expr_number(a->args[1])))) return sign_is_real(e, a->args[0]);
+        return sign_is_real(e, a->args[1]) && sign_of(e, a->args[0], NULL) == SIGN_POSITIVE;
     case EXPR_SUM:
     case EXPR_PRODUCT:
         for (uint32_t k = 0; k < a->count; k++)
-            if (!plainly_real(e, a->args[k])) return false;
+            if (!sign_is_real(e, a->args[k])) return false;
         return true;
     case EXPR_CALL:
         switch (a->is.function) {
@@ -100,7 +117,17 @@ static bool plainly_real(tw_engine *e, expr *a)
         case FUNCTION_ATAN:
         case FUNCTION_ASINH:
         case FUNCTION_ERF:
-        case FUNCTION_ERFC: return plainly_real(e, a->args[0]);
+        case FUNCTION_ERFC:
+        case FUNCTION_GAMMA:
+        case FUNCTION_PSI:
+        case FUNCTION_AI:
+        case FUNCTION_BI: return sign_is_real(e, a->args[0]);
+        case FUNCTION_LOG:
+        case FUNCTION_LNGAMMA: return sign_of(e, a->args[0], NULL) == SIGN_POSITIVE;
+        case FUNCTION_ABS:
+        case FUNCTION_RE:
+        case FUNCTION_IM:
+        case FUNCTION_ARG: return true;
         default: return false;
         }
     default: return false;
@@ -113,7 +140,7 @@ static int call_sign(tw_engine *e, expr *a, const sign_context *c)
     case FUNCTION_EXP:
     case FUNCTION_COSH:
     case FUNCTION_ERFC:
-        return plainly_real(e, a->args[0]) || sign_of(e, a->args[0], c) != SIGN_ANY ? SIGN_POSITIVE : SIGN_ANY;
+        return sign_is_real(e, a->args[0]) || sign_of(e, a->args[0], c) != SIGN_ANY ? SIGN_POSITIVE : SIGN_ANY;
     case FUNCTION_ABS: {
         int s = sign_of(e, a->args[0], c);
         return s == SIGN_ANY ? SIGN_ZERO | SIGN_POSITIVE : (s & SIGN_ZERO) | ((s & ~SIGN_ZERO) ? SIGN_POSITIVE : 0);
@@ -143,10 +170,10 @@ static int fixed_sign(tw_engine *e, expr *f)
     int signs = SIGN_ANY;
     for (slong prec = 64; prec <= 1024 && signs == SIGN_ANY; prec *= 4) {
         if (ball_value(e, z, f, prec) != TW_OK) {
-            engine_forgive(e);
+            forgive_trouble(e);
             break;
         }
-        if (!acb_is_real(z)) break;
+        if (!acb_is_real(z)) break; /* perhaps not a real number: no sign */
         if (arb_is_positive(acb_realref(z))) signs = SIGN_POSITIVE;
         if (arb_is_negative(acb_realref(z))) signs = SIGN_NEGATIVE;
     }
@@ -156,15 +183,15 @@ static int fixed_sign(tw_engine *e, expr *f)
 
 int sign_of(tw_engine *e, expr *f, const sign_context *c)
 {
-    if (!f) return SIGN_ANY;
+    if (!f || !budget_ok(e)) return SIGN_ANY;
     int signs;
     switch ((expr_kind)f->kind) {
     case EXPR_NUMBER: return number_sign(expr_number(f));
-    case EXPR_CONSTANT: return f->is.constant == CONSTANT_I ? SIGN_ANY : SIGN_POSITIVE;
+    case EXPR_CONSTANT: return f->is.constant == CONSTANT_I ? SIGN_ANY : SIGN_POSITIVE; /* inf too */
     case EXPR_SYMBOL: return symbol_sign(e, f, c);
     case EXPR_SUM:
         signs = SIGN_ZERO;
-        for (uint32_t k = 0; k < f->count; k++) signs = plus(signs, sign_of(e, f->args[k], c));
+        for (uint32_t k = 0; k < f->count; k++) signs = sign_plus(signs, sign_of(e, f->args[k], c));
         break;
     case EXPR_PRODUCT:
         signs = SIGN_POSITIVE;
@@ -174,17 +201,10 @@ int sign_of(tw_engine *e, expr *f, const sign_context *c)
                 signs = SIGN_ANY;
                 break;
             }
-            signs = times(signs, s);
+            signs = sign_times(signs, s);
         }
         break;
-    case EXPR_POWER:
-        signs = power_sign(e, f, c);
-        if (signs == SIGN_ANY && expr_is_number(f->args[1]) && plainly_real(e, f->args[0])) {
-            const fmpq *q = expr_number(f->args[1]);
-            if (fmpz_is_one(fmpq_denref(q)) && fmpz_is_even(fmpq_numref(q)))
-                signs = fmpq_sgn(q) > 0 ? SIGN_ZERO | SIGN_POSITIVE : SIGN_POSITIVE;
-        }
-        break;
+    case EXPR_POWER: signs = power_sign(e, f, c); break;
     case EXPR_CALL: signs = call_sign(e, f, c); break;
     default: signs = SIGN_ANY; break;
     }
@@ -232,4 +252,15 @@ expr *sign_shift(tw_engine *e, expr *f, sign_context *c)
     free(values);
     free(moved);
     return made;
+}
+
+int sign_by_structure(tw_engine *e, expr *f)
+{
+    sign_context c = {0};
+    int signs = sign_of(e, f, NULL);
+    if (signs & (signs - 1)) signs &= sign_of(e, sign_shift(e, f, &c), &c);
+    forgive_trouble(e);
+    free(c.symbols);
+    free(c.signs);
+    return signs;
 }
