@@ -1,8 +1,8 @@
-/* A local change of variable: t = p(x), G(t) = q(x(t)) dx/dt. With p = p0 x^mu (1 + ...) and u = (p/p0)^(1/m), m/mu the step of
- * the exponents, x(u) is a power series; it is found by Newton's iteration on p itself, evaluated on the series by the same
- * walk as any expression, so that no composition with a list of coefficients is needed and the doubling of the length pays
- * for all but the last step. q is then evaluated on x(u) in the same way (DLMF 2.3.16, 2.3.18 give the same numbers one by
- * one). Last, u = (t/p0)^(1/m) puts powers of p0 in front. */
+/* A local change of variable: t = p(x), G(t) = q(x(t)) dx/dt. With p = p0 x^mu (1 + ...) and u = (p/p0)^(1/m),
+ * m/mu the step of the exponents, x(u) is a power series; it is found by Newton's iteration on p itself, evaluated
+ * on the series by the same walk as any expression, so that no composition with a list of coefficients is needed
+ * and the doubling of the length pays for all but the last step. q is then evaluated on x(u) in the same way (DLMF
+ * 2.3.16, 2.3.18 give the same numbers one by one). Last, u = (t/p0)^(1/m) puts powers of p0 in front. */
 #include "engine/exact/series.h"
 
 #include <stdlib.h>
@@ -20,7 +20,8 @@ typedef struct local_variable {
     expr *p0;
     slong m, spread;
     slong loss;  /* terms that cancel inside p */
-    slong split; /* p0^(split/m) is a coefficient: the classes of powers of u modulo `split` have constants of their own */
+    slong split; /* p0^(split/m) is a coefficient: the classes of powers of u modulo `split` have constants of their
+                    own */
     bool real;
 } local_variable;
 
@@ -74,7 +75,8 @@ static tw_status read_phase(work *w, local_variable *v, expr *p)
 }
 
 /* One Newton step x - (p(x)/p0 - u^m)/(p'(x)/p0) with `terms` wanted; *exact when x solves the equation as it is. */
-static tw_status newton_step(work *w, pieces *x, const change *c, expr *slope, const local_variable *v, slong terms, bool *exact)
+static tw_status newton_step(work *w, pieces *x, const change *c, expr *slope, const local_variable *v, slong terms,
+                             bool *exact)
 {
     tw_engine *e = w->e;
     pieces r, d, monomial;
@@ -154,8 +156,8 @@ static tw_status invert_phase(work *w, pieces *x, const change *c, const local_v
 }
 
 /* The residue class r of p's powers of u modulo h, in t: c[r + j h] p0^(-h j / N) x^... with N = m * den. */
-static tw_status push_class(work *w, pieces *out, const piece *p, const local_variable *v, slong r, slong h, expr *log_factor,
-                            slong log_power, bool real)
+static tw_status push_class(work *w, pieces *out, const piece *p, const local_variable *v, slong r, slong h,
+                            expr *log_factor, slong log_power, bool real)
 {
     tw_engine *e = w->e;
     slong n = v->m * p->den, length = tail_length(&p->c);
@@ -185,7 +187,8 @@ static tw_status push_class(work *w, pieces *out, const piece *p, const local_va
         expr *front = expr_mul(e, expr_mul(e, p->constant, p->factor), expr_pow(e, v->p0, expr_neg(e, exponent)));
         pieces part;
         pieces_init(&part);
-        s = pieces_from_tail(w, &part, front == NULL ? NULL : expr_mul(e, front, log_factor), exponent, &c, n / h, real);
+        s = pieces_from_tail(w, &part, front == NULL ? NULL : expr_mul(e, front, log_factor), exponent, &c, n / h,
+                             real);
         for (size_t k = 0; k < part.count && s == TW_OK; k++) {
             piece q;
             piece_init(w, &q);

@@ -1,6 +1,7 @@
-/* Elementary functions of a generalised series: exp turns multiples of log(x) into powers, log splits its argument's leading
- * term off, the circular and hyperbolic ones use their addition theorems so that only their values at one point are
- * constants, the inverse ones are integrated. Knows series and values, not the tree they come from. */
+/* Elementary functions of a generalised series: exp turns multiples of log(x) into powers, log splits its
+ * argument's leading term off, the circular and hyperbolic ones use their addition theorems so that only their
+ * values at one point are constants, the inverse ones are integrated. Knows series and values, not the tree they
+ * come from. */
 #include "engine/exact/compose.h"
 
 #include <stdlib.h>
@@ -47,7 +48,8 @@ static tw_status take_small_part(work *w, argument *a, const pieces *rest)
         return TW_OK;
     piece p;
     piece_init(w, &p);
-    tw_status s = pieces_gather(w, &p, rest, "has no expansion in powers with a fixed step (powers and logarithms mix inside it)");
+    tw_status s = pieces_gather(w, &p, rest,
+                                "has no expansion in powers with a fixed step (powers and logarithms mix inside it)");
     if (s == TW_OK)
         s = piece_fold(w, &p, true);
     if (s == TW_OK) {
@@ -121,7 +123,8 @@ tw_status argument_split(work *w, argument *a, const pieces *g)
 
 tw_status pieces_from_argument(work *w, pieces *out, const argument *a, expr *value, const tail *c)
 {
-    return pieces_from_tail(w, out, value, expr_int(w->e, 0), c, a->den, a->real && value != NULL && value_is_real(w->e, value));
+    return pieces_from_tail(w, out, value, expr_int(w->e, 0), c, a->den,
+                            a->real && value != NULL && value_is_real(w->e, value));
 }
 
 /* ---- exp and log ---- */
@@ -196,7 +199,8 @@ tw_status compose_log(work *w, pieces *out, const pieces *g)
     bool real = g->real; /* out may be g */
     piece_init(w, &p);
     pieces_init(&part);
-    tw_status s = pieces_gather(w, &p, g, "has no expansion in powers with a fixed step (powers and logarithms mix inside log)");
+    tw_status s = pieces_gather(
+        w, &p, g, "has no expansion in powers with a fixed step (powers and logarithms mix inside log)");
     if (s == TW_OK)
         s = piece_need_leading(w, &p);
     if (s == TW_OK && !value_is_real(w->e, p.sigma))
@@ -232,8 +236,8 @@ tw_status compose_log(work *w, pieces *out, const pieces *g)
 /* ---- addition theorems ---- */
 
 /* value1 * c1 + sign * value2 * c2 */
-static tw_status two_terms(work *w, pieces *out, const argument *a, expr *value1, const tail *c1, int sign, expr *value2,
-                           const tail *c2)
+static tw_status two_terms(work *w, pieces *out, const argument *a, expr *value1, const tail *c1, int sign,
+                           expr *value2, const tail *c2)
 {
     pieces second;
     pieces_init(&second);
@@ -246,8 +250,8 @@ static tw_status two_terms(work *w, pieces *out, const argument *a, expr *value1
     return s;
 }
 
-/* tan(c + u) from y' = 1 + y^2, y(0) = tan(c) (tanh: y' = 1 - y^2): coefficients are polynomials in tan(c). The quotient of
- * sine and cosine gives fractions whose size explodes (100 terms of tan(1 + x): 4 s against 0.4 s). */
+/* tan(c + u) from y' = 1 + y^2, y(0) = tan(c) (tanh: y' = 1 - y^2): coefficients are polynomials in tan(c). The
+ * quotient of sine and cosine gives fractions whose size explodes (100 terms of tan(1 + x): 4 s against 0.4 s). */
 static tw_status tangent_at_point(work *w, pieces *out, const argument *a, bool hyperbolic)
 {
     field *f = &w->f;
@@ -388,8 +392,8 @@ static tw_status compose_expression(work *w, pieces *out, expr *f, expr *z, cons
     return f == NULL ? TW_ERROR : evaluate_bound(w, out, f, z, g);
 }
 
-/* Large arguments by reflection into small ones (DLMF 4.24.? from memory; 4.37.16, 4.37.19): atan(z) = sign pi/2 - atan(1/z),
- * asinh(z) = sign log(|z| + sqrt(z^2 + 1)), acosh(z) = log(z + sqrt(z^2 - 1)). */
+/* Large arguments by reflection into small ones (DLMF 4.24.? from memory; 4.37.16, 4.37.19): atan(z) = sign pi/2 -
+ * atan(1/z), asinh(z) = sign log(|z| + sqrt(z^2 + 1)), acosh(z) = log(z + sqrt(z^2 - 1)). */
 static tw_status inverse_at_infinity(work *w, pieces *out, function_id id, int sign, expr *z, const pieces *g)
 {
     tw_engine *e = w->e;
@@ -402,7 +406,8 @@ static tw_status inverse_at_infinity(work *w, pieces *out, function_id id, int s
                                   z, g);
     if (id == FUNCTION_ASINH)
         return compose_expression(
-            w, out, expr_mul(e, s, expr_call1(e, FUNCTION_LOG, expr_add(e, size, expr_sqrt(e, expr_add(e, square, one))))), z,
+            w, out,
+            expr_mul(e, s, expr_call1(e, FUNCTION_LOG, expr_add(e, size, expr_sqrt(e, expr_add(e, square, one))))), z,
             g);
     if (id == FUNCTION_ACOSH && sign > 0)
         return compose_expression(

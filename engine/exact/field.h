@@ -1,7 +1,8 @@
-/* The field of coefficients beyond the rationals: rational functions over Q of generators. A generator is a parameter (a
- * symbol) or an atom that the field does not look into (pi, exp(1), 2^(1/3), a^b, psi(1/3)). Algebraic atoms carry their
- * relation (g^3 = 2, i^2 = -1, cos(c)^2 = 1 - sin(c)^2), by which elements are reduced. Other relations among constants are
- * not known to the field: an element that is not the zero polynomial is proved nonzero by field_is_zero, never assumed so. */
+/* The field of coefficients beyond the rationals: rational functions over Q of generators. A generator is a
+ * parameter (a symbol) or an atom that the field does not look into (pi, exp(1), 2^(1/3), a^b, psi(1/3)).
+ * Algebraic atoms carry their relation (g^3 = 2, i^2 = -1, cos(c)^2 = 1 - sin(c)^2), by which elements are
+ * reduced. Other relations among constants are not known to the field: an element that is not the zero polynomial
+ * is proved nonzero by field_is_zero, never assumed so. */
 #ifndef TW_EXACT_FIELD_H
 #define TW_EXACT_FIELD_H
 

@@ -1,6 +1,6 @@
-/* The way out of the working form: leading coefficients proved, constants proved nonzero, coefficients brought to the form
- * in which zero is zero, strands put in order; and the tries: when cancellation ate terms, or the field was too narrow for
- * the constants met, the computation is run again with more. */
+/* The way out of the working form: leading coefficients proved, constants proved nonzero, coefficients brought to
+ * the form in which zero is zero, strands put in order; and the tries: when cancellation ate terms, or the field
+ * was too narrow for the constants met, the computation is run again with more. */
 #include "engine/exact/finish.h"
 
 #include <stdlib.h>
@@ -228,8 +228,8 @@ typedef struct attempt {
 } attempt;
 
 /* One run; *again when it has to be repeated with the changed attempt. */
-static tw_status try_once(tw_engine *e, series *out, pieces_maker make, const void *host, expr *f, expr *x, slong length,
-                          attempt *a, bool *again, expr ***conditions, size_t *condition_count)
+static tw_status try_once(tw_engine *e, series *out, pieces_maker make, const void *host, expr *f, expr *x,
+                          slong length, attempt *a, bool *again, expr ***conditions, size_t *condition_count)
 {
     work w;
     pieces g;
@@ -263,8 +263,8 @@ static tw_status try_once(tw_engine *e, series *out, pieces_maker make, const vo
     return s;
 }
 
-tw_status series_by_tries(tw_engine *e, series *out, pieces_maker make, const void *host, expr *f, expr *x, slong length,
-                          expr ***conditions, size_t *condition_count)
+tw_status series_by_tries(tw_engine *e, series *out, pieces_maker make, const void *host, expr *f, expr *x,
+                          slong length, expr ***conditions, size_t *condition_count)
 {
     attempt a = {FLINT_MAX(length, 1), 0, FIRST_ROOM};
     slong most = 20 * FLINT_MAX(length, 1) + 1000;
@@ -292,10 +292,11 @@ tw_status series_by_tries(tw_engine *e, series *out, pieces_maker make, const vo
             return engine_fail(e, ERROR_UNSUITABLE, "the series holds more than %d different constants and parameters",
                                (int)MOST_ROOM);
         if (a.extra > MOST_EXTRA || a.terms > most)
-            return engine_fail(e, ERROR_UNDECIDED,
-                               "a part of the series at %s = 0 vanishes in all of its first %ld terms, and whether it is "
-                               "zero could not be decided",
-                               x->is.name, (long)(a.terms + a.extra / 2));
+            return engine_fail(
+                e, ERROR_UNDECIDED,
+                "a part of the series at %s = 0 vanishes in all of its first %ld terms, and whether it is "
+                "zero could not be decided",
+                x->is.name, (long)(a.terms + a.extra / 2));
     }
     return s == TW_OK ? engine_fail(e, ERROR_INTERNAL, "a series came to no end") : s;
 }

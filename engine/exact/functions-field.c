@@ -1,7 +1,8 @@
-/* Rational functions of parameters and constants, on Calcium's fmpz_mpoly_q: the field in which a coefficient lives when it
- * is not rational. An expression enters by field_from_expr, which sees through sums, products and powers and makes what is
- * left a generator. The one idea: arithmetic is in a free field, lowest terms by multivariate gcd, and the few algebraic
- * relations are monic polynomials that powers are reduced by. Knows nothing of series. */
+/* Rational functions of parameters and constants, on Calcium's fmpz_mpoly_q: the field in which a coefficient
+ * lives when it is not rational. An expression enters by field_from_expr, which sees through sums, products and
+ * powers and makes what is left a generator. The one idea: arithmetic is in a free field, lowest terms by
+ * multivariate gcd, and the few algebraic relations are monic polynomials that powers are reduced by. Knows
+ * nothing of series. */
 #include "engine/exact/field.h"
 
 #include <stdlib.h>
@@ -67,9 +68,9 @@ static bool reduce_polynomial(field *f, fmpz_mpoly_t p)
     return changed;
 }
 
-/* adjoint = the product of den's other conjugates over g, g^degree = c, so that den * adjoint is free of g: for
- * A + B g the element A - B g, for A + B g + C g^2 (degree 3) the element A^2 - B C c + (C^2 c - A B) g + (B^2 - A C) g^2,
- * for a monomial in g of any degree the missing power. False when none of these fits. */
+/* adjoint = the product of den's other conjugates over g, g^degree = c, so that den * adjoint is free of g: for A
+ * + B g the element A - B g, for A + B g + C g^2 (degree 3) the element A^2 - B C c + (C^2 c - A B) g + (B^2 - A
+ * C) g^2, for a monomial in g of any degree the missing power. False when none of these fits. */
 static bool adjoint_of(field *f, fmpz_mpoly_t adjoint, const fmpz_mpoly_t den, slong k)
 {
     fmpz_mpoly_struct part[3], power, c, t;
@@ -126,7 +127,8 @@ static acb_srcptr generator_value(field *f, slong k)
     return g->value;
 }
 
-/* Is p proved nonzero, by its ball at a sample? Relations that the field does not know could make a polynomial vanish. */
+/* Is p proved nonzero, by its ball at a sample? Relations that the field does not know could make a polynomial
+ * vanish. */
 static bool polynomial_is_nonzero(field *f, const fmpz_mpoly_t p)
 {
     acb_ptr values = _acb_vec_init(f->room);
@@ -149,14 +151,15 @@ static bool polynomial_is_nonzero(field *f, const fmpz_mpoly_t p)
     return nonzero;
 }
 
-/* Frees denominators of algebraic generators: else common factors that a relation hides pile up (measured: degree 119 in
- * log(2) in the fourth coefficient of tanh(log(x - 2)^(-2/3)), 2 with it). */
+/* Frees denominators of algebraic generators: else common factors that a relation hides pile up (measured: degree
+ * 119 in log(2) in the fourth coefficient of tanh(log(x - 2)^(-2/3)), 2 with it). */
 static void rationalise(field *f, element *a)
 {
     fmpz_mpoly_t adjoint, den;
     fmpz_mpoly_init(adjoint, f->ctx), fmpz_mpoly_init(den, f->ctx);
     for (slong k = f->count - 1; k >= 0; k--) {
-        if (f->generators[k].degree == 0 || fmpz_mpoly_degree_si(fmpz_mpoly_q_denref(a), variable_of(f, k), f->ctx) == 0 ||
+        if (f->generators[k].degree == 0 ||
+            fmpz_mpoly_degree_si(fmpz_mpoly_q_denref(a), variable_of(f, k), f->ctx) == 0 ||
             !adjoint_of(f, adjoint, fmpz_mpoly_q_denref(a), k) || !polynomial_is_nonzero(f, adjoint))
             continue;
         fmpz_mpoly_mul(den, fmpz_mpoly_q_denref(a), adjoint, f->ctx);
@@ -352,8 +355,8 @@ static tw_status root_of(field *f, element *out, expr *base, slong q)
     return s;
 }
 
-/* exp(term), or base^term when base is not NULL, with term = c/d * rest: the atom is taken at rest/d and raised to c, so that
- * exp(1), exp(2), exp(-3) share one generator. z^(c w) = (z^w)^c for integers c. */
+/* exp(term), or base^term when base is not NULL, with term = c/d * rest: the atom is taken at rest/d and raised to
+ * c, so that exp(1), exp(2), exp(-3) share one generator. z^(c w) = (z^w)^c for integers c. */
 static tw_status exponential_term(field *f, element *out, expr *base, expr *term)
 {
     tw_engine *e = f->e;
@@ -598,7 +601,8 @@ answer field_is_zero(field *f, const element *a)
     if (fmpz_mpoly_q_is_zero(a, f->ctx))
         return ANSWER_YES;
     used_generators(f, a, &parameters, &constants, &others);
-    if (!constants && !others) /* parameters are independent: a polynomial in them that is not zero is nonzero somewhere */
+    if (!constants &&
+        !others) /* parameters are independent: a polynomial in them that is not zero is nonzero somewhere */
         return ANSWER_NO;
     fmpz_t one;
     fmpz_init_set_ui(one, 1);

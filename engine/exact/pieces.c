@@ -1,7 +1,7 @@
-/* Sums, products and powers of generalised series at 0+. The one idea: constants, parameters and logs that need not be
- * multiplied out stay in front of the coefficients, so that these are rational as long as they can be; what meets in one
- * class is added, and what must become one series (the base of a power, the argument of a function) is gathered. Knows the
- * form of a series, not where it comes from. */
+/* Sums, products and powers of generalised series at 0+. The one idea: constants, parameters and logs that need
+ * not be multiplied out stay in front of the coefficients, so that these are rational as long as they can be; what
+ * meets in one class is added, and what must become one series (the base of a power, the argument of a function)
+ * is gathered. Knows the form of a series, not where it comes from. */
 #include "engine/exact/pieces.h"
 
 #include <stdlib.h>
@@ -41,7 +41,8 @@ tw_status work_refuse(work *w, const char *words)
         return TW_ERROR;
     char *name = w->at_fault == NULL ? NULL : expr_text(w->e, w->at_fault);
     bool show = name != NULL && strlen(name) <= 200;
-    engine_fail(w->e, ERROR_UNSUITABLE, "%s %s at %s = 0", show ? name : "a part of the function", words, w->shown->is.name);
+    engine_fail(w->e, ERROR_UNSUITABLE, "%s %s at %s = 0", show ? name : "a part of the function", words,
+                w->shown->is.name);
     free(name);
     return TW_ERROR;
 }
@@ -327,7 +328,8 @@ static bool is_parametric(expr *a)
                 return false;
         return true;
     case EXPR_POWER:
-        return is_parametric(a->args[0]) && expr_is_number(a->args[1]) && fmpz_is_one(fmpq_denref(expr_number(a->args[1])));
+        return is_parametric(a->args[0]) && expr_is_number(a->args[1]) &&
+               fmpz_is_one(fmpq_denref(expr_number(a->args[1])));
     default: return false;
     }
 }
@@ -516,7 +518,8 @@ static tw_status piece_mul(work *w, piece *out, const piece *a, const piece *b)
         out->log_power = left.log_power + right.log_power;
         out->sigma = expr_add(e, left.sigma, right.sigma);
         out->factor = expr_mul(e, left.factor, right.factor);
-        s = out->sigma == NULL || out->factor == NULL ? TW_ERROR : piece_take_constants(w, out, left.constant, right.constant);
+        s = out->sigma == NULL || out->factor == NULL ? TW_ERROR
+                                                      : piece_take_constants(w, out, left.constant, right.constant);
         if (s == TW_OK && !out->c.rational)
             s = piece_fold(w, out, false);
     }

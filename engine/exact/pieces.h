@@ -2,10 +2,11 @@
  *
  *     constant * factor * x^(sigma + lead) * log(x)^log_power * sum_n c[n] x^(n/den)
  *
- * where `constant` is a product of constants that the coefficients need not know (2^(1/3), exp(a), pi), `factor` a rational
- * function of the parameters (1 unless c is rational), sigma the part of the exponent that is not rational. Pieces differ
- * in (constant, sigma, log_power) or lie on disjoint grids of exponents; each knows its own number of coefficients, since
- * the functions in front of the c's are independent: what is unknown of one says nothing about another. */
+ * where `constant` is a product of constants that the coefficients need not know (2^(1/3), exp(a), pi), `factor` a
+ * rational function of the parameters (1 unless c is rational), sigma the part of the exponent that is not
+ * rational. Pieces differ in (constant, sigma, log_power) or lie on disjoint grids of exponents; each knows its
+ * own number of coefficients, since the functions in front of the c's are independent: what is unknown of one says
+ * nothing about another. */
 #ifndef TW_EXACT_PIECES_H
 #define TW_EXACT_PIECES_H
 
@@ -71,7 +72,8 @@ tw_status pieces_add(work *w, pieces *out, const pieces *a, const pieces *b, int
 tw_status pieces_mul(work *w, pieces *out, const pieces *a, const pieces *b);
 tw_status pieces_scale(work *w, pieces *g, expr *value);
 tw_status pieces_derivative(work *w, pieces *out, const pieces *g);
-/* The antiderivative without constant term; exponents of g must exceed -1 when `from_zero` (it is then the integral from 0). */
+/* The antiderivative without constant term; exponents of g must exceed -1 when `from_zero` (it is then the
+ * integral from 0). */
 tw_status pieces_integral(work *w, pieces *out, const pieces *g, bool from_zero);
 tw_status pieces_pow(work *w, pieces *out, const pieces *g, expr *exponent);
 
@@ -85,7 +87,8 @@ expr *piece_exponent(work *w, const piece *p);
 bool steps_between(slong *steps, const fmpq_t a, const fmpq_t b, slong den);
 slong lcm_of(slong a, slong b);
 void piece_refine(work *w, piece *p, slong den); /* den a multiple of the old one */
-/* c += y^steps d, steps >= 0; d is used up. Where d begins far beyond what is wanted c becomes unknown from there on. */
+/* c += y^steps d, steps >= 0; d is used up. Where d begins far beyond what is wanted c becomes unknown from there
+ * on. */
 void tail_add_shifted(work *w, tail *c, tail *d, slong steps);
 void piece_strip(work *w, piece *p);             /* moves leading zeros (as polynomials) into the exponent */
 /* Strips until c[0] is proved nonzero; thin when nothing known is left. */

@@ -1,5 +1,5 @@
-/* What must be one series: the base of a power or of a logarithm is gathered on one grid, with a leading coefficient that is
- * proved nonzero; then K x^a (1 + u) is raised, K^r taken out in front. */
+/* What must be one series: the base of a power or of a logarithm is gathered on one grid, with a leading
+ * coefficient that is proved nonzero; then K x^a (1 + u) is raised, K^r taken out in front. */
 #include "engine/exact/pieces.h"
 
 #include <stdlib.h>
@@ -55,7 +55,8 @@ tw_status piece_prove_leading(work *w, piece *p)
         if (zero == ANSWER_NO)
             break;
         if (zero == ANSWER_UNKNOWN) {
-            s = engine_fail(w->e, ERROR_UNDECIDED, "whether the leading coefficient of a series is zero could not be decided");
+            s = engine_fail(w->e, ERROR_UNDECIDED,
+                            "whether the leading coefficient of a series is zero could not be decided");
             break;
         }
         slong known = p->c.known;
@@ -165,8 +166,8 @@ tw_status piece_need_leading(work *w, const piece *p)
     return s;
 }
 
-/* (K x^a (1 + u))^r = K^r x^(a r) (1 + u)^r on the principal branch for small x > 0, when r is an integer, or K is off the
- * negative axis (by continuity), or u is real (the argument of K (1 + u) is that of K). */
+/* (K x^a (1 + u))^r = K^r x^(a r) (1 + u)^r on the principal branch for small x > 0, when r is an integer, or K is
+ * off the negative axis (by continuity), or u is real (the argument of K (1 + u) is that of K). */
 tw_status piece_need_split(work *w, const piece *p, bool real, bool integer)
 {
     if (integer || real)
@@ -289,7 +290,8 @@ tw_status pieces_pow(work *w, pieces *out, const pieces *g, expr *exponent)
     }
     piece p;
     piece_init(w, &p);
-    tw_status s = pieces_gather(w, &p, g, "has no expansion in powers with a fixed step (powers and logarithms mix in its base)");
+    tw_status s = pieces_gather(
+        w, &p, g, "has no expansion in powers with a fixed step (powers and logarithms mix in its base)");
     bool real = g->real;
     if (s == TW_OK)
         s = power_of_piece(w, out, &p, real, exponent);
@@ -341,7 +343,8 @@ tw_status pieces_div(work *w, pieces *out, const pieces *a, const pieces *g, slo
     piece_init(w, &b);
     pieces_init(&quotient);
     quotient.real = a->real && g->real;
-    tw_status s = pieces_gather(w, &b, g, "has no inverse in powers with a fixed step (powers and logarithms mix in it)");
+    tw_status s =
+        pieces_gather(w, &b, g, "has no inverse in powers with a fixed step (powers and logarithms mix in it)");
     if (s == TW_OK)
         s = piece_need_leading(w, &b);
     expr *front = s == TW_OK ? expr_pow(w->e, expr_mul(w->e, b.constant, b.factor), expr_int(w->e, -n)) : NULL;

@@ -1,14 +1,16 @@
-/* Power series with rational coefficients: what FLINT does not do fast enough by itself. The one idea: f = P^r, exp(P) and
- * A/P with a short polynomial P satisfy first-order differential or linear equations, so their coefficients obey a recurrence
- * with as many terms as P has; written for integers over a denominator known beforehand, no greatest common divisor is taken
- * on the way. This file knows polynomials, nothing of expressions. */
+/* Power series with rational coefficients: what FLINT does not do fast enough by itself. The one idea: f = P^r,
+ * exp(P) and A/P with a short polynomial P satisfy first-order differential or linear equations, so their
+ * coefficients obey a recurrence with as many terms as P has; written for integers over a denominator known
+ * beforehand, no greatest common divisor is taken on the way. This file knows polynomials, nothing of expressions. */
 #include "engine/exact/rational.h"
 
 #include <stdbool.h>
 
 #include "engine/base/engine.h"
 
-enum { SHORT_TERMS = 16 }; /* more terms than this: FLINT's Newton iterations win at the lengths met (measured at 1000) */
+enum {
+    SHORT_TERMS = 16
+}; /* more terms than this: FLINT's Newton iterations win at the lengths met (measured at 1000) */
 
 static slong poly_terms(const fmpq_poly_t a)
 {
@@ -99,9 +101,9 @@ void rational_div(fmpq_poly_t out, const fmpq_poly_t a, const fmpq_poly_t b, slo
         fmpq_poly_div_series(out, a, b, n);
 }
 
-/* The denominators E_n of (1 + u)^r for r = p/q and u = U/D in powers of x^g: with j = floor(n/g), E_n = (D q)^j times the
- * part of j! that is made of primes of q. binomial(r, j) q^j (that part of j!) is an integer, and [x^n] u^j has the
- * denominator D^j. ratio[j] = E at level j over E at level j - 1. */
+/* The denominators E_n of (1 + u)^r for r = p/q and u = U/D in powers of x^g: with j = floor(n/g), E_n = (D q)^j
+ * times the part of j! that is made of primes of q. binomial(r, j) q^j (that part of j!) is an integer, and [x^n]
+ * u^j has the denominator D^j. ratio[j] = E at level j over E at level j - 1. */
 static void power_denominators(fmpz *level, fmpz *ratio, slong levels, const fmpz_t dq, const fmpz_t q)
 {
     fmpz_t part, rest;
@@ -124,8 +126,8 @@ static void power_denominators(fmpz *level, fmpz *ratio, slong levels, const fmp
     fmpz_clear(rest);
 }
 
-/* c_n n = sum over k of ((r + 1) k - n) u_k c_(n-k) for (1 + u)^r (Knuth, The Art of Computer Programming 2, section 4.7,
- * eq. (9)), times the denominators above. u holds a's coefficients without the 1. */
+/* c_n n = sum over k of ((r + 1) k - n) u_k c_(n-k) for (1 + u)^r (Knuth, The Art of Computer Programming 2,
+ * section 4.7, eq. (9)), times the denominators above. u holds a's coefficients without the 1. */
 static void pow_short(fmpq_poly_t out, const fmpq_poly_t a, const fmpq_t r, slong n)
 {
     slong gap = poly_gap(a), levels = (n - 1) / gap + 1, top = FLINT_MIN((a->length - 1) / gap, levels - 1);
@@ -358,7 +360,8 @@ static void compose_monomial(fmpq_poly_t out, const fmpq_poly_t outer, const fmp
     fmpq_clear(factor);
 }
 
-/* tan x = sum (-1)^(m-1) 2^(2m) (2^(2m) - 1) B_(2m) x^(2m-1)/(2m)!, tanh x the same without signs: DLMF 4.19.3, 4.33.3. */
+/* tan x = sum (-1)^(m-1) 2^(2m) (2^(2m) - 1) B_(2m) x^(2m-1)/(2m)!, tanh x the same without signs: DLMF 4.19.3,
+ * 4.33.3. */
 static void tan_of_variable(fmpq_poly_t out, slong n, int hyperbolic)
 {
     fmpq *bernoulli = _fmpq_vec_init(n + 2);
@@ -441,7 +444,8 @@ static int denominator_primes(ulong *primes, ulong *exponents, const fmpz_t den)
     return whole ? count : -1;
 }
 
-/* num/den in lowest terms by taking the few primes out of num: 4 times faster than greatest common divisors at 2400 bits. */
+/* num/den in lowest terms by taking the few primes out of num: 4 times faster than greatest common divisors at
+ * 2400 bits. */
 static void lowest_terms(fmpq_t out, const fmpz_t num, const ulong *primes, const ulong *exponents, int count)
 {
     fmpz_t p, power;

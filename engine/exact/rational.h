@@ -1,6 +1,6 @@
-/* Power series with rational coefficients modulo x^n, on FLINT's fmpq_poly: the routes that are faster than FLINT's general
- * ones when an operand is a short polynomial (linear recurrences on integers with a known denominator: N coefficients cost
- * N times the number of terms). Used by tail.c only. */
+/* Power series with rational coefficients modulo x^n, on FLINT's fmpq_poly: the routes that are faster than
+ * FLINT's general ones when an operand is a short polynomial (linear recurrences on integers with a known
+ * denominator: N coefficients cost N times the number of terms). Used by tail.c only. */
 #ifndef TW_EXACT_RATIONAL_H
 #define TW_EXACT_RATIONAL_H
 

@@ -1,5 +1,5 @@
-/* The series of an expression at x -> 0+: a walk over its tree, each node's series made of its parts'. The walk knows the
- * kinds of nodes; what is done with the series is in pieces.c, powers.c, elementary.c and special.c. */
+/* The series of an expression at x -> 0+: a walk over its tree, each node's series made of its parts'. The walk
+ * knows the kinds of nodes; what is done with the series is in pieces.c, powers.c, elementary.c and special.c. */
 #include "engine/exact/series.h"
 
 #include <stdlib.h>
@@ -408,7 +408,8 @@ static tw_status make_series(work *w, pieces *out, const void *host)
     return s;
 }
 
-tw_status series_at_zero(tw_engine *e, series *out, expr *f, expr *x, slong length, expr ***conditions, size_t *condition_count)
+tw_status series_at_zero(tw_engine *e, series *out, expr *f, expr *x, slong length, expr ***conditions,
+                         size_t *condition_count)
 {
     if (f == NULL || x == NULL)
         return TW_ERROR;

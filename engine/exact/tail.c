@@ -1,6 +1,6 @@
-/* Power series over the rationals or over the field: one set of operations for both. Rational ones go to rational.c; in the
- * field every operation is a recurrence that runs over the nonzero coefficients of the short operand only. Precision is
- * carried along: a result never claims more coefficients than its operands give. */
+/* Power series over the rationals or over the field: one set of operations for both. Rational ones go to
+ * rational.c; in the field every operation is a recurrence that runs over the nonzero coefficients of the short
+ * operand only. Precision is carried along: a result never claims more coefficients than its operands give. */
 #include "engine/exact/tail.h"
 
 #include <stdlib.h>

@@ -1,6 +1,6 @@
-/* A power series in one variable y, c[0] + c[1] y + ... with `known` coefficients known (TAIL_EXACT: a polynomial, all of
- * them), either rational (fmpq_poly) or in the field. Functions take the number n of coefficients wanted; results are
- * rational when all operands are. */
+/* A power series in one variable y, c[0] + c[1] y + ... with `known` coefficients known (TAIL_EXACT: a polynomial,
+ * all of them), either rational (fmpq_poly) or in the field. Functions take the number n of coefficients wanted;
+ * results are rational when all operands are. */
 #ifndef TW_EXACT_TAIL_H
 #define TW_EXACT_TAIL_H
 
@@ -10,7 +10,8 @@
 
 typedef struct tail {
     slong known;
-    slong offset, gap; /* proved: c[n] = 0 unless n = offset modulo gap; gap 0: unless n = offset. Parity survives truncation */
+    slong offset,
+        gap; /* proved: c[n] = 0 unless n = offset modulo gap; gap 0: unless n = offset. Parity survives truncation */
     bool rational;
     fmpq_poly_t q; /* rational */
     slong count;   /* not rational: stored elements; the further known ones are zero */
@@ -49,7 +50,8 @@ void tail_sin_cos(field *f, tail *s, tail *c, const tail *u, slong n, int hyperb
 void tail_compose(field *f, tail *out, const tail *outer, const tail *u, slong n);     /* u[0] = 0 */
 /* out = tan(u), or tanh(u); u rational, u[0] = 0. */
 void tail_tan(field *f, tail *out, const tail *u, slong n, int hyperbolic);
-/* c[k] times (or over, when `divide`) alpha + lead + k/den; alpha may be NULL. A zero divisor's coefficient must be zero. */
+/* c[k] times (or over, when `divide`) alpha + lead + k/den; alpha may be NULL. A zero divisor's coefficient must
+ * be zero. */
 void tail_weigh(field *f, tail *t, const element *alpha, const fmpq_t lead, slong den, bool divide);
 
 #endif

@@ -1,6 +1,6 @@
-/* Questions about values free of x: zero, real, sign. Balls prove that something is not zero; only exact arithmetic proves
- * that it is (rational numbers here, algebraic and elementary constants by Calcium). A value with parameters is "nonzero"
- * when it is at one admissible sample. Knows nothing of series. */
+/* Questions about values free of x: zero, real, sign. Balls prove that something is not zero; only exact
+ * arithmetic proves that it is (rational numbers here, algebraic and elementary constants by Calcium). A value
+ * with parameters is "nonzero" when it is at one admissible sample. Knows nothing of series. */
 #include "engine/exact/values.h"
 
 #include <stdlib.h>
@@ -40,7 +40,8 @@ static bool exact_power(ca_t out, expr *a, ca_ctx_t ctx)
     ca_init(base, ctx), ca_init(exponent, ctx);
     bool ok = to_exact(base, a->args[0], ctx);
     if (ok && expr_is_number(a->args[1])) {
-        ok = fmpz_bits(fmpq_numref(expr_number(a->args[1]))) <= 16 && fmpz_bits(fmpq_denref(expr_number(a->args[1]))) <= 16;
+        ok = fmpz_bits(fmpq_numref(expr_number(a->args[1]))) <= 16 &&
+             fmpz_bits(fmpq_denref(expr_number(a->args[1]))) <= 16;
         if (ok)
             ca_pow_fmpq(out, base, expr_number(a->args[1]), ctx);
     } else if (ok) {
@@ -114,8 +115,8 @@ static answer exact_is_zero(expr *a)
 
 /* ---- balls ---- */
 
-/* The ball of a fixed value: 1 when it excludes zero at some precision up to `most` bits, 0 when it holds zero at all of
- * them, -1 when the value cannot be had (no engine error is left). */
+/* The ball of a fixed value: 1 when it excludes zero at some precision up to `most` bits, 0 when it holds zero at
+ * all of them, -1 when the value cannot be had (no engine error is left). */
 static int ball_excludes_zero(tw_engine *e, acb_t out, expr *a, slong most)
 {
     int result = -1;
@@ -133,7 +134,8 @@ static int ball_excludes_zero(tw_engine *e, acb_t out, expr *a, slong most)
     return result;
 }
 
-/* A rational inside what the facts say of a symbol, the `trial`-th; the same for every expression that holds the symbol. */
+/* A rational inside what the facts say of a symbol, the `trial`-th; the same for every expression that holds the
+ * symbol. */
 static expr *sample(tw_engine *e, expr *symbol, slong trial)
 {
     slong index = (slong)(symbol->serial % 9973);

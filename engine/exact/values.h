@@ -1,5 +1,5 @@
-/* What is known of a value free of x: is it zero, real, of which sign. Every answer is proved: rational arithmetic, facts,
- * balls, and for fixed constants whose ball holds zero Calcium's exact arithmetic. */
+/* What is known of a value free of x: is it zero, real, of which sign. Every answer is proved: rational
+ * arithmetic, facts, balls, and for fixed constants whose ball holds zero Calcium's exact arithmetic. */
 #ifndef TW_EXACT_VALUES_H
 #define TW_EXACT_VALUES_H
 

@@ -1,5 +1,6 @@
-/* Medians of the time for 8, 100 and 1000 coefficients of q's series, for the four classes of integrands that the goals name.
- * Prints one line a function: median milliseconds at each length, and the growth from 100 to 1000 as a power of N. Seed-free. */
+/* Medians of the time for 8, 100 and 1000 coefficients of q's series, for the four classes of integrands that the
+ * goals name. Prints one line a function: median milliseconds at each length, and the growth from 100 to 1000 as a
+ * power of N. Seed-free. */
 #include <math.h>
 #include <stdio.h>
 #include <stdlib.h>

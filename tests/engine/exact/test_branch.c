@@ -19,11 +19,12 @@ static const branch_case exact_cases[] = {
     {"x + x^2", "1", 4, "1 x^(0) /1: 1, -2, 6, -20", "1/sqrt(1+4t)"},
     {"x + x^2", "x^(-1/2)", 4, "1 x^(-1/2) /1: 1, -3/2, 35/8, -231/16", "Lagrange's formula, DLMF 1.10.14"},
     {"x^2 + x^3", "1", 4, "1 x^(-1/2) /2: 1/2, -1/2, 15/16, -2", "DLMF 2.3.18, exact rational recomputation"},
-    /* Stirling's series: sqrt(2) Gamma(k + 1/2) times the even ones gives 1, 1/12, 1/288, -139/51840 over 2^k (1/2)_k ... */
+    /* c_k of the odd half powers: sqrt(2) c_k Gamma(k + 1/2) = sqrt(2 pi)/2 * (1, 1/12, 1/288, -139/51840) */
     {"x - log(1 + x)", "1", 4,
      "sqrt(2) x^(-1/2) /1: 1/2, 1/12, 1/432, -139/194400; 1 x^(0) /1: 2/3, -4/135, 4/2835, 8/25515",
      "DLMF 5.11.4 with 2.3.18 (1/12, 1/288, -139/51840)"},
-    {"cosh(x) - 1", "1", 4, "sqrt(2) x^(-1/2) /1: 1/2, -1/8, 3/64, -5/256", "1/sqrt(t(2+t)), DLMF 4.38.4 differentiated"},
+    {"cosh(x) - 1", "1", 4, "sqrt(2) x^(-1/2) /1: 1/2, -1/8, 3/64, -5/256",
+     "1/sqrt(t(2+t)), DLMF 4.38.4 differentiated"},
     {"1 - cos(x)", "1", 3, "sqrt(2) x^(-1/2) /1: 1/2, 1/8, 3/64", "1/sqrt(t(2-t))"},
     {"3*x", "log(x)", 2, "1 x^(0) log^1 /1: 1/3; log(3) x^(0) /1: -1/3.", "log(t/3)"},
     {"sinh(x)", "log(x)", 3, "1 x^(0) log^1 /1: 1, 0, -1/2; 1 x^(2) /1: -1/6, 0, 13/90",
@@ -41,7 +42,8 @@ static void test_exact(void **state)
         give(e, RELATION_LESS, "0", "a");
         series s;
         series_init(&s);
-        if (series_branch(e, &s, read_expr(e, c->p), read_expr(e, c->q), expr_symbol(e, "x"), c->length, NULL, NULL) != TW_OK)
+        if (series_branch(e, &s, read_expr(e, c->p), read_expr(e, c->q), expr_symbol(e, "x"), c->length, NULL,
+                          NULL) != TW_OK)
             fail_msg("%s, %s: %s", c->p, c->q, e->error.words);
         char *found = series_text(e, &s);
         if (strcmp(found, c->expected) != 0)
@@ -53,7 +55,8 @@ static void test_exact(void **state)
 }
 
 /* G(p(x)) p'(x) = q(x). */
-static void check_branch(tw_engine *e, const char *words, expr *p, expr *q, slong length, const env *at, slong bits_of_x)
+static void check_branch(tw_engine *e, const char *words, expr *p, expr *q, slong length, const env *at,
+                         slong bits_of_x)
 {
     enum { PREC = 3000 };
     expr *x = expr_symbol(e, "x");
@@ -77,16 +80,19 @@ static void check_branch(tw_engine *e, const char *words, expr *p, expr *q, slon
     arf_mul(next, next, size, 64, ARF_RND_UP);
     if (!agrees(value, sum, next, PREC))
         fail_msg("%s: the partial sum is off; series %.2000s", words, series_text(e, &s));
-    fmpq_clear(point), acb_clear(t), acb_clear(slope), acb_clear(value), acb_clear(sum), arf_clear(next), arf_clear(size);
+    fmpq_clear(point), acb_clear(t), acb_clear(slope), acb_clear(value), acb_clear(sum), arf_clear(next),
+        arf_clear(size);
     series_clear(&s);
 }
 
 static const char *const value_cases[][2] = {
-    {"sinh(x)", "1/(1 + x)"}, {"exp(x) - 1 - x", "1 + x"}, {"x^2/2 + x^4/4", "1/(1 + x^2)"}, {"cosh(x) - 1", "x^(1/3)"},
-    {"x + x^2", "log(x)/(1 + x)"}, {"3*x^2 + x^3", "log(x)^2*exp(x)"}, {"x^3 + x^4", "cos(x)"}, {"x^(3/2) + x^2", "sqrt(x)"},
-    {"a*x + x^2", "1/(1 + x)"}, {"a*x^2 + b*x^3", "x^nu"}, {"sinh(a*x)", "log(x)"}, {"pi*x + x^2", "1/(1 + x)"},
-    {"x^2*(2 + x)", "exp(x)"}, {"tan(x)", "Gamma(1 + x)"}, {"x*exp(x)", "x^nu*cos(b*x)"}, {"sqrt(2)*x^2 + x^3", "1 + x"},
-    {"x - sin(x)", "1/(1 + x)"}, {"x^(1/3)", "1/(1 + x)"}, {"log(1 + x)", "1/(2 + x)"},
+    {"sinh(x)", "1/(1 + x)"},       {"exp(x) - 1 - x", "1 + x"},   {"x^2/2 + x^4/4", "1/(1 + x^2)"},
+    {"cosh(x) - 1", "x^(1/3)"},     {"x + x^2", "log(x)/(1 + x)"}, {"3*x^2 + x^3", "log(x)^2*exp(x)"},
+    {"x^3 + x^4", "cos(x)"},        {"x^(3/2) + x^2", "sqrt(x)"},  {"a*x + x^2", "1/(1 + x)"},
+    {"a*x^2 + b*x^3", "x^nu"},      {"sinh(a*x)", "log(x)"},       {"pi*x + x^2", "1/(1 + x)"},
+    {"x^2*(2 + x)", "exp(x)"},      {"tan(x)", "Gamma(1 + x)"},    {"x*exp(x)", "x^nu*cos(b*x)"},
+    {"sqrt(2)*x^2 + x^3", "1 + x"}, {"x - sin(x)", "1/(1 + x)"},   {"x^(1/3)", "1/(1 + x)"},
+    {"log(1 + x)", "1/(2 + x)"},
 };
 
 static void test_values(void **state)
@@ -130,7 +136,10 @@ static void test_random(void **state)
                  random_below(4) + 1, random_below(3) + 1, random_below(7) - 3, random_below(7) - 3,
                  random_below(2) ? "" : " + x^(1/2)");
         snprintf(q, sizeof q, "x^(%ld/%ld)*(1 + %ld*x)^(%ld/3)%s", random_below(7) - 3, random_below(3) + 1,
-                 random_below(5) - 2, random_below(7) - 3, random_below(3) ? "" : random_below(2) ? "*log(x)" : "*exp(x)");
+                 random_below(5) - 2, random_below(7) - 3,
+                 random_below(3)   ? ""
+                 : random_below(2) ? "*log(x)"
+                                   : "*exp(x)");
         snprintf(words, sizeof words, "t = %s, q = %s", p, q);
         check_branch(e, words, read_expr(e, p), read_expr(e, q), 4, NULL, 200);
         tw_engine_free(e);

@@ -1,5 +1,5 @@
-/* Series at 0+: exact coefficients against published ones, partial sums against the function itself in balls, and what has no
- * series. */
+/* Series at 0+: exact coefficients against published ones, partial sums against the function itself in balls, and
+ * what has no series. */
 #include <stdint.h>
 #include <stdio.h>
 
@@ -77,8 +77,10 @@ static const exact_case strand_cases[] = {
     {"1/(pi + x)", 3, "1 x^(0) /1: 1/pi, -1/pi^2, 1/pi^3", "geometric series"},
     {"atan(1/x)", 4, "pi x^(0) /1: 1/2, 0, 0, 0; 1 x^(1) /1: -1, 0, 1/3, 0", "DLMF 4.24.4 (from memory)"},
     {"acosh(1 + x)", 2, "sqrt(2) x^(1/2) /1: 1, -1/12", "exact rational recomputation"},
-    {"E1(x)", 3, "1 x^(0) log^1 /1: -1, 0, 0; euler_constant x^(0) /1: -1, 0, 0; 1 x^(1) /1: 1, -1/4, 1/18", "DLMF 6.6.2"},
-    {"Ei(x)", 3, "1 x^(0) log^1 /1: 1, 0, 0; euler_constant x^(0) /1: 1, 0, 0; 1 x^(1) /1: 1, 1/4, 1/18", "DLMF 6.6.1"},
+    {"E1(x)", 3, "1 x^(0) log^1 /1: -1, 0, 0; euler_constant x^(0) /1: -1, 0, 0; 1 x^(1) /1: 1, -1/4, 1/18",
+     "DLMF 6.6.2"},
+    {"Ei(x)", 3, "1 x^(0) log^1 /1: 1, 0, 0; euler_constant x^(0) /1: 1, 0, 0; 1 x^(1) /1: 1, 1/4, 1/18",
+     "DLMF 6.6.1"},
     {"J(0, x)", 5, "1 x^(0) /1: 1, 0, -1/4, 0, 1/64", "DLMF 10.2.2"},
     {"J(-1, x)", 3, "1 x^(1) /1: -1/2, 0, 1/16", "DLMF 10.2.2, 10.4.1"},
     {"I(2, 2*x)", 3, "1 x^(2) /1: 1/2, 0, 1/6", "DLMF 10.25.2"},
@@ -126,24 +128,41 @@ typedef struct lane_case {
 
 static const lane_case lane_cases[] = {
     {"w-sqrt-even", "1/sqrt(1+x^2)", "1", {"1", "0", "-1", "0", "9", "0", "-225", "0"}},
-    {"w-rational-shift", "1/(2+3*x+x^2)", "1", {"1/2", "-3/4", "7/4", "-45/8", "93/4", "-945/8", "5715/8", "-80325/16"}},
-    {"w-third-root", "x^(-2/3)/(1+x)", "1/3",
+    {"w-rational-shift",
+     "1/(2+3*x+x^2)",
+     "1",
+     {"1/2", "-3/4", "7/4", "-45/8", "93/4", "-945/8", "5715/8", "-80325/16"}},
+    {"w-third-root",
+     "x^(-2/3)/(1+x)",
+     "1/3",
      {"1", "-1/3", "4/9", "-28/27", "280/81", "-3640/243", "58240/729", "-1106560/2187"}},
-    {"w-algebraic", "(1+x)^(1/3)/(1+x^2)", "1",
+    {"w-algebraic",
+     "(1+x)^(1/3)/(1+x^2)",
+     "1",
      {"1", "1/3", "-20/9", "-44/27", "2080/81", "8800/243", "-573920/729", "-3116960/2187"}},
     {"w-log", "log(1+2*x)", "2", {"2", "-4", "16", "-96", "768", "-7680", "92160", "-1290240"}},
-    {"w-cos-halfpower", "x^(-1/2)*cos(x)/(1+x)", "1/2",
+    {"w-cos-halfpower",
+     "x^(-1/2)*cos(x)/(1+x)",
+     "1/2",
      {"1", "-1/2", "3/8", "-15/16", "455/128", "-4095/256", "89859/1024", "-1168167/2048"}},
     {"w-exp-cut", "1/(1+x)^2", "1", {"1", "-2", "6", "-24", "120", "-720", "5040", "-40320"}},
-    {"w-erfc", "1/(sqrt(x)*(1+x))", "1/2",
+    {"w-erfc",
+     "1/(sqrt(x)*(1+x))",
+     "1/2",
      {"1", "-1/2", "3/4", "-15/8", "105/16", "-945/32", "10395/64", "-135135/128"}},
-    {"w-small", "(1+x)^(-5/2)", "1",
+    {"w-small",
+     "(1+x)^(-5/2)",
+     "1",
      {"1", "-5/2", "35/4", "-315/8", "3465/16", "-45045/32", "675675/64", "-11486475/128"}},
-    {"p-finite-end", "1/((1+x)^2*(2+x))", "1",
+    {"p-finite-end",
+     "1/((1+x)^2*(2+x))",
+     "1",
      {"1/2", "-5/4", "17/4", "-147/8", "387/4", "-4815/8", "34605/8", "-564795/16"}},
     {"p-log-end", "1/(2+x)^3", "1", {"1/8", "-3/16", "3/8", "-15/16", "45/16", "-315/32", "315/8", "-2835/16"}},
     {"g-log-moment", "log(x)/(1+x)", "1", {"1", "-1", "2", "-6", "24", "-120", "720", "-5040"}},
-    {"s-incgamma", "(1+x)^(a-1)", "1",
+    {"s-incgamma",
+     "(1+x)^(a-1)",
+     "1",
      {"1", "(a-1)", "(a-1)*(a-2)", "(a-1)*(a-2)*(a-3)", "(a-1)*(a-2)*(a-3)*(a-4)", "(a-1)*(a-2)*(a-3)*(a-4)*(a-5)",
       "(a-1)*(a-2)*(a-3)*(a-4)*(a-5)*(a-6)", "(a-1)*(a-2)*(a-3)*(a-4)*(a-5)*(a-6)*(a-7)"}},
 };
@@ -210,17 +229,88 @@ static void check_value(tw_engine *e, const char *words, expr *f, slong length, 
 }
 
 static const char *const value_cases[] = {
-    "sin(1 + x)^2/(2 + x)", "tan(1 + x)", "exp(x + sqrt(x))/(1 + x)", "log(2 + sqrt(x))*log(x)", "sqrt(3 + x + x^(1/3))",
-    "Gamma(x)", "Gamma(2 + x)", "Gamma(1/2 + x)", "Gamma(1/3 + x^2)", "Gamma(x - 2)", "psi(1 + x)", "psi(x - 1)",
-    "polygamma(2, x)", "lnGamma(x)", "lnGamma(3 + x)", "Beta(1 + x, 1/2)", "erf(1 + x)", "erfc(x)", "E1(2*x)", "E1(1 + x)",
-    "Ei(-x)", "Ei(1 + x)", "Gamma(1/3, x)", "Gamma(2, x)", "Gamma(-2, x)", "Gamma(0, x)", "Gamma(1/2, 1 + x)", "J(1/3, x)",
-    "J(-5/2, x)", "J(2, 1 + x)", "Y(0, x)", "Y(2, x)", "Y(1/4, x)", "I(3/2, sqrt(x))", "K(0, x)", "K(1, x)", "K(3, 2*x)",
-    "K(1/3, x)", "K(1/2, 1 + x)", "Ai(x)", "Bi(x + x^2)", "Ai(1 + x)", "Bi(x - 2)", "Ai(2 + sqrt(x))", "I(1/3, 2 + x)", "Y(0, 3 - x)", "atan(2 + x)", "asin(1/2 + x)", "asin(1 - x)", "acos(x)",
-    "acos(1 - x)", "atanh(1 - x)", "acosh(2 + x)", "acosh(1/x)", "asinh(1/x)", "asinh(-1/x)", "tanh(1 + x)", "cosh(2 + x)",
-    "sinh(log(2) + x)", "(1 + x)^x", "2^x", "pi^(1 + x)", "1/(sqrt(2) + sqrt(3) + x)", "1/(cos(1) + sin(x))",
-    "(-2 + x)^(1/3)", "log(-3 + x)", "sqrt(i + x)", "1/(1 + i*x)", "exp(i*x)", "log(1 + i*x)", "log(i*x)",
-    "abs(sin(x) - x)", "x^(sqrt(2))*(1 + x)", "log(x)^3/(1 + x^2)", "(log(x) + x)^2", "x^x - x^x + cos(x)",
-    "sqrt(x^2 + x^3)", "(sin(x)/x)^(3/2)", "exp(x)/(exp(x) - 1 - x)", "(1 + sin(x))^(1/x)", "cos(sqrt(x))", "1/Gamma(x)",
+    "sin(1 + x)^2/(2 + x)",
+    "tan(1 + x)",
+    "exp(x + sqrt(x))/(1 + x)",
+    "log(2 + sqrt(x))*log(x)",
+    "sqrt(3 + x + x^(1/3))",
+    "Gamma(x)",
+    "Gamma(2 + x)",
+    "Gamma(1/2 + x)",
+    "Gamma(1/3 + x^2)",
+    "Gamma(x - 2)",
+    "psi(1 + x)",
+    "psi(x - 1)",
+    "polygamma(2, x)",
+    "lnGamma(x)",
+    "lnGamma(3 + x)",
+    "Beta(1 + x, 1/2)",
+    "erf(1 + x)",
+    "erfc(x)",
+    "E1(2*x)",
+    "E1(1 + x)",
+    "Ei(-x)",
+    "Ei(1 + x)",
+    "Gamma(1/3, x)",
+    "Gamma(2, x)",
+    "Gamma(-2, x)",
+    "Gamma(0, x)",
+    "Gamma(1/2, 1 + x)",
+    "J(1/3, x)",
+    "J(-5/2, x)",
+    "J(2, 1 + x)",
+    "Y(0, x)",
+    "Y(2, x)",
+    "Y(1/4, x)",
+    "I(3/2, sqrt(x))",
+    "K(0, x)",
+    "K(1, x)",
+    "K(3, 2*x)",
+    "K(1/3, x)",
+    "K(1/2, 1 + x)",
+    "Ai(x)",
+    "Bi(x + x^2)",
+    "Ai(1 + x)",
+    "Bi(x - 2)",
+    "Ai(2 + sqrt(x))",
+    "I(1/3, 2 + x)",
+    "Y(0, 3 - x)",
+    "atan(2 + x)",
+    "asin(1/2 + x)",
+    "asin(1 - x)",
+    "acos(x)",
+    "acos(1 - x)",
+    "atanh(1 - x)",
+    "acosh(2 + x)",
+    "acosh(1/x)",
+    "asinh(1/x)",
+    "asinh(-1/x)",
+    "tanh(1 + x)",
+    "cosh(2 + x)",
+    "sinh(log(2) + x)",
+    "(1 + x)^x",
+    "2^x",
+    "pi^(1 + x)",
+    "1/(sqrt(2) + sqrt(3) + x)",
+    "1/(cos(1) + sin(x))",
+    "(-2 + x)^(1/3)",
+    "log(-3 + x)",
+    "sqrt(i + x)",
+    "1/(1 + i*x)",
+    "exp(i*x)",
+    "log(1 + i*x)",
+    "log(i*x)",
+    "abs(sin(x) - x)",
+    "x^(sqrt(2))*(1 + x)",
+    "log(x)^3/(1 + x^2)",
+    "(log(x) + x)^2",
+    "x^x - x^x + cos(x)",
+    "sqrt(x^2 + x^3)",
+    "(sin(x)/x)^(3/2)",
+    "exp(x)/(exp(x) - 1 - x)",
+    "(1 + sin(x))^(1/x)",
+    "cos(sqrt(x))",
+    "1/Gamma(x)",
 };
 
 static void test_values(void **state)
@@ -279,7 +369,10 @@ static expr *random_leaf(tw_engine *e)
     case 1: return expr_frac(e, (slong)random_below(9) - 4, 1 + random_below(3));
     case 2:
     case 3: return expr_pow(e, x, expr_frac(e, 1 + random_below(3), 1 + random_below(3)));
-    case 4: return expr_constant_of(e, random_below(8) == 0 ? CONSTANT_I : random_below(2) ? CONSTANT_PI : CONSTANT_EULER);
+    case 4:
+        return expr_constant_of(e, random_below(8) == 0 ? CONSTANT_I
+                                   : random_below(2)    ? CONSTANT_PI
+                                                        : CONSTANT_EULER);
     case 5: return expr_sqrt(e, expr_int(e, 2 + random_below(3)));
     case 6: return expr_call1(e, FUNCTION_LOG, x);
     case 7: return random_below(3) ? x : expr_symbol(e, "a"); /* a > 0 */
@@ -367,7 +460,8 @@ static void test_conditions(void **state)
         expr **conditions;
         size_t count;
         series_init(&s);
-        assert_int_equal(series_at_zero(e, &s, read_expr(e, cases[k][0]), expr_symbol(e, "x"), 4, &conditions, &count), TW_OK);
+        assert_int_equal(
+            series_at_zero(e, &s, read_expr(e, cases[k][0]), expr_symbol(e, "x"), 4, &conditions, &count), TW_OK);
         bool found = cases[k][1] == NULL ? count == 0 : false;
         for (size_t j = 0; j < count; j++) {
             char *words = expr_text(e, conditions[j]);
@@ -392,8 +486,9 @@ static void test_facts_settle(void **state)
     expr **conditions;
     size_t count;
     series_init(&s);
-    assert_int_equal(series_at_zero(e, &s, read_expr(e, "abs(x - a)/(a + x)"), expr_symbol(e, "x"), 3, &conditions, &count),
-                     TW_OK);
+    assert_int_equal(
+        series_at_zero(e, &s, read_expr(e, "abs(x - a)/(a + x)"), expr_symbol(e, "x"), 3, &conditions, &count),
+        TW_OK);
     assert_int_equal(count, 0);
     char *words = series_text(e, &s);
     assert_string_equal(words, "1 x^(0) /1: 1, -2*a^-1, 2*a^-2");
@@ -483,8 +578,9 @@ static void test_budget(void **state)
     series s;
     series_init(&s);
     budget_start(e, 0.05);
-    assert_int_equal(series_at_zero(e, &s, read_expr(e, "Gamma(1 + x)*Gamma(1/3 + x)"), expr_symbol(e, "x"), 400, NULL, NULL),
-                     TW_ERROR);
+    assert_int_equal(
+        series_at_zero(e, &s, read_expr(e, "Gamma(1 + x)*Gamma(1/3 + x)"), expr_symbol(e, "x"), 400, NULL, NULL),
+        TW_ERROR);
     assert_int_equal(e->error.kind, ERROR_TIME);
     tw_engine_free(e);
 }

@@ -36,7 +36,8 @@ static inline expr *read_expr(tw_engine *e, const char *words)
 
 static inline void give(tw_engine *e, expr_relation r, const char *left, const char *right)
 {
-    assert_int_equal(facts_add(e, expr_relation_of(e, r, read_expr(e, left), read_expr(e, right)), CONDITION_GIVEN), TW_OK);
+    assert_int_equal(facts_add(e, expr_relation_of(e, r, read_expr(e, left), read_expr(e, right)), CONDITION_GIVEN),
+                     TW_OK);
 }
 
 static inline void text_expr(tw_engine *e, text *out, expr *a)
@@ -46,7 +47,8 @@ static inline void text_expr(tw_engine *e, text *out, expr *a)
     free(words);
 }
 
-/* "constant x^(exponent) [log^k] /den: c0, c1, ..." for each strand, separated by "; ", with "." at the end when it terminates. */
+/* "constant x^(exponent) [log^k] /den: c0, c1, ..." for each strand, separated by "; ", with "." at the end when
+ * it terminates. */
 static inline char *series_text(tw_engine *e, const series *s)
 {
     text out;
@@ -120,7 +122,8 @@ static inline void partial_sum_ball(tw_engine *e, acb_t sum, arf_t next, const s
         acb_mul(term, front, power, prec);
         acb_get_abs_ubound_arf(size, term, 64);
         arf_add_ui(largest, largest, 1, 64, ARF_RND_UP);
-        arf_mul(largest, largest, largest, 64, ARF_RND_UP); /* generous: coefficients may grow like a power of the last ones */
+        arf_mul(largest, largest, largest, 64,
+                ARF_RND_UP); /* generous: coefficients may grow like a power of the last ones */
         arf_mul(size, size, largest, 64, ARF_RND_UP);
         arf_mul_2exp_si(size, size, 12);
         arf_add(next, next, size, 64, ARF_RND_UP);
@@ -131,7 +134,8 @@ static inline void partial_sum_ball(tw_engine *e, acb_t sum, arf_t next, const s
     acb_clear(front), acb_clear(term), acb_clear(power), acb_clear(c), acb_clear(lx), acb_clear(inner);
 }
 
-static inline void partial_sum(tw_engine *e, acb_t sum, arf_t next, const series *s, const fmpq_t x, const env *at, slong prec)
+static inline void partial_sum(tw_engine *e, acb_t sum, arf_t next, const series *s, const fmpq_t x, const env *at,
+                               slong prec)
 {
     acb_t ball;
     acb_init(ball);
