@@ -88,7 +88,11 @@ static tw_status settle_groups(work *w, pieces *g)
         size_t members;
         if (leading_sum(w, g, k, &sum, &members) != TW_OK)
             return TW_ERROR;
-        if (members > 1 && value_is_zero(w->e, sum) == ANSWER_YES) {
+        answer zero = members > 1 ? value_is_zero(w->e, sum) : ANSWER_NO;
+        if (zero == ANSWER_UNKNOWN)
+            return engine_fail(w->e, ERROR_UNDECIDED,
+                               "whether the constants of the series' leading term cancel could not be decided");
+        if (zero == ANSWER_YES) {
             if (merge_group(w, g, k) != TW_OK)
                 return TW_ERROR;
             k = (size_t)-1;

@@ -331,6 +331,10 @@ void rational_sin_cos(fmpq_poly_t s, fmpq_poly_t c, const fmpq_poly_t u, slong n
 static void compose_monomial(fmpq_poly_t out, const fmpq_poly_t outer, const fmpq_poly_t u, slong n)
 {
     slong gap = u->length - 1, count = FLINT_MIN(outer->length, (n - 1) / gap + 1);
+    if (count == 0) {
+        fmpq_poly_zero(out);
+        return;
+    }
     fmpq_poly_t spread;
     fmpq_poly_init(spread);
     fmpq_t factor;

@@ -25,6 +25,7 @@ static const exact_case rational_cases[] = {
     {"cosh(x)", 5, "1 x^(0) /1: 1, 0, 1/2, 0, 1/24", "DLMF 4.33.2"},
     {"tanh(x)", 8, "1 x^(1) /1: 1, 0, -1/3, 0, 2/15, 0, -17/315, 0", "DLMF 4.33.3"},
     {"tanh(2*x^2)", 5, "1 x^(2) /1: 2, 0, 0, 0, -8/3", "DLMF 4.33.3"},
+    {"1 + tanh(x^9) + sin(x^8) + exp(x^7) + 1/(1 + x^6)", 4, "1 x^(0) /1: 3, 0, 0, 0", "length below the gap"},
     {"tan(x + x^2)", 4, "1 x^(1) /1: 1, 1, 1/3, 1", "DLMF 4.19.3, exact rational recomputation"},
     {"atan(x)", 6, "1 x^(1) /1: 1, 0, -1/3, 0, 1/5, 0", "DLMF 4.24.3"},
     {"asin(x)", 6, "1 x^(1) /1: 1, 0, 1/6, 0, 3/40, 0", "DLMF 4.24.1"},
@@ -528,6 +529,8 @@ static const struct refusal {
     {"E1(-1 + x)", "positive", ERROR_UNSUITABLE},
     {"im(z*x)", "real", ERROR_UNSUITABLE},
     {"1/(sin(x)^2 + cos(x)^2 - 1)", "could not be decided", ERROR_UNDECIDED},
+    {"Gamma(1/3)*Gamma(2/3) - 2*pi/sqrt(3) + x", "could not be decided", ERROR_UNDECIDED}, /* zero, DLMF 5.5.3 */
+    {"x/(Gamma(1/3)*Gamma(2/3) - 2*pi/sqrt(3) + x)", "could not be decided", ERROR_UNDECIDED},
     {"sin(1 + x)^2 + cos(1 + x)^2 + x", "could not be decided", ERROR_UNDECIDED},
     {"log(x)*(sin(x)^2 + cos(x)^2 - 1) + x", "could not be decided", ERROR_UNDECIDED},
 };
