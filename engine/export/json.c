@@ -79,7 +79,8 @@ static void add_remainder(tw_engine *e, text *out, const expansion *a, const rem
     text_addf(out, ", \"terms\": %ld, \"bound\": ", (long)r->terms);
     json_expr(e, out, r->bound);
     text_add(out, ", \"from\": ");
-    json_expr(e, out, r->from);
+    if (r->bound && !r->from) json_string(out, a->small ? "inf" : "0"); /* for all values */
+    else json_expr(e, out, r->from);
     text_add(out, ", \"source\": ");
     json_string(out, r->source);
     if (r->reason) {
