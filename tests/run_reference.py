@@ -24,6 +24,12 @@ score = Score()
 cases = json.load(open(os.path.join(HERE, "tests", "reference", "cases.json")))["cases"]
 
 
+def doubt(want):
+    """The reference values come from a quadrature with an absolute tolerance near 1e-76: tiny ones have fewer than 40 digits
+    (4*E_3(120) of p-log-end, DLMF 8.19.1, shows it in the 23rd)."""
+    return mpf(10) ** -38 * abs(want) + mpf(10) ** -75
+
+
 def numbers(at):
     return {k: value(v) for k, v in at.items()}
 
@@ -90,7 +96,7 @@ def check_bound(case, made):
             continue
         kept = sum(t[2] for c in made["contributions"] if c["dominance"] == "dominant" for t in terms(c, at, "s")[:r["terms"]])
         error = abs(value(v["value"], **{}) - kept)
-        score.check(error <= value(r["bound"], **at) * (1 + mpf(10) ** -12) + mpf(10) ** -38 * abs(kept),
+        score.check(error <= value(r["bound"], **at) * (1 + mpf(10) ** -12) + doubt(kept),
                     "%s: error %s above the %s bound of %s at %s" % (case["id"], mpmath.nstr(error, 5), r["label"], r["bound"], v["at"]))
 
 
@@ -100,7 +106,7 @@ def check_numbers(case, results):
     for k, r in enumerate(shown):
         want = mpf(case["values"][k // 2]["value"])
         mid, radius = mpf(r["re"]["mid"]), mpf(r["re"]["radius"])
-        good = abs(mid - want) <= radius + mpf(10) ** -38 * abs(want) and r["label"] in ("proved", "exact")
+        good = abs(mid - want) <= radius + doubt(want) and r["label"] in ("proved", "exact")
         score.check(good, "%s: %s +- %s (%s) against %s" % (case["id"], r["re"]["mid"], r["re"]["radius"], r["label"], want))
         if r["way"] == "quadrature":
             score.check(radius <= mpf(10) ** -30 * abs(want), case["id"] + ": 30 digits by quadrature")

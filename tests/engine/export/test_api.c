@@ -38,7 +38,7 @@ static void test_whole_way(void **state)
     assert_int_equal(tw_evaluate(e, &v, a, &s, &at, 1, 0), 0);
     assert_string_equal(v.label, "proved");
     assert_true(strtod(v.radius, NULL) < 1e-9);
-    assert_true(strtod(v.mid, NULL) > 0.0498776545 && strtod(v.mid, NULL) < 0.0498776547);
+    assert_true(strtod(v.mid, NULL) > 0.0498776548 && strtod(v.mid, NULL) < 0.0498776549);
     tw_value_clear(&v);
     assert_int_equal(tw_quadrature(e, &v, f, &s, &at, 1, 30), 0);
     assert_memory_equal(v.mid, "0.04987765484230911442447192040", 31);
