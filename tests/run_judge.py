@@ -51,20 +51,23 @@ def integral():
 
 
 def judge(words, s, denominator):
-    """Value and error estimate: x = start + u^d/s takes the power at the end away, panels follow the decay."""
+    """Value and error estimate: x = start + u^d/s takes the power at the end away, panels follow the decay. mpmath's tolerance
+    is absolute, so exp(-s*start) is taken out first."""
     mp.dps = 40
     start, end, body, _ = split_integral(words)
     lo, hi = value(start), value(end)
+    scale = mpmath.exp(s * lo)
     code = {}
 
     def f(u):
         x = lo + u**denominator / s
-        return value(body, x=x, s=s) * denominator * u ** (denominator - 1) / s
+        return value(body, x=x, s=s) * scale * denominator * u ** (denominator - 1) / s
 
     last = (hi - lo) * s if hi != mpmath.inf else mpf(150)
     d = mpf(1) / denominator
     points = [mpf(0)] + [p**d for p in (0.05, 0.3, 1, 3, 8, 20, 50, 100) if p < last] + [last**d]
-    return mpmath.quad(f, points, error=True)
+    got, error = mpmath.quad(f, points, error=True)
+    return got / scale, error / scale
 
 
 counted = 0
