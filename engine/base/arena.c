@@ -1,5 +1,5 @@
-/* Memory that is given piece by piece and taken back all at once, or down to a mark. Knows nothing of what lies in it. Its
- * one idea: a chain of blocks, the newest first, of which only the newest has room. */
+/* Memory that is given piece by piece and taken back all at once, or down to a mark. Knows nothing of what lies in it.
+ * Its one idea: a chain of blocks, the newest first, of which only the newest has room. */
 #include "engine/base/arena.h"
 
 #include <stdalign.h>

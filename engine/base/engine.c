@@ -1,5 +1,5 @@
-/* Errors and the budget of an engine. Knows no mathematics. Its one idea: the first error stays until it is forgiven, so
- * whoever finds a fault says it in its own words and everybody else only passes the status on. */
+/* Errors and the budget of an engine. Knows no mathematics. Its one idea: the first error stays until it is forgiven,
+ * so whoever finds a fault says it in its own words and everybody else only passes the status on. */
 #include "engine/base/engine.h"
 
 #include <stdarg.h>

@@ -1,7 +1,8 @@
 /* The engine's state and how it fails. One tw_engine holds everything: arena, interned expressions, facts, the error of
  * the last failed call, limits. Two engines can live side by side. This room knows no mathematics.
  *
- * Whoever finds an error calls engine_fail() once and returns its value; everybody else cleans up and passes the status on. */
+ * Whoever finds an error calls engine_fail() once and returns its value; everybody else cleans up and passes the
+ * status on. */
 #ifndef TW_BASE_ENGINE_H
 #define TW_BASE_ENGINE_H
 
@@ -66,8 +67,8 @@ struct tw_engine {
     FILE *trace;                         /* developers' dump of stages; NULL: off */
 };
 
-/* Sets kind and words (printf format) and returns TW_ERROR. The first error stays: a second call before engine_forgive()
- * changes nothing. */
+/* Sets kind and words (printf format) and returns TW_ERROR. The first error stays: a second call before
+ * engine_forgive() changes nothing. */
 tw_status engine_fail(tw_engine *e, error_kind kind, const char *format, ...) __attribute__((format(printf, 3, 4)));
 
 /* Forgets the error. The caller that handles a failure calls this. */
@@ -79,9 +80,9 @@ const char *error_kind_word(error_kind kind);
 /* Gives the host a sign of life; cheap when nobody listens. */
 void engine_progress(tw_engine *e, const char *words);
 
-/* The edge: runs run(host) and turns an abort of FLINT on this thread (out of memory, ...) into an error of kind MEMORY or
- * INTERNAL. FLINT objects alive at the jump are lost, so sizes and divisors are checked before FLINT sees them.
- * May be nested; the innermost edge catches. */
+/* The edge: runs run(host) and turns an abort of FLINT on this thread (out of memory, ...) into an error of kind
+ * MEMORY or INTERNAL. FLINT objects alive at the jump are lost, so sizes and divisors are checked before FLINT sees
+ * them. May be nested; the innermost edge catches. */
 tw_status engine_protect(tw_engine *e, tw_status (*run)(void *host), void *host);
 
 /* To be asked in every loop that can run long: false, with the error set, when the host interrupted, the deadline has

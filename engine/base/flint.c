@@ -1,7 +1,7 @@
-/* The edge: the one place where a failure that cannot be returned (memory is out, FLINT gives up) becomes an error value.
- * Knows no mathematics. Its one idea: engine_protect() leaves a jump buffer on a chain of this thread, and both FLINT's
- * process-wide abort hook and base_alloc() jump to the innermost one. What was on the engine's scratch stack is taken back;
- * FLINT objects alive at the jump are lost, so sizes and divisors are checked before FLINT sees them. */
+/* The edge: the one place where a failure that cannot be returned (memory is out, FLINT gives up) becomes an error
+ * value. Knows no mathematics. Its one idea: engine_protect() leaves a jump buffer on a chain of this thread, and both
+ * FLINT's process-wide abort hook and base_alloc() jump to the innermost one. What was on the engine's scratch stack
+ * is taken back; FLINT objects alive at the jump are lost, so sizes and divisors are checked before FLINT sees them. */
 #include "engine/base/flint.h"
 
 #include <pthread.h>

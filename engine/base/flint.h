@@ -2,13 +2,13 @@
  * separate libraries; from FLINT 3 on they are one. Every other file includes this header and no FLINT header.
  *
  * FLINT reports trouble it cannot return (out of memory, a division by zero that nobody checked) through a process-wide
- * abort hook. flint.c installs one that jumps to the edge that engine_protect() has set up on this thread. The host's GMP
- * allocators are never replaced. */
+ * abort hook. flint.c installs one that jumps to the edge that engine_protect() has set up on this thread. The host's
+ * GMP allocators are never replaced. */
 #ifndef TW_BASE_FLINT_H
 #define TW_BASE_FLINT_H
 
-/* FLINT's numbers are arrays of one element; where such a member stands first in a struct, gcc 12 and 13 take its size for that
- * of its own first member and warn of reads beyond it. */
+/* FLINT's numbers are arrays of one element; where such a member stands first in a struct, gcc 12 and 13 take its size
+ * for that of its own first member and warn of reads beyond it. */
 #if defined(__GNUC__) && !defined(__clang__)
 #pragma GCC diagnostic ignored "-Wstringop-overread"
 #pragma GCC diagnostic ignored "-Wstringop-overflow"

@@ -1,5 +1,5 @@
-/* A text that grows, for printers. Knows nothing of what is printed. The bytes are always NUL-terminated, also before the
- * first addition, so they can be shown at any time. */
+/* A text that grows, for printers. Knows nothing of what is printed. The bytes are always NUL-terminated, also before
+ * the first addition, so they can be shown at any time. */
 #include "engine/base/text.h"
 
 #include <stdarg.h>

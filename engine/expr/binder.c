@@ -1,7 +1,7 @@
-/* Binders and every replacement of leaves. A bound variable is a de Bruijn index inside its binder: the number of binders
- * between it and its own. Knows nothing of what integrals mean. Its one idea: substitution, opening a binder, closing one
- * and shifting are the same walk with another rule for the leaves, memoised by node and level, so shared trees stay
- * linear. */
+/* Binders and every replacement of leaves. A bound variable is a de Bruijn index inside its binder: the number of
+ * binders between it and its own. Knows nothing of what integrals mean. Its one idea: substitution, opening a binder,
+ * closing one and shifting are the same walk with another rule for the leaves, memoised by node and level, so shared
+ * trees stay linear. */
 #include "engine/expr/node.h"
 
 #include <string.h>
@@ -41,7 +41,8 @@ static expr *walk_bound(const walk *w, expr *a, uint32_t level)
 {
     const uint32_t index = a->is.index;
     switch (w->mode) {
-    case WALK_OPEN: return index == level ? node_shift(w->engine, w->values[0], level) : node_bound(w->engine, index - 1);
+    case WALK_OPEN:
+        return index == level ? node_shift(w->engine, w->values[0], level) : node_bound(w->engine, index - 1);
     case WALK_CLOSE: return node_bound(w->engine, index + 1);
     case WALK_SHIFT: return node_bound(w->engine, index + w->by);
     default: return a;
@@ -133,7 +134,8 @@ static expr *body_close(tw_engine *e, expr *variable, expr *body)
         engine_fail(e, ERROR_VALUE, "the variable of an integral, sum or root must be a name");
         return NULL;
     }
-    walk w = {.engine = e, .mode = WALK_CLOSE, .symbols = &variable, .count = 1, .names = variable->names, .by_level = true};
+    walk w = {.engine = e, .mode = WALK_CLOSE, .symbols = &variable, .count = 1, .names = variable->names,
+        .by_level = true};
     return walk_run(&w, body);
 }
 

@@ -1,5 +1,5 @@
-/* Functions at exact arguments: elementary ones. Knows only values and reductions that are true for all complex arguments on
- * the principal branch (DLMF chapter 4); the higher functions are in special.c. */
+/* Functions at exact arguments: elementary ones. Knows only values and reductions that are true for all complex
+ * arguments on the principal branch (DLMF chapter 4); the higher functions are in special.c. */
 #include "engine/expr/exact.h"
 
 #include <stdlib.h>
@@ -162,7 +162,8 @@ static bool log_of_positive(tw_engine *e, const fmpq_t q, expr **value)
     if (!fmpz_is_one(fmpq_denref(q))) {
         slong below = perfect_power(fmpq_denref(root), fmpq_denref(q));
         slong common = (slong)n_gcd((ulong)k, (ulong)below);
-        fmpz_pow_ui(fmpq_numref(root), fraction ? fmpq_numref(q) : fmpq_numref(root), fraction ? 1 : (ulong)(k / common));
+        fmpz_pow_ui(fmpq_numref(root), fraction ? fmpq_numref(q) : fmpq_numref(root),
+            fraction ? 1 : (ulong)(k / common));
         fmpz_pow_ui(fmpq_denref(root), fmpq_denref(root), (ulong)(below / common));
         k = common;
     }
@@ -345,7 +346,8 @@ static bool exact_parts(tw_engine *e, function_id f, expr *a, expr **value)
         if (f == FUNCTION_ARG) {
             if (!expr_is_positive_constant(a) && !(a->kind == EXPR_NUMBER && fmpq_sgn(&a->is.number) < 0))
                 return false;
-            return decide_value(value, expr_is_positive_constant(a) ? expr_int(e, 0) : expr_constant_of(e, CONSTANT_PI));
+            const bool positive = expr_is_positive_constant(a);
+            return decide_value(value, positive ? expr_int(e, 0) : expr_constant_of(e, CONSTANT_PI));
         }
         return decide_value(value, f == FUNCTION_IM ? expr_int(e, 0) : a);
     }
@@ -439,7 +441,8 @@ expr *expr_call(tw_engine *e, function_id f, expr *const *args, size_t n)
         if (!args[k])
             return NULL;
     if (f >= FUNCTION_COUNT || n < (size_t)function_fewest(f) || n > (size_t)function_most(f)) {
-        engine_fail(e, ERROR_VALUE, "%s does not take %zu arguments", f < FUNCTION_COUNT ? function_name(f) : "this", n);
+        const char *name = f < FUNCTION_COUNT ? function_name(f) : "this";
+        engine_fail(e, ERROR_VALUE, "%s does not take %zu arguments", name, n);
         return NULL;
     }
     const arena_place mark = arena_mark(&e->scratch);

@@ -1,6 +1,7 @@
-/* Derivatives. Knows one rule a function (a column of functions.def) and how to go under binders. Its one idea: the walk is
- * memoised by node, so a shared tree has a shared derivative. Differentiation under an integral's sign is formal; who uses
- * it answers for its conditions. Names are real unless declared complex, which is what abs, re and the like rest on. */
+/* Derivatives. Knows one rule a function (a column of functions.def) and how to go under binders. Its one idea: the
+ * walk is memoised by node, so a shared tree has a shared derivative. Differentiation under an integral's sign is
+ * formal; who uses it answers for its conditions. Names are real unless declared complex, which is what abs, re and
+ * the like rest on. */
 #include "engine/expr/node.h"
 
 #include <string.h>
@@ -207,7 +208,8 @@ RULE(beta)
 {
     tw_engine *e = w->engine;
     (void)n;
-    expr *psi = expr_call1(e, FUNCTION_PSI, args[k]), *psi_sum = expr_call1(e, FUNCTION_PSI, expr_add(e, args[0], args[1]));
+    expr *psi = expr_call1(e, FUNCTION_PSI, args[k]);
+    expr *psi_sum = expr_call1(e, FUNCTION_PSI, expr_add(e, args[0], args[1]));
     expr *const parts[3] = {d, expr_call(e, FUNCTION_BETA, args, 2), expr_sub(e, psi, psi_sum)};
     return expr_product(e, parts, 3);
 }
@@ -268,7 +270,8 @@ static expr *airy_prime(tw_engine *e, bool bi, expr *x)
     expr *j_up = bessel_third(e, FUNCTION_BESSEL_J, 2, left), *j_down = bessel_third(e, FUNCTION_BESSEL_J, -2, left);
     expr *values[2], *at_zero = expr_call1(e, FUNCTION_GAMMA, expr_frac(e, 1, 3));
     if (bi) {
-        expr *both = expr_add(e, bessel_third(e, FUNCTION_BESSEL_I, 2, right), bessel_third(e, FUNCTION_BESSEL_I, -2, right));
+        expr *i_up = bessel_third(e, FUNCTION_BESSEL_I, 2, right), *i_down = bessel_third(e, FUNCTION_BESSEL_I, -2, right);
+        expr *both = expr_add(e, i_up, i_down);
         values[0] = expr_mul(e, expr_div(e, x, root), both);
         values[1] = expr_mul(e, expr_div(e, minus, root), expr_add(e, j_down, j_up));
         at_zero = expr_div(e, power(e, expr_int(e, 3), 1, 6), at_zero);
@@ -278,7 +281,8 @@ static expr *airy_prime(tw_engine *e, bool bi, expr *x)
         values[1] = expr_mul(e, expr_div(e, minus, expr_int(e, 3)), expr_sub(e, j_up, j_down));
         at_zero = expr_neg(e, expr_div(e, power(e, expr_int(e, 3), -1, 3), at_zero));
     }
-    expr *const conditions[2] = {expr_relation_of(e, RELATION_LESS, zero, x), expr_relation_of(e, RELATION_LESS, x, zero)};
+    expr *const conditions[2] = {expr_relation_of(e, RELATION_LESS, zero, x),
+                                 expr_relation_of(e, RELATION_LESS, x, zero)};
     return expr_piecewise(e, conditions, values, 2, at_zero);
 }
 
@@ -387,7 +391,8 @@ static expr *derive_end(derivation_walk *w, expr *a, expr *end, slong sign)
     return expr_product(e, parts, 3);
 }
 
-/* The integral of the derivative, and what the two outer ends bring in; the inner points of a contour may move freely. */
+/* The integral of the derivative, and what the two outer ends bring in; the inner points of a contour may
+ * move freely. */
 static expr *derive_integral(derivation_walk *w, expr *a)
 {
     tw_engine *e = w->engine;

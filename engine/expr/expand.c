@@ -1,6 +1,7 @@
-/* Multiplying out: products over sums, and natural powers of sums. Arguments of functions, denominators and what stands under
- * binders stay as they are. Its one idea: after each factor like terms are collected, so intermediate results stay as small
- * as the sum allows; a limit on the number of terms keeps a careless power from eating the memory. */
+/* Multiplying out: products over sums, and natural powers of sums. Arguments of functions, denominators and what
+ * stands under binders stay as they are. Its one idea: after each factor like terms are collected, so intermediate
+ * results stay as small as the sum allows; a limit on the number of terms keeps a careless power from eating the
+ * memory. */
 #include "engine/expr/node.h"
 
 #include <string.h>

@@ -1,6 +1,6 @@
 /* The expression: an immutable node, interned, so that equal expressions are equal pointers. Nodes live as long as the
- * engine. Sums and products are flat, sorted, with exact rational coefficients collected; nothing is expanded or factored.
- * Bound variables are nameless inside (de Bruijn indices) and get their names back when printed or opened.
+ * engine. Sums and products are flat, sorted, with exact rational coefficients collected; nothing is expanded or
+ * factored. Bound variables are nameless inside (de Bruijn indices) and get their names back when printed or opened.
  *
  * Every constructor takes NULL for an argument and then returns NULL, so a chain of constructors is checked once at its
  * end: NULL means that the engine's error is set (too deep, a number too large, division by zero, out of budget).
@@ -8,7 +8,8 @@
  * Canonical form, on top of flat and sorted (what the constructors guarantee):
  *   - 0*x = 0 and x^0 = 1 (as formal rules: generic values), x^1 = x, 1^x = 1; numbers folded exactly;
  *   - like terms collected: 2*x + x = 3*x; like factors collected: x^a * x^b = x^(a+b);
- *   - (x^a)^b = x^(a*b) and (x*y)^b = x^b * y^b only where true on the principal branch for all values: b an integer, or
+ *   - (x^a)^b = x^(a*b) and (x*y)^b = x^b * y^b only where true on the principal branch for all values: b an integer,
+ * or
  *     the factor a positive number;  sqrt(u) is u^(1/2), 1/u is u^-1, n! is Gamma(n + 1), -u is (-1)*u;
  *   - rational powers of positive rationals are reduced: 8^(1/3) = 2, 12^(1/2) = 2*3^(1/2), (1/2)^(-1/2) = 2^(1/2);
  *     i^n and integer powers of i folded; a number times a sum is not distributed, except -1 and other numbers over
@@ -48,7 +49,7 @@ typedef enum expr_constant { CONSTANT_PI, CONSTANT_I, CONSTANT_INF, CONSTANT_EUL
 
 typedef enum expr_relation {
     RELATION_LESS, RELATION_LESS_EQUAL, RELATION_EQUAL, RELATION_NOT_EQUAL, /* > and >= are turned round */
-    RELATION_INTEGER, RELATION_REAL, RELATION_COMPLEX                      /* of the left side; right is NULL-free: equal left */
+    RELATION_INTEGER, RELATION_REAL, RELATION_COMPLEX                      /* of the left side; the right side equals it */
 } expr_relation;
 
 typedef struct expr expr_node;
@@ -89,7 +90,7 @@ expr *expr_fmpz(tw_engine *e, const fmpz_t n);
 expr *expr_fmpq(tw_engine *e, const fmpq_t q);
 expr *expr_constant_of(tw_engine *e, expr_constant c);
 expr *expr_symbol(tw_engine *e, const char *name);
-expr *expr_fresh(tw_engine *e, const char *hint);              /* a new symbol unlike any other; prints as hint (made distinct) */
+expr *expr_fresh(tw_engine *e, const char *hint);            /* a new symbol unlike any other; prints as hint or hint1 ... */
 expr *expr_sum(tw_engine *e, expr *const *terms, size_t n);    /* n >= 0 */
 expr *expr_product(tw_engine *e, expr *const *factors, size_t n);
 expr *expr_add(tw_engine *e, expr *a, expr *b);
@@ -140,15 +141,19 @@ void expr_as_power(tw_engine *e, expr *a, expr **base, expr **exponent);
 void expr_as_coefficient(tw_engine *e, expr *a, fmpq_t coefficient, expr **rest);
 
 /* ---- rewriting by nature ---- */
-expr *expr_substitute(tw_engine *e, expr *a, expr *symbol, expr *value);                                 /* capture-free */
-expr *expr_substitute_all(tw_engine *e, expr *a, expr *const *symbols, expr *const *values, size_t n);   /* simultaneous */
-expr *expr_derivative(tw_engine *e, expr *a, expr *symbol);   /* also under integral signs (ends that depend on it included) */
-expr *expr_expand(tw_engine *e, expr *a);                     /* products over sums and small integer powers multiplied out */
-/* Normal form for the methods, valid for x > 0 symbols in `positive`: exponentials merged into one exp, (c*x)^r split for
- * positive c and x, log of products of positives split, powers of x collected. positive may be NULL when n is 0. */
+/* Substitution is capture-free; of several symbols it is simultaneous. */
+expr *expr_substitute(tw_engine *e, expr *a, expr *symbol, expr *value);
+expr *expr_substitute_all(tw_engine *e, expr *a, expr *const *symbols, expr *const *values, size_t n);
+/* Also under integral signs, ends that depend on the symbol included. ERROR_VALUE where a derivative has no name in the
+ * language: of a Bessel function in its order, of zeta, ... */
+expr *expr_derivative(tw_engine *e, expr *a, expr *symbol);
+/* Products over sums and natural powers of sums multiplied out; not in arguments, denominators or under binders. */
+expr *expr_expand(tw_engine *e, expr *a);
+/* Normal form for the methods, valid for x > 0 symbols in `positive`: exponentials merged into one exp, (c*x)^r split
+ * for positive c and x, log of products of positives split, powers of x collected. positive may be NULL when n is 0. */
 expr *expr_normal(tw_engine *e, expr *a, expr *const *positive, size_t n);
-/* a as a polynomial in symbol: coefficients (free of symbol) into a fresh array of *degree + 1 (free() it). TW_ERROR without
- * an engine error set when a is no polynomial of degree <= limit. */
+/* a as a polynomial in symbol: coefficients (free of symbol) into a fresh array of *degree + 1 (free() it). TW_ERROR
+ * without an engine error set when a is no polynomial of degree <= limit. */
 tw_status expr_polynomial(tw_engine *e, expr *a, expr *symbol, slong limit, expr ***coefficients, slong *degree);
 
 /* ---- printing; what is printed parses back to the same expression ---- */

@@ -1,6 +1,6 @@
-/* Facts about symbols: what was given, what was granted, which parameter is large. Knows intervals with rational ends and
- * nothing deeper; conditions are decided in engine/ball. Its one idea: when a fact is stored, the bound that it sets for a
- * symbol alone is worked out once, so that questions only compare rational numbers. */
+/* Facts about symbols: what was given, what was granted, which parameter is large. Knows intervals with rational ends
+ * and nothing deeper; conditions are decided in engine/ball. Its one idea: when a fact is stored, the bound that it
+ * sets for a symbol alone is worked out once, so that questions only compare rational numbers. */
 #include "engine/expr/facts.h"
 
 #include <stdlib.h>
@@ -178,7 +178,8 @@ static expr *only_symbol(tw_engine *e, expr *condition)
     return symbol;
 }
 
-/* Where the linear f vanishes, and whether it rises there; NULL with no error when f is not linear with a rational slope. */
+/* Where the linear f vanishes, and whether it rises there; NULL with no error when f is not linear with a rational
+ * slope. */
 static expr *linear_root(tw_engine *e, expr *f, expr *symbol, bool *rising)
 {
     expr **c;
@@ -304,7 +305,8 @@ static bool relations_exclude(expr *a, expr *b)
     const bool same = a->args[0] == b->args[0] && a->args[1] == b->args[1];
     const bool turned = a->args[0] == b->args[1] && a->args[1] == b->args[0];
     if (r >= RELATION_INTEGER || q >= RELATION_INTEGER) {
-        const bool narrow_r = r == RELATION_INTEGER || r == RELATION_REAL, narrow_q = q == RELATION_INTEGER || q == RELATION_REAL;
+        const bool narrow_r = r == RELATION_INTEGER || r == RELATION_REAL;
+        const bool narrow_q = q == RELATION_INTEGER || q == RELATION_REAL;
         return a->args[0] == b->args[0] && ((r == RELATION_COMPLEX && narrow_q) || (q == RELATION_COMPLEX && narrow_r));
     }
     if (turned && (r == RELATION_LESS || q == RELATION_LESS) && r <= RELATION_LESS_EQUAL && q <= RELATION_LESS_EQUAL)

@@ -1,6 +1,6 @@
 /* Facts about symbols: what the user declared (`given`), took as true (`grant`), and which parameter is large or small.
- * This room only stores them and answers from them by simple reasoning (intervals with rational ends); deciding a condition
- * with ball arithmetic is engine/ball/decide.h. */
+ * This room only stores them and answers from them by simple reasoning (intervals with rational ends); deciding a
+ * condition with ball arithmetic is engine/ball/decide.h. */
 #ifndef TW_EXPR_FACTS_H
 #define TW_EXPR_FACTS_H
 
@@ -12,13 +12,14 @@ typedef enum answer { ANSWER_NO = -1, ANSWER_UNKNOWN = 0, ANSWER_YES = 1 } answe
 typedef enum condition_label { CONDITION_GIVEN, CONDITION_PROVED, CONDITION_GRANTED, CONDITION_OPEN } condition_label;
 const char *condition_label_word(condition_label l);
 
-typedef enum large_kind { LARGE_NONE, LARGE_POSITIVE, LARGE_INTEGER, LARGE_SMALL } large_kind; /* s -> inf; n integer; h -> 0+ */
+/* None; s -> inf; n -> inf through the integers; h -> 0+ */
+typedef enum large_kind { LARGE_NONE, LARGE_POSITIVE, LARGE_INTEGER, LARGE_SMALL } large_kind;
 
 void facts_init(tw_engine *e);
 void facts_clear(tw_engine *e);
 
-/* A copy of all facts, and the way back to it: what was known since is forgotten. facts_restore and facts_discard take the
- * copy over. */
+/* A copy of all facts, and the way back to it: what was known since is forgotten. facts_restore and facts_discard take
+ * the copy over. */
 struct facts *facts_copy(tw_engine *e);
 void facts_restore(tw_engine *e, struct facts *copy);
 void facts_discard(struct facts *copy);

@@ -1,12 +1,12 @@
-/* The table of functions. functions.def holds one row a function; each room takes its own columns of it, so a new function
- * is one entry in one place (and the C functions that its row names). */
+/* The table of functions. functions.def holds one row a function; each room takes its own columns of it, so a new
+ * function is one entry in one place (and the C functions that its row names). */
 #ifndef TW_EXPR_FUNCTION_H
 #define TW_EXPR_FUNCTION_H
 
 #include <stddef.h>
 
-/* Columns: id, name in the language, fewest and most arguments, derivative rule, ball, jet, growth, summary for help. See
- * functions.def. */
+/* Columns: id, name in the language, fewest and most arguments, derivative rule, ball, jet, growth, summary for help.
+ * See functions.def. */
 typedef enum function_id {
 #define FUNCTION(id, name, fewest, most, derivative, ball, jet, growth, summary) FUNCTION_##id,
 #include "engine/expr/functions.def"

@@ -1,7 +1,7 @@
 /* The normal form that methods start from, valid while the named symbols are positive (and under the given facts): one
- * exponential with its exponent expanded and collected in those symbols, powers and logarithms of positive factors split.
- * Each rewriting is an identity there: log(c*z) = log(c) + log(z), (c*z)^v = c^v * z^v and (c^u)^v = c^(u*v) for c > 0 and
- * real u, exp(c*log(u)) = u^c. */
+ * exponential with its exponent expanded and collected in those symbols, powers and logarithms of positive factors
+ * split. Each rewriting is an identity there: log(c*z) = log(c) + log(z), (c*z)^v = c^v * z^v and (c^u)^v = c^(u*v)
+ * for c > 0 and real u, exp(c*log(u)) = u^c. */
 #include "engine/expr/node.h"
 
 #include <stdlib.h>
@@ -163,7 +163,8 @@ static expr *merge_exponentials(normal_walk *w, expr *a)
     tw_engine *e = w->engine;
     if (!a || a->kind != EXPR_PRODUCT)
         return a;
-    expr **exponents = engine_scratch(e, a->count, sizeof *exponents), **others = engine_scratch(e, a->count, sizeof *others);
+    expr **exponents = engine_scratch(e, a->count, sizeof *exponents);
+    expr **others = engine_scratch(e, a->count, sizeof *others);
     size_t n = 0, m = 0;
     for (size_t k = 0; k < a->count; k++) {
         if (expr_is_call(a->args[k], FUNCTION_EXP))
@@ -192,7 +193,8 @@ static expr *normal_power(normal_walk *w, expr *base, expr *exponent)
         return normal_power(w, base->args[0], expr_mul(e, base->args[1], exponent));
     if (base->kind != EXPR_PRODUCT)
         return expr_pow(e, base, exponent);
-    expr **outside = engine_scratch(e, base->count + 1, sizeof *outside), **inside = engine_scratch(e, base->count, sizeof *inside);
+    expr **outside = engine_scratch(e, base->count + 1, sizeof *outside);
+    expr **inside = engine_scratch(e, base->count, sizeof *inside);
     size_t out = 0, in = 0;
     for (size_t k = 0; k < base->count; k++) {
         if (is_positive(w, base->args[k]))

@@ -1,7 +1,8 @@
-/* The canonical total order of expressions. Knows nothing of meaning. Its one idea: a product is compared as the list of its
- * factors, a power as its base and then its exponent, a sum as the list of its terms, and a rational coefficient only when
- * all else is equal; so like terms and like factors stand side by side after sorting. Equal pointers are equal, so at each
- * level only the first pair that differs is entered: shared trees cost no more than their depth. */
+/* The canonical total order of expressions. Knows nothing of meaning. Its one idea: a product is compared as the list
+ * of its factors, a power as its base and then its exponent, a sum as the list of its terms, and a rational
+ * coefficient only when all else is equal; so like terms and like factors stand side by side after sorting. Equal
+ * pointers are equal, so at each level only the first pair that differs is entered: shared trees cost no more than
+ * their depth. */
 #include "engine/expr/node.h"
 
 #include <string.h>
@@ -58,7 +59,8 @@ static int order_products(expr *a, expr *b)
     int order = order_lists(factors_a, m, factors_b, n);
     if (order)
         return order;
-    expr *const number_a = a->kind == EXPR_PRODUCT ? a->args[0] : a, *const number_b = b->kind == EXPR_PRODUCT ? b->args[0] : b;
+    expr *const number_a = a->kind == EXPR_PRODUCT ? a->args[0] : a;
+    expr *const number_b = b->kind == EXPR_PRODUCT ? b->args[0] : b;
     const bool bare_a = number_a->kind != EXPR_NUMBER, bare_b = number_b->kind != EXPR_NUMBER;
     return order_number_one(number_a, bare_a, number_b, bare_b);
 }

@@ -1,6 +1,6 @@
-/* An expression read as a polynomial in one symbol. Knows sums, products and natural powers; coefficients are expressions
- * free of the symbol. Its one idea: polynomials are lists of the terms that are there, rising in degree, computed bottom-up
- * and remembered by node. */
+/* An expression read as a polynomial in one symbol. Knows sums, products and natural powers; coefficients are
+ * expressions free of the symbol. Its one idea: polynomials are lists of the terms that are there, rising in degree,
+ * computed bottom-up and remembered by node. */
 #include "engine/expr/node.h"
 
 #include <stdlib.h>

@@ -1,7 +1,7 @@
-/* An expression as text of the language, in a mathematician's order; what is printed parses back to the same expression.
- * Knows the grammar's precedences (language.md), nothing of lines or terminals. Its one idea: every node is printed at a
- * level, and a node that binds less tightly than the level asks for gets brackets. Canonical form is only dressed up:
- * 1/2*2^(1/2) is shown as sqrt(2)/2, -1*x + y as y - x. */
+/* An expression as text of the language, in a mathematician's order; what is printed parses back to the same
+ * expression. Knows the grammar's precedences (language.md), nothing of lines or terminals. Its one idea: every node
+ * is printed at a level, and a node that binds less tightly than the level asks for gets brackets. Canonical form is
+ * only dressed up: 1/2*2^(1/2) is shown as sqrt(2)/2, -1*x + y as y - x. */
 #include "engine/expr/node.h"
 
 #include <stdio.h>
@@ -56,8 +56,8 @@ static bool name_is_bound(const printer *p, const char *name)
     return false;
 }
 
-/* hint, or hint1, hint2, ...: the first that no symbol has and no binder around. A binder's closing word must not be the
- * name of a symbol either. In scratch memory. */
+/* hint, or hint1, hint2, ...: the first that no symbol has and no binder around. A binder's closing word must not be
+ * the name of a symbol either. In scratch memory. */
 static char *name_choose(printer *p, const char *hint, expr *const *symbols, size_t n)
 {
     const size_t room = strlen(hint) + 24;
@@ -223,7 +223,8 @@ static void layout_add(printer *p, layout *l, expr *product, size_t k)
 {
     expr *a = product->args[k];
     item *new = &l->items[l->count];
-    *new = (item){.base = a->kind == EXPR_POWER ? a->args[0] : a, .exponent = a->kind == EXPR_POWER ? a->args[1] : NULL};
+    *new = (item){.base = a->kind == EXPR_POWER ? a->args[0] : a,
+        .exponent = a->kind == EXPR_POWER ? a->args[1] : NULL};
     new->below = goes_below(product, k);
     l->bar = l->bar || new->below;
     l->series = l->series || (!new->below && new->exponent && is_negative_number(new->exponent));

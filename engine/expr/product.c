@@ -1,5 +1,5 @@
-/* Canonical products: flat, sorted, like factors collected, the number first. Its one idea: each factor is a base with an
- * exponent; sorting by the base puts like factors side by side. What is collected is true for all complex values:
+/* Canonical products: flat, sorted, like factors collected, the number first. Its one idea: each factor is a base with
+ * an exponent; sorting by the base puts like factors side by side. What is collected is true for all complex values:
  * x^a * x^b = x^(a+b), exp(a*u) * exp(b*u) = exp((a+b)*u), and i is (-1)^(1/2). */
 #include "engine/expr/node.h"
 
@@ -98,8 +98,8 @@ static expr *merge_run(tw_engine *e, const factor_part *parts, size_t n)
     return expr_pow(e, parts[0].base, exponent);
 }
 
-/* Can the merged factor still meet another one? A product has to be flattened, a number joins the coefficient, a power of
- * another base and exp join theirs. */
+/* Can the merged factor still meet another one? A product has to be flattened, a number joins the coefficient, a power
+ * of another base and exp join theirs. */
 static bool is_settled(expr *merged, const factor_part *p)
 {
     switch (merged->kind) {

@@ -11,7 +11,8 @@ bool expr_is_number(expr *a)
 
 bool expr_is_int(expr *a, slong n)
 {
-    return a->kind == EXPR_NUMBER && fmpz_is_one(fmpq_denref(&a->is.number)) && fmpz_equal_si(fmpq_numref(&a->is.number), n);
+    return a->kind == EXPR_NUMBER && fmpz_is_one(fmpq_denref(&a->is.number))
+        && fmpz_equal_si(fmpq_numref(&a->is.number), n);
 }
 
 bool expr_is_zero(expr *a)
@@ -100,7 +101,8 @@ void expr_as_coefficient(tw_engine *e, expr *a, fmpq_t coefficient, expr **rest)
 
 /* ---- walks: a set of the nodes seen keeps shared trees linear ---- */
 
-/* These walks have no engine, so their memory is their own: when it runs out, all of it is freed before the edge is left. */
+/* These walks have no engine, so their memory is their own: when it runs out, all of it is freed before the edge is
+ * left. */
 typedef struct seen {
     size_t count, room;
     expr **slots;

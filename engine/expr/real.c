@@ -1,5 +1,5 @@
-/* What the form of an expression and the declarations of its names tell about its being real. Conservative: false is "not
- * known". Deciding signs and inequalities is engine/ball's. */
+/* What the form of an expression and the declarations of its names tell about its being real. Conservative: false is
+ * "not known". Deciding signs and inequalities is engine/ball's. */
 #include "engine/expr/facts.h"
 #include "engine/expr/node.h"
 
@@ -40,7 +40,8 @@ static bool is_real_call(tw_engine *e, expr *a, bool bound_real)
     case FUNCTION_RE: case FUNCTION_IM: case FUNCTION_ARG: case FUNCTION_ABS: return true;
     case FUNCTION_LOG: return is_nonnegative(e, a->args[0], bound_real);
     case FUNCTION_EXP: case FUNCTION_SIN: case FUNCTION_COS: case FUNCTION_TAN: case FUNCTION_SINH: case FUNCTION_COSH:
-    case FUNCTION_TANH: case FUNCTION_ATAN: case FUNCTION_ASINH: case FUNCTION_SIGN: case FUNCTION_MIN: case FUNCTION_MAX:
+    case FUNCTION_TANH: case FUNCTION_ATAN: case FUNCTION_ASINH: case FUNCTION_SIGN: case FUNCTION_MIN:
+    case FUNCTION_MAX:
     case FUNCTION_ERF: case FUNCTION_ERFC: case FUNCTION_GAMMA: case FUNCTION_PSI: case FUNCTION_ZETA: case FUNCTION_EI:
     case FUNCTION_AI: case FUNCTION_BI: case FUNCTION_CONJ:
         return all_real(e, a, bound_real);

@@ -164,7 +164,8 @@ static bool exact_beta(tw_engine *e, expr *a, expr *b, expr **value)
         expr *sum = expr_add(e, a, b);
         if (!sum || is_pole(sum)) /* 1/Gamma(a + b) = 0 */
             return decided(value, sum ? expr_int(e, 0) : NULL);
-        return decided(value, expr_div(e, expr_mul(e, expr_call1(e, FUNCTION_GAMMA, a), expr_call1(e, FUNCTION_GAMMA, b)),
+        return decided(value, expr_div(e, expr_mul(e, expr_call1(e, FUNCTION_GAMMA, a), expr_call1(e, FUNCTION_GAMMA,
+            b)),
                                        expr_call1(e, FUNCTION_GAMMA, sum)));
     }
     if (expr_order(a, b) <= 0)

@@ -1,5 +1,5 @@
-/* Canonical sums: flat, sorted, like terms collected, the number first. Its one idea: each term is a rational coefficient
- * times a rest; sorting by the rest puts like terms side by side, so n terms take n log n. */
+/* Canonical sums: flat, sorted, like terms collected, the number first. Its one idea: each term is a rational
+ * coefficient times a rest; sorting by the rest puts like terms side by side, so n terms take n log n. */
 #include "engine/expr/node.h"
 
 #include <stdlib.h>

@@ -1,5 +1,5 @@
-/* The table of nodes: every expression exists once, so equality is equality of pointers. Knows nothing of algebra. Its one
- * idea: a node is found by its content's hash, which is made of its children's hashes. */
+/* The table of nodes: every expression exists once, so equality is equality of pointers. Knows nothing of algebra. Its
+ * one idea: a node is found by its content's hash, which is made of its children's hashes. */
 #include "engine/expr/node.h"
 
 #include <stdlib.h>

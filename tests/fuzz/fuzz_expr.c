@@ -107,7 +107,8 @@ static void step(machine *m)
     case 22: read_polynomial(m); break;
     default:
         a = pop(m);
-        push(m, a->kind == EXPR_INTEGRAL || a->kind == EXPR_SUMMATION || a->kind == EXPR_ROOT ? expr_open(e, a, pop(m)) : a);
+        push(m, a->kind == EXPR_INTEGRAL || a->kind == EXPR_SUMMATION || a->kind == EXPR_ROOT ? expr_open(e, a,
+            pop(m)) : a);
     }
 }
 

@@ -169,7 +169,8 @@ static tw_status work(void *host)
     expr *expanded = expr_expand(e, expr_pow(e, expr_add(e, x, a), expr_int(e, 5)));
     expr **coefficients;
     slong degree;
-    if (!put || !normal || !expanded || facts_add(e, expr_relation_of(e, RELATION_LESS, expr_int(e, 0), a), CONDITION_GIVEN) != TW_OK)
+    if (!put || !normal || !expanded || facts_add(e, expr_relation_of(e, RELATION_LESS, expr_int(e, 0), a),
+        CONDITION_GIVEN) != TW_OK)
         return TW_ERROR;
     if (expr_polynomial(e, expanded, x, 5, &coefficients, &degree) != TW_OK)
         return TW_ERROR;

@@ -1,6 +1,6 @@
-/* A second, plain reading of expressions for the tests: each node evaluated by the book at one point, in 200 bits, without
- * any of the constructors' rules. Integrals over finite ranges by Gauss's formula (smooth integrands only). Also random
- * numbers with a printed seed. */
+/* A second, plain reading of expressions for the tests: each node evaluated by the book at one point, in 200 bits,
+ * without any of the constructors' rules. Integrals over finite ranges by Gauss's formula (smooth integrands only).
+ * Also random numbers with a printed seed. */
 #ifndef TW_TESTS_PLAIN_H
 #define TW_TESTS_PLAIN_H
 

@@ -1,5 +1,5 @@
-/* Derivatives against central differences in 200 bits: each function of the table, random trees, integrals and sums with
- * ends that move. */
+/* Derivatives against central differences in 200 bits: each function of the table, random trees, integrals and sums
+ * with ends that move. */
 #include "tests/engine/expr/plain.h"
 
 static tw_engine *e;
@@ -78,13 +78,15 @@ static bool agrees(expr *f, double re, double im)
 
 static void every_function_of_one(void **state)
 {
-    static const double points[][2] = {{0.3, 0}, {0.9, 0}, {1.7, 0}, {2.6, 0}, {-0.4, 0}, {-1.6, 0}, {0.4, 0.8}, {1.3, -0.6}, {-0.7, 1.1}};
+    static const double points[][2] = {{0.3, 0}, {0.9, 0}, {1.7, 0}, {2.6, 0}, {-0.4, 0}, {-1.6, 0}, {0.4, 0.8}, {1.3,
+        -0.6}, {-0.7, 1.1}};
     (void)state;
     for (int f = 0; f < FUNCTION_COUNT; f++) {
         if (function_fewest(f) != 1 || function_most(f) != 1 || f == FUNCTION_ZETA)
             continue;
         const bool real_only = f == FUNCTION_SIGN || f == FUNCTION_ABS || f == FUNCTION_RE || f == FUNCTION_IM ||
-                               f == FUNCTION_CONJ || f == FUNCTION_ARG || f == FUNCTION_EI || f == FUNCTION_AI || f == FUNCTION_BI;
+                               f == FUNCTION_CONJ || f == FUNCTION_ARG || f == FUNCTION_EI || f == FUNCTION_AI
+                                   || f == FUNCTION_BI;
         int compared = 0;
         for (size_t k = 0; k < sizeof points / sizeof *points; k++)
             if (points[k][1] == 0 || !real_only)
@@ -120,7 +122,8 @@ static void every_function_of_two(void **state)
 static void parameters_without_a_derivative_say_so(void **state)
 {
     (void)state;
-    expr *const bad[] = {call2(FUNCTION_BESSEL_K, x, y), call2(FUNCTION_GAMMA_UPPER, x, y), call2(FUNCTION_POLYGAMMA, x, y),
+    expr *const bad[] = {call2(FUNCTION_BESSEL_K, x, y), call2(FUNCTION_GAMMA_UPPER, x, y), call2(FUNCTION_POLYGAMMA,
+        x, y),
                          expr_call1(e, FUNCTION_ZETA, x), expr_summation(e, y, n(0), x, y),
                          expr_call1(e, FUNCTION_AI, expr_mul(e, x, expr_constant_of(e, CONSTANT_I)))};
     for (size_t k = 0; k < sizeof bad / sizeof *bad; k++) {
@@ -137,7 +140,8 @@ static void parameters_without_a_derivative_say_so(void **state)
 static void moduli_of_complex_values(void **state)
 {
     (void)state;
-    expr *w = expr_add(e, expr_pow(e, x, n(2)), expr_mul(e, expr_constant_of(e, CONSTANT_I), expr_call1(e, FUNCTION_SIN, x)));
+    expr *w = expr_add(e, expr_pow(e, x, n(2)), expr_mul(e, expr_constant_of(e, CONSTANT_I), expr_call1(e,
+        FUNCTION_SIN, x)));
     assert_true(agrees(expr_call1(e, FUNCTION_ABS, w), 0.8, 0));
     assert_true(agrees(expr_call1(e, FUNCTION_ARG, w), 0.8, 0));
     assert_true(agrees(expr_call1(e, FUNCTION_RE, expr_call1(e, FUNCTION_EXP, w)), 0.8, 0));
@@ -178,7 +182,8 @@ static void roots_move_with_their_polynomial(void **state)
 
 static expr *random_tree(int depth)
 {
-    static const function_id analytic[] = {FUNCTION_EXP, FUNCTION_SIN, FUNCTION_COS, FUNCTION_SINH, FUNCTION_COSH, FUNCTION_LOG,
+    static const function_id analytic[] = {FUNCTION_EXP, FUNCTION_SIN, FUNCTION_COS, FUNCTION_SINH, FUNCTION_COSH,
+        FUNCTION_LOG,
                                            FUNCTION_ATAN, FUNCTION_ASINH, FUNCTION_ERF, FUNCTION_TANH, FUNCTION_ACOS};
     if (depth == 0)
         return plain_random(2) ? x : plain_random(2) ? y : n((slong)plain_random(7) - 3);

@@ -35,7 +35,8 @@ static void reads(expr *a, const char *words)
 
 static const function_id elementary[] = {
     FUNCTION_EXP, FUNCTION_LOG, FUNCTION_SIN, FUNCTION_COS, FUNCTION_TAN, FUNCTION_SINH, FUNCTION_COSH, FUNCTION_TANH,
-    FUNCTION_ASIN, FUNCTION_ACOS, FUNCTION_ATAN, FUNCTION_ASINH, FUNCTION_ACOSH, FUNCTION_ATANH, FUNCTION_RE, FUNCTION_IM,
+    FUNCTION_ASIN, FUNCTION_ACOS, FUNCTION_ATAN, FUNCTION_ASINH, FUNCTION_ACOSH, FUNCTION_ATANH, FUNCTION_RE,
+        FUNCTION_IM,
     FUNCTION_CONJ, FUNCTION_ABS, FUNCTION_ARG, FUNCTION_ERF,
 };
 
@@ -233,7 +234,8 @@ static void binders_have_no_names(void **state)
     plain_env_clear(&v);
 }
 
-/* integral over t of (integral over u of f(t, u)), opened with a value that holds a bound variable of a third binder. */
+/* integral over t of (integral over u of f(t, u)), opened with a value that holds a bound variable of a third binder.
+ * */
 static void nested_binders_shift(void **state)
 {
     (void)state;
@@ -266,7 +268,8 @@ static void order_is_total(void **state)
         for (int b = 0; b < COUNT; b++) {
             const int order = expr_order(sample[a], sample[b]);
             assert_int_equal(order == 0, sample[a] == sample[b]);
-            assert_int_equal((order > 0) - (order < 0), -((expr_order(sample[b], sample[a]) > 0) - (expr_order(sample[b], sample[a]) < 0)));
+            assert_int_equal((order > 0) - (order < 0), -((expr_order(sample[b],
+                sample[a]) > 0) - (expr_order(sample[b], sample[a]) < 0)));
             for (int c = 0; c < COUNT; c++)
                 if (order < 0 && expr_order(sample[b], sample[c]) < 0)
                     assert_true(expr_order(sample[a], sample[c]) < 0);
@@ -343,7 +346,8 @@ static void canonical_examples(void **state)
     reads(expr_call1(e, FUNCTION_LOG, expr_call1(e, FUNCTION_EXP, x)), "log(exp(x))");
     assert_ptr_equal(expr_call1(e, FUNCTION_EXP, expr_mul(e, i, pi)), n(-1));
     assert_ptr_equal(expr_mul(e, expr_call1(e, FUNCTION_EXP, x), expr_call1(e, FUNCTION_EXP, expr_neg(e, x))), n(1));
-    assert_ptr_equal(expr_mul(e, expr_call1(e, FUNCTION_EXP, expr_sub(e, x, y)), expr_call1(e, FUNCTION_EXP, expr_sub(e, y, x))), n(1));
+    assert_ptr_equal(expr_mul(e, expr_call1(e, FUNCTION_EXP, expr_sub(e, x, y)), expr_call1(e, FUNCTION_EXP,
+        expr_sub(e, y, x))), n(1));
     reads(expr_call1(e, FUNCTION_SIN, expr_sub(e, y, x)), "-sin(x - y)");
     reads(expr_call1(e, FUNCTION_COS, expr_neg(e, x)), "cos(x)");
     assert_ptr_equal(expr_call1(e, FUNCTION_SIN, expr_neg(e, x)), expr_neg(e, expr_call1(e, FUNCTION_SIN, x)));
@@ -404,7 +408,8 @@ static void exact_values(void **state)
         for (slong a = -24; a <= 24; a++) {
             for (slong b = 1; b <= 12; b++) {
                 for (int times_pi = 0; times_pi < 3; times_pi++) {
-                    expr *unit = times_pi == 0 ? n(1) : times_pi == 1 ? pi : expr_mul(e, pi, expr_constant_of(e, CONSTANT_I));
+                    expr *unit = times_pi == 0 ? n(1) : times_pi == 1 ? pi : expr_mul(e, pi, expr_constant_of(e,
+                        CONSTANT_I));
                     expr *argument = expr_mul(e, q(a, b), unit), *call = expr_call1(e, f, argument);
                     engine_forgive(e);
                     if (!call || expr_is_call(call, f))
@@ -592,7 +597,8 @@ static void expansion_examples(void **state)
     assert_int_equal(expr_expand(e, expr_pow(e, sum, n(1000)))->count, 1001);
     assert_int_equal(expr_expand(e, expr_pow(e, expr_add(e, sum, z), n(20)))->count, 231);
     expr *root = expr_sqrt(e, sum);
-    assert_ptr_equal(expr_expand(e, expr_mul(e, root, expr_mul(e, root, z))), expr_add(e, expr_mul(e, x, z), expr_mul(e, y, z)));
+    assert_ptr_equal(expr_expand(e, expr_mul(e, root, expr_mul(e, root, z))), expr_add(e, expr_mul(e, x, z),
+        expr_mul(e, y, z)));
     fails_with(expr_expand(e, expr_pow(e, sum, n(100000000))), ERROR_VALUE);
 }
 
@@ -602,7 +608,8 @@ static void normal_examples(void **state)
     expr *s = expr_symbol(e, "s"), *sx = expr_mul(e, s, x);
     expr *kernel = expr_call1(e, FUNCTION_EXP, expr_neg(e, sx));
     expr *a = expr_product(e, (expr *const[]){kernel, expr_call1(e, FUNCTION_EXP, expr_neg(e, expr_pow(e, x, n(2)))),
-                                              expr_pow(e, expr_mul(e, expr_sqrt(e, x), expr_add(e, n(1), x)), n(-1))}, 3);
+                                              expr_pow(e, expr_mul(e, expr_sqrt(e, x), expr_add(e, n(1), x)), n(-1))},
+                                                  3);
     reads(expr_normal(e, a, &x, 1), "exp(-s*x - x^2)/(sqrt(x)*(1 + x))");
     reads(expr_normal(e, expr_call1(e, FUNCTION_LOG, expr_mul(e, n(2), x)), &x, 1), "log(2) + log(x)");
     assert_ptr_equal(expr_normal(e, expr_sqrt(e, expr_pow(e, x, n(2))), &x, 1), x);
@@ -611,7 +618,8 @@ static void normal_examples(void **state)
     assert_ptr_equal(expr_normal(e, expr_call1(e, FUNCTION_ABS, x), &x, 1), x);
     expr *shifted = expr_mul(e, kernel, expr_call1(e, FUNCTION_EXP, expr_neg(e, expr_mul(e, y, x))));
     reads(expr_normal(e, shifted, &x, 1), "exp(x*(-s - y))");
-    assert_ptr_equal(expr_normal(e, expr_call1(e, FUNCTION_EXP, expr_sub(e, expr_mul(e, y, expr_call1(e, FUNCTION_LOG, x)), x)), &x, 1),
+    assert_ptr_equal(expr_normal(e, expr_call1(e, FUNCTION_EXP, expr_sub(e, expr_mul(e, y, expr_call1(e, FUNCTION_LOG,
+        x)), x)), &x, 1),
                      expr_mul(e, expr_pow(e, x, y), expr_call1(e, FUNCTION_EXP, expr_neg(e, x))));
 }
 

@@ -1,5 +1,5 @@
-/* Printing: the manner in which a mathematician would write, and that what is printed can be typed: each text, and each of
- * many random trees, reads back as the same node. */
+/* Printing: the manner in which a mathematician would write, and that what is printed can be typed: each text, and
+ * each of many random trees, reads back as the same node. */
 #include "tests/engine/expr/plain.h"
 #include "tests/engine/method/texts.h"
 
@@ -94,7 +94,8 @@ static void binders(void **state)
     prints("sum from k = 0 to n of x^k/k!", "sum from k = 0 to n of x^k/Gamma(k + 1)");
     prints("2*(sum from k = 0 to n of (1 + k))", "2*(sum from k = 0 to n of (k + 1))");
     prints("1 - (sum from k = 1 to 3 of x^k)", "1 - (sum from k = 1 to 3 of x^k)");
-    prints("integral along inf(pi) to 0 to inf(theta) of exp(-z^2) dz", "integral along inf(pi) to 0 to inf(theta) of exp(-z^2) dz");
+    prints("integral along inf(pi) to 0 to inf(theta) of exp(-z^2) dz",
+        "integral along inf(pi) to 0 to inf(theta) of exp(-z^2) dz");
     prints("root of r^3 - r - 1 in r near 1.25", "root of r^3 - r - 1 in r near 5/4");
     prints("2*(root of r^3 - r - 1 in r near 1.25)", "2*(root of r^3 - r - 1 in r near 5/4)");
     prints("piecewise(x^2 when x < 1, 2 - x otherwise)", "piecewise(x^2 when x < 1, 2 - x otherwise)");
@@ -157,14 +158,16 @@ static expr *random_leaf(void)
     static const char *const names[] = {"x", "y", "n", "s", "nu", "dx"};
     switch (plain_random(5)) {
     case 0: return expr_frac(e, (slong)plain_random(19) - 9, 1 + (slong)plain_random(5));
-    case 1: return expr_constant_of(e, plain_random(3) == 0 ? CONSTANT_I : plain_random(2) ? CONSTANT_PI : CONSTANT_EULER);
+    case 1: return expr_constant_of(e, plain_random(3) == 0 ? CONSTANT_I : plain_random(2) ? CONSTANT_PI
+        : CONSTANT_EULER);
     default: return expr_symbol(e, names[plain_random(6)]);
     }
 }
 
 static expr *random_tree(int depth)
 {
-    static const function_id some[] = {FUNCTION_EXP, FUNCTION_LOG, FUNCTION_SIN, FUNCTION_GAMMA, FUNCTION_ABS, FUNCTION_ERFC};
+    static const function_id some[] = {FUNCTION_EXP, FUNCTION_LOG, FUNCTION_SIN, FUNCTION_GAMMA, FUNCTION_ABS,
+        FUNCTION_ERFC};
     if (depth == 0)
         return random_leaf();
     expr *a = random_tree(depth - 1), *b = random_tree(depth - 1), *x = expr_symbol(e, "x");
