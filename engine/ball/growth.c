@@ -21,6 +21,9 @@ struct growth_program {
     growth_place place;
     growth_node *nodes;
     size_t count, room;
+    slong shift;          /* x = 2^shift v, or 1/(2^shift v) when inverted; records are in v, of f(x) |dx/dv| */
+    bool inverted;
+    growth_record result;
 };
 
 void growth_bound_init(growth_bound *g)
@@ -137,6 +140,7 @@ growth_program *growth_compile(tw_engine *e, expr *f, expr *x)
     growth_program *t = base_alloc(sizeof *t);
     *t = (growth_program){.e = e, .x = x};
     growth_place_init(&t->place, e);
+    record_init(&t->result);
     size_t at;
     if (!lay_out(t, f, &at)) {
         growth_free(t);
@@ -155,6 +159,7 @@ void growth_free(growth_program *t)
         tape_free(t->nodes[k].values);
     }
     free(t->nodes);
+    record_clear(&t->result);
     growth_place_clear(&t->place);
     free(t);
 }
@@ -304,12 +309,47 @@ static bool piecewise_record(growth_record *out, const growth_program *t, const 
     return true;
 }
 
+void growth_scale(growth_program *t, slong shift, bool inverted)
+{
+    t->shift = shift;
+    t->inverted = inverted;
+}
+
+/* x as a function of v */
+static void variable_record(growth_record *out, const growth_program *t)
+{
+    fmpq_t scale;
+    fmpq_init(scale);
+    fmpq_set_si(scale, 1, 1);
+    slong shift = t->inverted ? -t->shift : t->shift;
+    if (shift >= 0)
+        fmpq_mul_2exp(scale, scale, (flint_bitcnt_t)shift);
+    else
+        fmpq_div_2exp(scale, scale, (flint_bitcnt_t)-shift);
+    record_set_fmpq(out, scale);
+    fmpq_set_si(out->a, t->inverted ? -1 : 1, 1);
+    fmpq_clear(scale);
+}
+
+/* f(x) |dx/dv| */
+static bool result_record(growth_program *t)
+{
+    const growth_record *root = &t->nodes[t->count - 1].record;
+    growth_record jacobian;
+    record_init(&jacobian);
+    variable_record(&jacobian, t);
+    fmpz_sub(fmpq_numref(jacobian.a), fmpq_numref(jacobian.a), fmpq_denref(jacobian.a));
+    bool ok = record_mul(&t->result, root, &jacobian, &t->place);
+    record_clear(&jacobian);
+    return ok;
+}
+
 static bool node_record(growth_program *t, growth_node *n)
 {
     if (n->constant || n->f->kind == EXPR_RELATION)
         return true;
     if (n->f == t->x) {
-        record_set_variable(&n->record);
+        variable_record(&n->record, t);
         return true;
     }
     switch ((expr_kind)n->f->kind) {
@@ -366,8 +406,8 @@ bool growth_run(growth_program *t, growth_bound *out, const arf_t X)
             return false;
         }
     }
-    const growth_record *r = &t->nodes[t->count - 1].record;
-    if (!acb_is_finite(r->g) || !acb_is_finite(r->T) || !fmpz_fits_si(fmpq_numref(r->k))) {
+    const growth_record *r = &t->result;
+    if (!result_record(t) || !acb_is_finite(r->g) || !acb_is_finite(r->T) || !fmpz_fits_si(fmpq_numref(r->k))) {
         t->resists = t->nodes[t->count - 1].f;
         return false;
     }
@@ -383,7 +423,7 @@ expr *growth_resists(const growth_program *t)
 
 bool growth_diverges(const growth_program *t)
 {
-    const growth_record *r = &t->nodes[t->count - 1].record;
+    const growth_record *r = &t->result;
     if (t->resists || record_is_zero(r) || acb_contains_zero(r->g) || !acb_is_real(r->T))
         return false;
     if (!fmpq_is_zero(r->c))
@@ -404,9 +444,19 @@ bool growth_diverges(const growth_program *t)
     return yes;
 }
 
+bool growth_is_nonzero(const growth_program *t)
+{
+    return !acb_contains_zero(t->result.g);
+}
+
+bool growth_is_real(const growth_program *t)
+{
+    return record_is_real(&t->result);
+}
+
 void growth_value(acb_t value, const growth_program *t, const arb_t x, slong prec)
 {
-    const growth_record *r = &t->nodes[t->count - 1].record;
+    const growth_record *r = &t->result;
     arb_t log_x, s, u;
     acb_t w;
     arf_t slack;

@@ -35,12 +35,18 @@ tw_status growth_tail(tw_engine *e, arb_t log_tail, const growth_bound *g);
 typedef struct growth_program growth_program;
 growth_program *growth_compile(tw_engine *e, expr *f, expr *x);
 bool growth_run(growth_program *t, growth_bound *out, const arf_t X);
+/* From then on runs are about f(x) |dx/dv| as v -> inf, where x = 2^shift v, or x = 1/(2^shift v) when inverted (x -> 0). */
+void growth_scale(growth_program *t, slong shift, bool inverted);
+/* Has f no zero for x >= X, by the last run? */
+bool growth_is_nonzero(const growth_program *t);
+/* Is f(x) real for all x >= X, by the last run? */
+bool growth_is_real(const growth_program *t);
 bool growth_diverges(const growth_program *t);
 expr *growth_resists(const growth_program *t);
 void growth_free(growth_program *t);
 /* Can the bound be integrated to infinity? */
 bool growth_integrable(const growth_bound *g);
-/* Bounds of the last run's value for tests: the real and imaginary parts of f(x), x >= X, by the two-sided record. */
+/* A ball that holds f(x) for an x >= X of the last run, by the two-sided record. */
 void growth_value(acb_t value, const growth_program *t, const arb_t x, slong prec);
 
 #endif

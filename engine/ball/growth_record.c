@@ -7,7 +7,7 @@
 
 #include <stdlib.h>
 
-enum { REST_DEPTH = 2 };
+enum { REST_DEPTH = 2, Q_BITS_LIMIT = 400 };
 
 void growth_place_init(growth_place *p, tw_engine *e)
 {
@@ -378,9 +378,11 @@ bool record_star(acb_t star, const growth_record *w, const growth_place *p)
 
 /* ---- products and sums ---- */
 
-/* Forgets rests of rests beyond a depth, so that the work stays bounded. */
+/* Forgets rests of rests beyond a depth, and numbers that grew too long, so that the work stays bounded. */
 static void trim(growth_record *r, int depth)
 {
+    if (r->exact && (fmpz_bits(fmpq_numref(r->q)) > Q_BITS_LIMIT || fmpz_bits(fmpq_denref(r->q)) > Q_BITS_LIMIT))
+        record_make_inexact(r);
     if (!r->rest)
         return;
     if (depth == 0)

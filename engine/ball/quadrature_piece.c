@@ -58,6 +58,15 @@ static bool part_try(quad_part *a, quad_piece *p, quad_map map)
         part_clear(a);
         return false;
     }
+    /* the normal form multiplies exponents out, which on wide balls is worse than the form as typed */
+    expr *typed = map == QUAD_PLAIN ? expr_substitute(e, p->typed, p->y, a->t) : NULL;
+    tape *better = typed && typed != a->F ? tape_new(e, typed, &a->t, 1) : NULL;
+    if (better && quad_is_regular(better, scale)) {
+        tape_free(a->plain);
+        a->plain = better;
+    } else {
+        tape_free(better);
+    }
     expr *Q, *L;
     quad_split(e, a->F, a->t, &Q, &L);
     if (L && Q) {
@@ -90,7 +99,6 @@ static void part_place(arb_t t, const quad_part *a, const arb_t y, slong prec)
 /* ---- tails ---- */
 
 typedef struct tail {
-    growth_program *records;
     bool high;
     slong shift; /* high: y = 2^shift v; low: y = 1/(2^shift v) */
 } tail;
@@ -98,27 +106,15 @@ typedef struct tail {
 /* The records of the end at infinity (high) or at 0, in a variable v scaled so that the cut lies at v >= 64. */
 static bool tail_open(tail *a, quad_piece *p, bool high, double log2_cut)
 {
-    tw_engine *e = p->e;
+    if (!p->records)
+        p->records = growth_compile(p->e, p->f, p->y);
+    if (!p->records)
+        return false;
     double log2_v = high ? log2_cut : -log2_cut;
     a->high = high;
     a->shift = log2_v < 6 ? (slong)floor(log2_v) - 6 : 0;
-    expr *v = expr_fresh(e, "v");
-    fmpq_t scale;
-    fmpq_init(scale);
-    fmpq_set_si(scale, 1, 1);
-    if (a->shift < 0)
-        fmpq_div_2exp(scale, scale, (flint_bitcnt_t)-a->shift);
-    expr *s = expr_fmpq(e, scale), *y = expr_mul(e, s, v), *g;
-    fmpq_clear(scale);
-    if (high) {
-        g = expr_mul(e, s, expr_substitute(e, p->f, p->y, y));
-    } else {
-        expr *inverse = expr_pow(e, y, expr_int(e, -1));
-        expr *factors[] = {s, expr_pow(e, inverse, expr_int(e, 2)), expr_substitute(e, p->f, p->y, inverse)};
-        g = expr_product(e, factors, 3);
-    }
-    a->records = g ? growth_compile(e, expr_normal(e, g, &v, 1), v) : NULL;
-    return a->records != NULL;
+    growth_scale(p->records, a->shift, !high);
+    return true;
 }
 
 static void tail_point(arf_t v, const tail *a, const arf_t y)
@@ -131,17 +127,20 @@ static void tail_point(arf_t v, const tail *a, const arf_t y)
     }
 }
 
-static tw_status tail_fails(quad_piece *p, const tail *a)
+static tw_status tail_fails(quad_piece *p, const tail *a, bool cutting)
 {
     const char *where = a->high ? p->to : p->from;
     if (p->e->error.kind)
         return TW_ERROR;
-    if (growth_diverges(a->records))
+    if (growth_diverges(p->records))
         return engine_fail(p->e, ERROR_DIVERGENT, "the integral diverges at %s", where);
     if (a->high && p->oscillates)
         return engine_fail(p->e, ERROR_UNSUITABLE, "the integrand oscillates towards %s without decaying enough for "
                            "quadrature along the real line", where);
-    char *words = expr_text(p->e, growth_resists(a->records));
+    if (cutting)
+        return engine_fail(p->e, ERROR_UNDECIDED, "the %s %s is integrable, but dies away too slowly for a bound of its end",
+                           a->high ? "tail at" : "integrand at", where);
+    char *words = expr_text(p->e, growth_resists(p->records));
     engine_fail(p->e, ERROR_UNDECIDED, "no bound was found for the %s at %s (%s)", a->high ? "tail" : "integrand", where,
                 words ? words : "the integrand");
     free(words);
@@ -161,17 +160,16 @@ static tw_status tail_class(quad_piece *p, bool high, bool *exponential)
     arf_set_ui(v, RECORD_START);
     bool found = false;
     for (int tries = 0; tries < 40 && !found && budget_ok(p->e); tries++) {
-        found = growth_run(a.records, &g, v) && growth_integrable(&g);
+        found = growth_run(p->records, &g, v) && growth_integrable(&g);
         if (!found)
             arf_mul_2exp_si(v, v, tries < 8 ? 2 : tries < 20 ? 8 : 64);
-        if (!found && growth_diverges(a.records))
+        if (!found && growth_diverges(p->records))
             break;
     }
     *exponential = found && arb_is_positive(g.b);
-    tw_status status = found ? TW_OK : tail_fails(p, &a);
+    tw_status status = found ? TW_OK : tail_fails(p, &a, false);
     growth_bound_clear(&g);
     arf_clear(v);
-    growth_free(a.records);
     return status;
 }
 
@@ -228,13 +226,28 @@ static void guess_cut(arf_t cut, quad_piece *p, bool high, double log2_tolerance
     arf_clear(next);
 }
 
-/* A cut and a proved bound (as logarithm) of what lies beyond, at most 2^tolerance. real: the rest is real. */
-static tw_status find_cut(arf_t cut, arb_t log_rest, quad_piece *p, bool high, slong tolerance)
+static void rest_ball(acb_t rest, arb_t log_rest, bool real)
+{
+    arf_t top;
+    arf_init(top);
+    if (!arf_is_neg_inf(arb_midref(log_rest))) {
+        arb_exp(log_rest, log_rest, 64);
+        arb_get_ubound_arf(top, log_rest, 30);
+    }
+    acb_zero(rest);
+    arb_add_error_arf(acb_realref(rest), top);
+    if (!real)
+        arb_add_error_arf(acb_imagref(rest), top);
+    arf_clear(top);
+}
+
+/* A cut, and a ball around 0 that is proved to hold the integral beyond it, of radius at most 2^tolerance. */
+static tw_status find_cut(arf_t cut, acb_t rest, quad_piece *p, bool high, slong tolerance)
 {
     tail a;
     growth_bound g;
     arf_t v, factor;
-    arb_t limit;
+    arb_t limit, log_rest;
     guess_cut(cut, p, high, (double)tolerance);
     mag_t m;
     mag_init(m);
@@ -247,12 +260,13 @@ static tw_status find_cut(arf_t cut, arb_t log_rest, quad_piece *p, bool high, s
     arf_init(v);
     arf_init(factor);
     arb_init(limit);
+    arb_init(log_rest);
     arb_const_log2(limit, 64);
     arb_mul_si(limit, limit, tolerance, 64);
     tail_point(v, &a, cut);
     bool found = false;
     for (int tries = 0; tries < CUT_TRIES && !found && budget_ok(p->e); tries++) {
-        if (growth_run(a.records, &g, v) && growth_integrable(&g)) {
+        if (growth_run(p->records, &g, v) && growth_integrable(&g)) {
             found = growth_tail(p->e, log_rest, &g) == TW_OK && !arb_gt(log_rest, limit) && !arf_is_nan(arb_midref(log_rest));
             if (p->e->error.kind == ERROR_DIVERGENT || p->e->error.kind == ERROR_UNDECIDED)
                 engine_forgive(p->e);
@@ -262,6 +276,8 @@ static tw_status find_cut(arf_t cut, arb_t log_rest, quad_piece *p, bool high, s
         arf_set_d(factor, tries < 4 ? 1.125 : tries < 8 ? 1.5 : tries < 40 ? 2 : 1048576);
         arf_mul(v, v, factor, 60, ARF_RND_CEIL);
     }
+    if (found)
+        rest_ball(rest, log_rest, growth_is_real(p->records));
     if (found) { /* back to y: the cut may lie a little inside of what the bound covers, never outside */
         if (high) {
             arf_mul_2exp_si(cut, v, a.shift);
@@ -270,12 +286,12 @@ static tw_status find_cut(arf_t cut, arb_t log_rest, quad_piece *p, bool high, s
             arf_ui_div(cut, 1, cut, 60, ARF_RND_FLOOR);
         }
     }
-    tw_status status = found ? TW_OK : tail_fails(p, &a);
+    tw_status status = found ? TW_OK : tail_fails(p, &a, true);
     growth_bound_clear(&g);
     arf_clear(v);
     arf_clear(factor);
     arb_clear(limit);
-    growth_free(a.records);
+    arb_clear(log_rest);
     return status;
 }
 
@@ -333,7 +349,7 @@ static tw_status choose_high(quad_piece *p)
 
 tw_status quad_piece_init(quad_piece *p, tw_engine *e, expr *f, expr *y, expr *length, const char *from, const char *to)
 {
-    *p = (quad_piece){.e = e, .y = y, .length = length, .from = from, .to = to, .part_count = 1};
+    *p = (quad_piece){.e = e, .typed = f, .y = y, .length = length, .from = from, .to = to, .part_count = 1};
     arb_init(p->extent);
     arf_init(p->join);
     quad_scan_init(&p->scan);
@@ -367,6 +383,7 @@ void quad_piece_clear(quad_piece *p)
     for (size_t k = 0; k < 2; k++)
         part_clear(&p->parts[k]);
     tape_free(p->values);
+    growth_free(p->records);
     quad_scan_clear(&p->scan);
     arb_clear(p->extent);
     arf_clear(p->join);
@@ -454,8 +471,12 @@ static void exponential_form(acb_t out, run *r, const acb_t t, bool analytic, sl
 static int integrand(acb_ptr out, const acb_t t, void *param, slong order, slong prec)
 {
     run *r = param;
-    if (order > 1 || !budget_ok(r->piece->e)) {
+    if (order > 1) {
         acb_indeterminate(out);
+        return 0;
+    }
+    if (!budget_ok(r->piece->e)) { /* the sum is thrown away: what ends the subdivision soonest is a constant */
+        acb_zero(out);
         return 0;
     }
     r->piece->evaluations++;
@@ -564,21 +585,6 @@ static tw_status part_integrate(quad_piece *p, quad_part *a, acb_t value, const 
     return p->e->error.kind ? TW_ERROR : TW_OK;
 }
 
-/* Adds [-rest, rest] in both parts; only the real one where the value is real so far. */
-static void add_rest(acb_t value, const arb_t log_rest)
-{
-    arb_t rest;
-    arf_t top;
-    arb_init(rest);
-    arf_init(top);
-    if (!arf_is_neg_inf(arb_midref(log_rest)))
-        arb_exp(rest, log_rest, 64);
-    arb_get_ubound_arf(top, rest, 30);
-    acb_add_error_arf(value, top);
-    arb_clear(rest);
-    arf_clear(top);
-}
-
 /* The ends of a part in its own variable, from the piece's cuts, join and length. */
 static void part_range(arb_t from, arb_t to, const quad_piece *p, size_t index, const arf_t low, const arf_t high,
                        const arb_t length, slong prec)
@@ -607,12 +613,12 @@ static void part_range(arb_t from, arb_t to, const quad_piece *p, size_t index, 
 tw_status quad_piece_integrate(quad_piece *p, acb_t value, slong tolerance, slong goal, slong prec)
 {
     arf_t low, high;
-    arb_t low_rest, high_rest, from, to;
-    acb_t length;
+    arb_t from, to;
+    acb_t length, low_rest, high_rest;
     arf_init(low);
     arf_init(high);
-    arb_init(low_rest);
-    arb_init(high_rest);
+    acb_init(low_rest);
+    acb_init(high_rest);
     arb_init(from);
     arb_init(to);
     acb_init(length);
@@ -630,13 +636,13 @@ tw_status quad_piece_integrate(quad_piece *p, acb_t value, slong tolerance, slon
             status = part_integrate(p, &p->parts[k], value, from, to, tolerance - 2, goal, prec);
     }
     if (status == TW_OK && p->cut_low)
-        add_rest(value, low_rest);
+        acb_add(value, value, low_rest, prec);
     if (status == TW_OK && p->cut_high)
-        add_rest(value, high_rest);
+        acb_add(value, value, high_rest, prec);
     arf_clear(low);
     arf_clear(high);
-    arb_clear(low_rest);
-    arb_clear(high_rest);
+    acb_clear(low_rest);
+    acb_clear(high_rest);
     arb_clear(from);
     arb_clear(to);
     acb_clear(length);

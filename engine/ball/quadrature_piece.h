@@ -64,9 +64,10 @@ typedef struct quad_part {
 
 typedef struct quad_piece {
     tw_engine *e;
-    expr *f, *y, *length; /* length NULL: infinite */
+    expr *typed, *f, *y, *length; /* f: the normal form of the integrand as typed; length NULL: infinite */
     const char *from, *to; /* words for the ends */
     tape *values;
+    growth_program *records; /* of f towards infinity or, inverted, 0 */
     arb_t extent;          /* the length as a ball */
     quad_scan scan;
     quad_part parts[2];
