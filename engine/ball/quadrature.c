@@ -195,7 +195,7 @@ static tw_status add_with_kinks(quad_sum *s, slong factor, expr *f, expr *x, exp
         bool last = k == points.count;
         inner_point(inside, k ? points.list[k - 1].place : a, !k && low_infinite, last ? b : points.list[k].place,
                     last && high_infinite);
-        expr *g = quad_resolve(e, f, x, inside);
+        expr *g = quad_resolve(e, f, x, inside, points.complete);
         expr *end = last ? to : points.list[k].low;
         status = g ? add_range(s, factor, g, x, start, end) : TW_ERROR;
         if (!last) {

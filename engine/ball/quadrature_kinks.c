@@ -23,7 +23,7 @@ typedef struct search {
 
 void quad_points_init(quad_points *p)
 {
-    *p = (quad_points){0};
+    *p = (quad_points){.complete = true};
 }
 
 void quad_points_clear(quad_points *p)
@@ -216,7 +216,11 @@ static tw_status isolate(search *s, expr *f, tape *g, const arf_t a, const arf_t
         arb_init(where);
         arb_set_interval_arf(where, a, b, 64);
         bool at_end = !inside(s, where);
-        tw_status status = verdict == 2 && at_end ? TW_OK : strict ? fail_near(s, f, where) : TW_OK;
+        tw_status status = TW_OK;
+        if (verdict != 2 || !at_end) {
+            s->points->complete = false;
+            status = strict ? fail_near(s, f, where) : TW_OK;
+        }
         arb_clear(where);
         return status;
     }
@@ -272,6 +276,8 @@ static tw_status zeros_by_balls(search *s, expr *g, bool strict)
         arb_get_lbound_arf(a, s->from, 128);
     if (!s->to_infinite)
         arb_get_ubound_arf(b, s->to, 128);
+    if (!known)
+        s->points->complete = false;
     if (!known && strict && !s->e->error.kind) {
         char *words = expr_text(s->e, g);
         status = engine_fail(s->e, ERROR_UNDECIDED, "the sign of %s could not be decided towards infinity", words ? words : "a part");
@@ -477,16 +483,16 @@ static int truth_inside(tw_engine *e, expr *relation, expr *x, const arf_t at)
     }
 }
 
-static expr *resolve_piecewise(tw_engine *e, expr *f, expr *x, const arf_t at)
+static expr *resolve_piecewise(tw_engine *e, expr *f, expr *x, const arf_t at, bool on_cut)
 {
     for (uint32_t k = 0; k + 1 < f->count; k += 2) {
         int truth = truth_inside(e, f->args[k], x, at);
         if (truth == 2)
             return f;
         if (truth == 1)
-            return quad_resolve(e, f->args[k + 1], x, at);
+            return quad_resolve(e, f->args[k + 1], x, at, on_cut);
     }
-    return quad_resolve(e, f->args[f->count - 1], x, at);
+    return quad_resolve(e, f->args[f->count - 1], x, at, on_cut);
 }
 
 static expr *resolve_extreme(tw_engine *e, expr *f, expr *const *args, expr *x, const arf_t at)
@@ -506,7 +512,7 @@ static expr *resolve_extreme(tw_engine *e, expr *f, expr *const *args, expr *x, 
     return best;
 }
 
-static expr *resolve_call(tw_engine *e, expr *f, expr *const *args, expr *x, const arf_t at)
+static expr *resolve_call(tw_engine *e, expr *f, expr *const *args, expr *x, const arf_t at, bool on_cut)
 {
     int sign;
     switch (f->is.function) {
@@ -516,6 +522,11 @@ static expr *resolve_call(tw_engine *e, expr *f, expr *const *args, expr *x, con
     case FUNCTION_SIGN:
         sign = args[0] ? sign_inside(e, args[0], x, at) : 0;
         return sign ? expr_int(e, sign) : expr_call(e, f->is.function, args, f->count);
+    case FUNCTION_LOG: /* of negative numbers along the cut: log(-u) + i pi, analytic across it */
+        if (on_cut && args[0] && sign_inside(e, args[0], x, at) < 0)
+            return expr_add(e, expr_call1(e, FUNCTION_LOG, expr_neg(e, args[0])),
+                            expr_mul(e, expr_constant_of(e, CONSTANT_I), expr_constant_of(e, CONSTANT_PI)));
+        return expr_call(e, f->is.function, args, f->count);
     case FUNCTION_MIN:
     case FUNCTION_MAX:
         return resolve_extreme(e, f, args, x, at);
@@ -524,21 +535,30 @@ static expr *resolve_call(tw_engine *e, expr *f, expr *const *args, expr *x, con
     }
 }
 
-expr *quad_resolve(tw_engine *e, expr *f, expr *x, const arf_t at)
+/* u^p of negative u along the cut: (-u)^p (-1)^p */
+static expr *resolve_power(tw_engine *e, expr *const *args, expr *x, const arf_t at, bool on_cut)
+{
+    if (on_cut && args[0] && args[1] && expr_has(args[0], x) && expr_is_number(args[1]) &&
+        !fmpz_is_one(fmpq_denref(expr_number(args[1]))) && sign_inside(e, args[0], x, at) < 0)
+        return expr_mul(e, expr_pow(e, expr_neg(e, args[0]), args[1]), expr_pow(e, expr_int(e, -1), args[1]));
+    return expr_pow(e, args[0], args[1]);
+}
+
+expr *quad_resolve(tw_engine *e, expr *f, expr *x, const arf_t at, bool on_cut)
 {
     if (!f || !expr_has(f, x) || f == x)
         return f;
     if (f->kind == EXPR_PIECEWISE)
-        return resolve_piecewise(e, f, x, at);
+        return resolve_piecewise(e, f, x, at, on_cut);
     if (f->kind != EXPR_SUM && f->kind != EXPR_PRODUCT && f->kind != EXPR_POWER && f->kind != EXPR_CALL)
         return f;
     expr **args = base_alloc(f->count * sizeof *args);
     for (uint32_t k = 0; k < f->count; k++)
-        args[k] = quad_resolve(e, f->args[k], x, at);
+        args[k] = quad_resolve(e, f->args[k], x, at, on_cut);
     expr *out = f->kind == EXPR_SUM       ? expr_sum(e, args, f->count)
                 : f->kind == EXPR_PRODUCT ? expr_product(e, args, f->count)
-                : f->kind == EXPR_POWER   ? expr_pow(e, args[0], args[1])
-                                          : resolve_call(e, f, args, x, at);
+                : f->kind == EXPR_POWER   ? resolve_power(e, args, x, at, on_cut)
+                                          : resolve_call(e, f, args, x, at, on_cut);
     free(args);
     return out;
 }

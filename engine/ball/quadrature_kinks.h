@@ -13,6 +13,7 @@ typedef struct quad_point {
 typedef struct quad_points {
     quad_point *list; /* by growing place; disjoint */
     size_t count, room;
+    bool complete; /* every zero of the arguments was found */
 } quad_points;
 
 void quad_points_init(quad_points *p);
@@ -24,7 +25,8 @@ tw_status quad_points_find(quad_points *p, tw_engine *e, expr *f, expr *x, const
                            bool to_infinite, slong prec);
 
 /* f with abs, sign, min, max and piecewise replaced by what they are near the point `inside`, an exact real number between two
- * neighbouring points. NULL with the error set. */
-expr *quad_resolve(tw_engine *e, expr *f, expr *x, const arf_t inside);
+ * neighbouring points. on_cut (only where the points are complete): logarithms and fractional powers of negative numbers become
+ * forms that are analytic across their cut. NULL with the error set. */
+expr *quad_resolve(tw_engine *e, expr *f, expr *x, const arf_t inside, bool on_cut);
 
 #endif
