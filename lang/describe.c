@@ -332,10 +332,98 @@ tw_status describe_coefficients(session *s, result *r, expansion *a, slong from,
 
 /* ---- remainder ---- */
 
-tw_status describe_bound(session *s, remainder_bound *bound, expansion *a)
+/* What the engine remembers of bounds with free parameters was decided from facts that may have changed since. */
+static void forget_bounds(expansion *a)
+{
+    bound_cache_free(a->cache);
+    a->cache = NULL;
+}
+
+static bool mentions(expr *fact, expr *const *symbols, size_t count)
+{
+    for (size_t k = 0; k < count; k++)
+        if (expr_has(fact, symbols[k])) return true;
+    return false;
+}
+
+/* The granted facts about the other parameters of the integral into a fresh array; *count of them. */
+static expr **find_granted(session *s, const expansion *a, size_t *count, bool *has_parameters)
+{
+    expr **symbols;
+    size_t symbol_count = expr_symbols(a->integral, &symbols), fact_count = facts_count(s->e);
+    expr **granted = base_alloc((fact_count + 1) * sizeof *granted);
+    *count = 0;
+    *has_parameters = false;
+    for (size_t k = 0; k < symbol_count; k++) *has_parameters = *has_parameters || symbols[k] != a->large;
+    for (size_t k = 0; *has_parameters && k < fact_count; k++) {
+        condition_label known;
+        expr *fact = facts_at(s->e, k, &known);
+        if (known == CONDITION_GRANTED && mentions(fact, symbols, symbol_count)) granted[(*count)++] = fact;
+    }
+    free(symbols);
+    return granted;
+}
+
+/* Only what is given stays. */
+static void hide_granted(session *s)
+{
+    size_t count = facts_count(s->e), kept = 0;
+    expr **given = base_alloc((count + 1) * sizeof *given), *large;
+    large_kind kind = facts_large(s->e, &large);
+    for (size_t k = 0; k < count; k++) {
+        condition_label known;
+        expr *fact = facts_at(s->e, k, &known);
+        if (known == CONDITION_GIVEN) given[kept++] = fact;
+    }
+    facts_clear(s->e);
+    facts_init(s->e);
+    if (kind != LARGE_NONE) (void)facts_set_large(s->e, large, kind, NULL, NULL);
+    for (size_t k = 0; k < kept; k++) (void)facts_add(s->e, given[k], CONDITION_GIVEN);
+    free(given);
+}
+
+/* Once more with the granted facts: what holds now rests on them. */
+static tw_status bound_by_grant(session *s, remainder_bound *bound, expansion *a, slong terms, expr *const *granted,
+                                size_t count)
 {
     static const env nowhere = {0, NULL, NULL};
-    if (remainder_for_all(s->e, bound, a, &nowhere, -1, NULL) == TW_OK) return TW_OK;
+    remainder_bound_clear(bound);
+    remainder_bound_init(bound);
+    forget_bounds(a);
+    if (remainder_for_all(s->e, bound, a, &nowhere, terms, NULL) != TW_OK) return TW_ERROR;
+    if (bound->label > LABEL_CONDITIONAL) return TW_OK;
+    bound->label = LABEL_CONDITIONAL;
+    for (size_t k = 0; k < count; k++) {
+        char *words = expr_text(s->e, granted[k]);
+        conditions_add(&bound->conditions, words, granted[k], CONDITION_GRANTED);
+        free(words);
+    }
+    forget_bounds(a);
+    return TW_OK;
+}
+
+tw_status describe_find_bound(session *s, remainder_bound *bound, expansion *a, slong terms)
+{
+    static const env nowhere = {0, NULL, NULL};
+    size_t count;
+    bool has_parameters;
+    expr **granted = find_granted(s, a, &count, &has_parameters);
+    if (has_parameters) forget_bounds(a);
+    struct facts *all = count > 0 ? facts_copy(s->e) : NULL;
+    if (all) hide_granted(s);
+    tw_status status = remainder_for_all(s->e, bound, a, &nowhere, terms, NULL);
+    if (all) facts_restore(s->e, all);
+    if (all && !(status == TW_OK && bound->label <= LABEL_PROVED) && !error_is_fatal(s->e->error.kind)) {
+        engine_forgive(s->e);
+        status = bound_by_grant(s, bound, a, terms, granted, count);
+    }
+    free(granted);
+    return status;
+}
+
+tw_status describe_bound(session *s, remainder_bound *bound, expansion *a)
+{
+    if (describe_find_bound(s, bound, a, -1) == TW_OK) return TW_OK;
     if (error_is_fatal(s->e->error.kind)) return TW_ERROR;
     remainder_bound_clear(bound);
     remainder_bound_init(bound);

@@ -22,6 +22,11 @@ tw_status describe_expansion(session *s, result *r, const char *name, expansion 
 /* The expansion as the JSON object of the formats becomes the object of r. */
 tw_status describe_object(session *s, result *r, const char *name, expansion *a);
 
+/* The bound of the remainder with `terms` kept (negative: the engine's choice). What holds only because of a granted condition
+ * is `conditional` and lists it. While this runs the engine's facts change; they are put back, also by the caller's mark when
+ * memory runs out. */
+tw_status describe_find_bound(session *s, remainder_bound *bound, expansion *a, slong terms);
+
 /* Bound of the remainder for files and objects: as `remainder_for_all` gives it, `unknown` with its reason when it cannot be
  * had. Fails only when time, memory or patience is out. */
 tw_status describe_bound(session *s, remainder_bound *bound, expansion *a);

@@ -110,7 +110,6 @@ tw_status request_coefficients(session *s, const statement *st, result *r, value
 
 tw_status request_remainder(session *s, const statement *st, result *r, value **keep)
 {
-    static const env nowhere = {0, NULL, NULL};
     slong terms = -1;
     const syntax *typed = st->as.remainder.terms;
     if (typed && session_lower_count(s, typed, "the number of terms", 0, TERMS_LIMIT, &terms) != TW_OK) return TW_ERROR;
@@ -118,7 +117,7 @@ tw_status request_remainder(session *s, const statement *st, result *r, value **
     if (subject_read_expansion(s, &x, st->as.remainder.of) != TW_OK) return TW_ERROR;
     remainder_bound bound;
     remainder_bound_init(&bound);
-    tw_status status = remainder_for_all(s->e, &bound, &x.kept->expansion, &nowhere, terms, NULL);
+    tw_status status = describe_find_bound(s, &bound, &x.kept->expansion, terms);
     if (status == TW_OK) {
         result_restart(r, "remainder");
         result_string(r, "of", x.name);
