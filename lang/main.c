@@ -1,11 +1,14 @@
 /* The program: reads the command line and runs what it names in one session. */
 #include <errno.h>
 #include <getopt.h>
+#include <signal.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
+#include <sys/resource.h>
 #include <unistd.h>
 
+#include "engine/base/flint.h"
 #include "lang/prompt.h"
 #include "lang/run.h"
 
@@ -120,6 +123,55 @@ static bool read_command(command *c, int argc, char **argv)
     return true;
 }
 
+/* ---- memory ---- */
+
+#if defined(__SANITIZE_ADDRESS__)
+#define SANITIZED 1
+#elif defined(__has_feature)
+#if __has_feature(address_sanitizer)
+#define SANITIZED 1
+#endif
+#endif
+
+static void *gmp_resize(void *old, size_t old_bytes, size_t bytes)
+{
+    (void)old_bytes;
+    return base_resize(old, bytes);
+}
+
+static void gmp_free(void *old, size_t bytes)
+{
+    (void)bytes;
+    free(old);
+}
+
+static void on_abort(int signal_number)
+{
+    static const char words[] = "termwise: error: memory is out\n";
+    (void)signal_number;
+    ssize_t put = write(STDERR_FILENO, words, sizeof words - 1);
+    (void)put;
+    _exit(EXIT_FAILED);
+}
+
+/* The engine asks for its memory limit in its loops. Behind that stands the system's limit, for a single library call that
+ * takes more than all of it: then an allocation fails, and its statement ends with an error (GMP would end the program, so
+ * this host hands it the engine's allocator). Outside of a statement nothing is left but to say so and end. */
+static void limit_memory(size_t mib)
+{
+    signal(SIGABRT, on_abort);
+    mp_set_memory_functions(base_alloc, gmp_resize, gmp_free);
+#ifndef SANITIZED
+    struct rlimit limit;
+    rlim_t wanted = ((rlim_t)mib << 21) + ((rlim_t)256 << 20);
+    if (mib == 0 || getrlimit(RLIMIT_DATA, &limit) != 0 || wanted > limit.rlim_max) return;
+    limit.rlim_cur = wanted;
+    (void)setrlimit(RLIMIT_DATA, &limit);
+#else
+    (void)mib;
+#endif
+}
+
 static void run_jobs(run *r, const command *c)
 {
     bool go_on = true;
@@ -134,23 +186,29 @@ static void run_jobs(run *r, const command *c)
     else run_input(r, STDIN_FILENO);
 }
 
+static int run_command(const command *c)
+{
+    run r;
+    if (!run_init(&r, &c->options)) return EXIT_FAILED;
+    run_jobs(&r, c);
+    int status = r.status;
+    run_clear(&r);
+    return status;
+}
+
 int main(int argc, char **argv)
 {
     command c = {0};
     c.jobs = calloc((size_t)argc + 1, sizeof *c.jobs);
-    int status = EXIT_USAGE;
-    run r;
+    int status;
     if (!c.jobs || !read_command(&c, argc, argv)) {
         status = EXIT_USAGE;
     } else if (c.help || c.version) {
         fputs(c.help ? usage : "termwise " TW_VERSION "\n", stdout);
         status = fflush(stdout) == 0 ? EXIT_DONE : EXIT_FAILED;
-    } else if (!run_init(&r, &c.options)) {
-        status = EXIT_FAILED;
     } else {
-        run_jobs(&r, &c);
-        status = r.status;
-        run_clear(&r);
+        limit_memory(c.options.memory_limit);
+        status = run_command(&c);
     }
     free(c.jobs);
     return status;

@@ -192,6 +192,9 @@ start = time.time()
 r = run("--time-limit", "1", "--keep-going", "-e", "evaluate %s\nlet a = 3\nshow a" % SLOW)
 check(r.returncode == 1 and "time" in r.stderr and r.stdout.endswith("a = 3\n") and time.time() - start < 8,
       "the time limit holds for each statement", r, time.time() - start)
+r = run("--memory-limit", "100", "--keep-going", "-e", "large s\nexpand integral from 0 to inf of exp(-s*x)/(1 + x + x^3) dx to 20000 "
+        "terms\nlet a = 3\nshow a")
+check(r.returncode == 1 and "memory" in r.stderr and (sanitized or r.stdout.endswith("a = 3\n")), "the memory limit ends a statement", r)
 deep = "(" * 100000 + "1" + ")" * 100000
 r = run("--time-limit", "20", stdin="let a = %s\n" % deep)
 check(r.returncode == 1 and ": error: " in r.stderr and len(r.stderr) < 2000, "100000 nested brackets", r.returncode, r.stderr[:300])
