@@ -4,6 +4,7 @@
 #include "lang/run.h"
 
 #include <errno.h>
+#include <malloc.h>
 #include <poll.h>
 #include <stdlib.h>
 #include <string.h>
@@ -133,6 +134,14 @@ static bool go_on_after(const run *r, error_kind kind)
     return r->options.keep_going && r->depth == 0 && kind != ERROR_INTERRUPT;
 }
 
+/* After a statement that took too much memory the system gets back what was freed, so that the next one is not refused for
+ * it. */
+static void give_back_memory(void)
+{
+    flint_cleanup();
+    malloc_trim(0);
+}
+
 static bool run_statement(run *r, source *whole, size_t from, const statement *st)
 {
     tw_engine *e = r->session.e;
@@ -157,6 +166,7 @@ static bool run_statement(run *r, source *whole, size_t from, const statement *s
     }
     result_clear(&made);
     text_clear(&words);
+    if (kind == ERROR_MEMORY) give_back_memory();
     if (!written || r->session.quit) return false;
     return status == TW_OK || go_on_after(r, kind);
 }
