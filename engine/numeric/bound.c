@@ -258,13 +258,58 @@ typedef struct piece_bound {
     const char *reason;
 } piece_bound;
 
+/* factor * S_K less the kept terms: 0 as a ball, unless a group is cut. Computed with so many bits that its radius is nothing
+ * beside the rest R, which may be exponentially small. */
+static tw_status groups_less_kept(tw_engine *e, arb_t out, expansion *a, const term_values *t, const env *at, slong terms,
+                                  problem *p, slong first, slong bits, const arb_t R)
+{
+    enum { BITS_MOST = 40000 };
+    const contribution *c = a->contributions + t->contribution;
+    arb_t S, kept;
+    mag_t size, rest;
+    term_table fine = {0};
+    const term_values *list = t;
+    double more;
+    tw_status status;
+    arb_init(S);
+    arb_init(kept);
+    mag_init(size);
+    mag_init(rest);
+    sum_terms(kept, t, terms, bits);
+    arb_get_mag(size, kept);
+    arb_get_mag(rest, R);
+    more = mag_is_zero(rest) ? 0 : mag_log2(size) - mag_log2(rest);
+    bits = FLINT_MIN(BITS_MOST, bits + 64 + (more > 0 ? (slong)more : 0));
+    status = terms_at(e, &fine, a, at, terms, false, bits);
+    for (size_t b = 0; b < fine.count; b++)
+        if (fine.list[b].contribution == t->contribution)
+            list = fine.list + b;
+    if (status == TW_OK)
+        status = real_ball(e, S, put_values(e, c->local.scale, at), bits);
+    if (status == TW_OK)
+        status = panels_kept_sum(p, first, S, out, bits);
+    if (status == TW_OK)
+        status = real_ball(e, S, put_values(e, c->local.factor, at), bits);
+    if (status == TW_OK) {
+        arb_mul(out, out, S, bits);
+        sum_terms(kept, list, terms, bits);
+        arb_sub(out, out, kept, bits);
+    }
+    terms_clear(&fine);
+    mag_clear(rest);
+    mag_clear(size);
+    arb_clear(kept);
+    arb_clear(S);
+    return status;
+}
+
 /* By panels, for contribution t: error = R_K + (S_K - sum of the kept terms). */
 static tw_status panel_error(tw_engine *e, piece_bound *out, expansion *a, const term_values *t, const env *at, slong terms,
                              slong bits)
 {
     const contribution *c = a->contributions + t->contribution;
     known_problem *k;
-    arb_t S, factor, groups, kept;
+    arb_t S, factor, groups;
     expr *scale = put_values(e, c->local.scale, at);
     panel_report report = {0};
     slong first, extra;
@@ -280,7 +325,6 @@ static tw_status panel_error(tw_engine *e, piece_bound *out, expansion *a, const
     arb_init(S);
     arb_init(factor);
     arb_init(groups);
-    arb_init(kept);
     status = real_ball(e, S, scale, bits + 64);
     if (status == TW_OK)
         status = real_ball(e, factor, put_values(e, c->local.factor, at), bits + 64);
@@ -288,13 +332,12 @@ static tw_status panel_error(tw_engine *e, piece_bound *out, expansion *a, const
         status = groups_kept(e, a, t->contribution, at, k->p, terms, &first, &extra);
     if (status == TW_OK)
         status = panels_at(k->p, first, scale, S, out->error, &made, &report);
-    if (status == TW_OK && made)
-        status = panels_kept_sum(k->p, first, S, groups, bits + 64);
+    if (status == TW_OK && made) {
+        arb_mul(out->error, out->error, factor, bits + 64);
+        status = groups_less_kept(e, groups, a, t, at, terms, k->p, first, bits, out->error);
+    }
     if (status == TW_OK && made) {
         arb_add(out->error, out->error, groups, bits + 64);
-        arb_mul(out->error, out->error, factor, bits + 64);
-        sum_terms(kept, t, terms, bits + 64);
-        arb_sub(out->error, out->error, kept, bits + 64);
         out->label = LABEL_PROVED;
         if (!arb_is_finite(out->error))
             made = false;
@@ -303,7 +346,6 @@ static tw_status panel_error(tw_engine *e, piece_bound *out, expansion *a, const
         out->label = LABEL_ESTIMATED;
         out->reason = report.reason ? report.reason : "the bound is not finite there";
     }
-    arb_clear(kept);
     arb_clear(groups);
     arb_clear(factor);
     arb_clear(S);

@@ -84,7 +84,7 @@ static tw_status fill_rows(tw_engine *e, comparison *c, expansion *a, const env 
 
 static double log2_mag(const mag_t m)
 {
-    return mag_is_zero(m) ? -HUGE_VAL : mag_get_d_log2_approx(m);
+    return mag_is_zero(m) ? -HUGE_VAL : mag_log2(m);
 }
 
 /* The integral, with a radius below a tenth of the least bound where that can be had. */

@@ -270,8 +270,38 @@ static bool disc_prove(mag_t size, walker *w, const arf_t c, const arf_t R)
     return fine && mag_is_finite(size);
 }
 
-/* The patch around c; false when the disc is too large to be proved. On precision: raised until the first coefficient is good. */
-static bool disc_patch(walker *w, double c, double width)
+/* Near 0 the kept terms are F itself (the series ends and all of it is kept): by the identity theorem they are F wherever F has
+ * been continued analytically along the path, so h = 0 there; a sheet that has ended breaks it. */
+static bool vanishes(const walker *w, double y)
+{
+    if (!w->p->terminates || w->first < w->p->known)
+        return false;
+    for (size_t b = 0; b < w->p->sheet_count; b++)
+        if (!sheet_alive(w->p->sheets + b, y))
+            return false;
+    return true;
+}
+
+/* Is the error small beside the polynomial? */
+static bool error_small(const patch *q)
+{
+    mag_t sum, part;
+    bool small;
+    mag_init(sum);
+    mag_init(part);
+    for (slong j = 0; j < q->length; j++) {
+        arb_get_mag(part, q->poly + j);
+        mag_max(sum, sum, part);
+    }
+    mag_mul_2exp_si(part, q->error[0], 9);
+    small = mag_cmp(part, sum) < 0;
+    mag_clear(part);
+    mag_clear(sum);
+    return small;
+}
+
+/* The patch around c; false when the disc is too large to be proved, or (when choosy) when its error spoils h. */
+static bool disc_patch(walker *w, double c, double width, bool choosy)
 {
     arf_t centre, half, R;
     mag_t size, ratio;
@@ -289,8 +319,11 @@ static bool disc_patch(walker *w, double c, double width)
     if (fine) {
         slong bits = w->p->bits, length = DISC_LENGTH;
         q = patches_add(w->s, 1, length);
-        fine = disc_series(q->poly, w, centre, half, length, bits);
-        if (fine) {
+        fine = vanishes(w, c) || disc_series(q->poly, w, centre, half, length, bits);
+        if (vanishes(w, c)) {
+            arf_set(q->centre, centre);
+            arf_set(q->width, half);
+        } else if (fine) {
             arf_set(q->centre, centre);
             arf_set(q->width, half);
             /* sum over j >= length of size * (width/R)^j = size * 5^-length * 5/4 */
@@ -300,6 +333,9 @@ static bool disc_patch(walker *w, double c, double width)
             mag_mul(q->error[0], size, ratio);
             mag_mul_ui(q->error[0], q->error[0], 11); /* 5/4 and a tenth for |z| a little above 1, see patch_range */
             mag_mul_2exp_si(q->error[0], q->error[0], -3);
+            fine = !choosy || error_small(q);
+        }
+        if (fine) {
             w->s->discs++;
         } else {
             w->s->count--;
@@ -377,6 +413,29 @@ static bool crude_patch(walker *w, const arb_t a, const arb_t b)
     return fine;
 }
 
+/* min(1, T/(y T')) at y, in doubles: how much narrower than y itself the steps have to be where T grows faster than y. */
+static double coordinate_pace(walker *w, double y)
+{
+    const problem *p = w->p;
+    acb_t at, t, slope;
+    double pace = 1;
+    if (p->pure)
+        return 1;
+    acb_init(at);
+    acb_init(t);
+    acb_init(slope);
+    acb_set_d(at, y);
+    tape_eval(t, p->phase, at, false, LOW_BITS);
+    tape_eval(slope, p->slope, at, false, LOW_BITS);
+    if (acb_is_finite(t) && acb_is_finite(slope) && arb_is_positive(acb_realref(slope)) && arb_is_positive(acb_realref(t)))
+        pace = fmpz_get_d(fmpq_numref(p->m)) / fmpz_get_d(fmpq_denref(p->m)) *
+               arf_get_d(arb_midref(acb_realref(t)), ARF_RND_NEAR) / (y * arf_get_d(arb_midref(acb_realref(slope)), ARF_RND_NEAR));
+    acb_clear(slope);
+    acb_clear(t);
+    acb_clear(at);
+    return fmax(fmin(pace, 1), 1e-4);
+}
+
 /* Patches from the exact real `left` to `right` (balls, t_left and t_right their heights), no sheet ending in between. */
 static bool walk_stretch(walker *w, const arb_t left, const arb_t t_left, const arb_t right, const arb_t t_right)
 {
@@ -389,12 +448,12 @@ static bool walk_stretch(walker *w, const arb_t left, const arb_t t_left, const 
     arb_set(t, t_left);
     end *= 1 + 1e-12;
     while (fine && at < end) {
-        double width = fmin(at / (w->first + 3), at / 7), next;
+        double width = fmin(at / (w->first + 3), at / 7) * coordinate_pace(w, at), narrow = width / 12, next;
         bool last;
         if (at + 2 * width > end - 0.2 * width)
             width = (end - at) / 2 * (1 + 1e-12);
         fine = w->s->count < DISCS_MOST && budget_ok(p->e);
-        while (fine && !disc_patch(w, at + width, width)) {
+        while (fine && !disc_patch(w, at + width, width, width > narrow)) {
             width /= 1.6;
             if (width < 1e-7 * at) {
                 arb_set_d(y, at);

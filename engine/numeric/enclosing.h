@@ -2,6 +2,7 @@
 #ifndef TW_NUMERIC_ENCLOSING_H
 #define TW_NUMERIC_ENCLOSING_H
 
+#include "engine/ball/tape.h"
 #include "engine/method/expansion.h"
 
 /* Does every partial sum of the contribution enclose: R_N has the sign of the first omitted nonzero term and is smaller? YES only

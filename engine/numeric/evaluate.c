@@ -35,7 +35,7 @@ static double log2_ball(const arb_t x)
     double out;
     mag_init(m);
     arb_get_mag(m, x);
-    out = mag_is_zero(m) ? -HUGE_VAL : mag_get_d_log2_approx(m);
+    out = mag_is_zero(m) ? -HUGE_VAL : mag_log2(m);
     mag_clear(m);
     return out;
 }

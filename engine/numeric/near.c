@@ -15,7 +15,7 @@ static double log2_abs(const arb_t x)
     double out;
     mag_init(m);
     arb_get_mag(m, x);
-    out = mag_is_zero(m) ? -HUGE_VAL : mag_get_d_log2_approx(m);
+    out = mag_is_zero(m) ? -HUGE_VAL : mag_log2(m);
     mag_clear(m);
     return out;
 }
@@ -113,7 +113,7 @@ static bool tail_small(const problem *p, const lemma *l, slong first, double T)
         tail_bound(tail, p, l, k, first, at);
         for (slong n = first; n < p->known; n++)
             scale = fmax(scale, log2_coefficient(p, n) + (n - first) * log2(T));
-        small = mag_is_zero(tail) || mag_get_d_log2_approx(tail) < scale - 11;
+        small = mag_is_zero(tail) || mag_log2(tail) < scale - 11;
     }
     mag_clear(tail);
     arb_clear(at);
@@ -224,18 +224,15 @@ bool near_build(patches *s, problem *p, double T_needed, double *T_near)
     arb_init(l.rho);
     T = fmin(T_needed, first_end(p));
     l.rho_d = HUGE_VAL;
-    if (!p->terminates) {
-        fine = lemma_find(&l, p, 1.35 * T_needed);
-        if (!fine)
-            s->reason = "the integrand could not be proved analytic around the critical point";
-        T = fmin(T, 0.8 * l.rho_d);
-        s->rho = l.rho_d;
-        fine = fine && near_cut(s, p, &l, &T);
-    }
+    /* also where the series ends: abs(x - 3) is 3 - x near 0 only */
+    fine = lemma_find(&l, p, 1.35 * T_needed);
+    if (!fine)
+        s->reason = "the integrand could not be proved analytic around the critical point";
+    T = fmin(T, 0.8 * l.rho_d);
+    s->rho = l.rho_d;
+    fine = fine && near_cut(s, p, &l, &T);
     while (fine && a < T) {
-        double reach = fmin(l.rho_d, 4 * T), b = a + 0.46 * (reach - a) * 0.98;
-        if (p->terminates)
-            b = a == 0 ? T / 8 : 2 * a;
+        double b = a + 0.46 * (fmin(l.rho_d, 4 * T) - a) * 0.98;
         if (b > 0.93 * T)
             b = T;
         near_patch(s, p, &l, a, b);

@@ -233,7 +233,7 @@ static double log2_term(const sheaf *s, slong first)
     }
     arb_get_mag(part, total);
     mag_mul(most, most, part);
-    out = mag_is_zero(most) ? -HUGE_VAL : mag_get_d_log2_approx(most);
+    out = mag_is_zero(most) ? -HUGE_VAL : mag_log2(most);
     mag_clear(part);
     mag_clear(most);
     arb_clear(total);
@@ -376,7 +376,7 @@ static bool sheaf_far(sheaf *s, slong first, expr *S_expr, double *y_far, bool p
         mag_add(s->far, rest, kept);
         *y_far = at;
         t = arf_get_d(arb_midref(s->t_far), ARF_RND_NEAR);
-        if (mag_is_zero(s->far) || target == -HUGE_VAL || mag_get_d_log2_approx(s->far) < target)
+        if (mag_is_zero(s->far) || target == -HUGE_VAL || mag_log2(s->far) < target)
             break;
         t *= k < 8 ? 1.1 : 1.25;
     }

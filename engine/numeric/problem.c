@@ -31,6 +31,27 @@ static char *words(const char *format, const char *what)
     return out;
 }
 
+double mag_log2(const mag_t m)
+{
+    arf_t x, mantissa;
+    fmpz_t exponent;
+    double out;
+    if (mag_is_zero(m))
+        return -HUGE_VAL;
+    if (mag_is_inf(m))
+        return HUGE_VAL;
+    arf_init(x);
+    arf_init(mantissa);
+    fmpz_init(exponent);
+    arf_set_mag(x, m);
+    arf_frexp(mantissa, exponent, x);
+    out = log2(arf_get_d(mantissa, ARF_RND_NEAR)) + fmpz_get_d(exponent);
+    fmpz_clear(exponent);
+    arf_clear(mantissa);
+    arf_clear(x);
+    return out;
+}
+
 void problem_power(arb_t t, const problem *p, const arb_t T, slong bits)
 {
     arb_pow_fmpq(t, T, p->m, bits);

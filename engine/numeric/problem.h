@@ -59,6 +59,9 @@ tw_status problem_coefficients(problem *p, slong count, slong bits);
 /* t at the exact coordinate y, as a ball. */
 void problem_t(arb_t t, const problem *p, const arb_t y, slong bits);
 
+/* log2 of a positive mag, to double precision whatever its exponent (-inf for 0). */
+double mag_log2(const mag_t m);
+
 /* T^m */
 void problem_power(arb_t t, const problem *p, const arb_t T, slong bits);
 

@@ -49,7 +49,7 @@ static void short_decimal(fmpq_t out, const arb_t x, slong digits, bool up)
     arb_get_mag(m, x);
     fmpq_zero(out);
     if (!mag_is_zero(m) && mag_is_finite(m)) {
-        exponent = (slong)floor(mag_get_d_log2_approx(m) * 0.30102999566398) - digits + 1;
+        exponent = (slong)floor(mag_log2(m) * 0.30102999566398) - digits + 1;
         arb_set_ui(power, 10);
         arb_pow_ui(power, power, (ulong)labs(exponent), 128);
         if (exponent >= 0)
@@ -206,10 +206,10 @@ static tw_status useful_from(tw_engine *e, expr **out, expansion *a, const env *
                 continue;
             mag_init(m);
             arb_get_mag(m, one->value + terms - 1);
-            last = mag_get_d_log2_approx(m);
+            last = mag_log2(m);
             for (slong j = terms; j < one->count; j++) {
                 arb_get_mag(m, one->value + j);
-                omitted = fmax(omitted, mag_get_d_log2_approx(m));
+                omitted = fmax(omitted, mag_log2(m));
             }
             fine = omitted <= last + 0.05;
             mag_clear(m);
@@ -457,7 +457,7 @@ static tw_status add_missing(tw_engine *e, const remainder_bound *out, expansion
                              expr **sum)
 {
     enum { LOGS = 16 };
-    expr *coefficients[LOGS] = {0}, *rest[LOGS] = {0};
+    expr *fronts[LOGS] = {0}, *rest[LOGS] = {0};
     const contribution *c = a->contributions + index;
     term *order = NULL;
     slong found = 0;
@@ -471,16 +471,16 @@ static tw_status add_missing(tw_engine *e, const remainder_bound *out, expansion
         slong j = FLINT_MIN(l->log_power, LOGS - 1);
         if (!whole || !one)
             status = TW_ERROR;
-        else if (!coefficients[j])
-            coefficients[j] = one, rest[j] = expr_div(e, put_values(e, whole, values), one);
+        else if (!fronts[j])
+            fronts[j] = one, rest[j] = expr_div(e, put_values(e, whole, values), one);
         else
-            coefficients[j] = expr_add(e, coefficients[j], one);
+            fronts[j] = expr_add(e, fronts[j], one);
     }
     for (int j = 0; j < LOGS && status == TW_OK; j++) {
         expr *size;
-        if (!coefficients[j])
+        if (!fronts[j])
             continue;
-        status = real_ball(e, x, coefficients[j], 128);
+        status = real_ball(e, x, fronts[j], 128);
         arb_abs(x, x);
         size = status == TW_OK ? decimal_expr(e, x, 4, true) : NULL;
         *sum = expr_add(e, *sum, modulus(e, expr_mul(e, expr_mul(e, size, rest[j]), put_values(e, c->prefactor, values))));
