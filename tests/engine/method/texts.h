@@ -107,4 +107,58 @@ static inline void assert_same_value(tw_engine *e, expr *a, const char *words)
     free(values);
 }
 
+/* prefactor * (the first `terms` terms of contribution k in order of size). */
+static inline expr *text_sum(tw_engine *e, expansion *a, size_t k, slong terms)
+{
+    term *list;
+    slong found;
+    if (expansion_order(e, a, k, terms, &list, &found) != TW_OK) fail_msg("no order: %s", e->error.words);
+    expr *sum = expr_int(e, 0);
+    for (slong n = 0; n < found; n++) sum = expr_add(e, sum, expansion_term(e, a, k, list[n]));
+    free(list);
+    return expr_mul(e, a->contributions[k].prefactor, sum);
+}
+
+/* A case of a table: what is declared, the integral, and what its expansion must be. */
+typedef struct text_case {
+    const char *large, *given, *integral;
+    slong terms;
+    const char *by;      /* or NULL */
+    const char *sum;     /* prefactor*terms of the first contribution */
+    const char *second;  /* of the second one, or NULL when there is no second */
+    const char *source;
+} text_case;
+
+static inline void text_check(const text_case *t)
+{
+    bool small = strncmp(t->large, "small ", 6) == 0;
+    tw_engine *e = text_engine(small ? t->large + 6 : t->large, small ? LARGE_SMALL : LARGE_POSITIVE);
+    if (t->given) text_given(e, t->given);
+    expansion a;
+    expansion_init(&a);
+    if (expand(e, &a, text_parse(e, t->integral), t->terms, t->by) != TW_OK)
+        fail_msg("%s: %s", t->integral, e->error.words);
+    assert_true(a.contribution_count == (t->second ? 2u : 1u));
+    assert_same_value(e, text_sum(e, &a, 0, t->terms), t->sum);
+    if (t->second) assert_same_value(e, text_sum(e, &a, 1, t->terms), t->second);
+    for (size_t k = 0; k < a.derivation.count; k++) assert_true(a.derivation.steps[k].after || a.derivation.steps[k].form || a.derivation.steps[k].detail);
+    expansion_clear(&a);
+    tw_engine_free(e);
+}
+
+/* The integral cannot be expanded, for a reason of this kind whose words hold `part`. */
+static inline void text_refused(const char *large, const char *given, const char *integral, const char *by, error_kind kind, const char *part)
+{
+    bool small = strncmp(large, "small ", 6) == 0;
+    tw_engine *e = text_engine(small ? large + 6 : large, small ? LARGE_SMALL : LARGE_POSITIVE);
+    if (given) text_given(e, given);
+    expansion a;
+    expansion_init(&a);
+    if (expand(e, &a, text_parse(e, integral), 4, by) == TW_OK) fail_msg("%s was expanded", integral);
+    if (e->error.kind != kind) fail_msg("%s: kind %s: %s", integral, error_kind_word(e->error.kind), e->error.words);
+    if (!strstr(e->error.words, part)) fail_msg("%s: `%s` is not in: %s", integral, part, e->error.words);
+    expansion_clear(&a);
+    tw_engine_free(e);
+}
+
 #endif
