@@ -192,7 +192,8 @@ static limit_kind limit_of(tw_engine *e, expr *u, expr *x, expr **C, fmpq_t alph
         behaviour b;
         behaviour_init(&b);
         behaviour_at_infinity(e, &b, u, x);
-        bool bounded = b.known && expr_is_zero(b.b) && b.k <= 0 && sign_of(e, b.a) <= 0;
+        int growth = b.known ? sign_of(e, b.b) : 2;
+        bool bounded = growth == -1 || (growth == 0 && b.k <= 0 && sign_of(e, b.a) <= 0);
         behaviour_clear(&b);
         return bounded ? LIMIT_BOUNDED : LIMIT_UNKNOWN;
     }

@@ -39,6 +39,8 @@ typedef struct frame {
     expr *x, *from, *to;   /* opened; x a fresh symbol */
     expr *body, *outside;  /* integral = outside * int body dx */
     bool mirrored;
+    expr *logarithm;       /* u with u = log of a linear function of the variable before it, `unwound` that variable; or NULL */
+    expr *unwound;
     separation s;
     place p;
 } frame;
@@ -225,8 +227,75 @@ static tw_status separate(frame *f)
 static expr *original_place(const frame *f, expr *t)
 {
     tw_engine *e = f->e;
+    if (f->logarithm) t = expr_substitute(e, f->unwound, f->logarithm, t);
     expr *x = expr_mul(e, expr_pow(e, f->r->large, expr_fmpq(e, f->s.stretch)), t);
     return f->mirrored ? expr_neg(e, x) : x;
+}
+
+/* ---- logarithmic phases ---- */
+
+/* phase = c*log(slope*x + constant) + terms free of x: the linear function and its slope; NULL otherwise. */
+static expr *linear_in_logarithm(tw_engine *e, expr *phase, expr *x, expr **slope)
+{
+    expr *const *terms, *const *factors;
+    size_t count = expr_terms(&phase, &terms);
+    expr *found = NULL;
+    for (size_t k = 0; k < count; k++) {
+        if (!expr_has(terms[k], x)) continue;
+        size_t n = expr_factors(&terms[k], &factors);
+        for (size_t m = 0; m < n; m++) {
+            if (!expr_has(factors[m], x)) continue;
+            if (found || !expr_is_call(factors[m], FUNCTION_LOG)) return NULL;
+            found = factors[m]->args[0];
+        }
+    }
+    expr **a;
+    slong degree;
+    if (!found || expr_polynomial(e, found, x, 1, &a, &degree) != TW_OK) return NULL;
+    *slope = degree == 1 ? a[1] : NULL;
+    free(a);
+    return *slope ? found : NULL;
+}
+
+/* log of the value of `linear` at an end; -inf where it vanishes; NULL where it is negative or not known. */
+static expr *end_of_logarithm(tw_engine *e, expr *linear, expr *x, expr *end)
+{
+    if (expr_is_inf(end) || expr_is_minus_inf(end)) return NULL;
+    expr *value = expr_substitute(e, linear, x, end);
+    int sign = value ? decide_sign(e, value) : 2;
+    if (sign == 0) return expr_neg(e, expr_constant_of(e, CONSTANT_INF));
+    return sign == 1 ? expr_call1(e, FUNCTION_LOG, value) : NULL;
+}
+
+/* x^s and (1 - x)^s on a finite path that ends where the base vanishes: base = exp(u) makes the phase linear and the path
+ * infinite. */
+static tw_status unwind_logarithm(frame *f)
+{
+    tw_engine *e = f->e;
+    expr *slope, *linear = linear_in_logarithm(e, f->s.phase, f->x, &slope);
+    if (!linear) return TW_OK;
+    int sign = decide_sign(e, slope);
+    expr *from = end_of_logarithm(e, linear, f->x, f->from), *to = end_of_logarithm(e, linear, f->x, f->to);
+    if (e->error.kind != ERROR_NONE) return TW_ERROR;
+    if (!from || !to || (sign != 1 && sign != -1) || (!expr_is_minus_inf(from) && !expr_is_minus_inf(to))) return TW_OK;
+    expr *u = expr_fresh(e, "u"), *base = expr_call1(e, FUNCTION_EXP, u);
+    expr *constant = expr_substitute(e, linear, f->x, expr_int(e, 0));
+    f->unwound = expr_div(e, expr_sub(e, base, constant), slope);
+    f->logarithm = u;
+    expr *moved = expr_substitute(e, f->s.amplitude, f->x, f->unwound);
+    expr *speed = expr_div(e, base, expr_mul(e, expr_int(e, sign), slope));
+    f->s.amplitude = normal_under_facts(e, expr_mul(e, moved, speed), NULL, 0);
+    f->s.phase = normal_under_facts(e, expr_expand(e, expr_substitute(e, f->s.phase, f->x, f->unwound)), NULL, 0);
+    if (!f->s.amplitude || !f->s.phase) return TW_ERROR;
+    f->x = u;
+    f->from = sign > 0 ? from : to;
+    f->to = sign > 0 ? to : from;
+    expr *scale = expr_pow(e, f->r->large, expr_fmpq(e, f->r->power));
+    f->body = expr_mul(e, f->s.amplitude, expr_call1(e, FUNCTION_EXP, expr_neg(e, expr_mul(e, scale, f->s.phase))));
+    char *words = expr_text(e, linear);
+    record(f, "take the base of the power for the variable", NULL, form_so_far(f), "%s = exp(u)", words ? words : "");
+    free(words);
+    return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
 }
 
 /* ---- branches ---- */
@@ -443,7 +512,7 @@ static tw_status read_stages(frame *f, text *summary)
     if (find_binder(f, r->integral) != TW_OK || open_binder(f) != TW_OK || find_large(f) != TW_OK) return TW_ERROR;
     step *first = record(f, "as typed", NULL, r->integral, NULL);
     first->before = r->integral;
-    if (turn_path(f) != TW_OK || mirror_path(f) != TW_OK || separate(f) != TW_OK) return TW_ERROR;
+    if (turn_path(f) != TW_OK || mirror_path(f) != TW_OK || separate(f) != TW_OK || unwind_logarithm(f) != TW_OK) return TW_ERROR;
     if (find_place(f) != TW_OK) return TW_ERROR;
     if (make_branches(f) != TW_OK) return TW_ERROR;
     begin_summary(f, summary);
