@@ -217,7 +217,7 @@ tw_status expansion_extend(tw_engine *e, expansion *a, slong terms)
 {
     for (size_t k = 0; k < a->contribution_count; k++) {
         const contribution *c = &a->contributions[k];
-        if (c->terminates || contribution_count_terms(c) >= terms) continue;
+        if (c->terminates || contribution_count_terms(c) >= terms || terms <= c->searched) continue;
         const method *m = method_find(c->method);
         if (!m) return engine_fail(e, ERROR_INTERNAL, "no method is called %s", c->method);
         if (m->extend(e, a, terms) != TW_OK) return TW_ERROR;

@@ -48,6 +48,7 @@ typedef struct contribution {
     domain_kind domain;
     local_form local;        /* no branches for a far end */
     local_form formal;       /* far ends only: factor * int_0 q exp(+scale * p), whose terms are (-scale)^-(n+1) times n! g_n */
+    slong searched;          /* so many terms were looked for in vain: the coefficients beyond those listed vanish far out */
     bool terminates;         /* no further terms: the lanes are the whole expansion of this contribution */
 } contribution;
 

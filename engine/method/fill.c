@@ -86,6 +86,18 @@ static tw_status branch_series(tw_engine *e, series *out, const branch *b, bool 
     return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
 }
 
+/* The series in t = p(x) ends: D^n q = 0 for a small n, D f = (f/p')' (parts.c). */
+static bool branch_ends(tw_engine *e, const branch *b)
+{
+    enum { POWERS = 4, SIZE_LIMIT = 200 };
+    expr *slope = expr_derivative(e, b->p, b->x), *f = b->q;
+    for (int n = 0; n < POWERS && f && expr_size(f) < SIZE_LIMIT; n++) {
+        f = expr_derivative(e, expr_div(e, f, slope), b->x);
+        if (f && expr_is_zero(f)) return true;
+    }
+    return false;
+}
+
 /* Lanes from the first `length` coefficients of every strand. */
 static tw_status fill_to_length(tw_engine *e, contribution *c, const kernel *k, slong length, condition_list *to)
 {
@@ -103,7 +115,7 @@ static tw_status fill_to_length(tw_engine *e, contribution *c, const kernel *k, 
         status = branch_series(e, &q, &b, k->far_end, length, to);
         slong one = local_stride(e, &b, k->pure, k->mu);
         stride = n == 0 || one == stride ? one : 1;
-        c->terminates = c->terminates && q.terminates;
+        c->terminates = c->terminates && (q.terminates || (status == TW_OK && !k->pure && branch_ends(e, &b)));
         if (status == TW_OK) status = drafts_add(e, &d, &q, k);
         series_clear(&q);
     }
@@ -179,7 +191,8 @@ static tw_status keep_terms(tw_engine *e, contribution *c, bool small, slong wan
     return TW_OK;
 }
 
-enum { ZEROS_AT_MOST = 512 }; /* coefficients that all vanish before the amplitude is taken to be flat */
+/* Coefficients that are looked at before fewer terms than asked for are enough, and before an amplitude is taken to be flat. */
+enum { ZEROS_AT_MOST = 512, SEARCH_FACTOR = 16 };
 
 tw_status contribution_fill(tw_engine *e, contribution *c, expr *large, bool small, slong terms, condition_list *conditions)
 {
@@ -194,6 +207,11 @@ tw_status contribution_fill(tw_engine *e, contribution *c, expr *large, bool sma
         if (found == 0 && length > ZEROS_AT_MOST) {
             status = engine_fail(e, ERROR_UNSUITABLE, "the first %ld coefficients at the critical point all vanish: the "
                                                       "integral is smaller than every power of %s", (long)length, large->is.name);
+            break;
+        }
+        if (length > SEARCH_FACTOR * terms + ZEROS_AT_MOST) {
+            c->searched = terms;
+            status = keep_terms(e, c, small, found, &found);
             break;
         }
         slong guess = found > 0 ? length / found * terms + terms : 0;

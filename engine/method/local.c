@@ -103,7 +103,7 @@ tw_status local_extend(tw_engine *e, expansion *a, slong terms, const char *name
     for (size_t k = 0; k < a->contribution_count; k++) {
         contribution *c = &a->contributions[k];
         if (strcmp(c->method, name) != 0 || c->terminates) continue;
-        if (contribution_count_terms(c) >= terms) continue;
+        if (contribution_count_terms(c) >= terms || terms <= c->searched) continue;
         if (contribution_fill(e, c, a->large, a->small, terms, NULL) != TW_OK) return TW_ERROR;
     }
     return TW_OK;
