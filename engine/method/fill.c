@@ -98,6 +98,39 @@ static bool branch_ends(tw_engine *e, const branch *b)
     return false;
 }
 
+/* The strands of one branch (or of both joined) into the drafts; *ends is cleared when they do not end. */
+static tw_status draft_branch(tw_engine *e, drafts *d, const branch *b, const kernel *k, slong length, condition_list *to, bool *ends)
+{
+    series q;
+    series_init(&q);
+    tw_status status = branch_series(e, &q, b, k->far_end, length, to);
+    if (status == TW_OK) *ends = *ends && (q.terminates || (!k->pure && branch_ends(e, b)));
+    if (status == TW_OK) status = drafts_add(e, d, &q, k);
+    series_clear(&q);
+    return status;
+}
+
+/* Both sides of a critical point as one amplitude. False, without an error, where its series cannot be had (a part that cancels
+ * identically may be beyond the field): the sides are then drafted one by one, and cancel as far as their coefficients do. */
+static bool draft_joined(tw_engine *e, drafts *d, const local_form *l, const kernel *k, slong length, condition_list *to, bool *ends)
+{
+    if (l->count < 2 || !k->pure) return false;
+    branch b = branches_joined(e, l);
+    if (draft_branch(e, d, &b, k, length, to, ends) == TW_OK) return true;
+    if (e->error.kind == ERROR_UNDECIDED || e->error.kind == ERROR_UNSUITABLE) engine_forgive(e);
+    return false;
+}
+
+/* The stride that all drafted branches have, 1 when they differ. */
+static slong common_stride(tw_engine *e, const local_form *l, const kernel *k, bool joined)
+{
+    branch both = joined ? branches_joined(e, l) : l->branches[0];
+    slong stride = local_stride(e, &both, k->pure, k->mu);
+    for (size_t n = 1; n < l->count && !joined; n++)
+        if (local_stride(e, &l->branches[n], k->pure, k->mu) != stride) return 1;
+    return stride;
+}
+
 /* Lanes from the first `length` coefficients of every strand. */
 static tw_status fill_to_length(tw_engine *e, contribution *c, const kernel *k, slong length, condition_list *to)
 {
@@ -105,21 +138,13 @@ static tw_status fill_to_length(tw_engine *e, contribution *c, const kernel *k, 
     drafts d;
     drafts_init(&d);
     c->terminates = true;
-    tw_status status = TW_OK;
-    slong stride = 0; /* common to all branches */
-    bool join = l->count > 1 && k->pure;
-    for (size_t n = 0; n < (join ? 1 : l->count) && status == TW_OK; n++) {
-        series q;
-        series_init(&q);
-        branch b = join ? branches_joined(e, l) : l->branches[n];
-        status = branch_series(e, &q, &b, k->far_end, length, to);
-        slong one = local_stride(e, &b, k->pure, k->mu);
-        stride = n == 0 || one == stride ? one : 1;
-        c->terminates = c->terminates && (q.terminates || (status == TW_OK && !k->pure && branch_ends(e, &b)));
-        if (status == TW_OK) status = drafts_add(e, &d, &q, k);
-        series_clear(&q);
-    }
+    bool joined = draft_joined(e, &d, l, k, length, to, &c->terminates);
+    tw_status status = e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
+    if (!joined) c->terminates = true;
+    for (size_t n = 0; n < l->count && !joined && status == TW_OK; n++)
+        status = draft_branch(e, &d, &l->branches[n], k, length, to, &c->terminates);
     if (status == TW_OK) status = drafts_finish(e, &d, c, k);
+    slong stride = status == TW_OK ? common_stride(e, l, k, joined) : 1;
     for (size_t n = 0; n < c->lane_count && status == TW_OK; n++) lane_thin(e, &c->lanes[n], stride);
     drafts_clear(&d);
     return status;
