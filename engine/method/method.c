@@ -130,14 +130,9 @@ static tw_status append(tw_engine *e, expansion *out, expansion *part)
         if (a != b)
             return engine_fail(e, ERROR_UNSUITABLE, "the integrals of this sum are of different exponential size: expand each by itself");
     }
-    for (size_t k = 0; k < part->contribution_count; k++) {
-        *expansion_add(out) = part->contributions[k];
-    }
+    for (size_t k = 0; k < part->contribution_count; k++) *expansion_add(out) = part->contributions[k];
     part->contribution_count = 0;
-    for (size_t k = 0; k < part->derivation.count; k++) {
-        *derivation_add(&out->derivation, "", NULL) = part->derivation.steps[k];
-    }
-    part->derivation.count = 0;
+    derivation_move(&out->derivation, &part->derivation);
     conditions_append(&out->conditions, &part->conditions);
     out->exact = out->exact && part->exact;
     return TW_OK;

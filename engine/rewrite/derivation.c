@@ -97,12 +97,25 @@ void derivation_clear(derivation *d)
     derivation_init(d);
 }
 
+static void make_room(derivation *d)
+{
+    if (d->count < d->room) return;
+    d->room = d->room ? 2 * d->room : 8;
+    d->steps = base_resize(d->steps, d->room * sizeof *d->steps);
+}
+
+void derivation_move(derivation *to, derivation *from)
+{
+    for (size_t k = 0; k < from->count; k++) {
+        make_room(to);
+        to->steps[to->count++] = from->steps[k];
+    }
+    from->count = 0;
+}
+
 step *derivation_add(derivation *d, const char *rule, const char *source)
 {
-    if (d->count == d->room) {
-        d->room = d->room ? 2 * d->room : 8;
-        d->steps = base_resize(d->steps, d->room * sizeof *d->steps);
-    }
+    make_room(d);
     step *s = &d->steps[d->count++];
     memset(s, 0, sizeof *s);
     s->rule = base_copy(rule);

@@ -47,5 +47,7 @@ void derivation_init(derivation *d);
 void derivation_clear(derivation *d);
 /* Appends an empty step with this rule and source and returns it (valid until the next append). */
 step *derivation_add(derivation *d, const char *rule, const char *source);
+/* The steps of `from` behind those of `to`; `from` is empty afterwards. */
+void derivation_move(derivation *to, derivation *from);
 
 #endif
