@@ -196,7 +196,7 @@ static void ball_beta(acb_t out, acb_srcptr const *a, size_t n, ball_mode m, slo
  * x to the right of the imaginary axis and -x to the left. With others, as in abs(x + i), it has none. */
 static bool no_continuation(acb_t out, ball_mode m)
 {
-    if (!m.analytic || m.real_args) return false;
+    if (m.real_args || !(m.analytic || m.off_line)) return false;
     acb_indeterminate(out);
     return true;
 }

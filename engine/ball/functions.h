@@ -9,6 +9,7 @@
 typedef struct ball_mode {
     bool analytic;
     bool real_args;
+    bool off_line; /* a real variable stands at a value that is not real: arguments that are not real_args have then no meaning */
 } ball_mode;
 
 typedef void (*ball_function)(acb_t out, acb_srcptr const *args, size_t n, ball_mode mode, slong prec);

@@ -51,6 +51,7 @@ struct tape {
     /* Beside each value: for real values of the variables inside their balls, is it real? Then abs, sign, min, ... of it have a
      * holomorphic continuation off the real line, which is what they mean there. */
     bool *real;
+    bool off_line;          /* some real variable's ball is not real in this run */
     slong constants_prec;   /* the constants' values stand at this precision; 0: not yet computed */
     acb_poly_struct *jets;  /* made at the first jet */
     expr **seen;            /* node -> op + 1, open addressing, only while compiling */

@@ -238,7 +238,7 @@ static bool is_real(const tape *t, const op *o, acb_srcptr (*value)(const tape *
 static void run_call(tape *t, acb_t out, const op *o, bool analytic, slong prec)
 {
     acb_srcptr small[8], *args = o->count <= 8 ? small : base_alloc(o->count * sizeof *args);
-    ball_mode m = {.analytic = analytic, .real_args = true};
+    ball_mode m = {.analytic = analytic, .real_args = true, .off_line = t->off_line && !o->constant};
     for (size_t k = 0; k < o->count; k++) {
         size_t from = t->operands[o->first + k];
         args[k] = t->values + from;
@@ -274,7 +274,10 @@ static void run_op(tape *t, size_t k, acb_srcptr at, bool analytic, slong prec)
     acb_ptr out = t->values + k;
     const size_t *from = t->operands + o->first;
     switch (o->kind) {
-    case OP_VARIABLE: acb_set(out, at + o->index); break;
+    case OP_VARIABLE:
+        acb_set(out, at + o->index);
+        t->off_line = t->off_line || (o->real && !acb_is_real(out));
+        break;
     case OP_SUM:
         acb_set(out, t->values + from[0]);
         for (size_t j = 1; j < o->count; j++) acb_add(out, out, t->values + from[j], prec);
@@ -315,6 +318,7 @@ static void run_constants(tape *t, slong prec)
 void tape_eval(acb_t out, tape *t, acb_srcptr at, bool analytic, slong prec)
 {
     run_constants(t, prec);
+    t->off_line = false;
     for (size_t k = 0; k < t->count; k++)
         if (!t->ops[k].constant) run_op(t, k, at, analytic, prec);
     acb_set(out, t->values + t->count - 1);
