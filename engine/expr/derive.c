@@ -270,7 +270,8 @@ static expr *airy_prime(tw_engine *e, bool bi, expr *x)
     expr *j_up = bessel_third(e, FUNCTION_BESSEL_J, 2, left), *j_down = bessel_third(e, FUNCTION_BESSEL_J, -2, left);
     expr *values[2], *at_zero = expr_call1(e, FUNCTION_GAMMA, expr_frac(e, 1, 3));
     if (bi) {
-        expr *i_up = bessel_third(e, FUNCTION_BESSEL_I, 2, right), *i_down = bessel_third(e, FUNCTION_BESSEL_I, -2, right);
+        expr *i_up = bessel_third(e, FUNCTION_BESSEL_I, 2, right);
+        expr *i_down = bessel_third(e, FUNCTION_BESSEL_I, -2, right);
         expr *both = expr_add(e, i_up, i_down);
         values[0] = expr_mul(e, expr_div(e, x, root), both);
         values[1] = expr_mul(e, expr_div(e, minus, root), expr_add(e, j_down, j_up));

@@ -49,7 +49,7 @@ typedef enum expr_constant { CONSTANT_PI, CONSTANT_I, CONSTANT_INF, CONSTANT_EUL
 
 typedef enum expr_relation {
     RELATION_LESS, RELATION_LESS_EQUAL, RELATION_EQUAL, RELATION_NOT_EQUAL, /* > and >= are turned round */
-    RELATION_INTEGER, RELATION_REAL, RELATION_COMPLEX                      /* of the left side; the right side equals it */
+    RELATION_INTEGER, RELATION_REAL, RELATION_COMPLEX /* of the left side; the right side equals it */
 } expr_relation;
 
 typedef struct expr expr_node;
@@ -90,7 +90,7 @@ expr *expr_fmpz(tw_engine *e, const fmpz_t n);
 expr *expr_fmpq(tw_engine *e, const fmpq_t q);
 expr *expr_constant_of(tw_engine *e, expr_constant c);
 expr *expr_symbol(tw_engine *e, const char *name);
-expr *expr_fresh(tw_engine *e, const char *hint);            /* a new symbol unlike any other; prints as hint or hint1 ... */
+expr *expr_fresh(tw_engine *e, const char *hint); /* a new symbol unlike any other; prints as hint or hint1 ... */
 expr *expr_sum(tw_engine *e, expr *const *terms, size_t n);    /* n >= 0 */
 expr *expr_product(tw_engine *e, expr *const *factors, size_t n);
 expr *expr_add(tw_engine *e, expr *a, expr *b);
