@@ -443,6 +443,8 @@ void describe_remainder(session *s, result *r, const expansion *a, const remaind
         if (bound->from) {
             text_addf(&line, "  for %s %s ", a->large->is.name, a->small ? "<=" : ">=");
             expr_print(s->e, &line, bound->from);
+        } else {
+            text_addf(&line, "  for all %s > 0", a->large->is.name);
         }
     } else {
         text_add(&line, bound->bound || a->exact ? "nothing remains" : "no bound");
