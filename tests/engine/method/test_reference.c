@@ -208,7 +208,10 @@ static slong compare(const numbers *want, const numbers *got, const arb_t horizo
         if (arb_lt(&want->exponent[k], horizon)) continue;
         slong n = 0;
         while (n < got->count && (!arb_overlaps(&got->exponent[n], &want->exponent[k]) || got->log_power[n] != want->log_power[k])) n++;
-        if (n == got->count && arb_contains_zero(&want->value[k])) continue;
+        if (n == got->count && arb_is_zero(&want->value[k])) { /* left out, as it should be */
+            compared++;
+            continue;
+        }
         if (n == got->count) fail_msg("%s: term %ld of the reference is missing", id, (long)k);
         arb_sub(d, &got->value[n], &want->value[k], BITS);
         arb_mul_2exp_si(size, &want->value[k], -600);
