@@ -54,7 +54,7 @@ expr *minus_one_power(tw_engine *e, const fmpq_t r);
 /* A value known by its form to be a real number (closed, small, made of rationals, pi, euler_constant, positive
  * powers, exp of such ...). */
 bool expr_is_real_constant(expr *a);
-/* Known to be a positive real number by its form alone: rationals, pi, euler_constant, their products and real powers. */
+/* Known to be a positive real number by its form alone: rationals, pi, their products, real powers. */
 bool expr_is_positive_constant(expr *a);
 /* Is the leading coefficient negative? Of a sum: of its first term that is no number, so x - 1 is not. */
 bool expr_leads_negative(expr *a);

@@ -234,7 +234,7 @@ static void binders_have_no_names(void **state)
     plain_env_clear(&v);
 }
 
-/* integral over t of (integral over u of f(t, u)), opened with a value that holds a bound variable of a third binder. */
+/* integral over t of (integral over u of f(t, u)), under a third binder. */
 static void nested_binders_shift(void **state)
 {
     (void)state;
