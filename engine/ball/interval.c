@@ -12,11 +12,14 @@ bool ball_is_nonnegative(const acb_t z)
     return arb_is_zero(acb_imagref(z)) && arb_is_nonnegative(acb_realref(z));
 }
 
+/* Bits for a difference beyond the operand's own: not exact, for the exponents may lie 2^40 apart. */
+enum { DIFFERENCE_BITS = 64 };
+
 bool ball_real_beyond(const acb_t z, slong n)
 {
     arb_t d;
     arb_init(d);
-    arb_sub_si(d, acb_realref(z), n, ARF_PREC_EXACT);
+    arb_sub_si(d, acb_realref(z), n, DIFFERENCE_BITS + arb_bits(acb_realref(z)));
     bool beyond = arb_is_positive(d);
     arb_clear(d);
     return beyond;
@@ -31,7 +34,7 @@ bool ball_real_within_one(const acb_t z)
 {
     arb_t d;
     arb_init(d);
-    arb_add_si(d, acb_realref(z), -1, ARF_PREC_EXACT);
+    arb_sub_si(d, acb_realref(z), 1, DIFFERENCE_BITS + arb_bits(acb_realref(z)));
     bool within = arb_is_negative(d) && ball_real_beyond(z, -1);
     arb_clear(d);
     return within;

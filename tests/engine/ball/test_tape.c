@@ -275,6 +275,37 @@ static void precision_changes(void **state)
     tw_engine_free(e);
 }
 
+/* Values whose exponents are far apart cost no memory. */
+static void huge_and_tiny(void **state)
+{
+    (void)state;
+    tw_engine *e = text_engine(NULL, LARGE_NONE);
+    expr *x = expr_symbol(e, "x");
+    static const char *const far[] = {"log(1 + exp(exp(x)))", "sqrt(1 + exp(exp(x))) - 1", "log(1 - exp(-exp(x)))",
+                                      "acosh(exp(exp(x)))", "atanh(exp(-exp(x)))", "asin(exp(-exp(x)))",
+                                      "exp(exp(x))*(1 + exp(-exp(x)))", "1 - cos(exp(-exp(x)))", "(1 + exp(exp(x)))^(1/3)"};
+    acb_t at, v;
+    acb_ptr jet = _acb_vec_init(3);
+    acb_init(at);
+    acb_init(v);
+    for (size_t k = 0; k < sizeof far / sizeof *far; k++) {
+        tape *t = tape_new(e, text_parse(e, far[k]), &x, 1);
+        for (int wide = 0; wide < 2; wide++) {
+            acb_set_d(at, 30.5);
+            if (wide) mag_set_d(arb_radref(acb_realref(at)), 20);
+            tape_eval(v, t, at, false, 64);
+            if (!wide && !acb_is_finite(v)) fail_msg("%s at 30.5 has no value", far[k]);
+            tape_eval(v, t, at, true, 64);
+            tape_jet(jet, t, at, 3, 64);
+        }
+        tape_free(t);
+    }
+    _acb_vec_clear(jet, 3);
+    acb_clear(at);
+    acb_clear(v);
+    tw_engine_free(e);
+}
+
 /* No digits lost near 0: the value beside its first Taylor term, relatively. */
 static void small_differences(void **state)
 {
@@ -309,7 +340,7 @@ int main(void)
     const struct CMUnitTest tests[] = {
         cmocka_unit_test(random_trees),     cmocka_unit_test(random_trees_analytic), cmocka_unit_test(closed_values),
         cmocka_unit_test(no_closed_value),  cmocka_unit_test(several_variables),     cmocka_unit_test(precision_changes),
-        cmocka_unit_test(small_differences),
+        cmocka_unit_test(small_differences), cmocka_unit_test(huge_and_tiny),
     };
     return cmocka_run_group_tests_name("test_tape", tests, NULL, NULL);
 }
