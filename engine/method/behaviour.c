@@ -1,6 +1,7 @@
-/* How a function grows at infinity, as an expression in the parameters, so that "converges for s > a + 3" can be said exactly.
- * The one idea: a record (exponential part b x^c, power a, power k of the logarithm) carried up the tree, sharp or an upper
- * bound; where signs of parameters are needed, the facts are asked; where no rule fits, nothing is claimed. */
+/* How a function grows at infinity, as an expression in the parameters, so that "converges for s > a + 3" can be said
+ * exactly. The one idea: a record (exponential part b x^c, power a, power k of the logarithm) carried up the tree,
+ * sharp or an upper bound; where signs of parameters are needed, the facts are asked; where no rule fits, nothing is
+ * claimed. */
 #include <stdlib.h>
 #include <string.h>
 
@@ -137,7 +138,8 @@ static void of_power(tw_engine *e, behaviour *out, expr *f, expr *x)
     out->b = expr_mul(e, out->b, r);
     out->a = expr_mul(e, out->a, r);
     if (out->k != 0) {
-        bool whole = expr_is_number(r) && fmpz_is_one(fmpq_denref(expr_number(r))) && fmpz_fits_si(fmpq_numref(expr_number(r)));
+        bool whole =
+            expr_is_number(r) && fmpz_is_one(fmpq_denref(expr_number(r))) && fmpz_fits_si(fmpq_numref(expr_number(r)));
         if (whole) out->k *= fmpz_get_si(fmpq_numref(expr_number(r)));
         else out->known = false;
     }
@@ -148,7 +150,8 @@ static void of_power(tw_engine *e, behaviour *out, expr *f, expr *x)
 
 typedef enum limit_kind { LIMIT_UNKNOWN, LIMIT_BOUNDED, LIMIT_POWER } limit_kind;
 
-/* The real function u(x) = C x^alpha + o(x^alpha) with alpha > 0 rational, C not 0, or bounded; by its series in 1/x. */
+/* The real function u(x) = C x^alpha + o(x^alpha) with alpha > 0 rational, C not 0, or bounded; by its series in 1/x.
+ */
 static limit_kind limit_by_series(tw_engine *e, expr *u, expr *x, expr **C, fmpq_t alpha)
 {
     expr *y = expr_fresh(e, "y");
@@ -178,7 +181,8 @@ static limit_kind limit_by_series(tw_engine *e, expr *u, expr *x, expr **C, fmpq
         }
     }
     series_clear(&s);
-    if (e->error.kind == ERROR_UNSUITABLE || e->error.kind == ERROR_UNDECIDED || e->error.kind == ERROR_VALUE) engine_forgive(e);
+    if (e->error.kind == ERROR_UNSUITABLE || e->error.kind == ERROR_UNDECIDED || e->error.kind == ERROR_VALUE)
+        engine_forgive(e);
     if (!*C) return LIMIT_UNKNOWN;
     return kind == LIMIT_BOUNDED && fmpq_sgn(alpha) > 0 ? LIMIT_POWER : kind;
 }
@@ -230,7 +234,8 @@ static bool holds_i(expr *a)
 }
 
 /* Functions that decay or grow like exp(rate * u^turn) up to powers. */
-static void of_exponential(tw_engine *e, behaviour *out, expr *C, const fmpq_t alpha, expr *rate, const fmpq_t turn, bool sharp)
+static void of_exponential(tw_engine *e, behaviour *out, expr *C, const fmpq_t alpha, expr *rate, const fmpq_t turn,
+                           bool sharp)
 {
     fmpq_t c;
     fmpq_init(c);
@@ -249,13 +254,17 @@ static void of_call_growing(tw_engine *e, behaviour *out, function_id F, expr *C
     fmpq_one(turn);
     switch (F) {
     case FUNCTION_EXP: of_exponential(e, out, C, alpha, one, turn, true); break;
-    case FUNCTION_COSH: case FUNCTION_SINH: of_exponential(e, out, absolute(e, C), alpha, one, turn, sign != 2); break;
-    case FUNCTION_SIN: case FUNCTION_COS: set_power(e, out, zero, 0, false); break;
-    case FUNCTION_TANH: case FUNCTION_ATAN: case FUNCTION_ERF: case FUNCTION_SIGN:
-        set_power(e, out, zero, 0, sign == 1 || sign == -1);
-        break;
+    case FUNCTION_COSH:
+    case FUNCTION_SINH: of_exponential(e, out, absolute(e, C), alpha, one, turn, sign != 2); break;
+    case FUNCTION_SIN:
+    case FUNCTION_COS: set_power(e, out, zero, 0, false); break;
+    case FUNCTION_TANH:
+    case FUNCTION_ATAN:
+    case FUNCTION_ERF:
+    case FUNCTION_SIGN: set_power(e, out, zero, 0, sign == 1 || sign == -1); break;
     case FUNCTION_ABS: set_power(e, out, expr_fmpq(e, alpha), 0, true); break;
-    case FUNCTION_LOG: case FUNCTION_ASINH:
+    case FUNCTION_LOG:
+    case FUNCTION_ASINH:
         if (sign == 1) set_power(e, out, zero, 1, true);
         break;
     case FUNCTION_ERFC:
@@ -263,23 +272,33 @@ static void of_call_growing(tw_engine *e, behaviour *out, function_id F, expr *C
         if (sign == 1) of_exponential(e, out, C, alpha, minus, turn, true);
         else set_power(e, out, zero, 0, sign == -1);
         break;
-    case FUNCTION_E1: case FUNCTION_BESSEL_K: case FUNCTION_GAMMA_UPPER:
+    case FUNCTION_E1:
+    case FUNCTION_BESSEL_K:
+    case FUNCTION_GAMMA_UPPER:
         if (sign == 1) of_exponential(e, out, C, alpha, minus, turn, F != FUNCTION_GAMMA_UPPER);
         break;
     case FUNCTION_BESSEL_I:
         if (sign == 1) of_exponential(e, out, C, alpha, one, turn, true);
         break;
-    case FUNCTION_BESSEL_J: case FUNCTION_BESSEL_Y:
+    case FUNCTION_BESSEL_J:
+    case FUNCTION_BESSEL_Y:
         if (sign == 1) set_power(e, out, zero, 0, false);
         break;
-    case FUNCTION_AI: case FUNCTION_BI: /* exp(-+ (2/3) u^(3/2)) (DLMF 9.7.5, 9.7.7) */
+    case FUNCTION_AI:
+    case FUNCTION_BI: /* exp(-+ (2/3) u^(3/2)) (DLMF 9.7.5, 9.7.7) */
         fmpq_set_si(turn, 3, 2);
         if (sign == 1) of_exponential(e, out, C, alpha, expr_frac(e, F == FUNCTION_AI ? -2 : 2, 3), turn, true);
         else if (sign == -1) set_power(e, out, zero, 0, false);
         break;
-    case FUNCTION_PSI: if (sign == 1) set_power(e, out, zero, 1, true); break;
-    case FUNCTION_LNGAMMA: if (sign == 1) set_power(e, out, expr_fmpq(e, alpha), 1, true); break;
-    case FUNCTION_ZETA: if (sign == 1) set_power(e, out, zero, 0, true); break;
+    case FUNCTION_PSI:
+        if (sign == 1) set_power(e, out, zero, 1, true);
+        break;
+    case FUNCTION_LNGAMMA:
+        if (sign == 1) set_power(e, out, expr_fmpq(e, alpha), 1, true);
+        break;
+    case FUNCTION_ZETA:
+        if (sign == 1) set_power(e, out, zero, 0, true);
+        break;
     default: break;
     }
     fmpq_clear(turn);
@@ -289,12 +308,21 @@ static void of_call_growing(tw_engine *e, behaviour *out, function_id F, expr *C
 static bool is_continuous_everywhere(function_id F)
 {
     switch (F) {
-    case FUNCTION_EXP: case FUNCTION_SIN: case FUNCTION_COS: case FUNCTION_SINH: case FUNCTION_COSH: case FUNCTION_TANH:
-    case FUNCTION_ATAN: case FUNCTION_ASINH: case FUNCTION_ABS: case FUNCTION_ERF: case FUNCTION_ERFC: case FUNCTION_AI:
-    case FUNCTION_BI: case FUNCTION_SIGN:
-        return true;
-    default:
-        return false;
+    case FUNCTION_EXP:
+    case FUNCTION_SIN:
+    case FUNCTION_COS:
+    case FUNCTION_SINH:
+    case FUNCTION_COSH:
+    case FUNCTION_TANH:
+    case FUNCTION_ATAN:
+    case FUNCTION_ASINH:
+    case FUNCTION_ABS:
+    case FUNCTION_ERF:
+    case FUNCTION_ERFC:
+    case FUNCTION_AI:
+    case FUNCTION_BI:
+    case FUNCTION_SIGN: return true;
+    default: return false;
     }
 }
 

@@ -1,7 +1,8 @@
-/* Does int_0^end q exp(-S p) dx converge for large S, and is q free of poles and jumps on the way? The one idea: three places
- * are looked at by themselves: the end 0 and a finite far end through the exponents of the series there, infinity through the
- * behaviour of q against that of p, and the open path through the bases of powers, logarithms and quotients in q, which must
- * keep away from 0. What is not proved becomes an open condition; what is refuted is an error with its reason. */
+/* Does int_0^end q exp(-S p) dx converge for large S, and is q free of poles and jumps on the way? The one idea: three
+ * places are looked at by themselves: the end 0 and a finite far end through the exponents of the series there,
+ * infinity through the behaviour of q against that of p, and the open path through the bases of powers, logarithms and
+ * quotients in q, which must keep away from 0. What is not proved becomes an open condition; what is refuted is an
+ * error with its reason. */
 #include "engine/method/convergence.h"
 
 #include <stdlib.h>
@@ -30,7 +31,8 @@ static int plain_sign(tw_engine *e, expr *f, expr *x);
 
 static bool is_real_symbolic(tw_engine *e, expr *a);
 
-/* What a term with a number in front is at least, beyond what its sign says: 3*exp(u) > 3 for u > 0, -2*cos(u) >= -2 for real u. */
+/* What a term with a number in front is at least, beyond what its sign says: 3*exp(u) > 3 for u > 0, -2*cos(u) >= -2
+ * for real u. */
 static bool term_bound(tw_engine *e, expr *part, expr *x, fmpq_t low, bool *strict)
 {
     expr *rest;
@@ -47,7 +49,8 @@ static bool term_bound(tw_engine *e, expr *part, expr *x, fmpq_t low, bool *stri
     if (fmpq_sgn(low) < 0 && F == FUNCTION_EXP) /* -2*exp(-u) > -2 */
         *strict = plain_sign(e, expr_neg(e, rest->args[0]), x) == 1;
     else
-        *strict = (F == FUNCTION_EXP || F == FUNCTION_COSH) && fmpq_sgn(low) > 0 && plain_sign(e, rest->args[0], x) == 1;
+        *strict =
+            (F == FUNCTION_EXP || F == FUNCTION_COSH) && fmpq_sgn(low) > 0 && plain_sign(e, rest->args[0], x) == 1;
     return *strict;
 }
 
@@ -91,7 +94,8 @@ static bool is_real_symbolic(tw_engine *e, expr *a)
     if (a->kind == EXPR_CONSTANT) return a->is.constant == CONSTANT_PI || a->is.constant == CONSTANT_EULER;
     if (a->kind == EXPR_NUMBER) return true;
     if (a->kind == EXPR_POWER)
-        return is_real_symbolic(e, a->args[0]) && expr_is_number(a->args[1]) && fmpz_is_one(fmpq_denref(expr_number(a->args[1])));
+        return is_real_symbolic(e, a->args[0]) && expr_is_number(a->args[1]) &&
+               fmpz_is_one(fmpq_denref(expr_number(a->args[1])));
     if (a->kind != EXPR_SUM && a->kind != EXPR_PRODUCT) return false;
     for (uint32_t k = 0; k < a->count; k++)
         if (!is_real_symbolic(e, a->args[k])) return false;
@@ -122,7 +126,8 @@ static int plain_sign(tw_engine *e, expr *f, expr *x)
     case EXPR_PRODUCT: return plain_sign_of_product(e, f, x);
     case EXPR_POWER: return plain_sign_of_power(e, f, x);
     case EXPR_CALL:
-        if (f->is.function == FUNCTION_EXP || f->is.function == FUNCTION_COSH) return is_real_symbolic(e, f->args[0]) ? 1 : -1;
+        if (f->is.function == FUNCTION_EXP || f->is.function == FUNCTION_COSH)
+            return is_real_symbolic(e, f->args[0]) ? 1 : -1;
         if (f->is.function == FUNCTION_SINH || f->is.function == FUNCTION_TANH || f->is.function == FUNCTION_ATAN ||
             f->is.function == FUNCTION_ASINH)
             return plain_sign(e, f->args[0], x);
@@ -144,7 +149,8 @@ static bool positive_between_ends(tw_engine *e, expr *f, expr *x, expr *end)
     expr **a;
     slong degree;
     if (expr_polynomial(e, f, x, 1, &a, &degree) != TW_OK) return false;
-    int left = decide_sign(e, a[0]), right = decide_sign(e, degree == 1 ? expr_add(e, a[0], expr_mul(e, a[1], end)) : a[0]);
+    int left = decide_sign(e, a[0]),
+        right = decide_sign(e, degree == 1 ? expr_add(e, a[0], expr_mul(e, a[1], end)) : a[0]);
     free(a);
     return (left == 0 || left == 1) && (right == 0 || right == 1) && left + right > 0;
 }
@@ -183,7 +189,9 @@ static int sample_sign(tw_engine *e, expr *f, expr *x, expr *end, slong k)
     acb_init(v);
     int seen = 0;
     if (there && ball_value(e, v, there, 64) == TW_OK && acb_is_finite(v) && arb_contains_zero(acb_imagref(v)))
-        seen = arb_is_positive(acb_realref(v)) ? SIGN_SEEN_POSITIVE : arb_is_negative(acb_realref(v)) ? SIGN_SEEN_NEGATIVE : 0;
+        seen = arb_is_positive(acb_realref(v))   ? SIGN_SEEN_POSITIVE
+               : arb_is_negative(acb_realref(v)) ? SIGN_SEEN_NEGATIVE
+                                                 : 0;
     acb_clear(v);
     if (e->error.kind == ERROR_VALUE || e->error.kind == ERROR_UNDECIDED) engine_forgive(e);
     return seen ? seen : SIGN_SEEN_NONE;
@@ -208,7 +216,7 @@ typedef struct path {
     tw_engine *e;
     reading *r;
     const branch *b;
-    bool unsure;        /* an open condition was added */
+    bool unsure; /* an open condition was added */
 } path;
 
 /* The variable as the user knows it, at the branch's point `x`: for words only. */
@@ -229,12 +237,25 @@ static void add_open(path *p, const char *format, expr *u)
 static bool is_entire_on_reals(function_id F)
 {
     switch (F) {
-    case FUNCTION_EXP: case FUNCTION_SIN: case FUNCTION_COS: case FUNCTION_SINH: case FUNCTION_COSH: case FUNCTION_TANH:
-    case FUNCTION_ATAN: case FUNCTION_ASINH: case FUNCTION_ERF: case FUNCTION_ERFC: case FUNCTION_AI: case FUNCTION_BI:
-    case FUNCTION_ABS: case FUNCTION_MIN: case FUNCTION_MAX: case FUNCTION_RE: case FUNCTION_IM: case FUNCTION_CONJ:
-        return true;
-    default:
-        return false;
+    case FUNCTION_EXP:
+    case FUNCTION_SIN:
+    case FUNCTION_COS:
+    case FUNCTION_SINH:
+    case FUNCTION_COSH:
+    case FUNCTION_TANH:
+    case FUNCTION_ATAN:
+    case FUNCTION_ASINH:
+    case FUNCTION_ERF:
+    case FUNCTION_ERFC:
+    case FUNCTION_AI:
+    case FUNCTION_BI:
+    case FUNCTION_ABS:
+    case FUNCTION_MIN:
+    case FUNCTION_MAX:
+    case FUNCTION_RE:
+    case FUNCTION_IM:
+    case FUNCTION_CONJ: return true;
+    default: return false;
     }
 }
 
@@ -242,8 +263,8 @@ static bool is_entire_on_reals(function_id F)
 static bool is_continuous(expr *u, expr *x)
 {
     if (!expr_has(u, x) || u == x) return true;
-    bool power = u->kind == EXPR_POWER && expr_is_number(u->args[1]) && fmpz_is_one(fmpq_denref(expr_number(u->args[1]))) &&
-                 fmpq_sgn(expr_number(u->args[1])) > 0;
+    bool power = u->kind == EXPR_POWER && expr_is_number(u->args[1]) &&
+                 fmpz_is_one(fmpq_denref(expr_number(u->args[1]))) && fmpq_sgn(expr_number(u->args[1])) > 0;
     bool call = u->kind == EXPR_CALL && is_entire_on_reals(u->is.function);
     if (!power && !call && u->kind != EXPR_SUM && u->kind != EXPR_PRODUCT) return false;
     for (uint32_t k = 0; k < u->count; k++)
@@ -271,8 +292,10 @@ static tw_status keep_from_zero(path *p, expr *u, bool is_pole)
     if (is_pole && has_zero(p, u)) {
         char *words = expr_text(e, u);
         if (words)
-            engine_fail(e, ERROR_DIVERGENT, "the integrand has a pole on the path, where %s = 0: the integral does not converge "
-                                            "(a principal value is not read as an integral)", words);
+            engine_fail(e, ERROR_DIVERGENT,
+                        "the integrand has a pole on the path, where %s = 0: the integral does not converge "
+                        "(a principal value is not read as an integral)",
+                        words);
         free(words);
         return TW_ERROR;
     }
@@ -299,8 +322,17 @@ static tw_status call_is_smooth(path *p, expr *f)
     if (is_entire_on_reals(f->is.function)) return TW_OK;
     switch (f->is.function) {
     case FUNCTION_TAN: return keep_from_zero(p, expr_call1(p->e, FUNCTION_COS, last), true);
-    case FUNCTION_LOG: case FUNCTION_LNGAMMA: case FUNCTION_GAMMA: case FUNCTION_PSI: case FUNCTION_E1: case FUNCTION_EI:
-    case FUNCTION_BESSEL_J: case FUNCTION_BESSEL_Y: case FUNCTION_BESSEL_I: case FUNCTION_BESSEL_K: case FUNCTION_GAMMA_UPPER:
+    case FUNCTION_LOG:
+    case FUNCTION_LNGAMMA:
+    case FUNCTION_GAMMA:
+    case FUNCTION_PSI:
+    case FUNCTION_E1:
+    case FUNCTION_EI:
+    case FUNCTION_BESSEL_J:
+    case FUNCTION_BESSEL_Y:
+    case FUNCTION_BESSEL_I:
+    case FUNCTION_BESSEL_K:
+    case FUNCTION_GAMMA_UPPER:
         if (last == p->b->x || positive_on_branch(p->e, last, p->b->x, p->b->end) == ANSWER_YES) return TW_OK;
         break;
     default: break;
@@ -319,9 +351,11 @@ static tw_status path_is_smooth(path *p, expr *f)
     switch (f->kind) {
     case EXPR_POWER: return power_is_smooth(p, f);
     case EXPR_CALL: return call_is_smooth(p, f);
-    case EXPR_INTEGRAL: case EXPR_CONTOUR: case EXPR_SUMMATION: case EXPR_PIECEWISE: case EXPR_ROOT:
-        add_open(p, "%s is continuous inside the path", f);
-        return TW_OK;
+    case EXPR_INTEGRAL:
+    case EXPR_CONTOUR:
+    case EXPR_SUMMATION:
+    case EXPR_PIECEWISE:
+    case EXPR_ROOT: add_open(p, "%s is continuous inside the path", f); return TW_OK;
     default: return TW_OK;
     }
 }
@@ -356,7 +390,8 @@ static tw_status end_converges(tw_engine *e, reading *r, expr *f, expr *x, expr 
     tw_status status = series_at_zero(e, &s, f, x, 1, NULL, NULL);
     if (status != TW_OK) {
         series_clear(&s);
-        if (e->error.kind != ERROR_UNSUITABLE && e->error.kind != ERROR_UNDECIDED && e->error.kind != ERROR_VALUE) return TW_ERROR;
+        if (e->error.kind != ERROR_UNSUITABLE && e->error.kind != ERROR_UNDECIDED && e->error.kind != ERROR_VALUE)
+            return TW_ERROR;
         engine_forgive(e);
         *sure = false;
         return TW_OK;
@@ -367,8 +402,10 @@ static tw_status end_converges(tw_engine *e, reading *r, expr *f, expr *x, expr 
         if (expr_is_number(a)) {
             char *words = expr_text(e, a), *where = expr_text(e, place);
             if (words && where)
-                engine_fail(e, ERROR_DIVERGENT, "the integrand behaves like a power %s at the end %s = %s: the integral does not "
-                                                "converge there", words, r->original_variable->is.name, where);
+                engine_fail(e, ERROR_DIVERGENT,
+                            "the integrand behaves like a power %s at the end %s = %s: the integral does not "
+                            "converge there",
+                            words, r->original_variable->is.name, where);
             free(words);
             free(where);
             status = TW_ERROR;
@@ -387,7 +424,8 @@ static tw_status far_end_converges(tw_engine *e, reading *r, const branch *b, ex
     if (!turned) return TW_ERROR;
     bool sure = true;
     if (end_converges(e, r, turned, y, far_place, &sure) != TW_OK) return TW_ERROR;
-    if (!sure) conditions_add(&r->conditions, "the integrand can be integrated up to the far end", NULL, CONDITION_OPEN);
+    if (!sure)
+        conditions_add(&r->conditions, "the integrand can be integrated up to the far end", NULL, CONDITION_OPEN);
     return TW_OK;
 }
 
@@ -418,7 +456,8 @@ static verdict weigh(tw_engine *e, const behaviour *q, const behaviour *p, expr 
         *from = q->b;
         return p->k == 0 ? CONVERGES : CANNOT_SAY;
     }
-    if (!expr_is_zero(p->a) || growing != 0) return growing == 1 && q->sharp && expr_is_zero(p->a) ? DIVERGES : CANNOT_SAY;
+    if (!expr_is_zero(p->a) || growing != 0)
+        return growing == 1 && q->sharp && expr_is_zero(p->a) ? DIVERGES : CANNOT_SAY;
     if (p->k > 1) return CONVERGES;
     if (p->k < 1) return sign_of(e, expr_add(e, q->a, expr_int(e, 1))) == -1 ? CONVERGES : CANNOT_SAY;
     *from = expr_add(e, q->a, expr_int(e, 1));
@@ -440,7 +479,8 @@ static expr *coefficient_at_infinity(tw_engine *e, expr *f, expr *x, expr *a)
         }
     }
     series_clear(&s);
-    if (e->error.kind == ERROR_UNSUITABLE || e->error.kind == ERROR_UNDECIDED || e->error.kind == ERROR_VALUE) engine_forgive(e);
+    if (e->error.kind == ERROR_UNSUITABLE || e->error.kind == ERROR_UNDECIDED || e->error.kind == ERROR_VALUE)
+        engine_forgive(e);
     return found;
 }
 
@@ -449,11 +489,13 @@ static expr *leading_constant(tw_engine *e, expr *p, expr *x, const behaviour *g
 {
     if (p == x) return expr_int(e, 1);
     if (g->k == 0) return coefficient_at_infinity(e, p, x, g->a);
-    if (g->k == 1 && expr_is_zero(g->a)) return coefficient_at_infinity(e, expr_derivative(e, p, x), x, expr_int(e, -1));
+    if (g->k == 1 && expr_is_zero(g->a))
+        return coefficient_at_infinity(e, expr_derivative(e, p, x), x, expr_int(e, -1));
     return NULL;
 }
 
-/* By the certified record of growth: S is large enough when |q| exp(-S p), p >= c x^a, decays. Only for fixed parameters. */
+/* By the certified record of growth: S is large enough when |q| exp(-S p), p >= c x^a, decays. Only for fixed
+ * parameters. */
 static verdict weigh_by_record(tw_engine *e, const branch *b, const behaviour *p, expr **from)
 {
     static const env nowhere = {0, NULL, NULL};
@@ -484,7 +526,8 @@ static verdict weigh_by_record(tw_engine *e, const branch *b, const behaviour *p
         arb_clear(zero);
     }
     growth_bound_clear(&g);
-    if (e->error.kind != ERROR_TIME && e->error.kind != ERROR_INTERRUPT && e->error.kind != ERROR_MEMORY) engine_forgive(e);
+    if (e->error.kind != ERROR_TIME && e->error.kind != ERROR_INTERRUPT && e->error.kind != ERROR_MEMORY)
+        engine_forgive(e);
     return said;
 }
 
@@ -508,7 +551,8 @@ static tw_status infinity_converges(tw_engine *e, reading *r, const branch *b, e
     if (e->error.kind != ERROR_NONE) return TW_ERROR;
     if (said == DIVERGES) {
         char *words = expr_text(e, b->q);
-        engine_fail(e, ERROR_DIVERGENT, "the amplitude %s grows faster than the kernel decays: the integral converges for no %s",
+        engine_fail(e, ERROR_DIVERGENT,
+                    "the amplitude %s grows faster than the kernel decays: the integral converges for no %s",
                     words ? words : "", r->large->is.name);
         free(words);
         return TW_ERROR;
@@ -531,7 +575,9 @@ tw_status branch_converges(tw_engine *e, reading *r, const branch *b, expr *far_
     path p = {e, r, b, false};
     bool sure = true;
     if (end_converges(e, r, b->q, b->x, r->place, &sure) != TW_OK || path_is_smooth(&p, b->q) != TW_OK) return TW_ERROR;
-    if (!sure) conditions_add(&r->conditions, "the integrand can be integrated up to the critical point", NULL, CONDITION_OPEN);
+    if (!sure)
+        conditions_add(&r->conditions, "the integrand can be integrated up to the critical point", NULL,
+                       CONDITION_OPEN);
     if (!expr_is_inf(b->end)) return far_end_converges(e, r, b, far_place);
     return infinity_converges(e, r, b, least, proved);
 }

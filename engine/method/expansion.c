@@ -1,6 +1,6 @@
-/* The expansion as a value: lifetime, the order of its terms by size, a term as an expression. The one idea: the terms of a
- * contribution's lanes are merged like sorted lists; a lane that is known only so far stops the merge where its next, unknown
- * term could come first. It may not know how lanes are made. */
+/* The expansion as a value: lifetime, the order of its terms by size, a term as an expression. The one idea: the terms
+ * of a contribution's lanes are merged like sorted lists; a lane that is known only so far stops the merge where its
+ * next, unknown term could come first. It may not know how lanes are made. */
 #include "engine/method/expansion.h"
 
 #include <stdlib.h>
@@ -116,7 +116,7 @@ typedef struct order {
     tw_engine *e;
     const contribution *c;
     bool small;
-    slong *next;      /* of each lane: the first index not yet taken, zeros skipped */
+    slong *next; /* of each lane: the first index not yet taken, zeros skipped */
 } order;
 
 static bool lane_is_out(const order *o, size_t k)
@@ -153,8 +153,10 @@ static bool comes_before(order *o, size_t i, size_t j)
     int sign = compare_exponents(o, i, j);
     if (sign == 2 && o->e->error.kind == ERROR_NONE) {
         char *a = expr_text(o->e, o->c->lanes[i].first_exponent), *b = expr_text(o->e, o->c->lanes[j].first_exponent);
-        engine_fail(o->e, ERROR_UNDECIDED, "the facts do not order the exponents %s and %s (up to whole steps): declare more of their "
-                                           "parameters with `given`", a ? a : "", b ? b : "");
+        engine_fail(o->e, ERROR_UNDECIDED,
+                    "the facts do not order the exponents %s and %s (up to whole steps): declare more of their "
+                    "parameters with `given`",
+                    a ? a : "", b ? b : "");
         free(a);
         free(b);
     }
@@ -233,9 +235,8 @@ expr *expansion_term(tw_engine *e, const expansion *a, size_t k, term t)
     fmpq_mul_si(steps, l->step, t.n);
     expr *exponent = expr_add(e, l->first_exponent, expr_fmpq(e, steps));
     fmpq_clear(steps);
-    expr *log_part = l->log_power == 0
-                         ? expr_int(e, 1)
-                         : expr_pow(e, expr_call1(e, FUNCTION_LOG, a->large), expr_int(e, l->log_power));
+    expr *log_part = l->log_power == 0 ? expr_int(e, 1)
+                                       : expr_pow(e, expr_call1(e, FUNCTION_LOG, a->large), expr_int(e, l->log_power));
     expr *parts[] = {coefficient_expr(e, &l->c, t.n), l->constant, log_part, expr_pow(e, a->large, exponent)};
     for (size_t n = 0; n < 4; n++)
         if (!parts[n]) return NULL;

@@ -11,7 +11,7 @@
 #include "engine/rewrite/derivation.h"
 
 typedef struct lane {
-    expr *constant;       /* 1, Gamma(1/3), Gamma(nu + 1), ... */
+    expr *constant; /* 1, Gamma(1/3), Gamma(nu + 1), ... */
     slong log_power;
     expr *first_exponent; /* may hold the other parameters */
     fmpq_t step;          /* negative for large s, positive for small h */
@@ -22,43 +22,51 @@ typedef struct lane {
  *     int_0^end q(x) exp(-scale * p(x)) dx,     p(0) = 0, p increasing on (0, end), q free of the large parameter.
  * x > 0 runs along the branch; q may have x^(lambda-1) and log(x)^k at 0. */
 typedef struct branch {
-    expr *x;       /* a symbol */
-    expr *end;     /* inf or an expression > 0 */
+    expr *x;   /* a symbol */
+    expr *end; /* inf or an expression > 0 */
     expr *p, *q;
 } branch;
 
 typedef struct local_form {
-    expr *scale;   /* positive, e.g. s, 3*s, s^2, h^-1: a constant times a power of the large parameter */
-    expr *factor;  /* e.g. 1, exp(-2*s), s^(1/2) */
+    expr *scale;  /* positive, e.g. s, 3*s, s^2, h^-1: a constant times a power of the large parameter */
+    expr *factor; /* e.g. 1, exp(-2*s), s^(1/2) */
     size_t count;
     branch *branches;
 } local_form;
 
-typedef enum point_kind { POINT_END, POINT_INTERIOR, POINT_STATIONARY, POINT_SADDLE, POINT_SINGULAR, POINT_FAR_END } point_kind;
+typedef enum point_kind {
+    POINT_END,
+    POINT_INTERIOR,
+    POINT_STATIONARY,
+    POINT_SADDLE,
+    POINT_SINGULAR,
+    POINT_FAR_END
+} point_kind;
 const char *point_kind_word(point_kind k); /* "end", "interior", ..., "far-end" */
 
 typedef struct contribution {
-    expr *variable, *place;  /* "x = 0" */
+    expr *variable, *place; /* "x = 0" */
     point_kind kind;
-    const char *method;      /* "watson", ... */
-    bool dominant;           /* else subdominant: listed, summed only when asked */
-    expr *prefactor;         /* in the large parameter and the others */
+    const char *method; /* "watson", ... */
+    bool dominant;      /* else subdominant: listed, summed only when asked */
+    expr *prefactor;    /* in the large parameter and the others */
     size_t lane_count;
     lane *lanes;
     domain_kind domain;
-    local_form local;        /* no branches for a far end */
-    local_form formal;       /* far ends only: factor * int_0 q exp(+scale * p), whose terms are (-scale)^-(n+1) times n! g_n */
-    slong searched;          /* so many terms were looked for in vain: the coefficients beyond those listed vanish far out */
-    bool terminates;         /* no further terms: the lanes are the whole expansion of this contribution */
+    local_form local; /* no branches for a far end */
+    local_form
+        formal;      /* far ends only: factor * int_0 q exp(+scale * p), whose terms are (-scale)^-(n+1) times n! g_n */
+    slong searched;  /* so many terms were looked for in vain: the coefficients beyond those listed vanish far out */
+    bool terminates; /* no further terms: the lanes are the whole expansion of this contribution */
 } contribution;
 
 typedef struct method method;
 
 typedef struct expansion {
-    expr *integral;          /* as typed */
-    expr *large;             /* the symbol */
-    bool small;              /* a small parameter: powers of h */
-    slong terms_asked;       /* N nonzero terms of each contribution */
+    expr *integral;    /* as typed */
+    expr *large;       /* the symbol */
+    bool small;        /* a small parameter: powers of h */
+    slong terms_asked; /* N nonzero terms of each contribution */
     size_t contribution_count;
     contribution *contributions;
     bool exact;              /* terminating and nothing left out: label `exact` */
@@ -66,8 +74,8 @@ typedef struct expansion {
     condition_list conditions;
     derivation derivation;
     const method *made_by;
-    char *why;               /* what the engine chose and why, one sentence */
-    expr **facts;            /* the facts in force when it was made (EXPR_RELATION) */
+    char *why;    /* what the engine chose and why, one sentence */
+    expr **facts; /* the facts in force when it was made (EXPR_RELATION) */
     condition_label *fact_labels;
     size_t fact_count;
     struct bound_cache *cache; /* engine/numeric's memory of proved bounds; freed through bound_cache_free */
@@ -89,13 +97,14 @@ void local_form_copy(local_form *to, const local_form *from); /* `to` is initial
 /* Makes sure that each contribution has at least `terms` nonzero terms (or terminates): extends the lanes in place. */
 tw_status expansion_extend(tw_engine *e, expansion *a, slong terms);
 
-/* One term in order of size: exponent order for large s (ties: higher log power first), across the lanes of a contribution. */
+/* One term in order of size: exponent order for large s (ties: higher log power first), across the lanes of a
+ * contribution. */
 typedef struct term {
     size_t lane;
-    slong n;         /* index in the lane */
+    slong n; /* index in the lane */
 } term;
-/* The first `count` nonzero terms of contribution k in order of size into a fresh array (free() it), *found of them (fewer when it
- * terminates). Symbolic exponents are ordered by the facts; ERROR_UNDECIDED when they cannot be. */
+/* The first `count` nonzero terms of contribution k in order of size into a fresh array (free() it), *found of them
+ * (fewer when it terminates). Symbolic exponents are ordered by the facts; ERROR_UNDECIDED when they cannot be. */
 tw_status expansion_order(tw_engine *e, expansion *a, size_t k, slong count, term **terms, slong *found);
 
 /* The term as an expression in the large parameter, without the contribution's prefactor. */

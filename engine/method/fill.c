@@ -1,6 +1,6 @@
-/* Filling a contribution from its local form: series of the amplitude, branch by branch, then lanes, cut where the terms asked
- * for end. The one idea: everything is made anew from the local form with a greater length when more is wanted (lengths grow
- * by half at least, so the work in all is a small multiple of the last). */
+/* Filling a contribution from its local form: series of the amplitude, branch by branch, then lanes, cut where the
+ * terms asked for end. The one idea: everything is made anew from the local form with a greater length when more is
+ * wanted (lengths grow by half at least, so the work in all is a small multiple of the last). */
 #include <stdlib.h>
 #include <string.h>
 
@@ -46,10 +46,12 @@ static tw_status kernel_read(tw_engine *e, kernel *k, const contribution *c, exp
     k->far_end = c->local.count == 0;
     fmpq_one(k->mu);
     k->pure = !k->far_end;
-    for (size_t n = 0; n < l->count && k->pure; n++) k->pure = is_pure_power(e, l->branches[n].p, l->branches[n].x, k->mu);
+    for (size_t n = 0; n < l->count && k->pure; n++)
+        k->pure = is_pure_power(e, l->branches[n].p, l->branches[n].x, k->mu);
     if (!k->pure) fmpq_one(k->mu);
     if (!k->constant || !rest) return TW_ERROR;
-    if (expr_has(k->constant, large)) return engine_fail(e, ERROR_INTERNAL, "the scale is no power of the large parameter");
+    if (expr_has(k->constant, large))
+        return engine_fail(e, ERROR_INTERNAL, "the scale is no power of the large parameter");
     return TW_OK;
 }
 
@@ -61,7 +63,8 @@ static void take_conditions(tw_engine *e, condition_list *to, expr **conditions,
     free(conditions);
 }
 
-/* Pure powers on both sides: one amplitude, the sum of both, so that what cancels does so in the coefficients' own domain. */
+/* Pure powers on both sides: one amplitude, the sum of both, so that what cancels does so in the coefficients' own
+ * domain. */
 static branch branches_joined(tw_engine *e, const local_form *l)
 {
     branch b = l->branches[0];
@@ -70,7 +73,8 @@ static branch branches_joined(tw_engine *e, const local_form *l)
     return b;
 }
 
-static tw_status branch_series(tw_engine *e, series *out, const branch *b, bool far_end, slong length, condition_list *to)
+static tw_status branch_series(tw_engine *e, series *out, const branch *b, bool far_end, slong length,
+                               condition_list *to)
 {
     if (!b->q) return TW_ERROR;
     fmpq_t mu;
@@ -99,7 +103,8 @@ static bool branch_ends(tw_engine *e, const branch *b)
 }
 
 /* The strands of one branch (or of both joined) into the drafts; *ends is cleared when they do not end. */
-static tw_status draft_branch(tw_engine *e, drafts *d, const branch *b, const kernel *k, slong length, condition_list *to, bool *ends)
+static tw_status draft_branch(tw_engine *e, drafts *d, const branch *b, const kernel *k, slong length,
+                              condition_list *to, bool *ends)
 {
     series q;
     series_init(&q);
@@ -110,9 +115,11 @@ static tw_status draft_branch(tw_engine *e, drafts *d, const branch *b, const ke
     return status;
 }
 
-/* Both sides of a critical point as one amplitude. False, without an error, where its series cannot be had (a part that cancels
- * identically may be beyond the field): the sides are then drafted one by one, and cancel as far as their coefficients do. */
-static bool draft_joined(tw_engine *e, drafts *d, const local_form *l, const kernel *k, slong length, condition_list *to, bool *ends)
+/* Both sides of a critical point as one amplitude. False, without an error, where its series cannot be had (a part that
+ * cancels identically may be beyond the field): the sides are then drafted one by one, and cancel as far as their
+ * coefficients do. */
+static bool draft_joined(tw_engine *e, drafts *d, const local_form *l, const kernel *k, slong length,
+                         condition_list *to, bool *ends)
 {
     if (l->count < 2 || !k->pure) return false;
     branch b = branches_joined(e, l);
@@ -165,8 +172,8 @@ static void lane_cut(lane *l, slong count)
     c->count = count;
 }
 
-/* How many coefficients of lane l belong to the terms kept: one past the last kept one, and on over zeros while these come
- * before the last kept term of all (else the lane's unknown rest would seem to come first). */
+/* How many coefficients of lane l belong to the terms kept: one past the last kept one, and on over zeros while these
+ * come before the last kept term of all (else the lane's unknown rest would seem to come first). */
 static slong kept_in_lane(const contribution *c, size_t l, const term *terms, slong found)
 {
     slong count = 0;
@@ -177,7 +184,8 @@ static slong kept_in_lane(const contribution *c, size_t l, const term *terms, sl
     return count;
 }
 
-/* Zeros at the end of a lane that reach beyond the last kept term say nothing; the lane that holds the last term has none. */
+/* Zeros at the end of a lane that reach beyond the last kept term say nothing; the lane that holds the last term has
+ * none. */
 static void lanes_cut(contribution *c, const term *terms, slong found)
 {
     size_t last = terms[found - 1].lane, kept = 0;
@@ -216,10 +224,12 @@ static tw_status keep_terms(tw_engine *e, contribution *c, bool small, slong wan
     return TW_OK;
 }
 
-/* Coefficients that are looked at before fewer terms than asked for are enough, and before an amplitude is taken to be flat. */
+/* Coefficients that are looked at before fewer terms than asked for are enough, and before an amplitude is taken to be
+ * flat. */
 enum { ZEROS_AT_MOST = 512, SEARCH_FACTOR = 16 };
 
-tw_status contribution_fill(tw_engine *e, contribution *c, expr *large, bool small, slong terms, condition_list *conditions)
+tw_status contribution_fill(tw_engine *e, contribution *c, expr *large, bool small, slong terms,
+                            condition_list *conditions)
 {
     kernel k;
     kernel_init(&k);
@@ -230,8 +240,10 @@ tw_status contribution_fill(tw_engine *e, contribution *c, expr *large, bool sma
         if (status == TW_OK) status = keep_terms(e, c, small, terms, &found);
         if (status != TW_OK || found >= terms) break;
         if (found == 0 && length > ZEROS_AT_MOST) {
-            status = engine_fail(e, ERROR_UNSUITABLE, "the first %ld coefficients at the critical point all vanish: the "
-                                                      "integral is smaller than every power of %s", (long)length, large->is.name);
+            status = engine_fail(e, ERROR_UNSUITABLE,
+                                 "the first %ld coefficients at the critical point all vanish: the "
+                                 "integral is smaller than every power of %s",
+                                 (long)length, large->is.name);
             break;
         }
         if (length > SEARCH_FACTOR * terms + ZEROS_AT_MOST) {

@@ -1,11 +1,14 @@
 /* From strands to lanes: int_0^inf x^a log(x)^k exp(-S x^mu) dx for every term of a series, with S = c s^K.
  *
- * The one idea: with z = (a + 1)/mu,
- *     int_0^inf x^a log(x)^k exp(-S x^mu) dx = mu^-(k+1) (d/dz)^k [Gamma(z) S^-z]                      (DLMF 2.3.8, 2.3.9)
+ * The one idea: with z = (a + 1)/mu the integral is
+ *
+ *     mu^-(k+1) (d/dz)^k [Gamma(z) S^-z]                                            (DLMF 2.3.8, 2.3.9)
  *       = mu^-(k+1) Gamma(z) c^-z s^(-K z) sum_i C(k,i) (-K log s)^i E_(k-i)(z),
  *     E_0 = 1,  E_(m+1) = sum_i C(m,i) E_(m-i) P_i,  P_0 = psi(z) - log c,  P_i = polygamma(i, z),
- * and along a residue class z = r + i of the integers Gamma(z) = Gamma(r) (r)_i (DLMF 5.5.1) and polygamma(j, z) moves by
- * rational numbers (DLMF 5.15.5), so that each class has one constant and rational coefficients (times psi values). */
+ *
+ * and along a residue class z = r + i of the integers Gamma(z) = Gamma(r) (r)_i (DLMF 5.5.1) and polygamma(j, z) moves
+ * by rational numbers (DLMF 5.15.5), so that each class has one constant and rational coefficients (times psi values).
+ */
 #include "engine/method/lanes.h"
 
 #include <stdlib.h>
@@ -17,8 +20,8 @@ struct draft {
     expr *base; /* z of index 0; index n stands for z = base + n*step */
     slong step;
     slong count;
-    fmpq *q;    /* count entries while all are rational, else NULL */
-    expr **x;   /* then these */
+    fmpq *q;  /* count entries while all are rational, else NULL */
+    expr **x; /* then these */
 };
 
 void kernel_init(kernel *k)
@@ -63,7 +66,8 @@ void drafts_clear(drafts *d)
 
 /* ---- values of psi ---- */
 
-/* psi at p/q in (0, 1] for q = 1, 2, 3, 4, 6: -euler_constant - (logs) - sign*(cotangent part) (DLMF 5.4.12, 5.4.13, 5.4.19). */
+/* psi at p/q in (0, 1] for q = 1, 2, 3, 4, 6: -euler_constant - (logs) - sign*(cotangent part)
+ * (DLMF 5.4.12, 5.4.13, 5.4.19). */
 static expr *psi_known(tw_engine *e, slong p, slong q)
 {
     expr *pi = expr_constant_of(e, CONSTANT_PI), *half = expr_frac(e, 1, 2);
@@ -133,16 +137,16 @@ expr *polygamma_value(tw_engine *e, slong order, const fmpq_t r)
 /* At z = base + i: the rising factorial (base)_i, and the moving parts of the polygamma values. */
 typedef struct walk {
     tw_engine *e;
-    bool rational;     /* base is r in (0, 1] */
-    fmpq_t r, z;       /* then; z = r + i */
+    bool rational; /* base is r in (0, 1] */
+    fmpq_t r, z;   /* then; z = r + i */
     expr *base;
     slong i;
     fmpq_t rising;
-    expr *rising_x;    /* of a base that is not rational */
-    slong logs;        /* P_0 .. P_(logs-1) are wanted */
-    expr **start;      /* P_j at base (log c taken off P_0) */
-    fmpq *moved;       /* P_j(z) - P_j(base) when rational */
-    expr **moved_x;    /* and when not */
+    expr *rising_x; /* of a base that is not rational */
+    slong logs;     /* P_0 .. P_(logs-1) are wanted */
+    expr **start;   /* P_j at base (log c taken off P_0) */
+    fmpq *moved;    /* P_j(z) - P_j(base) when rational */
+    expr **moved_x; /* and when not */
 } walk;
 
 /* base + i with the constant c of the scale. */
@@ -165,10 +169,10 @@ static void walk_init(walk *w, tw_engine *e, expr *base, slong logs, expr *c)
     w->moved = _fmpq_vec_init(logs + 1);
     for (slong j = 0; j < logs; j++) {
         expr *args[] = {expr_int(e, j), base};
-        w->start[j] = w->rational                ? polygamma_value(e, j, w->r)
-                      : j == 0                   ? expr_call1(e, FUNCTION_PSI, base)
-                      : args[0]                  ? expr_call(e, FUNCTION_POLYGAMMA, args, 2)
-                                                 : NULL;
+        w->start[j] = w->rational ? polygamma_value(e, j, w->r)
+                      : j == 0    ? expr_call1(e, FUNCTION_PSI, base)
+                      : args[0]   ? expr_call(e, FUNCTION_POLYGAMMA, args, 2)
+                                  : NULL;
         if (j == 0) w->start[j] = expr_sub(e, w->start[j], expr_call1(e, FUNCTION_LOG, c));
         w->moved_x[j] = expr_int(e, 0);
     }
@@ -310,7 +314,8 @@ static bool draft_offset(tw_engine *e, const draft *d, expr *base, slong *offset
 }
 
 /* The draft with this constant and class, its base at or below `base`; *offset: where base stands. */
-static draft *drafts_find(tw_engine *e, drafts *d, expr *constant, slong log_power, expr *base, slong stride, slong *offset)
+static draft *drafts_find(tw_engine *e, drafts *d, expr *constant, slong log_power, expr *base, slong stride,
+                          slong *offset)
 {
     for (size_t k = 0; k < d->count; k++) {
         draft *old = d->list[k];
@@ -357,7 +362,7 @@ typedef struct class_of {
     slong lead;                /* z - base */
     fmpq_t number;             /* the rational number of the constant */
     expr *constant;
-    expr *folded;              /* the strand's constant, where it goes into the coefficients; else NULL */
+    expr *folded; /* the strand's constant, where it goes into the coefficients; else NULL */
 } class_of;
 
 /* (1/mu)^(k+1), the factor's number, C(k,i) (-K)^i. */
@@ -390,8 +395,8 @@ static expr *number_times(tw_engine *e, expr *a, const fmpq_t number)
     return sum;
 }
 
-/* One term: its rational weight, and what is not rational of it (NULL: nothing). Numbers are multiplied into sums, and sums of
- * fixed constants into each other, so that like ones meet; products of parameters stay as they are. */
+/* One term: its rational weight, and what is not rational of it (NULL: nothing). Numbers are multiplied into sums, and
+ * sums of fixed constants into each other, so that like ones meet; products of parameters stay as they are. */
 static void add_term(class_of *c, draft *d, slong n, const fmpq_t weight, expr *rest, slong index)
 {
     if (coefficient_is_zero(&c->s->c, index)) return;
@@ -480,21 +485,24 @@ static tw_status class_place(class_of *c)
     c->lead = fits ? fmpz_get_si(up) - 1 : 0;
     fmpz_clear(up);
     if (!fits) return engine_fail(e, ERROR_VALUE, "an exponent is too large");
-    if (c->lead < 0) return engine_fail(e, ERROR_DIVERGENT, "the integral does not converge where the exponent is least: "
-                                                            "the amplitude is too singular there");
+    if (c->lead < 0)
+        return engine_fail(e, ERROR_DIVERGENT,
+                           "the integral does not converge where the exponent is least: "
+                           "the amplitude is too singular there");
     c->base = expr_sub(e, z, expr_int(e, c->lead));
     if (c->k->far_end && (!expr_is_one(c->base) || c->s->log_power > 0))
         return engine_fail(e, ERROR_UNSUITABLE, "the far end is a branch point of the amplitude");
     return TW_OK;
 }
 
-/* strand constant * Gamma(base) * c^-base, its rational number apart. Beside logarithms the strand's constant (log(2), say) may
- * meet psi values, so it goes into the coefficients. */
+/* strand constant * Gamma(base) * c^-base, its rational number apart. Beside logarithms the strand's constant (log(2),
+ * say) may meet psi values, so it goes into the coefficients. */
 static tw_status class_constant(class_of *c)
 {
     tw_engine *e = c->e;
     if (c->folded && expr_is_one(c->folded)) c->folded = NULL;
-    expr *parts[] = {c->folded ? expr_int(e, 1) : c->s->constant, expr_call1(e, FUNCTION_GAMMA, c->base), expr_pow(e, c->k->constant, expr_neg(e, c->base))};
+    expr *parts[] = {c->folded ? expr_int(e, 1) : c->s->constant, expr_call1(e, FUNCTION_GAMMA, c->base),
+                     expr_pow(e, c->k->constant, expr_neg(e, c->base))};
     if (!parts[1] || !parts[2]) return TW_ERROR;
     expr *constant = expr_product(e, parts, 3);
     if (!constant) return TW_ERROR;
@@ -543,8 +551,9 @@ static int expr_ingredients(expr *a)
     if (a->kind == EXPR_NUMBER) return 0;
     if (a->kind == EXPR_SYMBOL) return 1;
     if (a->kind == EXPR_CONSTANT) return 2;
-    bool arithmetic = a->kind == EXPR_SUM || a->kind == EXPR_PRODUCT ||
-                      (a->kind == EXPR_POWER && a->args[1]->kind == EXPR_NUMBER && fmpz_is_one(fmpq_denref(expr_number(a->args[1]))));
+    bool arithmetic =
+        a->kind == EXPR_SUM || a->kind == EXPR_PRODUCT ||
+        (a->kind == EXPR_POWER && a->args[1]->kind == EXPR_NUMBER && fmpz_is_one(fmpq_denref(expr_number(a->args[1]))));
     int found = arithmetic ? 0 : 2;
     for (uint32_t k = 0; k < a->count && found != 3; k++) found |= expr_ingredients(a->args[k]);
     return found;
@@ -578,8 +587,8 @@ static void widen_domain(contribution *c, domain_kind d)
     else if (d != c->domain && d != DOMAIN_RATIONAL) c->domain = DOMAIN_MIXED;
 }
 
-tw_status contribution_set_lane(tw_engine *e, contribution *c, expr *constant, expr *first_exponent, const fmpq_t forward,
-                                expr *const *x, slong count)
+tw_status contribution_set_lane(tw_engine *e, contribution *c, expr *constant, expr *first_exponent,
+                                const fmpq_t forward, expr *const *x, slong count)
 {
     for (slong n = 0; n < count; n++)
         if (!x[n]) return TW_ERROR;

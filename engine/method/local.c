@@ -1,6 +1,6 @@
-/* Contributions from a reading. The one idea: a critical point and a finite far end are the same thing seen from two sides; at
- * the far end the exponent grows inwards, so its terms come from the formal integral with exp(+scale t) (DLMF 2.3.4 turned to
- * the real axis): n! g_n (-scale)^-(n+1). */
+/* Contributions from a reading. The one idea: a critical point and a finite far end are the same thing seen from two
+ * sides; at the far end the exponent grows inwards, so its terms come from the formal integral with exp(+scale t)
+ * (DLMF 2.3.4 turned to the real axis): n! g_n (-scale)^-(n+1). */
 
 #include "engine/method/local.h"
 
@@ -70,7 +70,8 @@ static tw_status add_far_end(tw_engine *e, expansion *out, const reading *r, siz
     return TW_ERROR;
 }
 
-tw_status local_expand_far_ends(tw_engine *e, expansion *out, const reading *r, slong terms, const char *name, bool *all)
+tw_status local_expand_far_ends(tw_engine *e, expansion *out, const reading *r, slong terms, const char *name,
+                                bool *all)
 {
     *all = true;
     for (size_t k = 0; k < r->local.count; k++) {
@@ -86,7 +87,8 @@ tw_status local_expand_far_ends(tw_engine *e, expansion *out, const reading *r, 
                            : "exponentially small, listed as a contribution of its own");
         free(place);
         if (status == TW_OK || left_out) {
-            step *s = derivation_add(&out->derivation, left_out ? "leave out the far end" : "add the far end", "DLMF 2.3.4");
+            step *s =
+                derivation_add(&out->derivation, left_out ? "leave out the far end" : "add the far end", "DLMF 2.3.4");
             s->detail = text_take(&words);
             s->form = base_copy(left_out ? "unchanged; the remainder's bound covers it" : "one more contribution");
         }

@@ -1,4 +1,5 @@
-/* What the methods at a critical point share: contributions made from a reading, far ends, steps. Private to this room. */
+/* What the methods at a critical point share: contributions made from a reading, far ends, steps. Private to this room.
+ */
 #ifndef TW_METHOD_LOCAL_H
 #define TW_METHOD_LOCAL_H
 
@@ -7,9 +8,10 @@
 /* The contribution of the critical point, lanes filled with `terms` terms. */
 tw_status local_expand(tw_engine *e, expansion *out, const reading *r, slong terms, const char *name);
 
-/* The contributions of finite far ends, exponentially small, behind it. One that has no such form (a branch point there) is left
- * out with a note in the derivation; *all: none was left out. */
-tw_status local_expand_far_ends(tw_engine *e, expansion *out, const reading *r, slong terms, const char *name, bool *all);
+/* The contributions of finite far ends, exponentially small, behind it. One that has no such form (a branch point
+ * there) is left out with a note in the derivation; *all: none was left out. */
+tw_status local_expand_far_ends(tw_engine *e, expansion *out, const reading *r, slong terms, const char *name,
+                                bool *all);
 
 /* More terms for every contribution made by the method `name` that has fewer and does not end. */
 tw_status local_extend(tw_engine *e, expansion *a, slong terms, const char *name);

@@ -1,5 +1,6 @@
-/* From an integral to an expansion. The one idea: `expand` lists its stages (read, choose, expand, keep the facts) and nobody
- * else knows their order; sums of integrals go through it term by term. A new method is one line in the table below. */
+/* From an integral to an expansion. The one idea: `expand` lists its stages (read, choose, expand, keep the facts) and
+ * nobody else knows their order; sums of integrals go through it term by term. A new method is one line in the table
+ * below. */
 #include "engine/method/method.h"
 
 #include <stdlib.h>
@@ -46,7 +47,8 @@ static tw_status refuse_all(tw_engine *e, const reading *r)
         free(why);
     }
     if (e->error.kind == ERROR_NONE)
-        engine_fail(e, ERROR_UNAVAILABLE, "no method of this version fits (%s); `laplace` is the method for this exponent", words.bytes);
+        engine_fail(e, ERROR_UNAVAILABLE,
+                    "no method of this version fits (%s); `laplace` is the method for this exponent", words.bytes);
     text_clear(&words);
     return TW_ERROR;
 }
@@ -77,7 +79,8 @@ static tw_status choose_method(tw_engine *e, const reading *r, const char *by, c
 static tw_status check_name(tw_engine *e, const char *by)
 {
     if (!by || method_find(by)) return TW_OK;
-    if (method_is_planned(by)) return engine_fail(e, ERROR_UNAVAILABLE, "this version does not have the method `%s`", by);
+    if (method_is_planned(by))
+        return engine_fail(e, ERROR_UNAVAILABLE, "this version does not have the method `%s`", by);
     return engine_fail(e, ERROR_NAME, "no method is called `%s`", by);
 }
 
@@ -126,9 +129,11 @@ static expr *exponential_part(tw_engine *e, expr *prefactor)
 static tw_status append(tw_engine *e, expansion *out, expansion *part)
 {
     if (out->contribution_count > 0 && part->contribution_count > 0) {
-        expr *a = exponential_part(e, out->contributions[0].prefactor), *b = exponential_part(e, part->contributions[0].prefactor);
+        expr *a = exponential_part(e, out->contributions[0].prefactor),
+             *b = exponential_part(e, part->contributions[0].prefactor);
         if (a != b)
-            return engine_fail(e, ERROR_UNSUITABLE, "the integrals of this sum are of different exponential size: expand each by itself");
+            return engine_fail(e, ERROR_UNSUITABLE,
+                               "the integrals of this sum are of different exponential size: expand each by itself");
     }
     for (size_t k = 0; k < part->contribution_count; k++) *expansion_add(out) = part->contributions[k];
     part->contribution_count = 0;
@@ -139,7 +144,8 @@ static tw_status append(tw_engine *e, expansion *out, expansion *part)
 }
 
 /* The first part gives the frame, the others are added. */
-static tw_status expand_parts(tw_engine *e, expansion *out, expr *whole, expr *const *parts, size_t count, slong terms, const char *by)
+static tw_status expand_parts(tw_engine *e, expansion *out, expr *whole, expr *const *parts, size_t count, slong terms,
+                              const char *by)
 {
     tw_status status = expand_one(e, out, parts[0], terms, by);
     for (size_t k = 1; k < count && status == TW_OK && budget_ok(e); k++) {
@@ -153,8 +159,8 @@ static tw_status expand_parts(tw_engine *e, expansion *out, expr *whole, expr *c
     return status == TW_OK && e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
 }
 
-/* outside * int (f + g) -> outside * int f, outside * int g: the parts of a sum under the integral sign, after expanding; NULL when
- * there is only one. Fresh array. */
+/* outside * int (f + g) -> outside * int f, outside * int g: the parts of a sum under the integral sign, after
+ * expanding; NULL when there is only one. Fresh array. */
 static expr **split_body(tw_engine *e, expr *integral, size_t *count)
 {
     expr *const *factors;

@@ -1,5 +1,5 @@
-/* From an integral to an expansion: reading (section 0 of methods.md), then one method. Each method is one file with one
- * struct `method` at its end and one line in the table of method.c. */
+/* From an integral to an expansion: reading (section 0 of methods.md), then one method. Each method is one file with
+ * one struct `method` at its end and one line in the table of method.c. */
 #ifndef TW_METHOD_METHOD_H
 #define TW_METHOD_METHOD_H
 
@@ -9,39 +9,39 @@
  *
  *   integral = local.factor * sum over local.branches of int_0^end q(x) exp(-local.scale * p(x)) dx
  *
- * with p(0) = 0 the only least value on the path; two branches when the path runs on both sides of it. Where p is a constant
- * times a pure power, the constant is in the scale and p is x^mu. */
+ * with p(0) = 0 the only least value on the path; two branches when the path runs on both sides of it. Where p is a
+ * constant times a pure power, the constant is in the scale and p is x^mu. */
 typedef struct reading {
-    expr *integral;          /* as typed */
-    expr *large;             /* symbol; h when small */
+    expr *integral; /* as typed */
+    expr *large;    /* symbol; h when small */
     bool small;
     expr *original_variable; /* for the eye: "x" */
     expr *place;             /* the original variable where p is least */
     point_kind kind;         /* POINT_END, POINT_INTERIOR */
     local_form local;
-    expr *far_places[2];     /* the original variable at each branch's end; NULL where the branch is infinite */
-    fmpq_t power;            /* scale = a constant * large^power */
-    expr *scale_constant;    /* that constant, > 0 */
-    bool pure;               /* p is x^mu on every branch */
-    fmpq_t mu;               /* then */
+    expr *far_places[2];       /* the original variable at each branch's end; NULL where the branch is infinite */
+    fmpq_t power;              /* scale = a constant * large^power */
+    expr *scale_constant;      /* that constant, > 0 */
+    bool pure;                 /* p is x^mu on every branch */
+    fmpq_t mu;                 /* then */
     condition_list conditions; /* convergence, no other critical point, ... with their labels */
-    derivation derivation;   /* steps so far */
-    char *summary;           /* for `let`: "depends on s; one critical point, the end x = 0; converges for s > 0" */
+    derivation derivation;     /* steps so far */
+    char *summary;             /* for `let`: "depends on s; one critical point, the end x = 0; converges for s > 0" */
 } reading;
 
 void reading_init(reading *r);
 void reading_clear(reading *r);
 
-/* Reads an integral (EXPR_INTEGRAL, or a product of one with factors free of its variable; sums of integrals are handled by
- * expand). Errors: UNSUITABLE with reason and advice, DIVERGENT. */
+/* Reads an integral (EXPR_INTEGRAL, or a product of one with factors free of its variable; sums of integrals are
+ * handled by expand). Errors: UNSUITABLE with reason and advice, DIVERGENT. */
 tw_status integral_read(tw_engine *e, reading *out, expr *integral);
 
 /* factor * sum over branches of the integrals, as an expression. */
 expr *local_form_integral(tw_engine *e, const local_form *l);
 
 struct method {
-    const char *name;                                   /* the word after `by` */
-    const char *title;                                  /* "Watson's lemma" */
+    const char *name;  /* the word after `by` */
+    const char *title; /* "Watson's lemma" */
     /* Does it fit? YES, NO, with a reason in words for either (fresh text into *why, may be NULL-checked). */
     answer (*suits)(tw_engine *e, const reading *r, char **why);
     tw_status (*expand)(tw_engine *e, expansion *out, const reading *r, slong terms);

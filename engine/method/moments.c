@@ -1,7 +1,7 @@
-/* Closed moments: I(S) = int_0^inf x^a exp(-S x^mu) dx = Gamma(z)/(mu S^z), z = (a + 1)/mu (DLMF 5.9.1), and everything that
- * differentiation in a parameter makes of it: in S it brings down -x^mu, in a it brings down log(x). The one idea: where the
- * amplitude is a finite sum of such terms, perhaps times exp(-b x^mu), which only moves S to S + b, the expansion ends and is
- * the integral exactly. */
+/* Closed moments: I(S) = int_0^inf x^a exp(-S x^mu) dx = Gamma(z)/(mu S^z), z = (a + 1)/mu (DLMF 5.9.1), and everything
+ * that differentiation in a parameter makes of it: in S it brings down -x^mu, in a it brings down log(x). The one idea:
+ * where the amplitude is a finite sum of such terms, perhaps times exp(-b x^mu), which only moves S to S + b, the
+ * expansion ends and is the integral exactly. */
 #include <stdlib.h>
 #include <string.h>
 
@@ -12,7 +12,8 @@ enum { LENGTH_LIMIT = 256 }; /* terms of a finite sum that is recognised */
 
 /* ---- recognising ---- */
 
-/* q = exp(-shift x^mu) * core; shift 0 when there is no such factor. False when an exponential of another shape is there. */
+/* q = exp(-shift x^mu) * core; shift 0 when there is no such factor. False when an exponential of another shape is
+ * there. */
 static bool split_shift(tw_engine *e, const reading *r, const branch *b, expr **shift, expr **core)
 {
     expr *power = expr_pow(e, b->x, expr_fmpq(e, r->mu));
@@ -58,7 +59,8 @@ static bool ends(tw_engine *e, series *out, expr *core, expr *x)
     for (size_t k = 0; k < count; k++)
         if (!is_moment_term(terms[k], x)) return false;
     bool good = series_at_zero(e, out, core, x, LENGTH_LIMIT, NULL, NULL) == TW_OK && out->terminates;
-    if (e->error.kind == ERROR_UNSUITABLE || e->error.kind == ERROR_UNDECIDED || e->error.kind == ERROR_VALUE) engine_forgive(e);
+    if (e->error.kind == ERROR_UNSUITABLE || e->error.kind == ERROR_UNDECIDED || e->error.kind == ERROR_VALUE)
+        engine_forgive(e);
     return good;
 }
 
@@ -86,7 +88,8 @@ static bool closes(tw_engine *e, const reading *r, expr **shift)
         bool good = ends(e, &s, core, b->x) && (expr_is_zero(one) || !has_log(&s));
         for (size_t n = 0; n < s.count && good && !endless; n++) {
             expr *a = s.strands[n].exponent;
-            good = s.strands[n].den == 1 && s.strands[n].log_power == 0 && expr_is_number(a) && fmpz_is_one(fmpq_denref(expr_number(a)));
+            good = s.strands[n].den == 1 && s.strands[n].log_power == 0 && expr_is_number(a) &&
+                   fmpz_is_one(fmpq_denref(expr_number(a)));
         }
         series_clear(&s);
         if (!good) return false;
@@ -98,22 +101,24 @@ static answer moments_suits(tw_engine *e, const reading *r, char **why)
 {
     expr *shift;
     if (closes(e, r, &shift))
-        return suits_answer(why, ANSWER_YES, "the amplitude is a finite sum of powers (and logarithms) times the kernel's own kind of "
-                                             "exponential: the moments close and the expansion is exact");
-    return suits_answer(why, ANSWER_NO, "the amplitude is not a finite sum of powers and logarithms times exp(-b*x^mu), so the "
-                                        "family of moments does not close");
+        return suits_answer(why, ANSWER_YES,
+                            "the amplitude is a finite sum of powers (and logarithms) times the kernel's own kind of "
+                            "exponential: the moments close and the expansion is exact");
+    return suits_answer(why, ANSWER_NO,
+                        "the amplitude is not a finite sum of powers and logarithms times exp(-b*x^mu), so the "
+                        "family of moments does not close");
 }
 
 /* ---- a moved scale: powers of S + b ---- */
 
-/* sum_m c[m] * (S + b)^(M - m), M the last index and S = c0 s^K, multiplied out in powers of s, into a lane of one contribution
- * whose prefactor takes (S + b)^-z of the last. */
+/* sum_m c[m] * (S + b)^(M - m), M the last index and S = c0 s^K, multiplied out in powers of s, into a lane of one
+ * contribution whose prefactor takes (S + b)^-z of the last. */
 typedef struct moved {
     tw_engine *e;
     const reading *r;
     expr *shift;
-    const lane *from;    /* in powers of S */
-    slong last, stride;  /* last index; z moves by `stride` an index */
+    const lane *from;   /* in powers of S */
+    slong last, stride; /* last index; z moves by `stride` an index */
 } moved;
 
 /* The coefficient of s^(K j). */
@@ -229,9 +234,11 @@ static void record_family(tw_engine *e, expansion *out, const reading *r, expr *
     step *s = derivation_add(&out->derivation, "differentiate in a parameter", "DLMF 5.9.1");
     text t;
     text_init(&t);
-    text_addf(&t, "S = %s; a factor x^mu is minus a derivative in S, a factor log(x) a derivative in a", scale ? scale : "");
+    text_addf(&t, "S = %s; a factor x^mu is minus a derivative in S, a factor log(x) a derivative in a",
+              scale ? scale : "");
     s->detail = text_take(&t);
-    text_addf(&t, "integral from 0 to inf of x^a*exp(-S*x^mu) dx = Gamma((a + 1)/mu)/(mu*S^((a + 1)/mu)), mu = %s", mu ? mu : "");
+    text_addf(&t, "integral from 0 to inf of x^a*exp(-S*x^mu) dx = Gamma((a + 1)/mu)/(mu*S^((a + 1)/mu)), mu = %s",
+              mu ? mu : "");
     s->form = text_take(&t);
     free(scale);
     free(mu);

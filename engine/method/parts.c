@@ -1,10 +1,11 @@
 /* Repeated integration by parts at an end where the slope of the exponent is not zero (DLMF 2.3.2 for p = x):
  *     int_0^T q exp(-S p) dx = sum over n < N of S^-(n+1) [(D^n q / p')(0) - exp(-S p(T)) (D^n q / p')(T)] + R_N,
  *     R_N = S^-N int_0^T (D^N q) exp(-S p) dx,   D f = (f / p')'.
- * The one idea: (D^n q / p')(0) = n! times the n-th coefficient of q(x(t)) dx/dt in t = p(x), so the coefficients come from the
- * series, at no growing cost, while the remainder stays the exact integral of the operator's power. */
+ * The one idea: (D^n q / p')(0) = n! times the n-th coefficient of q(x(t)) dx/dt in t = p(x), so the coefficients come
+ * from the series, at no growing cost, while the remainder stays the exact integral of the operator's power. */
 #include <stdlib.h>
 
+#include "engine/method/convergence.h"
 #include "engine/method/local.h"
 
 /* The series of f at 0 is a Taylor series: one strand, whole exponents from 0 on, no log. */
@@ -29,8 +30,8 @@ static bool has_slope(tw_engine *e, const branch *b)
     if (b->p == b->x) return true;
     series s;
     series_init(&s);
-    bool slope = series_at_zero(e, &s, b->p, b->x, 1, NULL, NULL) == TW_OK && s.count == 1 && expr_is_one(s.strands[0].exponent) &&
-                 s.strands[0].log_power == 0;
+    bool slope = series_at_zero(e, &s, b->p, b->x, 1, NULL, NULL) == TW_OK && s.count == 1 &&
+                 expr_is_one(s.strands[0].exponent) && s.strands[0].log_power == 0;
     series_clear(&s);
     return slope;
 }
@@ -40,14 +41,17 @@ static answer parts_suits(tw_engine *e, const reading *r, char **why)
     const branch *b = &r->local.branches[0];
     if (r->local.count != 1 || !has_slope(e, b)) {
         engine_forgive(e);
-        return suits_answer(why, ANSWER_NO, "the slope of the exponent is not a finite number other than 0 at the critical point");
+        return suits_answer(why, ANSWER_NO,
+                            "the slope of the exponent is not a finite number other than 0 at the critical point");
     }
     bool failed;
     if (!is_smooth_at_zero(e, b->q, b->x, &failed)) {
         if (failed) engine_forgive(e);
-        return suits_answer(why, ANSWER_NO, "the amplitude is not smooth at the critical point, so its derivatives there do not exist");
+        return suits_answer(why, ANSWER_NO,
+                            "the amplitude is not smooth at the critical point, so its derivatives there do not exist");
     }
-    return suits_answer(why, ANSWER_YES, "the slope of the exponent is not zero at the end and the amplitude is smooth there");
+    return suits_answer(why, ANSWER_YES,
+                        "the slope of the exponent is not zero at the end and the amplitude is smooth there");
 }
 
 enum { REMAINDER_SIZE_LIMIT = 120 };
@@ -73,7 +77,8 @@ static expr *remainder_integral(tw_engine *e, const local_form *l, expr *f, slon
     return whole;
 }
 
-/* The steps of integration by parts, each with its exact remainder, as long as D^n q can be read; then the rest in one step. */
+/* The steps of integration by parts, each with its exact remainder, as long as D^n q can be read; then the rest in one
+ * step. */
 static tw_status record_parts(tw_engine *e, expansion *out, const reading *r, slong terms)
 {
     enum { STEPS_SHOWN = 3 };
@@ -90,7 +95,8 @@ static tw_status record_parts(tw_engine *e, expansion *out, const reading *r, sl
         char *words = expr_text(e, f);
         text t;
         text_init(&t);
-        text_addf(&t, "the end gives its term of order scale^-%ld; the amplitude becomes %s", (long)n, words ? words : "");
+        text_addf(&t, "the end gives its term of order scale^-%ld; the amplitude becomes %s", (long)n,
+                  words ? words : "");
         free(words);
         s->form = text_take(&t);
         s->remainder = remainder_integral(e, &r->local, f, n);
@@ -100,8 +106,11 @@ static tw_status record_parts(tw_engine *e, expansion *out, const reading *r, sl
     char *scale = expr_text(e, r->local.scale), *p = expr_text(e, b->p), *q = expr_text(e, b->q);
     text t;
     text_init(&t);
-    text_addf(&t, "with D f = derivative of (f/p') in x, p = %s, q = %s: after n steps the remainder is exactly (%s)^-n times the "
-                  "integral of (D^n q)*exp(-(%s)*p)", p ? p : "", q ? q : "", scale ? scale : "", scale ? scale : "");
+    text_addf(&t,
+              "with D f = derivative of (f/p') in x, p = %s, q = %s: after n steps the remainder is exactly (%s)^-n "
+              "times the "
+              "integral of (D^n q)*exp(-(%s)*p)",
+              p ? p : "", q ? q : "", scale ? scale : "", scale ? scale : "");
     s->detail = text_take(&t);
     free(scale);
     free(p);
@@ -109,8 +118,20 @@ static tw_status record_parts(tw_engine *e, expansion *out, const reading *r, sl
     return TW_OK;
 }
 
+/* D needs p' without a zero; a zero inside the path (the exponent still monotone) would spoil the remainder integral.
+ */
+static tw_status require_slope(tw_engine *e, expansion *out, const branch *b)
+{
+    answer known = positive_on_branch(e, expr_derivative(e, b->p, b->x), b->x, b->end);
+    if (e->error.kind != ERROR_NONE) return TW_ERROR;
+    if (known != ANSWER_YES)
+        conditions_add(&out->conditions, "the slope of the exponent has no zero on the path", NULL, CONDITION_OPEN);
+    return TW_OK;
+}
+
 static tw_status parts_expand(tw_engine *e, expansion *out, const reading *r, slong terms)
 {
+    if (require_slope(e, out, &r->local.branches[0]) != TW_OK) return TW_ERROR;
     if (local_expand(e, out, r, terms, "parts") != TW_OK || record_parts(e, out, r, terms) != TW_OK) return TW_ERROR;
     local_record_sum(e, out, 0, "collect the end's terms", NULL);
     bool all;

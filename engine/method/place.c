@@ -1,6 +1,6 @@
-/* Where the phase is least on the path. The one idea: a phase that is exactly a constant plus a multiple of a pure power tells
- * its least point itself; any other phase is accepted only when its slope has one sign on the whole path, so that the least
- * point is an end. Everything else belongs to other methods and is said so. */
+/* Where the phase is least on the path. The one idea: a phase that is exactly a constant plus a multiple of a pure
+ * power tells its least point itself; any other phase is accepted only when its slope has one sign on the whole path,
+ * so that the least point is an end. Everything else belongs to other methods and is said so. */
 #include "engine/method/place.h"
 
 #include <stdlib.h>
@@ -132,8 +132,8 @@ static int sign_between(tw_engine *e, expr *low, expr *high)
 static tw_status undecided_place(tw_engine *e, expr *center, expr *x)
 {
     char *words = expr_text(e, center);
-    engine_fail(e, ERROR_UNDECIDED, "the facts do not say where %s = %s lies on the path: declare it with `given`", x->is.name,
-                words ? words : "");
+    engine_fail(e, ERROR_UNDECIDED, "the facts do not say where %s = %s lies on the path: declare it with `given`",
+                x->is.name, words ? words : "");
     free(words);
     return TW_ERROR;
 }
@@ -141,8 +141,10 @@ static tw_status undecided_place(tw_engine *e, expr *center, expr *x)
 static tw_status growing_kernel(tw_engine *e, expr *large)
 {
     const char *s = large->is.name;
-    return engine_fail(e, ERROR_DIVERGENT, "the kernel grows without limit along the path for large %s: the integral does not "
-                                           "converge (is a minus sign missing in the exponent?)", s);
+    return engine_fail(e, ERROR_DIVERGENT,
+                       "the kernel grows without limit along the path for large %s: the integral does not "
+                       "converge (is a minus sign missing in the exponent?)",
+                       s);
 }
 
 /* ---- general phases ---- */
@@ -150,14 +152,16 @@ static tw_status growing_kernel(tw_engine *e, expr *large)
 static tw_status refuse_interior(tw_engine *e, expr *phase, bool known)
 {
     char *words = expr_text(e, phase);
-    engine_fail(e, known ? ERROR_UNAVAILABLE : ERROR_UNDECIDED, "%s %s monotone on the path, so its least value may lie inside: that "
-                "needs the method `laplace`, which this version does not have", words ? words : "",
-                known ? "is not" : "could not be shown to be");
+    engine_fail(e, known ? ERROR_UNAVAILABLE : ERROR_UNDECIDED,
+                "%s %s monotone on the path, so its least value may lie inside: that "
+                "needs the method `laplace`, which this version does not have",
+                words ? words : "", known ? "is not" : "could not be shown to be");
     free(words);
     return TW_ERROR;
 }
 
-/* The slope's sign on the whole path: 1, -1, 2 (not one sign, or not known; *known tells which). *seen: from samples only. */
+/* The slope's sign on the whole path: 1, -1, 2 (not one sign, or not known; *known tells which). *seen: from samples
+ * only. */
 static int slope_sign(tw_engine *e, expr *slope, expr *x, expr *from, expr *to, bool *known, bool *seen)
 {
     expr *y = expr_fresh(e, "x");
@@ -209,8 +213,10 @@ static tw_status power_sign(tw_engine *e, expr *c, condition_list *conditions, i
         return plain ? TW_OK : conditions_require(e, conditions, relation);
     }
     char *words = expr_text(e, c);
-    engine_fail(e, ERROR_UNDECIDED, "the sign of %s decides where the kernel is greatest, and the facts do not give it: declare it "
-                                    "with `given`", words ? words : "");
+    engine_fail(e, ERROR_UNDECIDED,
+                "the sign of %s decides where the kernel is greatest, and the facts do not give it: declare it "
+                "with `given`",
+                words ? words : "");
     free(words);
     return TW_ERROR;
 }

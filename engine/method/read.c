@@ -1,6 +1,7 @@
-/* Reading an integral: from what was typed to factor * sum of int_0^end q exp(-scale p) dx (methods in their own files start
- * from there). The one idea: the form is only ever changed by named, recorded, exact rewrites (take out factors, mirror, stretch,
- * shift, split), so that the integral read is the integral typed. integral_read lists the stages in order. */
+/* Reading an integral: from what was typed to factor * sum of int_0^end q exp(-scale p) dx (methods in their own files
+ * start from there). The one idea: the form is only ever changed by named, recorded, exact rewrites (take out factors,
+ * mirror, stretch, shift, split), so that the integral read is the integral typed. integral_read lists the stages in
+ * order. */
 #include <stdarg.h>
 #include <stdlib.h>
 #include <string.h>
@@ -35,11 +36,12 @@ void reading_clear(reading *r)
 typedef struct frame {
     tw_engine *e;
     reading *r;
-    expr *binder;          /* the EXPR_INTEGRAL */
-    expr *x, *from, *to;   /* opened; x a fresh symbol */
-    expr *body, *outside;  /* integral = outside * int body dx */
+    expr *binder;         /* the EXPR_INTEGRAL */
+    expr *x, *from, *to;  /* opened; x a fresh symbol */
+    expr *body, *outside; /* integral = outside * int body dx */
     bool mirrored;
-    expr *logarithm;       /* u with u = log of a linear function of the variable before it, `unwound` that variable; or NULL */
+    expr *
+        logarithm; /* u with u = log of a linear function of the variable before it, `unwound` that variable; or NULL */
     expr *unwound;
     separation s;
     place p;
@@ -107,17 +109,19 @@ static tw_status find_binder(frame *f, expr *integral)
     f->outside = expr_int(e, 1);
     for (size_t k = 0; k < count; k++) {
         if (factors[k]->kind == EXPR_CONTOUR)
-            return engine_fail(e, ERROR_UNAVAILABLE, "an integral along a contour needs the method `descent`, which this version "
-                                                     "does not have");
+            return engine_fail(e, ERROR_UNAVAILABLE,
+                               "an integral along a contour needs the method `descent`, which this version "
+                               "does not have");
         if (factors[k]->kind == EXPR_INTEGRAL && f->binder)
             return engine_fail(e, ERROR_UNSUITABLE, "this is a product of integrals: expand each by itself");
         if (factors[k]->kind == EXPR_INTEGRAL) f->binder = factors[k];
         else f->outside = expr_mul(e, f->outside, factors[k]);
     }
     if (!f->binder)
-        return engine_fail(e, ERROR_UNSUITABLE, holds_kind(integral, EXPR_INTEGRAL)
-                                                    ? "the integral stands inside a power or a function: expand the integral by itself"
-                                                    : "there is no integral in it");
+        return engine_fail(e, ERROR_UNSUITABLE,
+                           holds_kind(integral, EXPR_INTEGRAL)
+                               ? "the integral stands inside a power or a function: expand the integral by itself"
+                               : "there is no integral in it");
     return f->outside ? TW_OK : TW_ERROR;
 }
 
@@ -132,8 +136,9 @@ static tw_status open_binder(frame *f)
     f->body = expr_open(e, f->binder, f->x);
     if (!f->body || !f->x || !f->r->original_variable) return TW_ERROR;
     if (holds_kind(f->body, EXPR_INTEGRAL) || holds_kind(f->body, EXPR_CONTOUR))
-        return engine_fail(e, ERROR_UNSUITABLE, "this is an integral over an integral: the methods need one variable, so carry out "
-                                                "the inner integral first");
+        return engine_fail(e, ERROR_UNSUITABLE,
+                           "this is an integral over an integral: the methods need one variable, so carry out "
+                           "the inner integral first");
     if (holds_kind(f->from, EXPR_INTEGRAL) || holds_kind(f->to, EXPR_INTEGRAL))
         return engine_fail(e, ERROR_UNSUITABLE, "an end of the path is an integral");
     return TW_OK;
@@ -144,11 +149,13 @@ static tw_status find_large(frame *f)
     tw_engine *e = f->e;
     large_kind kind = facts_large(e, &f->r->large);
     if (kind == LARGE_NONE)
-        return engine_fail(e, ERROR_UNSUITABLE, "no parameter is declared large or small: say for example `large s` first");
+        return engine_fail(e, ERROR_UNSUITABLE,
+                           "no parameter is declared large or small: say for example `large s` first");
     f->r->small = kind == LARGE_SMALL;
     const char *name = f->r->large->is.name;
     if (!expr_has(f->body, f->r->large) && !expr_has(f->from, f->r->large) && !expr_has(f->to, f->r->large))
-        return engine_fail(e, ERROR_UNSUITABLE, "%s does not occur in the integral: there is nothing to expand in", name);
+        return engine_fail(e, ERROR_UNSUITABLE, "%s does not occur in the integral: there is nothing to expand in",
+                           name);
     return TW_OK;
 }
 
@@ -163,7 +170,8 @@ static tw_status turn_path(frame *f)
         if (e->error.kind != ERROR_NONE) return TW_ERROR;
         if (sign == 0) return engine_fail(e, ERROR_UNSUITABLE, "the path has length 0: the integral is 0");
         down = sign == -1;
-        if (sign == 2 && conditions_require(e, &f->r->conditions, expr_relation_of(e, RELATION_LESS, f->from, f->to)) != TW_OK)
+        if (sign == 2 &&
+            conditions_require(e, &f->r->conditions, expr_relation_of(e, RELATION_LESS, f->from, f->to)) != TW_OK)
             return TW_ERROR;
     }
     if (!down) return TW_OK;
@@ -199,8 +207,9 @@ static tw_status separate(frame *f)
     reading *r = f->r;
     if (body_separate(e, &f->s, f->body, f->x, f->from, f->to, r->large, r->small) != TW_OK) return TW_ERROR;
     if (holds_i(f->s.phase))
-        return engine_fail(e, ERROR_UNAVAILABLE, "the exponent is not real on the path: an oscillating kernel needs the method "
-                                                 "`phase` or `descent`, which this version does not have");
+        return engine_fail(e, ERROR_UNAVAILABLE,
+                           "the exponent is not real on the path: an oscillating kernel needs the method "
+                           "`phase` or `descent`, which this version does not have");
     fmpq_set(r->power, f->s.power);
     f->outside = expr_mul(e, f->outside, f->s.factor);
     bool stretched = !fmpq_is_zero(f->s.stretch);
@@ -214,8 +223,8 @@ static tw_status separate(frame *f)
     if (!form) return TW_ERROR;
     if (stretched) {
         char *by = expr_text(e, expr_pow(e, r->large, expr_fmpq(e, f->s.stretch)));
-        record(f, "stretch the variable", NULL, form, "%s = %s*t separates %s from the variable", r->original_variable->is.name,
-               by ? by : "", r->large->is.name);
+        record(f, "stretch the variable", NULL, form, "%s = %s*t separates %s from the variable",
+               r->original_variable->is.name, by ? by : "", r->large->is.name);
         free(by);
     } else if (form != r->derivation.steps[r->derivation.count - 1].after) {
         record(f, "separate kernel and amplitude", NULL, form, NULL);
@@ -267,8 +276,8 @@ static expr *end_of_logarithm(tw_engine *e, expr *linear, expr *x, expr *end)
     return sign == 1 ? expr_call1(e, FUNCTION_LOG, value) : NULL;
 }
 
-/* x^s and (1 - x)^s on a finite path that ends where the base vanishes: base = exp(u) makes the phase linear and the path
- * infinite. */
+/* x^s and (1 - x)^s on a finite path that ends where the base vanishes: base = exp(u) makes the phase linear and the
+ * path infinite. */
 static tw_status unwind_logarithm(frame *f)
 {
     tw_engine *e = f->e;
@@ -342,9 +351,14 @@ static expr *find_kink(expr *f, expr *x)
     if (f->kind == EXPR_PIECEWISE) return f;
     if (f->kind == EXPR_CALL) {
         switch (f->is.function) {
-        case FUNCTION_ABS: case FUNCTION_SIGN: case FUNCTION_MIN: case FUNCTION_MAX: case FUNCTION_RE: case FUNCTION_IM:
-        case FUNCTION_CONJ: case FUNCTION_ARG:
-            return f;
+        case FUNCTION_ABS:
+        case FUNCTION_SIGN:
+        case FUNCTION_MIN:
+        case FUNCTION_MAX:
+        case FUNCTION_RE:
+        case FUNCTION_IM:
+        case FUNCTION_CONJ:
+        case FUNCTION_ARG: return f;
         default: break;
         }
     }
@@ -355,14 +369,17 @@ static expr *find_kink(expr *f, expr *x)
     return NULL;
 }
 
-/* The methods take the amplitude for analytic inside the path: an expansion at its end knows nothing of what a kink adds. */
+/* The methods take the amplitude for analytic inside the path: an expansion at its end knows nothing of what a kink
+ * adds. */
 static tw_status refuse_kinks(tw_engine *e, expr *q, expr *y)
 {
     expr *kink = find_kink(q, y);
     if (!kink) return TW_OK;
     char *words = expr_text(e, kink);
-    engine_fail(e, ERROR_UNSUITABLE, "the amplitude holds %s (%s measured from the critical point), which is not analytic on the whole "
-                                     "path: split the integral where it changes and expand the parts", words ? words : "", y->is.name);
+    engine_fail(e, ERROR_UNSUITABLE,
+                "the amplitude holds %s (%s measured from the critical point), which is not analytic on the whole "
+                "path: split the integral where it changes and expand the parts",
+                words ? words : "", y->is.name);
     free(words);
     return TW_ERROR;
 }
@@ -374,7 +391,8 @@ static tw_status add_branch(frame *f, int sign, expr *far)
     reading *r = f->r;
     expr *y = expr_fresh(e, expr_binder_name(f->binder));
     bool endless = expr_is_inf(far) || expr_is_minus_inf(far);
-    expr *end = endless ? expr_constant_of(e, CONSTANT_INF) : expr_mul(e, expr_int(e, sign), expr_sub(e, far, f->p.center));
+    expr *end =
+        endless ? expr_constant_of(e, CONSTANT_INF) : expr_mul(e, expr_int(e, sign), expr_sub(e, far, f->p.center));
     end = normal_under_facts(e, end, NULL, 0);
     expr *x = expr_add(e, f->p.center, expr_mul(e, expr_int(e, sign), y));
     expr *q = normal_under_facts(e, expr_substitute(e, f->s.amplitude, f->x, x), &y, 1);
@@ -411,11 +429,11 @@ static tw_status make_branches(frame *f)
     r->local.factor = normal_under_facts(e, expr_mul(e, f->outside, height), &r->large, 1);
     if (!r->place || !r->local.scale || !r->local.factor) return TW_ERROR;
     char *words = expr_text(e, r->place);
-    const char *rule = p->kind == PLACE_INSIDE         ? "split at the critical point"
-                       : expr_is_zero(p->center)       ? "find the critical point"
-                                                       : "shift to the critical point";
-    record(f, rule, NULL, local_form_integral(e, &r->local), "the exponent is greatest at %s = %s only", r->original_variable->is.name,
-           words ? words : "");
+    const char *rule = p->kind == PLACE_INSIDE   ? "split at the critical point"
+                       : expr_is_zero(p->center) ? "find the critical point"
+                                                 : "shift to the critical point";
+    record(f, rule, NULL, local_form_integral(e, &r->local), "the exponent is greatest at %s = %s only",
+           r->original_variable->is.name, words ? words : "");
     free(words);
     return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
 }
@@ -480,8 +498,8 @@ static void begin_summary(frame *f, text *t)
         if (symbols[k] != f->r->large) text_addf(t, ", %s", symbols[k]->is.name);
     free(symbols);
     char *words = expr_text(f->e, f->r->place);
-    text_addf(t, "; one critical point, %s%s = %s%s", f->r->kind == POINT_END ? "the end " : "", f->r->original_variable->is.name,
-              words ? words : "", f->r->kind == POINT_END ? "" : " inside the path");
+    text_addf(t, "; one critical point, %s%s = %s%s", f->r->kind == POINT_END ? "the end " : "",
+              f->r->original_variable->is.name, words ? words : "", f->r->kind == POINT_END ? "" : " inside the path");
     free(words);
 }
 
@@ -493,17 +511,21 @@ static bool holds_decaying_exponential(expr *a, expr *x)
     return false;
 }
 
-/* Where the kernel grows but the amplitude has an exponential of its own (x^s*exp(-x)), the least point moves with s. */
+/* Where the kernel grows but the amplitude has an exponential of its own (x^s*exp(-x)), the least point moves with s.
+ */
 static tw_status find_place(frame *f)
 {
     tw_engine *e = f->e;
     tw_status status = place_find(e, &f->p, f->s.phase, f->x, f->from, f->to, f->r->large, &f->r->conditions);
-    if (status == TW_OK || e->error.kind != ERROR_DIVERGENT || !holds_decaying_exponential(f->s.amplitude, f->x)) return status;
+    if (status == TW_OK || e->error.kind != ERROR_DIVERGENT || !holds_decaying_exponential(f->s.amplitude, f->x))
+        return status;
     engine_forgive(e);
     const char *x = f->r->original_variable->is.name, *s = f->r->large->is.name;
-    return engine_fail(e, ERROR_UNAVAILABLE, "the kernel grows along the path and only the amplitude holds it, so the critical point "
-                                             "moves with %s: put %s = %s^a*t with an a that keeps it in place; a critical point "
-                                             "inside the path needs the method `laplace`, which this version does not have", s, x, s);
+    return engine_fail(e, ERROR_UNAVAILABLE,
+                       "the kernel grows along the path and only the amplitude holds it, so the critical point "
+                       "moves with %s: put %s = %s^a*t with an a that keeps it in place; a critical point "
+                       "inside the path needs the method `laplace`, which this version does not have",
+                       s, x, s);
 }
 
 static tw_status read_stages(frame *f, text *summary)
@@ -512,7 +534,8 @@ static tw_status read_stages(frame *f, text *summary)
     if (find_binder(f, r->integral) != TW_OK || open_binder(f) != TW_OK || find_large(f) != TW_OK) return TW_ERROR;
     step *first = record(f, "as typed", NULL, r->integral, NULL);
     first->before = r->integral;
-    if (turn_path(f) != TW_OK || mirror_path(f) != TW_OK || separate(f) != TW_OK || unwind_logarithm(f) != TW_OK) return TW_ERROR;
+    if (turn_path(f) != TW_OK || mirror_path(f) != TW_OK || separate(f) != TW_OK || unwind_logarithm(f) != TW_OK)
+        return TW_ERROR;
     if (find_place(f) != TW_OK) return TW_ERROR;
     if (make_branches(f) != TW_OK) return TW_ERROR;
     begin_summary(f, summary);

@@ -1,6 +1,7 @@
-/* How the large parameter enters. The one idea: write everything as powers of s times what is free of s (sums of terms with one
- * common power give it up), so that a body is factor * amplitude * exp(-s^K phase) or it is not; and where it is not, the
- * powers at which s and x meet (x/s, s^2*x^3) name the few substitutions x = s^a t that could make it so. */
+/* How the large parameter enters. The one idea: write everything as powers of s times what is free of s (sums of terms
+ * with one common power give it up), so that a body is factor * amplitude * exp(-s^K phase) or it is not; and where it
+ * is not, the powers at which s and x meet (x/s, s^2*x^3) name the few substitutions x = s^a t that could make it so.
+ */
 #include "engine/method/scale.h"
 
 #include <stdlib.h>
@@ -140,7 +141,7 @@ typedef struct sorting {
     expr *x, *large;
     expr *factor, *amplitude, *phase; /* phase NULL: none yet */
     fmpq_t power;
-    const char *why;                  /* why it cannot be separated; static words */
+    const char *why; /* why it cannot be separated; static words */
     expr *culprit;
 } sorting;
 
@@ -257,7 +258,7 @@ static bool sort_body(sorting *s, expr *body)
 
 typedef struct stretches {
     size_t count, room;
-    fmpq *met;   /* pairs: exponent of x, exponent of the large parameter */
+    fmpq *met; /* pairs: exponent of x, exponent of the large parameter */
 } stretches;
 
 static void note_meeting(stretches *s, const fmpq_t m, const fmpq_t k)
@@ -372,12 +373,21 @@ static bool is_special_kernel(expr *a)
 {
     if (a->kind != EXPR_CALL) return false;
     switch (a->is.function) {
-    case FUNCTION_BESSEL_J: case FUNCTION_BESSEL_Y: case FUNCTION_BESSEL_I: case FUNCTION_BESSEL_K:
-    case FUNCTION_AI: case FUNCTION_BI: case FUNCTION_ERFC: case FUNCTION_ERF: case FUNCTION_E1: case FUNCTION_EI:
-    case FUNCTION_GAMMA_UPPER: case FUNCTION_ATAN: case FUNCTION_TANH: case FUNCTION_LOG:
-        return true;
-    default:
-        return false;
+    case FUNCTION_BESSEL_J:
+    case FUNCTION_BESSEL_Y:
+    case FUNCTION_BESSEL_I:
+    case FUNCTION_BESSEL_K:
+    case FUNCTION_AI:
+    case FUNCTION_BI:
+    case FUNCTION_ERFC:
+    case FUNCTION_ERF:
+    case FUNCTION_E1:
+    case FUNCTION_EI:
+    case FUNCTION_GAMMA_UPPER:
+    case FUNCTION_ATAN:
+    case FUNCTION_TANH:
+    case FUNCTION_LOG: return true;
+    default: return false;
     }
 }
 
@@ -399,8 +409,8 @@ static tw_status refuse_body(tw_engine *e, expr *body, expr *x, expr *large, con
     if (!words) return TW_ERROR;
     if (found) engine_fail(e, kind, format, words);
     else
-        engine_fail(e, ERROR_UNSUITABLE, "%s (in %s), and no substitution %s = %s^a*t separates them", why ? why : "no kernel found",
-                    words, x->is.name, s);
+        engine_fail(e, ERROR_UNSUITABLE, "%s (in %s), and no substitution %s = %s^a*t separates them",
+                    why ? why : "no kernel found", words, x->is.name, s);
     free(words);
     return TW_ERROR;
 }
@@ -416,7 +426,8 @@ static bool runs_positive(tw_engine *e, expr *from)
 }
 
 /* Does the body separate under x = large^a t? The result goes into out. */
-static bool try_stretch(tw_engine *e, separation *out, sorting *s, expr *body, expr *x, expr *from, expr *to, const fmpq_t a)
+static bool try_stretch(tw_engine *e, separation *out, sorting *s, expr *body, expr *x, expr *from, expr *to,
+                        const fmpq_t a)
 {
     expr *by = expr_pow(e, s->large, expr_fmpq(e, a));
     bool stretched = !fmpq_is_zero(a);
@@ -445,7 +456,8 @@ static bool power_grows(const separation *s, bool small)
     return s->phase && fmpq_sgn(s->power) == (small ? -1 : 1);
 }
 
-tw_status body_separate(tw_engine *e, separation *out, expr *body, expr *x, expr *from, expr *to, expr *large, bool small)
+tw_status body_separate(tw_engine *e, separation *out, expr *body, expr *x, expr *from, expr *to, expr *large,
+                        bool small)
 {
     enum { CANDIDATES_AT_MOST = 3 + MEETINGS_AT_MOST + MEETINGS_AT_MOST * MEETINGS_AT_MOST };
     fmpq *list = _fmpq_vec_init(CANDIDATES_AT_MOST);
@@ -469,7 +481,9 @@ tw_status body_separate(tw_engine *e, separation *out, expr *body, expr *x, expr
     if (e->error.kind != ERROR_NONE) return TW_ERROR;
     if (found) return TW_OK;
     if (weak && !why)
-        return engine_fail(e, ERROR_UNSUITABLE, "the integrand has no kernel that narrows as %s %s: there is no large parameter in "
-                                                "its exponent", large->is.name, small ? "tends to 0" : "grows");
+        return engine_fail(e, ERROR_UNSUITABLE,
+                           "the integrand has no kernel that narrows as %s %s: there is no large parameter in "
+                           "its exponent",
+                           large->is.name, small ? "tends to 0" : "grows");
     return refuse_body(e, body, x, large, why, culprit);
 }

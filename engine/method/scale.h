@@ -7,11 +7,11 @@
 #include "engine/expr/facts.h"
 
 typedef struct separation {
-    expr *variable;               /* t; x itself when the stretch is 0 */
-    expr *from, *to;              /* of t */
-    expr *factor;                 /* free of t */
-    expr *amplitude, *phase;      /* free of the large parameter */
-    fmpq_t power, stretch;        /* power > 0, for a small parameter < 0 */
+    expr *variable;          /* t; x itself when the stretch is 0 */
+    expr *from, *to;         /* of t */
+    expr *factor;            /* free of t */
+    expr *amplitude, *phase; /* free of the large parameter */
+    fmpq_t power, stretch;   /* power > 0, for a small parameter < 0 */
 } separation;
 
 void separation_init(separation *s);
@@ -19,7 +19,8 @@ void separation_clear(separation *s);
 
 /* Tries stretch 0, then the exponents at which large and x meet in the body or the ends. x runs over (from, to).
  * ERROR_UNSUITABLE or UNAVAILABLE with the reason and advice when nothing separates them. */
-tw_status body_separate(tw_engine *e, separation *out, expr *body, expr *x, expr *from, expr *to, expr *large, bool small);
+tw_status body_separate(tw_engine *e, separation *out, expr *body, expr *x, expr *from, expr *to, expr *large,
+                        bool small);
 
 /* expr_normal with all symbols that the facts make positive, and those of `more`. */
 expr *normal_under_facts(tw_engine *e, expr *a, expr *const *more, size_t count);

@@ -1,6 +1,7 @@
-/* Zeros of structure: an amplitude that depends on x^g only, apart from powers in front, has coefficients at every g-th place. They
- * are left out of the lanes, so that c[n] counts what is there (1/sqrt(1 + x^2): s^-1, s^-3, s^-5 ...). Decided from the form of
- * the integrand, never from the coefficients computed so far: what is left out is 0 for all n. */
+/* Zeros of structure: an amplitude that depends on x^g only, apart from powers in front, has coefficients at every g-th
+ * place. They are left out of the lanes, so that c[n] counts what is there (1/sqrt(1 + x^2): s^-1, s^-3, s^-5 ...).
+ * Decided from the form of the integrand, never from the coefficients computed so far: what is left out is 0 for all n.
+ */
 #include <stdlib.h>
 
 #include "engine/method/lanes.h"

@@ -1,5 +1,6 @@
-/* Watson's lemma in full (DLMF 2.3(ii)): the kernel is exp(-scale x^mu), the amplitude has a series in powers of x and log(x) at
- * 0, and the integral of each term is known. The one idea stands in lanes.c; this file says when it fits and keeps the record. */
+/* Watson's lemma in full (DLMF 2.3(ii)): the kernel is exp(-scale x^mu), the amplitude has a series in powers of x and
+ * log(x) at 0, and the integral of each term is known. The one idea stands in lanes.c; this file says when it fits and
+ * keeps the record. */
 #include <stdlib.h>
 
 #include "engine/method/local.h"
@@ -10,13 +11,14 @@ static answer watson_suits(tw_engine *e, const reading *r, char **why)
     if (!r->pure)
         return suits_answer(why, ANSWER_NO, "the exponent is no pure power of the distance from the critical point");
     char *place = expr_text(e, r->place);
-    answer a = suits_answer(why, ANSWER_YES, "the kernel is exp(-scale*y^mu) with y the distance from %s = %s", x, place ? place : "");
+    answer a = suits_answer(why, ANSWER_YES, "the kernel is exp(-scale*y^mu) with y the distance from %s = %s", x,
+                            place ? place : "");
     free(place);
     return a;
 }
 
-/* The integral minus the terms kept, exactly: the same kernel, and the amplitude less its first terms. Only for a single branch
- * and few terms, where it can be read. */
+/* The integral minus the terms kept, exactly: the same kernel, and the amplitude less its first terms. Only for a
+ * single branch and few terms, where it can be read. */
 static expr *exact_remainder(tw_engine *e, const reading *r, slong terms)
 {
     enum { TERMS_SHOWN = 4 };
@@ -57,7 +59,8 @@ static tw_status watson_expand(tw_engine *e, expansion *out, const reading *r, s
     if (local_expand(e, out, r, terms, "watson") != TW_OK) return TW_ERROR;
     step *s = local_record_sum(e, out, 0, "Watson's lemma: expand the amplitude and integrate term by term",
                                has_logs(out) ? "DLMF 2.3.8, 2.3.9" : "DLMF 2.3.8");
-    s->detail = base_copy("each term x^a*log(x)^k of the amplitude gives derivatives of Gamma(z)*scale^-z/mu in z = (a + 1)/mu");
+    s->detail = base_copy(
+        "each term x^a*log(x)^k of the amplitude gives derivatives of Gamma(z)*scale^-z/mu in z = (a + 1)/mu");
     if (!out->contributions[0].terminates) s->remainder = exact_remainder(e, r, terms);
     bool all;
     if (e->error.kind != ERROR_NONE) return TW_ERROR;

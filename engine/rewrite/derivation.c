@@ -1,5 +1,6 @@
-/* The record of how a result came about: steps in order, each with its conditions. The room's one idea: a condition keeps
- * the weakest label under which it was ever used, so a list can only lose strength as it grows. It may not know integrals. */
+/* The record of how a result came about: steps in order, each with its conditions. The room's one idea: a condition
+ * keeps the weakest label under which it was ever used, so a list can only lose strength as it grows. It may not know
+ * integrals. */
 #include "engine/rewrite/derivation.h"
 
 #include <stdlib.h>
@@ -66,10 +67,8 @@ tw_status conditions_require(tw_engine *e, condition_list *c, expr *relation)
     char *words = expr_text(e, relation);
     if (!words) return TW_ERROR;
     tw_status status = TW_OK;
-    if (holds == ANSWER_NO)
-        status = engine_fail(e, ERROR_UNSUITABLE, "this needs %s, which does not hold", words);
-    else
-        conditions_add(c, words, relation, holds == ANSWER_YES ? label : CONDITION_OPEN);
+    if (holds == ANSWER_NO) status = engine_fail(e, ERROR_UNSUITABLE, "this needs %s, which does not hold", words);
+    else conditions_add(c, words, relation, holds == ANSWER_YES ? label : CONDITION_OPEN);
     free(words);
     return status;
 }

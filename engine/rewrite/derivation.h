@@ -7,8 +7,8 @@
 #include "engine/expr/facts.h"
 
 typedef struct condition {
-    char *words;            /* "nu > -1", or a sentence such as "the integral converges absolutely for s > 3" */
-    expr *relation;         /* NULL when it is a sentence only */
+    char *words;    /* "nu > -1", or a sentence such as "the integral converges absolutely for s > 3" */
+    expr *relation; /* NULL when it is a sentence only */
     condition_label label;
 } condition;
 
@@ -19,12 +19,13 @@ typedef struct condition_list {
 
 void conditions_init(condition_list *c);
 void conditions_clear(condition_list *c);
-/* Adds unless the same words are there; of two labels the weaker stays (open weaker than granted weaker than given, proved). */
+/* Adds unless the same words are there; of two labels the weaker stays (open weaker than granted weaker than given,
+ * proved). */
 void conditions_add(condition_list *c, const char *words, expr *relation, condition_label label);
 void conditions_append(condition_list *to, const condition_list *from);
 bool conditions_all_sure(const condition_list *c); /* no open, no granted one */
-/* Decides the relation under the facts (ball/decide.h), adds it with its label (open when unknown); ERROR_UNSUITABLE with the
- * condition's words when it is proved false. */
+/* Decides the relation under the facts (ball/decide.h), adds it with its label (open when unknown); ERROR_UNSUITABLE
+ * with the condition's words when it is proved false. */
 tw_status conditions_require(tw_engine *e, condition_list *c, expr *relation);
 
 typedef struct step {

@@ -8,21 +8,27 @@ typedef struct closed {
 /* The sum of all contributions is the integral. */
 static const closed CASES[] = {
     {"s", "n > -1", "integral from 0 to inf of x^n*exp(-s*x) dx", "Gamma(n + 1)/s^(n + 1)", "DLMF 5.9.1"},
-    {"s", "n > -1, a > 0", "integral from 0 to inf of x^n*exp(-(s + a)*x) dx", "Gamma(n + 1)*(s + a)^(-n - 1)", "DLMF 5.9.1"},
-    {"s", "n > -1, a > 0", "integral from 0 to inf of x^n*exp(-a*s*x^2) dx", "Gamma((n + 1)/2)/2*(a*s)^(-(n + 1)/2)", "DLMF 5.9.1"},
+    {"s", "n > -1, a > 0", "integral from 0 to inf of x^n*exp(-(s + a)*x) dx", "Gamma(n + 1)*(s + a)^(-n - 1)",
+     "DLMF 5.9.1"},
+    {"s", "n > -1, a > 0", "integral from 0 to inf of x^n*exp(-a*s*x^2) dx", "Gamma((n + 1)/2)/2*(a*s)^(-(n + 1)/2)",
+     "DLMF 5.9.1"},
     {"s", "b > 0", "integral from 0 to inf of x^4*exp(-s*x^2 - b*x^2) dx", "3*sqrt(pi)/8*(s + b)^(-5/2)", "DLMF 5.9.1"},
     {"s", NULL, "integral from -inf to inf of x^4*exp(-s*x^2) dx", "3*sqrt(pi)/4*s^(-5/2)", "DLMF 5.9.3"},
-    {"s", NULL, "integral from -inf to inf of (1 + x)^2*exp(-3*s*(x - 1)^2) dx", "sqrt(pi/(3*s))*(4 + 1/(6*s))", "DLMF 5.9.3"},
+    {"s", NULL, "integral from -inf to inf of (1 + x)^2*exp(-3*s*(x - 1)^2) dx", "sqrt(pi/(3*s))*(4 + 1/(6*s))",
+     "DLMF 5.9.3"},
     {"s", NULL, "integral from 0 to inf of (x^3 + 2*x + sqrt(x))*exp(-(s + 2)*x) dx",
      "6/(s + 2)^4 + 2/(s + 2)^2 + sqrt(pi)/2*(s + 2)^(-3/2)", "DLMF 5.9.1"},
     {"s", NULL, "integral from 0 to inf of (1 + x)^3*exp(-s*x) dx", "1/s + 3/s^2 + 6/s^3 + 6/s^4", "DLMF 5.9.1"},
     {"s", NULL, "integral from 0 to 1 of x^2*exp(-s*x) dx", "2/s^3 - exp(-s)*(1/s + 2/s^2 + 2/s^3)", "parts"},
-    {"s", NULL, "integral from 0 to inf of x*log(x)*exp(-s*x) dx", "(1 - euler_constant - log(s))/s^2", "DLMF 5.9.19, 5.4.14"},
-    {"s", "n > -1", "integral from 0 to inf of x^n*log(x)*exp(-s*x) dx", "Gamma(n + 1)/s^(n + 1)*(psi(n + 1) - log(s))", "DLMF 5.9.19"},
+    {"s", NULL, "integral from 0 to inf of x*log(x)*exp(-s*x) dx", "(1 - euler_constant - log(s))/s^2",
+     "DLMF 5.9.19, 5.4.14"},
+    {"s", "n > -1", "integral from 0 to inf of x^n*log(x)*exp(-s*x) dx", "Gamma(n + 1)/s^(n + 1)*(psi(n + 1) - log(s))",
+     "DLMF 5.9.19"},
     {"small h", NULL, "integral from 0 to inf of x^3*exp(-x^2/(2*h)) dx", "2*h^2", "DLMF 5.9.1"},
     {"s", NULL, "integral from -inf to inf of x*exp(-s*x^2) dx", "0", "odd"},
     {"s", NULL, "integral from 0 to inf of exp(-s*x) + x*exp(-2*s*x) dx", "1/s + 1/(4*s^2)", "DLMF 5.9.1 term by term"},
-    {"s", NULL, "2*integral from 0 to inf of exp(-s*x) dx + integral from 0 to inf of x*exp(-s*x) dx/s", "2/s + 1/s^3", "DLMF 5.9.1"},
+    {"s", NULL, "2*integral from 0 to inf of exp(-s*x) dx + integral from 0 to inf of x*exp(-s*x) dx/s", "2/s + 1/s^3",
+     "DLMF 5.9.1"},
 };
 
 static void test_closed(void **state)
@@ -35,7 +41,8 @@ static void test_closed(void **state)
         if (c->given) text_given(e, c->given);
         expansion a;
         expansion_init(&a);
-        if (expand(e, &a, text_parse(e, c->integral), 2, NULL) != TW_OK) fail_msg("%s: %s", c->integral, e->error.words);
+        if (expand(e, &a, text_parse(e, c->integral), 2, NULL) != TW_OK)
+            fail_msg("%s: %s", c->integral, e->error.words);
         assert_true(a.exact);
         expr *sum = expr_int(e, 0);
         for (size_t n = 0; n < a.contribution_count; n++) {
@@ -53,13 +60,15 @@ static void test_not_exact(void **state)
 {
     (void)state;
     text_refused("s", NULL, "integral from 0 to inf of exp(-s*x)*abs(x - 1) dx", NULL, ERROR_UNSUITABLE, "abs(x - 1)");
-    text_refused("s", NULL, "integral from 0 to inf of exp(-s*x)*piecewise(1 when x < 1, 2 otherwise) dx", NULL, ERROR_UNSUITABLE,
-                 "analytic");
-    text_refused("s", NULL, "integral from 0 to inf of exp(-s*x)/(1 + x) dx", "moments", ERROR_UNSUITABLE, "does not close");
+    text_refused("s", NULL, "integral from 0 to inf of exp(-s*x)*piecewise(1 when x < 1, 2 otherwise) dx", NULL,
+                 ERROR_UNSUITABLE, "analytic");
+    text_refused("s", NULL, "integral from 0 to inf of exp(-s*x)/(1 + x) dx", "moments", ERROR_UNSUITABLE,
+                 "does not close");
     tw_engine *e = text_engine("s", LARGE_POSITIVE);
     expansion a;
     expansion_init(&a);
-    assert_int_equal(expand(e, &a, text_parse(e, "integral from 0 to inf of exp(-s*x)*(1 + x^7/(1 + x)) dx"), 3, NULL), TW_OK);
+    assert_int_equal(expand(e, &a, text_parse(e, "integral from 0 to inf of exp(-s*x)*(1 + x^7/(1 + x)) dx"), 3, NULL),
+                     TW_OK);
     assert_false(a.exact);
     assert_string_equal(a.made_by->name, "watson");
     expansion_clear(&a);

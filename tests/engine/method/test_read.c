@@ -8,24 +8,36 @@ typedef struct read_case {
 static const read_case SUMMARIES[] = {
     {"s", NULL, "integral from 0 to inf of exp(-s*x)/sqrt(1 + x^2) dx",
      "depends on s; one critical point, the end x = 0; converges for s > 0"},
-    {"s", NULL, "integral from 2 to inf of exp(-s*x)/x^3 dx", "depends on s; one critical point, the end x = 2; converges for s > 0"},
+    {"s", NULL, "integral from 2 to inf of exp(-s*x)/x^3 dx",
+     "depends on s; one critical point, the end x = 2; converges for s > 0"},
     {"s", NULL, "integral from -inf to inf of exp(-s*(x - 1)^2)/(1 + x^2) dx",
      "depends on s; one critical point, x = 1 inside the path; converges for s > 0"},
-    {"s", NULL, "integral from 0 to inf of exp(-s*x)*cosh(3*x) dx", "depends on s; one critical point, the end x = 0; converges for s > 3"},
+    {"s", NULL, "integral from 0 to inf of exp(-s*x)*cosh(3*x) dx",
+     "depends on s; one critical point, the end x = 0; converges for s > 3"},
     {"s", NULL, "integral from 0 to inf of exp(-2*s*x^2)*exp(5*x^2 + x) dx",
      "depends on s; one critical point, the end x = 0; converges for s > 5/2"},
     {"s", NULL, "integral from 0 to inf of exp(-s*x)*cosh(nu*x)/(1 + x) dx",
      "depends on s, nu; one critical point, the end x = 0; converges for s > abs(nu)"},
-    {"s", NULL, "integral from 0 to inf of exp(-s^2*x)*exp(4*x) dx", "depends on s; one critical point, the end x = 0; converges for s > 2"},
-    {"s", NULL, "integral from 0 to inf of (1 + x)^(-s)*x^2 dx", "depends on s; one critical point, the end x = 0; converges for s > 3"},
-    {"s", NULL, "integral from 0 to inf of (1 + 2*x)^(-3*s)*sqrt(x) dx", "depends on s; one critical point, the end x = 0; converges for s > 1/2"},
-    {"s", NULL, "integral from 0 to inf of exp(-s*x)*I(0, 2*x) dx", "depends on s; one critical point, the end x = 0; converges for s > 2"},
-    {"s", NULL, "integral from 0 to inf of exp(-s*sinh(x))*exp(5*x) dx", "depends on s; one critical point, the end x = 0; converges for s > 0"},
-    {"small h", NULL, "integral from 0 to inf of exp(-x/h)*exp(3*x) dx", "depends on h; one critical point, the end x = 0; converges for h < 1/3"},
-    {"small h", NULL, "integral from 0 to inf of exp(-x^2/(2*h))*(1 + x) dx", "depends on h; one critical point, the end x = 0; converges for h > 0"},
-    {"s", "a > 0", "integral from a to inf of exp(-s*x)/x dx", "depends on s, a; one critical point, the end x = a; converges for s > 0"},
-    {"s", NULL, "integral from 0 to 1 of exp(-s*(1 - x))/(1 + x) dx", "depends on s; one critical point, the end x = 1; converges for s > 0"},
-    {"s", NULL, "integral from -3 to 2 of exp(-s*abs(x))/(4 + x) dx", "depends on s; one critical point, x = 0 inside the path; converges for s > 0"},
+    {"s", NULL, "integral from 0 to inf of exp(-s^2*x)*exp(4*x) dx",
+     "depends on s; one critical point, the end x = 0; converges for s > 2"},
+    {"s", NULL, "integral from 0 to inf of (1 + x)^(-s)*x^2 dx",
+     "depends on s; one critical point, the end x = 0; converges for s > 3"},
+    {"s", NULL, "integral from 0 to inf of (1 + 2*x)^(-3*s)*sqrt(x) dx",
+     "depends on s; one critical point, the end x = 0; converges for s > 1/2"},
+    {"s", NULL, "integral from 0 to inf of exp(-s*x)*I(0, 2*x) dx",
+     "depends on s; one critical point, the end x = 0; converges for s > 2"},
+    {"s", NULL, "integral from 0 to inf of exp(-s*sinh(x))*exp(5*x) dx",
+     "depends on s; one critical point, the end x = 0; converges for s > 0"},
+    {"small h", NULL, "integral from 0 to inf of exp(-x/h)*exp(3*x) dx",
+     "depends on h; one critical point, the end x = 0; converges for h < 1/3"},
+    {"small h", NULL, "integral from 0 to inf of exp(-x^2/(2*h))*(1 + x) dx",
+     "depends on h; one critical point, the end x = 0; converges for h > 0"},
+    {"s", "a > 0", "integral from a to inf of exp(-s*x)/x dx",
+     "depends on s, a; one critical point, the end x = a; converges for s > 0"},
+    {"s", NULL, "integral from 0 to 1 of exp(-s*(1 - x))/(1 + x) dx",
+     "depends on s; one critical point, the end x = 1; converges for s > 0"},
+    {"s", NULL, "integral from -3 to 2 of exp(-s*abs(x))/(4 + x) dx",
+     "depends on s; one critical point, x = 0 inside the path; converges for s > 0"},
 };
 
 static void test_summaries(void **state)
@@ -60,7 +72,8 @@ static void test_conditions(void **state)
         {NULL, "integral from 0 to inf of x^nu*exp(-s*x)/(1 + x) dx", "nu > -1", CONDITION_OPEN},
         {"0 < p < 1", "integral from 0 to inf of x^(-p)*exp(-s*x)/(1 + x) dx", "p < 1", CONDITION_GIVEN},
         {"a > 0", "integral from 0 to inf of exp(-a*s*x)/(1 + x) dx", "a > 0", CONDITION_GIVEN},
-        {NULL, "integral from 0 to inf of exp(-s*x)/(1 + a*x) dx", "1 + a*x has no zero inside the path", CONDITION_OPEN},
+        {NULL, "integral from 0 to inf of exp(-s*x)/(1 + a*x) dx", "1 + a*x has no zero inside the path",
+         CONDITION_OPEN},
     };
     for (size_t k = 0; k < sizeof cases / sizeof *cases; k++) {
         tw_engine *e = text_engine("s", LARGE_POSITIVE);
@@ -70,7 +83,8 @@ static void test_conditions(void **state)
         if (integral_read(e, &r, text_parse(e, cases[k].integral)) != TW_OK) fail_msg("%s", e->error.words);
         bool found = false;
         for (size_t n = 0; n < r.conditions.count; n++)
-            found = found || (strcmp(r.conditions.list[n].words, cases[k].words) == 0 && r.conditions.list[n].label == cases[k].label);
+            found = found || (strcmp(r.conditions.list[n].words, cases[k].words) == 0 &&
+                              r.conditions.list[n].label == cases[k].label);
         if (!found) fail_msg("%s: no condition %s", cases[k].integral, cases[k].words);
         reading_clear(&r);
         tw_engine_free(e);
@@ -105,13 +119,14 @@ static void test_refusals(void **state)
         {NULL, "integral along inf(-pi/3) to inf(pi/3) of exp(s*(z^3/3 - z)) dz", ERROR_UNAVAILABLE, "descent"},
         {NULL, "integral from 0 to inf of cosh(s*x)*exp(-x^2) dx", ERROR_UNSUITABLE, "exp"},
         {NULL, "integral from 0 to inf of exp(-x)/(1 + s*x) dx", ERROR_UNSUITABLE, "separate"},
-        {NULL, "integral from 0 to inf of exp(-s*x)*integral from 0 to 1 of exp(-x*y) dy dx", ERROR_UNSUITABLE, "one variable"},
+        {NULL, "integral from 0 to inf of exp(-s*x)*integral from 0 to 1 of exp(-x*y) dy dx", ERROR_UNSUITABLE,
+         "one variable"},
         {NULL, "(integral from 0 to inf of exp(-s*x)/(1 + x) dx)^2", ERROR_UNSUITABLE, "by itself"},
         {NULL, "1/(1 + s)", ERROR_UNSUITABLE, "no integral"},
         {NULL, "integral from 0 to inf of exp(-a*s*x)/(1 + x) dx", ERROR_UNDECIDED, "sign of a"},
         {NULL, "integral from 0 to 1 of exp(-s*(x - a)^2) dx", ERROR_UNDECIDED, "x = a"},
-        {NULL, "integral from 0 to inf of exp(-s*x)/(1 + x) dx + integral from 1 to inf of exp(-s*x)/x dx", ERROR_UNSUITABLE,
-         "exponential size"},
+        {NULL, "integral from 0 to inf of exp(-s*x)/(1 + x) dx + integral from 1 to inf of exp(-s*x)/x dx",
+         ERROR_UNSUITABLE, "exponential size"},
     };
     for (size_t k = 0; k < sizeof cases / sizeof *cases; k++)
         text_refused("s", cases[k].given, cases[k].integral, NULL, cases[k].kind, cases[k].part);
@@ -127,10 +142,12 @@ static void test_no_large_parameter(void **state)
     assert_int_equal(e->error.kind, ERROR_UNSUITABLE);
     assert_non_null(strstr(e->error.words, "large s"));
     engine_forgive(e);
-    assert_int_equal(expand(e, &a, text_parse(e, "integral from 0 to inf of exp(-s*x)/(1 + x) dx"), 3, "laplace"), TW_ERROR);
+    assert_int_equal(expand(e, &a, text_parse(e, "integral from 0 to inf of exp(-s*x)/(1 + x) dx"), 3, "laplace"),
+                     TW_ERROR);
     assert_int_equal(e->error.kind, ERROR_UNAVAILABLE);
     engine_forgive(e);
-    assert_int_equal(expand(e, &a, text_parse(e, "integral from 0 to inf of exp(-s*x)/(1 + x) dx"), 3, "wotson"), TW_ERROR);
+    assert_int_equal(expand(e, &a, text_parse(e, "integral from 0 to inf of exp(-s*x)/(1 + x) dx"), 3, "wotson"),
+                     TW_ERROR);
     assert_int_equal(e->error.kind, ERROR_NAME);
     expansion_clear(&a);
     tw_engine_free(e);

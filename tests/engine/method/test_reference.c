@@ -1,5 +1,6 @@
-/* The reference cases of the families that this room has, term by term: reference and expansion are both evaluated at a very
- * large value of the parameter, in 400 bits, and compared at equal powers. The cases carry their sources (tests/reference). */
+/* The reference cases of the families that this room has, term by term: reference and expansion are both evaluated at a
+ * very large value of the parameter, in 400 bits, and compared at equal powers. The cases carry their sources
+ * (tests/reference). */
 #include "texts.h"
 
 #include <stdio.h>
@@ -7,8 +8,8 @@
 /* ---- a reader for the file: objects, arrays, strings; numbers are kept as words ---- */
 
 typedef struct json {
-    char kind;            /* '{', '[', '"' */
-    char *words;          /* of a string or a number */
+    char kind;   /* '{', '[', '"' */
+    char *words; /* of a string or a number */
     size_t count;
     char **names;
     struct json **parts;
@@ -162,7 +163,8 @@ static expr *steps_on(tw_engine *e, expr *first, expr *forward, slong n)
     return expr_add(e, first, expr_mul(e, forward, expr_int(e, n)));
 }
 
-static void reference_terms(tw_engine *e, numbers *out, const json *expansion_json, expr *large, const point *at, arb_t horizon)
+static void reference_terms(tw_engine *e, numbers *out, const json *expansion_json, expr *large, const point *at,
+                            arb_t horizon)
 {
     expr *prefactor = text_parse(e, get(expansion_json, "prefactor")->words);
     json *lanes = get(expansion_json, "lanes");
@@ -170,12 +172,14 @@ static void reference_terms(tw_engine *e, numbers *out, const json *expansion_js
     arb_init(last);
     for (size_t l = 0; l < lanes->count; l++) {
         json *one = lanes->parts[l], *c = get(one, "coefficients");
-        expr *first = text_parse(e, get(one, "first_exponent")->words), *forward = text_parse(e, get(one, "step")->words);
+        expr *first = text_parse(e, get(one, "first_exponent")->words),
+             *forward = text_parse(e, get(one, "step")->words);
         slong logs = atol(get(one, "log_power")->words);
         for (size_t n = 0; n < c->count; n++) {
             expr *exponent = steps_on(e, first, forward, (slong)n);
             expr *parts[] = {prefactor, text_parse(e, get(one, "constant")->words), text_parse(e, c->parts[n]->words),
-                             expr_pow(e, expr_call1(e, FUNCTION_LOG, large), expr_int(e, logs)), expr_pow(e, large, exponent)};
+                             expr_pow(e, expr_call1(e, FUNCTION_LOG, large), expr_int(e, logs)),
+                             expr_pow(e, large, exponent)};
             numbers_add(e, out, exponent, logs, expr_product(e, parts, 5), at);
             real_value(e, last, exponent, at);
         }
@@ -207,7 +211,9 @@ static slong compare(const numbers *want, const numbers *got, const arb_t horizo
     for (slong k = 0; k < want->count; k++) {
         if (arb_lt(&want->exponent[k], horizon)) continue;
         slong n = 0;
-        while (n < got->count && (!arb_overlaps(&got->exponent[n], &want->exponent[k]) || got->log_power[n] != want->log_power[k])) n++;
+        while (n < got->count &&
+               (!arb_overlaps(&got->exponent[n], &want->exponent[k]) || got->log_power[n] != want->log_power[k]))
+            n++;
         if (n == got->count && arb_is_zero(&want->value[k])) { /* left out, as it should be */
             compared++;
             continue;
@@ -222,7 +228,9 @@ static slong compare(const numbers *want, const numbers *got, const arb_t horizo
     }
     for (slong n = 0; n < got->count; n++) {
         slong k = 0;
-        while (k < want->count && (!arb_overlaps(&got->exponent[n], &want->exponent[k]) || got->log_power[n] != want->log_power[k])) k++;
+        while (k < want->count &&
+               (!arb_overlaps(&got->exponent[n], &want->exponent[k]) || got->log_power[n] != want->log_power[k]))
+            k++;
         if (k == want->count && !arb_contains_zero(&got->value[n]) && !arb_lt(&got->exponent[n], horizon))
             fail_msg("%s: the expansion has a term that the reference lacks", id);
     }

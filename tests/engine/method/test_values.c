@@ -1,6 +1,7 @@
-/* Random integrals of these families: the certified value of the integral minus the partial sum must be of the size of the first
- * omitted term, for several numbers of terms, at a large value of the parameter. Nothing here shares code with the making of
- * coefficients but the expressions themselves. The seed is printed and taken back from TW_SEED; TW_TRIALS sets the number. */
+/* Random integrals of these families: the certified value of the integral minus the partial sum must be of the size of
+ * the first omitted term, for several numbers of terms, at a large value of the parameter. Nothing here shares code
+ * with the making of coefficients but the expressions themselves. The seed is printed and taken back from TW_SEED;
+ * TW_TRIALS sets the number. */
 #include "texts.h"
 
 #include <stdio.h>
@@ -23,13 +24,15 @@ static const char *pick(const char *const *list, unsigned n)
 
 #define PICK(list) pick(list, sizeof list / sizeof *list)
 
-static const char *const HEADS[] = {"", "x^(-1/2)*", "x^(1/3)*", "x^(-2/3)*", "x^2*", "log(x)*", "x^(1/2)*log(x)*", "log(x)^2*"};
+static const char *const HEADS[] = {"",     "x^(-1/2)*", "x^(1/3)*",        "x^(-2/3)*",
+                                    "x^2*", "log(x)*",   "x^(1/2)*log(x)*", "log(x)^2*"};
 static const char *const AMPLITUDES[] = {
-    "1/(1 + x)",       "1/(2 + 3*x + x^2)", "(1 + x)^(1/3)",   "cos(x)",         "exp(-x)/(3 + x)", "1/(1 + x^2)",
-    "tanh(x)",         "log(1 + 2*x)",      "sqrt(2 + x)",     "cosh(x)/(1 + x)", "1/sqrt(1 + x^2)", "x/(exp(x) - 1)",
-    "atan(x)",         "sin(2*x)",          "1/(1 + sqrt(x))", "erfc(x)",        "(1 - exp(-x))",   "1/(5 - 4*cos(x))"};
+    "1/(1 + x)", "1/(2 + 3*x + x^2)", "(1 + x)^(1/3)",   "cos(x)",          "exp(-x)/(3 + x)", "1/(1 + x^2)",
+    "tanh(x)",   "log(1 + 2*x)",      "sqrt(2 + x)",     "cosh(x)/(1 + x)", "1/sqrt(1 + x^2)", "x/(exp(x) - 1)",
+    "atan(x)",   "sin(2*x)",          "1/(1 + sqrt(x))", "erfc(x)",         "(1 - exp(-x))",   "1/(5 - 4*cos(x))"};
 static const char *const KERNELS[] = {"s*x", "3*s*x", "s*x^2", "s*x^3/2", "s^2*x", "s*x^(3/2)", "s*sqrt(x)"};
-static const char *const PARTS_PHASES[] = {"sinh(x)", "x + x^2", "x + x^3/3", "exp(x) - 1", "2*x + sin(x)", "log(1 + x)*2"};
+static const char *const PARTS_PHASES[] = {"sinh(x)",    "x + x^2",      "x + x^3/3",
+                                           "exp(x) - 1", "2*x + sin(x)", "log(1 + x)*2"};
 static const char *const SMOOTH[] = {"1/(1 + x)", "cos(x)", "(2 + x)^(1/3)", "exp(-2*x)", "1/(2 + sin(x))", "1 + x^2"};
 static const char *const ENDS[] = {"inf", "inf", "2", "1"};
 
@@ -37,14 +40,19 @@ static void make_integral(char *out, size_t room)
 {
     switch (roll(3)) {
     case 0:
-        snprintf(out, room, "integral from 0 to %s of %s%s*exp(-%s) dx", PICK(ENDS), PICK(HEADS), PICK(AMPLITUDES), PICK(KERNELS));
+        snprintf(out, room, "integral from 0 to %s of %s%s*exp(-%s) dx", PICK(ENDS), PICK(HEADS), PICK(AMPLITUDES),
+                 PICK(KERNELS));
         break;
     case 1:
-        snprintf(out, room, "integral from 0 to %s of %s*exp(-s*(%s)) dx", PICK(ENDS), PICK(SMOOTH), PICK(PARTS_PHASES));
+        snprintf(out, room, "integral from 0 to %s of %s*exp(-s*(%s)) dx", PICK(ENDS), PICK(SMOOTH),
+                 PICK(PARTS_PHASES));
         break;
     default:
         snprintf(out, room, "integral from %s to inf of (%s)*exp(-%s) dx", roll(2) ? "-inf" : "-1",
-                 PICK(SMOOTH) == NULL ? "" : (roll(2) ? "1/(3 + x^2)" : roll(2) ? "cos(x - 1)" : "exp(-x/2)/(2 + x^2)"),
+                 PICK(SMOOTH) == NULL ? ""
+                                      : (roll(2)   ? "1/(3 + x^2)"
+                                         : roll(2) ? "cos(x - 1)"
+                                                   : "exp(-x/2)/(2 + x^2)"),
                  roll(2) ? "s*x^2" : "s*abs(x)");
         break;
     }

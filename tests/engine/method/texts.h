@@ -1,5 +1,5 @@
-/* Texts for the tests of this room: parse an expression in the language, declare facts, expand, evaluate the terms of an
- * expansion at a point in high precision. Independent of engine/numeric. */
+/* Texts for the tests of this room: parse an expression in the language, declare facts, expand, evaluate the terms of
+ * an expansion at a point in high precision. Independent of engine/numeric. */
 #ifndef TW_TESTS_METHOD_TEXTS_H
 #define TW_TESTS_METHOD_TEXTS_H
 
@@ -67,7 +67,8 @@ static inline tw_engine *text_engine(const char *large, large_kind kind)
 }
 
 /* value of a (closed after substitution) as a ball. */
-static inline void text_value(tw_engine *e, acb_t out, expr *a, expr *const *symbols, expr *const *values, size_t n, slong bits)
+static inline void text_value(tw_engine *e, acb_t out, expr *a, expr *const *symbols, expr *const *values, size_t n,
+                              slong bits)
 {
     expr *closed = expr_substitute_all(e, a, symbols, values, n);
     assert_non_null(closed);
@@ -123,9 +124,9 @@ static inline expr *text_sum(tw_engine *e, expansion *a, size_t k, slong terms)
 typedef struct text_case {
     const char *large, *given, *integral;
     slong terms;
-    const char *by;      /* or NULL */
-    const char *sum;     /* prefactor*terms of the first contribution */
-    const char *second;  /* of the second one, or NULL when there is no second */
+    const char *by;     /* or NULL */
+    const char *sum;    /* prefactor*terms of the first contribution */
+    const char *second; /* of the second one, or NULL when there is no second */
     const char *source;
 } text_case;
 
@@ -141,13 +142,15 @@ static inline void text_check(const text_case *t)
     assert_true(a.contribution_count == (t->second ? 2u : 1u));
     assert_same_value(e, text_sum(e, &a, 0, t->terms), t->sum);
     if (t->second) assert_same_value(e, text_sum(e, &a, 1, t->terms), t->second);
-    for (size_t k = 0; k < a.derivation.count; k++) assert_true(a.derivation.steps[k].after || a.derivation.steps[k].form || a.derivation.steps[k].detail);
+    for (size_t k = 0; k < a.derivation.count; k++)
+        assert_true(a.derivation.steps[k].after || a.derivation.steps[k].form || a.derivation.steps[k].detail);
     expansion_clear(&a);
     tw_engine_free(e);
 }
 
 /* The integral cannot be expanded, for a reason of this kind whose words hold `part`. */
-static inline void text_refused(const char *large, const char *given, const char *integral, const char *by, error_kind kind, const char *part)
+static inline void text_refused(const char *large, const char *given, const char *integral, const char *by,
+                                error_kind kind, const char *part)
 {
     bool small = strncmp(large, "small ", 6) == 0;
     tw_engine *e = text_engine(small ? large + 6 : large, small ? LARGE_SMALL : LARGE_POSITIVE);

@@ -49,7 +49,8 @@ static void test_require(void **state)
     condition_list c;
     conditions_init(&c);
     expr *a = expr_symbol(e, "a"), *zero = expr_int(e, 0);
-    expr *positive = expr_relation_of(e, RELATION_LESS, zero, a), *negative = expr_relation_of(e, RELATION_LESS, a, zero);
+    expr *positive = expr_relation_of(e, RELATION_LESS, zero, a),
+         *negative = expr_relation_of(e, RELATION_LESS, a, zero);
     assert_int_equal(conditions_require(e, &c, positive), TW_OK);
     assert_int_equal(c.list[0].label, CONDITION_OPEN);
     conditions_clear(&c);
