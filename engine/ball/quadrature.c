@@ -414,7 +414,7 @@ static tw_status integral_value(quad_sum *s, acb_t value, slong goal, slong *rea
         if (status != TW_OK)
             break;
         slong bits = accuracy(attempt);
-        if (bits > best || k == 0) {
+        if (k == 0 || bits > best || (bits < 0 && best < 0 && log2_radius(attempt) < log2_radius(value))) {
             stalled = 0;
             best = bits;
             acb_set(value, attempt);

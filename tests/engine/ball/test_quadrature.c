@@ -300,6 +300,7 @@ static const struct {
     {"integral from 0 to inf of exp(-x^s) dx", "sqrt(3)", "Gamma(1 + 1/sqrt(3))"},
     {"integral from 0 to inf of 1/cosh(x) dx", "1", "pi/2"},
     {"integral from 0 to inf of erfc(x) dx", "1", "1/sqrt(pi)"}, /* DLMF 7.7.1 ff. */
+    {"integral from 0 to inf of exp(-s*x)*J(0,x) dx", "2", "1/sqrt(5)"}, /* DLMF 10.22.49 */
     {"integral from 3 to -inf of exp(s*x) dx", "2", "-exp(6)/2"},
     /* peaks and scales */
     {"integral from 0 to inf of x^s*exp(-x) dx", "5000", "Gamma(5001)"},
