@@ -1,6 +1,6 @@
 /* Growth records of expressions: the walk over the tree, and what is read off the record of the root. Knows nothing of
- * integrals. The one idea: the tree is laid out once as a list; each X then costs one pass over the list, so a caller may look
- * for a good X by trying. */
+ * integrals. The one idea: the tree is laid out once as a list; each X then costs one pass over the list, so a caller
+ * may look for a good X by trying. */
 #include "engine/ball/growth.h"
 
 #include <stdlib.h>
@@ -100,14 +100,16 @@ static bool lay_out(growth_program *t, expr *f, size_t *at)
     growth_node n = {.f = f, .constant = f != t->x && !expr_has(f, t->x)};
     if (!n.constant && f != t->x) {
         if (!node_is_walked(f)) {
-            engine_fail(t->e, ERROR_UNDECIDED, "nothing is known of the growth of an integral or a sum inside the integrand");
+            engine_fail(t->e, ERROR_UNDECIDED,
+                    "nothing is known of the growth of an integral or a sum inside the integrand");
             return false;
         }
         n.args = base_alloc(f->count * sizeof *n.args);
         for (uint32_t k = 0; k < f->count; k++) {
             if (f->args[k]->kind == EXPR_RELATION && !expr_has(f->args[k], t->x)) {
                 free(n.args);
-                engine_fail(t->e, ERROR_UNDECIDED, "a condition without the variable of integration is left in the integrand");
+                engine_fail(t->e, ERROR_UNDECIDED,
+                        "a condition without the variable of integration is left in the integrand");
                 return false;
             }
             if (!lay_out(t, f->args[k], &n.args[k])) {
@@ -272,7 +274,8 @@ static bool power_record(growth_record *out, const growth_program *t, const grow
     }
     if (!expr_has(p, t->x))
         return record_pow_ball(out, base, exponent->g, &t->place);
-    return record_log(out, base, &t->place) && record_mul(out, out, exponent, &t->place) && record_exp(out, out, &t->place);
+    return record_log(out, base, &t->place) && record_mul(out, out, exponent, &t->place) && record_exp(out, out,
+            &t->place);
 }
 
 static bool fold(growth_record *out, const growth_program *t, const growth_node *n)
@@ -569,9 +572,9 @@ tw_status growth_at_infinity(tw_engine *e, growth_bound *out, expr *f, expr *x, 
     return found && !e->error.kind ? TW_OK : TW_ERROR;
 }
 
-/* With p = a + 1 - c (b > 0) or p = 0 (b = 0):  x^p (log x)^k e^(-(b-r) x^c) decreases from X on where
- * (b - r) c X^c >= max(p, 0) + max(k, 0)/log X. Then the integral of x^(c-1) e^(-r x^c) (or of x^(a+1-1)) is elementary:
- * tail <= X^p (log X)^k e^(-b X^c) / (c r). rate = c r X^c, the tail is X f(X)/rate; false where no r > 0 serves. */
+/* With p = a + 1 - c (b > 0) or p = 0 (b = 0):  x^p (log x)^k e^(-(b-r) x^c) decreases from X on where (b - r) c X^c >=
+ * max(p, 0) + max(k, 0)/log X. Then the integral of x^(c-1) e^(-r x^c) (or of x^(a+1-1)) is elementary: tail <= X^p
+ * (log X)^k e^(-b X^c) / (c r). rate = c r X^c, the tail is X f(X)/rate; false where no r > 0 serves. */
 static bool tail_rate(arb_t rate, const growth_bound *g, const arb_t log_X, slong prec)
 {
     arb_t t, u;
@@ -631,8 +634,8 @@ static void bound_log(arb_t out, const growth_bound *g, const arb_t log_x, slong
     arb_clear(u);
 }
 
-/* log of an upper bound of the integral from X to Y, log Y = log_Y: the length times the greatest value, each factor at the
- * end where it is greater. */
+/* log of an upper bound of the integral from X to Y, log Y = log_Y: the length times the greatest value, each factor at
+ * the end where it is greater. */
 static void middle_log(arb_t out, const growth_bound *g, const arb_t log_X, const arb_t log_Y, slong prec)
 {
     arb_t t, u;

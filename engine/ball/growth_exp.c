@@ -1,7 +1,7 @@
 /* Logarithm and exponential of growth records, the two that change the class. Knows no expressions.
  *
- * exp has an exact record only for x^a and for multiples of log x; whatever is left beside them is bounded from above by an
- * exponential of a power: sharp at X, weaker beyond. */
+ * exp has an exact record only for x^a and for multiples of log x; whatever is left beside them is bounded from above
+ * by an exponential of a power: sharp at X, weaker beyond. */
 #include "engine/ball/growth_record.h"
 
 static void real_upper(arf_t out, const arb_t x, const growth_place *p)
@@ -193,8 +193,8 @@ static void set_below(growth_record *out, const fmpq_t c, const arf_t tau, bool 
     arf_clear(one);
 }
 
-/* exp(x^A (log x)^k y), Re y <= top < 0: below exp(-b x^c) by a minorant  x^A e^(beta x^h) (log x)^k >= m x^c for x >= X,
- * which holds when x^(c-A) e^(-beta x^h) (log x)^(-k) decreases: m is the reciprocal of its supremum. */
+/* exp(x^A (log x)^k y), Re y <= top < 0: below exp(-b x^c) by a minorant  x^A e^(beta x^h) (log x)^k >= m x^c for x >=
+ * X, which holds when x^(c-A) e^(-beta x^h) (log x)^(-k) decreases: m is the reciprocal of its supremum. */
 static bool exp_falling(growth_record *out, const growth_record *r, const fmpq_t A, const fmpq_t c, const arf_t top,
                         const growth_place *p)
 {
@@ -230,7 +230,8 @@ static bool exp_falling(growth_record *out, const growth_record *r, const fmpq_t
     return ok;
 }
 
-/* exp(x^A (log x)^k y), Re y <= top, top > 0, no exponential inside: below exp(b x^c) by a majorant x^A (log x)^k <= m x^c. */
+/* exp(x^A (log x)^k y), Re y <= top, top > 0, no exponential inside: below exp(b x^c) by a majorant x^A (log x)^k <= m
+ * x^c. */
 static bool exp_rising(growth_record *out, const growth_record *r, const fmpq_t A, const fmpq_t c, const arf_t top,
                        const growth_place *p)
 {

@@ -1,5 +1,6 @@
-/* What each function of the table does to a growth record. Knows records and nothing of expressions; a function that has no
- * row here (`none`) has a record only where its argument stays bounded, by its value on the argument's ball (growth.c). */
+/* What each function of the table does to a growth record. Knows records and nothing of expressions; a function that
+ * has no row here (`none`) has a record only where its argument stays bounded, by its value on the argument's ball
+ * (growth.c). */
 #include "engine/ball/growth_record.h"
 
 typedef bool growth_rule(growth_record *out, const growth_record *u, const growth_place *p);
@@ -33,7 +34,8 @@ static bool add_si(growth_record *out, const growth_record *u, slong n, const gr
     return ok;
 }
 
-static bool pow_si(growth_record *out, const growth_record *u, slong numerator, slong denominator, const growth_place *p)
+static bool pow_si(growth_record *out, const growth_record *u, slong numerator, slong denominator,
+        const growth_place *p)
 {
     fmpq_t q;
     fmpq_init(q);
@@ -70,7 +72,8 @@ static bool growth_sign(growth_record *out, const growth_record *u, const growth
 }
 
 /* f of something decaying: f(0) + w h with h in f'(star). */
-static bool near_zero(growth_record *out, slong value, const growth_record *u, void (*derivative)(acb_t, const acb_t, slong),
+static bool near_zero(growth_record *out, slong value, const growth_record *u, void (*derivative)(acb_t, const acb_t,
+        slong),
                       const growth_place *p)
 {
     if (!record_decays(u))
@@ -411,7 +414,8 @@ static bool growth_erfc(growth_record *out, const growth_record *u, const growth
     if (sign < 0) { /* erfc u = 2 - erfc(-u) */
         growth_record r;
         record_init(&r);
-        bool ok = record_scale(&r, u, -1, p) && erfc_large(&r, &r, p) && record_scale(&r, &r, -1, p) && add_si(out, &r, 2, p);
+        bool ok = record_scale(&r, u, -1, p) && erfc_large(&r, &r, p) && record_scale(&r, &r, -1, p) && add_si(out,
+                &r, 2, p);
         record_clear(&r);
         if (ok)
             return true;

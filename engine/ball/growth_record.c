@@ -1,5 +1,5 @@
-/* The arithmetic of growth records. Each operation takes what is known of its operands for ALL x >= X and gives what is then
- * known of the result for all x >= X, or says that it knows nothing. Knows no expressions.
+/* The arithmetic of growth records. Each operation takes what is known of its operands for ALL x >= X and gives what is
+ * then known of the result for all x >= X, or says that it knows nothing. Knows no expressions.
  *
  * The one idea: whatever is dropped is bounded by its value at X, after checking that the bounding function (constant
  * coefficients, upper bounds only) decreases from X on. */
@@ -731,7 +731,8 @@ static bool power_ball(acb_t out, const growth_record *r, const arb_t power, boo
 }
 
 /* (q + w)^power = q^power + w h,  h in power (q + star)^(power - 1). */
-static bool power_rest(growth_record *rest, fmpq_t value, const growth_record *r, const fmpq_t power, const growth_place *p)
+static bool power_rest(growth_record *rest, fmpq_t value, const growth_record *r, const fmpq_t power,
+        const growth_place *p)
 {
     if (!rational_power(value, r->q, power))
         return false;

@@ -3,8 +3,8 @@
  *     f(x) = exp(T x^c) * x^(a + d) * (log x)^k * g(x)    for every real x >= X > e
  *
  * where T = T(x) lies in a complex ball, d = d(x) in [-slack, slack], g(x) in a complex ball; a, c, k, slack are exact
- * rationals (slack is 0 unless an exponent is irrational). Where `exact` is set, g(x) = q + rest(x) as well, q a rational
- * and rest a record of its own (NULL: the rest is 0): this survives cancellation of leading terms. */
+ * rationals (slack is 0 unless an exponent is irrational). Where `exact` is set, g(x) = q + rest(x) as well, q a
+ * rational and rest a record of its own (NULL: the rest is 0): this survives cancellation of leading terms. */
 #ifndef TW_BALL_GROWTH_RECORD_H
 #define TW_BALL_GROWTH_RECORD_H
 
@@ -65,8 +65,9 @@ bool record_near(growth_record *out, const fmpq_t value, const growth_record *w,
 /* The ball that holds all s*w(x), 0 <= s <= 1, x >= X. */
 bool record_star(acb_t star, const growth_record *w, const growth_place *p);
 
-/* The sum of log-sup of  exp(tau1 x^c1 + tau2 x^c2) x^alpha (log x)^kappa  over x >= X: finite and exact from above only where
- * the function is seen to be nonincreasing from X on; false else. tau1, tau2 are exact reals; c1 != c2 unless a tau is 0. */
+/* The sum of log-sup of  exp(tau1 x^c1 + tau2 x^c2) x^alpha (log x)^kappa  over x >= X: finite and exact from above
+ * only where the function is seen to be nonincreasing from X on; false else. tau1, tau2 are exact reals; c1 != c2
+ * unless a tau is 0. */
 bool growth_sup_log(arb_t out, const fmpq_t c1, const arf_t tau1, const fmpq_t c2, const arf_t tau2, const fmpq_t alpha,
                     const fmpq_t kappa, const growth_place *p);
 

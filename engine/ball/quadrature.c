@@ -1,9 +1,10 @@
-/* Certified quadrature as others see it: an expression that may hold integrals, its value as a ball of the relative accuracy
- * that was asked. This file splits ranges into pieces, adds the pieces up, and tries again with another tolerance or precision
- * until the sum is good enough; what one piece is and how it is integrated is quadrature_piece.c. Knows no methods.
+/* Certified quadrature as others see it: an expression that may hold integrals, its value as a ball of the relative
+ * accuracy that was asked. This file splits ranges into pieces, adds the pieces up, and tries again with another
+ * tolerance or precision until the sum is good enough; what one piece is and how it is integrated is
+ * quadrature_piece.c. Knows no methods.
  *
- * The one idea: accuracy is relative, so a guess of the size comes first (a scan), a ball second; that ball then gives a
- * proved lower bound of the size, and the tolerance of the next attempt where one is needed. */
+ * The one idea: accuracy is relative, so a guess of the size comes first (a scan), a ball second; that ball then gives
+ * a proved lower bound of the size, and the tolerance of the next attempt where one is needed. */
 #include "engine/ball/quadrature.h"
 
 #include <math.h>
@@ -17,7 +18,8 @@
 
 enum { ATTEMPTS = 24, GUARD_BITS = 12, GAP_LIMIT = 4200, TEXT_LIMIT = 60 };
 
-/* One integral: a sum of pieces, each with a sign or factor, and thin slices around points that are known only closely. */
+/* One integral: a sum of pieces, each with a sign or factor, and thin slices around points that are known only closely.
+ */
 typedef struct quad_slice {
     tape *values;
     arb_t place;
@@ -180,7 +182,8 @@ static void inner_point(arf_t out, const arb_t from, bool from_infinite, const a
 }
 
 /* The range cut at the integrand's kinks and branch points. */
-static tw_status add_with_kinks(quad_sum *s, slong factor, expr *f, expr *x, expr *from, expr *to, const arb_t a, const arb_t b,
+static tw_status add_with_kinks(quad_sum *s, slong factor, expr *f, expr *x, expr *from, expr *to, const arb_t a,
+        const arb_t b,
                                 slong prec)
 {
     tw_engine *e = s->e;
@@ -252,7 +255,8 @@ static tw_status sum_build(quad_sum *s, expr *integral, slong prec)
     if (!f)
         return TW_ERROR;
     if (holds_integral(f) || holds_integral(from) || holds_integral(to))
-        return engine_fail(e, ERROR_UNSUITABLE, "quadrature takes one integral at a time: the integrand or an end holds another");
+        return engine_fail(e, ERROR_UNSUITABLE,
+                "quadrature takes one integral at a time: the integrand or an end holds another");
     arb_t a, b;
     arb_init(a);
     arb_init(b);
@@ -370,7 +374,8 @@ static tw_status sum_attempt(quad_sum *s, acb_t value, double log2_size, slong g
         status = quad_piece_integrate(&s->pieces[k], part, tolerance, goal + 2, prec);
         acb_addmul_si(value, part, s->factors[k], prec);
         if (status == TW_OK && !acb_is_finite(part))
-            status = engine_fail(s->e, ERROR_UNDECIDED, "no finite enclosure between %s and %s: the integrand may have a pole there",
+            status = engine_fail(s->e, ERROR_UNDECIDED,
+                    "no finite enclosure between %s and %s: the integrand may have a pole there",
                                  s->pieces[k].from, s->pieces[k].to);
     }
     if (status == TW_OK)
@@ -386,7 +391,8 @@ static double seconds_now(void)
     return (double)t.tv_sec + 1e-9 * (double)t.tv_nsec;
 }
 
-/* The value of one integral to `goal` relative bits. On TW_OK with *reached < goal the ball is the best that was found. */
+/* The value of one integral to `goal` relative bits. On TW_OK with *reached < goal the ball is the best that was found.
+ */
 static tw_status integral_value(quad_sum *s, acb_t value, slong goal, slong *reached)
 {
     double size = -1e300, first;
@@ -553,14 +559,17 @@ tw_status quadrature(tw_engine *e, acb_t value, expr *f, const env *at, slong di
     tw_status status = h && !e->error.kind ? combine(e, value, h, &list, goal, &reached, r) : TW_ERROR;
     free(list.nodes);
     free(list.symbols);
-    if (status == TW_OK && !arb_is_zero(acb_imagref(value)) && arb_contains_zero(acb_imagref(value)) && decide_real_value(e, g))
+    if (status == TW_OK && !arb_is_zero(acb_imagref(value)) && arb_contains_zero(acb_imagref(value)) &&
+            decide_real_value(e, g))
         arb_zero(acb_imagref(value));
     if (status != TW_OK || reached >= goal - 1 || accept_less)
         return status;
     if (!acb_is_finite(value))
         return engine_fail(e, ERROR_UNDECIDED, "no finite value was found");
     if (reached < 1)
-        return engine_fail(e, ERROR_PRECISION, "the value is 0 or too near to it: it lies within 10^%ld of 0, and no relative accuracy can be had",
+        return engine_fail(e, ERROR_PRECISION,
+                "the value is 0 or too near to it: it lies within 10^%ld of 0, and no relative accuracy can be had",
                            (long)ceil(log2_upper(value) * 0.30103));
-    return engine_fail(e, ERROR_PRECISION, "%ld digits cannot be had here; %ld can", (long)digits, (long)(reached * 0.30103));
+    return engine_fail(e, ERROR_PRECISION, "%ld digits cannot be had here; %ld can", (long)digits,
+            (long)(reached * 0.30103));
 }

@@ -1,9 +1,10 @@
-/* The points inside a range where an integrand is not analytic by its form: kinks of abs, sign, min, max and conditions; branch
- * points of logarithms and fractional powers; zeros of denominators. Knows nothing of integration.
+/* The points inside a range where an integrand is not analytic by its form: kinks of abs, sign, min, max and
+ * conditions; branch points of logarithms and fractional powers; zeros of denominators. Knows nothing of integration.
  *
- * Zeros are isolated, not guessed: by exact factoring for rational polynomials, otherwise by balls of the function and its
- * derivative on halved intervals, and towards infinity by the growth record. A kink that was missed would make a wrong value, so
- * for kinks anything unresolved is an error; a branch point or pole that was missed only makes the integration fail. */
+ * Zeros are isolated, not guessed: by exact factoring for rational polynomials, otherwise by balls of the function and
+ * its derivative on halved intervals, and towards infinity by the growth record. A kink that was missed would make a
+ * wrong value, so for kinks anything unresolved is an error; a branch point or pole that was missed only makes the
+ * integration fail. */
 #include "engine/ball/quadrature_kinks.h"
 
 #include <stdlib.h>
@@ -280,7 +281,8 @@ static tw_status zeros_by_balls(search *s, expr *g, bool strict)
         s->points->complete = false;
     if (!known && strict && !s->e->error.kind) {
         char *words = expr_text(s->e, g);
-        status = engine_fail(s->e, ERROR_UNDECIDED, "the sign of %s could not be decided towards infinity", words ? words : "a part");
+        status = engine_fail(s->e, ERROR_UNDECIDED, "the sign of %s could not be decided towards infinity",
+                words ? words : "a part");
         free(words);
     } else if (known && arf_cmp(a, b) < 0) {
         status = isolate(s, g, values, a, b, strict, 0);
@@ -440,10 +442,12 @@ static tw_status walk(search *s, expr *f)
     return status;
 }
 
-tw_status quad_points_find(quad_points *p, tw_engine *e, expr *f, expr *x, const arb_t from, bool from_infinite, const arb_t to,
+tw_status quad_points_find(quad_points *p, tw_engine *e, expr *f, expr *x, const arb_t from, bool from_infinite,
+        const arb_t to,
                            bool to_infinite, slong prec)
 {
-    search s = {.points = p, .e = e, .x = x, .from = from, .to = to, .from_infinite = from_infinite, .to_infinite = to_infinite,
+    search s = {.points = p, .e = e, .x = x, .from = from, .to = to, .from_infinite = from_infinite,
+            .to_infinite = to_infinite,
                 .prec = prec};
     tw_status status = walk(&s, f);
     if (p->count)

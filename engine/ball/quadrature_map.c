@@ -1,8 +1,9 @@
-/* The change of variable of a piece, done on the expression: powers of y are pulled out of every sum, product and power, so
- * that a fractional power of y, a pole of y or an algebraic tail become whole powers of the new variable. Knows no numbers.
+/* The change of variable of a piece, done on the expression: powers of y are pulled out of every sum, product and
+ * power, so that a fractional power of y, a pole of y or an algebraic tail become whole powers of the new variable.
+ * Knows no numbers.
  *
- * Each rewriting is an identity for y > 0; where the new form is analytic on a disc, the integral along the real axis is
- * that of the analytic function, whatever the old form's branches do off the axis. */
+ * Each rewriting is an identity for y > 0; where the new form is analytic on a disc, the integral along the real axis
+ * is that of the analytic function, whatever the old form's branches do off the axis. */
 #include "engine/ball/quadrature_piece.h"
 
 #include <stdlib.h>
@@ -227,7 +228,8 @@ expr *quad_map_integrand(tw_engine *e, expr *f, expr *y, expr *t, quad_map map, 
     if (a.rest && map == QUAD_EXP) {
         *k = 0;
         fmpq_add_si(a.q, a.q, 1); /* dy = e^t dt */
-        F = expr_mul(e, expr_call1(e, FUNCTION_EXP, expr_mul(e, expr_fmpq(e, a.q), t)), put_variable(e, a.rest, p.w, t, 0));
+        F = expr_mul(e, expr_call1(e, FUNCTION_EXP, expr_mul(e, expr_fmpq(e, a.q), t)), put_variable(e, a.rest, p.w,
+                t, 0));
     } else if (a.rest) {
         fmpz_set(lcm, fmpq_denref(a.q));
         collect_denominators(lcm, a.rest, p.w);
@@ -236,7 +238,8 @@ expr *quad_map_integrand(tw_engine *e, expr *f, expr *y, expr *t, quad_map map, 
             fmpq_add_si(a.q, a.q, 1);
             fmpq_mul_fmpz(a.q, a.q, lcm);
             fmpq_sub_si(a.q, a.q, 1);
-            expr *factors[] = {expr_int(e, (slong)*k), expr_pow(e, t, expr_fmpq(e, a.q)), put_variable(e, a.rest, p.w, t, *k)};
+            expr *factors[] = {expr_int(e, (slong)*k), expr_pow(e, t, expr_fmpq(e, a.q)), put_variable(e, a.rest, p.w,
+                    t, *k)};
             F = expr_product(e, factors, 3);
         }
     }

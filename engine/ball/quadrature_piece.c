@@ -1,9 +1,9 @@
-/* One piece: which variable serves which end, where an end is cut off and what the rest weighs, and the sum over panels by
- * acb_calc_integrate. Knows nothing of how the range was split.
+/* One piece: which variable serves which end, where an end is cut off and what the rest weighs, and the sum over panels
+ * by acb_calc_integrate. Knows nothing of how the range was split.
  *
- * Ends: regular at 0: y itself. Else y = t^k if that makes the integrand analytic there; else y = e^t, cut off at a t where
- * the growth record of f(1/v)/v^2 bounds the rest. At infinity: exponential decay is cut off in the variable at hand; an
- * algebraic tail becomes a piece of its own in y = t^-k, or in e^t. */
+ * Ends: regular at 0: y itself. Else y = t^k if that makes the integrand analytic there; else y = e^t, cut off at a t
+ * where the growth record of f(1/v)/v^2 bounds the rest. At infinity: exponential decay is cut off in the variable at
+ * hand; an algebraic tail becomes a piece of its own in y = t^-k, or in e^t. */
 #include "engine/ball/quadrature_piece.h"
 
 #include <math.h>
@@ -138,10 +138,12 @@ static tw_status tail_fails(quad_piece *p, const tail *a, bool cutting)
         return engine_fail(p->e, ERROR_UNSUITABLE, "the integrand oscillates towards %s without decaying enough for "
                            "quadrature along the real line", where);
     if (cutting)
-        return engine_fail(p->e, ERROR_UNDECIDED, "the %s %s is integrable, but dies away too slowly for a bound of its end",
+        return engine_fail(p->e, ERROR_UNDECIDED,
+                "the %s %s is integrable, but dies away too slowly for a bound of its end",
                            a->high ? "tail at" : "integrand at", where);
     char *words = expr_text(p->e, growth_resists(p->records));
-    engine_fail(p->e, ERROR_UNDECIDED, "no bound was found for the %s at %s (%s)", a->high ? "tail" : "integrand", where,
+    engine_fail(p->e, ERROR_UNDECIDED, "no bound was found for the %s at %s (%s)", a->high ? "tail" : "integrand",
+            where,
                 words ? words : "the integrand");
     free(words);
     return TW_ERROR;
@@ -267,7 +269,8 @@ static tw_status find_cut(arf_t cut, acb_t rest, quad_piece *p, bool high, slong
     bool found = false;
     for (int tries = 0; tries < CUT_TRIES && !found && budget_ok(p->e); tries++) {
         if (growth_run(p->records, &g, v) && growth_integrable(&g)) {
-            found = growth_tail(p->e, log_rest, &g) == TW_OK && !arb_gt(log_rest, limit) && !arf_is_nan(arb_midref(log_rest));
+            found = growth_tail(p->e, log_rest, &g) == TW_OK && !arb_gt(log_rest, limit) &&
+                    !arf_is_nan(arb_midref(log_rest));
             if (p->e->error.kind == ERROR_DIVERGENT || p->e->error.kind == ERROR_UNDECIDED)
                 engine_forgive(p->e);
         }
@@ -368,7 +371,8 @@ tw_status quad_piece_init(quad_piece *p, tw_engine *e, expr *f, expr *y, expr *l
     }
     p->oscillates = has_oscillation(p->f, y);
     if (!quad_scan_run(&p->scan, e, p->values, length ? p->extent : NULL))
-        return engine_fail(e, ERROR_UNDECIDED, "no finite value of the integrand was found between %s and %s", from, to);
+        return engine_fail(e, ERROR_UNDECIDED, "no finite value of the integrand was found between %s and %s", from,
+                to);
     p->evaluations += (slong)p->scan.count;
     if (choose_low(p) != TW_OK || (!length && choose_high(p) != TW_OK)) {
         if (!e->error.kind)
@@ -555,7 +559,8 @@ static void panel(acb_t value, run *r, const acb_t from, const acb_t to, slong t
     mag_clear(tol);
 }
 
-static tw_status part_integrate(quad_piece *p, quad_part *a, acb_t value, const arb_t from, const arb_t to, slong tolerance,
+static tw_status part_integrate(quad_piece *p, quad_part *a, acb_t value, const arb_t from, const arb_t to,
+        slong tolerance,
                                 slong goal, slong prec)
 {
     run r = {p, a, (double)tolerance * 0.6931 - 40};

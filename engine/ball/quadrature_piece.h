@@ -1,5 +1,5 @@
-/* Inside the quadrature: a piece is an integral over 0 < y < length (or y > 0) of an expression that may be singular at the
- * end 0 and, where the range is infinite, decays; it is regular at a finite upper end and has no kink inside. */
+/* Inside the quadrature: a piece is an integral over 0 < y < length (or y > 0) of an expression that may be singular at
+ * the end 0 and, where the range is infinite, decays; it is regular at a finite upper end and has no kink inside. */
 #ifndef TW_BALL_QUADRATURE_PIECE_H
 #define TW_BALL_QUADRATURE_PIECE_H
 
@@ -15,10 +15,11 @@ typedef enum quad_map {
     QUAD_EXP,     /* y = e^t */
 } quad_map;
 
-/* f(y) dy/dt (its modulus) as an expression in t, for y > 0. For POWER and INVERSE *k receives the exponent that makes powers
- * of t whole. NULL with the error set, or without one where the form does not allow it. */
+/* f(y) dy/dt (its modulus) as an expression in t, for y > 0. For POWER and INVERSE *k receives the exponent that makes
+ * powers of t whole. NULL with the error set, or without one where the form does not allow it. */
 expr *quad_map_integrand(tw_engine *e, expr *f, expr *y, expr *t, quad_map map, ulong *k);
-/* F = Q exp(L): exponentials and high powers gathered in L; L is NULL where there is nothing to gain (L absent or linear). */
+/* F = Q exp(L): exponentials and high powers gathered in L; L is NULL where there is nothing to gain (L absent or
+ * linear). */
 void quad_split(tw_engine *e, expr *F, expr *t, expr **Q, expr **L);
 
 /* ---- where the mass lies (quadrature_scan.c) ---- */
@@ -81,11 +82,13 @@ typedef struct quad_piece {
 /* Is f regular (analytic on a small disc) at y = 0? scale: log2 of a typical y. */
 bool quad_is_regular(tape *values, double log2_scale);
 
-/* Prepares; from, to name the ends in errors. Errors: DIVERGENT, UNDECIDED, UNSUITABLE, TIME, ... The piece can be cleared in
- * any case. */
-tw_status quad_piece_init(quad_piece *p, tw_engine *e, expr *f, expr *y, expr *length, const char *from, const char *to);
+/* Prepares; from, to name the ends in errors. Errors: DIVERGENT, UNDECIDED, UNSUITABLE, TIME, ... The piece can be
+ * cleared in any case. */
+tw_status quad_piece_init(quad_piece *p, tw_engine *e, expr *f, expr *y, expr *length, const char *from,
+        const char *to);
 void quad_piece_clear(quad_piece *p);
-/* value = the integral, error aimed at 2^tolerance in absolute terms; a ball in any case when TW_OK. goal: relative bits. */
+/* value = the integral, error aimed at 2^tolerance in absolute terms; a ball in any case when TW_OK. goal: relative
+ * bits. */
 tw_status quad_piece_integrate(quad_piece *p, acb_t value, slong tolerance, slong goal, slong prec);
 
 #endif

@@ -1,6 +1,6 @@
-/* Where the mass of a piece lies: a coarse scan of log |f| on a geometric grid (log |f| is broad however narrow f is), then
- * each local maximum refined and its width found. Everything here is a guess in plain doubles that steers the certified work
- * and enters no result. */
+/* Where the mass of a piece lies: a coarse scan of log |f| on a geometric grid (log |f| is broad however narrow f is),
+ * then each local maximum refined and its width found. Everything here is a guess in plain doubles that steers the
+ * certified work and enters no result. */
 #include "engine/ball/quadrature_piece.h"
 
 #include <math.h>

@@ -1,5 +1,5 @@
-/* Milliseconds of certified quadrature on the table of tests/engine/ball/quadrature_cases.h: medians of repeated runs in one
- * process (nodes of the quadrature rules are kept from the first on), with the first run beside them. */
+/* Milliseconds of certified quadrature on the table of tests/engine/ball/quadrature_cases.h: medians of repeated runs
+ * in one process (nodes of the quadrature rules are kept from the first on), with the first run beside them. */
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>

@@ -1,5 +1,5 @@
-/* Soundness of the growth records: random trees, random X, random points x >= X. At each point the value of the tree, a ball,
- * must meet the two-sided record and lie below the bound; bounds of tails must lie above lower Riemann sums.
+/* Soundness of the growth records: random trees, random X, random points x >= X. At each point the value of the tree, a
+ * ball, must meet the two-sided record and lie below the bound; bounds of tails must lie above lower Riemann sums.
  * TW_SEED gives the seed, TW_TRIALS the number of points (default 100000). */
 #include "engine/ball/growth.h"
 
@@ -117,13 +117,15 @@ static void bound_log_at(arb_t out, const growth_bound *g, const arb_t x, slong 
 static void violated(tw_engine *e, expr *f, const char *what, const arb_t x, const acb_t value)
 {
     char *words = expr_text(e, f);
-    char *at = arb_get_str(x, 20, 0), *re = arb_get_str(acb_realref(value), 20, 0), *im = arb_get_str(acb_imagref(value), 20, 0);
+    char *at = arb_get_str(x, 20, 0), *re = arb_get_str(acb_realref(value), 20, 0),
+            *im = arb_get_str(acb_imagref(value), 20, 0);
     fail_msg("%s: f = %s at x = %s is %s + i %s", what, words, at, re, im);
 }
 
 static unsigned long points, judged, trees, recorded;
 
-static void check_point(tw_engine *e, expr *f, tape *values, growth_program *t, const growth_bound *g, const arf_t X, int kind)
+static void check_point(tw_engine *e, expr *f, tape *values, growth_program *t, const growth_bound *g, const arf_t X,
+        int kind)
 {
     acb_t x, v, w;
     arb_t size, bound;
@@ -230,7 +232,8 @@ static void test_tails(void **unused)
         engine_forgive(e);
         arb_set_arf(x, g.X);
         bound_log_at(low, &g, x, 64);
-        for (int k = 0; s == TW_OK && k < 400; k++) { /* the bound has one greatest value: the ends of a step hold its least */
+        for (int k = 0; s == TW_OK &&
+                k < 400; k++) { /* the bound has one greatest value: the ends of a step hold its least */
             arb_mul_ui(y, x, 51, 64);
             arb_div_ui(y, y, 50, 64);
             bound_log_at(high, &g, y, 64);
@@ -263,7 +266,8 @@ static expr *exp_of(tw_engine *e, expr *a)
     return expr_call1(e, FUNCTION_EXP, a);
 }
 
-/* What the second record is for: each of these loses its leading terms. The power of x that must be left is known by hand. */
+/* What the second record is for: each of these loses its leading terms. The power of x that must be left is known by
+ * hand. */
 static void test_cancellation(void **unused)
 {
     (void)unused;

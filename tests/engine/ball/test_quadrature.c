@@ -1,6 +1,6 @@
-/* Certified quadrature against values known otherwise: the table of sharp and singular integrals at 16, 50 and 200 digits, the
- * reference set, closed forms, changes of variable; and what must not get a value: divergent, undecidable, unsuitable ones.
- * TW_SEED gives the seed of the random integrands. */
+/* Certified quadrature against values known otherwise: the table of sharp and singular integrals at 16, 50 and 200
+ * digits, the reference set, closed forms, changes of variable; and what must not get a value: divergent, undecidable,
+ * unsuitable ones. TW_SEED gives the seed of the random integrands. */
 #include "engine/ball/quadrature.h"
 
 #include <setjmp.h>
@@ -102,9 +102,10 @@ static void assert_real_value(const acb_t v, const char *value, const char *what
     arb_clear(slack);
 }
 
-/* Values from closed forms, by mpmath 1.3 at 90 digits: pi/2 (H_0(s) - Y_0(s)) (DLMF 11.5.2); Gamma(1/3) e^s Gamma(2/3, s) (DLMF
- * 13.4.4, 13.6.6); tanh-sinh after x = e^u/s; Gamma(s+1)/s^(s+1); tanh-sinh after x = y/sqrt(s); K_0(s) (DLMF 10.32.9);
- * Im e^z E1(z)/20, z = -(1+i) s/20 (DLMF 6.7.1); at s = 10^4 and 10^6 by their asymptotic series where those give 80 digits. */
+/* Values from closed forms, by mpmath 1.3 at 90 digits: pi/2 (H_0(s) - Y_0(s)) (DLMF 11.5.2); Gamma(1/3) e^s Gamma(2/3,
+ * s) (DLMF 13.4.4, 13.6.6); tanh-sinh after x = e^u/s; Gamma(s+1)/s^(s+1); tanh-sinh after x = y/sqrt(s); K_0(s) (DLMF
+ * 10.32.9); Im e^z E1(z)/20, z = -(1+i) s/20 (DLMF 6.7.1); at s = 10^4 and 10^6 by their asymptotic series where those
+ * give 80 digits. */
 static const char *const table[QUADRATURE_INTEGRALS][QUADRATURE_PARAMETERS] = {
     {"0.19368045861000303154985861905623292843127626931061",
      "0.0099990008977609367601982009979010132517772255990918",
@@ -155,8 +156,8 @@ static void test_table(void **unused)
     tw_engine_free(e);
 }
 
-/* The reference set's values at 40 digits, by its id; p-log-end at s = 60 is E_3(120)/4 (DLMF 8.19.3) by mpmath, because quad,
- * which made the set, got 22 digits there. */
+/* The reference set's values at 40 digits, by its id; p-log-end at s = 60 is E_3(120)/4 (DLMF 8.19.3) by mpmath,
+ * because quad, which made the set, got 22 digits there. */
 static const struct {
     const char *id, *integral, *s, *value;
 } reference[] = {
