@@ -1,5 +1,5 @@
-/* Conditions: by the facts as they stand, by exact arithmetic, by signs of structure after a shift to the ends of the known
- * intervals, and by balls over bounded boxes. Yes, no or unknown. */
+/* Conditions: by the facts as they stand, by exact arithmetic, by signs of structure after a shift to the ends of the
+ * known intervals, and by balls over bounded boxes. Yes, no or unknown. */
 #include "engine/ball/decide.h"
 
 #include <stdlib.h>
@@ -181,8 +181,10 @@ static int sign_on_interval(tw_engine *e, expr *f)
             if (decide_positive_on(e, g, x, from, to, false) == ANSWER_YES) signs = positive;
             else if (decide_positive_on(e, g, x, from, to, true) == ANSWER_YES) signs = positive | SIGN_ZERO;
         }
-        if (signs != SIGN_ANY && (known & 1) && !(known & 4)) signs |= sign_by_structure(e, expr_substitute(e, f, x, from));
-        if (signs != SIGN_ANY && (known & 2) && !(known & 8)) signs |= sign_by_structure(e, expr_substitute(e, f, x, to));
+        if (signs != SIGN_ANY && (known & 1) && !(known & 4))
+            signs |= sign_by_structure(e, expr_substitute(e, f, x, from));
+        if (signs != SIGN_ANY && (known & 2) && !(known & 8))
+            signs |= sign_by_structure(e, expr_substitute(e, f, x, to));
     }
     fmpq_clear(low);
     fmpq_clear(high);
@@ -272,7 +274,8 @@ static answer decide_by_reasoning(tw_engine *e, expr *condition)
 {
     expr *left = condition->args[0], *right = condition->args[1], *difference = NULL;
     const expr_relation r = condition->is.relation;
-    if (r <= RELATION_LESS_EQUAL && (expr_is_inf(right) || expr_is_minus_inf(left)) && left != right) /* every real number */
+    /* every real number lies below inf */
+    if (r <= RELATION_LESS_EQUAL && (expr_is_inf(right) || expr_is_minus_inf(left)) && left != right)
         return sign_is_real(e, expr_is_inf(right) ? left : right) ? ANSWER_YES : ANSWER_UNKNOWN;
     if (r <= RELATION_NOT_EQUAL) {
         difference = expr_sub(e, right, left);
@@ -325,6 +328,7 @@ answer decide(tw_engine *e, expr *condition, condition_label *label)
     for (size_t k = 0; k < facts_count(e); k++)
         if (facts_at(e, k, label) == condition) return ANSWER_YES;
     answer a = decide_by_reasoning(e, condition);
-    *label = a == ANSWER_YES && any_granted(e) && !holds_without_granted(e, condition) ? CONDITION_GRANTED : CONDITION_PROVED;
+    const bool rests = a == ANSWER_YES && any_granted(e) && !holds_without_granted(e, condition);
+    *label = rests ? CONDITION_GRANTED : CONDITION_PROVED;
     return a;
 }

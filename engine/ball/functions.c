@@ -1,6 +1,6 @@
-/* The functions of the table on complex balls: each value encloses, or is non-finite. Real arguments give real results wherever
- * the function is real there, which keeps radii and types honest further up. The table at the end takes its columns from
- * functions.def. */
+/* The functions of the table on complex balls: each value encloses, or is non-finite. Real arguments give real
+ * results wherever the function is real there, which keeps radii and types honest further up. The table at the end
+ * takes its columns from functions.def. */
 #include "engine/ball/functions.h"
 
 #include "engine/ball/interval.h"
@@ -192,8 +192,8 @@ static void ball_beta(acb_t out, acb_srcptr const *a, size_t n, ball_mode m, slo
 
 /* ---- functions of the real line: holomorphic only piece by piece ---- */
 
-/* With arguments that are real for real variables each of them means its holomorphic continuation off the real line: abs(x) is
- * x to the right of the imaginary axis and -x to the left. With others, as in abs(x + i), it has none. */
+/* With arguments that are real for real variables each of them means its holomorphic continuation off the real line:
+ * abs(x) is x to the right of the imaginary axis and -x to the left. With others, as in abs(x + i), it has none. */
 static bool no_continuation(acb_t out, ball_mode m)
 {
     if (m.real_args || !(m.analytic || m.off_line)) return false;
@@ -296,8 +296,8 @@ static void ball_arg(acb_t out, acb_srcptr const *a, size_t n, ball_mode m, slon
 
 /* ---- powers ---- */
 
-/* A ball around 0 to a real power e > 0: |z|^e is at most R^e, R the greatest modulus; on the real line from -r to b the values
- * are 0 ... b^e and 0 ... r^e (cos(pi e) + i sin(pi e)). */
+/* A ball around 0 to a real power e > 0: |z|^e is at most R^e, R the greatest modulus; on the real line from -r to b
+ * the values are 0 ... b^e and 0 ... r^e (cos(pi e) + i sin(pi e)). */
 static void power_around_zero(acb_t out, const acb_t base, const arb_t e, slong prec)
 {
     arb_t top, bottom, part, zero;

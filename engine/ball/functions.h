@@ -4,12 +4,12 @@
 
 #include "engine/expr/expr.h"
 
-/* How a value is wanted. real_args: every argument is real for real values of the variables, so that abs, sign, min, max, re ...
- * have a holomorphic continuation off the real line. */
+/* How a value is wanted. real_args: every argument is real for real values of the variables, so that abs, sign, min,
+ * max, re ... have a holomorphic continuation off the real line. */
 typedef struct ball_mode {
     bool analytic;
     bool real_args;
-    bool off_line; /* a real variable stands at a value that is not real: arguments that are not real_args have then no meaning */
+    bool off_line; /* a real variable stands at a value that is not real: without real_args nothing is meant */
 } ball_mode;
 
 typedef void (*ball_function)(acb_t out, acb_srcptr const *args, size_t n, ball_mode mode, slong prec);

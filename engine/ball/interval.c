@@ -1,4 +1,5 @@
-/* Real balls as intervals: for wide balls the image of the ends is the image of the ball. Knows nothing of expressions. */
+/* Real balls as intervals: for wide balls the image of the ends is the image of the ball. Knows nothing of
+ * expressions. */
 #include "engine/ball/interval.h"
 
 bool ball_is_wide(const acb_t z)
@@ -48,7 +49,8 @@ static void ends(arf_t low, arf_t high, const arb_t x)
 
 void ball_mul(acb_t out, const acb_t a, const acb_t b, slong prec)
 {
-    if (!(ball_is_wide(a) || ball_is_wide(b)) || !acb_is_real(a) || !acb_is_real(b) || !acb_is_finite(a) || !acb_is_finite(b)) {
+    const bool wide = ball_is_wide(a) || ball_is_wide(b);
+    if (!wide || !acb_is_real(a) || !acb_is_real(b) || !acb_is_finite(a) || !acb_is_finite(b)) {
         acb_mul(out, a, b, prec);
         return;
     }

@@ -1,5 +1,5 @@
-/* Private to engine/ball: operations on real balls that are wide beside their middle, where the plain rules of ball arithmetic
- * lose the sign ([1, 3]^2 as 2 +- 1 gives 4 +- 5). By the ends of the interval instead. */
+/* Private to engine/ball: operations on real balls that are wide beside their middle, where the plain rules of ball
+ * arithmetic lose the sign ([1, 3]^2 as 2 +- 1 gives 4 +- 5). By the ends of the interval instead. */
 #ifndef TW_BALL_INTERVAL_H
 #define TW_BALL_INTERVAL_H
 
@@ -21,8 +21,8 @@ bool ball_real_within_one(const acb_t z);
 void ball_mul(acb_t out, const acb_t a, const acb_t b, slong prec);
 /* out = z^n for n != 0. */
 void ball_pow_fmpz(acb_t out, const acb_t z, const fmpz_t n, slong prec);
-/* out = f on a wide ball for an f that is monotone (rising or falling) on the whole interval. f may be called with out and its
- * argument the same. */
+/* out = f on a wide ball for an f that is monotone (rising or falling) on the whole interval. f may be called with
+ * out and its argument the same. */
 typedef void (*real_call)(arb_t out, const arb_t x, slong prec);
 void ball_monotone(acb_t out, const acb_t z, real_call f, slong prec);
 /* The same for an f that is even and rises on [0, inf). */

@@ -1,7 +1,7 @@
-/* The functions of the table as power series: f(u(y)) modulo y^len, u given by its ball coefficients. Where Arb has the series
- * it is used; else f(u) = f(u_0) + int f'(u) u' dy (elementary inverses, exponential integrals), or the function's differential
- * equation gives its Taylor coefficients at u_0 (Bessel functions, DLMF 10.2.1, 10.25.1). Non-finite where f is not analytic at
- * the whole ball u_0. */
+/* The functions of the table as power series: f(u(y)) modulo y^len, u given by its ball coefficients. Where Arb has
+ * the series it is used; else f(u) = f(u_0) + int f'(u) u' dy (elementary inverses, exponential integrals), or the
+ * function's differential equation gives its Taylor coefficients at u_0 (Bessel functions, DLMF 10.2.1, 10.25.1).
+ * Non-finite where f is not analytic at the whole ball u_0. */
 #include "engine/ball/functions.h"
 
 #include "engine/ball/interval.h"
@@ -207,8 +207,8 @@ static void exponential_slope(acb_poly_t s, const acb_poly_t u, const acb_t powe
     acb_poly_clear(p);
 }
 
-static void jet_exponential_integral(acb_poly_t out, const acb_poly_struct *const *a, function_id f, int sign, slong len,
-                                     slong prec)
+static void jet_exponential_integral(acb_poly_t out, const acb_poly_struct *const *a, function_id f, int sign,
+                                     slong len, slong prec)
 {
     acb_poly_t s;
     acb_t power;
@@ -237,7 +237,8 @@ static void jet_ei(acb_poly_t out, const acb_poly_struct *const *a, size_t n, ba
     jet_exponential_integral(out, a, FUNCTION_EI, 1, len, prec);
 }
 
-static void jet_gamma_upper(acb_poly_t out, const acb_poly_struct *const *a, size_t n, ball_mode m, slong len, slong prec)
+static void jet_gamma_upper(acb_poly_t out, const acb_poly_struct *const *a, size_t n, ball_mode m, slong len,
+                            slong prec)
 {
     (void)m;
     if (a[0]->length > 1 || ball_meets_cut(term_at(a[1], 0))) {
@@ -314,8 +315,8 @@ static void jet_beta(acb_poly_t out, const acb_poly_struct *const *a, size_t n, 
 }
 
 /* z^2 w'' + z w' + (sign z^2 - nu^2) w = 0: Taylor coefficients at z_0 from the first two (DLMF 10.2.1, 10.25.1). */
-static void bessel_taylor(acb_poly_t c, const acb_t nu, const acb_t z, const acb_t w0, const acb_t w1, int sign, slong len,
-                          slong prec)
+static void bessel_taylor(acb_poly_t c, const acb_t nu, const acb_t z, const acb_t w0, const acb_t w1, int sign,
+                          slong len, slong prec)
 {
     acb_t sum, t, z2, nu2;
     acb_init(sum);
@@ -353,11 +354,11 @@ static void bessel_taylor(acb_poly_t c, const acb_t nu, const acb_t z, const acb
     acb_clear(nu2);
 }
 
-/* J and I of whole order n are entire in z: the kth derivative is 2^-k sum_j sign^j
- * binomial(k, j) w(n - k + 2j), sign -1 for J and +1 for I (DLMF 10.6.7, 10.29.5). Serves where z may be 0 or lie on the cut of the general order. */
+/* J and I of whole order n are entire in z: the kth derivative is 2^-k sum_j sign^j binomial(k, j) w(n - k + 2j),
+ * sign -1 for J and +1 for I (DLMF 10.6.7, 10.29.5). Serves where z may be 0 or lie on the cut of the general order. */
 __attribute__((noinline)) /* inlined after acb_is_int(n), gcc 12 mistakes n's size (-Wstringop-overread) */
-static void bessel_whole_order(acb_poly_t c, const acb_t n, const acb_t z, void (*call)(acb_t, const acb_t, const acb_t, slong),
-                               int sign, slong len, slong prec)
+static void bessel_whole_order(acb_poly_t c, const acb_t n, const acb_t z,
+                               void (*call)(acb_t, const acb_t, const acb_t, slong), int sign, slong len, slong prec)
 {
     const slong count = 2 * len - 1;
     acb_ptr w = _acb_vec_init(count); /* w[j]: order n - len + 1 + j */
@@ -399,7 +400,8 @@ static void bessel_whole_order(acb_poly_t c, const acb_t n, const acb_t z, void 
 
 typedef void (*bessel_call)(acb_t out, const acb_t nu, const acb_t z, slong prec);
 
-/* sign: +1 for J and Y, -1 for I and K.  w' = next*w(nu + 1) + (nu/z) w(nu), next = -1 for J, Y, K and +1 for I (DLMF 10.6.2, 10.29.2). */
+/* sign: +1 for J and Y, -1 for I and K.  w' = next*w(nu + 1) + (nu/z) w(nu), next = -1 for J, Y, K and +1 for I (DLMF
+ * 10.6.2, 10.29.2). */
 static void bessel_jet(acb_poly_t out, const acb_poly_struct *const *a, bessel_call call, int sign, int next, slong len,
                        slong prec)
 {

@@ -1,5 +1,5 @@
-/* Private to engine/ball: the tape's operations, shared by the compiler (tape.c) and the runs on balls and on power series
- * (run.c). */
+/* Private to engine/ball: the tape's operations, shared by the compiler (tape.c) and the runs on balls and on power
+ * series (run.c). */
 #ifndef TW_BALL_OPS_H
 #define TW_BALL_OPS_H
 
@@ -48,8 +48,8 @@ struct tape {
     expr *const *vars;      /* only while compiling */
     size_t var_count;
     acb_ptr values;
-    /* Beside each value: for real values of the variables inside their balls, is it real? Then abs, sign, min, ... of it have a
-     * holomorphic continuation off the real line, which is what they mean there. */
+    /* Beside each value: for real values of the variables inside their balls, is it real? Then abs, sign, min, ... of
+     * it have a holomorphic continuation off the real line, which is what they mean there. */
     bool *real;
     bool off_line;          /* some real variable's ball is not real in this run */
     slong constants_prec;   /* the constants' values stand at this precision; 0: not yet computed */

@@ -1,7 +1,8 @@
-/* Is f > 0 on a whole range? In order: structure; polynomials exactly, by their real roots; factor by factor; then bisection with
- * balls, in monotone or second-order form where plain balls fail, with the first derivative that is not 0 at an end where f is
- * 0, and with the growth records of f and 1/f towards infinity and towards a singular end (a finite bound of 1/f means that f
- * has no zero out there). quadrature.md, section 4. A NO always rests on a point or a one-sided neighbourhood inside the range. */
+/* Is f > 0 on a whole range? In order: structure; polynomials exactly, by their real roots; factor by factor; then
+ * bisection with balls, in monotone or second-order form where plain balls fail, with the first derivative that is
+ * not 0 at an end where f is 0, and with the growth records of f and 1/f towards infinity and towards a singular end
+ * (a finite bound of 1/f means that f has no zero out there). quadrature.md, section 4. A NO always rests on a point
+ * or a one-sided neighbourhood inside the range. */
 #include <stdlib.h>
 
 #include "engine/ball/decide.h"
@@ -153,8 +154,8 @@ static answer positive_polynomial(tw_engine *e, expr *f, expr *x, expr *from, ex
 {
     expr **c;
     slong degree;
-    const bool rational_ends = (expr_is_minus_inf(from) || expr_is_number(from)) && (expr_is_inf(to) || expr_is_number(to));
-    if (!rational_ends) return ANSWER_UNKNOWN;
+    if (!expr_is_minus_inf(from) && !expr_is_number(from)) return ANSWER_UNKNOWN;
+    if (!expr_is_inf(to) && !expr_is_number(to)) return ANSWER_UNKNOWN;
     if (expr_polynomial(e, f, x, 100, &c, &degree) != TW_OK) {
         forgive_trouble(e);
         return ANSWER_UNKNOWN;
@@ -174,7 +175,8 @@ static answer positive_polynomial(tw_engine *e, expr *f, expr *x, expr *from, ex
         fmpz_poly_t z;
         fmpz_poly_init(z);
         fmpq_poly_get_numerator(z, p);
-        a = polynomial_positive(z, expr_is_number(from) ? expr_number(from) : NULL, expr_is_number(to) ? expr_number(to) : NULL, weak);
+        a = polynomial_positive(z, expr_is_number(from) ? expr_number(from) : NULL,
+                                expr_is_number(to) ? expr_number(to) : NULL, weak);
         fmpz_poly_clear(z);
     }
     fmpq_poly_clear(p);
@@ -219,8 +221,8 @@ static bool is_bad(const range_job *j, const acb_t v)
     return acb_is_real(v) && (j->weak ? arb_is_negative(acb_realref(v)) : arb_is_nonpositive(acb_realref(v)));
 }
 
-/* f at the exact point: good, and if bad inside the range the whole is refuted. Parameters spoil refutation: their boxes are
- * wider than the facts. */
+/* f at the exact point: good, and if bad inside the range the whole is refuted. Parameters spoil refutation: their
+ * boxes are wider than the facts. */
 static bool good_at(range_job *j, const arf_t point)
 {
     acb_t v;
@@ -332,8 +334,8 @@ static void reach_ball(acb_t out, const acb_t c, const arf_t reach)
     arb_clear(other);
 }
 
-/* The derivative g of order k has the sign `wanted` on [c, reach], and f is analytic there (k > 0): then Taylor's theorem gives
- * f's sign. Shrinks reach until it is so. */
+/* The derivative g of order k has the sign `wanted` on [c, reach], and f is analytic there (k > 0): then Taylor's
+ * theorem gives f's sign. Shrinks reach until it is so. */
 static bool sign_up_to(range_job *j, expr *g, int order, int wanted, const acb_t c, int side, arf_t reach)
 {
     tape *t = tape_new(j->e, g, j->vars, j->n);
@@ -357,7 +359,8 @@ static bool sign_up_to(range_job *j, expr *g, int order, int wanted, const acb_t
     return good;
 }
 
-/* f near the end c, in direction side: the first derivative that is not exactly 0 there decides up to `reach`, which is set. */
+/* f near the end c, in direction side: the first derivative that is not exactly 0 there decides up to `reach`, which
+ * is set. */
 static bool positive_near(range_job *j, expr *end, const acb_t c, int side, arf_t reach)
 {
     expr *g = j->f;
@@ -475,9 +478,9 @@ static bool job_variables(range_job *j)
 
 static bool end_ball(tw_engine *e, acb_t c, expr *end)
 {
-    bool known = expr_is_closed_value(end) && ball_value(e, c, end, BITS) == TW_OK && acb_is_real(c) && acb_is_finite(c);
+    bool known = expr_is_closed_value(end) && ball_value(e, c, end, BITS) == TW_OK;
     forgive_trouble(e);
-    return known;
+    return known && acb_is_real(c) && acb_is_finite(c);
 }
 
 static answer positive_by_balls(tw_engine *e, expr *f, expr *x, expr *from, expr *to, bool weak)
@@ -502,7 +505,8 @@ static answer positive_by_balls(tw_engine *e, expr *f, expr *x, expr *from, expr
         arb_get_lbound_arf(j.in_high, acb_realref(b), BITS);
         good = !j.has_high || arf_cmp(j.in_low, j.in_high) < 0;
     }
-    if (good && (positive_near(&j, from, a, 1, reach) || (!j.refuted && positive_beside(&j, from, a, 1, reach)))) arf_set(low, reach);
+    if (good && (positive_near(&j, from, a, 1, reach) || (!j.refuted && positive_beside(&j, from, a, 1, reach))))
+        arf_set(low, reach);
     if (good && !j.refuted && !j.has_high) {
         double start = arf_get_d(low, ARF_RND_UP);
         good = positive_far(&j, f, x, start > 0 ? 4 + 2 * start : 4, high);
@@ -553,8 +557,8 @@ static answer positive_on(tw_engine *e, expr *f, expr *x, expr *from, expr *to, 
     if (expr_is_inf(from) || expr_is_minus_inf(to)) return ANSWER_UNKNOWN;
     answer a = positive_polynomial(e, f, x, from, to, weak);
     if (a != ANSWER_UNKNOWN) return a;
-    if (expr_is_minus_inf(from))
-        return expr_is_inf(to) ? positive_on_line(e, f, x, weak, level) : positive_mirrored(e, f, x, from, to, weak, level);
+    if (expr_is_minus_inf(from) && expr_is_inf(to)) return positive_on_line(e, f, x, weak, level);
+    if (expr_is_minus_inf(from)) return positive_mirrored(e, f, x, from, to, weak, level);
     a = positive_by_structure(e, f, x, from, 1, weak);
     if (a == ANSWER_UNKNOWN && !expr_is_inf(to)) a = positive_by_structure(e, f, x, to, -1, weak);
     if (a == ANSWER_YES || (a == ANSWER_NO && expr_is_inf(to))) return a;

@@ -1,6 +1,6 @@
-/* Running a tape: one loop on complex balls, another on power series. Constants are computed once for each precision. Beside
- * every value stands whether it is real for real variables: then abs, sign, min, max, re ... of it mean their holomorphic
- * continuation off the real line. Integrals are asked of quadrature() and nothing else is known of them. */
+/* Running a tape: one loop on complex balls, another on power series. Constants are computed once for each precision.
+ * Beside every value stands whether it is real for real variables: then abs, sign, min, max, re ... of it mean their
+ * holomorphic continuation off the real line. Integrals are asked of quadrature() and nothing else is known of them. */
 #include "engine/ball/ops.h"
 
 #include <stdlib.h>
@@ -13,7 +13,8 @@
 
 /* ---- constants ---- */
 
-/* The root of a rational polynomial nearest to the value given; non-finite when two are equally near or it is no polynomial. */
+/* The root of a rational polynomial nearest to the value given; non-finite when two are equally near or it is no
+ * polynomial. */
 static void root_value(tw_engine *e, acb_t out, expr *a, slong prec)
 {
     acb_indeterminate(out);
@@ -47,7 +48,7 @@ static void root_value(tw_engine *e, acb_t out, expr *a, slong prec)
         arb_init(distance);
         acb_t difference;
         acb_init(difference);
-        for (int round = 0; round < 2; round++) /* round 0 finds the candidate, round 1 proves that no other is as near */
+        for (int round = 0; round < 2; round++) /* 0 finds the candidate, 1 proves that no other is as near */
             for (slong k = 0; k < n; k++) {
                 acb_sub(difference, roots + k, near, prec);
                 acb_abs(distance, difference, prec);
@@ -109,8 +110,8 @@ static void leaf_value(tape *t, acb_t out, op *o, slong prec)
 
 /* ---- pieces ---- */
 
-/* Does left REL right hold for the whole ball, compared by real parts? open: not only there but around it, so that the ball's
- * edge or an exact point does not count (what an analytic function needs). */
+/* Does left REL right hold for the whole ball, compared by real parts? open: not only there but around it, so that
+ * the ball's edge or an exact point does not count (what an analytic function needs). */
 static answer compare(const acb_t left, const acb_t right, expr_relation r, bool open)
 {
     arb_srcptr a = acb_realref(left), b = acb_realref(right);
@@ -145,9 +146,10 @@ static answer condition_holds(const tape *t, const op *o, uint32_t c, size_t k, 
     return compare(value(t, left), value(t, right), o->node->args[c]->is.relation, open);
 }
 
-/* The pieces that may apply somewhere on the ball into pieces[] (at most node->count of them); how many. One: it applies on the
- * whole ball. value(k) gives the constant term of operand k. */
-static size_t pieces_of(const tape *t, const op *o, bool open, acb_srcptr (*value)(const tape *, size_t), size_t *pieces)
+/* The pieces that may apply somewhere on the ball into pieces[] (at most node->count of them); how many. One: it
+ * applies on the whole ball. value(k) gives the constant term of operand k. */
+static size_t pieces_of(const tape *t, const op *o, bool open, acb_srcptr (*value)(const tape *, size_t),
+                        size_t *pieces)
 {
     size_t n = 0, k = 0;
     for (uint32_t c = 0; c + 1 < o->node->count; c += 2, k += 3) {
@@ -260,7 +262,8 @@ static void run_special(acb_t out, const op *o, const acb_t u, bool analytic, sl
     }
 }
 
-/* A value that is real because its operands' balls are: what the function's own arithmetic left as imaginary part goes. */
+/* A value that is real because its operands' balls are: what the function's own arithmetic left as imaginary part
+ * goes. */
 static bool operands_are_real(const tape *t, const op *o)
 {
     for (size_t k = 0; k < o->count; k++)

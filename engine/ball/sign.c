@@ -1,5 +1,5 @@
-/* Signs by structure: sums of like signs, products, powers, functions of known sign. Simple inequality reasoning, exact and
- * never a guess; what it cannot see is left to balls (decide.c). */
+/* Signs by structure: sums of like signs, products, powers, functions of known sign. Simple inequality reasoning,
+ * exact and never a guess; what it cannot see is left to balls (decide.c). */
 #include "engine/ball/sign.h"
 
 #include <stdlib.h>
@@ -17,8 +17,10 @@ int sign_times(int a, int b)
 {
     int signs = 0;
     if ((a | b) & SIGN_ZERO) signs |= SIGN_ZERO;
-    if (((a & SIGN_POSITIVE) && (b & SIGN_POSITIVE)) || ((a & SIGN_NEGATIVE) && (b & SIGN_NEGATIVE))) signs |= SIGN_POSITIVE;
-    if (((a & SIGN_POSITIVE) && (b & SIGN_NEGATIVE)) || ((a & SIGN_NEGATIVE) && (b & SIGN_POSITIVE))) signs |= SIGN_NEGATIVE;
+    const int both = a & b & (SIGN_POSITIVE | SIGN_NEGATIVE); /* signs that the two share */
+    if (both) signs |= SIGN_POSITIVE;
+    if (((a & SIGN_POSITIVE) && (b & SIGN_NEGATIVE)) || ((a & SIGN_NEGATIVE) && (b & SIGN_POSITIVE)))
+        signs |= SIGN_NEGATIVE;
     return signs;
 }
 
@@ -44,7 +46,8 @@ static int signs_without_zero(tw_engine *e, expr *a, int signs)
     for (size_t k = 0; (signs & SIGN_ZERO) && k < facts_count(e); k++) {
         condition_label l;
         expr *fact = facts_at(e, k, &l);
-        if (fact->is.relation == RELATION_NOT_EQUAL && fact->args[0] == a && expr_is_zero(fact->args[1]) && !facts_is_complex(e, a))
+        if (fact->is.relation == RELATION_NOT_EQUAL && fact->args[0] == a && expr_is_zero(fact->args[1]) &&
+            !facts_is_complex(e, a))
             signs &= ~SIGN_ZERO;
     }
     return signs;
@@ -77,7 +80,8 @@ static int power_sign(tw_engine *e, expr *a, const sign_context *c)
 {
     if (expr_is_inf(a->args[0])) return SIGN_ANY;
     int base = sign_of(e, a->args[0], c);
-    if (base == SIGN_POSITIVE) return sign_is_real(e, a->args[1]) || sign_of(e, a->args[1], c) != SIGN_ANY ? SIGN_POSITIVE : SIGN_ANY;
+    if (base == SIGN_POSITIVE)
+        return sign_is_real(e, a->args[1]) || sign_of(e, a->args[1], c) != SIGN_ANY ? SIGN_POSITIVE : SIGN_ANY;
     if (!expr_is_number(a->args[1])) return SIGN_ANY;
     const fmpq *q = expr_number(a->args[1]);
     if (fmpz_is_one(fmpq_denref(q))) {
@@ -99,7 +103,8 @@ bool sign_is_real(tw_engine *e, expr *a)
     case EXPR_CONSTANT: return a->is.constant == CONSTANT_PI || a->is.constant == CONSTANT_EULER;
     case EXPR_SYMBOL: return !facts_is_complex(e, a);
     case EXPR_POWER:
-        if (expr_is_number(a->args[1]) && fmpz_is_one(fmpq_denref(expr_number(a->args[1])))) return sign_is_real(e, a->args[0]);
+        if (expr_is_number(a->args[1]) && fmpz_is_one(fmpq_denref(expr_number(a->args[1]))))
+            return sign_is_real(e, a->args[0]);
         return sign_is_real(e, a->args[1]) && sign_of(e, a->args[0], NULL) == SIGN_POSITIVE;
     case EXPR_SUM:
     case EXPR_PRODUCT:

@@ -14,8 +14,8 @@ typedef struct sign_context {
     int *signs;
 } sign_context;
 
-/* Signs that f can have when its symbols take any values that facts and context allow. Sound: a sign not in the result never
- * occurs. f == NULL: SIGN_ANY. Depth of the walk is bounded by the expression's depth limit. */
+/* Signs that f can have when its symbols take any values that facts and context allow. Sound: a sign not in the
+ * result never occurs. f == NULL: SIGN_ANY. Depth of the walk is bounded by the expression's depth limit. */
 int sign_of(tw_engine *e, expr *f, const sign_context *c);
 
 /* The signs of a product and of a sum from those of the parts. */
@@ -27,8 +27,9 @@ bool sign_is_real(tw_engine *e, expr *a);
 /* Forgets an error of the question just tried; an exhausted budget or an interrupt stays. */
 void forgive_trouble(tw_engine *e);
 
-/* Each symbol of f with a known finite end a is replaced by a +- (a fresh symbol of known sign), and the sum expanded: brings
- * nu + 1 with nu > -1/2 to 1/2 + w. The context takes the fresh symbols in; its arrays are the caller's to free. */
+/* Each symbol of f with a known finite end a is replaced by a +- (a fresh symbol of known sign), and the sum
+ * expanded: brings nu + 1 with nu > -1/2 to 1/2 + w. The context takes the fresh symbols in; its arrays are the
+ * caller's to free. */
 expr *sign_shift(tw_engine *e, expr *f, sign_context *c);
 
 /* Signs of f under the facts alone: as it stands, and shifted. */

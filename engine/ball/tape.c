@@ -1,5 +1,6 @@
-/* The tape: an expression's nodes in the order of their evaluation, each once. This file compiles; run.c runs. Differences that
- * would cancel (exp(u) - 1 and its like) become operations of their own. Knows nothing of integrals: a closed one is a constant. */
+/* The tape: an expression's nodes in the order of their evaluation, each once. This file compiles; run.c runs.
+ * Differences that would cancel (exp(u) - 1 and its like) become operations of their own. Knows nothing of integrals:
+ * a closed one is a constant. */
 #include "engine/ball/ops.h"
 
 #include <limits.h>
@@ -215,7 +216,8 @@ static tw_status compile_piecewise(tape *t, expr *a)
     for (uint32_t k = 0; k < a->count && status == TW_OK; k++) {
         if (a->args[k]->kind == EXPR_RELATION) {
             if (a->args[k]->is.relation > RELATION_NOT_EQUAL)
-                status = engine_fail(t->e, ERROR_UNSUITABLE, "a piece of `piecewise` needs a comparison of real values");
+                status = engine_fail(t->e, ERROR_UNSUITABLE,
+                                     "a piece of `piecewise` needs a comparison of real values");
             else status = compile_all(t, a->args[k]->args, 2, at + n);
             n += 2;
         } else {
@@ -236,7 +238,8 @@ static tw_status compile_summation(tape *t, expr *a, size_t *at)
     expr *from = a->args[0], *to = a->args[1];
     if (!expr_is_number(from) || !expr_is_number(to) || !fmpz_is_one(fmpq_denref(&from->is.number)) ||
         !fmpz_is_one(fmpq_denref(&to->is.number)))
-        return engine_fail(t->e, ERROR_UNSUITABLE, "a sum whose ends are not whole numbers cannot be evaluated by balls");
+        return engine_fail(t->e, ERROR_UNSUITABLE,
+                           "a sum whose ends are not whole numbers cannot be evaluated by balls");
     fmpz_t k, length;
     fmpz_init_set(k, fmpq_numref(&from->is.number));
     fmpz_init(length);

@@ -1,5 +1,5 @@
-/* Texts and balls for the tests of this room: parse, compile, and ask whether one ball holds what another computed much more
- * precisely. Random numbers with a printed seed, taken back from TW_SEED. */
+/* Texts and balls for the tests of this room: parse, compile, and ask whether one ball holds what another computed much
+ * more precisely. Random numbers with a printed seed, taken back from TW_SEED. */
 #ifndef TW_TESTS_BALLS_H
 #define TW_TESTS_BALLS_H
 

@@ -1,5 +1,5 @@
-/* Conditions and positivity: what follows is found, what does not follow is never claimed. Half of the questions here are
- * nearly true; a wrong YES or NO is the bug that this file is for. */
+/* Conditions and positivity: what follows is found, what does not follow is never claimed. Half of the questions here
+ * are nearly true; a wrong YES or NO is the bug that this file is for. */
 #include "tests/engine/ball/balls.h"
 
 #include <math.h>
@@ -270,9 +270,11 @@ static void positivity(void **state)
     for (size_t k = 0; k < sizeof ranges / sizeof *ranges; k++) {
         const range_question *q = &ranges[k];
         budget_start(e, 10);
-        answer a = decide_positive_on(e, text_parse(e, q->f), expr_symbol(e, "x"), text_parse(e, q->from), text_parse(e, q->to),
-                                      q->weak);
-        if (a != q->wanted) fail_msg("%s %s 0 on (%s, %s) gives %d, wanted %d", q->f, q->weak ? ">=" : ">", q->from, q->to, a, q->wanted);
+        answer a = decide_positive_on(e, text_parse(e, q->f), expr_symbol(e, "x"), text_parse(e, q->from),
+                                      text_parse(e, q->to), q->weak);
+        if (a != q->wanted)
+            fail_msg("%s %s 0 on (%s, %s) gives %d, wanted %d", q->f, q->weak ? ">=" : ">", q->from, q->to, a,
+                     q->wanted);
         if (e->error.kind != ERROR_NONE) fail_msg("%s leaves an error: %s", q->f, e->error.words);
     }
     tw_engine_free(e);
@@ -294,15 +296,16 @@ static void positivity_with_parameters(void **state)
     };
     for (size_t k = 0; k < sizeof with / sizeof *with; k++) {
         const range_question *q = &with[k];
-        answer a = decide_positive_on(e, text_parse(e, q->f), expr_symbol(e, "x"), text_parse(e, q->from), text_parse(e, q->to),
-                                      q->weak);
+        answer a = decide_positive_on(e, text_parse(e, q->f), expr_symbol(e, "x"), text_parse(e, q->from),
+                                      text_parse(e, q->to), q->weak);
         if (a != q->wanted && !(q->wanted == YES && a == UNKNOWN && k == 5))
             fail_msg("%s > 0 on (%s, %s) gives %d, wanted %d", q->f, q->from, q->to, a, q->wanted);
     }
     tw_engine_free(e);
 }
 
-/* Random polynomials times a positive factor against dense samples: YES with a sample <= 0, or NO without one nearby, is wrong. */
+/* Random polynomials times a positive factor against dense samples: YES with a sample <= 0, or NO without one nearby,
+ * is wrong. */
 static void random_polynomials(void **state)
 {
     (void)state;
@@ -315,7 +318,8 @@ static void random_polynomials(void **state)
             c[k] = (slong)random_below(11) - 4;
             f = expr_add(e, f, expr_mul(e, expr_int(e, c[k]), expr_pow(e, x, expr_int(e, k))));
         }
-        if (trial % 2) f = expr_sub(e, expr_expand(e, expr_mul(e, f, expr_call1(e, FUNCTION_EXP, expr_neg(e, x)))), zero);
+        if (trial % 2)
+            f = expr_sub(e, expr_expand(e, expr_mul(e, f, expr_call1(e, FUNCTION_EXP, expr_neg(e, x)))), zero);
         double least = INFINITY;
         for (int k = 1; k < 3000; k++) {
             double t = k / 1000.0, v = c[0] + t * (c[1] + t * (c[2] + t * (c[3] + t * c[4])));
@@ -323,9 +327,12 @@ static void random_polynomials(void **state)
         }
         answer a = decide_positive_on(e, f, x, zero, three, false);
         char *words = expr_text(e, f);
-        if (a == ANSWER_YES && least <= -1e-9) fail_msg("%s is called positive on (0, 3); it falls to %g", words, least);
-        if (a == ANSWER_NO && least > 1e-2) fail_msg("%s is called not positive on (0, 3); its least sample is %g", words, least);
-        if (a == ANSWER_UNKNOWN && fabs(least) > 1e-2) fail_msg("%s: nothing known on (0, 3); its least sample is %g", words, least);
+        if (a == ANSWER_YES && least <= -1e-9)
+            fail_msg("%s is called positive on (0, 3); it falls to %g", words, least);
+        if (a == ANSWER_NO && least > 1e-2)
+            fail_msg("%s is called not positive on (0, 3); its least sample is %g", words, least);
+        if (a == ANSWER_UNKNOWN && fabs(least) > 1e-2)
+            fail_msg("%s: nothing known on (0, 3); its least sample is %g", words, least);
         free(words);
     }
     tw_engine_free(e);
@@ -347,12 +354,9 @@ int main(void)
 {
     random_seed("test_decide");
     const struct CMUnitTest tests[] = {
-        cmocka_unit_test(conditions),
-        cmocka_unit_test(labels),
-        cmocka_unit_test(positivity),
-        cmocka_unit_test(positivity_with_parameters),
-        cmocka_unit_test(random_polynomials),
-        cmocka_unit_test(budget_is_kept),
+        cmocka_unit_test(conditions),         cmocka_unit_test(labels),
+        cmocka_unit_test(positivity),         cmocka_unit_test(positivity_with_parameters),
+        cmocka_unit_test(random_polynomials), cmocka_unit_test(budget_is_kept),
     };
     return cmocka_run_group_tests_name("test_decide", tests, NULL, NULL);
 }

@@ -1,5 +1,5 @@
-/* Tapes of whole expressions: random trees against the plain reading of the expression room, on points and on balls, with the flag
- * and as series; constants, roots, sums, pieces, integrals inside; refusals with words. */
+/* Tapes of whole expressions: random trees against the plain reading of the expression room, on points and on balls,
+ * with the flag and as series; constants, roots, sums, pieces, integrals inside; refusals with words. */
 #include "tests/engine/expr/plain.h"
 #include "tests/engine/method/texts.h"
 
@@ -7,25 +7,36 @@
 
 static expr *random_expr(tw_engine *e, expr *x, int depth)
 {
-    static const function_id functions[] = {FUNCTION_EXP,  FUNCTION_LOG,  FUNCTION_SIN,  FUNCTION_COS,  FUNCTION_SINH, FUNCTION_COSH,
-                                            FUNCTION_TANH, FUNCTION_ATAN, FUNCTION_ASINH, FUNCTION_ERF, FUNCTION_ABS,  FUNCTION_ASIN,
-                                            FUNCTION_SIGN, FUNCTION_RE,   FUNCTION_ACOSH, FUNCTION_TAN};
+    static const function_id functions[] = {FUNCTION_EXP,   FUNCTION_LOG,  FUNCTION_SIN,   FUNCTION_COS,
+                                            FUNCTION_SINH,  FUNCTION_COSH, FUNCTION_TANH,  FUNCTION_ATAN,
+                                            FUNCTION_ASINH, FUNCTION_ERF,  FUNCTION_ABS,   FUNCTION_ASIN,
+                                            FUNCTION_SIGN,  FUNCTION_RE,   FUNCTION_ACOSH, FUNCTION_TAN};
     if (depth == 0 || plain_random(7) == 0) {
         switch (plain_random(5)) {
-        case 0: return expr_int(e, (slong)plain_random(5) - 2);
-        case 1: return expr_frac(e, (slong)plain_random(9) - 4, 1 + (slong)plain_random(5));
-        case 2: return plain_random(4) ? x : expr_constant_of(e, CONSTANT_PI);
-        default: return x;
+        case 0:
+            return expr_int(e, (slong)plain_random(5) - 2);
+        case 1:
+            return expr_frac(e, (slong)plain_random(9) - 4, 1 + (slong)plain_random(5));
+        case 2:
+            return plain_random(4) ? x : expr_constant_of(e, CONSTANT_PI);
+        default:
+            return x;
         }
     }
     expr *a = random_expr(e, x, depth - 1), *b;
     switch (plain_random(6)) {
     case 0:
-    case 1: b = random_expr(e, x, depth - 1); return expr_add(e, a, b);
+    case 1:
+        b = random_expr(e, x, depth - 1);
+        return expr_add(e, a, b);
     case 2:
-    case 3: b = random_expr(e, x, depth - 1); return expr_mul(e, a, b);
-    case 4: return expr_pow(e, a, expr_frac(e, (slong)plain_random(9) - 4, 1 + (slong)plain_random(3)));
-    default: return expr_call1(e, functions[plain_random(sizeof functions / sizeof *functions)], a);
+    case 3:
+        b = random_expr(e, x, depth - 1);
+        return expr_mul(e, a, b);
+    case 4:
+        return expr_pow(e, a, expr_frac(e, (slong)plain_random(9) - 4, 1 + (slong)plain_random(3)));
+    default:
+        return expr_call1(e, functions[plain_random(sizeof functions / sizeof *functions)], a);
     }
 }
 
@@ -81,7 +92,8 @@ static void random_trees(void **state)
         for (int k = 0; k < 4; k++) {
             if (!acb_is_finite(at_point + k) || !acb_is_finite(on_box + k)) continue;
             jets++;
-            if (!acb_overlaps(at_point + k, on_box + k) || (k == 0 && plain_is_sharp(plain) && !acb_overlaps(plain, on_box))) {
+            if (!acb_overlaps(at_point + k, on_box + k) ||
+                (k == 0 && plain_is_sharp(plain) && !acb_overlaps(plain, on_box))) {
                 char *words = expr_text(e, f);
                 fail_msg("%s: coefficient %d of the series on a box misses a point's", words, k);
             }
@@ -117,7 +129,8 @@ static void random_trees_analytic(void **state)
         tape *t = f ? tape_new(e, f, &x, 1) : NULL;
         engine_forgive(e);
         if (!t) continue;
-        const double re = plain_uniform(-3, 3), im = plain_random(2) ? plain_uniform(-2, 2) : 0, r = ldexp(1, -(int)plain_random(6));
+        const double re = plain_uniform(-3, 3), im = plain_random(2) ? plain_uniform(-2, 2) : 0,
+                     r = ldexp(1, -(int)plain_random(6));
         acb_set_d_d(box, re, im);
         mag_set_d(arb_radref(acb_realref(box)), r);
         mag_set_d(arb_radref(acb_imagref(box)), r);
@@ -131,7 +144,8 @@ static void random_trees_analytic(void **state)
             acb_zero(mean);
             double size = 1;
             for (int k = 0; k < 64; k++) {
-                acb_set_d_d(p, re + r / 2 * cos(6.283185307179586 * (k + 0.5) / 64), im + r / 2 * sin(6.283185307179586 * (k + 0.5) / 64));
+                acb_set_d_d(p, re + r / 2 * cos(6.283185307179586 * (k + 0.5) / 64),
+                            im + r / 2 * sin(6.283185307179586 * (k + 0.5) / 64));
                 tape_eval(value, t, p, false, 192);
                 acb_add(mean, mean, value, 192);
                 size += fabs(arf_get_d(arb_midref(acb_realref(value)), ARF_RND_NEAR)) / 64;
@@ -140,12 +154,14 @@ static void random_trees_analytic(void **state)
             acb_set_d_d(p, re, im);
             tape_eval(value, t, p, false, 192);
             acb_sub(mean, mean, value, 192);
-            double off = fabs(arf_get_d(arb_midref(acb_realref(mean)), ARF_RND_NEAR)) + fabs(arf_get_d(arb_midref(acb_imagref(mean)), ARF_RND_NEAR));
+            double off = fabs(arf_get_d(arb_midref(acb_realref(mean)), ARF_RND_NEAR)) +
+                         fabs(arf_get_d(arb_midref(acb_imagref(mean)), ARF_RND_NEAR));
             if (acb_is_finite(mean) && acb_rel_accuracy_bits(value) > 60) {
                 seen++;
                 if (off > 1e-6 * size + top) {
                     char *words = expr_text(e, f);
-                    fail_msg("%s is called analytic on %g + %g i +- %g; the mean over a circle is %g away", words, re, im, r, off);
+                    fail_msg("%s is called analytic on %g + %g i +- %g; the mean over a circle is %g away", words, re,
+                             im, r, off);
                 }
             }
         }
@@ -202,7 +218,8 @@ static void no_closed_value(void **state)
     acb_t v;
     acb_init(v);
     for (size_t k = 0; k < sizeof none / sizeof *none; k++) {
-        if (ball_value(e, v, text_parse(e, none[k]), 64) == TW_OK && acb_is_finite(v)) fail_msg("%s has a value", none[k]);
+        if (ball_value(e, v, text_parse(e, none[k]), 64) == TW_OK && acb_is_finite(v))
+            fail_msg("%s has a value", none[k]);
         engine_forgive(e);
     }
     expr *x = expr_symbol(e, "x"), *y = expr_symbol(e, "y");
@@ -240,7 +257,8 @@ static void several_variables(void **state)
     assert_true(acb_is_zero(jet + 3));
     tape_free(t);
     expr *f = vars[0];
-    for (int k = 0; k < 60; k++) f = expr_call1(e, FUNCTION_ATAN, expr_add(e, f, expr_mul(e, f, expr_call1(e, FUNCTION_ATAN, f))));
+    for (int k = 0; k < 60; k++)
+        f = expr_call1(e, FUNCTION_ATAN, expr_add(e, f, expr_mul(e, f, expr_call1(e, FUNCTION_ATAN, f))));
     t = tape_new(e, f, vars, 1);
     assert_non_null(t);
     tape_eval(v, t, at, true, 64);
@@ -281,9 +299,15 @@ static void huge_and_tiny(void **state)
     (void)state;
     tw_engine *e = text_engine(NULL, LARGE_NONE);
     expr *x = expr_symbol(e, "x");
-    static const char *const far[] = {"log(1 + exp(exp(x)))", "sqrt(1 + exp(exp(x))) - 1", "log(1 - exp(-exp(x)))",
-                                      "acosh(exp(exp(x)))", "atanh(exp(-exp(x)))", "asin(exp(-exp(x)))",
-                                      "exp(exp(x))*(1 + exp(-exp(x)))", "1 - cos(exp(-exp(x)))", "(1 + exp(exp(x)))^(1/3)"};
+    static const char *const far[] = {"log(1 + exp(exp(x)))",
+                                      "sqrt(1 + exp(exp(x))) - 1",
+                                      "log(1 - exp(-exp(x)))",
+                                      "acosh(exp(exp(x)))",
+                                      "atanh(exp(-exp(x)))",
+                                      "asin(exp(-exp(x)))",
+                                      "exp(exp(x))*(1 + exp(-exp(x)))",
+                                      "1 - cos(exp(-exp(x)))",
+                                      "(1 + exp(exp(x)))^(1/3)"};
     acb_t at, v;
     acb_ptr jet = _acb_vec_init(3);
     acb_init(at);
@@ -312,8 +336,9 @@ static void small_differences(void **state)
     (void)state;
     tw_engine *e = text_engine(NULL, LARGE_NONE);
     expr *x = expr_symbol(e, "x");
-    static const char *const small[] = {"exp(x) - 1", "2*exp(x) - 2", "1 - exp(-x)", "1 - cos(x)", "cosh(x) - 1", "3 - 3*cosh(x)", "sqrt(1 + x) - 1",
-                                        "log(1 + x)", "1 - (1 + x)^(-1/3)", "(1 + x^2)^(3/2) - 1", "log(1 + x + x^2)"};
+    static const char *const small[] = {"exp(x) - 1",         "2*exp(x) - 2",        "1 - exp(-x)",     "1 - cos(x)",
+                                        "cosh(x) - 1",        "3 - 3*cosh(x)",       "sqrt(1 + x) - 1", "log(1 + x)",
+                                        "1 - (1 + x)^(-1/3)", "(1 + x^2)^(3/2) - 1", "log(1 + x + x^2)"};
     acb_t at, v;
     acb_ptr jet = _acb_vec_init(3);
     acb_init(at);
@@ -325,7 +350,8 @@ static void small_differences(void **state)
         tape_eval(v, t, at, true, 64);
         if (acb_rel_accuracy_bits(v) < 55) fail_msg("%s loses digits: %ld bits", small[k], acb_rel_accuracy_bits(v));
         tape_jet(jet, t, at, 3, 64);
-        if (acb_rel_accuracy_bits(jet) < 55 || !acb_overlaps(jet, v)) fail_msg("the series of %s loses digits", small[k]);
+        if (acb_rel_accuracy_bits(jet) < 55 || !acb_overlaps(jet, v))
+            fail_msg("the series of %s loses digits", small[k]);
         tape_free(t);
     }
     _acb_vec_clear(jet, 3);
@@ -338,8 +364,9 @@ int main(void)
 {
     plain_seed("test_tape");
     const struct CMUnitTest tests[] = {
-        cmocka_unit_test(random_trees),     cmocka_unit_test(random_trees_analytic), cmocka_unit_test(closed_values),
-        cmocka_unit_test(no_closed_value),  cmocka_unit_test(several_variables),     cmocka_unit_test(precision_changes),
+        cmocka_unit_test(random_trees),      cmocka_unit_test(random_trees_analytic),
+        cmocka_unit_test(closed_values),     cmocka_unit_test(no_closed_value),
+        cmocka_unit_test(several_variables), cmocka_unit_test(precision_changes),
         cmocka_unit_test(small_differences), cmocka_unit_test(huge_and_tiny),
     };
     return cmocka_run_group_tests_name("test_tape", tests, NULL, NULL);
