@@ -497,6 +497,17 @@ static bool source_read(problem *p, const local_form *l, const env *at, expr *la
     return fine && !*reason;
 }
 
+/* The first power of the series is a whole number of steps above the factor in front: sqrt(1 - exp(-x)) has no such factor. */
+static bool starts_whole(const problem *p)
+{
+    tw_engine *e = p->e;
+    if (!p->pure)
+        return true;
+    expr *first = expr_mul(e, expr_int(e, p->source->spread), expr_add(e, p->source->least, expr_int(e, 1)));
+    expr *away = expr_sub(e, first, expr_add(e, p->v_expr, expr_int(e, 1)));
+    return away && (!expr_is_number(away) || fmpz_is_one(fmpq_denref(expr_number(away))));
+}
+
 static bool problem_make(problem *p, const local_form *l, const env *at, expr *large, char **reason)
 {
     slong D;
@@ -508,6 +519,10 @@ static bool problem_make(problem *p, const local_form *l, const env *at, expr *l
         fmpq_mul_si(p->m, p->source->mu, D);
     if (!sheets_make(p, reason) || !real_value(p, p->v, p->v_expr, 400))
         return false;
+    if (!starts_whole(p)) {
+        *reason = base_copy("the amplitude begins with a fractional power that is hidden in a root");
+        return false;
+    }
     fmpq_init(inverse);
     fmpq_inv(inverse, p->m);
     arb_set_fmpq(p->ell_factor, inverse, 400);
