@@ -188,7 +188,7 @@ static void jet_piecewise(tape *t, acb_poly_t out, const op *o, bool *real, slon
 /* Is the value of a call real where its arguments are real? `value` gives their balls. */
 static bool call_is_real(const tape *t, const op *o, acb_srcptr (*value)(const tape *, size_t))
 {
-    const size_t *from = t->operands + o->first;
+    const size_t *from = o->count > 0 ? t->operands + o->first : NULL;
     acb_srcptr a = value(t, from[0]);
     switch (o->function) {
     case FUNCTION_ABS:
@@ -219,7 +219,7 @@ static bool call_is_real(const tape *t, const op *o, acb_srcptr (*value)(const t
 /* The same for every operation but pieces. */
 static bool is_real(const tape *t, const op *o, acb_srcptr (*value)(const tape *, size_t))
 {
-    const size_t *from = t->operands + o->first;
+    const size_t *from = o->count > 0 ? t->operands + o->first : NULL;
     acb_srcptr a = o->count ? value(t, from[0]) : NULL;
     switch (o->kind) {
     case OP_VARIABLE: return o->real;
@@ -275,7 +275,7 @@ static void run_op(tape *t, size_t k, acb_srcptr at, bool analytic, slong prec)
 {
     op *o = &t->ops[k];
     acb_ptr out = t->values + k;
-    const size_t *from = t->operands + o->first;
+    const size_t *from = o->count > 0 ? t->operands + o->first : NULL;
     switch (o->kind) {
     case OP_VARIABLE:
         acb_set(out, at + o->index);
@@ -381,7 +381,7 @@ static void jet_op(tape *t, size_t k, acb_srcptr at, slong len, slong prec)
 {
     op *o = &t->ops[k];
     acb_poly_struct *out = &t->jets[k];
-    const size_t *from = t->operands + o->first;
+    const size_t *from = o->count > 0 ? t->operands + o->first : NULL;
     switch (o->kind) {
     case OP_VARIABLE:
         acb_poly_zero(out);
