@@ -108,7 +108,9 @@ static void try_one_s(tw_engine *e, tally *t, expansion *a, const env *at, slong
         t->counted++;
         if (ratio > t->worst_one && !b.manner) {
             t->worst_one = ratio;
-            snprintf(t->which_one, sizeof t->which_one, "%s, %ld terms, %s", words, (long)terms, expr_text(e, at->values[0]));
+            char *there = expr_text(e, at->values[0]);
+            snprintf(t->which_one, sizeof t->which_one, "%s, %ld terms, s = %s", words, (long)terms, there);
+            free(there);
         }
         if (!arb_overlaps(truth, b.error)) {
             t->violated++;
@@ -144,8 +146,11 @@ static double try_all_s(tw_engine *e, tally *t, expansion *a, const remainder_bo
             arb_abs(truth, truth);
             if (arb_gt(truth, acb_realref(bound))) {
                 t->violated++;
-                printf("VIOLATED for all s: %s, %ld terms, bound %s at ", words, (long)r->terms, expr_text(e, r->bound));
-                printf("%s: log2 ratio %g\n", expr_text(e, value), ratio);
+                char *bound_words = expr_text(e, r->bound), *there = expr_text(e, value);
+                printf("VIOLATED for all s: %s, %ld terms, bound %s at %s: log2 ratio %g\n", words, (long)r->terms, bound_words,
+                       there, ratio);
+                free(bound_words);
+                free(there);
             }
         }
     }
