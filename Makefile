@@ -5,7 +5,7 @@ BUILD    ?= build
 CC       ?= gcc
 CFLAGS   ?= -O2 -g
 WARN     := -std=c11 -Wall -Wextra -Wmissing-prototypes -Wredundant-decls -Wshadow -Wno-missing-field-initializers
-CPPFLAGS += -I. -D_GNU_SOURCE -DTW_VERSION='"$(VERSION)"' -DTW_DATADIR='"$(PREFIX)/share/termwise"' $(shell sh tools/flags.sh --cflags)
+CPPFLAGS += -I. -D_GNU_SOURCE -DTW_VERSION='"$(VERSION)"' -DTW_DATADIR='"$(PREFIX)/share/termwise"'
 LIBS     := $(shell sh tools/flags.sh --libs)
 ifdef WERROR
 WARN += -Werror
