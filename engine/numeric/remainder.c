@@ -243,22 +243,29 @@ static bool all_enclose(tw_engine *e, expansion *a, const env *at)
     return any;
 }
 
-static tw_status enclosing_bound(tw_engine *e, remainder_bound *out, expansion *a, const env *values)
+/* factor times the moduli of the next `more` terms that are not kept, over the contributions that count; NULL on an error. */
+static expr *omitted_terms(tw_engine *e, slong kept, slong more, slong factor, expansion *a, const env *values)
 {
     expr *sum = expr_int(e, 0);
-    if (expansion_extend(e, a, out->terms + 1) != TW_OK)
-        return TW_ERROR;
+    if (expansion_extend(e, a, kept + more) != TW_OK)
+        return NULL;
     for (size_t k = 0; k < a->contribution_count; k++) {
         term *order = NULL;
         slong found = 0;
         if (!contribution_counts(a, k, false))
             continue;
-        if (expansion_order(e, a, k, out->terms + 1, &order, &found) != TW_OK)
-            return TW_ERROR;
-        if (found > out->terms)
-            sum = expr_add(e, sum, modulus(e, term_formula(e, a, k, order[out->terms], values)));
+        if (expansion_order(e, a, k, kept + more, &order, &found) != TW_OK)
+            return NULL;
+        for (slong j = kept; j < found; j++)
+            sum = expr_add(e, sum, expr_mul(e, expr_int(e, factor), modulus(e, term_formula(e, a, k, order[j], values))));
         free(order);
     }
+    return sum;
+}
+
+static tw_status enclosing_bound(tw_engine *e, remainder_bound *out, expansion *a, const env *values)
+{
+    expr *sum = omitted_terms(e, out->terms, 1, 1, a, values);
     if (TW_BOUND_FACTOR != 1) {
         arb_t x;
         arb_init(x);
@@ -536,20 +543,7 @@ static tw_status panel_bound(tw_engine *e, remainder_bound *out, expansion *a, s
 /* Not proved: three times the first omitted terms, as a formula. */
 static tw_status estimated_bound(tw_engine *e, remainder_bound *out, expansion *a, const env *values)
 {
-    expr *sum = expr_int(e, 0);
-    if (expansion_extend(e, a, out->terms + 2) != TW_OK)
-        return TW_ERROR;
-    for (size_t k = 0; k < a->contribution_count; k++) {
-        term *order = NULL;
-        slong found = 0;
-        if (!contribution_counts(a, k, false))
-            continue;
-        if (expansion_order(e, a, k, out->terms + 2, &order, &found) != TW_OK)
-            return TW_ERROR;
-        for (slong j = out->terms; j < found; j++)
-            sum = expr_add(e, sum, expr_mul(e, expr_int(e, 3), modulus(e, term_formula(e, a, k, order[j], values))));
-        free(order);
-    }
+    expr *sum = omitted_terms(e, out->terms, 2, 3, a, values);
     out->bound = sum;
     out->source = base_copy("three times the next omitted terms");
     return sum ? TW_OK : TW_ERROR;
