@@ -190,6 +190,25 @@ static int judge_box(search *s, tape *g, const arf_t a, const arf_t b)
     return verdict;
 }
 
+/* Is the zero of f near `where` at the end of the range itself? Yes for an exact end at which f is 0 by exact arithmetic; for an end
+ * known by its ball only (pi, sqrt(2)) the zero counts as the end when the sign stays undecided at the working precision. */
+static bool zero_is_the_end(search *s, expr *f, const arb_t where)
+{
+    for (int side = 0; side < 2; side++) {
+        const arb_struct *end = side ? s->to : s->from;
+        if ((side ? s->to_infinite : s->from_infinite) || !arb_overlaps(where, end)) continue;
+        if (!arb_is_exact(end)) return true;
+        fmpq_t q;
+        fmpq_init(q);
+        arf_get_fmpq(q, arb_midref(end));
+        expr *value = expr_substitute(s->e, f, s->x, expr_fmpq(s->e, q));
+        fmpq_clear(q);
+        if (!value) engine_forgive(s->e);
+        if (value && expr_is_zero(expr_expand(s->e, value))) return true;
+    }
+    return false;
+}
+
 static tw_status isolate(search *s, expr *f, tape *g, const arf_t a, const arf_t b, bool strict, int depth)
 {
     int verdict = judge_box(s, g, a, b);
@@ -216,7 +235,7 @@ static tw_status isolate(search *s, expr *f, tape *g, const arf_t a, const arf_t
         arb_t where;
         arb_init(where);
         arb_set_interval_arf(where, a, b, 64);
-        bool at_end = !inside(s, where);
+        bool at_end = !inside(s, where) && (verdict != 2 || zero_is_the_end(s, f, where));
         tw_status status = TW_OK;
         if (verdict != 2 || !at_end) {
             s->points->complete = false;
