@@ -57,10 +57,11 @@ static const help_entry entries[] = {
      "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 6 terms\nremainder of A with 3 terms", NULL},
     {"evaluate", HELP_REQUEST, HERE,
      "evaluate NAME at s = 20 [, nu = 1/3] [to D digits] [with M terms]\n"
-     "              [with all contributions]\nevaluate EXPRESSION [at s = 20] [to D digits]",
+     "              [with all contributions] [to \"FILE\"]\nevaluate NAME at points of \"FILE\" [to \"FILE\"]\n"
+     "evaluate EXPRESSION [at s = 20] [to D digits]",
      "A number with its error bound. Of an expansion: the dominant contributions\nare summed up to the term with the least "
      "bound, or M terms. Of an integral\nor another expression: certified quadrature. Several values after `=` give\na row "
-     "each.",
+     "each, on the terminal or as CSV in a file.",
      "large s\nlet F = integral from 0 to inf of exp(-s*x)/(1 + x^2) dx\nlet A = expand F to 12 terms\n"
      "evaluate A at s = 20\nevaluate F at s = 20, 40 to 30 digits", NULL},
     {"compare", HELP_REQUEST, HERE, "compare NAME at s = 3, 10, 30 [, nu = 1/3]",
@@ -230,8 +231,11 @@ static const help_entry entries[] = {
     {"order", HELP_CLAUSE, HERE, NULL, "How many times to differentiate.", NULL, "derivative"},
     {"step", HELP_CLAUSE, HERE, "at NAME from A to B step C", "Equal steps from the first value on.",
      "large s\nlet F = integral from 0 to inf of exp(-s*x)/(1 + x^2) dx\nevaluate F at s from 10 to 30 step 5", NULL},
-    {"points", HELP_CLAUSE, HERE, "at NAME from A to B in N points [on a log scale]", "So many values, equally spaced.",
-     "large s\nlet F = integral from 0 to inf of exp(-s*x)/(1 + x^2) dx\nevaluate F at s from 10 to 30 in 3 points", NULL},
+    {"points", HELP_CLAUSE, HERE, "at NAME from A to B in N points [on a log scale]\nat points of \"FILE\"",
+     "So many values, equally spaced (on a log scale: rounded to 10 digits). Or\nthe rows of a CSV file: its first line names "
+     "the parameters, the cells below\nare their values.",
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 8 terms\n"
+     "evaluate A at s from 10 to 30 in 3 points\nevaluate A at points of \"points.csv\" to \"out.csv\"", NULL},
     {"on", HELP_CLAUSE, HERE, "on a log scale", "The values grow by equal factors.",
      "large s\nlet F = integral from 0 to inf of exp(-s*x)/(1 + x^2) dx\n"
      "evaluate F at s from 10 to 1000 in 3 points on a log scale",

@@ -31,18 +31,33 @@ void subject_clear(subject *x);
 /* May a statement define this name here? Sets the error when not: a declared parameter, the large one. */
 tw_status request_may_define(session *s, syntax_name name);
 
-/* The points of `at s = 3, 10, nu = 1/3`: every combination of the values, the first binding changing slowest. */
+/* The points of `at s = 3, 10, nu = 1/3`: every combination of the values, the first binding changing slowest; or the rows of
+ * a table. */
 typedef struct points {
     size_t width, count; /* symbols; points */
     expr **symbols;
     expr **values;       /* of point k: values + k*width */
+    struct points_table *table; /* the file they come from, or NULL */
 } points;
 
-/* f: the expression or integral whose symbols must all get a value; facts: what the values must not contradict. */
-tw_status points_read(session *s, points *out, const syntax_bindings *at, span place, const char *name, expr *f,
-                      expr *const *facts, size_t fact_count);
+/* What needs the points: its name, the expression whose symbols must all get a value, facts that the values must not
+ * contradict. */
+typedef struct points_use {
+    const char *name;
+    expr *f;
+    expr *const *facts;
+    size_t fact_count;
+} points_use;
+
+tw_status points_read(session *s, points *out, const syntax_bindings *at, span place, const points_use *use);
+/* The same from a CSV file: the heading names the parameters, each row is a point, each cell a value in the language. */
+tw_status points_read_file(session *s, points *out, const char *path, span place, const points_use *use);
 void points_clear(points *p);
 env points_at(const points *p, size_t k); /* borrows from p */
+/* Adds the value of column c at point k as short as it can be said exactly: as it stood in the file, 5.25, or an expression. */
+void points_print_value(session *s, text *out, const points *p, size_t k, size_t c);
+/* After a failure at point k: the error's words, or its place, say which point it was. */
+void points_blame(session *s, const points *p, size_t k);
 
 /* Each answers one kind of statement; the kept value is left in *keep unless keep is NULL. */
 typedef tw_status request_function(session *s, const statement *st, result *r, value **keep);

@@ -4,9 +4,10 @@
 
 #include "engine/export/format.h"
 #include "lang/describe.h"
+#include "lang/file.h"
 #include "lang/request.h"
 
-enum { SHOWN_DIGITS = 1000, EXTRA_DIGITS = 2 };
+enum { SHOWN_DIGITS = 1000, EXTRA_DIGITS = 2, LABEL_COUNT = LABEL_UNKNOWN + 1 };
 
 /* ---- one number ---- */
 
@@ -134,71 +135,195 @@ static tw_status evaluate_one(session *s, result *r, const task *t)
 
 /* ---- several ---- */
 
-static void add_point_cells(session *s, table *t, const points *p, size_t k)
+/* Numbers at many points, in the three forms that may be wanted. */
+typedef struct listing {
+    table rows;    /* for people */
+    text json, csv;
+    size_t known[LABEL_COUNT]; /* how many of each label */
+} listing;
+
+static void listing_init(listing *l, const task *t)
 {
-    for (size_t c = 0; c < p->width; c++) {
-        text cell;
-        text_init(&cell);
-        expr_print(s->e, &cell, p->values[k * p->width + c]);
-        table_take(t, &cell);
+    memset(l, 0, sizeof *l);
+    table_init(&l->rows, t->points.width + 2);
+    text_init(&l->json);
+    text_init(&l->csv);
+    for (size_t c = 0; c < t->points.width; c++) {
+        table_cell(&l->rows, t->points.symbols[c]->is.name);
+        csv_field(&l->csv, t->points.symbols[c]->is.name);
+        text_add_char(&l->csv, ',');
     }
+    table_cell(&l->rows, "value");
+    table_cell(&l->rows, "label");
+    text_add(&l->csv, "re_mid,re_radius,im_mid,im_radius,label,manner,way,terms,least_term,reason,conditions\r\n");
+    text_add_char(&l->json, '[');
 }
 
-static tw_status add_number_row(session *s, table *rows, text *json, const task *t, size_t k)
+static void listing_clear(listing *l)
+{
+    table_clear(&l->rows);
+    text_clear(&l->json);
+    text_clear(&l->csv);
+}
+
+static void add_csv_count(text *out, slong n)
+{
+    if (n >= 0) text_addf(out, "%ld", (long)n);
+    text_add_char(out, ',');
+}
+
+static void add_csv_words(text *out, const char *words)
+{
+    if (words) csv_field(out, words);
+    text_add_char(out, ',');
+}
+
+static void add_csv_ball(text *out, const arb_t x)
+{
+    text mid, radius;
+    text_init(&mid);
+    text_init(&radius);
+    decimal_ball(&mid, &radius, x);
+    text_addf(out, "%s,%s,", mid.bytes, radius.bytes);
+    text_clear(&mid);
+    text_clear(&radius);
+}
+
+static void add_csv_conditions(text *out, const condition_list *conditions)
+{
+    text words;
+    text_init(&words);
+    for (size_t k = 0; k < conditions->count; k++)
+        text_addf(&words, "%s%s (%s)", k ? "; " : "", conditions->list[k].words,
+                  condition_label_word(conditions->list[k].label));
+    csv_field(out, words.bytes);
+    text_clear(&words);
+}
+
+static void add_csv_row(session *s, text *out, const task *t, size_t k, const number *n)
+{
+    for (size_t c = 0; c < t->points.width; c++) {
+        text cell;
+        text_init(&cell);
+        points_print_value(s, &cell, &t->points, k, c);
+        add_csv_words(out, cell.bytes);
+        text_clear(&cell);
+    }
+    add_csv_ball(out, acb_realref(n->value));
+    add_csv_ball(out, acb_imagref(n->value));
+    add_csv_words(out, label_word(n->label));
+    add_csv_words(out, n->manner);
+    add_csv_words(out, n->way);
+    add_csv_count(out, n->terms);
+    add_csv_count(out, n->least_term);
+    add_csv_words(out, n->reason);
+    add_csv_conditions(out, &n->conditions);
+    text_add(out, "\r\n");
+}
+
+static void add_table_row(session *s, table *rows, const task *t, size_t k, const number *n)
+{
+    text cell;
+    text_init(&cell);
+    for (size_t c = 0; c < t->points.width; c++) {
+        points_print_value(s, &cell, &t->points, k, c);
+        table_take(rows, &cell);
+    }
+    describe_value(&cell, n->value, digits_shown(t));
+    table_take(rows, &cell);
+    text_add(&cell, label_word(n->label));
+    if (n->manner) text_addf(&cell, ", %s", n->manner);
+    table_take(rows, &cell);
+}
+
+static tw_status add_number(session *s, listing *l, const task *t, size_t k, bool to_file)
 {
     env at = points_at(&t->points, k);
     number n;
     number_init(&n);
     tw_status status = find_number(s, &n, t, &at);
     if (status == TW_OK) {
-        add_point_cells(s, rows, &t->points, k);
-        text cell;
-        text_init(&cell);
-        describe_value(&cell, n.value, digits_shown(t));
-        table_take(rows, &cell);
-        text_add(&cell, label_word(n.label));
-        if (n.manner) text_addf(&cell, ", %s", n.manner);
-        table_take(rows, &cell);
-        json_next(json);
-        json_number(json, t->x.name, &at, &n, s->e);
+        l->known[n.label]++;
+        if (to_file) {
+            add_csv_row(s, &l->csv, t, k, &n);
+        } else {
+            add_table_row(s, &l->rows, t, k, &n);
+            json_next(&l->json);
+            json_number(&l->json, t->x.name, &at, &n, s->e);
+        }
+    } else {
+        points_blame(s, &t->points, k);
     }
     number_clear(&n);
     return status;
 }
 
-static tw_status evaluate_several(session *s, result *r, const task *t)
+static void tell_progress(session *s, const task *t, size_t k)
 {
-    result_restart(r, "numbers");
-    result_string(r, "of", t->x.name);
-    table rows;
-    table_init(&rows, t->points.width + 2);
-    for (size_t c = 0; c < t->points.width; c++) table_cell(&rows, t->points.symbols[c]->is.name);
-    table_cell(&rows, "value");
-    table_cell(&rows, "label");
-    text json;
-    text_init(&json);
-    text_add_char(&json, '[');
+    if (k % 16 != 0) return;
+    text words;
+    text_init(&words);
+    text_addf(&words, "point %zu of %zu", k + 1, t->points.count);
+    engine_progress(s->e, words.bytes);
+    text_clear(&words);
+}
+
+static tw_status put_file(session *s, result *r, const task *t, listing *l, const char *file)
+{
+    text words, json;
+    text_init(&words);
     tw_status status = TW_OK;
-    for (size_t k = 0; status == TW_OK && k < t->points.count; k++) {
-        status = budget_ok(s->e) ? TW_OK : TW_ERROR;
-        if (status == TW_OK) status = add_number_row(s, &rows, &json, t, k);
+    if (!file_write(file, l->csv.bytes, l->csv.length, &words)) status = engine_fail(s->e, ERROR_FILE, "%s", words.bytes);
+    text_cut(&words, 0);
+    text_init(&json);
+    text_add_char(&json, '{');
+    for (int k = 0; k < LABEL_COUNT; k++) {
+        if (l->known[k] == 0) continue;
+        text_addf(&words, "%s%zu %s", words.length ? ", " : "", l->known[k], label_word((label)k));
+        json_member(&json, label_word((label)k));
+        text_addf(&json, "%zu", l->known[k]);
     }
-    text_add_char(&json, ']');
-    result_json(r, "rows", json.bytes);
-    table_print(&rows, &r->words, "  ");
-    table_clear(&rows);
+    text_add_char(&json, '}');
+    result_restart(r, "file");
+    result_string(r, "of", t->x.name);
+    result_string(r, "format", "csv");
+    result_string(r, "file", file);
+    result_integer(r, "bytes", (long)l->csv.length);
+    result_integer(r, "rows", (long)t->points.count);
+    result_json(r, "labels", json.bytes);
+    result_line(r, "%s at %zu %s written to \"%s\": %s", t->x.name, t->points.count, t->points.count == 1 ? "point" : "points",
+                file, words.bytes);
+    text_clear(&words);
     text_clear(&json);
     return status;
 }
 
-/* ---- evaluate ---- */
-
-static tw_status refuse_later_parts(session *s, const statement *st)
+/* to_file: NULL, or the file that gets them as CSV. */
+static tw_status evaluate_several(session *s, result *r, const task *t, const char *to_file)
 {
-    if (st->as.evaluate->points_file) return request_unavailable(s, st->at, "evaluate ... at points of");
-    if (st->as.evaluate->to_file) return request_unavailable(s, st->at, "evaluate ... to \"FILE\"");
-    return TW_OK;
+    listing l;
+    listing_init(&l, t);
+    tw_status status = TW_OK;
+    for (size_t k = 0; status == TW_OK && k < t->points.count; k++) {
+        tell_progress(s, t, k);
+        status = budget_ok(s->e) ? TW_OK : TW_ERROR;
+        if (status == TW_OK) status = add_number(s, &l, t, k, to_file != NULL);
+    }
+    text_add_char(&l.json, ']');
+    if (status == TW_OK && to_file) {
+        status = put_file(s, r, t, &l, to_file);
+    } else if (status == TW_OK) {
+        result_restart(r, "numbers");
+        result_string(r, "of", t->x.name);
+        result_json(r, "rows", l.json.bytes);
+        if (s->let_name) result_string(r, "name", s->let_name);
+        table_print(&l.rows, &r->words, "  ");
+    }
+    listing_clear(&l);
+    return status;
 }
+
+/* ---- evaluate ---- */
 
 static tw_status read_options(session *s, const statement *st, task *t)
 {
@@ -217,26 +342,28 @@ static tw_status read_options(session *s, const statement *st, task *t)
     return TW_OK;
 }
 
-static tw_status read_points(session *s, const statement *st, const syntax_bindings *at, span place, task *t)
+/* file: a table of points, or NULL: the bindings. */
+static tw_status read_points(session *s, const syntax_bindings *at, const char *file, span place, task *t)
 {
-    (void)st;
-    expr *f = t->x.kept ? t->x.kept->expansion.integral : t->x.expression;
-    if (t->x.kept)
-        return points_read(s, &t->points, at, place, t->x.name, f, t->x.kept->expansion.facts,
-                           t->x.kept->expansion.fact_count);
-    size_t count = facts_count(s->e);
-    expr **facts = base_alloc((count + 1) * sizeof *facts);
-    condition_label known;
-    for (size_t k = 0; k < count; k++) facts[k] = facts_at(s->e, k, &known);
-    tw_status status = points_read(s, &t->points, at, place, t->x.name, f, facts, count);
-    free(facts);
+    points_use use = {t->x.name, t->x.kept ? t->x.kept->expansion.integral : t->x.expression, NULL, 0};
+    expr **known = NULL;
+    if (t->x.kept) {
+        use.facts = t->x.kept->expansion.facts;
+        use.fact_count = t->x.kept->expansion.fact_count;
+    } else {
+        condition_label label_of_fact;
+        use.fact_count = facts_count(s->e);
+        use.facts = known = base_alloc((use.fact_count + 1) * sizeof *known);
+        for (size_t k = 0; k < use.fact_count; k++) known[k] = facts_at(s->e, k, &label_of_fact);
+    }
+    tw_status status = file ? points_read_file(s, &t->points, file, place, &use) : points_read(s, &t->points, at, place, &use);
+    free(known);
     return status;
 }
 
 tw_status request_evaluate(session *s, const statement *st, result *r, value **keep)
 {
     const syntax *subject_words = st->as.evaluate->subject;
-    if (refuse_later_parts(s, st) != TW_OK) return TW_ERROR;
     task t;
     memset(&t, 0, sizeof t);
     if (subject_read(s, &t.x, subject_words) != TW_OK) return TW_ERROR;
@@ -245,12 +372,13 @@ tw_status request_evaluate(session *s, const statement *st, result *r, value **k
         status = request_fail(s, subject_words->at, ERROR_VALUE, "`%s` is %s, which has no value at a point", t.x.name,
                               t.x.kept->what);
     if (status == TW_OK) status = read_options(s, st, &t);
-    if (status == TW_OK) status = read_points(s, st, &st->as.evaluate->at, subject_words->at, &t);
+    if (status == TW_OK) status = read_points(s, &st->as.evaluate->at, st->as.evaluate->points_file, subject_words->at, &t);
+    bool single = t.points.count == 1 && !t.points.table && !st->as.evaluate->to_file;
     if (status == TW_OK) {
-        status = t.points.count == 1 ? evaluate_one(s, r, &t) : evaluate_several(s, r, &t);
+        status = single ? evaluate_one(s, r, &t) : evaluate_several(s, r, &t, st->as.evaluate->to_file);
         if (status != TW_OK) request_fail_at(s, subject_words->at);
     }
-    if (status == TW_OK && keep) *keep = value_of_result(r, t.points.count == 1 ? "a number" : "a table of numbers");
+    if (status == TW_OK && keep) *keep = value_of_result(r, single ? "a number" : "a table of numbers");
     points_clear(&t.points);
     subject_clear(&t.x);
     return status;
@@ -437,7 +565,7 @@ tw_status request_compare(session *s, const statement *st, result *r, value **ke
     const syntax *subject_words = st->as.compare.subject;
     if (subject_read_expansion(s, &t.x, subject_words) != TW_OK) return TW_ERROR;
     bool violated = false;
-    tw_status status = read_points(s, st, &st->as.compare.at, subject_words->at, &t);
+    tw_status status = read_points(s, &st->as.compare.at, NULL, subject_words->at, &t);
     if (status == TW_OK && compare_all(s, r, &t, &violated) != TW_OK) {
         result_restart(r, "comparison");
         status = request_fail_at(s, subject_words->at);

@@ -101,6 +101,22 @@ static void complain_at(run *r, source *whole, span at, error_kind kind, const c
     worsen(r, status_of(kind));
 }
 
+/* The fault lies in a file that the statement read: its place comes first, then the statement's. */
+static void complain_elsewhere(run *r, source *whole, span at, error_kind kind, const char *words)
+{
+    session_elsewhere *other = &r->session.elsewhere;
+    source file;
+    source_init(&file, other->name, other->bytes.bytes, other->bytes.length);
+    complain_at(r, &file, other->at, kind, words);
+    source_place place = source_find(whole, at.from);
+    text line;
+    text_init(&line);
+    text_addf(&line, "%s:%u:%u: which is read here\n", whole->name, place.line, place.column);
+    print_complaint(r, line.bytes);
+    text_clear(&line);
+    session_forget_blame(&r->session);
+}
+
 /* ---- one statement ---- */
 
 static bool shown(const run *r, const result *given)
@@ -161,7 +177,8 @@ static bool run_statement(run *r, source *whole, size_t from, const statement *s
         complain_interrupted(r);
         engine_forgive(e);
     } else if (status != TW_OK) {
-        complain_at(r, whole, shifted(r->session.at, from), kind, e->error.words);
+        (r->session.elsewhere.name ? complain_elsewhere : complain_at)(r, whole, shifted(r->session.at, from), kind,
+                                                                       e->error.words);
         engine_forgive(e);
     }
     result_clear(&made);

@@ -245,6 +245,21 @@ tw_status session_unknown_name(session *s, syntax_name name)
     return request_fail(s, name.at, ERROR_NAME, "`%s` is not defined", name.text);
 }
 
+void session_blame(session *s, const source *other, span at)
+{
+    session_forget_blame(s);
+    s->elsewhere.name = base_copy(other->name);
+    text_add_bytes(&s->elsewhere.bytes, other->bytes, other->length);
+    s->elsewhere.at = at;
+}
+
+void session_forget_blame(session *s)
+{
+    free(s->elsewhere.name);
+    s->elsewhere.name = NULL;
+    text_clear(&s->elsewhere.bytes);
+}
+
 bool session_declares(session *s, expr *symbol)
 {
     expr *large;
@@ -274,6 +289,7 @@ tw_status session_init(session *s)
 
 void session_clear(session *s)
 {
+    session_forget_blame(s);
     names_clear(&s->names);
     tw_engine_free(s->e);
     s->e = NULL;

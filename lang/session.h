@@ -53,6 +53,13 @@ bool names_drop(name_table *t, const char *name);
 void names_clear(name_table *t);
 void names_each(const name_table *t, void (*take)(void *host, const char *name), void *host);
 
+/* A place in a file that a statement read; name NULL: none. */
+typedef struct session_elsewhere {
+    char *name;
+    text bytes;
+    span at;
+} session_elsewhere;
+
 typedef struct session {
     tw_engine *e;
     name_table names;
@@ -61,6 +68,7 @@ typedef struct session {
     const char *folder;    /* where `use "FILE"` looks: the folder of the file that runs, "" for the working folder */
     bool quit;             /* `quit` has run */
     span at;               /* after a failure: where in the statement's source */
+    session_elsewhere elsewhere; /* after a failure in a file that the statement read: where in that */
     bool met_expansion;    /* an expression named an expansion: said when it cannot be built */
     const char *let_name;  /* the name behind a `let` whose request runs, else NULL */
     /* Runs a file for `use` and says whether all of it succeeded; set by the host. */
@@ -87,6 +95,10 @@ tw_status session_lower_function(session *s, const syntax_name *parameters, size
 /* Appends the relations that a condition says: `0 < p < 1` says two. */
 tw_status session_lower_condition(session *s, const syntax *x, lower_conditions *out);
 tw_status session_lower_count(session *s, const syntax *x, const char *what, slong least, slong most, slong *out);
+
+/* The error that is set, or about to be, lies in another text: copies its name and bytes. */
+void session_blame(session *s, const source *other, span at);
+void session_forget_blame(session *s);
 
 /* Is something declared of the symbol: a fact, or that it is the large or small parameter? */
 bool session_declares(session *s, expr *symbol);

@@ -1,8 +1,9 @@
 """Every word of the language has help, and its example does what the help says. usage: run_help.py BUILD
 
 The words come from the program itself (`help` as JSON) and from the table of statements that the parser uses, so a statement
-without help fails here (the table of all words is held against help in tests/lang/test_result.c). An example of a word that this version has must run; one of a later word must be read and refused with
-the words `not available in this version`."""
+without help fails here (the table of all words is held against help in tests/lang/test_result.c). An example of a word that
+this version has must run, in a folder that holds a file points.csv with values of s; one of a later word must be read
+and refused with the words `not available in this version`."""
 import concurrent.futures
 import json
 import os
@@ -18,6 +19,8 @@ env = dict(os.environ, TW_STDLIB=os.path.join(here, "stdlib"))
 
 def run(script, *options):
     with tempfile.TemporaryDirectory() as folder:
+        with open(os.path.join(folder, "points.csv"), "w", encoding="utf-8") as f:
+            f.write("s\n10\n20\n")
         r = subprocess.run([program, "--time-limit", "60", *options], input=script, cwd=folder, env=env, text=True,
                            stdout=subprocess.PIPE, stderr=subprocess.PIPE, timeout=180)
     return r

@@ -46,6 +46,7 @@ def run(path):
         shutil.copy(path, folder)
         for extra in glob.glob(os.path.join(here, "script", "files", "*")):
             shutil.copy(extra, folder)
+        before = set(os.listdir(folder))
         env = dict(os.environ, TW_STDLIB=os.path.join(os.path.dirname(here), "stdlib"), LC_ALL="C.UTF-8")
         words = [program] + options + ([] if through_input else [name])
         source = open(path, "rb") if through_input else subprocess.DEVNULL
@@ -55,7 +56,7 @@ def run(path):
         out += "--- stderr\n" + r.stderr.decode("utf-8", "replace") + "--- status %d\n" % r.returncode
         for f in files:
             out += "--- file %s\n" % f + open(os.path.join(folder, f), encoding="utf-8", newline="").read()
-        left = [f for f in os.listdir(folder) if f not in files and not f.endswith((".tw", ".bin", ".txt"))]
+        left = [f for f in os.listdir(folder) if f not in files and f not in before]
         if left:
             out += "--- left behind: %s\n" % " ".join(sorted(left))
         return out

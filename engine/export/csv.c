@@ -5,7 +5,7 @@
 
 #include "engine/export/format.h"
 
-static void add_field(text *out, const char *words)
+void csv_field(text *out, const char *words)
 {
     if (!strpbrk(words, ",\"\r\n")) {
         text_add(out, words);
@@ -22,7 +22,7 @@ static void add_field(text *out, const char *words)
 static void add_expr(tw_engine *e, text *out, expr *a)
 {
     char *words = expr_text(e, a);
-    add_field(out, words);
+    csv_field(out, words);
     free(words);
     text_add_char(out, ',');
 }
@@ -61,7 +61,7 @@ static void add_row(tw_engine *e, text *out, const contribution *c, size_t k, si
         add_rational(out, &lane_->c.q[n]);
     } else {
         char *words = expr_text(e, coefficient_expr(e, &lane_->c, n));
-        add_field(out, words);
+        csv_field(out, words);
         free(words);
     }
     text_add(out, "\r\n");

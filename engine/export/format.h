@@ -24,6 +24,8 @@ void decimal_ball(text *mid, text *radius, const arb_t x);
 void json_ball(text *out, const arb_t x);                       /* {"mid": "...", "radius": "..."} */
 void json_conditions(text *out, const condition_list *c);       /* [{"text": ..., "label": ...}] */
 void json_number(text *out, const char *of, const env *at, const number *n, tw_engine *e); /* export.md "A number" */
+/* The words as one field of CSV, in quotes where RFC 4180 wants them. */
+void csv_field(text *out, const char *words);
 /* A real ball for people: "0.0990741 +/- 4.5e-6", digits chosen by the radius, at most `digits` significant ones. */
 void print_ball(text *out, const arb_t x, slong digits);
 
