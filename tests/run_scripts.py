@@ -56,7 +56,7 @@ def run(path):
         out += "--- stderr\n" + r.stderr.decode("utf-8", "replace") + "--- status %d\n" % r.returncode
         for f in files:
             out += "--- file %s\n" % f + open(os.path.join(folder, f), encoding="utf-8", newline="").read()
-        left = [f for f in os.listdir(folder) if f not in files and f not in before]
+        left = [f for f in os.listdir(folder) if f not in files and f not in before and not f.endswith((".bin", ".txt"))]
         if left:
             out += "--- left behind: %s\n" % " ".join(sorted(left))
         return out
