@@ -63,11 +63,14 @@ def judge(words, s, denominator):
         x = lo + u**denominator / s
         return value(body, x=x, s=s) * scale * denominator * u ** (denominator - 1) / s
 
-    last = (hi - lo) * s if hi != mpmath.inf else mpf(150)
     d = mpf(1) / denominator
-    points = [mpf(0)] + [p**d for p in (0.05, 0.3, 1, 3, 8, 20, 50, 100) if p < last] + [last**d]
+    last, tail = (hi - lo) * s, 0
+    if hi == mpmath.inf:  # the range is cut where exponential decay has left nothing; what is cut off counts as doubt
+        last = next((p for p in map(mpf, (150, 400, 1000, 2500)) if abs(f(p**d)) * p < mpf(10) ** -50), mpf(2500))
+        tail = abs(f(last**d)) * last
+    points = [mpf(0)] + [p**d for p in (0.05, 0.3, 1, 3, 8, 20, 50, 100, 300, 800) if p < last] + [last**d]
     got, error = mpmath.quad(f, points, error=True)
-    return got / scale, error / scale
+    return got / scale, (error + tail) / scale
 
 
 counted = 0
