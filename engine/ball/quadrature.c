@@ -21,7 +21,7 @@ enum { ATTEMPTS = 24, GUARD_BITS = 12, GAP_LIMIT = 4200, TEXT_LIMIT = 60 };
 /* One integral: a sum of pieces, each with a sign or factor, and thin slices around points that are known only closely.
  */
 typedef struct quad_slice {
-    tape *values;
+    tape *values, *taken; /* taken: the form that a piece integrates there instead, or NULL */
     arb_t place;
 } quad_slice;
 
@@ -44,6 +44,7 @@ static void sum_clear(quad_sum *s)
         free(s->names[k]);
     for (size_t k = 0; k < s->slice_count; k++) {
         tape_free(s->slices[k].values);
+        tape_free(s->slices[k].taken);
         arb_clear(s->slices[k].place);
     }
     free(s->slices);
@@ -154,12 +155,27 @@ static tw_status add_range(quad_sum *s, slong factor, expr *f, expr *x, expr *fr
     return status == TW_OK ? add_piece(s, factor, moved(e, f, x, to, y, true), y, half, b, middle) : status;
 }
 
-static void add_slice(quad_sum *s, expr *f, expr *x, const arb_t place)
+/* The integral of f over a part of `place`, in the sum with any sign; a piece has taken g there (NULL: nothing). */
+static tw_status add_slice(quad_sum *s, expr *f, expr *g, expr *x, const arb_t place)
 {
     s->slices = base_resize(s->slices, (s->slice_count + 1) * sizeof *s->slices);
-    s->slices[s->slice_count].values = tape_new(s->e, f, &x, 1);
-    arb_init(s->slices[s->slice_count].place);
-    arb_set(s->slices[s->slice_count++].place, place);
+    quad_slice *slice = &s->slices[s->slice_count++];
+    slice->values = tape_new(s->e, f, &x, 1);
+    slice->taken = g ? tape_new(s->e, g, &x, 1) : NULL;
+    arb_init(slice->place);
+    arb_set(slice->place, place);
+    return slice->values && (slice->taken || !g) ? TW_OK : TW_ERROR;
+}
+
+/* Next to an end known by its ball only a kink may lie on either side of the end: the piece there integrates g, and the
+ * difference to f counts on what is between. Forms that differ by their branch only are not worth the trouble. */
+static tw_status add_end_slices(quad_sum *s, expr *f, expr *g, expr *x, const quad_points *points, bool first, bool last)
+{
+    tw_status status = TW_OK;
+    for (int side = 0; side < 2 && status == TW_OK; side++)
+        if ((side ? last : first) && points->unsure[side] && f != g)
+            status = add_slice(s, f, g, x, points->near_end[side]);
+    return status;
 }
 
 /* A number inside (from, to): the middle, or a point at distance 1 of a finite end. */
@@ -181,18 +197,56 @@ static void inner_point(arf_t out, const arb_t from, bool from_infinite, const a
     arb_clear(t);
 }
 
+/* The value of an end as a real ball; infinite ends give zero. */
+static tw_status end_value(tw_engine *e, arb_t out, expr *end, slong prec)
+{
+    if (expr_is_inf(end) || expr_is_minus_inf(end))
+        return TW_OK;
+    acb_t v;
+    acb_init(v);
+    tw_status status = ball_value(e, v, end, FLINT_MAX(256, prec + 64));
+    if (status == TW_OK && (!acb_is_finite(v) || !arb_contains_zero(acb_imagref(v))))
+        status = engine_fail(e, ERROR_UNSUITABLE, "quadrature needs real ends");
+    arb_set(out, acb_realref(v));
+    acb_clear(v);
+    return status;
+}
+
+/* The points of the range from < to and its ends as balls, with more bits where a point and an end can't be told apart. */
+static tw_status find_points(quad_points *points, tw_engine *e, expr *f, expr *x, expr *from, expr *to, arb_t a, arb_t b,
+                             slong prec)
+{
+    tw_status status = TW_OK;
+    for (int k = 0; k < 4 && status == TW_OK; k++, prec *= 4) {
+        quad_range range = {from, to, a, b, expr_is_minus_inf(from), expr_is_inf(to)};
+        status = end_value(e, a, from, prec);
+        if (status == TW_OK)
+            status = end_value(e, b, to, prec);
+        if (k) {
+            quad_points_clear(points);
+            quad_points_init(points);
+        }
+        if (status == TW_OK)
+            status = quad_points_find(points, e, f, x, &range, prec);
+        if (!points->unsure[0] && !points->unsure[1])
+            break;
+    }
+    return status;
+}
+
 /* The range cut at the integrand's kinks and branch points. */
-static tw_status add_with_kinks(quad_sum *s, slong factor, expr *f, expr *x, expr *from, expr *to, const arb_t a,
-        const arb_t b,
-                                slong prec)
+static tw_status add_with_kinks(quad_sum *s, slong factor, expr *f, expr *x, expr *from, expr *to, slong prec)
 {
     tw_engine *e = s->e;
     bool low_infinite = expr_is_minus_inf(from), high_infinite = expr_is_inf(to);
+    arb_t a, b;
     quad_points points;
     arf_t inside;
     quad_points_init(&points);
     arf_init(inside);
-    tw_status status = quad_points_find(&points, e, f, x, a, low_infinite, b, high_infinite, prec);
+    arb_init(a);
+    arb_init(b);
+    tw_status status = find_points(&points, e, f, x, from, to, a, b, prec);
     expr *start = from;
     for (size_t k = 0; status == TW_OK && k <= points.count; k++) {
         bool last = k == points.count;
@@ -201,29 +255,18 @@ static tw_status add_with_kinks(quad_sum *s, slong factor, expr *f, expr *x, exp
         expr *g = quad_resolve(e, f, x, inside, points.complete);
         expr *end = last ? to : points.list[k].low;
         status = g ? add_range(s, factor, g, x, start, end) : TW_ERROR;
+        if (status == TW_OK && factor)
+            status = add_end_slices(s, f, g, x, &points, !k, last);
         if (!last) {
             start = points.list[k].high;
-            if (points.list[k].low != points.list[k].high)
-                add_slice(s, f, x, points.list[k].place);
+            if (status == TW_OK && factor && points.list[k].low != points.list[k].high)
+                status = add_slice(s, f, NULL, x, points.list[k].place);
         }
     }
     quad_points_clear(&points);
     arf_clear(inside);
-    return status;
-}
-
-/* The value of an end as a real ball; infinite ends give zero. */
-static tw_status end_value(tw_engine *e, arb_t out, expr *end)
-{
-    if (expr_is_inf(end) || expr_is_minus_inf(end))
-        return TW_OK;
-    acb_t v;
-    acb_init(v);
-    tw_status status = ball_value(e, v, end, 256);
-    if (status == TW_OK && (!acb_is_finite(v) || !arb_contains_zero(acb_imagref(v))))
-        status = engine_fail(e, ERROR_UNSUITABLE, "quadrature needs real ends");
-    arb_set(out, acb_realref(v));
-    acb_clear(v);
+    arb_clear(a);
+    arb_clear(b);
     return status;
 }
 
@@ -261,23 +304,23 @@ static tw_status sum_build(quad_sum *s, expr *integral, slong prec)
     arb_init(a);
     arb_init(b);
     int order = 0;
-    tw_status status = end_value(e, a, from);
+    tw_status status = end_value(e, a, from, prec);
     if (status == TW_OK)
-        status = end_value(e, b, to);
+        status = end_value(e, b, to, prec);
     if (status == TW_OK)
         status = range_order(e, from, to, a, b, &order);
     if (status == TW_OK && order && from == expr_neg(e, to)) { /* parity */
         expr *mirrored = expr_substitute(e, f, x, expr_neg(e, x));
         if (mirrored && mirrored == expr_neg(e, f)) { /* 0, once the half is seen to converge */
-            status = order > 0 ? add_with_kinks(s, 0, f, x, expr_int(e, 0), to, b, b, prec)
-                               : add_with_kinks(s, 0, f, x, expr_int(e, 0), from, a, a, prec);
+            status = order > 0 ? add_with_kinks(s, 0, f, x, expr_int(e, 0), to, prec)
+                               : add_with_kinks(s, 0, f, x, expr_int(e, 0), from, prec);
             order = 0;
         }
     }
     if (status == TW_OK && order > 0)
-        status = add_with_kinks(s, 1, f, x, from, to, a, b, prec);
+        status = add_with_kinks(s, 1, f, x, from, to, prec);
     else if (status == TW_OK && order < 0)
-        status = add_with_kinks(s, -1, f, x, to, from, b, a, prec);
+        status = add_with_kinks(s, -1, f, x, to, from, prec);
     arb_clear(a);
     arb_clear(b);
     return status;
@@ -329,35 +372,42 @@ static double log2_radius(const acb_t v)
     return out;
 }
 
-/* The thin slices around closely known points: width times the values there. */
+/* The thin slices around closely known points, with either sign: width times the values there. Where a piece has
+ * taken another form, the difference lies within width times the sum of the moduli. */
 static void add_slices(quad_sum *s, acb_t value, slong prec)
 {
-    acb_t x, v;
-    arf_t width, zero;
-    arb_t factor;
+    acb_t x, v, taken;
+    mag_t width, size, part;
     acb_init(x);
     acb_init(v);
-    arf_init(width);
-    arf_init(zero);
-    arb_init(factor);
+    acb_init(taken);
+    mag_init(width);
+    mag_init(size);
+    mag_init(part);
     for (size_t k = 0; k < s->slice_count; k++) {
-        if (!s->slices[k].values) {
-            acb_indeterminate(value);
-            continue;
+        const quad_slice *slice = s->slices + k;
+        arb_set(acb_realref(x), slice->place);
+        mag_mul_2exp_si(width, arb_radref(slice->place), 1);
+        tape_eval(v, slice->values, x, false, prec);
+        acb_get_mag(size, v);
+        if (slice->taken) {
+            tape_eval(taken, slice->taken, x, false, prec);
+            acb_get_mag(part, taken);
+            mag_add(size, size, part);
         }
-        arb_set(acb_realref(x), s->slices[k].place);
-        tape_eval(v, s->slices[k].values, x, false, prec);
-        arf_set_mag(width, arb_radref(s->slices[k].place));
-        arf_mul_2exp_si(width, width, 1);
-        arb_set_interval_arf(factor, zero, width, prec);
-        acb_mul_arb(v, v, factor, prec);
-        acb_add(value, value, v, prec);
+        mag_mul(size, size, width);
+        mag_add(arb_radref(acb_realref(value)), arb_radref(acb_realref(value)), size);
+        if (!acb_is_real(v) || (slice->taken && !acb_is_real(taken)))
+            mag_add(arb_radref(acb_imagref(value)), arb_radref(acb_imagref(value)), size);
+        if (!mag_is_finite(size))
+            acb_indeterminate(value);
     }
-    acb_clear(x);
+    mag_clear(part);
+    mag_clear(size);
+    mag_clear(width);
+    acb_clear(taken);
     acb_clear(v);
-    arf_clear(width);
-    arf_clear(zero);
-    arb_clear(factor);
+    acb_clear(x);
 }
 
 static tw_status sum_attempt(quad_sum *s, acb_t value, double log2_size, slong goal, slong prec)

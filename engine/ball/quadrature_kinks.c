@@ -17,14 +17,15 @@ typedef struct search {
     quad_points *points;
     tw_engine *e;
     expr *x;
-    const arb_struct *from, *to;
-    bool from_infinite, to_infinite;
+    const quad_range *range;
     slong prec, work;
 } search;
 
 void quad_points_init(quad_points *p)
 {
     *p = (quad_points){.complete = true};
+    arb_init(p->near_end[0]);
+    arb_init(p->near_end[1]);
 }
 
 void quad_points_clear(quad_points *p)
@@ -32,6 +33,8 @@ void quad_points_clear(quad_points *p)
     for (size_t k = 0; k < p->count; k++)
         arb_clear(p->list[k].place);
     free(p->list);
+    arb_clear(p->near_end[0]);
+    arb_clear(p->near_end[1]);
 }
 
 /* ---- the list of points ---- */
@@ -46,28 +49,88 @@ static expr *rational_of(tw_engine *e, const arf_t x)
     return out;
 }
 
+/* Exactly the ends of the place's ball: the slice around the place then covers all that the pieces leave out. */
 static void enclose(tw_engine *e, quad_point *p)
 {
     arf_t low, high;
     arf_init(low);
     arf_init(high);
-    arb_get_interval_arf(low, high, p->place, 2 * arb_bits(p->place) + 64);
+    arb_get_interval_arf(low, high, p->place, ARF_PREC_EXACT);
     p->low = rational_of(e, low);
     p->high = rational_of(e, high);
     arf_clear(low);
     arf_clear(high);
 }
 
-static bool inside(const search *s, const arb_t place)
+static bool end_infinite(const search *s, int side)
 {
-    return (s->from_infinite || arb_gt(place, s->from)) && (s->to_infinite || arb_lt(place, s->to));
+    return side ? s->range->to_infinite : s->range->from_infinite;
 }
 
-/* exact NULL: known by its ball only. */
-static void add_point(search *s, expr *exact, const arb_t place)
+static const arb_struct *end_ball(const search *s, int side)
 {
-    if (!inside(s, place))
+    return side ? s->range->b : s->range->a;
+}
+
+static bool inside(const search *s, const arb_t place)
+{
+    return (s->range->from_infinite || arb_gt(place, s->range->a)) && (s->range->to_infinite || arb_lt(place, s->range->b));
+}
+
+static bool outside(const search *s, const arb_t place)
+{
+    return (!s->range->from_infinite && arb_lt(place, s->range->a)) || (!s->range->to_infinite && arb_gt(place, s->range->b));
+}
+
+static bool is_zero_exactly(tw_engine *e, expr *f)
+{
+    expr *g = f ? expr_expand(e, f) : NULL;
+    if (!g)
+        engine_forgive(e);
+    return g && expr_is_zero(g);
+}
+
+/* Is an end of the range a zero of f by exact arithmetic, and the only one in `alone` (NULL: anywhere), a box in which f has one at
+ * most? */
+static bool end_is_the_zero(search *s, expr *f, const arb_struct *alone)
+{
+    for (int side = 0; side < 2; side++) {
+        if (end_infinite(s, side) || (alone && !arb_contains(alone, end_ball(s, side))))
+            continue;
+        expr *value = expr_substitute(s->e, f, s->x, side ? s->range->to : s->range->from);
+        if (!value)
+            engine_forgive(s->e);
+        else if (is_zero_exactly(s->e, value))
+            return true;
+    }
+    return false;
+}
+
+/* A zero whose place overlaps an end of the range, so that nobody knows on which side it lies: what is between the two counts
+ * as near that end. */
+static void add_near_end(search *s, const arb_t place)
+{
+    for (int side = 0; side < 2; side++) {
+        arb_struct *known = s->points->near_end[side];
+        if (end_infinite(s, side) || !arb_overlaps(place, end_ball(s, side)))
+            continue;
+        if (!s->points->unsure[side])
+            arb_set(known, end_ball(s, side));
+        s->points->unsure[side] = true;
+        arb_union(known, known, place, s->prec + 64);
+    }
+}
+
+/* The zero of f in `place`, the only one in `alone` (NULL: anywhere). exact NULL: known by its ball only. */
+static void add_point(search *s, expr *f, expr *exact, const arb_t place, const arb_struct *alone)
+{
+    if (outside(s, place))
         return;
+    if (!inside(s, place)) {
+        if (!end_is_the_zero(s, f, alone))
+            add_near_end(s, place);
+        return;
+    }
     quad_points *p = s->points;
     for (size_t k = 0; k < p->count; k++) {
         if (exact && p->list[k].low == exact)
@@ -122,7 +185,7 @@ static int sign_at(tape *g, const arf_t x, slong prec)
 }
 
 /* g is monotone on [a, b] with one zero inside: the zero to about prec bits, by halving and Newton steps. */
-static void refine(search *s, tape *g, arf_t a, arf_t b)
+static void refine(search *s, expr *f, tape *g, arf_t a, arf_t b)
 {
     arb_t I, m;
     acb_struct jet[2];
@@ -154,7 +217,8 @@ static void refine(search *s, tape *g, arf_t a, arf_t b)
         }
         mag_clear(before);
     }
-    add_point(s, NULL, I);
+    arb_set_interval_arf(m, a, b, prec);
+    add_point(s, f, NULL, I, m);
     arb_clear(I);
     arb_clear(m);
     acb_clear(jet);
@@ -190,25 +254,6 @@ static int judge_box(search *s, tape *g, const arf_t a, const arf_t b)
     return verdict;
 }
 
-/* Is the zero of f near `where` at the end of the range itself? Yes for an exact end at which f is 0 by exact arithmetic; for an end
- * known by its ball only (pi, sqrt(2)) the zero counts as the end when the sign stays undecided at the working precision. */
-static bool zero_is_the_end(search *s, expr *f, const arb_t where)
-{
-    for (int side = 0; side < 2; side++) {
-        const arb_struct *end = side ? s->to : s->from;
-        if ((side ? s->to_infinite : s->from_infinite) || !arb_overlaps(where, end)) continue;
-        if (!arb_is_exact(end)) return true;
-        fmpq_t q;
-        fmpq_init(q);
-        arf_get_fmpq(q, arb_midref(end));
-        expr *value = expr_substitute(s->e, f, s->x, expr_fmpq(s->e, q));
-        fmpq_clear(q);
-        if (!value) engine_forgive(s->e);
-        if (value && expr_is_zero(expr_expand(s->e, value))) return true;
-    }
-    return false;
-}
-
 static tw_status isolate(search *s, expr *f, tape *g, const arf_t a, const arf_t b, bool strict, int depth)
 {
     int verdict = judge_box(s, g, a, b);
@@ -224,7 +269,7 @@ static tw_status isolate(search *s, expr *f, tape *g, const arf_t a, const arf_t
         arf_set(low, a);
         arf_set(high, b);
         if (left * right < 0)
-            refine(s, g, low, high);
+            refine(s, f, g, low, high);
         arf_clear(low);
         arf_clear(high);
         if (left * right < 0)
@@ -234,10 +279,9 @@ static tw_status isolate(search *s, expr *f, tape *g, const arf_t a, const arf_t
     if (depth >= DEPTH_LIMIT || s->work > WORK_LIMIT) {
         arb_t where;
         arb_init(where);
-        arb_set_interval_arf(where, a, b, 64);
-        bool at_end = !inside(s, where) && (verdict != 2 || zero_is_the_end(s, f, where));
+        arb_set_interval_arf(where, a, b, 128);
         tw_status status = TW_OK;
-        if (verdict != 2 || !at_end) {
+        if (verdict != 2 || !end_is_the_zero(s, f, where)) {
             s->points->complete = false;
             status = strict ? fail_near(s, f, where) : TW_OK;
         }
@@ -290,12 +334,12 @@ static tw_status zeros_by_balls(search *s, expr *g, bool strict)
     arf_t a, b;
     arf_init(a);
     arf_init(b);
-    bool known = (!s->from_infinite || reach(s, g, false, a)) && (!s->to_infinite || reach(s, g, true, b));
+    bool known = (!end_infinite(s, 0) || reach(s, g, false, a)) && (!end_infinite(s, 1) || reach(s, g, true, b));
     tw_status status = TW_OK;
-    if (!s->from_infinite)
-        arb_get_lbound_arf(a, s->from, 128);
-    if (!s->to_infinite)
-        arb_get_ubound_arf(b, s->to, 128);
+    if (!end_infinite(s, 0))
+        arb_get_lbound_arf(a, s->range->a, 128);
+    if (!end_infinite(s, 1))
+        arb_get_ubound_arf(b, s->range->b, 128);
     if (!known)
         s->points->complete = false;
     if (!known && strict && !s->e->error.kind) {
@@ -335,13 +379,14 @@ static bool rational_polynomial(fmpz_poly_t out, expr *const *coefficients, slon
     return ok;
 }
 
-static tw_status add_exact(search *s, expr *zero)
+/* zero is the only zero of g. */
+static tw_status add_exact(search *s, expr *g, expr *zero)
 {
     acb_t v;
     acb_init(v);
     tw_status status = zero ? ball_value(s->e, v, zero, s->prec + 64) : TW_ERROR;
     if (status == TW_OK && acb_is_real(v))
-        add_point(s, zero, acb_realref(v));
+        add_point(s, g, zero, acb_realref(v), NULL);
     acb_clear(v);
     return status;
 }
@@ -374,7 +419,7 @@ static tw_status zeros_of_rational(search *s, const fmpz_poly_t f, bool strict)
             fmpz_poly_get_coeff_fmpz(fmpq_denref(root), p, 1);
             fmpz_neg(fmpq_numref(root), fmpq_numref(root));
             fmpq_canonicalise(root);
-            status = add_exact(s, expr_fmpq(s->e, root));
+            status = add_exact(s, expr_sub(s->e, s->x, expr_fmpq(s->e, root)), expr_fmpq(s->e, root));
             fmpq_clear(root);
         } else if (fmpz_poly_degree(p) > 1) {
             status = zeros_by_balls(s, polynomial_expr(s->e, p, s->x), strict);
@@ -408,7 +453,7 @@ static tw_status zeros_of(search *s, expr *g, bool strict)
     fmpz_poly_t f;
     fmpz_poly_init(f);
     if (degree == 1)
-        status = add_exact(s, expr_neg(s->e, expr_div(s->e, coefficients[0], coefficients[1])));
+        status = add_exact(s, g, expr_neg(s->e, expr_div(s->e, coefficients[0], coefficients[1])));
     else if (rational_polynomial(f, coefficients, degree))
         status = zeros_of_rational(s, f, strict);
     else
@@ -461,13 +506,9 @@ static tw_status walk(search *s, expr *f)
     return status;
 }
 
-tw_status quad_points_find(quad_points *p, tw_engine *e, expr *f, expr *x, const arb_t from, bool from_infinite,
-        const arb_t to,
-                           bool to_infinite, slong prec)
+tw_status quad_points_find(quad_points *p, tw_engine *e, expr *f, expr *x, const quad_range *range, slong prec)
 {
-    search s = {.points = p, .e = e, .x = x, .from = from, .to = to, .from_infinite = from_infinite,
-            .to_infinite = to_infinite,
-                .prec = prec};
+    search s = {.points = p, .e = e, .x = x, .range = range, .prec = prec};
     tw_status status = walk(&s, f);
     if (p->count)
         qsort(p->list, p->count, sizeof *p->list, by_place);

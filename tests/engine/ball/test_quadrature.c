@@ -319,6 +319,11 @@ static const struct {
     {"integral from 0 to inf of exp(-abs(x-s)) dx", "3", "2 - exp(-3)"},
     {"integral from 0 to pi of abs(cos(x)-1/3) dx", "1", "2*sin(acos(1/3)) - 2*acos(1/3)/3 + pi/3"},
     {"integral from -1 to 1 of abs(x)^(-1/2) dx", "1", "4"},
+    /* kinks at an end or nearer to it than its ball shows */
+    {"integral from 0 to pi of abs(sin(x)) dx", "1", "2"},
+    {"integral from 0 to pi of sign(sin(x))*exp(10^80*(x-pi)) dx", "1", "10^(-80)"},
+    {"integral from 0 to sqrt(2) of abs(x^4-4) dx", "1", "16*sqrt(2)/5"},
+    {"integral from 0 to 1 of abs(x-(1-10^(-100)))*exp(10^102*(x-1)) dx", "1", "(99 + 2*exp(-100))*10^(-204)"},
     {"integral from 0 to 3 of abs(x-1)^(-1/3)*sign(x-1) dx", "1", "3/2*(2^(2/3) - 1)"},
     {"integral from -inf to inf of exp(-s*abs(x)) dx", "7", "2/7"},
     {"integral from 0 to 2 of log(abs(x-1)) dx", "1", "-2"},
