@@ -13,6 +13,7 @@
 #include <time.h>
 
 #include "engine/ball/decide.h"
+#include "engine/ball/quadrature_contour.h"
 #include "engine/ball/quadrature_kinks.h"
 #include "engine/ball/quadrature_piece.h"
 
@@ -34,6 +35,7 @@ typedef struct quad_sum {
     quad_slice *slices;
     size_t slice_count;
     slong evaluations, bits;
+    bool imaginary; /* the value is i times a real number */
 } quad_sum;
 
 static void sum_clear(quad_sum *s)
@@ -290,16 +292,10 @@ static tw_status range_order(tw_engine *e, expr *from, expr *to, const arb_t a, 
     return TW_OK;
 }
 
-static tw_status sum_build(quad_sum *s, expr *integral, slong prec)
+/* sign * int of f from `from` to `to` on the real line. */
+static tw_status add_line(quad_sum *s, slong sign, expr *f, expr *x, expr *from, expr *to, slong prec)
 {
     tw_engine *e = s->e;
-    expr *from = integral->args[0], *to = integral->args[1], *x = expr_fresh(e, expr_binder_name(integral));
-    expr *f = expr_open(e, integral, x);
-    if (!f)
-        return TW_ERROR;
-    if (holds_integral(f) || holds_integral(from) || holds_integral(to))
-        return engine_fail(e, ERROR_UNSUITABLE,
-                "quadrature takes one integral at a time: the integrand or an end holds another");
     arb_t a, b;
     arb_init(a);
     arb_init(b);
@@ -318,12 +314,60 @@ static tw_status sum_build(quad_sum *s, expr *integral, slong prec)
         }
     }
     if (status == TW_OK && order > 0)
-        status = add_with_kinks(s, 1, f, x, from, to, prec);
+        status = add_with_kinks(s, sign, f, x, from, to, prec);
     else if (status == TW_OK && order < 0)
-        status = add_with_kinks(s, -1, f, x, to, from, prec);
+        status = add_with_kinks(s, -sign, f, x, to, from, prec);
     arb_clear(a);
     arb_clear(b);
     return status;
+}
+
+/* A leg off the real line, over u in (0, 1) or (0, inf). */
+static tw_status add_leg(quad_sum *s, const quad_leg *leg)
+{
+    tw_engine *e = s->e;
+    const char *near = point_words(s, leg->near), *far = point_words(s, leg->far);
+    if (expr_is_inf(leg->to))
+        return add_piece(s, leg->sign, leg->g, leg->u, NULL, near, far);
+    expr *y = expr_fresh(e, "y"), *one = expr_int(e, 1), *half = expr_frac(e, 1, 2);
+    if (end_is_regular(e, leg->g, leg->u, one, true, 0))
+        return add_piece(s, leg->sign, leg->g, leg->u, one, near, far);
+    expr *back = moved(e, leg->g, leg->u, one, y, true);
+    if (end_is_regular(e, leg->g, leg->u, expr_int(e, 0), false, 0))
+        return add_piece(s, leg->sign, back, y, one, far, near);
+    tw_status status = add_piece(s, leg->sign, leg->g, leg->u, half, near, "the middle of a leg");
+    return status == TW_OK ? add_piece(s, leg->sign, back, y, half, far, "the middle of a leg") : status;
+}
+
+static tw_status add_path(quad_sum *s, expr *contour, slong prec)
+{
+    quad_path path;
+    quad_path_init(&path);
+    tw_status status = quad_path_read(&path, s->e, contour);
+    for (size_t k = 0; k < path.count && status == TW_OK; k++) {
+        const quad_leg *leg = &path.list[k];
+        status = leg->on_line ? add_line(s, leg->sign, leg->g, leg->u, leg->from, leg->to, prec) : add_leg(s, leg);
+    }
+    s->imaginary = path.imaginary;
+    quad_path_clear(&path);
+    return status;
+}
+
+static tw_status sum_build(quad_sum *s, expr *integral, slong prec)
+{
+    tw_engine *e = s->e;
+    expr *x = expr_fresh(e, expr_binder_name(integral)), *f = expr_open(e, integral, x);
+    if (!f)
+        return TW_ERROR;
+    bool nested = holds_integral(f);
+    for (uint32_t k = 0; k + 1 < integral->count; k++)
+        nested = nested || holds_integral(integral->args[k]);
+    if (nested)
+        return engine_fail(e, ERROR_UNSUITABLE,
+                "quadrature takes one integral at a time: the integrand or an end holds another");
+    if (integral->kind == EXPR_CONTOUR)
+        return add_path(s, integral, prec);
+    return add_line(s, 1, f, x, integral->args[0], integral->args[1], prec);
 }
 
 /* ---- attempts ---- */
@@ -509,7 +553,7 @@ static expr *take_integrals(tw_engine *e, integrals *list, expr *f)
 {
     if (!f || !holds_integral(f))
         return f;
-    if (f->kind == EXPR_INTEGRAL) {
+    if (f->kind == EXPR_INTEGRAL || f->kind == EXPR_CONTOUR) {
         for (size_t k = 0; k < list->count; k++)
             if (list->nodes[k] == f)
                 return list->symbols[k];
@@ -535,9 +579,6 @@ static expr *take_integrals(tw_engine *e, integrals *list, expr *f)
     case EXPR_CALL:
         out = expr_call(e, f->is.function, args, f->count);
         break;
-    case EXPR_CONTOUR:
-        engine_fail(e, ERROR_UNAVAILABLE, "quadrature along a path in the complex plane is not available");
-        break;
     default:
         engine_fail(e, ERROR_UNSUITABLE, "quadrature takes integrals in sums, products, powers and functions only");
     }
@@ -556,6 +597,8 @@ static tw_status values_of(tw_engine *e, const integrals *list, acb_ptr values, 
         status = sum_build(&s, list->nodes[k], goal + 60);
         if (status == TW_OK)
             status = integral_value(&s, values + k, goal, &bits);
+        if (s.imaginary)
+            arb_zero(acb_realref(values + k));
         if (bits < *reached)
             *reached = bits;
         for (size_t j = 0; j < s.count; j++)

@@ -136,7 +136,7 @@ static tw_status tail_fails(quad_piece *p, const tail *a, bool cutting)
         return engine_fail(p->e, ERROR_DIVERGENT, "the integral diverges at %s", where);
     if (a->high && p->oscillates)
         return engine_fail(p->e, ERROR_UNSUITABLE, "the integrand oscillates towards %s without decaying enough for "
-                           "quadrature along the real line", where);
+                           "quadrature along a straight line", where);
     if (cutting)
         return engine_fail(p->e, ERROR_UNDECIDED,
                 "the %s %s is integrable, but dies away too slowly for a bound of its end",
