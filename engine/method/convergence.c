@@ -570,14 +570,15 @@ static tw_status infinity_converges(tw_engine *e, reading *r, const branch *b, e
     return *least ? TW_OK : TW_ERROR;
 }
 
-tw_status branch_converges(tw_engine *e, reading *r, const branch *b, expr *far_place, expr **least, bool *proved)
+tw_status branch_converges(tw_engine *e, reading *r, const critical_point *c, size_t k, expr **least, bool *proved)
 {
+    const branch *b = &c->local.branches[k];
     path p = {e, r, b, false};
     bool sure = true;
-    if (end_converges(e, r, b->q, b->x, r->place, &sure) != TW_OK || path_is_smooth(&p, b->q) != TW_OK) return TW_ERROR;
+    if (end_converges(e, r, b->q, b->x, c->place, &sure) != TW_OK || path_is_smooth(&p, b->q) != TW_OK) return TW_ERROR;
     if (!sure)
         conditions_add(&r->conditions, "the integrand can be integrated up to the critical point", NULL,
                        CONDITION_OPEN);
-    if (!expr_is_inf(b->end)) return far_end_converges(e, r, b, far_place);
+    if (!expr_is_inf(b->end)) return c->far_places[k] ? far_end_converges(e, r, b, c->far_places[k]) : TW_OK;
     return infinity_converges(e, r, b, least, proved);
 }

@@ -31,9 +31,9 @@ answer positive_on_branch(tw_engine *e, expr *f, expr *x, expr *end);
 enum { SIGN_SEEN_POSITIVE = 1, SIGN_SEEN_NEGATIVE = 2, SIGN_SEEN_NONE = 4 };
 int signs_seen(tw_engine *e, expr *f, expr *x, expr *end);
 
-/* Adds the conditions under which the integral over branch b converges, and q is continuous inside, to r->conditions
+/* Adds the conditions under which the integral over branch k of the point converges, and q is continuous inside, to r->conditions
  * with their labels. *least: raised to the value of the scale beyond which it converges (0 at first). DIVERGENT when it
  * never does. */
-tw_status branch_converges(tw_engine *e, reading *r, const branch *b, expr *far_place, expr **least, bool *proved);
+tw_status branch_converges(tw_engine *e, reading *r, const critical_point *c, size_t k, expr **least, bool *proved);
 
 #endif

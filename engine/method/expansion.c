@@ -87,12 +87,14 @@ void expansion_init(expansion *a)
     memset(a, 0, sizeof *a);
     conditions_init(&a->conditions);
     derivation_init(&a->derivation);
+    local_form_init(&a->rest);
 }
 
 void expansion_clear(expansion *a)
 {
     for (size_t k = 0; k < a->contribution_count; k++) contribution_clear(&a->contributions[k]);
     free(a->contributions);
+    local_form_clear(&a->rest);
     conditions_clear(&a->conditions);
     derivation_clear(&a->derivation);
     free(a->why);

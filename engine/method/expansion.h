@@ -69,6 +69,8 @@ typedef struct expansion {
     slong terms_asked; /* N nonzero terms of each contribution */
     size_t contribution_count;
     contribution *contributions;
+    local_form rest;           /* what no dominant contribution's local form covers; its branches need not be monotone */
+    expr *rest_floor;          /* p >= rest_floor > 0 in the rest, p measured from the dominant depth; NULL: no rest */
     bool exact;              /* terminating and nothing left out: label `exact` */
     bool alternating_proved; /* reserved for numeric: set by bound_prepare */
     condition_list conditions;

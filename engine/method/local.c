@@ -27,12 +27,12 @@ tw_status local_expand(tw_engine *e, expansion *out, const reading *r, slong ter
 {
     contribution *c = expansion_add(out);
     c->variable = r->original_variable;
-    c->place = r->place;
-    c->kind = r->kind;
+    c->place = r->points->place;
+    c->kind = r->points->kind;
     c->method = name;
     c->dominant = true;
-    c->prefactor = factor_rest(e, r->local.factor, r->large);
-    local_form_copy(&c->local, &r->local);
+    c->prefactor = factor_rest(e, r->points->local.factor, r->large);
+    local_form_copy(&c->local, &r->points->local);
     return contribution_fill(e, c, r->large, r->small, terms, &out->conditions);
 }
 
@@ -43,9 +43,9 @@ static tw_status far_form(tw_engine *e, local_form *out, const reading *r, const
     expr *height = expr_substitute(e, b->p, b->x, b->end);
     expr *p = expr_expand(e, expr_sub(e, height, expr_substitute(e, b->p, b->x, x)));
     expr *q = normal_under_facts(e, expr_substitute(e, b->q, b->x, x), &y, 1);
-    expr *small = expr_call1(e, FUNCTION_EXP, expr_neg(e, expr_mul(e, r->local.scale, height)));
-    out->scale = r->local.scale;
-    out->factor = normal_under_facts(e, expr_mul(e, r->local.factor, small), &r->large, 1);
+    expr *small = expr_call1(e, FUNCTION_EXP, expr_neg(e, expr_mul(e, r->points->local.scale, height)));
+    out->scale = r->points->local.scale;
+    out->factor = normal_under_facts(e, expr_mul(e, r->points->local.factor, small), &r->large, 1);
     if (!p || !q || !out->factor) return TW_ERROR;
     local_form_add(out, y, b->end, p, q);
     return TW_OK;
@@ -55,11 +55,11 @@ static tw_status add_far_end(tw_engine *e, expansion *out, const reading *r, siz
 {
     contribution *c = expansion_add(out);
     c->variable = r->original_variable;
-    c->place = r->far_places[k];
+    c->place = r->points->far_places[k];
     c->kind = POINT_FAR_END;
     c->method = name;
     c->dominant = false;
-    tw_status status = far_form(e, &c->formal, r, &r->local.branches[k]);
+    tw_status status = far_form(e, &c->formal, r, &r->points->local.branches[k]);
     if (status == TW_OK) {
         c->prefactor = factor_rest(e, c->formal.factor, r->large);
         status = contribution_fill(e, c, r->large, r->small, terms, NULL);
@@ -74,9 +74,9 @@ tw_status local_expand_far_ends(tw_engine *e, expansion *out, const reading *r, 
                                 bool *all)
 {
     *all = true;
-    for (size_t k = 0; k < r->local.count; k++) {
-        if (!r->far_places[k]) continue;
-        char *place = expr_text(e, r->far_places[k]);
+    for (size_t k = 0; k < r->points->local.count; k++) {
+        if (!r->points->far_places[k]) continue;
+        char *place = expr_text(e, r->points->far_places[k]);
         if (!place) return TW_ERROR;
         tw_status status = add_far_end(e, out, r, k, terms, name);
         bool left_out = status != TW_OK && (e->error.kind == ERROR_UNSUITABLE || e->error.kind == ERROR_VALUE);

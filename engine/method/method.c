@@ -93,6 +93,9 @@ static void take_reading(expansion *out, reading *r)
     conditions_append(&out->conditions, &r->conditions);
     out->derivation = r->derivation;
     derivation_init(&r->derivation);
+    out->rest = r->rest;
+    local_form_init(&r->rest);
+    out->rest_floor = r->rest_floor;
 }
 
 static tw_status expand_one(tw_engine *e, expansion *out, expr *integral, slong terms, const char *by)

@@ -5,25 +5,41 @@
 
 #include "engine/method/expansion.h"
 
+/* One point of the path that counts. Its part of the integral is, exactly (the conditions granted),
+ *
+ *   local.factor * sum over local.branches of int_0^end q(x) exp(-local.scale * p(x)) dx
+ *
+ * with p(0) = 0 and p increasing on (0, end); two branches when the path runs on both sides of the point. Where p is a
+ * constant times a pure power, the constant is in the scale and p is x^mu. */
+typedef struct critical_point {
+    point_kind kind;     /* POINT_END, POINT_INTERIOR, ... */
+    expr *place;         /* the original variable there; may hold the large parameter where the variable was stretched */
+    expr *depth;         /* the phase there: local.factor holds exp(-scale * depth); NULL: 0 */
+    bool dominant;       /* among the deepest; the others are exponentially smaller */
+    local_form local;
+    expr *far_places[2]; /* the original variable at each branch's end where that is an end of the path; else NULL */
+    bool pure;           /* p is x^mu on every branch */
+    fmpq_t mu;           /* then */
+    expr *scale_constant; /* scale = scale_constant * large^power, > 0 */
+} critical_point;
+
 /* What reading an integral found: the form each method starts from. Exactly (the conditions granted),
  *
- *   integral = local.factor * sum over local.branches of int_0^end q(x) exp(-local.scale * p(x)) dx
+ *   integral = sum over the dominant points of their parts + rest
  *
- * with p(0) = 0 the only least value on the path; two branches when the path runs on both sides of it. Where p is a
- * constant times a pure power, the constant is in the scale and p is x^mu. */
+ * where rest (its branches may lie anywhere on the path and need not be monotone) has p >= rest_floor > 0 throughout,
+ * p measured from the depth of the dominant points: exponentially small beside them. The lesser points lie in the
+ * rest. */
 typedef struct reading {
     expr *integral; /* as typed */
     expr *large;    /* symbol; h when small */
     bool small;
     expr *original_variable; /* for the eye: "x" */
-    expr *place;             /* the original variable where p is least */
-    point_kind kind;         /* POINT_END, POINT_INTERIOR */
-    local_form local;
-    expr *far_places[2];       /* the original variable at each branch's end; NULL where the branch is infinite */
-    fmpq_t power;              /* scale = a constant * large^power */
-    expr *scale_constant;      /* that constant, > 0 */
-    bool pure;                 /* p is x^mu on every branch */
-    fmpq_t mu;                 /* then */
+    size_t point_count;      /* at least 1; the dominant ones first, in the order of the path */
+    critical_point *points;
+    local_form rest;           /* no branches: nothing is left out */
+    expr *rest_floor;          /* NULL when there is no rest */
+    fmpq_t power;              /* every scale = a constant * large^power */
     condition_list conditions; /* convergence, no other critical point, ... with their labels */
     derivation derivation;     /* steps so far */
     char *summary;             /* for `let`: "depends on s; one critical point, the end x = 0; converges for s > 0" */
@@ -31,6 +47,8 @@ typedef struct reading {
 
 void reading_init(reading *r);
 void reading_clear(reading *r);
+/* A new empty point at the end of the list; valid until the next call. */
+critical_point *reading_add(reading *r);
 
 /* Reads an integral (EXPR_INTEGRAL, or a product of one with factors free of its variable; sums of integrals are
  * handled by expand). Errors: UNSUITABLE with reason and advice, DIVERGENT. */

@@ -16,7 +16,7 @@ enum { LENGTH_LIMIT = 256 }; /* terms of a finite sum that is recognised */
  * there. */
 static bool split_shift(tw_engine *e, const reading *r, const branch *b, expr **shift, expr **core)
 {
-    expr *power = expr_pow(e, b->x, expr_fmpq(e, r->mu));
+    expr *power = expr_pow(e, b->x, expr_fmpq(e, r->points->mu));
     expr *const *factors;
     size_t count = expr_factors(&b->q, &factors);
     *shift = expr_int(e, 0);
@@ -74,15 +74,15 @@ static bool has_log(const series *s)
 /* All branches have one shift and cores that end. A shift needs infinite ranges and no log. */
 static bool closes(tw_engine *e, const reading *r, expr **shift)
 {
-    if (!r->pure || r->local.count == 0) return false;
-    for (size_t k = 0; k < r->local.count; k++) {
-        const branch *b = &r->local.branches[k];
+    if (r->point_count != 1 || r->rest.count > 0 || !r->points->pure || r->points->local.count == 0) return false;
+    for (size_t k = 0; k < r->points->local.count; k++) {
+        const branch *b = &r->points->local.branches[k];
         expr *one, *core;
         if (!split_shift(e, r, b, &one, &core)) return false;
         if (k > 0 && one != *shift) return false;
         *shift = one;
         bool endless = expr_is_inf(b->end);
-        if (!endless && (!expr_is_zero(one) || !fmpq_is_one(r->mu))) return false;
+        if (!endless && (!expr_is_zero(one) || !fmpq_is_one(r->points->mu))) return false;
         series s;
         series_init(&s);
         bool good = ends(e, &s, core, b->x) && (expr_is_zero(one) || !has_log(&s));
@@ -136,7 +136,7 @@ static expr *moved_coefficient(const moved *m, slong j)
         sum = expr_add(e, sum, expr_mul(e, part, expr_pow(e, m->shift, expr_int(e, high - j))));
     }
     fmpz_clear(binomial);
-    return expr_mul(e, sum, expr_pow(e, m->r->scale_constant, expr_int(e, j)));
+    return expr_mul(e, sum, expr_pow(e, m->r->points->scale_constant, expr_int(e, j)));
 }
 
 static tw_status lane_of_moved(moved *m, contribution *c, const kernel *k)
@@ -164,13 +164,13 @@ static tw_status add_moved(moved *m, expansion *out, const kernel *k, expr *rest
     const reading *r = m->r;
     contribution *c = expansion_add(out);
     c->variable = r->original_variable;
-    c->place = r->place;
-    c->kind = r->kind;
+    c->place = r->points->place;
+    c->kind = r->points->kind;
     c->method = "moments";
     c->dominant = true;
     c->terminates = true;
-    local_form_copy(&c->local, &r->local);
-    expr *scale = expr_add(e, r->local.scale, m->shift);
+    local_form_copy(&c->local, &r->points->local);
+    expr *scale = expr_add(e, r->points->local.scale, m->shift);
     expr *z = expr_add(e, m->from->first_exponent, expr_int(e, -m->last * m->stride));
     expr *parts[] = {rest, m->from->constant, expr_pow(e, scale, z)};
     if (!scale || !z || !parts[2]) return TW_ERROR;
@@ -183,15 +183,15 @@ static tw_status lanes_in_scale(tw_engine *e, const reading *r, contribution *pl
 {
     kernel k;
     kernel_init(&k);
-    fmpq_set(k.mu, r->mu);
+    fmpq_set(k.mu, r->points->mu);
     fmpq_one(k.power);
     fmpq_one(k.factor_number);
     k.constant = expr_int(e, 1);
     drafts d;
     drafts_init(&d);
     tw_status status = TW_OK;
-    for (size_t n = 0; n < r->local.count && status == TW_OK; n++) {
-        const branch *b = &r->local.branches[n];
+    for (size_t n = 0; n < r->points->local.count && status == TW_OK; n++) {
+        const branch *b = &r->points->local.branches[n];
         expr *shift, *core;
         series s;
         series_init(&s);
@@ -212,7 +212,7 @@ static tw_status expand_moved(tw_engine *e, expansion *out, const reading *r, ex
     kernel k;
     kernel_init(&k);
     expr *rest;
-    factor_split(e, r->local.factor, r->large, k.factor_number, k.factor_power, &rest);
+    factor_split(e, r->points->local.factor, r->large, k.factor_number, k.factor_power, &rest);
     tw_status status = lanes_in_scale(e, r, &plain);
     for (size_t n = 0; n < plain.lane_count && status == TW_OK; n++) {
         moved m = {e, r, shift, &plain.lanes[n], plain.lanes[n].c.count - 1, 1};
@@ -229,8 +229,8 @@ static tw_status expand_moved(tw_engine *e, expansion *out, const reading *r, ex
 
 static void record_family(tw_engine *e, expansion *out, const reading *r, expr *shift)
 {
-    char *scale = expr_text(e, expr_add(e, r->local.scale, shift));
-    char *mu = expr_text(e, expr_fmpq(e, r->mu));
+    char *scale = expr_text(e, expr_add(e, r->points->local.scale, shift));
+    char *mu = expr_text(e, expr_fmpq(e, r->points->mu));
     step *s = derivation_add(&out->derivation, "differentiate in a parameter", "DLMF 5.9.1");
     text t;
     text_init(&t);

@@ -38,8 +38,10 @@ static bool has_slope(tw_engine *e, const branch *b)
 
 static answer parts_suits(tw_engine *e, const reading *r, char **why)
 {
-    const branch *b = &r->local.branches[0];
-    if (r->local.count != 1 || !has_slope(e, b)) {
+    const branch *b = &r->points->local.branches[0];
+    if (r->point_count != 1 || r->rest.count > 0)
+        return suits_answer(why, ANSWER_NO, "more than one point of the path counts");
+    if (r->points->local.count != 1 || !has_slope(e, b)) {
         engine_forgive(e);
         return suits_answer(why, ANSWER_NO,
                             "the slope of the exponent is not a finite number other than 0 at the critical point");
@@ -82,7 +84,7 @@ static expr *remainder_integral(tw_engine *e, const local_form *l, expr *f, slon
 static tw_status record_parts(tw_engine *e, expansion *out, const reading *r, slong terms)
 {
     enum { STEPS_SHOWN = 3 };
-    const branch *b = &r->local.branches[0];
+    const branch *b = &r->points->local.branches[0];
     expr *f = b->q;
     slong n = 0;
     while (n < terms && n < STEPS_SHOWN) {
@@ -99,11 +101,11 @@ static tw_status record_parts(tw_engine *e, expansion *out, const reading *r, sl
                   words ? words : "");
         free(words);
         s->form = text_take(&t);
-        s->remainder = remainder_integral(e, &r->local, f, n);
+        s->remainder = remainder_integral(e, &r->points->local, f, n);
     }
     if (n >= terms) return TW_OK;
     step *s = derivation_add(&out->derivation, "repeat integration by parts", n == 0 ? "DLMF 2.3.2" : NULL);
-    char *scale = expr_text(e, r->local.scale), *p = expr_text(e, b->p), *q = expr_text(e, b->q);
+    char *scale = expr_text(e, r->points->local.scale), *p = expr_text(e, b->p), *q = expr_text(e, b->q);
     text t;
     text_init(&t);
     text_addf(&t,
@@ -131,7 +133,7 @@ static tw_status require_slope(tw_engine *e, expansion *out, const branch *b)
 
 static tw_status parts_expand(tw_engine *e, expansion *out, const reading *r, slong terms)
 {
-    if (require_slope(e, out, &r->local.branches[0]) != TW_OK) return TW_ERROR;
+    if (require_slope(e, out, &r->points->local.branches[0]) != TW_OK) return TW_ERROR;
     if (local_expand(e, out, r, terms, "parts") != TW_OK || record_parts(e, out, r, terms) != TW_OK) return TW_ERROR;
     local_record_sum(e, out, 0, "collect the end's terms", NULL);
     bool all;

@@ -15,8 +15,7 @@ void reading_init(reading *r)
 {
     memset(r, 0, sizeof *r);
     fmpq_init(r->power);
-    fmpq_init(r->mu);
-    local_form_init(&r->local);
+    local_form_init(&r->rest);
     conditions_init(&r->conditions);
     derivation_init(&r->derivation);
 }
@@ -24,12 +23,27 @@ void reading_init(reading *r)
 void reading_clear(reading *r)
 {
     fmpq_clear(r->power);
-    fmpq_clear(r->mu);
-    local_form_clear(&r->local);
+    for (size_t k = 0; k < r->point_count; k++) {
+        fmpq_clear(r->points[k].mu);
+        local_form_clear(&r->points[k].local);
+    }
+    free(r->points);
+    local_form_clear(&r->rest);
     conditions_clear(&r->conditions);
     derivation_clear(&r->derivation);
     free(r->summary);
     memset(r, 0, sizeof *r);
+}
+
+critical_point *reading_add(reading *r)
+{
+    r->points = base_resize(r->points, (r->point_count + 1) * sizeof *r->points);
+    critical_point *c = &r->points[r->point_count++];
+    memset(c, 0, sizeof *c);
+    c->dominant = true;
+    fmpq_init(c->mu);
+    local_form_init(&c->local);
+    return c;
 }
 
 /* What is known half way. */
@@ -385,10 +399,9 @@ static tw_status refuse_kinks(tw_engine *e, expr *q, expr *y)
 }
 
 /* The branch that starts at the least point and runs up (sign 1) or down (-1) to `far`. */
-static tw_status add_branch(frame *f, int sign, expr *far)
+static tw_status add_branch(frame *f, critical_point *c, int sign, expr *far)
 {
     tw_engine *e = f->e;
-    reading *r = f->r;
     expr *y = expr_fresh(e, expr_binder_name(f->binder));
     bool endless = expr_is_inf(far) || expr_is_minus_inf(far);
     expr *end =
@@ -406,8 +419,8 @@ static tw_status add_branch(frame *f, int sign, expr *far)
         f->p.level = level;
     }
     if (!p || !q || refuse_kinks(e, q, y) != TW_OK) return TW_ERROR;
-    r->far_places[r->local.count] = endless ? NULL : original_place(f, far);
-    local_form_add(&r->local, y, end, p, q);
+    c->far_places[c->local.count] = endless ? NULL : original_place(f, far);
+    local_form_add(&c->local, y, end, p, q);
     return TW_OK;
 }
 
@@ -416,23 +429,25 @@ static tw_status make_branches(frame *f)
     tw_engine *e = f->e;
     reading *r = f->r;
     const place *p = &f->p;
-    r->kind = p->kind == PLACE_INSIDE ? POINT_INTERIOR : POINT_END;
-    r->pure = p->pure;
-    fmpq_set(r->mu, p->mu);
-    r->place = original_place(f, p->center);
-    if (p->kind != PLACE_TO && add_branch(f, 1, f->to) != TW_OK) return TW_ERROR;
-    if (p->kind != PLACE_FROM && add_branch(f, -1, f->from) != TW_OK) return TW_ERROR;
+    critical_point *c = reading_add(r);
+    c->kind = p->kind == PLACE_INSIDE ? POINT_INTERIOR : POINT_END;
+    c->pure = p->pure;
+    fmpq_set(c->mu, p->mu);
+    c->place = original_place(f, p->center);
+    if (p->kind != PLACE_TO && add_branch(f, c, 1, f->to) != TW_OK) return TW_ERROR;
+    if (p->kind != PLACE_FROM && add_branch(f, c, -1, f->from) != TW_OK) return TW_ERROR;
+    c->depth = p->level;
     expr *large = expr_pow(e, r->large, expr_fmpq(e, r->power));
-    r->scale_constant = p->pure ? p->c : expr_int(e, 1);
-    r->local.scale = expr_mul(e, r->scale_constant, large);
+    c->scale_constant = p->pure ? p->c : expr_int(e, 1);
+    c->local.scale = expr_mul(e, c->scale_constant, large);
     expr *height = expr_call1(e, FUNCTION_EXP, expr_neg(e, expr_mul(e, large, p->level)));
-    r->local.factor = normal_under_facts(e, expr_mul(e, f->outside, height), &r->large, 1);
-    if (!r->place || !r->local.scale || !r->local.factor) return TW_ERROR;
-    char *words = expr_text(e, r->place);
+    c->local.factor = normal_under_facts(e, expr_mul(e, f->outside, height), &r->large, 1);
+    if (!c->place || !c->local.scale || !c->local.factor) return TW_ERROR;
+    char *words = expr_text(e, c->place);
     const char *rule = p->kind == PLACE_INSIDE   ? "split at the critical point"
                        : expr_is_zero(p->center) ? "find the critical point"
                                                  : "shift to the critical point";
-    record(f, rule, NULL, local_form_integral(e, &r->local), "the exponent is greatest at %s = %s only",
+    record(f, rule, NULL, local_form_integral(e, &c->local), "the exponent is greatest at %s = %s only",
            r->original_variable->is.name, words ? words : "");
     free(words);
     return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
@@ -449,7 +464,7 @@ static expr *parameter_bound(frame *f, expr *least)
     fmpq_t inverse;
     fmpq_init(inverse);
     fmpq_inv(inverse, f->r->power);
-    expr *bound = expr_pow(e, expr_div(e, least, f->r->scale_constant), expr_fmpq(e, inverse));
+    expr *bound = expr_pow(e, expr_div(e, least, f->r->points->scale_constant), expr_fmpq(e, inverse));
     fmpq_clear(inverse);
     return bound;
 }
@@ -460,8 +475,11 @@ static tw_status check_convergence(frame *f, text *summary)
     reading *r = f->r;
     expr *least = NULL;
     bool proved = true;
-    for (size_t k = 0; k < r->local.count; k++)
-        if (branch_converges(e, r, &r->local.branches[k], r->far_places[k], &least, &proved) != TW_OK) return TW_ERROR;
+    for (size_t n = 0; n < r->point_count; n++) {
+        const critical_point *c = &r->points[n];
+        for (size_t k = 0; k < c->local.count; k++)
+            if (branch_converges(e, r, c, k, &least, &proved) != TW_OK) return TW_ERROR;
+    }
     const char *s = r->large->is.name, *sign = r->small ? "<" : ">";
     expr *bound = least ? parameter_bound(f, least) : NULL;
     if (e->error.kind != ERROR_NONE) return TW_ERROR;
@@ -497,9 +515,9 @@ static void begin_summary(frame *f, text *t)
     for (size_t k = 0; k < count; k++)
         if (symbols[k] != f->r->large) text_addf(t, ", %s", symbols[k]->is.name);
     free(symbols);
-    char *words = expr_text(f->e, f->r->place);
-    text_addf(t, "; one critical point, %s%s = %s%s", f->r->kind == POINT_END ? "the end " : "",
-              f->r->original_variable->is.name, words ? words : "", f->r->kind == POINT_END ? "" : " inside the path");
+    char *words = expr_text(f->e, f->r->points->place);
+    text_addf(t, "; one critical point, %s%s = %s%s", f->r->points->kind == POINT_END ? "the end " : "",
+              f->r->original_variable->is.name, words ? words : "", f->r->points->kind == POINT_END ? "" : " inside the path");
     free(words);
 }
 

@@ -8,9 +8,11 @@
 static answer watson_suits(tw_engine *e, const reading *r, char **why)
 {
     const char *x = r->original_variable->is.name;
-    if (!r->pure)
+    if (r->point_count != 1 || r->rest.count > 0)
+        return suits_answer(why, ANSWER_NO, "more than one point of the path counts");
+    if (!r->points->pure)
         return suits_answer(why, ANSWER_NO, "the exponent is no pure power of the distance from the critical point");
-    char *place = expr_text(e, r->place);
+    char *place = expr_text(e, r->points->place);
     answer a = suits_answer(why, ANSWER_YES, "the kernel is exp(-scale*y^mu) with y the distance from %s = %s", x,
                             place ? place : "");
     free(place);
@@ -22,8 +24,8 @@ static answer watson_suits(tw_engine *e, const reading *r, char **why)
 static expr *exact_remainder(tw_engine *e, const reading *r, slong terms)
 {
     enum { TERMS_SHOWN = 4 };
-    if (r->local.count != 1 || terms > TERMS_SHOWN) return NULL;
-    const branch *b = &r->local.branches[0];
+    if (r->points->local.count != 1 || terms > TERMS_SHOWN) return NULL;
+    const branch *b = &r->points->local.branches[0];
     series s;
     series_init(&s);
     expr *rest = NULL;
@@ -39,8 +41,8 @@ static expr *exact_remainder(tw_engine *e, const reading *r, slong terms)
     if (!rest) return NULL;
     local_form l;
     local_form_init(&l);
-    l.scale = r->local.scale;
-    l.factor = r->local.factor;
+    l.scale = r->points->local.scale;
+    l.factor = r->points->local.factor;
     local_form_add(&l, b->x, b->end, b->p, rest);
     expr *whole = local_form_integral(e, &l);
     local_form_clear(&l);

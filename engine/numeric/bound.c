@@ -1,6 +1,9 @@
 /* The remainder of an expansion: which proof applies, what it gives, under which label. One idea: the strongest proof that holds:
- * the enclosing theorem, then panels, then an estimate that says why it is one. A dominant contribution's local form is its whole
- * integral, so the bound covers other ends and tails.
+ * the enclosing theorem, then panels, then an estimate that says why it is one. The dominant contributions' local forms and the
+ * expansion's rest are the whole integral, so the bound covers other ends, lesser points and tails.
+ *
+ * Branches of pure powers go through the machine together. Branches of a general phase run through it one by one, each with the same
+ * groups kept (those that cancel between two branches included), and the remainders add.
  *
  * Panels keep whole groups of terms (one power of t with all its logarithms and constants); the difference between the groups' sum
  * and the terms that were asked for is computed, not assumed to be 0. */
@@ -14,6 +17,7 @@
 #include "engine/numeric/enclosing.h"
 #include "engine/numeric/panels.h"
 #include "engine/numeric/shared.h"
+#include "engine/method/lanes.h"
 #include "engine/numeric/terms.h"
 
 const char *label_word(label l)
@@ -42,7 +46,8 @@ void point_bound_clear(point_bound *b)
 typedef struct known_problem {
     size_t index, value_count;
     expr **symbols, **values; /* without the large parameter */
-    problem *p;               /* NULL: the machine does not apply, reason says why */
+    size_t count;             /* problems whose sum is the contribution; 0: the machine does not apply, reason says why */
+    problem **p;
     char *reason;
     answer encloses;
     bool encloses_known;
@@ -58,7 +63,9 @@ void bound_cache_free(struct bound_cache *c)
     known_problem *k = c ? c->first : NULL;
     while (k) {
         known_problem *next = k->next;
-        problem_free(k->p);
+        for (size_t j = 0; j < k->count; j++)
+            problem_free(k->p[j]);
+        free(k->p);
         free(k->reason);
         free(k->symbols);
         free(k->values);
@@ -107,17 +114,55 @@ static known_problem *known_find(tw_engine *e, expansion *a, size_t index, const
     return k;
 }
 
+/* One and the same pure power on every branch? */
+static bool branches_are_pure(tw_engine *e, const local_form *l)
+{
+    fmpq_t mu, first;
+    bool pure = true;
+    fmpq_init(mu);
+    fmpq_init(first);
+    for (size_t k = 0; k < l->count && pure; k++) {
+        pure = is_pure_power(e, l->branches[k].p, l->branches[k].x, mu) && (k == 0 || fmpq_equal(mu, first));
+        fmpq_set(first, mu);
+    }
+    fmpq_clear(first);
+    fmpq_clear(mu);
+    return pure;
+}
+
+static tw_status add_problem(tw_engine *e, known_problem *k, const local_form *l, expr *large, const env *at)
+{
+    problem *p;
+    tw_status status = problem_new(e, &p, l, large, at, &k->reason);
+    if (p) {
+        k->p = base_resize(k->p, (k->count + 1) * sizeof *k->p);
+        k->p[k->count++] = p;
+    } else if (status == TW_OK && !k->reason) {
+        k->reason = base_copy("the machine does not apply");
+    }
+    return status;
+}
+
 static tw_status known_problem_of(tw_engine *e, known_problem **out, expansion *a, size_t index, const env *at)
 {
     known_problem *k = known_find(e, a, index, at);
     *out = k;
-    if (k->p || k->reason)
+    const local_form *l = &a->contributions[index].local;
+    tw_status status = TW_OK;
+    if (k->count > 0 || k->reason)
         return TW_OK;
-    if (problem_new(e, &k->p, &a->contributions[index].local, a->large, at, &k->reason) != TW_OK)
-        return TW_ERROR;
-    if (!k->p && !k->reason)
-        k->reason = base_copy("the machine does not apply");
-    return TW_OK;
+    if (l->count < 2 || branches_are_pure(e, l))
+        return add_problem(e, k, l, a->large, at);
+    for (size_t j = 0; j < l->count && status == TW_OK && !k->reason; j++) {
+        local_form one = {.scale = l->scale, .factor = l->factor, .count = 1, .branches = l->branches + j};
+        status = add_problem(e, k, &one, a->large, at);
+    }
+    if (status != TW_OK || k->reason) {
+        for (size_t j = 0; j < k->count; j++)
+            problem_free(k->p[j]);
+        k->count = 0;
+    }
+    return status;
 }
 
 answer known_encloses(tw_engine *e, expansion *a, size_t index, const env *at)
@@ -173,12 +218,67 @@ static tw_status count_groups(tw_engine *e, expansion *a, size_t index, const en
     return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
 }
 
+/* The exponent of the large parameter in a product. */
+static expr *power_in(tw_engine *e, expr *product, expr *large)
+{
+    expr *const *factors;
+    size_t count = expr_factors(&product, &factors);
+    expr *sum = expr_int(e, 0);
+    for (size_t k = 0; k < count; k++) {
+        expr *base, *exponent;
+        expr_as_power(e, factors[k], &base, &exponent);
+        if (base == large)
+            sum = expr_add(e, sum, exponent);
+    }
+    return sum;
+}
+
+/* The index in the problem whose term goes with large^exponent: group n gives factor * scale^-((v + 1 + n)/m). */
+static tw_status index_of_exponent(tw_engine *e, const contribution *c, expr *large, const problem *p, expr *exponent, slong *n)
+{
+    expr *z = expr_div(e, expr_sub(e, power_in(e, c->local.factor, large), exponent), power_in(e, c->local.scale, large));
+    expr *index = expr_sub(e, expr_sub(e, expr_mul(e, expr_fmpq(e, p->m), z), p->v_expr), expr_int(e, 1));
+    if (!index)
+        return TW_ERROR;
+    if (!expr_is_number(index) || !fmpz_is_one(fmpq_denref(expr_number(index))) ||
+        fmpz_cmp_si(fmpq_numref(expr_number(index)), 1000000) > 0 || fmpq_sgn(expr_number(index)) < 0)
+        return engine_fail(e, ERROR_UNSUITABLE, "the powers of the branches do not fit together");
+    *n = fmpz_get_si(fmpq_numref(expr_number(index)));
+    return TW_OK;
+}
+
+/* For one of several problems of a contribution: everything in front of the first omitted term of the whole contribution is kept,
+ * also what cancels against the other branches. */
+static tw_status groups_kept_beside(tw_engine *e, expansion *a, size_t index, const env *at, problem *p, slong terms, slong *first,
+                                    slong *extra)
+{
+    slong groups, found = 0, skip;
+    term *order = NULL;
+    if (count_groups(e, a, index, at, terms, &groups, extra) != TW_OK)
+        return TW_ERROR;
+    skip = terms + *extra;
+    if (expansion_order(e, a, index, skip + 1, &order, &found) != TW_OK)
+        return TW_ERROR;
+    tw_status status = TW_OK;
+    *first = 0;
+    if (found > 0) {
+        term last = order[FLINT_MIN(found - 1, skip)];
+        status = index_of_exponent(e, a->contributions + index, a->large, p, term_exponent(e, a, index, last, at), first);
+        if (status == TW_OK && found <= skip)
+            ++*first;
+    }
+    free(order);
+    return status == TW_OK ? problem_coefficients(p, *first + 32, FLINT_MAX(p->bits, 128)) : status;
+}
+
 /* The first index of the problem that is not kept when `terms` terms are: whole groups, *extra terms of the last
- * one are not among the kept. */
-static tw_status groups_kept(tw_engine *e, expansion *a, size_t index, const env *at, problem *p, slong terms, slong *first,
-                             slong *extra)
+ * one are not among the kept. `beside`: the problem is one of several. */
+static tw_status groups_kept(tw_engine *e, expansion *a, size_t index, const env *at, problem *p, bool beside, slong terms,
+                             slong *first, slong *extra)
 {
     slong n = 0, groups;
+    if (beside)
+        return groups_kept_beside(e, a, index, at, p, terms, first, extra);
     if (count_groups(e, a, index, at, terms, &groups, extra) != TW_OK ||
         problem_coefficients(p, terms + 32, FLINT_MAX(p->bits, 128)) != TW_OK)
         return TW_ERROR;
@@ -258,10 +358,29 @@ typedef struct piece_bound {
     const char *reason;
 } piece_bound;
 
+/* The sum of all kept groups of all problems, without the contribution's factor. */
+static tw_status kept_sum(tw_engine *e, arb_t out, expansion *a, size_t index, const env *at, const known_problem *k, slong terms,
+                          const arb_t S, slong bits)
+{
+    tw_status status = TW_OK;
+    arb_t part;
+    arb_init(part);
+    arb_zero(out);
+    for (size_t j = 0; j < k->count && status == TW_OK; j++) {
+        slong first, extra;
+        status = groups_kept(e, a, index, at, k->p[j], k->count > 1, terms, &first, &extra);
+        if (status == TW_OK)
+            status = panels_kept_sum(k->p[j], first, S, part, bits);
+        arb_add(out, out, part, bits);
+    }
+    arb_clear(part);
+    return status;
+}
+
 /* factor * S_K less the kept terms: 0 as a ball, unless a group is cut. Computed with so many bits that its radius is nothing
  * beside the rest R, which may be exponentially small. */
 static tw_status groups_less_kept(tw_engine *e, arb_t out, expansion *a, const term_values *t, const env *at, slong terms,
-                                  problem *p, slong first, slong bits, const arb_t R)
+                                  const known_problem *k, slong bits, const arb_t R)
 {
     enum { BITS_MOST = 40000 };
     const contribution *c = a->contributions + t->contribution;
@@ -287,7 +406,7 @@ static tw_status groups_less_kept(tw_engine *e, arb_t out, expansion *a, const t
     if (status == TW_OK)
         status = real_ball(e, S, put_values(e, c->local.scale, at), bits);
     if (status == TW_OK)
-        status = panels_kept_sum(p, first, S, out, bits);
+        status = kept_sum(e, out, a, t->contribution, at, k, terms, S, bits);
     if (status == TW_OK)
         status = real_ball(e, S, put_values(e, c->local.factor, at), bits);
     if (status == TW_OK) {
@@ -313,11 +432,11 @@ static tw_status panel_error(tw_engine *e, piece_bound *out, expansion *a, const
     expr *scale = put_values(e, c->local.scale, at);
     panel_report report = {0};
     slong first, extra;
-    bool made = false;
+    bool made = true;
     tw_status status = known_problem_of(e, &k, a, t->contribution, at);
     if (status != TW_OK)
         return status;
-    if (!k->p) {
+    if (k->count == 0) {
         out->label = LABEL_ESTIMATED;
         out->reason = k->reason;
         return TW_OK;
@@ -328,13 +447,17 @@ static tw_status panel_error(tw_engine *e, piece_bound *out, expansion *a, const
     status = real_ball(e, S, scale, bits + 64);
     if (status == TW_OK)
         status = real_ball(e, factor, put_values(e, c->local.factor, at), bits + 64);
-    if (status == TW_OK)
-        status = groups_kept(e, a, t->contribution, at, k->p, terms, &first, &extra);
-    if (status == TW_OK)
-        status = panels_at(k->p, first, scale, S, out->error, &made, &report);
+    arb_zero(out->error);
+    for (size_t j = 0; j < k->count && status == TW_OK && made; j++) {
+        status = groups_kept(e, a, t->contribution, at, k->p[j], k->count > 1, terms, &first, &extra);
+        if (status == TW_OK)
+            status = panels_at(k->p[j], first, scale, S, groups, &made, &report);
+        if (status == TW_OK && made)
+            arb_add(out->error, out->error, groups, bits + 64);
+    }
     if (status == TW_OK && made) {
         arb_mul(out->error, out->error, factor, bits + 64);
-        status = groups_less_kept(e, groups, a, t, at, terms, k->p, first, bits, out->error);
+        status = groups_less_kept(e, groups, a, t, at, terms, k, bits, out->error);
     }
     if (status == TW_OK && made) {
         arb_add(out->error, out->error, groups, bits + 64);
@@ -427,6 +550,15 @@ tw_status remainder_at_as(tw_engine *e, point_bound *out, expansion *a, const en
         if (one.reason && !out->reason)
             out->reason = base_copy(one.reason);
     }
+    if (status == TW_OK && a->rest.count > 0) {
+        bool made;
+        status = rest_at(e, one.error, a, at, &made);
+        arb_add(out->error, out->error, one.error, bits + 64);
+        out->label = FLINT_MAX(out->label, made ? LABEL_PROVED : LABEL_ESTIMATED);
+        all_enclosing = false;
+        if (!made && !out->reason)
+            out->reason = base_copy(REST_REASON);
+    }
     if (status == TW_OK)
         status = conditions_at(e, &out->conditions, a, at);
     if (out->label <= LABEL_PROVED && !conditions_all_sure(&out->conditions))
@@ -442,7 +574,17 @@ tw_status remainder_at(tw_engine *e, point_bound *out, expansion *a, const env *
     return remainder_at_as(e, out, a, at, terms, bits, false);
 }
 
-tw_status power_bound_of(tw_engine *e, power_bound *out, expansion *a, size_t index, const env *at, slong terms,
+tw_status power_bound_count(tw_engine *e, expansion *a, size_t index, const env *at, size_t *count, char **reason)
+{
+    known_problem *k;
+    tw_status status = known_problem_of(e, &k, a, index, at);
+    *count = status == TW_OK ? k->count : 0;
+    if (status == TW_OK && k->count == 0)
+        *reason = base_copy(k->reason);
+    return status;
+}
+
+tw_status power_bound_of(tw_engine *e, power_bound *out, expansion *a, size_t index, size_t part, const env *at, slong terms,
                          bool *made, slong *extra, char **reason)
 {
     const contribution *c = a->contributions + index;
@@ -455,16 +597,14 @@ tw_status power_bound_of(tw_engine *e, power_bound *out, expansion *a, size_t in
     *made = false;
     if (status != TW_OK)
         return status;
-    if (!k->p) {
-        *reason = base_copy(k->reason);
-        return TW_OK;
-    }
+    if (part >= k->count)
+        return engine_fail(e, ERROR_INTERNAL, "a contribution has no such part");
     arb_init(S);
     status = real_ball(e, S, scale, 256);
     if (status == TW_OK)
-        status = groups_kept(e, a, index, at, k->p, terms, &first, extra);
+        status = groups_kept(e, a, index, at, k->p[part], k->count > 1, terms, &first, extra);
     if (status == TW_OK)
-        status = panels_for_all(k->p, first, scale, S, out, made, &report);
+        status = panels_for_all(k->p[part], first, scale, S, out, made, &report);
     if (status == TW_OK && !*made)
         *reason = base_copy(report.reason ? report.reason : "the machine could not prove it");
     arb_clear(S);
@@ -478,8 +618,10 @@ tw_status groups_agree(tw_engine *e, expansion *a, size_t index, const env *at, 
     known_problem *k;
     term_table t;
     arb_t S, sum, kept;
-    slong first, extra;
+    slong groups, extra = 0;
     tw_status status = known_problem_of(e, &k, a, index, at);
+    if (status == TW_OK)
+        status = count_groups(e, a, index, at, terms, &groups, &extra);
     if (status != TW_OK)
         return status;
     status = terms_at(e, &t, a, at, terms + 24, false, BITS);
@@ -489,12 +631,10 @@ tw_status groups_agree(tw_engine *e, expansion *a, size_t index, const env *at, 
     arb_init(sum);
     arb_init(kept);
     *agree = false;
-    if (k->p) {
+    if (k->count > 0) {
         status = real_ball(e, S, put_values(e, c->local.scale, at), BITS);
         if (status == TW_OK)
-            status = groups_kept(e, a, index, at, k->p, terms, &first, &extra);
-        if (status == TW_OK)
-            status = panels_kept_sum(k->p, first, S, sum, BITS);
+            status = kept_sum(e, sum, a, index, at, k, terms, S, BITS);
         if (status == TW_OK)
             status = real_ball(e, S, put_values(e, c->local.factor, at), BITS);
         arb_mul(sum, sum, S, BITS);

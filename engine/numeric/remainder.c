@@ -233,6 +233,8 @@ static tw_status useful_from(tw_engine *e, expr **out, expansion *a, const env *
 static bool all_enclose(tw_engine *e, expansion *a, const env *at)
 {
     bool any = false;
+    if (a->rest.count > 0)
+        return false;
     for (size_t k = 0; k < a->contribution_count; k++) {
         if (!contribution_counts(a, k, false))
             continue;
@@ -417,7 +419,7 @@ static tw_status add_power_bound(tw_engine *e, expr **sum, const power_bound *b,
 static void keep_steps(tw_engine *e, remainder_bound *out, const power_bound *b)
 {
     bool exact;
-    if (b->step_count == 0 || out->panel_t)
+    if (b->step_count == 0)
         return;
     out->panel_count = (size_t)b->step_count + 1;
     out->panel_t = base_alloc(out->panel_count * sizeof(char *));
@@ -499,23 +501,32 @@ static tw_status add_missing(tw_engine *e, const remainder_bound *out, expansion
     return status;
 }
 
-static tw_status panel_bound(tw_engine *e, remainder_bound *out, expansion *a, size_t index, const env *at, const env *values,
-                             expr **sum)
+/* Is this contribution with its one branch (or its pure branches, which go together) all there is? One step function then says
+ * everything. */
+static bool is_alone(const expansion *a, size_t index)
+{
+    const local_form *l = &a->contributions[index].local;
+    bool alone = a->rest.count == 0;
+    for (size_t k = 0; k < a->contribution_count && alone; k++)
+        alone = k == index || !contribution_counts(a, k, false);
+    for (size_t k = 0; k < l->count && alone && l->count > 1; k++) {
+        const branch *b = l->branches + k;
+        alone = b->p == b->x || (b->p->kind == EXPR_POWER && b->p->args[0] == b->x);
+    }
+    return alone;
+}
+
+/* One part of a contribution; *extra: terms of the last group that are not kept. */
+static tw_status part_bound(tw_engine *e, remainder_bound *out, expansion *a, size_t index, size_t part, const env *at,
+                            const env *values, slong *extra, expr **sum)
 {
     const contribution *c = a->contributions + index;
     power_bound b;
-    bool made = false, agree = false;
-    slong extra = 0;
+    bool made = false;
     char *reason = NULL;
     tw_status status;
     power_bound_init(&b);
-    status = power_bound_of(e, &b, a, index, at, out->terms, &made, &extra, &reason);
-    if (status == TW_OK && made)
-        status = groups_agree(e, a, index, at, out->terms, &agree);
-    if (status == TW_OK && made && !agree) {
-        made = false;
-        reason = base_copy("the terms do not group as the machine keeps them");
-    }
+    status = power_bound_of(e, &b, a, index, part, at, out->terms, &made, extra, &reason);
     if (status == TW_OK && made && (b.K > 0 || !exponent_exact(e, &b)) && !from_one(b.S0)) {
         made = false;
         reason = base_copy("the bound with logarithms or an irrational power holds from scale 1 on only");
@@ -526,10 +537,9 @@ static tw_status panel_bound(tw_engine *e, remainder_bound *out, expansion *a, s
             end = decimal_expr(e, b.end_t, 12, false);
         status = add_power_bound(e, sum, &b, put_values(e, c->local.scale, values), put_values(e, c->local.factor, values), s0, end,
                                  large);
-        keep_steps(e, out, &b);
+        if (is_alone(a, index))
+            keep_steps(e, out, &b);
     }
-    if (status == TW_OK && made && extra > 0)
-        status = add_missing(e, out, a, index, values, extra, sum);
     if (status == TW_OK && !made) {
         out->label = LABEL_ESTIMATED;
         if (!out->reason)
@@ -538,6 +548,57 @@ static tw_status panel_bound(tw_engine *e, remainder_bound *out, expansion *a, s
     free(reason);
     power_bound_clear(&b);
     return status;
+}
+
+static tw_status panel_bound(tw_engine *e, remainder_bound *out, expansion *a, size_t index, const env *at, const env *values,
+                             expr **sum)
+{
+    size_t parts;
+    slong extra = 0;
+    bool agree = false;
+    char *reason = NULL;
+    tw_status status = power_bound_count(e, a, index, at, &parts, &reason);
+    if (status == TW_OK && parts > 0)
+        status = groups_agree(e, a, index, at, out->terms, &agree);
+    if (status == TW_OK && !agree) {
+        out->label = LABEL_ESTIMATED;
+        if (!reason)
+            reason = base_copy("the terms do not group as the machine keeps them");
+        if (!out->reason)
+            out->reason = reason, reason = NULL;
+    }
+    for (size_t k = 0; k < parts && status == TW_OK && out->label == LABEL_PROVED; k++)
+        status = part_bound(e, out, a, index, k, at, values, &extra, sum);
+    if (status == TW_OK && out->label == LABEL_PROVED && extra > 0)
+        status = add_missing(e, out, a, index, values, extra, sum);
+    free(reason);
+    return status;
+}
+
+/* C * |factor| * exp(-(scale - scale0) * floor) for what no local form covers. */
+static tw_status rest_bound(tw_engine *e, remainder_bound *out, expansion *a, const env *at, const env *values, expr **sum)
+{
+    arb_t C, front;
+    bool made;
+    expr *scale = put_values(e, a->rest.scale, values), *moving = NULL;
+    expr *scale0 = expr_substitute(e, scale, a->large, out->from);
+    expr *fall = expr_call1(e, FUNCTION_EXP, expr_neg(e, expr_mul(e, expr_sub(e, scale, scale0), put_values(e, a->rest_floor, values))));
+    tw_status status;
+    arb_init(C);
+    arb_init(front);
+    status = rest_modulus(e, C, a, at, &made);
+    if (status == TW_OK && !made) {
+        out->label = LABEL_ESTIMATED;
+        out->reason = base_copy(REST_REASON);
+    } else if (status == TW_OK) {
+        status = factor_modulus(e, front, &moving, put_values(e, a->rest.factor, values), a->large);
+        arb_mul(C, C, front, 128);
+        if (status == TW_OK)
+            *sum = expr_add(e, *sum, expr_mul(e, expr_mul(e, decimal_expr(e, C, 4, true), moving), fall));
+    }
+    arb_clear(front);
+    arb_clear(C);
+    return status == TW_OK && *sum ? TW_OK : TW_ERROR;
 }
 
 /* Not proved: three times the first omitted terms, as a formula. */
@@ -566,6 +627,8 @@ static tw_status panels_everywhere(tw_engine *e, remainder_bound *out, expansion
                 status = panel_bound(e, out, a, k, &at, values, &sum);
             }
         }
+    if (status == TW_OK && out->label == LABEL_PROVED && a->rest.count > 0)
+        status = rest_bound(e, out, a, &at, values, &sum);
     env_free(&at);
     if (status != TW_OK)
         return status;

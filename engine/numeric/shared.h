@@ -15,10 +15,20 @@ answer known_encloses(tw_engine *e, expansion *a, size_t index, const env *at);
 /* As remainder_at; sharp: by panels even where the enclosing theorem holds, because they come closer. */
 tw_status remainder_at_as(tw_engine *e, point_bound *out, expansion *a, const env *at, slong terms, slong bits, bool sharp);
 
-/* The panels' bound for all S from the scale at this point on; *extra: terms of the last group that are not kept, to be added
+/* How many parts the panels bound the contribution in (a branch each when the phase is no pure power); 0: *reason says why none. */
+tw_status power_bound_count(tw_engine *e, expansion *a, size_t index, const env *at, size_t *count, char **reason);
+
+/* The panels' bound of part `part` for all S from the scale at this point on; *extra: terms of the last group that are not kept, to be added
  * to it. *made false: *reason, fresh words, says why. */
-tw_status power_bound_of(tw_engine *e, power_bound *out, expansion *a, size_t index, const env *at, slong terms,
+tw_status power_bound_of(tw_engine *e, power_bound *out, expansion *a, size_t index, size_t part, const env *at, slong terms,
                          bool *made, slong *extra, char **reason);
+
+/* rest.c: what the dominant contributions' local forms leave out, at a point (every symbol has a value there), by certified
+ * quadrature; *made false: it could not be had. REST_REASON says so to people. */
+tw_status rest_at(tw_engine *e, arb_t out, expansion *a, const env *at, bool *made);
+/* |rest| <= C * |factor| * exp(-(scale - scale at the point) * floor) for all scales from the point's on. */
+tw_status rest_modulus(tw_engine *e, arb_t C, expansion *a, const env *at, bool *made);
+#define REST_REASON "the part of the path away from the points that count could not be bounded"
 
 /* Are the machine's kept groups and the expansion's kept terms the same sum, as far as balls see at this point? */
 tw_status groups_agree(tw_engine *e, expansion *a, size_t index, const env *at, slong terms, bool *agree);
