@@ -212,7 +212,7 @@ static const help_entry entries[] = {
     {"to", HELP_CLAUSE, HERE, NULL, "The upper limit; also `to N terms`, `to D digits`, `to \"FILE\"`.", NULL, "integral"},
     {"of", HELP_CLAUSE, HERE, NULL, "Before what an integral, a sum or a request is taken of.", NULL, "integral"},
     {"along", HELP_CLAUSE, HERE, "integral along P to Q to R of BODY dz",
-     "A path of straight legs; its ends may be inf(theta). With no finite point they meet at 0.",
+     "A path of straight legs; its ends may be inf(theta). These meet at 0.",
      "let F = integral along inf(-pi/4) to inf(pi/4) of exp(z^3 - s*z) dz\nevaluate F at s = 5", NULL},
     {"in", HELP_CLAUSE, HERE, "NAME in (A, B]", "A condition: the value lies in the interval.", NULL, "given"},
     {"integer", HELP_CLAUSE, HERE, "given NAME integer", "The parameter is an integer.", NULL, "given"},
