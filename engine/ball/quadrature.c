@@ -323,7 +323,7 @@ static tw_status add_line(quad_sum *s, slong sign, expr *f, expr *x, expr *from,
 }
 
 /* A leg off the real line, over u in (0, 1) or (0, inf). */
-static tw_status add_leg(quad_sum *s, const quad_leg *leg)
+static tw_status add_leg(quad_sum *s, const contour_leg *leg)
 {
     tw_engine *e = s->e;
     const char *near = point_words(s, leg->near), *far = point_words(s, leg->far);
@@ -341,15 +341,15 @@ static tw_status add_leg(quad_sum *s, const quad_leg *leg)
 
 static tw_status add_path(quad_sum *s, expr *contour, slong prec)
 {
-    quad_path path;
-    quad_path_init(&path);
-    tw_status status = quad_path_read(&path, s->e, contour);
+    contour_path path;
+    contour_path_init(&path);
+    tw_status status = contour_path_read(&path, s->e, contour);
     for (size_t k = 0; k < path.count && status == TW_OK; k++) {
-        const quad_leg *leg = &path.list[k];
+        const contour_leg *leg = &path.list[k];
         status = leg->on_line ? add_line(s, leg->sign, leg->g, leg->u, leg->from, leg->to, prec) : add_leg(s, leg);
     }
     s->imaginary = path.imaginary;
-    quad_path_clear(&path);
+    contour_path_clear(&path);
     return status;
 }
 

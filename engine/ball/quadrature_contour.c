@@ -12,12 +12,12 @@
 
 enum { LOOK_LIMIT = 6000, LOOK_DEPTH = 56, LOOK_OCTAVES = 24, END_OCTAVES = 60, POINT_BITS = 256 };
 
-void quad_path_init(quad_path *p)
+void contour_path_init(contour_path *p)
 {
-    *p = (quad_path){0};
+    *p = (contour_path){0};
 }
 
-void quad_path_clear(quad_path *p)
+void contour_path_clear(contour_path *p)
 {
     free(p->list);
 }
@@ -174,7 +174,7 @@ static bool look_along(look *l, bool infinite)
     return fine;
 }
 
-static tw_status report_trouble(const look *l, const quad_leg *leg, expr *z)
+static tw_status report_trouble(const look *l, const contour_leg *leg, expr *z)
 {
     tw_engine *e = l->e;
     acb_t place;
@@ -205,7 +205,7 @@ static tw_status report_trouble(const look *l, const quad_leg *leg, expr *z)
 }
 
 /* z: the path's variable in terms of the leg's. */
-static tw_status check_leg(tw_engine *e, const quad_leg *leg, expr *z)
+static tw_status check_leg(tw_engine *e, const contour_leg *leg, expr *z)
 {
     look l = {.e = e};
     l.values = tape_new(e, leg->g, &leg->u, 1);
@@ -222,13 +222,13 @@ static tw_status check_leg(tw_engine *e, const quad_leg *leg, expr *z)
 /* ---- legs ---- */
 
 /* From P to Q, one of them possibly at infinity. */
-static tw_status add_leg(quad_path *p, tw_engine *e, expr *f, expr *z, expr *P, expr *Q, bool on_line)
+static tw_status add_leg(contour_path *p, tw_engine *e, expr *f, expr *z, expr *P, expr *Q, bool on_line)
 {
     if (P == Q)
         return TW_OK;
     bool backwards = direction_of(e, P) != NULL;
     expr *near = backwards ? Q : P, *far = backwards ? P : Q;
-    quad_leg leg = {.sign = backwards ? -1 : 1, .on_line = on_line, .near = near, .far = far, .u = expr_fresh(e, "u")};
+    contour_leg leg = {.sign = backwards ? -1 : 1, .on_line = on_line, .near = near, .far = far, .u = expr_fresh(e, "u")};
     if (on_line) {
         leg.sign = 1;
         leg.from = leg.near = P;
@@ -285,7 +285,7 @@ static bool mirrored(tw_engine *e, expr *const *points, size_t n)
     return true;
 }
 
-static bool all_on_line(const quad_path *p)
+static bool all_on_line(const contour_path *p)
 {
     for (size_t k = 0; k < p->count; k++)
         if (!p->list[k].on_line)
@@ -293,7 +293,7 @@ static bool all_on_line(const quad_path *p)
     return true;
 }
 
-tw_status quad_path_read(quad_path *p, tw_engine *e, expr *contour)
+tw_status contour_path_read(contour_path *p, tw_engine *e, expr *contour)
 {
     size_t n = contour->count - 1;
     expr *z = expr_fresh(e, expr_binder_name(contour)), *f = expr_open(e, contour, z);

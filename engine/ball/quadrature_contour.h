@@ -6,25 +6,25 @@
 
 /* sign * int of g(u) du, u from `from` to `to`. On the real line u is the path's own variable and the ends are its ends (principal
  * values count there, as for an integral `from ... to`); elsewhere u runs from 0 to 1 or inf and g is analytic in between. */
-typedef struct quad_leg {
+typedef struct contour_leg {
     int sign;
     bool on_line;
     expr *u, *g, *from, *to;
     expr *near, *far; /* where u = from and u = to lie, for words; far may be inf(theta) */
-} quad_leg;
+} contour_leg;
 
-typedef struct quad_path {
-    quad_leg *list;
+typedef struct contour_path {
+    contour_leg *list;
     size_t count;
     bool imaginary; /* proved: the whole integral is i times a real number */
-} quad_path;
+} contour_path;
 
-void quad_path_init(quad_path *p);
-void quad_path_clear(quad_path *p);
+void contour_path_init(contour_path *p);
+void contour_path_clear(contour_path *p);
 
 /* The legs of an EXPR_CONTOUR without free symbols. Errors: UNSUITABLE (an end that is no number, a point at infinity inside the
  * path, an integrand that is not analytic by its form), DIVERGENT (a pole on the path), UNDECIDED (a branch cut on it, or nothing
  * known of the integrand there). */
-tw_status quad_path_read(quad_path *p, tw_engine *e, expr *contour);
+tw_status contour_path_read(contour_path *p, tw_engine *e, expr *contour);
 
 #endif
