@@ -297,6 +297,7 @@ static tw_status compile_node(tape *t, expr *a, size_t *at)
     case EXPR_ROOT: status = compile_fixed(t, a); break;
     case EXPR_BOUND:
     case EXPR_DIRECTION:
+    case EXPR_APPLY:
     case EXPR_RELATION: add_op(t, OP_UNKNOWN, a, NULL, 0); break;
     }
     *at = t->count - 1;

@@ -207,6 +207,27 @@ expr *expr_relation_of(tw_engine *e, expr_relation r, expr *left, expr *right)
     return node_make(e, EXPR_RELATION, r, sides, 2);
 }
 
+expr *expr_apply(tw_engine *e, expr *f, expr *const *arguments, expr *const *orders, size_t n)
+{
+    const arena_place mark = arena_mark(&e->scratch);
+    expr **args = engine_scratch(e, 2 * n + 1, sizeof *args);
+    bool sound = f != NULL;
+    args[0] = f;
+    for (size_t k = 0; sound && k < n; k++) {
+        args[1 + k] = arguments[k];
+        args[1 + n + k] = orders ? orders[k] : expr_int(e, 0);
+        sound = args[1 + k] && args[1 + n + k];
+    }
+    expr *made = sound ? node_make(e, EXPR_APPLY, 0, args, 2 * n + 1) : NULL;
+    arena_release(&e->scratch, mark);
+    return made;
+}
+
+size_t expr_apply_arity(expr *a)
+{
+    return (a->count - 1) / 2;
+}
+
 /* Of two numbers the relation is plain; anything else is left to those who know the facts. */
 static answer_of_numbers relation_of_numbers(expr *relation)
 {
@@ -294,6 +315,7 @@ expr *node_rebuild(tw_engine *e, expr *a, expr *const *args)
     case EXPR_PIECEWISE: return piecewise_make(e, args, a->count);
     case EXPR_DIRECTION: return expr_direction(e, args[0]);
     case EXPR_RELATION: return expr_relation_of(e, a->is.relation, args[0], args[1]);
+    case EXPR_APPLY: return node_make(e, EXPR_APPLY, 0, args, a->count);
     default: return a;
     }
 }

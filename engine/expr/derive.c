@@ -439,6 +439,26 @@ static expr *derive_piecewise(derivation_walk *w, expr *a)
     return node_rebuild(w->engine, a, args);
 }
 
+/* The chain rule over the arguments of a pattern function. */
+static expr *derive_apply(derivation_walk *w, expr *a)
+{
+    tw_engine *e = w->engine;
+    const size_t n = expr_apply_arity(a);
+    expr **terms = engine_scratch(e, n, sizeof *terms), **args = engine_scratch(e, a->count, sizeof *args);
+    size_t count = 0;
+    for (size_t k = 0; k < n; k++) {
+        expr *d = derive(w, a->args[1 + k]);
+        if (!d)
+            return NULL;
+        if (expr_is_zero(d))
+            continue;
+        memcpy(args, a->args, a->count * sizeof *args);
+        args[1 + n + k] = expr_add(e, args[1 + n + k], expr_int(e, 1));
+        terms[count++] = args[1 + n + k] ? expr_mul(e, d, node_rebuild(e, a, args)) : NULL;
+    }
+    return expr_sum(e, terms, count);
+}
+
 static expr *derive_kind(derivation_walk *w, expr *a)
 {
     switch (a->kind) {
@@ -451,6 +471,7 @@ static expr *derive_kind(derivation_walk *w, expr *a)
     case EXPR_SUMMATION: return derive_summation(w, a);
     case EXPR_ROOT: return derive_root(w, a);
     case EXPR_PIECEWISE: return derive_piecewise(w, a);
+    case EXPR_APPLY: return derive_apply(w, a);
     case EXPR_RELATION: case EXPR_DIRECTION:
         engine_fail(w->engine, ERROR_VALUE, "a condition or a direction has no derivative");
         return NULL;

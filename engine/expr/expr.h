@@ -43,6 +43,7 @@ typedef enum expr_kind {
     EXPR_ROOT,      /* polynomial (under the binder), the value near which the root lies */
     EXPR_DIRECTION, /* inf(theta): theta */
     EXPR_RELATION,  /* left, right; the relation in `relation` */
+    EXPR_APPLY,     /* a rule's pattern function: its symbol, n arguments, n orders of derivatives (numbers) */
 } expr_kind;
 
 typedef enum expr_constant { CONSTANT_PI, CONSTANT_I, CONSTANT_INF, CONSTANT_EULER } expr_constant;
@@ -109,6 +110,10 @@ expr *expr_piecewise(tw_engine *e, expr *const *conditions, expr *const *values,
 expr *expr_root(tw_engine *e, expr *variable, expr *polynomial, expr *near);
 expr *expr_direction(tw_engine *e, expr *theta);
 expr *expr_relation_of(tw_engine *e, expr_relation r, expr *left, expr *right);
+/* f(arguments) for a function that is only a name, the symbol f; it stands in rules and nowhere else. orders: how often
+ * it is differentiated in each argument, numbers; NULL: not at all. n >= 1. */
+expr *expr_apply(tw_engine *e, expr *f, expr *const *arguments, expr *const *orders, size_t n);
+size_t expr_apply_arity(expr *a); /* of an EXPR_APPLY */
 
 /* The body of a binder with its variable replaced by `value` (often an expr_fresh or expr_symbol). Capture-free. */
 expr *expr_open(tw_engine *e, expr *binder, expr *value);

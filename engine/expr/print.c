@@ -589,6 +589,39 @@ static void print_list(printer *p, const char *name, expr *a)
     text_add_char(p->out, ')');
 }
 
+/* f(u), and of a derived one (derivative of f(t) in t order 2 at t = u) with a name t that u does not hold. */
+static void print_apply(printer *p, expr *a)
+{
+    static const char *const slots[] = {"t", "u", "v", "w"};
+    const size_t n = expr_apply_arity(a);
+    size_t derived = n;
+    for (size_t k = 0; k < n; k++)
+        if (!expr_is_zero(a->args[1 + n + k]))
+            derived = k;
+    const char *slot = derived < n ? slots[derived < 4 ? derived : 3] : NULL;
+    if (slot)
+        text_add(p->out, "(derivative of ");
+    text_addf(p->out, "%s(", symbol_name(p, a->args[0]));
+    for (size_t k = 0; k < n; k++) {
+        text_add(p->out, k > 0 ? ", " : "");
+        if (k == derived)
+            text_add(p->out, slot);
+        else
+            print(p, a->args[1 + k], LEVEL_SUM);
+    }
+    text_add_char(p->out, ')');
+    if (!slot)
+        return;
+    text_addf(p->out, " in %s", slot);
+    if (!expr_is_one(a->args[1 + n + derived])) {
+        text_add(p->out, " order ");
+        print(p, a->args[1 + n + derived], LEVEL_SUM);
+    }
+    text_addf(p->out, " at %s = ", slot);
+    print(p, a->args[1 + derived], LEVEL_SUM);
+    text_add_char(p->out, ')');
+}
+
 static void print_piecewise(printer *p, expr *a)
 {
     text_add(p->out, "piecewise(");
@@ -642,6 +675,7 @@ static void print_kind(printer *p, expr *a)
     case EXPR_DIRECTION: print_list(p, "inf", a); break;
     case EXPR_PIECEWISE: print_piecewise(p, a); break;
     case EXPR_RELATION: print_relation(p, a); break;
+    case EXPR_APPLY: print_apply(p, a); break;
     default: print_binder(p, a); break;
     }
 }
