@@ -7,6 +7,7 @@
 #include "engine/base/engine.h"
 #include "engine/expr/expr.h"
 #include "engine/expr/facts.h"
+#include "engine/rewrite/pattern_node.h"
 
 static tw_status rooms_init(void *host)
 {
@@ -20,6 +21,7 @@ void tw_engine_free(tw_engine *e)
 {
     if (!e)
         return;
+    matching_free(e->matching);
     facts_clear(e);
     expr_table_clear(e);
     engine_base_clear(e);

@@ -48,6 +48,7 @@ typedef struct tw_error {
 
 struct expr_table; /* engine/expr */
 struct facts;      /* engine/expr/facts.h */
+struct matching;   /* engine/rewrite */
 
 struct tw_engine {
     arena arena;                         /* what lives as long as the engine: expressions, names */
@@ -62,6 +63,7 @@ struct tw_engine {
     long allocations_left;               /* tests: after so many more allocations fail; negative: never */
     struct expr_table *exprs;
     struct facts *facts;
+    struct matching *matching;           /* NULL until the first pattern is matched */
     void (*progress)(void *host, const char *words); /* told now and then what long work is doing; may be NULL */
     void *progress_host;
     FILE *trace;                         /* developers' dump of stages; NULL: off */

@@ -41,7 +41,7 @@ enum { PATTERN_VARIABLE_LIMIT = 64 };
 typedef struct match {
     const pattern *of;
     expr *const *values; /* of variable k: its value; of a function its body in pattern_parameters(of, k) */
-    expr *subject, *rest; /* the rest beside the instance: a product or sum of what was kept, or NULL */
+    const struct matcher *by; /* private */
 } match;
 
 /* Called for each match in turn; true: no more are wanted. The match lives for the call only. */
@@ -65,7 +65,9 @@ tw_status pattern_match(tw_engine *e, const pattern *p, expr *subject, bool with
 /* form (pattern, replacement, condition) with the match's values put in, capture-free, pattern functions applied and
  * their derivatives carried out. NULL with the error set. */
 expr *match_instance(tw_engine *e, const match *m, expr *form);
-/* The same without a match: values of the variables, bodies of functions in `parameters[k]` (NULL for a plain one). */
+/* What the whole subject becomes when the instance in it is replaced: the replacement joined with what was kept. */
+expr *match_join(tw_engine *e, const match *m, expr *replacement);
+/* The same as match_instance without a match: values of the variables, bodies of functions in `parameters[k]` (NULL for a plain one). */
 expr *pattern_instance(tw_engine *e, expr *form, const pattern_variable *variables, size_t count, expr *const *values,
                        expr *const *const *parameters);
 

@@ -25,6 +25,7 @@ typedef struct rule {
     bool checked;                /* was it tried? false: not yet */
     char *finding;               /* what the check found, in words (of a refuted one: the values and the balls); or NULL */
     pattern *pattern;
+    uint64_t complex_variables;  /* a bit each: declared complex; the others stand for real values */
 } rule;
 
 /* Takes nothing over; copies names and lists. NULL with the error of pattern_new, and when the replacement or a
@@ -47,6 +48,10 @@ void rule_outcome_clear(rule_outcome *o);
  * the facts, granted ones among them) and whose result differs from the subject. Whether the rule may be used at all is
  * the caller's question (rule_usable). */
 tw_status rule_apply(tw_engine *e, const rule *r, expr *subject, rule_outcome *out);
+
+/* The same for every disjoint part of a sum or product that the rule fits, in one go: what was put in is not looked at
+ * again, and the whole is put together once. *times: how often. */
+tw_status rule_apply_all(tw_engine *e, const rule *r, expr *subject, rule_outcome *out, size_t *times);
 
 /* May the rule be used? ERROR_REFUTED with what was found when it was refuted. */
 tw_status rule_usable(tw_engine *e, const rule *r);
