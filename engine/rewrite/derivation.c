@@ -96,6 +96,11 @@ void derivation_clear(derivation *d)
     derivation_init(d);
 }
 
+void derivation_cut(derivation *d, size_t count)
+{
+    while (d->count > count) step_clear(&d->steps[--d->count]);
+}
+
 static void make_room(derivation *d)
 {
     if (d->count < d->room) return;

@@ -48,6 +48,8 @@ void derivation_init(derivation *d);
 void derivation_clear(derivation *d);
 /* Appends an empty step with this rule and source and returns it (valid until the next append). */
 step *derivation_add(derivation *d, const char *rule, const char *source);
+/* Keeps the first `count` steps only. */
+void derivation_cut(derivation *d, size_t count);
 /* The steps of `from` behind those of `to`; `from` is empty afterwards. */
 void derivation_move(derivation *to, derivation *from);
 
