@@ -115,7 +115,7 @@ static tw_status add_contribution(session *s, text *out, expansion *a, size_t k)
     slong found;
     if (first_terms(s, a, k, &terms, &found) != TW_OK) return TW_ERROR;
     const contribution *c = &a->contributions[k];
-    bool more = !c->terminates || count_terms(c) > found;
+    bool more = !c->terminates || (a->remainder && !expr_is_zero(a->remainder)) || count_terms(c) > found;
     bool factor = !expr_is_one(c->prefactor);
     bool brackets = factor && (found > 1 || more);
     if (factor) {
@@ -132,6 +132,10 @@ static tw_status add_contribution(session *s, text *out, expansion *a, size_t k)
 
 static void add_place(session *s, text *out, const contribution *c)
 {
+    if (!c->place) {
+        text_add(out, "the form");
+        return;
+    }
     if (c->variable) expr_print(s->e, out, c->variable);
     text_add(out, " = ");
     expr_print(s->e, out, c->place);
@@ -152,6 +156,10 @@ static void add_note(session *s, text *out, const expansion *a)
     if (!first) return;
     text_add(out, "  ");
     while (out->length < NOTE_COLUMN) text_add_char(out, ' ');
+    if (!first->place) {
+        text_add(out, "(a derivation by hand)");
+        return;
+    }
     text_addf(out, "(%s at ", method_title(first->method));
     add_place(s, out, first);
     for (size_t k = 0; k < a->contribution_count; k++) {

@@ -356,7 +356,10 @@ bool parse_write(parser *p, statement *out)
 bool parse_show(parser *p, statement *out)
 {
     out->kind = STATEMENT_SHOW;
-    parser_go_on(p);
+    parser_advance(p);
+    if (parser_at_line_end(p))
+        return true;
+    parser_skip_lines(p);
     return parser_new_name(p, &out->as.name, "a name after `show`");
 }
 

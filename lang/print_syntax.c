@@ -446,7 +446,8 @@ void statement_print(text *out, const statement *s)
         syntax_pass_print(out, s->as.pass.value);
         return;
     case STATEMENT_CHECK_RULE: case STATEMENT_WHY_NOT: case STATEMENT_SHOW: case STATEMENT_DROP:
-        text_addf(out, "%s %s", statement_words(s), s->as.name.text);
+        text_add(out, statement_words(s));
+        print_named(out, " ", s->as.name);
         return;
     case STATEMENT_DONE:
         text_add(out, "done");

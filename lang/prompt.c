@@ -175,7 +175,14 @@ static void take_line(char *line);
 
 static void ask(void)
 {
-    rl_callback_handler_install(prompt.more ? PROMPT_MORE : PROMPT, take_line);
+    const session *s = &prompt.run->session;
+    text words; /* an open derivation shows its name */
+    text_init(&words);
+    if (prompt.more) text_add(&words, PROMPT_MORE);
+    else if (s->open) text_addf(&words, "%.24s> ", s->open_is_name ? s->open_name : "derive");
+    else text_add(&words, PROMPT);
+    rl_callback_handler_install(words.bytes, take_line);
+    text_clear(&words);
     prompt.waiting = true;
 }
 

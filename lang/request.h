@@ -63,7 +63,18 @@ void points_blame(session *s, const points *p, size_t k);
 typedef tw_status request_function(session *s, const statement *st, result *r, value **keep);
 request_function request_large, request_small, request_given, request_grant, request_let, request_use, request_show,
     request_drop, request_expand, request_steps, request_coefficients, request_remainder, request_evaluate, request_compare,
-    request_write, request_help, request_quit;
+    request_write, request_help, request_quit, request_derive, request_move, request_done, request_undo, request_replay,
+    request_expansion_of;
+
+/* The steps of the open derivation, or an error when none is open; the steps of a kept one. */
+tw_status derivation_steps(session *s, result *r, span at);
+void derivation_tell_steps(session *s, result *r, const char *name, const manual *m);
+/* Everything about a derivation, for `show`; of the open one. */
+void derivation_show(session *s, result *r, const char *name, const manual *m);
+tw_status derivation_show_open(session *s, result *r, span at);
+
+/* What `expand` and `expansion of` say of what they made. title: how the series line begins. */
+tw_status request_tell_expansion(session *s, result *r, const char *name, const char *title, value *v);
 
 /* Runs the request behind `let NAME =`, or says that it is not available. */
 tw_status request_run(session *s, const statement *st, result *r, value **keep);

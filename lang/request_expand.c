@@ -29,10 +29,10 @@ static const char *title(const subject *x)
     return x->is_name || strlen(x->name) <= 48 ? x->name : "integral";
 }
 
-static tw_status tell_expansion(session *s, result *r, const char *name, const subject *x, value *v)
+tw_status request_tell_expansion(session *s, result *r, const char *name, const char *title_words, value *v)
 {
     result_restart(r, "expansion");
-    if (describe_series(s, r, title(x), &v->expansion) != TW_OK) return TW_ERROR;
+    if (describe_series(s, r, title_words, &v->expansion) != TW_OK) return TW_ERROR;
     if (v->expansion.why) result_string(r, "why", v->expansion.why);
     return s->json ? describe_object(s, r, name, &v->expansion) : TW_OK;
 }
@@ -44,7 +44,7 @@ static tw_status expand_subject(session *s, const statement *st, result *r, cons
     if (x->kept)
         return request_fail(s, st->as.expand->subject->at, ERROR_VALUE, "`%s` is not an integral", x->name);
     if (expand(s->e, &v->expansion, x->expression, terms, by.text) != TW_OK ||
-        tell_expansion(s, r, name, x, v) != TW_OK)
+        request_tell_expansion(s, r, name, title(x), v) != TW_OK)
         return request_fail_at(s, st->as.expand->subject->at);
     return TW_OK;
 }
@@ -76,8 +76,14 @@ static void keep_result(value **keep, const result *r, const char *what)
 
 tw_status request_steps(session *s, const statement *st, result *r, value **keep)
 {
-    if (!st->as.subject) return request_unavailable(s, st->at, "steps of an open derivation");
+    if (!st->as.subject) return derivation_steps(s, r, st->at);
     subject x;
+    value *kept = st->as.subject->kind == SYNTAX_NAME ? names_find(&s->names, st->as.subject->as.name) : NULL;
+    if (kept && kept->kind == VALUE_DERIVATION) {
+        derivation_tell_steps(s, r, st->as.subject->as.name, kept->derivation);
+        keep_result(keep, r, "steps");
+        return s->e->error.kind == ERROR_NONE ? TW_OK : request_fail_at(s, st->at);
+    }
     if (subject_read_expansion(s, &x, st->as.subject) != TW_OK) return TW_ERROR;
     result_restart(r, "steps");
     result_string(r, "of", x.name);

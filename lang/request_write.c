@@ -38,6 +38,17 @@ static tw_status make_text(session *s, text *out, const format *f, const subject
     return status;
 }
 
+/* A derivation has one format. */
+static tw_status write_derivation(session *s, const statement *st, text *out, const format *f, const char *name,
+                                  const manual *m)
+{
+    if (strcmp(f->name, "json") != 0)
+        return request_fail(s, st->as.write.format.at, ERROR_VALUE,
+                            "a derivation is written as json; an expansion of it (`let A = expansion of %s`) as %s, too", name,
+                            f->name);
+    return derivation_json(s->e, out, name, m);
+}
+
 static tw_status put_text(session *s, const char *file, const text *content)
 {
     text why;
@@ -54,10 +65,15 @@ tw_status request_write(session *s, const statement *st, result *r, value **keep
     const format *f = find_format(s, st->as.write.format);
     if (!f) return TW_ERROR;
     subject x;
-    if (subject_read_expansion(s, &x, st->as.write.subject) != TW_OK) return TW_ERROR;
+    const syntax *typed = st->as.write.subject;
+    value *named = typed->kind == SYNTAX_NAME ? names_find(&s->names, typed->as.name) : NULL;
+    bool is_derivation = named && named->kind == VALUE_DERIVATION;
+    if ((is_derivation ? subject_read(s, &x, typed) : subject_read_expansion(s, &x, typed)) != TW_OK) return TW_ERROR;
     text content;
     text_init(&content);
-    tw_status status = make_text(s, &content, f, &x);
+    s->at = st->at;
+    tw_status status = is_derivation ? write_derivation(s, st, &content, f, x.name, named->derivation)
+                                     : make_text(s, &content, f, &x);
     if (status == TW_OK) status = put_text(s, st->as.write.to_file, &content);
     if (status == TW_OK) {
         result_restart(r, "file");
@@ -70,7 +86,7 @@ tw_status request_write(session *s, const statement *st, result *r, value **keep
     }
     text_clear(&content);
     subject_clear(&x);
-    return status == TW_OK ? TW_OK : request_fail_at(s, st->at);
+    return status == TW_OK ? TW_OK : request_fail_at(s, s->at);
 }
 
 /* ---- show ---- */
@@ -119,6 +135,7 @@ static tw_status show_value(session *s, result *r, const char *name, value *v)
         status = describe_expansion(s, r, name, &v->expansion);
         if (status == TW_OK && s->json) status = describe_object(s, r, name, &v->expansion);
         break;
+    case VALUE_DERIVATION: derivation_show(s, r, name, v->derivation); break;
     case VALUE_RESULT:
         result_line(r, "%s: %s", name, v->what);
         text_add(&r->words, v->result.words.bytes);
@@ -136,6 +153,7 @@ tw_status request_show(session *s, const statement *st, result *r, value **keep)
 {
     (void)keep;
     syntax_name name = st->as.name;
+    if (!name.text) return derivation_show_open(s, r, st->at);
     result_restart(r, "value");
     result_string(r, "name", name.text);
     value *v = names_find(&s->names, name.text);

@@ -22,6 +22,12 @@ static const struct {
     [STATEMENT_USE] = {request_use, CHANGES_ALL},
     [STATEMENT_DROP] = {request_drop, CHANGES_FACTS},
     [STATEMENT_LET] = {request_let, CHANGES_FACTS},
+    [STATEMENT_DERIVE] = {request_derive, CHANGES_FACTS},
+    [STATEMENT_MOVE] = {request_move, CHANGES_FACTS},
+    [STATEMENT_DONE] = {request_done, CHANGES_LAST},
+    [STATEMENT_UNDO] = {request_undo, CHANGES_LAST},
+    [STATEMENT_REPLAY] = {request_replay, CHANGES_FACTS},
+    [STATEMENT_EXPANSION_OF] = {request_expansion_of, CHANGES_FACTS},
     [STATEMENT_EXPAND] = {request_expand, CHANGES_FACTS},
     [STATEMENT_STEPS] = {request_steps, CHANGES_LAST},
     [STATEMENT_COEFFICIENTS] = {request_coefficients, CHANGES_LAST},
@@ -107,6 +113,8 @@ tw_status session_run(session *s, const statement *st, result *r)
     job j = {s, st, r};
     s->at = st->at;
     s->let_name = NULL;
+    s->reads_move = false;
+    s->move_new = NULL;
     engine_forgive(s->e);
     tw_status status = engine_protect(s->e, requests[st->kind].care != CHANGES_LAST ? run_marked : run_job, &j);
     s->let_name = NULL;
@@ -131,6 +139,11 @@ static lower_meaning meaning_of(void *host, const char *name, expr **stands_for,
 {
     session *s = host;
     value *v = names_find(&s->names, name);
+    if (s->reads_move && s->open) { /* variables of the form come first, as inside an integral */
+        expr *variable = expr_symbol(s->e, name);
+        bool is_new = s->move_new && strcmp(s->move_new, name) == 0;
+        if (is_new || (variable && manual_has_variable(s->open, variable))) return MEANING_DECLARED;
+    }
     if (!v || v->kind == VALUE_FUNCTION) {
         expr *symbol = expr_symbol(s->e, name);
         return symbol && session_declares(s, symbol) ? MEANING_DECLARED : MEANING_FREE;
@@ -291,6 +304,8 @@ void session_clear(session *s)
 {
     session_forget_blame(s);
     names_clear(&s->names);
+    manual_release(s->open);
+    free(s->open_name);
     tw_engine_free(s->e);
     s->e = NULL;
 }

@@ -5,6 +5,7 @@
 
 #include <stdbool.h>
 
+#include "engine/manual/manual.h"
 #include "engine/method/expansion.h"
 #include "engine/numeric/evaluate.h"
 #include "lang/lower.h"
@@ -15,6 +16,7 @@ typedef enum value_kind {
     VALUE_EXPRESSION, /* integrals, too */
     VALUE_FUNCTION,
     VALUE_EXPANSION,
+    VALUE_DERIVATION, /* by hand */
     VALUE_RESULT,     /* what a request gave that is no expression: a number, a table, steps */
 } value_kind;
 
@@ -25,8 +27,9 @@ typedef struct value {
     lower_function function; /* FUNCTION, with the names of its parameters to print */
     char **parameter_names;
     expansion expansion;   /* EXPANSION */
+    manual *derivation;    /* DERIVATION */
     result result;         /* RESULT */
-    const char *what;      /* RESULT: "a number", "a table of coefficients", ... */
+    const char *what;      /* RESULT: "a number", "a table of coefficients", ...; DERIVATION: "a derivation" */
 } value;
 
 value *value_new(value_kind kind);
@@ -70,6 +73,11 @@ typedef struct session {
     span at;               /* after a failure: where in the statement's source */
     session_elsewhere elsewhere; /* after a failure in a file that the statement read: where in that */
     bool met_expansion;    /* an expression named an expansion: said when it cannot be built */
+    manual *open;          /* the derivation that `derive` opened; NULL: none */
+    char *open_name;       /* what it is of: a name, or the integral as typed */
+    bool open_is_name;
+    bool reads_move;       /* a move is being read: the variables of the form hide what is defined */
+    const char *move_new;  /* and so does the new variable of a substitution */
     const char *let_name;  /* the name behind a `let` whose request runs, else NULL */
     /* Runs a file for `use` and says whether all of it succeeded; set by the host. */
     tw_status (*run_file)(void *host, const char *path);

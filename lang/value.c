@@ -15,6 +15,7 @@ value *value_new(value_kind kind)
     v->holders = 1;
     if (kind == VALUE_EXPANSION) expansion_init(&v->expansion);
     if (kind == VALUE_RESULT) result_init(&v->result, "");
+    if (kind == VALUE_DERIVATION) v->what = "a derivation";
     return v;
 }
 
@@ -29,6 +30,7 @@ void value_release(value *v)
     if (!v || --v->holders > 0) return;
     if (v->kind == VALUE_EXPANSION) expansion_clear(&v->expansion);
     if (v->kind == VALUE_RESULT) result_clear(&v->result);
+    if (v->kind == VALUE_DERIVATION) manual_release(v->derivation);
     for (size_t k = 0; v->parameter_names && k < v->function.count; k++) free(v->parameter_names[k]);
     free(v->parameter_names);
     free(v);

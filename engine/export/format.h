@@ -3,6 +3,7 @@
 #ifndef TW_EXPORT_FORMAT_H
 #define TW_EXPORT_FORMAT_H
 
+#include "engine/manual/manual.h"
 #include "engine/numeric/evaluate.h"
 
 typedef struct format {
@@ -15,6 +16,9 @@ typedef struct format {
 const format *const *format_table(size_t *count);
 const format *format_find(const char *name);
 bool format_is_planned(const char *name); /* latex, c */
+
+/* A derivation by hand as one JSON object. */
+tw_status derivation_json(tw_engine *e, text *out, const char *name, const manual *m);
 
 /* Pieces shared by json.c and lang's --results json: RFC 8259 strings, balls as decimals whose ball holds the engine's. */
 void json_string(text *out, const char *words);                 /* null for NULL */

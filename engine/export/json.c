@@ -56,8 +56,10 @@ static void add_contribution(tw_engine *e, text *out, const contribution *c)
     text place;
     text_init(&place);
     if (c->variable) expr_print(e, &place, c->variable);
-    text_add(&place, " = ");
-    expr_print(e, &place, c->place);
+    if (c->place) {
+        text_add(&place, " = ");
+        expr_print(e, &place, c->place);
+    }
     text_add(out, "\n  {\"point\": ");
     json_string(out, place.bytes);
     text_clear(&place);

@@ -436,7 +436,7 @@ static tw_status verify(work *w)
 static void record_move(work *w, size_t number)
 {
     manual *m = w->m;
-    step *s = derivation_add(&m->record, w->move->words, w->source);
+    step *s = derivation_add(&m->record, w->move->goes_on ? "repeat parts 1 times" : w->move->words, w->source);
     if (w->detail.length > 0) s->detail = base_copy(w->detail.bytes);
     text form;
     text_init(&form);
@@ -476,6 +476,12 @@ static tw_status make(work *w)
     return status == TW_OK ? verify(w) : TW_ERROR;
 }
 
+static void drop_frame(manual *m)
+{
+    frame_clear(&m->frames[--m->count]);
+    derivation_cut(&m->record, m->frames[m->count - 1].steps);
+}
+
 tw_status manual_apply(manual *m, const manual_move *move)
 {
     work w;
@@ -485,9 +491,12 @@ tw_status manual_apply(manual *m, const manual_move *move)
         manual_move once = *move;
         once.count = 1;
         tw_status all = TW_OK;
-        for (slong k = 0; k < move->count && all == TW_OK && budget_ok(m->e); k++) all = manual_apply(m, &once);
+        for (slong k = 0; k < move->count && all == TW_OK && budget_ok(m->e); k++) {
+            once.goes_on = k > 0;
+            all = manual_apply(m, &once);
+        }
         if (all != TW_OK || m->e->error.kind != ERROR_NONE) {
-            while (m->count > before) manual_undo(m);
+            while (m->count > before) drop_frame(m);
             work_clear(&w);
             return TW_ERROR;
         }
@@ -512,8 +521,11 @@ tw_status manual_apply(manual *m, const manual_move *move)
 bool manual_undo(manual *m)
 {
     if (m->count < 2) return false;
-    frame_clear(&m->frames[--m->count]);
-    derivation_cut(&m->record, m->frames[m->count - 1].steps);
+    bool more = true;
+    while (more && m->count > 1) {
+        more = m->moves[m->count - 2].goes_on;
+        drop_frame(m);
+    }
     return true;
 }
 

@@ -41,6 +41,7 @@ typedef struct manual_move {
     expr *extra;       /* SUBSTITUTE: the inverse or NULL; EXPAND: the point */
     slong count;       /* REPEAT_PARTS: times; EXPAND: terms */
     slong which;       /* in integral K, from 1; 0: every integral that it fits */
+    bool goes_on;      /* REPEAT_PARTS: not the first time of its line; undone with the one before */
     const char *words; /* as typed; in the engine's arena */
     manual_rewriter *rewrite; /* REWRITE */
     void *host;               /* REWRITE: lives as long as the move */

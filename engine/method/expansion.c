@@ -13,7 +13,7 @@
 
 const char *point_kind_word(point_kind k)
 {
-    static const char *const words[] = {"end", "interior", "stationary", "saddle", "singular", "far-end"};
+    static const char *const words[] = {"end", "interior", "stationary", "saddle", "singular", "far-end", "form"};
     return words[k];
 }
 

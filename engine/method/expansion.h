@@ -40,9 +40,10 @@ typedef enum point_kind {
     POINT_STATIONARY,
     POINT_SADDLE,
     POINT_SINGULAR,
-    POINT_FAR_END
+    POINT_FAR_END,
+    POINT_FORM /* no point: terms of a form that was derived by hand; `place` is NULL */
 } point_kind;
-const char *point_kind_word(point_kind k); /* "end", "interior", ..., "far-end" */
+const char *point_kind_word(point_kind k); /* "end", "interior", ..., "far-end", "form" */
 
 typedef struct contribution {
     expr *variable, *place; /* "x = 0" */
@@ -71,6 +72,7 @@ typedef struct expansion {
     contribution *contributions;
     local_form rest;           /* what no dominant contribution's local form covers; its branches need not be monotone */
     expr *rest_floor;          /* p >= rest_floor > 0 in the rest, p measured from the dominant depth; NULL: no rest */
+    expr *remainder;           /* read off a derivation by hand: the integral less all listed terms, exactly; else NULL */
     bool exact;              /* terminating and nothing left out: label `exact` */
     bool alternating_proved; /* reserved for numeric: set by bound_prepare */
     condition_list conditions;

@@ -18,6 +18,7 @@
 #include "engine/numeric/panels.h"
 #include "engine/numeric/shared.h"
 #include "engine/method/lanes.h"
+#include "engine/numeric/split_off.h"
 #include "engine/numeric/terms.h"
 
 const char *label_word(label l)
@@ -532,6 +533,14 @@ tw_status remainder_at_as(tw_engine *e, point_bound *out, expansion *a, const en
     bool all_enclosing = true;
     if (status != TW_OK)
         return status;
+    if (a->remainder) {
+        status = split_off_at(e, out, a, at, terms, bits);
+        if (status == TW_OK)
+            status = conditions_at(e, &out->conditions, a, at);
+        if (out->label <= LABEL_PROVED && !conditions_all_sure(&out->conditions))
+            out->label = LABEL_CONDITIONAL;
+        return status;
+    }
     if (expansion_extend(e, a, terms + 1) != TW_OK)
         engine_forgive(e); /* fewer terms are known: the enclosing theorem then has none to use */
     status = terms_at(e, &t, a, at, terms + 1, false, bits + 64);

@@ -7,6 +7,7 @@
 
 #include "engine/ball/decide.h"
 #include "engine/numeric/shared.h"
+#include "engine/numeric/split_off.h"
 #include "engine/numeric/terms.h"
 
 void remainder_bound_init(remainder_bound *r)
@@ -687,6 +688,8 @@ tw_status remainder_for_all(tw_engine *e, remainder_bound *out, expansion *a, co
     } else if (a->exact && out->terms >= a->terms_asked) {
         out->label = LABEL_EXACT;
         out->bound = expr_int(e, 0);
+    } else if (a->remainder) {
+        status = split_off_for_all(e, out, a, &values, s0);
     } else if (all_enclose(e, a, &values)) {
         status = enclosing_bound(e, out, a, &values);
     } else if (missing) {
