@@ -3,6 +3,9 @@
  * it. One table, so lookup, list, completion and tests agree. */
 #include "lang/help.h"
 
+/* The integral of several examples. */
+#define FADE "large s\nlet Fade = integral from 0 to inf of exp(-s*x)/sqrt(1 + x^2) dx\n"
+
 #define LATER false
 #define HERE true
 
@@ -36,8 +39,8 @@ static const help_entry entries[] = {
      "Without `by` the engine\nchooses the method and says why. METHOD: parts, moments, watson.",
      "large s\nlet F = integral from 0 to inf of exp(-s*x)*sqrt(1 + 4*x) dx\nexpand F to 5 terms by watson as A\nsteps A",
      NULL},
-    {"steps", HELP_REQUEST, HERE, "steps NAME",
-     "Shows the derivation of an expansion, step by step: the rule and its\nsource, the form after it, the conditions, and the "
+    {"steps", HELP_REQUEST, HERE, "steps NAME\nsteps",
+     "Shows a derivation, of an expansion or by hand, step by step (without a name\nthe open one): the rule and its\nsource, the form after it, the conditions, and the "
      "exact remainder where\nterms were split off.",
      "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 4 terms\nsteps A", NULL},
     {"coefficients", HELP_REQUEST, HERE, "coefficients of NAME [from N to M]",
@@ -103,25 +106,59 @@ static const help_entry entries[] = {
      "rewrite sin(x)^2 + 1 with tidy", NULL},
     {"why", HELP_RULE, LATER, "why not RULE", "Says which part or condition of a rule failed for the current form.",
      "why not halve", NULL},
-    {"derive", HELP_RULE, LATER, "derive INTEGRAL\n    MOVES\ndone as NAME", "Opens a derivation by hand.",
-     "large s\nlet F = integral from 0 to inf of exp(-s*x)/(1 + x^2) dx\nderive F", NULL},
-    {"done", HELP_RULE, LATER, "done [as NAME]", "Ends a derivation by hand and keeps it.", "done as D", NULL},
-    {"undo", HELP_RULE, LATER, "undo", "Takes the last move of a derivation back.", "undo", NULL},
-    {"replay", HELP_RULE, LATER, "replay NAME on INTEGRAL", "Runs a kept derivation on another integral.",
-     "large s\nlet F = integral from 0 to inf of exp(-s*x)/(1 + x^2) dx\nreplay D on F", NULL},
+    {"derive", HELP_RULE, HERE, "derive INTEGRAL\n    MOVES\ndone [as NAME]",
+     "Opens a derivation by hand. Each line until `done` is a move on the current\nform; it is checked, by its theorem and by "
+     "certified balls at sample values\nof the parameters, before it is kept. `undo` takes the last one back, `steps`\nshows the "
+     "way so far, `show` the form with what it rests on.",
+     FADE "derive Fade\n    substitute x = t/s\n    parts integrating exp(-t)\n    repeat parts 3 times\ndone as D\n"
+     "let A = expansion of D\nevaluate A at s = 10", NULL},
+    {"done", HELP_RULE, HERE, "done [as NAME]",
+     "Ends the open derivation; with a name it is kept: `steps`, `show`, `replay`,\n`expansion of`, `rule from` and `write` take "
+     "it.",
+     FADE "derive Fade\n    parts integrating exp(-s*x)\ndone as D\nsteps D", NULL},
+    {"undo", HELP_RULE, HERE, "undo", "Takes the last move of the open derivation back.",
+     FADE "derive Fade\n    parts integrating exp(-s*x)\n    undo\n    substitute x = t/s\ndone", NULL},
+    {"replay", HELP_RULE, HERE, "replay NAME on INTEGRAL\nlet NEW = replay NAME on INTEGRAL",
+     "Runs the moves of a kept derivation on another integral of the same shape;\neach move is checked again there.",
+     FADE "derive Fade\n    parts integrating exp(-s*x)\n    repeat parts 2 times\ndone as D\n"
+     "let G = integral from 0 to inf of exp(-s*y)/(2 + y)^3 dy\nlet E = replay D on G\nlet B = expansion of E", NULL},
 
     /* ---- moves ---- */
-    {"substitute", HELP_MOVE, LATER, "substitute VAR = EXPR [with NEW = INVERSE]", "Changes the variable of integration.",
-     "substitute x = t/s", NULL},
-    {"parts", HELP_MOVE, LATER, "parts integrating FACTOR", "Integrates by parts.", "parts integrating exp(-t)", NULL},
-    {"repeat", HELP_MOVE, LATER, "repeat parts N times", "Repeats a move.", "repeat parts 3 times", NULL},
-    {"differentiate", HELP_MOVE, LATER, "differentiate in PARAM", "Differentiates the integral in a parameter.",
-     "differentiate in a", NULL},
-    {"integrate", HELP_MOVE, LATER, "integrate termwise\nintegrate back in PARAM from VALUE",
-     "Integrates a series term by term, or back in a parameter.", "integrate termwise", NULL},
-    {"split", HELP_MOVE, LATER, "split at POINT", "Splits the range of integration.", "split at 1", NULL},
-    {"rotate", HELP_MOVE, LATER, "rotate by ANGLE", "Turns the path of integration.", "rotate by pi/4", NULL},
-    {"swap", HELP_MOVE, LATER, "swap", "Changes the order of integration.", "swap", NULL},
+    {"substitute", HELP_MOVE, HERE, "substitute VAR = EXPR [with NEW = INVERSE] [in integral K]",
+     "Changes the variable of integration; the new variable is the one name in\nEXPR that is not yet known. The change must be "
+     "monotone, and run through\nthe whole range. Where the inverse is not found it has to be said.",
+     FADE "derive Fade\n    substitute x = sinh(u)\ndone", NULL},
+    {"parts", HELP_MOVE, HERE, "parts integrating FACTOR [in integral K]",
+     "Integrates by parts: FACTOR is integrated, what is left of the integrand\ndifferentiated. An antiderivative of FACTOR must "
+     "be found, and the boundary\nterms must be finite.",
+     "given a > 0, n > 0\nderive integral from 0 to inf of x^n*exp(-a*x) dx\n    parts integrating exp(-a*x)\ndone", NULL},
+    {"repeat", HELP_MOVE, HERE, "repeat parts N times",
+     "Integrates by parts again, N times: the antiderivative of the last time is\nintegrated on.",
+     FADE "derive Fade\n    parts integrating exp(-s*x)\n    repeat parts 3 times\ndone", NULL},
+    {"differentiate", HELP_MOVE, HERE, "differentiate in PARAM",
+     "Differentiates the form in a parameter, under the integral sign. From then\non the form is the derivative of what it was; "
+     "`integrate back` undoes that.",
+     "given a > 0, b > 0\nderive integral from 0 to inf of exp(-a*x)*sin(b*x)/x dx\n    differentiate in b\n    integrate "
+     "termwise\n    integrate back in b from 0\ndone", NULL},
+    {"integrate", HELP_MOVE, HERE, "integrate termwise [in integral K]\nintegrate back in PARAM from VALUE",
+     "Termwise: multiplies the integrand out and integrates each term that has a\nknown integral. Back: from the value of PARAM "
+     "at which the integral is known,\nover the derivative that the form is, to PARAM; VALUE may be inf.",
+     "given a > 0\nderive integral from 0 to inf of (1 + x)^2*exp(-a*x) dx\n    integrate termwise\ndone", NULL},
+    {"split", HELP_MOVE, HERE, "split at POINT [in integral K]",
+     "Splits an integral in two at a point inside its range. After it a move acts\non every integral that it fits; `in integral "
+     "K` picks one.",
+     FADE "derive Fade\n    split at 1\n    substitute x = 1 + y in integral 2\ndone", NULL},
+    {"rotate", HELP_MOVE, HERE, "rotate by ANGLE [in integral K]",
+     "Turns the path of an integral from 0 to inf by an angle in the complex\nplane, a rational multiple of pi. The arcs must be "
+     "seen to vanish and the\nsector to hold no singularity; else this stays an open condition.",
+     "large s\nderive integral from 0 to inf of exp(i*s*x)/(1 + x) dx\n    rotate by pi/2\ndone", NULL},
+    {"expand", HELP_MOVE, HERE, "expand FACTOR around POINT to N terms [in integral K]",
+     "In a derivation: puts the first N terms of the series of FACTOR in its place.\nThe rest stays as an exact integral, the "
+     "remainder.",
+     FADE "derive Fade\n    expand 1/sqrt(1 + x^2) around 0 to 4 terms\n    integrate termwise\ndone", NULL},
+    {"swap", HELP_MOVE, HERE, "swap [in integral K]",
+     "Changes the order of two integrations over a rectangle. Absolute convergence\nis proved, or stays an open condition.",
+     "given a > 0\nderive integral from 0 to inf of\n  integral from 0 to 1 of exp(-a*x)*y^2/(1 + x) dy dx\n    swap\ndone", NULL},
 
     /* ---- expressions ---- */
     {"integral", HELP_EXPRESSION, HERE, "integral from A to B of BODY dx\nintegral along P to Q to R of BODY dz",
@@ -243,19 +280,19 @@ static const help_entry entries[] = {
      NULL},
     {"scale", HELP_CLAUSE, HERE, "on a log scale", "The values grow by equal factors.", NULL, "on"},
     {"all", HELP_CLAUSE, HERE, "with all contributions", "Sums the subdominant contributions, too.", NULL, "evaluate"},
-    {"expansion", HELP_CLAUSE, LATER, "let NAME = expansion of DERIVATION",
-     "Reads the last form of a kept derivation as an expansion.", "let A = expansion of D", NULL},
+    {"expansion", HELP_CLAUSE, HERE, "let NAME = expansion of DERIVATION",
+     "Reads the last form of a kept derivation as an expansion: its terms are\nsummed, the integrals left are the remainder.",
+     NULL, "derive"},
     {"for", HELP_CLAUSE, LATER, "plan NAME for relative error 1e-8", "Before what a plan is for.", NULL, "plan"},
     {"relative", HELP_CLAUSE, LATER, "for relative error E", "Error divided by the value.", NULL, "plan"},
     {"error", HELP_CLAUSE, LATER, "plot error of NAME ...", "The integral minus what is summed.", NULL, "plan"},
     {"over", HELP_CLAUSE, LATER, "over NAME from A to B", "The range that a plan covers.", NULL, "plan"},
-    {"around", HELP_CLAUSE, LATER, "expand FACTOR around POINT to N terms", "Where a factor is expanded, in a derivation.",
-     "derive (integral from 0 to inf of exp(-x)*cos(x) dx)\nexpand cos(x) around 0 to 3 terms", NULL},
-    {"integrating", HELP_CLAUSE, LATER, "parts integrating FACTOR", "The factor that is integrated.", NULL, "parts"},
-    {"times", HELP_CLAUSE, LATER, "repeat parts N times", "How often a move is repeated.", NULL, "repeat"},
-    {"back", HELP_CLAUSE, LATER, "integrate back in PARAM from VALUE", "Integrates in a parameter.",
-     "integrate back in a from 1", NULL},
-    {"termwise", HELP_CLAUSE, LATER, "integrate termwise", "Term by term.", NULL, "integrate"},
+    {"around", HELP_CLAUSE, HERE, "expand FACTOR around POINT to N terms", "Where a factor is expanded, in a derivation.",
+     "derive (integral from 0 to inf of exp(-x)*cos(x/4) dx)\nexpand cos(x/4) around 0 to 3 terms", NULL},
+    {"integrating", HELP_CLAUSE, HERE, "parts integrating FACTOR", "The factor that is integrated.", NULL, "parts"},
+    {"times", HELP_CLAUSE, HERE, "repeat parts N times", "How often a move is repeated.", NULL, "repeat"},
+    {"back", HELP_CLAUSE, HERE, "integrate back in PARAM from VALUE", "Integrates in a parameter.", NULL, "differentiate"},
+    {"termwise", HELP_CLAUSE, HERE, "integrate termwise", "Term by term.", NULL, "integrate"},
     {"not", HELP_CLAUSE, LATER, "why not RULE", "Asks why a rule does not apply.", NULL, "why"},
     {"becomes", HELP_CLAUSE, LATER, NULL, "Between the two sides of a rule.", NULL, "rule"},
     {"because", HELP_CLAUSE, LATER, NULL, "The source of a rule.", NULL, "rule"},

@@ -33,8 +33,64 @@ bool range_is_positive(tw_engine *e, expr *from)
     return sign == 1 || sign == 0;
 }
 
+/* f(g(u)) = u where it holds for every u: sinh(asinh(u)), cosh(acosh(u)), ...; acosh(cosh(u)) and asinh(sinh(u)) are left
+ * alone, where it may not. */
+static bool undoes(function_id outer, function_id inner)
+{
+    static const struct {
+        function_id outer, inner;
+    } pairs[] = {
+        {FUNCTION_SINH, FUNCTION_ASINH}, {FUNCTION_COSH, FUNCTION_ACOSH}, {FUNCTION_TANH, FUNCTION_ATANH},
+        {FUNCTION_SIN, FUNCTION_ASIN},   {FUNCTION_COS, FUNCTION_ACOS},   {FUNCTION_TAN, FUNCTION_ATAN},
+    };
+    for (size_t k = 0; k < sizeof pairs / sizeof *pairs; k++)
+        if (pairs[k].outer == outer && pairs[k].inner == inner) return true;
+    return false;
+}
+
+/* sinh(acosh(u)) = sqrt(u - 1) sqrt(u + 1), cosh(asinh(u)) = sqrt(1 + u^2), cos(asin(u)) = sin(acos(u)) = sqrt(1 - u^2),
+ * everywhere on the principal branches (DLMF 4.16, 4.30 with 4.37). */
+static expr *fold_pair(tw_engine *e, function_id outer, expr *inner)
+{
+    expr *u = inner->args[0], *one = expr_int(e, 1);
+    if (undoes(outer, inner->is.function)) return u;
+    if (outer == FUNCTION_SINH && inner->is.function == FUNCTION_ACOSH)
+        return expr_mul(e, expr_sqrt(e, expr_sub(e, u, one)), expr_sqrt(e, expr_add(e, u, one)));
+    if (outer == FUNCTION_COSH && inner->is.function == FUNCTION_ASINH)
+        return expr_sqrt(e, expr_add(e, one, expr_mul(e, u, u)));
+    if ((outer == FUNCTION_COS && inner->is.function == FUNCTION_ASIN) ||
+        (outer == FUNCTION_SIN && inner->is.function == FUNCTION_ACOS))
+        return expr_sqrt(e, expr_sub(e, one, expr_mul(e, u, u)));
+    return NULL;
+}
+
+static expr *fold_inverses(tw_engine *e, expr *f)
+{
+    if (!f || f->count == 0 || f->kind == EXPR_INTEGRAL || f->kind == EXPR_CONTOUR || f->kind == EXPR_SUMMATION ||
+        f->kind == EXPR_PIECEWISE || f->kind == EXPR_ROOT || !budget_ok(e))
+        return f;
+    expr **parts = base_alloc(f->count * sizeof *parts), *made = f;
+    bool same = true;
+    for (uint32_t k = 0; k < f->count; k++) {
+        parts[k] = fold_inverses(e, f->args[k]);
+        same = same && parts[k] == f->args[k];
+    }
+    if (f->kind == EXPR_CALL && f->count == 1 && parts[0] && parts[0]->kind == EXPR_CALL && parts[0]->count == 1 &&
+        (made = fold_pair(e, f->is.function, parts[0])) != NULL) {
+    } else if (same) made = f;
+    else if (f->kind == EXPR_SUM) made = expr_sum(e, parts, f->count);
+    else if (f->kind == EXPR_PRODUCT) made = expr_product(e, parts, f->count);
+    else if (f->kind == EXPR_POWER) made = expr_pow(e, parts[0], parts[1]);
+    else if (f->kind == EXPR_CALL) made = expr_call(e, f->is.function, parts, f->count);
+    else made = f;
+    free(parts);
+    return made;
+}
+
 expr *tidy(tw_engine *e, expr *f, expr *x, bool positive)
 {
+    if (!f) return NULL;
+    f = fold_inverses(e, f);
     if (!f) return NULL;
     expr *list[] = {x};
     expr *made = normal_under_facts(e, f, list, x && positive ? 1 : 0);
@@ -345,6 +401,33 @@ static expr *real_exponent(tw_engine *e, expr *u, expr *x)
     return sum;
 }
 
+/* An upper bound of a real exponent for x > 0 without hyperbolic functions: c cosh(v) <= c (1 + v^2/2) and c exp(v) <=
+ * c (1 + v + v^2/2), v > 0, for c < 0 (their series have positive terms only). */
+static expr *plain_exponent(tw_engine *e, expr *u, expr *x)
+{
+    expr *const *parts, *sum = expr_int(e, 0), *half = expr_frac(e, 1, 2), *one = expr_int(e, 1);
+    expr *zero = expr_int(e, 0), *inf = expr_constant_of(e, CONSTANT_INF);
+    size_t count = expr_terms(&u, &parts);
+    for (size_t k = 0; k < count; k++) {
+        expr *const *factors, *c = one, *call = NULL, *made = parts[k];
+        size_t n = expr_factors(&parts[k], &factors);
+        for (size_t j = 0; j < n; j++)
+            if (!call && (expr_is_call(factors[j], FUNCTION_COSH) || expr_is_call(factors[j], FUNCTION_EXP)) &&
+                expr_has(factors[j], x))
+                call = factors[j];
+            else c = expr_mul(e, c, factors[j]);
+        if (call && c && !expr_has(c, x) && decide_sign(e, c) == -1) {
+            expr *v = call->args[0], *square = expr_mul(e, half, expr_mul(e, v, v));
+            expr *marked = expr_substitute(e, v, x, expr_symbol(e, "x_real"));
+            bool cosh = call->is.function == FUNCTION_COSH;
+            if (marked && value_is_real(e, marked) && (cosh || sign_on(e, v, x, zero, inf) == 1))
+                made = expr_mul(e, c, expr_add(e, one, cosh ? square : expr_add(e, v, square)));
+        }
+        sum = expr_add(e, sum, made);
+    }
+    return sum ? expr_expand(e, sum) : NULL;
+}
+
 /* A function with the modulus of f, or an upper bound of it, for a product f of exponentials and other factors. */
 static expr *modulus_form(tw_engine *e, expr *f, expr *x)
 {
@@ -355,6 +438,7 @@ static expr *modulus_form(tw_engine *e, expr *f, expr *x)
         expr *one = factors[k];
         if (expr_is_call(one, FUNCTION_EXP)) {
             expr *u = real_exponent(e, one->args[0], x);
+            if (u) u = plain_exponent(e, u, x);
             one = u ? expr_call1(e, FUNCTION_EXP, u) : NULL;
         }
         if (one && expr_is_constant(one, CONSTANT_I)) continue;

@@ -108,6 +108,18 @@ static const char *free_name(tw_engine *e, const char *wanted, expr *const *part
     return kept;
 }
 
+/* exp(-s - s*y) = exp(-s) exp(-s*y) */
+static void split_exponential(tw_engine *e, expr *f, expr *x, expr **outside, expr **inside)
+{
+    expr *const *parts, *free_part = expr_int(e, 0), *rest = expr_int(e, 0);
+    size_t count = expr_terms(&f->args[0], &parts);
+    for (size_t k = 0; k < count; k++)
+        if (expr_has(parts[k], x)) rest = expr_add(e, rest, parts[k]);
+        else free_part = expr_add(e, free_part, parts[k]);
+    *outside = expr_mul(e, *outside, expr_call1(e, FUNCTION_EXP, free_part));
+    *inside = expr_mul(e, *inside, expr_call1(e, FUNCTION_EXP, rest));
+}
+
 /* Factors free of the variable go in front; a body that vanishes leaves nothing. */
 tw_status work_add_integral(work *w, const piece *p)
 {
@@ -120,8 +132,9 @@ tw_status work_add_integral(work *w, const piece *p)
     expr *const *factors;
     size_t count = expr_factors(&body, &factors);
     for (size_t k = 0; k < count; k++)
-        if (expr_has(factors[k], p->x)) inside = expr_mul(e, inside, factors[k]);
-        else outside = expr_mul(e, outside, factors[k]);
+        if (!expr_has(factors[k], p->x)) outside = expr_mul(e, outside, factors[k]);
+        else if (expr_is_call(factors[k], FUNCTION_EXP)) split_exponential(e, factors[k], p->x, &outside, &inside);
+        else inside = expr_mul(e, inside, factors[k]);
     outside = tidy(e, outside, NULL, false);
     expr *integral = expr_integral(e, p->x, p->from, p->to, inside);
     expr *parts[] = {outside, integral};

@@ -87,29 +87,62 @@ tw_status move_differentiate(work *w)
 
 /* ---- integrate back ---- */
 
+/* Is the form continuous in a up to a = from, an end of what the facts allow? Yes, if with a allowed there, too, either the
+ * derivatives of the integrands or the integrands themselves are bounded by integrable functions that hold for all such a:
+ * |V(a) - V(from)| <= |a - from| int sup |df/da| dx, or dominated convergence. */
+static bool continuous_up_to(work *w, expr *form, expr *a, expr *from, bool above)
+{
+    tw_engine *e = w->e;
+    work probe = *w;
+    struct facts *kept = facts_copy(e);
+    memset(&probe.next, 0, sizeof probe.next);
+    probe.next.plain = expr_int(e, 0);
+    facts_forget(e, a);
+    bool good = facts_add(e, above ? expr_relation_of(e, RELATION_LESS_EQUAL, from, a)
+                                   : expr_relation_of(e, RELATION_LESS_EQUAL, a, from), CONDITION_GIVEN) == TW_OK &&
+                work_add_any(&probe, form, NULL) == TW_OK && !expr_has(probe.next.plain, a);
+    for (size_t k = 0; k < probe.next.live.count && good; k++) {
+        piece p;
+        good = piece_open(&probe, &p, &probe.next.live.list[k]) && !expr_has(p.outside, a) && !expr_has(p.from, a) &&
+               !expr_has(p.to, a);
+        bool positive = good && range_is_positive(e, p.from);
+        expr *slope = good ? tidy(e, expr_derivative(e, p.body, a), p.x, positive) : NULL;
+        good = slope && (converges_absolutely(e, slope, p.x, p.from, p.to) == ANSWER_YES ||
+                         (forgive(e) && converges_absolutely(e, p.body, p.x, p.from, p.to) == ANSWER_YES));
+    }
+    terms_clear_list(&probe.next.live);
+    facts_restore(e, kept);
+    return forgive(e) && good;
+}
+
 /* The whole way from the value to the parameter must be allowed by the facts. */
-static tw_status check_way(work *w, expr *a, expr *from)
+static tw_status check_way(work *w, expr *form, expr *a, expr *from)
 {
     tw_engine *e = w->e;
     fmpq_t low, high;
     fmpq_init(low);
     fmpq_init(high);
     int known = facts_interval(e, a, low, high);
-    bool inside = true;
+    bool inside = true, at_low = false;
     if (known & 1) {
         int side = decide_sign(e, expr_sub(e, from, expr_fmpq(e, low)));
         inside = side == 1 || (side == 0 && !(known & 4));
+        at_low = side == 0;
     }
+    bool at_high = false;
     if (known & 2) {
         int side = decide_sign(e, expr_sub(e, expr_fmpq(e, high), from));
         inside = inside && (side == 1 || (side == 0 && !(known & 8)));
+        at_high = side == 0;
     }
     fmpq_clear(low);
     fmpq_clear(high);
     if (!forgive(e)) return TW_ERROR;
     if (inside) return TW_OK;
+    bool proved = (at_low || at_high) && continuous_up_to(w, form, a, from, at_low);
+    if (e->error.kind != ERROR_NONE) return TW_ERROR;
     char *words = expr_text(e, from);
-    work_needs(w, CONDITION_OPEN, "the integral is continuous in %s up to %s", a->is.name, words ? words : "the value");
+    work_needs(w, proved ? CONDITION_PROVED : CONDITION_OPEN, "the integral is continuous in %s up to %s", a->is.name, words ? words : "the value");
     free(words);
     return TW_OK;
 }
@@ -209,7 +242,7 @@ tw_status move_integrate_back(work *w)
                            a->is.name);
     if (expr_has(from, a)) return engine_fail(e, ERROR_VALUE, "the value must not hold %s itself", a->is.name);
     if (expr_is_minus_inf(from)) return engine_fail(e, ERROR_UNSUITABLE, "integrate back from a finite value or inf");
-    if (value_at(w, p, from, &start) != TW_OK || (!from->infinite && check_way(w, a, from) != TW_OK)) return TW_ERROR;
+    if (value_at(w, p, from, &start) != TW_OK || (!from->infinite && check_way(w, p->form, a, from) != TW_OK)) return TW_ERROR;
     w->next.pending = p->outer;
     w->next.subject = p->subject;
     w->expected = p->form;
