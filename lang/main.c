@@ -3,6 +3,7 @@
 #include <getopt.h>
 #include <signal.h>
 #include <stdio.h>
+#include <stdio_ext.h>
 #include <stdlib.h>
 #include <string.h>
 #include <sys/resource.h>
@@ -133,16 +134,10 @@ static bool read_command(command *c, int argc, char **argv)
 #endif
 #endif
 
-static void *gmp_resize(void *old, size_t old_bytes, size_t bytes)
+/* FLINT's own words about an abort lie in the buffer, behind what has been shown: only ours shall appear. */
+static void drop_pending_output(void)
 {
-    (void)old_bytes;
-    return base_resize(old, bytes);
-}
-
-static void gmp_free(void *old, size_t bytes)
-{
-    (void)bytes;
-    free(old);
+    __fpurge(stdout);
 }
 
 static void on_abort(int signal_number)
@@ -156,11 +151,12 @@ static void on_abort(int signal_number)
 
 /* The engine asks for its memory limit in its loops. Behind that stands the system's limit, for a single library call that
  * takes more than all of it: then an allocation fails, and its statement ends with an error (GMP would end the program, so
- * this host hands it the engine's allocator). Outside of a statement nothing is left but to say so and end. */
+ * this host hands it the engine's allocators). Outside of a statement nothing is left but to say so and end. */
 static void limit_memory(size_t mib)
 {
     signal(SIGABRT, on_abort);
-    mp_set_memory_functions(base_alloc, gmp_resize, gmp_free);
+    setvbuf(stdout, NULL, _IOFBF, BUFSIZ);
+    edge_install_allocators(drop_pending_output);
 #ifndef SANITIZED
     struct rlimit limit;
     rlim_t wanted = ((rlim_t)mib << 21) + ((rlim_t)256 << 20);

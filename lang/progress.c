@@ -1,4 +1,4 @@
-/* One timer tick a second while a statement runs. The tick writes the progress line and counts towards the guard: it may
+/* A timer ticks while a statement runs. The tick writes the progress line and counts towards the guard: it may
  * only do what a signal handler may (write, _exit), so its words are prepared outside. It cannot be late, because it does
  * not need the engine's cooperation; that is the point, since a single call of a library may compute for hours. State is
  * static, because a signal handler has no argument: one statement runs at a time. */
@@ -8,12 +8,12 @@
 #include <sys/time.h>
 #include <unistd.h>
 
-enum { WORDS_ROOM = 72 };
+enum { WORDS_ROOM = 72, TICKS_A_SECOND = 4 };
 
 static char words_now[2][WORDS_ROOM + 1];    /* what the engine does; the handler reads one while the other is filled */
 static volatile sig_atomic_t words_shown;    /* which of the two */
-static volatile sig_atomic_t seconds_gone;
-static volatile sig_atomic_t seconds_allowed; /* 0: no guard */
+static volatile sig_atomic_t ticks_gone;
+static volatile sig_atomic_t ticks_allowed; /* 0: no guard */
 static volatile sig_atomic_t line_wanted, line_drawn, json_wanted;
 
 static void put(int fd, const char *bytes, size_t length)
@@ -52,8 +52,8 @@ static void draw_line(long seconds)
 static void tick(int signal_number)
 {
     (void)signal_number;
-    seconds_gone = seconds_gone + 1;
-    if (seconds_allowed && seconds_gone >= seconds_allowed) {
+    ticks_gone = ticks_gone + 1;
+    if (ticks_allowed && ticks_gone >= ticks_allowed) {
         wipe_line();
         put_words(STDERR_FILENO, "termwise: error: a computation does not answer long after its time limit; giving up\n");
         if (json_wanted)
@@ -62,7 +62,7 @@ static void tick(int signal_number)
                                      "null}\n");
         _exit(1);
     }
-    if (line_wanted) draw_line(seconds_gone);
+    if (line_wanted && ticks_gone % TICKS_A_SECOND == 0) draw_line(ticks_gone / TICKS_A_SECOND);
 }
 
 static void set_words(const char *words)
@@ -81,20 +81,21 @@ static void engine_speaks(void *host, const char *words)
     if (words) set_words(words);
 }
 
-static void set_timer(long seconds)
+static void set_timer(bool on)
 {
-    struct itimerval every = {{seconds, 0}, {seconds, 0}};
+    struct itimerval every = {{0, on ? 1000000 / TICKS_A_SECOND : 0}, {0, on ? 1000000 / TICKS_A_SECOND : 0}};
     setitimer(ITIMER_REAL, &every, NULL);
 }
 
-void progress_start(tw_engine *e, const char *words, bool show, double limit, bool json)
+void progress_start(tw_engine *e, const char *words, bool show, double limit, bool patient, bool json)
 {
     set_words(words);
-    seconds_gone = 0;
+    ticks_gone = 0;
     line_wanted = show && isatty(STDERR_FILENO);
     json_wanted = json;
-    seconds_allowed = limit > 0 && limit < 1e8 ? (sig_atomic_t)(2 * limit + 20) : 0;
-    if (!line_wanted && !seconds_allowed) return;
+    double allowed = patient ? 2 * limit + 20 : 1.1 * limit + 0.9;
+    ticks_allowed = limit > 0 && limit < 1e8 ? (sig_atomic_t)(TICKS_A_SECOND * allowed) : 0;
+    if (!line_wanted && !ticks_allowed) return;
     e->progress = engine_speaks;
     struct sigaction action;
     memset(&action, 0, sizeof action);
@@ -102,14 +103,14 @@ void progress_start(tw_engine *e, const char *words, bool show, double limit, bo
     action.sa_flags = SA_RESTART;
     sigemptyset(&action.sa_mask);
     sigaction(SIGALRM, &action, NULL);
-    set_timer(1);
+    set_timer(true);
 }
 
 void progress_end(tw_engine *e)
 {
-    if (line_wanted || seconds_allowed) set_timer(0);
+    if (line_wanted || ticks_allowed) set_timer(false);
     wipe_line();
     line_wanted = 0;
-    seconds_allowed = 0;
+    ticks_allowed = 0;
     e->progress = NULL;
 }

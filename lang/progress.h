@@ -10,7 +10,7 @@
 /* Called as a statement starts. words: what it does ("expanding F"). show: write to standard error when it takes longer than
  * a second. limit: seconds after which the statement should have ended by itself (0: none); much later than that the program
  * ends with exit status 1. json: say so on standard output, too. */
-void progress_start(tw_engine *e, const char *words, bool show, double limit, bool json);
+void progress_start(tw_engine *e, const char *words, bool show, double limit, bool patient, bool json);
 
 /* Called when it has ended: wipes the line, disarms the guard. */
 void progress_end(tw_engine *e);

@@ -165,7 +165,7 @@ static bool run_statement(run *r, source *whole, size_t from, const statement *s
     text_init(&words);
     session_describe(st, &words);
     budget_start(e, r->options.time_limit);
-    progress_start(e, words.bytes, true, r->options.time_limit, r->options.json);
+    progress_start(e, words.bytes, true, r->options.time_limit, r->at_prompt, r->options.json);
     result made;
     result_init(&made, "done");
     tw_status status = session_run(&r->session, st, &made);

@@ -51,7 +51,7 @@ void engine_progress(tw_engine *e, const char *words)
         e->progress(e->progress_host, words);
 }
 
-static double seconds_now(void)
+double budget_clock(void)
 {
     struct timespec now;
     clock_gettime(CLOCK_MONOTONIC, &now);
@@ -70,6 +70,11 @@ static size_t memory_resident(void)
     return read == 2 ? (size_t)resident * (size_t)sysconf(_SC_PAGESIZE) : 0;
 }
 
+bool budget_memory_ok(tw_engine *e)
+{
+    return e->memory_limit == 0 || memory_resident() <= e->memory_limit;
+}
+
 bool budget_ok(tw_engine *e)
 {
     if (e->interrupted) {
@@ -78,14 +83,14 @@ bool budget_ok(tw_engine *e)
     }
     if (++e->budget_ticks % 16 != 0 || (e->deadline == 0 && e->memory_limit == 0))
         return true;
-    double now = seconds_now();
+    double now = budget_clock();
     if (e->deadline != 0 && now > e->deadline) {
         engine_fail(e, ERROR_TIME, "the time limit has passed");
         return false;
     }
     if (e->memory_limit != 0 && now - e->memory_checked > 0.02) {
         e->memory_checked = now;
-        if (memory_resident() > e->memory_limit) {
+        if (!budget_memory_ok(e)) {
             engine_fail(e, ERROR_MEMORY, "the memory limit of %zu MiB is exceeded", e->memory_limit >> 20);
             return false;
         }
@@ -96,7 +101,7 @@ bool budget_ok(tw_engine *e)
 void budget_start(tw_engine *e, double seconds)
 {
     e->interrupted = 0;
-    e->deadline = seconds > 0 ? seconds_now() + seconds : 0;
+    e->deadline = seconds > 0 ? budget_clock() + seconds : 0;
     e->budget_ticks = 15; /* so that the first question looks at the clock */
     e->memory_checked = 0;
 }

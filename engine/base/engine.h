@@ -59,6 +59,7 @@ struct tw_engine {
     double deadline;                     /* seconds of CLOCK_MONOTONIC; 0: none */
     size_t memory_limit;                 /* bytes of resident memory of the process; 0: none */
     unsigned budget_ticks;
+    unsigned jumps;                      /* how often an edge has caught an abort: memories made before may be half made */
     double memory_checked;               /* when the resident memory was last looked at */
     long allocations_left;               /* tests: after so many more allocations fail; negative: never */
     struct expr_table *exprs;
@@ -93,6 +94,10 @@ bool budget_ok(tw_engine *e);
 
 /* Starts a new allowance: seconds from now (0: none). Also clears an old interrupt. */
 void budget_start(tw_engine *e, double seconds);
+
+/* Seconds of CLOCK_MONOTONIC; whether the process is within the memory limit (asks the system: some 10 us). */
+double budget_clock(void);
+bool budget_memory_ok(tw_engine *e);
 
 /* Memory from the scratch stack: take a mark with arena_mark(&e->scratch), give it back with arena_release. */
 void *engine_scratch(tw_engine *e, size_t count, size_t bytes_each);

@@ -3,7 +3,7 @@
  *
  * FLINT reports trouble it cannot return (out of memory, a division by zero that nobody checked) through a process-wide
  * abort hook. flint.c installs one that jumps to the edge that engine_protect() has set up on this thread. The host's
- * GMP allocators are never replaced. */
+ * GMP allocators are never replaced unless it asks for it. */
 #ifndef TW_BASE_FLINT_H
 #define TW_BASE_FLINT_H
 
@@ -55,6 +55,12 @@
 
 /* Installs the abort hook; called for each engine, does its work once a process. */
 void flint_hook_install(void);
+
+/* For a program that owns its process: GMP and FLINT allocate through the edge from now on, so that a single call of theirs
+ * which goes on past the deadline, the memory limit or an interrupt is left at its next allocation, as an error of that
+ * kind (what it held is lost). on_abort (or NULL) is called when FLINT gives up, after it has printed its reason on standard
+ * output's buffer and before the jump. To be called before FLINT allocates anything. */
+void edge_install_allocators(void (*on_abort)(void));
 
 /* Leaves through the innermost edge of this thread as ERROR_MEMORY; ends the process where there is none. */
 void edge_leave_memory(void) __attribute__((noreturn));

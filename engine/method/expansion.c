@@ -217,14 +217,90 @@ slong contribution_count_terms(const contribution *c)
     return count;
 }
 
+static bool lacks_terms(const contribution *c, slong terms)
+{
+    return !c->terminates && contribution_count_terms(c) < terms && terms > c->searched;
+}
+
+/* What a method changes of a contribution when it extends it. */
+typedef struct kept_lanes {
+    size_t lane_count;
+    lane *lanes;
+    domain_kind domain;
+    slong searched;
+    bool terminates;
+    bool aside; /* is being extended */
+} kept_lanes;
+
+typedef struct extension {
+    tw_engine *e;
+    expansion *a;
+    const method *m;
+    slong terms;
+} extension;
+
+static tw_status run_extension(void *host)
+{
+    extension *x = host;
+    return x->m->extend(x->e, x->a, x->terms);
+}
+
+static void lanes_set_aside(kept_lanes *k, contribution *c)
+{
+    *k = (kept_lanes){c->lane_count, c->lanes, c->domain, c->searched, c->terminates, true};
+    c->lane_count = 0;
+    c->lanes = NULL;
+}
+
+static void lanes_put_back(kept_lanes *k, contribution *c)
+{
+    c->lane_count = k->lane_count;
+    c->lanes = k->lanes;
+    c->domain = k->domain;
+    c->searched = k->searched;
+    c->terminates = k->terminates;
+}
+
+static void lanes_drop(lane *lanes, size_t count)
+{
+    for (size_t l = 0; l < count; l++) lane_clear(&lanes[l]);
+    free(lanes);
+}
+
+/* All or nothing: until the method is done the old lanes are kept aside, because an expansion outlives a failed request. */
+static tw_status extend_by(extension *x)
+{
+    expansion *a = x->a;
+    kept_lanes *old = base_alloc((a->contribution_count + 1) * sizeof *old);
+    for (size_t k = 0; k < a->contribution_count; k++) {
+        old[k].aside = false;
+        if (lacks_terms(&a->contributions[k], x->terms)) lanes_set_aside(&old[k], &a->contributions[k]);
+    }
+    unsigned jumps = x->e->jumps;
+    tw_status status = engine_protect(x->e, run_extension, x);
+    for (size_t k = 0; k < a->contribution_count; k++) {
+        contribution *c = &a->contributions[k];
+        if (!old[k].aside) continue;
+        if (status == TW_OK && c->lanes) {
+            lanes_drop(old[k].lanes, old[k].lane_count);
+        } else { /* failed, or of another method */
+            if (x->e->jumps == jumps) lanes_drop(c->lanes, c->lane_count);
+            lanes_put_back(&old[k], c);
+        }
+    }
+    free(old);
+    return status;
+}
+
 tw_status expansion_extend(tw_engine *e, expansion *a, slong terms)
 {
     for (size_t k = 0; k < a->contribution_count; k++) {
         const contribution *c = &a->contributions[k];
-        if (c->terminates || contribution_count_terms(c) >= terms || terms <= c->searched) continue;
+        if (!lacks_terms(c, terms)) continue;
         const method *m = method_find(c->method);
         if (!m) return engine_fail(e, ERROR_INTERNAL, "no method is called %s", c->method);
-        if (m->extend(e, a, terms) != TW_OK) return TW_ERROR;
+        extension x = {e, a, m, terms};
+        if (extend_by(&x) != TW_OK) return TW_ERROR;
     }
     return TW_OK;
 }

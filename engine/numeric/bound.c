@@ -57,6 +57,7 @@ typedef struct known_problem {
 
 struct bound_cache {
     known_problem *first;
+    unsigned jumps; /* of the engine when it was made: after another jump what it holds may be half made */
 };
 
 void bound_cache_free(struct bound_cache *c)
@@ -92,10 +93,14 @@ static bool same_values(const known_problem *k, const env *at, expr *large)
 static known_problem *known_find(tw_engine *e, expansion *a, size_t index, const env *at)
 {
     known_problem *k;
-    (void)e;
+    if (a->cache && a->cache->jumps != e->jumps) {
+        bound_cache_free(a->cache);
+        a->cache = NULL;
+    }
     if (!a->cache) {
         a->cache = base_alloc(sizeof *a->cache);
         a->cache->first = NULL;
+        a->cache->jumps = e->jumps;
     }
     for (k = a->cache->first; k; k = k->next)
         if (k->index == index && same_values(k, at, a->large))
