@@ -150,7 +150,7 @@ static bool go_on_after(const run *r, error_kind kind)
     return r->options.keep_going && r->depth == 0 && kind != ERROR_INTERRUPT;
 }
 
-/* After a statement that took too much memory the system gets back what was freed, so that the next one is not refused for
+/* After a statement that took too much memory or time the system gets back what was freed, so that the next one is not refused for
  * it. */
 static void give_back_memory(void)
 {
@@ -183,7 +183,7 @@ static bool run_statement(run *r, source *whole, size_t from, const statement *s
     }
     result_clear(&made);
     text_clear(&words);
-    if (kind == ERROR_MEMORY) give_back_memory();
+    if (kind == ERROR_MEMORY || kind == ERROR_TIME || kind == ERROR_INTERRUPT) give_back_memory();
     if (!written || r->session.quit) return false;
     return status == TW_OK || go_on_after(r, kind);
 }

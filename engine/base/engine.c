@@ -72,7 +72,21 @@ static size_t memory_resident(void)
 
 bool budget_memory_ok(tw_engine *e)
 {
-    return e->memory_limit == 0 || memory_resident() <= e->memory_limit;
+    return e->memory_limit == 0 || memory_resident() <= e->memory_limit + e->memory_lost;
+}
+
+/* What an aborted computation held is lost to the process. So that the session stays of use, the limit makes room for it, at
+ * most once its own size in all. */
+static void budget_start_memory(tw_engine *e)
+{
+    if (e->memory_limit == 0) return;
+    size_t now = memory_resident();
+    if (e->jumps != e->jumps_seen && now > e->memory_before) {
+        e->memory_lost += now - e->memory_before;
+        if (e->memory_lost > e->memory_limit) e->memory_lost = e->memory_limit;
+    }
+    e->jumps_seen = e->jumps;
+    e->memory_before = now;
 }
 
 bool budget_ok(tw_engine *e)
@@ -104,6 +118,7 @@ void budget_start(tw_engine *e, double seconds)
     e->deadline = seconds > 0 ? budget_clock() + seconds : 0;
     e->budget_ticks = 15; /* so that the first question looks at the clock */
     e->memory_checked = 0;
+    budget_start_memory(e);
 }
 
 void *engine_scratch(tw_engine *e, size_t count, size_t bytes_each)

@@ -61,6 +61,8 @@ struct tw_engine {
     unsigned budget_ticks;
     unsigned jumps;                      /* how often an edge has caught an abort: memories made before may be half made */
     double memory_checked;               /* when the resident memory was last looked at */
+    size_t memory_before, memory_lost;   /* resident as the call began; lost at jumps, for which the limit makes room */
+    unsigned jumps_seen;
     long allocations_left;               /* tests: after so many more allocations fail; negative: never */
     struct expr_table *exprs;
     struct facts *facts;

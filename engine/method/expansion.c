@@ -118,7 +118,11 @@ typedef struct order {
     tw_engine *e;
     const contribution *c;
     bool small;
-    slong *next; /* of each lane: the first index not yet taken, zeros skipped */
+    slong *next;      /* of each lane: the first index not yet taken, zeros skipped */
+    fmpq *base;       /* of each lane: its first exponent minus that of lane 0, where that is a number */
+    bool *has_base;
+    size_t last_lane; /* of the term taken last */
+    slong last_n;
 } order;
 
 static bool lane_is_out(const order *o, size_t k)
@@ -132,27 +136,56 @@ static void skip_zeros(order *o, size_t k)
     while (o->next[k] < c->count && coefficient_is_zero(c, o->next[k])) o->next[k]++;
 }
 
-/* Sign of the exponent of lane i's next term minus that of lane j's; 2 when it cannot be decided. */
-static int compare_exponents(order *o, size_t i, size_t j)
+static void order_init(order *o, tw_engine *e, const contribution *c, bool small)
+{
+    *o = (order){.e = e, .c = c, .small = small};
+    o->next = base_alloc((c->lane_count + 1) * sizeof *o->next);
+    o->has_base = base_alloc((c->lane_count + 1) * sizeof *o->has_base);
+    o->base = _fmpq_vec_init((slong)c->lane_count);
+    for (size_t k = 0; k < c->lane_count; k++) {
+        o->next[k] = 0;
+        skip_zeros(o, k);
+        expr *d = expr_sub(e, c->lanes[k].first_exponent, c->lanes[0].first_exponent);
+        o->has_base[k] = d && expr_is_number(d);
+        if (o->has_base[k]) fmpq_set(&o->base[k], expr_number(d));
+    }
+}
+
+static void order_clear(order *o)
+{
+    _fmpq_vec_clear(o->base, (slong)o->c->lane_count);
+    free(o->has_base);
+    free(o->next);
+}
+
+/* Sign of the exponent of term m of lane i minus that of term n of lane j; 2 when it cannot be decided. */
+static int compare_exponents(order *o, size_t i, slong m, size_t j, slong n)
 {
     const lane *a = &o->c->lanes[i], *b = &o->c->lanes[j];
     fmpq_t steps, u;
     fmpq_init(steps);
     fmpq_init(u);
-    fmpq_mul_si(steps, a->step, o->next[i]);
-    fmpq_mul_si(u, b->step, o->next[j]);
+    fmpq_mul_si(steps, a->step, m);
+    fmpq_mul_si(u, b->step, n);
     fmpq_sub(steps, steps, u);
-    expr *d = expr_add(o->e, expr_sub(o->e, a->first_exponent, b->first_exponent), expr_fmpq(o->e, steps));
+    int sign;
+    if (o->has_base[i] && o->has_base[j]) {
+        fmpq_sub(u, &o->base[i], &o->base[j]);
+        fmpq_add(steps, steps, u);
+        sign = fmpq_sgn(steps);
+    } else {
+        expr *d = expr_add(o->e, expr_sub(o->e, a->first_exponent, b->first_exponent), expr_fmpq(o->e, steps));
+        sign = !d ? 2 : expr_is_number(d) ? fmpq_sgn(expr_number(d)) : decide_sign(o->e, d);
+    }
     fmpq_clear(steps);
     fmpq_clear(u);
-    if (!d) return 2;
-    return expr_is_number(d) ? fmpq_sgn(expr_number(d)) : decide_sign(o->e, d);
+    return sign;
 }
 
 /* Does lane i's next term come before lane j's? */
 static bool comes_before(order *o, size_t i, size_t j)
 {
-    int sign = compare_exponents(o, i, j);
+    int sign = compare_exponents(o, i, o->next[i], j, o->next[j]);
     if (sign == 2 && o->e->error.kind == ERROR_NONE) {
         char *a = expr_text(o->e, o->c->lanes[i].first_exponent), *b = expr_text(o->e, o->c->lanes[j].first_exponent);
         engine_fail(o->e, ERROR_UNDECIDED,
@@ -177,27 +210,79 @@ static slong largest_lane(order *o)
     return best >= 0 && lane_is_out(o, (size_t)best) ? -1 : best;
 }
 
-tw_status contribution_order(tw_engine *e, const contribution *c, bool small, slong count, term **terms, slong *found)
+/* Has lane k's next term the power, also of the logarithm, of the term taken last? */
+static bool goes_on(order *o, size_t k)
 {
-    order o = {e, c, small, base_alloc((c->lane_count + 1) * sizeof(slong))};
-    for (size_t k = 0; k < c->lane_count; k++) {
-        o.next[k] = 0;
-        skip_zeros(&o, k);
+    return o->c->lanes[k].log_power == o->c->lanes[o->last_lane].log_power
+           && compare_exponents(o, k, o->next[k], o->last_lane, o->last_n) == 0;
+}
+
+static void take(order *o, term **terms, slong *found, slong *room)
+{
+    if (*found == *room) {
+        *room = *room ? 2 * *room : 16;
+        *terms = base_resize(*terms, (size_t)*room * sizeof **terms);
     }
-    *terms = base_alloc((size_t)(count > 0 ? count : 1) * sizeof **terms);
-    *found = 0;
-    while (*found < count && budget_ok(e)) {
-        slong k = largest_lane(&o);
-        if (k < 0 || e->error.kind != ERROR_NONE) break;
-        (*terms)[(*found)++] = (term){(size_t)k, o.next[k]++};
-        skip_zeros(&o, (size_t)k);
+    (*terms)[(*found)++] = (term){o->last_lane, o->last_n};
+}
+
+/* Terms in order of size: `count` of them, or with by_power those of the first `count` powers, whole ones; *powers of them. */
+static tw_status order_terms(order *o, slong count, bool by_power, term **terms, slong *found, slong *powers)
+{
+    slong room = 0, power_starts = 0;
+    *terms = NULL;
+    *found = *powers = 0;
+    bool known = true;
+    while (by_power || *found < count) {
+        if (!budget_ok(o->e)) return TW_ERROR;
+        slong k = largest_lane(o);
+        if (o->e->error.kind != ERROR_NONE) return TW_ERROR;
+        known = k >= 0;
+        if (!known) break;
+        bool same = *found > 0 && goes_on(o, (size_t)k);
+        if (by_power && !same && *powers == count) break;
+        if (!same) power_starts = *found;
+        if (!same) ++*powers;
+        o->last_lane = (size_t)k;
+        o->last_n = o->next[k]++;
+        take(o, terms, found, &room);
+        skip_zeros(o, (size_t)k);
     }
-    free(o.next);
-    if (e->error.kind == ERROR_NONE) return TW_OK;
+    if (by_power && !known && !o->c->terminates && *powers > 0) { /* more of the last power may be unknown */
+        *found = power_starts;
+        --*powers;
+    }
+    return TW_OK;
+}
+
+static tw_status order_contribution(tw_engine *e, const contribution *c, bool small, slong count, bool by_power, term **terms,
+                                    slong *found, slong *powers)
+{
+    order o;
+    order_init(&o, e, c, small);
+    tw_status status = e->error.kind == ERROR_NONE ? order_terms(&o, count, by_power, terms, found, powers) : TW_ERROR;
+    order_clear(&o);
+    if (status == TW_OK) return TW_OK;
     free(*terms);
     *terms = NULL;
     *found = 0;
     return TW_ERROR;
+}
+
+tw_status contribution_order(tw_engine *e, const contribution *c, bool small, slong count, term **terms, slong *found)
+{
+    slong powers;
+    *terms = NULL;
+    *found = 0;
+    return order_contribution(e, c, small, count, false, terms, found, &powers);
+}
+
+tw_status contribution_order_powers(tw_engine *e, const contribution *c, bool small, slong count, term **terms, slong *found,
+                                    slong *powers)
+{
+    *terms = NULL;
+    *found = *powers = 0;
+    return order_contribution(e, c, small, count, true, terms, found, powers);
 }
 
 tw_status expansion_order(tw_engine *e, expansion *a, size_t k, slong count, term **terms, slong *found)

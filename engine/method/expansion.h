@@ -67,7 +67,7 @@ typedef struct expansion {
     expr *integral;    /* as typed */
     expr *large;       /* the symbol */
     bool small;        /* a small parameter: powers of h */
-    slong terms_asked; /* N nonzero terms of each contribution */
+    slong terms_asked; /* terms of each contribution: of N powers, so more than N where lanes share powers */
     size_t contribution_count;
     contribution *contributions;
     local_form rest;           /* what no dominant contribution's local form covers; its branches need not be monotone */

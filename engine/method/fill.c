@@ -209,17 +209,19 @@ static void lane_cut_zeros(lane *l)
     lane_cut(l, count);
 }
 
-/* Keeps the terms asked for when they are there; *enough says whether. */
+/* Keeps the terms asked for when they are there: terms of one power count once, so that a sum never ends within a power.
+ * *found: as many powers there are. */
 static tw_status keep_terms(tw_engine *e, contribution *c, bool small, slong wanted, slong *found)
 {
     term *terms;
+    slong entries;
     if (c->terminates) {
         for (size_t l = 0; l < c->lane_count; l++) lane_cut_zeros(&c->lanes[l]);
         *found = wanted;
         return TW_OK;
     }
-    if (contribution_order(e, c, small, wanted, &terms, found) != TW_OK) return TW_ERROR;
-    if (*found >= wanted) lanes_cut(c, terms, *found);
+    if (contribution_order_powers(e, c, small, wanted, &terms, &entries, found) != TW_OK) return TW_ERROR;
+    if (*found >= wanted && entries > 0) lanes_cut(c, terms, entries);
     free(terms);
     return TW_OK;
 }

@@ -29,6 +29,12 @@ slong contribution_count_terms(const contribution *c);
 /* As expansion_order, for a contribution by itself. */
 tw_status contribution_order(tw_engine *e, const contribution *c, bool small, slong count, term **terms, slong *found);
 
+/* The same for the terms of the first `count` powers: terms of different lanes with the same power of the large parameter and
+ * of its logarithm count once, and no power is given in part. *powers: how many powers these are (fewer where the next term is
+ * not known). */
+tw_status contribution_order_powers(tw_engine *e, const contribution *c, bool small, slong count, term **terms, slong *found,
+                                    slong *powers);
+
 /* Lanes being collected. */
 typedef struct draft draft;
 typedef struct drafts {

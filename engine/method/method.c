@@ -1,6 +1,7 @@
 /* From an integral to an expansion. The one idea: `expand` lists its stages (read, choose, expand, keep the facts) and
  * nobody else knows their order; sums of integrals go through it term by term. A new method is one line in the table
  * below. */
+#include "engine/method/lanes.h"
 #include "engine/method/method.h"
 
 #include <stdlib.h>
@@ -223,6 +224,17 @@ static void keep_facts(tw_engine *e, expansion *out)
     for (size_t k = 0; k < out->fact_count; k++) out->facts[k] = facts_at(e, k, &out->fact_labels[k]);
 }
 
+/* Where several lanes share a power, the terms asked for are more than the powers. */
+static void count_terms_asked(expansion *out)
+{
+    for (size_t k = 0; k < out->contribution_count; k++) {
+        const contribution *c = &out->contributions[k];
+        if (!c->dominant || c->terminates || c->searched > 0) continue;
+        slong count = contribution_count_terms(c);
+        if (count > out->terms_asked) out->terms_asked = count;
+    }
+}
+
 tw_status expand(tw_engine *e, expansion *out, expr *integral, slong terms, const char *by)
 {
     if (terms < 1) return engine_fail(e, ERROR_VALUE, "the number of terms must be at least 1");
@@ -231,6 +243,9 @@ tw_status expand(tw_engine *e, expansion *out, expr *integral, slong terms, cons
     size_t count = expr_terms(&integral, &parts);
     tw_status status = count == 1 ? expand_integral(e, out, integral, terms, by)
                                   : expand_parts(e, out, integral, parts, count, terms, by);
-    if (status == TW_OK) keep_facts(e, out);
+    if (status == TW_OK) {
+        keep_facts(e, out);
+        count_terms_asked(out);
+    }
     return status;
 }
