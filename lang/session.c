@@ -118,6 +118,7 @@ tw_status session_run(session *s, const statement *st, result *r)
     engine_forgive(s->e);
     tw_status status = engine_protect(s->e, requests[st->kind].care != CHANGES_LAST ? run_marked : run_job, &j);
     s->let_name = NULL;
+    if (status != TW_OK && (s->e->error.kind == ERROR_TIME || s->e->error.kind == ERROR_MEMORY)) s->at = st->at;
     if (status != TW_OK && s->e->error.kind != ERROR_REFUTED) text_cut(&r->words, 0);
     return status;
 }

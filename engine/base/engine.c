@@ -75,7 +75,7 @@ bool budget_memory_ok(tw_engine *e)
     return e->memory_limit == 0 || memory_resident() <= e->memory_limit + e->memory_lost;
 }
 
-/* What an aborted computation held is lost to the process. So that the session stays of use, the limit makes room for it, at
+/* What an aborted computation held is lost to the process, and expressions of one that ran out of memory stay. So that the session stays of use, the limit makes room for it, at
  * most once its own size in all. */
 static void budget_start_memory(tw_engine *e)
 {
@@ -105,6 +105,7 @@ bool budget_ok(tw_engine *e)
     if (e->memory_limit != 0 && now - e->memory_checked > 0.02) {
         e->memory_checked = now;
         if (!budget_memory_ok(e)) {
+            e->jumps_seen = e->jumps - 1; /* expressions stay: like a jump, this leaves the process larger */
             engine_fail(e, ERROR_MEMORY, "the memory limit of %zu MiB is exceeded", e->memory_limit >> 20);
             return false;
         }
