@@ -234,30 +234,18 @@ static bool bounded_call(growth_record *out, growth_program *t, growth_node *n)
     return ok;
 }
 
-/* |J_nu(x)| <= 1 for real x >= 0 and nu >= 0 (DLMF 10.14.1). */
-static bool bessel_j_record(growth_record *out, const growth_program *t, const growth_node *n)
-{
-    const growth_record *order = argument(t, n, 0), *u = argument(t, n, 1);
-    if (expr_has(n->f->args[0], t->x) || !acb_is_real(order->g) || !arb_is_nonnegative(acb_realref(order->g)) ||
-        !record_is_real(u) || !arb_is_nonnegative(acb_realref(u->g)))
-        return false;
-    acb_t v;
-    acb_init(v);
-    mag_one(arb_radref(acb_realref(v)));
-    record_set_ball(out, v);
-    acb_clear(v);
-    return true;
-}
-
 static bool call_record(growth_record *out, growth_program *t, growth_node *n)
 {
     if (n->f->is.function == FUNCTION_MIN)
         return extreme(out, t, n, -1);
     if (n->f->is.function == FUNCTION_MAX)
         return extreme(out, t, n, 1);
-    if (n->f->is.function == FUNCTION_BESSEL_J)
-        return bounded_call(out, t, n) || bessel_j_record(out, t, n);
-    return growth_call(out, n->f->is.function, argument(t, n, 0), n->f->count, &t->place) || bounded_call(out, t, n);
+    growth_record args[2]; /* views, read only */
+    if (n->f->count > 2)
+        return bounded_call(out, t, n);
+    for (size_t k = 0; k < n->f->count; k++)
+        args[k] = *argument(t, n, k);
+    return growth_call(out, n->f->is.function, args, n->f->count, &t->place) || bounded_call(out, t, n);
 }
 
 static bool power_record(growth_record *out, const growth_program *t, const growth_node *n)

@@ -1,9 +1,7 @@
 /* What each function of the table does to a growth record. Knows records and nothing of expressions; a function that
  * has no row here (`none`) has a record only where its argument stays bounded, by its value on the argument's ball
  * (growth.c). */
-#include "engine/ball/growth_record.h"
-
-typedef bool growth_rule(growth_record *out, const growth_record *u, const growth_place *p);
+#include "engine/ball/growth_special.h"
 
 /* Is u real, of one sign, and unbounded? */
 static int grows_with_sign(const growth_record *u)
@@ -452,5 +450,5 @@ static growth_rule *const rules[FUNCTION_COUNT] = {
 
 bool growth_call(growth_record *out, function_id f, const growth_record *args, size_t n, const growth_place *p)
 {
-    return n == 1 && rules[f] && rules[f](out, args, p);
+    return n <= 2 && rules[f] && rules[f](out, args, p);
 }

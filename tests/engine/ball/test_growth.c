@@ -55,6 +55,18 @@ static expr *random_power(tw_engine *e)
     }
 }
 
+static expr *random_special(tw_engine *e, expr *a)
+{
+    static const function_id one[] = {FUNCTION_E1, FUNCTION_EI, FUNCTION_GAMMA, FUNCTION_LNGAMMA,
+                                      FUNCTION_PSI, FUNCTION_AI, FUNCTION_BI},
+                             two[] = {FUNCTION_GAMMA_UPPER, FUNCTION_BESSEL_J, FUNCTION_BESSEL_Y, FUNCTION_BESSEL_I,
+                                      FUNCTION_BESSEL_K};
+    if (roll(2))
+        return expr_call1(e, one[roll(sizeof one / sizeof *one)], a);
+    expr *args[] = {roll(3) ? expr_frac(e, (slong)roll(21) - 6, 1 + roll(4)) : expr_int(e, roll(3)), a};
+    return expr_call(e, two[roll(sizeof two / sizeof *two)], args, 2);
+}
+
 static expr *random_tree(tw_engine *e, expr *x, int depth)
 {
     static const function_id functions[] = {FUNCTION_SIN,  FUNCTION_COS,   FUNCTION_SINH,  FUNCTION_COSH, FUNCTION_TANH,
@@ -63,7 +75,7 @@ static expr *random_tree(tw_engine *e, expr *x, int depth)
     if (depth == 0)
         return roll(3) ? expr_pow(e, x, roll(3) ? expr_int(e, 1) : random_power(e)) : random_number(e);
     expr *a = random_tree(e, x, depth - 1);
-    switch (roll(13)) {
+    switch (roll(14)) {
     case 0:
     case 1:
         return expr_add(e, a, random_tree(e, x, depth - 1));
@@ -79,6 +91,8 @@ static expr *random_tree(tw_engine *e, expr *x, int depth)
         return expr_pow(e, a, random_power(e));
     case 8:
         return expr_call1(e, FUNCTION_EXP, a);
+    case 13:
+        return roll(3) ? expr_call1(e, FUNCTION_EXP, a) : random_special(e, a);
     case 9:
         return expr_call1(e, FUNCTION_EXP, expr_neg(e, a));
     case 10:
