@@ -118,11 +118,13 @@ static tw_status add_contribution(session *s, text *out, expansion *a, size_t k)
     bool more = !c->terminates || (a->remainder && !expr_is_zero(a->remainder)) || count_terms(c) > found;
     bool factor = !expr_is_one(c->prefactor);
     bool brackets = factor && (found > 1 || more);
+    bool one = found == 1 && !more && expr_is_one(expansion_term(s->e, a, k, terms[0])); /* the prefactor is all */
     if (factor) {
         add_expr(s, out, c->prefactor, c->prefactor->kind == EXPR_SUM);
-        text_add(out, brackets ? "*(" : "*");
+        text_add(out, brackets ? "*(" : one ? "" : "*");
     }
-    for (slong n = 0; n < found; n++) add_term(s, out, expansion_term(s->e, a, k, terms[n]), n == 0);
+    for (slong n = 0; n < found && !(factor && one); n++)
+        add_term(s, out, expansion_term_shown(s->e, a, k, terms[n]), n == 0);
     if (found == 0) text_add_char(out, '0');
     if (more) text_add(out, " + ...");
     if (brackets) text_add_char(out, ')');
@@ -179,7 +181,7 @@ static tw_status add_lesser(session *s, result *r, expansion *a, size_t k)
     add_place(s, &line, &a->contributions[k]);
     text_add(&line, ": ");
     tw_status status = add_contribution(s, &line, a, k);
-    if (status == TW_OK) result_line(r, "%s", line.bytes);
+    if (status == TW_OK) result_expression(r, "%s", line.bytes);
     text_clear(&line);
     return status;
 }
@@ -199,7 +201,7 @@ tw_status describe_series(session *s, result *r, const char *name, expansion *a)
     }
     if (first) text_add_char(&line, '0');
     add_note(s, &line, a);
-    if (status == TW_OK) result_line(r, "%s", line.bytes);
+    if (status == TW_OK) result_expression(r, "%s", line.bytes);
     text_clear(&line);
     for (size_t k = 0; status == TW_OK && k < a->contribution_count; k++)
         if (!a->contributions[k].dominant) status = add_lesser(s, r, a, k);
@@ -459,8 +461,8 @@ void describe_remainder(session *s, result *r, const expansion *a, const remaind
     }
     result_labelled(r, line.bytes, label_word(bound->label), bound->manner);
     text_clear(&line);
-    if (bound->source) result_line(r, "  source: %s", bound->source);
-    if (bound->reason) result_line(r, "  not proved: %s", bound->reason);
+    if (bound->source) result_prose(r, "  source: %s", bound->source);
+    if (bound->reason) result_prose(r, "  not proved: %s", bound->reason);
     result_conditions(r, &bound->conditions);
 }
 
@@ -473,15 +475,15 @@ static void add_step_lines(session *s, result *r, size_t nth, const step *p)
     text_addf(&line, "%2zu. %s", nth, p->rule);
     if (p->source) text_addf(&line, "  (%s)", p->source);
     result_line(r, "%s", line.bytes);
-    if (p->detail) result_line(r, "      %s", p->detail);
+    if (p->detail) result_prose(r, "      %s", p->detail);
     text_cut(&line, 0);
     if (p->after) expr_print(s->e, &line, p->after);
     else if (p->form) text_add(&line, p->form);
-    if (line.length > 0) result_line(r, "      = %s", line.bytes);
+    if (line.length > 0) result_expression(r, "      = %s", line.bytes);
     if (p->remainder) {
         text_cut(&line, 0);
         expr_print(s->e, &line, p->remainder);
-        result_line(r, "      exact remainder: %s", line.bytes);
+        result_expression(r, "      exact remainder: %s", line.bytes);
     }
     for (size_t k = 0; k < p->conditions.count; k++)
         result_line(r, "      needs: %s (%s)", p->conditions.list[k].words,
@@ -559,10 +561,10 @@ tw_status describe_expansion(session *s, result *r, const char *name, expansion 
     text line;
     text_init(&line);
     expr_print(s->e, &line, a->integral);
-    result_line(r, "%s: expansion of %s", name, line.bytes);
+    result_expression(r, "%s: expansion of %s", name, line.bytes);
     text_clear(&line);
     result_line(r, "  %s %s", a->small ? "small" : "large", a->large->is.name);
-    if (a->why) result_line(r, "  %s", a->why);
+    if (a->why) result_prose(r, "  %s", a->why);
     add_place_lines(s, r, a);
     tw_status status = describe_coefficients(s, r, a, 0, -1);
     if (status == TW_OK) status = describe_bound(s, &bound, a);

@@ -190,9 +190,9 @@ static tw_status let_expression(session *s, const statement *st, result *r)
     if (integral) {
         status = summarise(s, &summary, a);
         result_string(r, "summary", summary.bytes);
-        result_line(r, "%s: %s", name.text, summary.bytes);
+        result_prose(r, "%s: %s", name.text, summary.bytes);
     } else {
-        result_line(r, "%s = %s", name.text, words.bytes);
+        result_expression(r, "%s = %s", name.text, words.bytes);
     }
     text_clear(&words);
     text_clear(&summary);
@@ -218,7 +218,7 @@ static tw_status let_function(session *s, const statement *st, result *r)
     text_init(&words);
     value_print(s->e, &words, name.text, v);
     result_string(r, "text", words.bytes);
-    result_line(r, "%s", words.bytes);
+    result_expression(r, "%s", words.bytes);
     text_clear(&words);
     if (function_find(name.text, -1) != FUNCTION_COUNT || strcmp(name.text, "sqrt") == 0) {
         result_string(r, "notice", "hides the built-in function of this name");

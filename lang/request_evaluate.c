@@ -109,7 +109,7 @@ static tw_status tell_number(session *s, result *r, const task *t, const number 
     text_clear(&value_words);
     if (tell_terms(s, r, t, n) != TW_OK) return TW_ERROR;
     if (strcmp(n->way, "quadrature") == 0) result_line(r, "  certified quadrature");
-    if (n->reason) result_line(r, "  not proved: %s", n->reason);
+    if (n->reason) result_prose(r, "  not proved: %s", n->reason);
     if (!conditions_all_sure(&n->conditions)) result_conditions(r, &n->conditions);
     return TW_OK;
 }

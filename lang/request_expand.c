@@ -89,7 +89,7 @@ tw_status request_steps(session *s, const statement *st, result *r, value **keep
     result_string(r, "of", x.name);
     const expansion *a = &x.kept->expansion;
     result_string(r, "why", a->why);
-    if (a->why) result_line(r, "%s", a->why);
+    if (a->why) result_prose(r, "%s", a->why);
     describe_steps(s, r, &a->derivation);
     subject_clear(&x);
     keep_result(keep, r, "steps");

@@ -129,7 +129,7 @@ static tw_status show_value(session *s, result *r, const char *name, value *v)
     case VALUE_FUNCTION:
         value_print(s->e, &words, name, v);
         result_string(r, "text", words.bytes);
-        result_line(r, "%s", words.bytes);
+        result_expression(r, "%s", words.bytes);
         break;
     case VALUE_EXPANSION:
         status = describe_expansion(s, r, name, &v->expansion);

@@ -8,6 +8,7 @@
 
 #include "engine/base/engine.h"
 #include "engine/export/format.h"
+#include "lang/wrap.h"
 
 enum { LABEL_COLUMN = 72 };
 
@@ -40,6 +41,7 @@ void result_init(result *r, const char *kind)
 {
     text_init(&r->object);
     text_init(&r->words);
+    r->width = RESULT_WIDTH;
     begin(r, kind);
 }
 
@@ -92,6 +94,15 @@ void result_json(result *r, const char *name, const char *json)
 
 /* ---- lines ---- */
 
+static void add_wrapped(result *r, bool prose, const char *form, va_list args)
+{
+    char *line;
+    if (vasprintf(&line, form, args) < 0) return;
+    wrap_line(&r->words, line, r->width, prose);
+    text_add_char(&r->words, '\n');
+    free(line);
+}
+
 void result_line(result *r, const char *form, ...)
 {
     va_list args;
@@ -105,10 +116,29 @@ void result_line(result *r, const char *form, ...)
     free(line);
 }
 
+void result_expression(result *r, const char *form, ...)
+{
+    va_list args;
+    va_start(args, form);
+    add_wrapped(r, false, form, args);
+    va_end(args);
+}
+
+void result_prose(result *r, const char *form, ...)
+{
+    va_list args;
+    va_start(args, form);
+    add_wrapped(r, true, form, args);
+    va_end(args);
+}
+
 void result_labelled(result *r, const char *words, const char *known, const char *manner)
 {
-    size_t width = strlen(words);
-    text_add(&r->words, words);
+    size_t start = r->words.length;
+    wrap_line(&r->words, words, r->width, false);
+    for (size_t k = start; k < r->words.length; k++)
+        if (r->words.bytes[k] == '\n') start = k + 1;
+    size_t width = r->words.length - start;
     do text_add_char(&r->words, ' ');
     while (++width < LABEL_COLUMN);
     if (width > LABEL_COLUMN) text_add_char(&r->words, ' ');
@@ -120,7 +150,7 @@ void result_labelled(result *r, const char *words, const char *known, const char
 void result_conditions(result *r, const condition_list *conditions)
 {
     for (size_t k = 0; k < conditions->count; k++)
-        result_line(r, "  rests on: %s (%s)", conditions->list[k].words,
+        result_prose(r, "  rests on: %s (%s)", conditions->list[k].words,
                     condition_label_word(conditions->list[k].label));
 }
 

@@ -11,8 +11,11 @@
 typedef struct result {
     text object; /* the JSON object up to, without, its closing brace */
     text words;  /* lines of text, each with its line end */
+    size_t width; /* where expressions and prose are wrapped */
     bool echo;   /* answers a declaration or a definition: silent under --quiet */
 } result;
+
+enum { RESULT_WIDTH = 120 };
 
 /* Starts a result of this kind, the word of the member "result". */
 void result_init(result *r, const char *kind);
@@ -30,7 +33,10 @@ void result_json(result *r, const char *name, const char *json);    /* a value t
 
 /* Lines of the text. */
 void result_line(result *r, const char *form, ...) __attribute__((format(printf, 2, 3)));
-/* A line with how it is known behind it, the label in its own column. */
+/* The same, wrapped where it is too long: an expression behind operators, prose at blanks (lang/wrap.h). */
+void result_expression(result *r, const char *form, ...) __attribute__((format(printf, 2, 3)));
+void result_prose(result *r, const char *form, ...) __attribute__((format(printf, 2, 3)));
+/* An expression with how it is known behind it, the label in its own column. */
 void result_labelled(result *r, const char *words, const char *known, const char *manner);
 /* Conditions below a result: "  rests on: nu > -1 (granted)". */
 void result_conditions(result *r, const condition_list *conditions);

@@ -8,6 +8,7 @@
 #include <poll.h>
 #include <stdlib.h>
 #include <string.h>
+#include <sys/ioctl.h>
 #include <unistd.h>
 
 #include "engine/export/format.h"
@@ -168,6 +169,7 @@ static bool run_statement(run *r, source *whole, size_t from, const statement *s
     progress_start(e, words.bytes, true, r->options.time_limit, r->at_prompt, r->options.json);
     result made;
     result_init(&made, "done");
+    made.width = r->width;
     tw_status status = session_run(&r->session, st, &made);
     progress_end(e);
     bool written = true;
@@ -404,10 +406,19 @@ bool run_input(run *r, int fd)
 
 /* ---- life ---- */
 
+/* Columns of the terminal that results go to, RESULT_WIDTH at most and elsewhere. */
+static size_t find_width(void)
+{
+    struct winsize size;
+    if (ioctl(STDOUT_FILENO, TIOCGWINSZ, &size) != 0 || size.ws_col < 40 || size.ws_col > RESULT_WIDTH) return RESULT_WIDTH;
+    return size.ws_col;
+}
+
 bool run_init(run *r, const run_options *options)
 {
     memset(r, 0, sizeof *r);
     r->options = *options;
+    r->width = find_width();
     text_init(&r->inner);
     if (session_init(&r->session) != TW_OK) {
         fputs("termwise: error: no memory for an engine\n", stderr);

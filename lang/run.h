@@ -29,6 +29,7 @@ typedef struct run {
     int status;            /* EXIT_DONE, EXIT_FAILED, EXIT_REFUTED or EXIT_INTERRUPTED so far */
     bool at_prompt;        /* a failed statement stops nothing */
     bool colour;           /* on standard error */
+    size_t width;          /* where long results are wrapped */
     unsigned depth;        /* of `use` within `use` */
     use_frame *uses;
     text inner;            /* the last complaint within a used file */

@@ -405,3 +405,27 @@ expr *expansion_term(tw_engine *e, const expansion *a, size_t k, term t)
         if (!parts[n]) return NULL;
     return expr_product(e, parts, 4);
 }
+
+static bool begins_with_minus(tw_engine *e, expr *a)
+{
+    char *words = expr_text(e, a);
+    bool minus = words && words[0] == '-';
+    free(words);
+    return minus;
+}
+
+expr *expansion_term_shown(tw_engine *e, const expansion *a, size_t k, term t)
+{
+    expr *whole = expansion_term(e, a, k, t), *const *factors;
+    size_t count = whole ? expr_factors(&whole, &factors) : 0;
+    if (count < 2) return whole;
+    for (size_t n = 0; n < count; n++) {
+        if (factors[n]->kind != EXPR_SUM || !begins_with_minus(e, factors[n])) continue;
+        expr *other = expr_neg(e, factors[n]);
+        if (!other || begins_with_minus(e, other)) continue;
+        expr *rest = expr_int(e, -1);
+        for (size_t m = 0; m < count; m++) rest = expr_mul(e, rest, m == n ? other : factors[m]);
+        return rest;
+    }
+    return whole;
+}

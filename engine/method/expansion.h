@@ -113,5 +113,7 @@ tw_status expansion_order(tw_engine *e, expansion *a, size_t k, slong count, ter
 
 /* The term as an expression in the large parameter, without the contribution's prefactor. */
 expr *expansion_term(tw_engine *e, const expansion *a, size_t k, term t);
+/* The same to be shown: the sign of a sum that begins with a minus stands before the whole, -s^-2*(b + c). */
+expr *expansion_term_shown(tw_engine *e, const expansion *a, size_t k, term t);
 
 #endif

@@ -124,6 +124,16 @@ expr *local_partial_sum(tw_engine *e, expansion *a, size_t k, slong terms)
     return sum;
 }
 
+/* prefactor*(sum), and the prefactor alone where the sum is 1. */
+static char *with_prefactor(tw_engine *e, expr *prefactor, const char *sum)
+{
+    text words;
+    text_init(&words);
+    expr_print(e, &words, prefactor);
+    if (strcmp(sum, "1") != 0) text_addf(&words, "*(%s)", sum);
+    return text_take(&words);
+}
+
 step *local_record_sum(tw_engine *e, expansion *a, size_t k, const char *rule, const char *source)
 {
     enum { SHOWN = 4 };
@@ -131,16 +141,11 @@ step *local_record_sum(tw_engine *e, expansion *a, size_t k, const char *rule, c
     step *s = derivation_add(&a->derivation, rule, source);
     text words;
     text_init(&words);
-    bool plain = expr_is_one(c->prefactor);
-    if (!plain) {
-        expr_print(e, &words, c->prefactor);
-        text_add(&words, "*(");
-    }
     term *list;
     slong found;
     if (expansion_order(e, a, k, SHOWN, &list, &found) == TW_OK) {
         for (slong n = 0; n < found; n++) {
-            char *one = expr_text(e, expansion_term(e, a, k, list[n]));
+            char *one = expr_text(e, expansion_term_shown(e, a, k, list[n]));
             bool minus = one && one[0] == '-';
             text_add(&words, n == 0 ? (minus ? "-" : "") : minus ? " - " : " + ");
             if (one) text_add(&words, one + minus);
@@ -152,8 +157,8 @@ step *local_record_sum(tw_engine *e, expansion *a, size_t k, const char *rule, c
         engine_forgive(e);
     }
     if (!c->terminates || contribution_count_terms(c) > SHOWN) text_add(&words, " + ...");
-    if (!plain) text_add(&words, ")");
-    s->form = text_take(&words);
+    s->form = expr_is_one(c->prefactor) ? text_take(&words) : with_prefactor(e, c->prefactor, words.bytes);
+    text_clear(&words);
     return s;
 }
 
