@@ -415,6 +415,118 @@ static tw_status refuse_body(tw_engine *e, expr *body, expr *x, expr *large, con
     return TW_ERROR;
 }
 
+/* ---- flat amplitudes ---- */
+
+/* The power of x in a product of powers and things free of x; false when x stands elsewhere in it. rest: what is left. */
+static bool read_monomial(tw_engine *e, expr *a, expr *x, fmpq_t power, expr **rest)
+{
+    expr *const *factors;
+    size_t count = expr_factors(&a, &factors);
+    fmpq_zero(power);
+    *rest = expr_int(e, 1);
+    for (size_t k = 0; k < count; k++) {
+        expr *base, *exponent;
+        expr_as_power(e, factors[k], &base, &exponent);
+        if (base == x && expr_is_number(exponent)) fmpq_add(power, power, expr_number(exponent));
+        else if (expr_has(factors[k], x)) return false;
+        else *rest = expr_mul(e, *rest, factors[k]);
+    }
+    return *rest != NULL;
+}
+
+/* Does the argument of an exponential tend to -inf like a negative power of x as x -> 0+? least: that power. */
+static bool sinks_at_zero(tw_engine *e, expr *argument, expr *x, fmpq_t least)
+{
+    expr *const *terms, *front = NULL;
+    size_t count = expr_terms(&argument, &terms);
+    fmpq_t power;
+    fmpq_init(power);
+    fmpq_zero(least);
+    for (size_t k = 0; k < count; k++) {
+        expr *rest;
+        if (!read_monomial(e, terms[k], x, power, &rest) || fmpq_cmp(power, least) >= 0) continue;
+        fmpq_set(least, power);
+        front = rest;
+    }
+    fmpq_clear(power);
+    return front && decide_sign(e, front) == -1;
+}
+
+/* An end where the kernel is largest and the amplitude is smaller than every power. */
+typedef struct flat_end {
+    expr *factor;   /* the amplitude's, as it is written; NULL: no such end was seen */
+    fmpq_t power;   /* it sinks like exp(-y^power), y the distance from the end */
+    fmpq_t mu;      /* the phase rises like y^mu */
+    fmpq_t scale;   /* ... times the large parameter to this power */
+} flat_end;
+
+static void flat_end_init(flat_end *f)
+{
+    f->factor = NULL;
+    fmpq_init(f->power);
+    fmpq_init(f->mu);
+    fmpq_init(f->scale);
+}
+
+static void flat_end_clear(flat_end *f)
+{
+    fmpq_clear(f->power);
+    fmpq_clear(f->mu);
+    fmpq_clear(f->scale);
+}
+
+/* a at x = from + y. */
+static expr *seen_from(tw_engine *e, const separation *s, expr *a, expr *y)
+{
+    return expr_expand(e, expr_substitute(e, a, s->variable, expr_add(e, s->from, y)));
+}
+
+/* Is the phase c*(x - from)^mu, up to a constant, with c, mu > 0? */
+static bool rises_from_start(tw_engine *e, const separation *s, expr *y, fmpq_t mu)
+{
+    expr *phase = seen_from(e, s, s->phase, y), *const *terms, *moving = expr_int(e, 0), *rest;
+    size_t count = phase ? expr_terms(&phase, &terms) : 0;
+    for (size_t k = 0; k < count; k++)
+        if (expr_has(terms[k], y)) moving = expr_add(e, moving, terms[k]);
+    return moving && read_monomial(e, moving, y, mu, &rest) && fmpq_sgn(mu) > 0 && decide_sign(e, rest) == 1;
+}
+
+static void find_flat_start(tw_engine *e, const separation *s, flat_end *out)
+{
+    if (expr_is_minus_inf(s->from)) return;
+    expr *y = expr_fresh(e, "y");
+    if (!rises_from_start(e, s, y, out->mu)) return;
+    fmpq_set(out->scale, s->power);
+    expr *const *factors;
+    size_t count = expr_factors(&s->amplitude, &factors);
+    for (size_t k = 0; k < count && !out->factor && e->error.kind == ERROR_NONE; k++) {
+        if (!expr_is_call(factors[k], FUNCTION_EXP)) continue;
+        expr *argument = expr_substitute(e, factors[k]->args[0], s->variable, expr_add(e, s->from, y));
+        if (argument && sinks_at_zero(e, argument, y, out->power)) out->factor = factors[k];
+    }
+}
+
+/* No powers of s arise at a flat end. What would help: x = s^a*t with which kernel and flat factor are of one size. */
+static tw_status advise_stretch(tw_engine *e, const flat_end *f, expr *x, expr *from, expr *large)
+{
+    fmpq_t a;
+    fmpq_init(a);
+    fmpq_sub(a, f->mu, f->power); /* s^K y^mu against y^power: y = s^(-K/(mu - power)) */
+    fmpq_div(a, f->scale, a);
+    fmpq_neg(a, a);
+    char *flat = expr_text(e, f->factor), *place = expr_text(e, from), *by = expr_text(e, expr_pow(e, large, expr_fmpq(e, a)));
+    bool at_zero = expr_is_zero(from);
+    engine_fail(e, ERROR_UNSUITABLE,
+                "%s is smaller than every power at the end %s = %s, which gives no terms; with %s = %s%s%s*t kernel and this "
+                "factor get one scale, and where the rest is a power of t the method `laplace` applies",
+                flat, x->is.name, place, x->is.name, at_zero ? "" : place, at_zero ? "" : " + ", by);
+    free(flat);
+    free(place);
+    free(by);
+    fmpq_clear(a);
+    return TW_ERROR;
+}
+
 /* ---- the whole ---- */
 
 /* Is x > 0 on the path for certain? */
@@ -465,12 +577,16 @@ tw_status body_separate(tw_engine *e, separation *out, expr *body, expr *x, expr
     const char *why = NULL;
     expr *culprit = NULL;
     bool found = false, weak = false;
+    flat_end flat; /* when nothing is stretched: another scale may then do better */
+    flat_end_init(&flat);
     for (size_t k = 0; k < count && !found && budget_ok(e); k++) {
         sorting s = {e, x, large, NULL, NULL, NULL, {{0}}, NULL, NULL};
         fmpq_init(s.power);
         bool separated = try_stretch(e, out, &s, body, x, from, to, &list[k]);
         found = separated && power_grows(out, small);
         weak = weak || (separated && !found);
+        if (found && k == 0) find_flat_start(e, out, &flat);
+        if (k == 0) found = found && !flat.factor;
         if (k == 0) {
             why = s.why;
             culprit = s.culprit;
@@ -478,6 +594,8 @@ tw_status body_separate(tw_engine *e, separation *out, expr *body, expr *x, expr
         fmpq_clear(s.power);
     }
     _fmpq_vec_clear(list, CANDIDATES_AT_MOST);
+    if (flat.factor && !found && e->error.kind == ERROR_NONE) (void)advise_stretch(e, &flat, x, from, large);
+    flat_end_clear(&flat);
     if (e->error.kind != ERROR_NONE) return TW_ERROR;
     if (found) return TW_OK;
     if (weak && !why)

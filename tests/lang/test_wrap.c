@@ -79,7 +79,7 @@ static void test_places(void **state)
     check("F ~ s^-1 - s^-3", 40, false, "F ~ s^-1 - s^-3");
     check("F ~ 11111111 + 22222222*(33333333 + 44444444)", 30, false, "F ~ 11111111 + 22222222*\n    (33333333 + 44444444)");
     check("F ~ 1111111111 + 2222222222 + ...      (by parts)", 35, false, "F ~ 1111111111 + 2222222222 + ...\n    (by parts)");
-    check("  needs: every good thing (and this one) has an end", 30, true,
+    check("  needs: every good thing (and this one) has an end", 31, true,
           "  needs: every good thing\n      (and this one) has an end");
     check("onewordthatcannotbebrokenatall", 10, true, "onewordthatcannotbebrokenatall");
     check("a-b-c-d-e-f-g-h", 8, false, "a-b-c-d-e-f-g-h"); /* a sign without blanks may be a unary minus */
