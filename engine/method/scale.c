@@ -506,14 +506,20 @@ static void find_flat_start(tw_engine *e, const separation *s, flat_end *out)
     }
 }
 
+/* s^K y^mu against y^power: y = s^(-K/(mu - power)). */
+static void flat_end_stretch(const flat_end *f, fmpq_t a)
+{
+    fmpq_sub(a, f->mu, f->power);
+    fmpq_div(a, f->scale, a);
+    fmpq_neg(a, a);
+}
+
 /* No powers of s arise at a flat end. What would help: x = s^a*t with which kernel and flat factor are of one size. */
 static tw_status advise_stretch(tw_engine *e, const flat_end *f, expr *x, expr *from, expr *large)
 {
     fmpq_t a;
     fmpq_init(a);
-    fmpq_sub(a, f->mu, f->power); /* s^K y^mu against y^power: y = s^(-K/(mu - power)) */
-    fmpq_div(a, f->scale, a);
-    fmpq_neg(a, a);
+    flat_end_stretch(f, a);
     char *flat = expr_text(e, f->factor), *place = expr_text(e, from), *by = expr_text(e, expr_pow(e, large, expr_fmpq(e, a)));
     bool at_zero = expr_is_zero(from);
     engine_fail(e, ERROR_UNSUITABLE,
@@ -586,7 +592,11 @@ tw_status body_separate(tw_engine *e, separation *out, expr *body, expr *x, expr
         found = separated && power_grows(out, small);
         weak = weak || (separated && !found);
         if (found && k == 0) find_flat_start(e, out, &flat);
-        if (k == 0) found = found && !flat.factor;
+        if (k == 0 && flat.factor) { /* only the stretch that brings both to one scale can help */
+            found = false;
+            count = expr_is_zero(from) ? 2 : 1;
+            flat_end_stretch(&flat, &list[1]);
+        }
         if (k == 0) {
             why = s.why;
             culprit = s.culprit;
