@@ -259,6 +259,15 @@ static void add_lane_title(session *s, text *out, const expansion *a, const cont
     if (l->log_power > 1) text_addf(out, "^%ld", (long)l->log_power);
 }
 
+void describe_lane_title(session *s, result *r, const expansion *a, const contribution *c, const lane *l)
+{
+    text title;
+    text_init(&title);
+    add_lane_title(s, &title, a, c, l);
+    result_line(r, "%s", title.bytes);
+    text_clear(&title);
+}
+
 static bool lane_is_plain(const contribution *c, const lane *l)
 {
     return expr_is_one(c->prefactor) && expr_is_one(l->constant) && l->log_power == 0 && c->lane_count == 1;
@@ -299,13 +308,7 @@ static tw_status add_lane(session *s, result *r, text *json, const expansion *a,
     table_cell(&t, "n");
     table_cell(&t, "exponent");
     table_cell(&t, "coefficient");
-    if (!lane_is_plain(c, l) || a->contribution_count > 1) {
-        text title;
-        text_init(&title);
-        add_lane_title(s, &title, a, c, l);
-        result_line(r, "%s", title.bytes);
-        text_clear(&title);
-    }
+    if (!lane_is_plain(c, l) || a->contribution_count > 1) describe_lane_title(s, r, a, c, l);
     json_next(json);
     text_add(json, "{\"prefactor\": ");
     json_expr(s->e, json, c->prefactor);

@@ -11,6 +11,9 @@ tw_status describe_series(session *s, result *r, const char *name, expansion *a)
  * are wanted than known. to < 0: as many as there are, and the text leaves out zeros. */
 tw_status describe_coefficients(session *s, result *r, expansion *a, slong from, slong to);
 
+/* "lane of x = 0: Gamma(1/3)" */
+void describe_lane_title(session *s, result *r, const expansion *a, const contribution *c, const lane *l);
+
 /* The bound as a formula, from where on it holds, its label and source. */
 void describe_remainder(session *s, result *r, const expansion *a, const remainder_bound *bound);
 

@@ -48,9 +48,14 @@ static const help_entry entries[] = {
      "the known ones.",
      "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 4 terms\ncoefficients of A from 2 to 6",
      NULL},
-    {"recurrence", HELP_REQUEST, LATER, "recurrence of NAME\ncheck recurrence of NAME",
-     "A recurrence or a closed form for the coefficients, and how it is known.",
-     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 4 terms\nrecurrence of A", NULL},
+    {"recurrence", HELP_REQUEST, HERE,
+     "recurrence of NAME\ncheck recurrence of NAME\ncheck recurrence c[n+1] = (n + 1)*c[n] of NAME",
+     "A recurrence for the coefficients c[n] of each lane, its order, its degree,\nfor which n it holds and the first values "
+     "that it starts from. `proved`: it\nfollows from an identity between rational functions, the certificate. `check\n"
+     "recurrence` proves that identity anew by another way and compares with\ncoefficients computed directly; a typed "
+     "recurrence is compared, and proved\nwhen it follows from the proved one.",
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/sqrt(4 + x^2) dx to 4 terms\nrecurrence of A\n"
+     "check recurrence of A\ncheck recurrence 4*c[n+1] = -(2*n + 1)^2*c[n] of A", NULL},
     {"growth", HELP_REQUEST, LATER, "growth of NAME",
      "The form of the coefficients for large n: factor, distance, power.",
      "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 4 terms\ngrowth of A", NULL},

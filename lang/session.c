@@ -34,6 +34,8 @@ static const struct {
     [STATEMENT_REMAINDER] = {request_remainder, CHANGES_FACTS},
     [STATEMENT_EVALUATE] = {request_evaluate, CHANGES_LAST},
     [STATEMENT_COMPARE] = {request_compare, CHANGES_LAST},
+    [STATEMENT_RECURRENCE] = {request_recurrence, CHANGES_LAST},
+    [STATEMENT_CHECK_RECURRENCE] = {request_check_recurrence, CHANGES_LAST},
     [STATEMENT_WRITE] = {request_write, CHANGES_FACTS},
     [STATEMENT_SHOW] = {request_show, CHANGES_FACTS},
     [STATEMENT_HELP] = {request_help, CHANGES_LAST},

@@ -3,6 +3,7 @@
 #include <stdlib.h>
 
 #include "engine/export/format.h"
+#include "engine/method/attach.h"
 
 static void add_key(text *out, const char *key)
 {
@@ -35,7 +36,33 @@ static void add_parameters(tw_engine *e, text *out, const expansion *a)
     free(symbols);
 }
 
-static void add_lane(tw_engine *e, text *out, const lane *l)
+/* The recurrence of the lane's coefficients, proved, or null. */
+static tw_status add_recurrence(tw_engine *e, text *out, const expansion *a, contribution *c, const lane *l)
+{
+    const recurrence *r = NULL;
+    if (!c->terminates && lane_recurrence_if_quick(e, c, l, a->large, &r) != TW_OK) return TW_ERROR;
+    text words;
+    text_init(&words);
+    if (!r || recurrence_print(e, &words, r) != TW_OK) {
+        text_add(out, "null");
+        text_clear(&words);
+        return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
+    }
+    text_add(out, "{\"text\": ");
+    json_string(out, words.bytes);
+    text_addf(out, ", \"label\": \"%s\", \"order\": %ld, \"degree\": %ld, \"from\": 0, \"left_out\": [",
+              recurrence_label_word(r->label), (long)r->order, (long)r->degree);
+    for (slong k = 0; k < r->void_count; k++) text_addf(out, k ? ", %ld" : "%ld", (long)r->voids[k]);
+    text_addf(out, "], \"first_values\": %ld, \"certificate\": ", (long)r->needed);
+    char *proof = recurrence_certificate(e, r);
+    json_string(out, proof);
+    free(proof);
+    text_add(out, "}");
+    text_clear(&words);
+    return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
+}
+
+static tw_status add_lane(tw_engine *e, text *out, const expansion *a, contribution *c, const lane *l)
 {
     text_add(out, "\n     {\"constant\": ");
     json_expr(e, out, l->constant);
@@ -48,10 +75,13 @@ static void add_lane(tw_engine *e, text *out, const lane *l)
         if (n) text_add(out, ", ");
         json_expr(e, out, coefficient_expr(e, &l->c, n));
     }
-    text_add(out, "],\n      \"recurrence\": null}");
+    text_add(out, "],\n      \"recurrence\": ");
+    tw_status status = add_recurrence(e, out, a, c, l);
+    text_add(out, "}");
+    return status;
 }
 
-static void add_contribution(tw_engine *e, text *out, const contribution *c)
+static tw_status add_contribution(tw_engine *e, text *out, const expansion *a, contribution *c)
 {
     text place;
     text_init(&place);
@@ -69,9 +99,10 @@ static void add_contribution(tw_engine *e, text *out, const contribution *c)
     text_add(out, ",\n   \"lanes\": [");
     for (size_t k = 0; k < c->lane_count; k++) {
         if (k) text_add_char(out, ',');
-        add_lane(e, out, &c->lanes[k]);
+        if (add_lane(e, out, a, c, &c->lanes[k]) != TW_OK) return TW_ERROR;
     }
     text_addf(out, "],\n   \"domain\": \"%s\", \"generators\": []}", domain_word(c->domain));
+    return TW_OK;
 }
 
 static void add_remainder(tw_engine *e, text *out, const expansion *a, const remainder_bound *r)
@@ -152,7 +183,7 @@ static tw_status write_json(tw_engine *e, text *out, const char *name, expansion
     for (size_t k = 0; k < a->contribution_count; k++) {
         if (!budget_ok(e)) return TW_ERROR;
         if (k) text_add_char(out, ',');
-        add_contribution(e, out, &a->contributions[k]);
+        if (add_contribution(e, out, a, &a->contributions[k]) != TW_OK) return TW_ERROR;
     }
     text_add_char(out, ']');
     add_key(out, "remainder");

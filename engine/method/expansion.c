@@ -7,6 +7,7 @@
 #include <string.h>
 
 #include "engine/ball/decide.h"
+#include "engine/method/attach.h"
 #include "engine/method/lanes.h"
 #include "engine/method/method.h"
 #include "engine/numeric/bound.h"
@@ -70,9 +71,12 @@ void contribution_init(contribution *c)
 void contribution_clear_lanes(contribution *c)
 {
     for (size_t k = 0; k < c->lane_count; k++) lane_clear(&c->lanes[k]);
+    for (size_t k = 0; k < c->zero_count; k++) lane_clear(&c->zeros[k]);
     free(c->lanes);
-    c->lanes = NULL;
-    c->lane_count = 0;
+    free(c->zeros);
+    c->lanes = c->zeros = NULL;
+    c->lane_count = c->zero_count = 0;
+    c->lanes_cut = false;
 }
 
 void contribution_clear(contribution *c)
@@ -80,6 +84,8 @@ void contribution_clear(contribution *c)
     contribution_clear_lanes(c);
     local_form_clear(&c->local);
     local_form_clear(&c->formal);
+    recurrence_memo_free(c->recurrences);
+    c->recurrences = NULL;
 }
 
 void expansion_init(expansion *a)

@@ -53,10 +53,14 @@ typedef struct contribution {
     expr *prefactor;    /* in the large parameter and the others */
     size_t lane_count;
     lane *lanes;
+    size_t zero_count; /* classes of exponents whose coefficients are all zero as far as they are known: no lanes */
+    lane *zeros;
+    bool lanes_cut; /* a lane begins beyond the terms kept and is not in the list */
     domain_kind domain;
     local_form local; /* no branches for a far end */
     local_form
         formal;      /* far ends only: factor * int_0 q exp(+scale * p), whose terms are (-scale)^-(n+1) times n! g_n */
+    struct recurrence_memo *recurrences; /* attach.c's memory of what it found for the lanes; NULL: nothing yet */
     slong searched;  /* so many terms were looked for in vain: the coefficients beyond those listed vanish far out */
     bool terminates; /* no further terms: the lanes are the whole expansion of this contribution */
 } contribution;

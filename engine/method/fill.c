@@ -4,6 +4,7 @@
 #include <stdlib.h>
 #include <string.h>
 
+#include "engine/method/attach.h"
 #include "engine/method/lanes.h"
 
 bool is_pure_power(tw_engine *e, expr *p, expr *x, fmpq_t mu)
@@ -33,7 +34,7 @@ void factor_split(tw_engine *e, expr *factor, expr *large, fmpq_t number, fmpq_t
 
 /* ---- the kernel of a local form ---- */
 
-static tw_status kernel_read(tw_engine *e, kernel *k, const contribution *c, expr *large)
+tw_status kernel_read(tw_engine *e, kernel *k, const contribution *c, expr *large)
 {
     const local_form *l = c->local.count > 0 ? &c->local : &c->formal;
     fmpq_t number;
@@ -196,6 +197,7 @@ static void lanes_cut(contribution *c, const term *terms, slong found)
     for (size_t l = 0; l < c->lane_count; l++) {
         bool zero = true;
         for (slong n = 0; n < c->lanes[l].c.count && zero; n++) zero = coefficient_is_zero(&c->lanes[l].c, n);
+        c->lanes_cut = c->lanes_cut || zero;
         if (zero) lane_clear(&c->lanes[l]);
         else c->lanes[kept++] = c->lanes[l];
     }
@@ -230,8 +232,8 @@ static tw_status keep_terms(tw_engine *e, contribution *c, bool small, slong wan
  * flat. */
 enum { ZEROS_AT_MOST = 512, SEARCH_FACTOR = 16 };
 
-tw_status contribution_fill(tw_engine *e, contribution *c, expr *large, bool small, slong terms,
-                            condition_list *conditions)
+tw_status contribution_fill_directly(tw_engine *e, contribution *c, expr *large, bool small, slong terms,
+                                     condition_list *conditions)
 {
     kernel k;
     kernel_init(&k);
@@ -258,4 +260,75 @@ tw_status contribution_fill(tw_engine *e, contribution *c, expr *large, bool sma
     }
     kernel_clear(&k);
     return status == TW_OK && e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
+}
+
+/* ---- with a recurrence's help ---- */
+
+/* From so many terms on a proved recurrence is looked for: finding it costs about what so many terms cost directly. */
+enum { TERMS_BY_RECURRENCE = 250, TERMS_FIRST = 96 };
+
+/* The lane's recurrence into *r, NULL when there is none that runs on what is known. */
+static tw_status find_runner(tw_engine *e, contribution *c, const lane *l, expr *large, const recurrence **r)
+{
+    *r = NULL;
+    if (!l->c.q) return TW_OK;
+    if (lane_recurrence_if_quick(e, c, l, large, r) != TW_OK) return TW_ERROR;
+    if (*r && (!(*r)->p || (*r)->needed > l->c.count || (*r)->order > l->c.count)) *r = NULL;
+    return TW_OK;
+}
+
+/* All classes of exponents can be run on, and those without a lane have none for ever: the recurrence takes zeros to
+ * zeros. */
+static tw_status find_runners(tw_engine *e, contribution *c, expr *large, bool *all)
+{
+    const recurrence *r;
+    *all = c->lane_count > 0 && !c->lanes_cut;
+    for (size_t k = 0; k < c->lane_count + c->zero_count && *all; k++) {
+        const lane *l = k < c->lane_count ? &c->lanes[k] : &c->zeros[k - c->lane_count];
+        if (find_runner(e, c, l, large, &r) != TW_OK) return TW_ERROR;
+        *all = r != NULL;
+    }
+    return TW_OK;
+}
+
+static tw_status lane_run(tw_engine *e, contribution *c, size_t k, expr *large, slong count)
+{
+    coefficients *x = &c->lanes[k].c;
+    const recurrence *r;
+    if (count <= x->count) return TW_OK;
+    if (find_runner(e, c, &c->lanes[k], large, &r) != TW_OK || !r) return TW_ERROR;
+    fmpq *longer = _fmpq_vec_init(count);
+    for (slong n = 0; n < x->count; n++) fmpq_swap(&longer[n], &x->q[n]);
+    tw_status status = recurrence_extend(e, r, longer, x->count, count);
+    _fmpq_vec_clear(x->q, x->count);
+    x->q = longer;
+    x->count = count;
+    return status;
+}
+
+/* All lanes by their recurrences; *done: it worked for all. */
+static tw_status lanes_run(tw_engine *e, contribution *c, expr *large, bool small, slong terms, bool *done)
+{
+    slong length = terms / (slong)FLINT_MAX(c->lane_count, 1) + 1, found = 0;
+    if (find_runners(e, c, large, done) != TW_OK) return TW_ERROR;
+    while (*done && found < terms && length < SEARCH_FACTOR * terms) {
+        for (size_t k = 0; k < c->lane_count; k++)
+            if (lane_run(e, c, k, large, length) != TW_OK) return TW_ERROR;
+        if (keep_terms(e, c, small, terms, &found) != TW_OK) return TW_ERROR;
+        length += length / 4 + 16;
+    }
+    *done = *done && found >= terms;
+    return TW_OK;
+}
+
+tw_status contribution_fill(tw_engine *e, contribution *c, expr *large, bool small, slong terms,
+                            condition_list *conditions)
+{
+    if (terms < TERMS_BY_RECURRENCE) return contribution_fill_directly(e, c, large, small, terms, conditions);
+    bool done = false;
+    slong first = TERMS_FIRST * (slong)FLINT_MAX(c->lane_count, 1);
+    if (contribution_fill_directly(e, c, large, small, first, conditions) != TW_OK) return TW_ERROR;
+    if (c->terminates || c->searched > 0) return contribution_fill_directly(e, c, large, small, terms, NULL);
+    if (lanes_run(e, c, large, small, terms, &done) != TW_OK) return TW_ERROR;
+    return done ? TW_OK : contribution_fill_directly(e, c, large, small, terms, NULL);
 }

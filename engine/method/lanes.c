@@ -634,21 +634,22 @@ tw_status drafts_finish(tw_engine *e, drafts *d, contribution *c, const kernel *
     if (e->error.kind != ERROR_NONE) return TW_ERROR;
     contribution_clear_lanes(c);
     c->lanes = base_alloc((d->count + 1) * sizeof *c->lanes);
+    c->zeros = base_alloc((d->count + 1) * sizeof *c->zeros);
     c->domain = DOMAIN_RATIONAL;
     fmpq_t minus;
     fmpq_init(minus);
     fmpq_neg(minus, k->power);
     for (size_t n = 0; n < d->count; n++) {
         const draft *one = d->list[n];
-        if (draft_is_zero(one)) continue;
-        lane *l = &c->lanes[c->lane_count++];
+        bool zero = draft_is_zero(one);
+        lane *l = zero ? &c->zeros[c->zero_count++] : &c->lanes[c->lane_count++];
         lane_init(l);
         l->constant = one->constant;
         l->log_power = one->log_power;
         l->first_exponent = expr_add(e, expr_mul(e, expr_fmpq(e, minus), one->base), expr_fmpq(e, k->factor_power));
         fmpq_mul_si(l->step, minus, one->step);
         coefficients_take(&l->c, one->q, one->x, one->count);
-        widen_domain(c, l->c.domain);
+        if (!zero) widen_domain(c, l->c.domain);
     }
     fmpq_clear(minus);
     if (e->error.kind != ERROR_NONE) return TW_ERROR;

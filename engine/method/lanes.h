@@ -18,6 +18,8 @@ typedef struct kernel {
 
 void kernel_init(kernel *k);
 void kernel_clear(kernel *k);
+/* The kernel of a contribution's local form, or of its formal one. */
+tw_status kernel_read(tw_engine *e, kernel *k, const contribution *c, expr *large);
 
 void lane_init(lane *l);
 void lane_clear(lane *l);
@@ -59,6 +61,10 @@ tw_status contribution_set_lane(tw_engine *e, contribution *c, expr *constant, e
  * more, or all of them when it terminates. conditions: of the coefficients, appended; may be NULL. */
 tw_status contribution_fill(tw_engine *e, contribution *c, expr *large, bool small, slong terms,
                             condition_list *conditions);
+
+/* The same without a recurrence's help, however many terms are wanted. */
+tw_status contribution_fill_directly(tw_engine *e, contribution *c, expr *large, bool small, slong terms,
+                                     condition_list *conditions);
 
 /* Splits factor = number * large^power * rest. */
 void factor_split(tw_engine *e, expr *factor, expr *large, fmpq_t number, fmpq_t power, expr **rest);
