@@ -23,6 +23,8 @@ struct growth_program {
     size_t count, room;
     slong shift;          /* x = 2^shift v, or 1/(2^shift v) when inverted; records are in v, of f(x) |dx/dv| */
     bool inverted;
+    bool turned;          /* x = turn * 2^shift v instead, turn anywhere in a ball of directions */
+    acb_t turn;
     growth_record result;
 };
 
@@ -142,6 +144,7 @@ growth_program *growth_compile(tw_engine *e, expr *f, expr *x)
     growth_program *t = base_alloc(sizeof *t);
     *t = (growth_program){.e = e, .x = x};
     growth_place_init(&t->place, e);
+    acb_init(t->turn);
     record_init(&t->result);
     size_t at;
     if (!lay_out(t, f, &at)) {
@@ -163,6 +166,7 @@ void growth_free(growth_program *t)
     free(t->nodes);
     record_clear(&t->result);
     growth_place_clear(&t->place);
+    acb_clear(t->turn);
     free(t);
 }
 
@@ -225,7 +229,7 @@ static bool bounded_call(growth_record *out, growth_program *t, growth_node *n)
         ok = n->values != NULL;
     }
     if (ok) {
-        tape_eval(v, n->values, at, false, t->place.prec);
+        tape_eval(v, n->values, at, t->place.analytic, t->place.prec);
         record_set_ball(out, v);
         ok = acb_is_finite(v);
     }
@@ -234,8 +238,27 @@ static bool bounded_call(growth_record *out, growth_program *t, growth_node *n)
     return ok;
 }
 
+/* Functions whose rules for records hold on complex balls and never join two sheets. */
+static bool rule_is_analytic(function_id f)
+{
+    switch (f) {
+    case FUNCTION_EXP:
+    case FUNCTION_LOG:
+    case FUNCTION_SIN:
+    case FUNCTION_COS:
+    case FUNCTION_SINH:
+    case FUNCTION_COSH:
+    case FUNCTION_TANH:
+    case FUNCTION_ERF:
+    case FUNCTION_ERFC: return true;
+    default: return false;
+    }
+}
+
 static bool call_record(growth_record *out, growth_program *t, growth_node *n)
 {
+    if (t->place.analytic && !rule_is_analytic(n->f->is.function))
+        return bounded_call(out, t, n);
     if (n->f->is.function == FUNCTION_MIN)
         return extreme(out, t, n, -1);
     if (n->f->is.function == FUNCTION_MAX)
@@ -323,8 +346,22 @@ void growth_scale(growth_program *t, slong shift, bool inverted)
     t->inverted = inverted;
 }
 
-/* x as a function of v */
-static void variable_record(growth_record *out, const growth_program *t)
+void growth_turn(growth_program *t, const acb_t turn)
+{
+    acb_set(t->turn, turn);
+    t->turned = true;
+    t->place.analytic = true;
+}
+
+bool growth_falls(const growth_program *t, fmpq_t power)
+{
+    const growth_record *r = &t->result;
+    fmpq_sub(power, r->a, r->slack);
+    return !t->resists && fmpq_is_zero(r->c) && fmpq_sgn(r->k) >= 0 && arb_is_negative(acb_realref(r->g));
+}
+
+/* x as a function of v; its modulus only where not `directed` */
+static void variable_record(growth_record *out, const growth_program *t, bool directed)
 {
     fmpq_t scale;
     fmpq_init(scale);
@@ -334,7 +371,19 @@ static void variable_record(growth_record *out, const growth_program *t)
         fmpq_mul_2exp(scale, scale, (flint_bitcnt_t)shift);
     else
         fmpq_div_2exp(scale, scale, (flint_bitcnt_t)-shift);
-    record_set_fmpq(out, scale);
+    if (t->turned && directed) {
+        acb_t w;
+        arb_t factor;
+        acb_init(w);
+        arb_init(factor);
+        arb_set_fmpq(factor, scale, t->place.prec);
+        acb_mul_arb(w, t->turn, factor, t->place.prec);
+        record_set_ball(out, w);
+        arb_clear(factor);
+        acb_clear(w);
+    } else {
+        record_set_fmpq(out, scale);
+    }
     fmpq_set_si(out->a, t->inverted ? -1 : 1, 1);
     fmpq_clear(scale);
 }
@@ -345,7 +394,7 @@ static bool result_record(growth_program *t)
     const growth_record *root = &t->nodes[t->count - 1].record;
     growth_record jacobian;
     record_init(&jacobian);
-    variable_record(&jacobian, t);
+    variable_record(&jacobian, t, false); /* directions have modulus 1 */
     fmpz_sub(fmpq_numref(jacobian.a), fmpq_numref(jacobian.a), fmpq_denref(jacobian.a));
     bool ok = record_mul(&t->result, root, &jacobian, &t->place);
     record_clear(&jacobian);
@@ -357,7 +406,7 @@ static bool node_record(growth_program *t, growth_node *n)
     if (n->constant || n->f->kind == EXPR_RELATION)
         return true;
     if (n->f == t->x) {
-        variable_record(&n->record, t);
+        variable_record(&n->record, t, true);
         return true;
     }
     switch ((expr_kind)n->f->kind) {

@@ -41,6 +41,12 @@ bool growth_run(growth_program *t, growth_bound *out, const arf_t X);
 /* From then on runs are about f(x) |dx/dv| as v -> inf, where x = 2^shift v, or x = 1/(2^shift v) when inverted (x ->
  * 0). */
 void growth_scale(growth_program *t, slong shift, bool inverted);
+/* From then on x = turn * 2^shift v (or turn/(2^shift v)), v real, turn any number of modulus 1 in the ball: runs are
+ * about all these directions at once, and give a record only where f is seen to be analytic there. f must hold no
+ * function that is nowhere analytic (abs, re, ...). */
+void growth_turn(growth_program *t, const acb_t turn);
+/* Is Re f(x) <= -m v^power for all v >= X and a positive m, by the last run? */
+bool growth_falls(const growth_program *t, fmpq_t power);
 /* Has f no zero for x >= X, by the last run? */
 bool growth_is_nonzero(const growth_program *t);
 /* Is f(x) real for all x >= X, by the last run? */

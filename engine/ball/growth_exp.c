@@ -49,6 +49,8 @@ static bool log_bounded(growth_record *out, const growth_record *r, const growth
     }
     if (acb_contains_zero(r->g))
         return false;
+    if (p->analytic && arb_contains_zero(acb_imagref(r->g)) && !arb_is_positive(acb_realref(r->g)))
+        return false;
     acb_t v;
     acb_init(v);
     acb_log(v, r->g, p->prec);

@@ -13,6 +13,7 @@ void growth_place_init(growth_place *p, tw_engine *e)
 {
     p->e = e;
     p->prec = 64;
+    p->analytic = false;
     arb_init(p->X);
     arb_init(p->log_X);
     arb_init(p->log_log_X);
@@ -689,9 +690,17 @@ static void modulus_power(acb_t out, const acb_t z, const arb_t power, const gro
     arb_clear(m);
 }
 
+/* Does z meet the cut (-inf, 0]? */
+static bool meets_cut(const acb_t z)
+{
+    return arb_contains_zero(acb_imagref(z)) && !arb_is_positive(acb_realref(z));
+}
+
 /* The ball of g for the power of a record with real exponent `power` (exact integer n when integer). */
 static bool power_ball(acb_t out, const growth_record *r, const arb_t power, bool integer, const growth_place *p)
 {
+    if (p->analytic && !integer && (meets_cut(r->g) || !acb_is_real(r->T)))
+        return false;
     if (!acb_contains_zero(r->g) && (integer || acb_is_real(r->T))) {
         acb_t e;
         acb_init(e);

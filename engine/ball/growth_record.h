@@ -22,6 +22,7 @@ typedef struct growth_place {
     tw_engine *e;
     arb_t X, log_X, log_log_X; /* X is exact and > e */
     slong prec;
+    bool analytic; /* a record is given only where the function is analytic as well: no ball meets a branch cut */
 } growth_place;
 
 void growth_place_init(growth_place *p, tw_engine *e);

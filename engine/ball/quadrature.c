@@ -15,9 +15,11 @@
 #include "engine/ball/decide.h"
 #include "engine/ball/quadrature_contour.h"
 #include "engine/ball/quadrature_kinks.h"
+#include "engine/ball/quadrature_oscillating.h"
 #include "engine/ball/quadrature_piece.h"
+#include "engine/ball/sign.h"
 
-enum { ATTEMPTS = 24, GUARD_BITS = 12, GAP_LIMIT = 4200, TEXT_LIMIT = 60 };
+enum { ATTEMPTS = 24, GUARD_BITS = 12, GAP_LIMIT = 4200, PART_GAP_LIMIT = 512, TEXT_LIMIT = 60, WORDS_LIMIT = 200 };
 
 /* One integral: a sum of pieces, each with a sign or factor, and thin slices around points that are known only closely.
  */
@@ -30,8 +32,11 @@ typedef struct quad_sum {
     tw_engine *e;
     quad_piece *pieces;
     slong *factors;
+    bool *real; /* only the real part of that piece counts */
     char **names;
     size_t count, room, name_count;
+    bool turned; /* a range was turned off the real line: the parts of the value may be of different size */
+    bool only_real;
     quad_slice *slices;
     size_t slice_count;
     slong evaluations, bits;
@@ -52,6 +57,7 @@ static void sum_clear(quad_sum *s)
     free(s->slices);
     free(s->pieces);
     free(s->factors);
+    free(s->real);
     free(s->names);
 }
 
@@ -87,8 +93,10 @@ static tw_status add_piece(quad_sum *s, slong factor, expr *g, expr *y, expr *le
         s->room = s->room ? 2 * s->room : 4;
         s->pieces = base_resize(s->pieces, s->room * sizeof *s->pieces);
         s->factors = base_resize(s->factors, s->room * sizeof *s->factors);
+        s->real = base_resize(s->real, s->room * sizeof *s->real);
     }
     s->factors[s->count] = factor;
+    s->real[s->count] = s->only_real;
     return quad_piece_init(&s->pieces[s->count++], s->e, g, y, length, from, to);
 }
 
@@ -123,8 +131,8 @@ static double log2_length(tw_engine *e, expr *length)
     return out;
 }
 
-/* A range without interior kinks, from < to. */
-static tw_status add_range(quad_sum *s, slong factor, expr *f, expr *x, expr *from, expr *to)
+/* A range without interior kinks, from < to, along the real line. */
+static tw_status add_straight(quad_sum *s, slong factor, expr *f, expr *x, expr *from, expr *to)
 {
     tw_engine *e = s->e;
     expr *y = expr_fresh(e, "y");
@@ -155,6 +163,56 @@ static tw_status add_range(quad_sum *s, slong factor, expr *f, expr *x, expr *fr
     const char *middle = point_words(s, expr_add(e, from, half));
     tw_status status = add_piece(s, factor, moved(e, f, x, from, y, false), y, half, a, middle);
     return status == TW_OK ? add_piece(s, factor, moved(e, f, x, to, y, true), y, half, b, middle) : status;
+}
+
+static tw_status add_legs(quad_sum *s, slong factor, const quad_legs *legs)
+{
+    tw_status status = TW_OK;
+    bool all_real = s->only_real;
+    for (size_t k = 0; status == TW_OK && k < legs->count; k++) {
+        const quad_leg *leg = &legs->list[k];
+        s->only_real = all_real || leg->real;
+        if (leg->from)
+            status = add_straight(s, factor * leg->factor, leg->f, leg->y, leg->from, leg->to);
+        else
+            status = add_piece(s, factor * leg->factor, leg->f, leg->y, leg->length,
+                               "the start of a path in the complex plane",
+                               leg->length ? "the end of a path in the complex plane"
+                                           : "the infinite end of a path in the complex plane");
+    }
+    s->only_real = all_real;
+    return status;
+}
+
+/* A range without interior kinks, from < to: turned into the complex plane where the integrand oscillates. */
+static tw_status add_range(quad_sum *s, slong factor, expr *f, expr *x, expr *from, expr *to)
+{
+    tw_engine *e = s->e;
+    if (!f || !from || !to)
+        return TW_ERROR;
+    quad_legs legs = {0};
+    quad_turned turned = QUAD_NO_NEED;
+    char why[WORDS_LIMIT];
+    tw_status status = factor ? quad_turn(e, &legs, f, x, from, to, &turned, why, sizeof why) : TW_OK;
+    if (status == TW_OK && turned == QUAD_TURNED) {
+        s->turned = true;
+        status = add_legs(s, factor, &legs);
+    } else if (status == TW_OK && turned == QUAD_ENDLESS) {
+        status = engine_fail(e, ERROR_UNSUITABLE, "the integrand oscillates without end between %s and %s, and the "
+                             "range could not be turned into the complex plane: %s",
+                             point_words(s, from), point_words(s, to), why);
+    } else if (status == TW_OK) {
+        status = add_straight(s, factor, f, x, from, to);
+        error_kind kind = e->error.kind;
+        if (status != TW_OK && factor && why[0] && (kind == ERROR_UNSUITABLE || kind == ERROR_UNDECIDED)) {
+            char *words = base_copy(e->error.words);
+            engine_forgive(e);
+            engine_fail(e, kind, "%s; nor could the range be turned into the complex plane: %s", words, why);
+            free(words);
+        }
+    }
+    quad_legs_free(&legs);
+    return status;
 }
 
 /* The integral of f over a part of `place`, in the sum with any sign; a piece has taken g there (NULL: nothing). */
@@ -292,6 +350,33 @@ static tw_status range_order(tw_engine *e, expr *from, expr *to, const arb_t a, 
     return TW_OK;
 }
 
+/* i -> -i: the conjugate where every symbol is real and no function is on its cut; NULL: not of that form. */
+static expr *conjugate(tw_engine *e, expr *f)
+{
+    if (!f || expr_is_constant(f, CONSTANT_I))
+        return f ? expr_neg(e, f) : NULL;
+    if (!f->count)
+        return f->kind == EXPR_NUMBER || f->kind == EXPR_CONSTANT || f->kind == EXPR_SYMBOL ? f : NULL;
+    expr **args = base_alloc(f->count * sizeof *args), *out = NULL;
+    for (uint32_t k = 0; k < f->count; k++)
+        args[k] = conjugate(e, f->args[k]);
+    if (f->kind == EXPR_SUM)
+        out = expr_sum(e, args, f->count);
+    else if (f->kind == EXPR_PRODUCT)
+        out = expr_product(e, args, f->count);
+    else if (f->kind == EXPR_POWER && expr_is_number(f->args[1]) &&
+             fmpz_is_one(fmpq_denref(expr_number(f->args[1]))))
+        out = args[0] ? expr_pow(e, args[0], args[1]) : NULL;
+    else if (expr_is_call(f, FUNCTION_EXP) || expr_is_call(f, FUNCTION_COS) || expr_is_call(f, FUNCTION_SIN))
+        out = args[0] ? expr_call1(e, f->is.function, args[0]) : NULL;
+    else if (f->kind == EXPR_CALL && sign_is_real(e, f))
+        out = f;
+    else if (f->kind == EXPR_POWER && sign_is_real(e, f))
+        out = f;
+    free(args);
+    return out;
+}
+
 /* sign * int of f from `from` to `to` on the real line. */
 static tw_status add_line(quad_sum *s, slong sign, expr *f, expr *x, expr *from, expr *to, slong prec)
 {
@@ -312,11 +397,14 @@ static tw_status add_line(quad_sum *s, slong sign, expr *f, expr *x, expr *from,
                                : add_with_kinks(s, 0, f, x, expr_int(e, 0), from, prec);
             order = 0;
         }
+        /* the imaginary parts of the halves cancel */
+        s->only_real = mirrored && quad_tidy(e, mirrored, x) == quad_tidy(e, conjugate(e, f), x);
     }
     if (status == TW_OK && order > 0)
         status = add_with_kinks(s, sign, f, x, from, to, prec);
     else if (status == TW_OK && order < 0)
         status = add_with_kinks(s, -sign, f, x, to, from, prec);
+    s->only_real = false;
     arb_clear(a);
     arb_clear(b);
     return status;
@@ -396,6 +484,22 @@ static slong accuracy(const acb_t v)
     return bits;
 }
 
+/* The same of the worse of the two parts. */
+static slong part_accuracy(const acb_t v)
+{
+    acb_t part;
+    acb_init(part);
+    arb_set(acb_realref(part), acb_realref(v));
+    slong bits = accuracy(part);
+    if (!arb_is_zero(acb_imagref(v))) {
+        arb_set(acb_realref(part), acb_imagref(v));
+        slong other = accuracy(part);
+        bits = other < bits ? other : bits;
+    }
+    acb_clear(part);
+    return bits;
+}
+
 static double log2_upper(const acb_t v)
 {
     mag_t m;
@@ -404,6 +508,20 @@ static double log2_upper(const acb_t v)
     double out = mag_is_zero(m) ? -1e300 : mag_get_d_log2_approx(m);
     mag_clear(m);
     return out;
+}
+
+static double smaller_part(const acb_t v)
+{
+    acb_t part;
+    acb_init(part);
+    arb_set(acb_realref(part), acb_realref(v));
+    double size = log2_upper(part);
+    if (!arb_is_zero(acb_imagref(v))) {
+        arb_set(acb_realref(part), acb_imagref(v));
+        size = fmin(size, log2_upper(part));
+    }
+    acb_clear(part);
+    return size;
 }
 
 static double log2_radius(const acb_t v)
@@ -454,7 +572,8 @@ static void add_slices(quad_sum *s, acb_t value, slong prec)
     acb_clear(x);
 }
 
-static tw_status sum_attempt(quad_sum *s, acb_t value, double log2_size, slong goal, slong prec)
+/* lost: bits by which the value is smaller than its largest piece. */
+static tw_status sum_attempt(quad_sum *s, acb_t value, double log2_size, slong goal, slong lost, slong prec)
 {
     acb_t part;
     acb_init(part);
@@ -465,7 +584,9 @@ static tw_status sum_attempt(quad_sum *s, acb_t value, double log2_size, slong g
     for (size_t k = 0; status == TW_OK && k < s->count; k++) {
         if (!s->factors[k])
             continue;
-        status = quad_piece_integrate(&s->pieces[k], part, tolerance, goal + 2, prec);
+        status = quad_piece_integrate(&s->pieces[k], part, tolerance, goal + lost + 2, prec);
+        if (s->real[k])
+            arb_zero(acb_imagref(part));
         acb_addmul_si(value, part, s->factors[k], prec);
         if (status == TW_OK && !acb_is_finite(part))
             status = engine_fail(s->e, ERROR_UNDECIDED,
@@ -509,11 +630,13 @@ static tw_status integral_value(quad_sum *s, acb_t value, slong goal, slong *rea
     tw_status status = TW_OK;
     for (int k = 0; k < ATTEMPTS && best < goal && stalled < 3; k++) {
         double start = seconds_now();
-        status = sum_attempt(s, attempt, size, goal, prec);
+        status = sum_attempt(s, attempt, size, goal, (slong)fmax(first - size - 2, 0), prec);
         s->bits = prec;
         if (status != TW_OK)
             break;
-        slong bits = accuracy(attempt);
+        slong whole = accuracy(attempt), bits = s->turned ? part_accuracy(attempt) : whole;
+        if (whole >= goal && first - size > PART_GAP_LIMIT) /* one part is much the smaller, or 0 */
+            bits = whole;
         if (k == 0 || bits > best || (bits < 0 && best < 0 && log2_radius(attempt) < log2_radius(value))) {
             stalled = 0;
             best = bits;
@@ -527,7 +650,7 @@ static tw_status integral_value(quad_sum *s, acb_t value, slong goal, slong *rea
         if (radius > aimed + 3) /* rounding, not the tolerance, is what hurts */
             prec += (slong)fmin(fmax(radius - aimed, 8), 1e5) + 8;
         if (bits >= 0) {
-            size = fmin(size, log2_upper(attempt) - 1);
+            size = fmin(size, (s->turned ? smaller_part(attempt) : log2_upper(attempt)) - 1);
         } else {
             if (first - size > GAP_LIMIT || seconds_now() - start > 3)
                 break;

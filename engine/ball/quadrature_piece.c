@@ -243,6 +243,19 @@ static void rest_ball(acb_t rest, arb_t log_rest, bool real)
     arf_clear(top);
 }
 
+/* Is the integral beyond v bounded by a record, with a logarithm below the limit? */
+static bool cut_serves(quad_piece *p, growth_bound *g, const arf_t v, arb_t log_rest, const arb_t limit)
+{
+    bool serves = false;
+    if (growth_run(p->records, g, v) && growth_integrable(g)) {
+        serves = growth_tail(p->e, log_rest, g) == TW_OK && !arb_gt(log_rest, limit) &&
+                 !arf_is_nan(arb_midref(log_rest));
+        if (p->e->error.kind == ERROR_DIVERGENT || p->e->error.kind == ERROR_UNDECIDED)
+            engine_forgive(p->e);
+    }
+    return serves;
+}
+
 /* A cut, and a ball around 0 that is proved to hold the integral beyond it, of radius at most 2^tolerance. */
 static tw_status find_cut(arf_t cut, acb_t rest, quad_piece *p, bool high, slong tolerance)
 {
@@ -267,18 +280,20 @@ static tw_status find_cut(arf_t cut, acb_t rest, quad_piece *p, bool high, slong
     arb_mul_si(limit, limit, tolerance, 64);
     tail_point(v, &a, cut);
     bool found = false;
-    for (int tries = 0; tries < CUT_TRIES && !found && budget_ok(p->e); tries++) {
-        if (growth_run(p->records, &g, v) && growth_integrable(&g)) {
-            found = growth_tail(p->e, log_rest, &g) == TW_OK && !arb_gt(log_rest, limit) &&
-                    !arf_is_nan(arb_midref(log_rest));
-            if (p->e->error.kind == ERROR_DIVERGENT || p->e->error.kind == ERROR_UNDECIDED)
-                engine_forgive(p->e);
-        }
+    int tries = 0;
+    for (; tries < CUT_TRIES && !found && budget_ok(p->e); tries++) {
+        found = cut_serves(p, &g, v, log_rest, limit);
         if (found)
             break;
         arf_set_d(factor, tries < 4 ? 1.125 : tries < 8 ? 1.5 : tries < 40 ? 2 : 1048576);
         arf_mul(v, v, factor, 60, ARF_RND_CEIL);
     }
+    for (slong back = 16; found && tries > 40 && back; back /= 2) { /* that was a great leap: most of it back again */
+        arf_mul_2exp_si(factor, v, -back);
+        if (cut_serves(p, &g, factor, log_rest, limit))
+            arf_swap(v, factor);
+    }
+    found = found && cut_serves(p, &g, v, log_rest, limit);
     if (found)
         rest_ball(rest, log_rest, growth_is_real(p->records));
     if (found) { /* back to y: the cut may lie a little inside of what the bound covers, never outside */

@@ -203,6 +203,159 @@ static void check_tree(tw_engine *e)
     tape_free(values);
 }
 
+/* ---- sectors ---- */
+
+static bool analytic_form(expr *f)
+{
+    if (f->kind == EXPR_CALL && (f->is.function == FUNCTION_ABS || f->is.function == FUNCTION_SIGN))
+        return false;
+    for (uint32_t k = 0; k < f->count; k++)
+        if (!analytic_form(f->args[k]))
+            return false;
+    return true;
+}
+
+static void set_direction(acb_t turn, double from, double to)
+{
+    arb_t phi;
+    arb_init(phi);
+    arb_set_d(phi, 0.5 * (from + to));
+    mag_set_d(arb_radref(phi), 0.5 * (to - from) + 1e-15);
+    arb_sin_cos(acb_imagref(turn), acb_realref(turn), phi, 64);
+    arb_clear(phi);
+}
+
+/* z = r e^(i phi) for the angles from, to, at distance v or 1/v */
+static void set_arc(acb_t z, const arb_t v, bool inverted, double from, double to)
+{
+    set_direction(z, from, to);
+    if (inverted)
+        acb_div_arb(z, z, v, 192);
+    else
+        acb_mul_arb(z, z, v, 192);
+}
+
+/* Analytic all along the arc: a piece that resists down to a tiny size, though values are had there, is a cut. */
+static void check_arc(tw_engine *e, expr *f, tape *values, const arb_t v, bool inverted, double from, double to,
+                      int depth)
+{
+    acb_t z, w;
+    acb_init(z);
+    acb_init(w);
+    set_arc(z, v, inverted, from, to);
+    tape_eval(w, values, z, true, 192);
+    bool good = acb_is_finite(w);
+    if (!good && depth < 30) {
+        double middle = 0.5 * (from + to);
+        check_arc(e, f, values, v, inverted, from, middle, depth + 1);
+        check_arc(e, f, values, v, inverted, middle, to, depth < 10 ? depth + 20 : 30); /* one way deep is enough */
+    } else if (!good) {
+        acb_get_mid(z, z);
+        tape_eval(w, values, z, false, 192);
+        if (acb_is_finite(w) && acb_rel_accuracy_bits(w) > 60) {
+            tape_eval(w, values, z, true, 192);
+            if (!acb_is_finite(w))
+                violated(e, f, "not analytic in the sector", v, z);
+        }
+    }
+    acb_clear(z);
+    acb_clear(w);
+}
+
+static unsigned long sector_points, sector_trees, sector_recorded;
+
+static void check_sector_point(tw_engine *e, expr *f, tape *values, growth_program *t, const growth_bound *g,
+                               double from, double to, bool inverted)
+{
+    acb_t z, value, record;
+    arb_t v, size, bound;
+    acb_init(z);
+    acb_init(value);
+    acb_init(record);
+    arb_init(v);
+    arb_init(size);
+    arb_init(bound);
+    arb_set_d(v, 1 + (roll(2) ? 3 : 0.05) * chance());
+    arb_set_arf(size, g->X);
+    arb_mul(v, v, size, 128);
+    arb_mul_2exp_si(v, v, roll(3) ? 0 : (slong)roll(10));
+    arb_get_mid_arb(v, v);
+    double phi = from + (to - from) * chance();
+    set_arc(z, v, inverted, phi, phi);
+    sector_points++;
+    tape_eval(value, values, z, false, 192);
+    if (inverted) { /* the record is that of f |dz/dv| */
+        acb_div_arb(value, value, v, 192);
+        acb_div_arb(value, value, v, 192);
+    }
+    if (acb_is_finite(value) && acb_rel_accuracy_bits(value) > 10) {
+        growth_value(record, t, v, 128);
+        if (acb_is_finite(record) && !acb_overlaps(value, record))
+            violated(e, f, "outside the record of a sector", v, value);
+        acb_abs(size, value, 128);
+        arb_log(size, size, 128);
+        bound_log_at(bound, g, v, 128);
+        if (arb_is_finite(size) && !arf_is_nan(arb_midref(bound)) && arb_gt(size, bound))
+            violated(e, f, "above the bound of a sector", v, value);
+    }
+    check_arc(e, f, values, v, inverted, from, to, 0);
+    acb_clear(z);
+    acb_clear(value);
+    acb_clear(record);
+    arb_clear(v);
+    arb_clear(size);
+    arb_clear(bound);
+}
+
+static void check_sector(tw_engine *e)
+{
+    expr *x = expr_symbol(e, "x"), *f = random_tree(e, x, 1 + (int)roll(4));
+    engine_forgive(e);
+    if (!f || expr_size(f) > 300 || !analytic_form(f))
+        return;
+    growth_program *t = growth_compile(e, f, x);
+    tape *values = tape_new(e, f, &x, 1);
+    engine_forgive(e);
+    growth_bound g;
+    arf_t X;
+    acb_t turn;
+    growth_bound_init(&g);
+    arf_init(X);
+    acb_init(turn);
+    arf_set_d(X, 3 + (roll(4) ? 20 : 2000) * chance());
+    double from = 6.4 * chance() - 3.2, to = from + (roll(3) ? 0.05 : 0.5) * chance();
+    bool inverted = roll(3) == 0;
+    sector_trees++;
+    set_direction(turn, from, to);
+    if (t && values) {
+        growth_turn(t, turn);
+        growth_scale(t, 0, inverted);
+        if (growth_run(t, &g, X)) {
+            sector_recorded++;
+            check_sector_point(e, f, values, t, &g, from, to, inverted);
+        }
+    }
+    growth_bound_clear(&g);
+    arf_clear(X);
+    acb_clear(turn);
+    growth_free(t);
+    tape_free(values);
+}
+
+static void test_sectors(void **unused)
+{
+    (void)unused;
+    unsigned long trials = getenv("TW_TRIALS") ? strtoul(getenv("TW_TRIALS"), NULL, 10) : 20000;
+    while (sector_points < trials) {
+        tw_engine *e = tw_engine_new();
+        for (int k = 0; k < TREES_PER_ENGINE; k++)
+            check_sector(e);
+        tw_engine_free(e);
+    }
+    printf("%lu points of sectors; %lu of %lu trees have a record\n", sector_points, sector_recorded, sector_trees);
+    assert_true(5 * sector_recorded > sector_trees);
+}
+
 static void test_random_trees(void **unused)
 {
     (void)unused;
@@ -324,6 +477,7 @@ int main(void)
         state = 1;
     const struct CMUnitTest tests[] = {
         cmocka_unit_test(test_random_trees),
+        cmocka_unit_test(test_sectors),
         cmocka_unit_test(test_tails),
         cmocka_unit_test(test_cancellation),
     };
