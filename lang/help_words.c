@@ -99,18 +99,31 @@ static const help_entry entries[] = {
     {"quit", HELP_WRITE, HERE, "quit", "Ends the session.", "quit", NULL},
 
     /* ---- rules and derivations ---- */
-    {"rule", HELP_RULE, LATER, "rule NAME(VARIABLES):\n    PATTERN\n    becomes REPLACEMENT\n    when CONDITIONS\n    because "
+    {"rule", HELP_RULE, HERE, "rule NAME(VARIABLES):\n    PATTERN\n    becomes REPLACEMENT\n    when CONDITIONS\n    because "
      "\"SOURCE\"",
-     "Defines a rewriting rule.",
-     "rule halve(a):\n    integral from 0 to inf of exp(-2*a*x) dx\n    becomes 1/(2*a) when a > 0", NULL},
-    {"pass", HELP_RULE, LATER, "pass NAME = STRATEGY", "Combines rules with then, or, repeat, everywhere, once.",
-     "pass tidy = repeat everywhere collect_powers", NULL},
-    {"check", HELP_RULE, LATER, "check rule NAME\ncheck \"FILE\"\ncheck recurrence of NAME",
-     "Tries a rule at random admissible values, or checks a certificate again.", "check rule halve", NULL},
-    {"rewrite", HELP_RULE, LATER, "rewrite EXPRESSION with PASS", "Applies a pass to an expression.",
-     "rewrite sin(x)^2 + 1 with tidy", NULL},
-    {"why", HELP_RULE, LATER, "why not RULE", "Says which part or condition of a rule failed for the current form.",
-     "why not halve", NULL},
+     "Defines a rewriting rule. The names in its brackets are pattern variables,\nf(x) there is a pattern function; all else "
+     "stands for itself. Sums and\nproducts match in any order. Before its first use a rule is tried at\nrandom admissible "
+     "values; one that fails is refuted and never used.",
+     "rule halve(a):\n    integral from 0 to inf of exp(-2*a*x) dx\n    becomes 1/(2*a) when a > 0\n\n"
+     "rewrite integral from 0 to inf of exp(-6*t) dt with halve", NULL},
+    {"pass", HELP_RULE, HERE, "pass NAME = RULE\npass NAME = PASS then PASS\npass NAME = PASS or PASS\npass NAME = repeat PASS\n"
+     "pass NAME = everywhere PASS\npass NAME = once PASS",
+     "Combines rules. `repeat`, `everywhere`, `once` bind tightest, then `then`,\nthen `or`. A `repeat` that goes in a circle "
+     "is an error that shows it.",
+     "rule add_angles(a): 2*sin(a)*cos(a) becomes sin(2*a) because \"DLMF 4.21.27\"\n"
+     "pass tidy = repeat everywhere add_angles\nrewrite 8*sin(x)*cos(x)*cos(2*x) with tidy", NULL},
+    {"check", HELP_RULE, HERE, "check rule NAME\ncheck \"FILE\"\ncheck recurrence of NAME",
+     "Tries a rule, or every rule of a file, at random admissible values: both\nsides as certified balls. One disjoint pair "
+     "refutes it, and is shown.",
+     "rule shift(a): Gamma(a + 1) becomes a*Gamma(a) because \"DLMF 5.5.1\"\ncheck rule shift", NULL},
+    {"rewrite", HELP_RULE, HERE, "rewrite EXPRESSION with PASS", "Applies a pass to an expression. The result says what it rests "
+     "on.",
+     "rule sum_of_squares(x): sin(x)^2 + cos(x)^2 becomes 1\nrewrite sin(3*t)^2 + 5 + cos(3*t)^2 with sum_of_squares", NULL},
+    {"why", HELP_RULE, HERE, "why not RULE", "Says why a rule does not apply to the expression rewritten last (in a\n"
+     "derivation: to the current form): which part found nothing at the nearest\nplace, or which condition, and what is known of "
+     "it.",
+     "rule halve(a):\n    integral from 0 to inf of exp(-2*a*x) dx\n    becomes 1/(2*a) when a > 0\n\n"
+     "rewrite integral from 0 to inf of exp(-k*t) dt with halve\nwhy not halve", NULL},
     {"derive", HELP_RULE, HERE, "derive INTEGRAL\n    MOVES\ndone [as NAME]",
      "Opens a derivation by hand. Each line until `done` is a move on the current\nform; it is checked, by its theorem and by "
      "certified balls at sample values\nof the parameters, before it is kept. `undo` takes the last one back, `steps`\nshows the "
@@ -241,9 +254,9 @@ static const help_entry entries[] = {
     {"unknown", HELP_LABEL, HERE, NULL, "Nothing is claimed; the reason stands below.", NULL, "remainder"},
     {"fitted", HELP_LABEL, LATER, NULL, "Of a recurrence: agrees with the computed coefficients, not proved.", NULL,
      "recurrence"},
-    {"passed", HELP_LABEL, LATER, NULL, "Of a rule: tried at samples without a contradiction.", NULL, "check"},
+    {"passed", HELP_LABEL, HERE, NULL, "Of a rule: tried at samples without a contradiction.", NULL, "check"},
     {"refuted", HELP_LABEL, HERE, NULL, "Contradicted by certified numbers.", NULL, "compare"},
-    {"unchecked", HELP_LABEL, LATER, NULL, "Of a rule: not tried.", NULL, "check"},
+    {"unchecked", HELP_LABEL, HERE, NULL, "Of a rule: not tried.", NULL, "check"},
     {"granted", HELP_LABEL, HERE, NULL, "Of a condition: taken as true by `grant`.", NULL, "grant"},
     {"open", HELP_LABEL, HERE, NULL, "Of a condition: neither proved nor refuted; what needs it is conditional.", NULL,
      "remainder"},
@@ -298,14 +311,13 @@ static const help_entry entries[] = {
     {"times", HELP_CLAUSE, HERE, "repeat parts N times", "How often a move is repeated.", NULL, "repeat"},
     {"back", HELP_CLAUSE, HERE, "integrate back in PARAM from VALUE", "Integrates in a parameter.", NULL, "differentiate"},
     {"termwise", HELP_CLAUSE, HERE, "integrate termwise", "Term by term.", NULL, "integrate"},
-    {"not", HELP_CLAUSE, LATER, "why not RULE", "Asks why a rule does not apply.", NULL, "why"},
-    {"becomes", HELP_CLAUSE, LATER, NULL, "Between the two sides of a rule.", NULL, "rule"},
-    {"because", HELP_CLAUSE, LATER, NULL, "The source of a rule.", NULL, "rule"},
-    {"then", HELP_CLAUSE, LATER, NULL, "One after the other, in a pass.",
-     "pass reduce = halve then tidy", NULL},
-    {"or", HELP_CLAUSE, LATER, NULL, "The first that applies, in a pass.", "pass reduce = halve or tidy", NULL},
-    {"everywhere", HELP_CLAUSE, LATER, NULL, "At every place where it applies, in a pass.", NULL, "pass"},
-    {"once", HELP_CLAUSE, LATER, NULL, "At the first place where it applies, in a pass.", "pass reduce = once halve", NULL},
+    {"not", HELP_CLAUSE, HERE, "why not RULE", "Asks why a rule does not apply.", NULL, "why"},
+    {"becomes", HELP_CLAUSE, HERE, NULL, "Between the two sides of a rule.", NULL, "rule"},
+    {"because", HELP_CLAUSE, HERE, NULL, "The source of a rule.", NULL, "rule"},
+    {"then", HELP_CLAUSE, HERE, NULL, "One after the other, in a pass.", NULL, "pass"},
+    {"or", HELP_CLAUSE, HERE, NULL, "The first that applies, in a pass.", NULL, "pass"},
+    {"everywhere", HELP_CLAUSE, HERE, NULL, "At every place where it applies, in a pass.", NULL, "pass"},
+    {"once", HELP_CLAUSE, HERE, NULL, "At the first place where it applies, in a pass.", NULL, "pass"},
 };
 
 const help_entry *help_table(size_t *count)

@@ -11,12 +11,6 @@
 /* The highest order of a derivative that is carried out. */
 enum { ORDER_LIMIT = 1000 };
 
-typedef struct lower_scope {
-    const char *name;
-    expr *symbol;
-    struct lower_scope *outer;
-} lower_scope;
-
 static expr *lower(lowering *l, const syntax *a);
 
 void lowering_init(lowering *l, tw_engine *e, void *host)
@@ -118,6 +112,14 @@ static bool constant_find(const char *name, expr_constant *c)
     return false;
 }
 
+static const lower_function *find_function(const lowering *l, const char *name)
+{
+    for (size_t k = 0; k < l->local_count; k++)
+        if (strcmp(l->locals[k].name, name) == 0)
+            return &l->locals[k].function;
+    return l->function ? l->function(l->host, name) : NULL;
+}
+
 static lower_meaning ask_meaning(const lowering *l, const char *name, expr **value, const char **what)
 {
     *value = NULL;
@@ -142,7 +144,7 @@ static expr *lower_free_name(lowering *l, const char *name, span at)
     case MEANING_DECLARED:
         break;
     }
-    if (l->function && l->function(l->host, name) != NULL)
+    if (find_function(l, name) != NULL)
         return FAIL(l, at, ERROR_NAME, "`%s` is a function: write its argument in brackets", name);
     return expr_symbol(l->engine, name);
 }
@@ -224,7 +226,7 @@ static expr *apply(lowering *l, const syntax *a, expr *const *arguments)
 {
     const char *name = a->as.call.name.text;
     size_t n = a->as.call.count;
-    const lower_function *own = l->function ? l->function(l->host, name) : NULL;
+    const lower_function *own = find_function(l, name);
     if (own != NULL && own->count != n)
         return FAIL(l, a->at, ERROR_VALUE, "`%s` takes %zu argument%s, not %zu", name, own->count,
                     own->count == 1 ? "" : "s", n);

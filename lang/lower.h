@@ -22,6 +22,19 @@ typedef enum lower_meaning {
     MEANING_OTHER,    /* it is defined, but no expression: *what says what it is, such as "an expansion" */
 } lower_meaning;
 
+/* A bound name and the symbol that it stands for, innermost first. */
+typedef struct lower_scope {
+    const char *name;
+    expr *symbol;
+    struct lower_scope *outer;
+} lower_scope;
+
+/* A function that is known in one statement only, such as a rule's pattern function. */
+typedef struct lower_local {
+    const char *name;
+    lower_function function;
+} lower_local;
+
 typedef struct lowering {
     tw_engine *engine;
     void *host;
@@ -34,7 +47,9 @@ typedef struct lowering {
     bool failed;
     span place; /* once failed: the part of the source that the engine's error is about */
 
-    struct lower_scope *scope; /* private: bound names, innermost first */
+    lower_scope *scope;        /* bound names, innermost first */
+    const lower_local *locals; /* functions that hide all others of their names */
+    size_t local_count;
     expr **pending;            /* private: items of lists under construction */
     size_t pending_count, pending_room;
 } lowering;

@@ -1,12 +1,9 @@
-/* Declarations: large, small, given, grant, let, use, drop. The one idea: everything is read and checked first, the session
+/* Declarations: large, small, given, grant, let, drop. The one idea: everything is read and checked first, the session
  * is changed last, so a statement that fails leaves it as it was. */
 #include <stdlib.h>
 #include <string.h>
-#include <unistd.h>
 
 #include "engine/method/method.h"
-#include "lang/file.h"
-#include "lang/help.h"
 #include "lang/request.h"
 
 static void declared(result *r, const statement *st)
@@ -239,7 +236,7 @@ static tw_status let_request(session *s, const statement *st, result *r)
         return TW_ERROR;
     }
     r->echo = true;
-    names_set(&s->names, st->as.let.name.text, kept);
+    names_set(kept->kind == VALUE_RULE ? &s->rules : &s->names, st->as.let.name.text, kept);
     return TW_OK;
 }
 
@@ -252,65 +249,6 @@ tw_status request_let(session *s, const statement *st, result *r, value **keep)
     return let_expression(s, st, r);
 }
 
-/* ---- use ---- */
-
-/* The standard library: where TW_STDLIB says, else with the installed data, else in the source tree that the program was
- * built in. The first folder that has the file counts. Into a fresh string, NULL when none has it. */
-static char *find_library_file(const char *name)
-{
-    char program[4096];
-    ssize_t length = readlink("/proc/self/exe", program, sizeof program - 1);
-    program[length > 0 ? length : 0] = '\0';
-    char *folder = file_folder(program);
-    const char *places[] = {"../share/termwise/stdlib/", "../stdlib/", "../../stdlib/"};
-    text path;
-    text_init(&path);
-    const char *chosen = getenv("TW_STDLIB");
-    bool found = false;
-    if (chosen && *chosen) {
-        text_addf(&path, "%s/%s.tw", chosen, name);
-        found = file_exists(path.bytes);
-    } else {
-        text_addf(&path, "%s/stdlib/%s.tw", TW_DATADIR, name);
-        found = file_exists(path.bytes);
-        for (size_t k = 0; !found && k < sizeof places / sizeof *places; k++) {
-            text_cut(&path, 0);
-            text_addf(&path, "%s%s%s.tw", folder, places[k], name);
-            found = file_exists(path.bytes);
-        }
-    }
-    free(folder);
-    char *result_path = found ? text_take(&path) : NULL;
-    text_clear(&path);
-    return result_path;
-}
-
-static char *find_user_file(session *s, const char *file)
-{
-    text path;
-    text_init(&path);
-    if (file[0] != '/') text_add(&path, s->folder);
-    text_add(&path, file);
-    return text_take(&path);
-}
-
-tw_status request_use(session *s, const statement *st, result *r, value **keep)
-{
-    (void)keep;
-    const char *file = st->as.use.file;
-    char *path = file ? find_user_file(s, file) : find_library_file(st->as.use.name.text);
-    if (!path)
-        return request_fail(s, st->as.use.name.at, ERROR_FILE, "the standard library has no file `%s`", st->as.use.name.text);
-    span at = st->at;
-    tw_status status = s->run_file ? s->run_file(s->host, path)
-                                   : engine_fail(s->e, ERROR_UNAVAILABLE, "files cannot be used here");
-    result_restart(r, "use");
-    result_string(r, "file", path);
-    r->echo = true;
-    free(path);
-    return status == TW_OK ? TW_OK : request_fail_at(s, at);
-}
-
 /* ---- drop ---- */
 
 tw_status request_drop(session *s, const statement *st, result *r, value **keep)
@@ -318,7 +256,7 @@ tw_status request_drop(session *s, const statement *st, result *r, value **keep)
     (void)keep;
     syntax_name name = st->as.name;
     declared(r, st);
-    if (names_drop(&s->names, name.text)) return TW_OK;
+    if (names_drop(&s->names, name.text) | names_drop(&s->rules, name.text)) return TW_OK;
     expr *symbol = expr_symbol(s->e, name.text);
     if (!symbol) return request_fail_at(s, name.at);
     if (!session_declares(s, symbol)) return session_unknown_name(s, name);

@@ -7,6 +7,7 @@
 #include "lang/file.h"
 #include "lang/help.h"
 #include "lang/request.h"
+#include "lang/rules.h"
 #include "lang/suggest.h"
 
 /* ---- write ---- */
@@ -136,6 +137,10 @@ static tw_status show_value(session *s, result *r, const char *name, value *v)
         if (status == TW_OK && s->json) status = describe_object(s, r, name, &v->expansion);
         break;
     case VALUE_DERIVATION: derivation_show(s, r, name, v->derivation); break;
+    case VALUE_RULE:
+    case VALUE_PASS:
+        show_rule_value(s, r, name, v);
+        break;
     case VALUE_RESULT:
         result_line(r, "%s: %s", name, v->what);
         text_add(&r->words, v->result.words.bytes);
@@ -157,7 +162,12 @@ tw_status request_show(session *s, const statement *st, result *r, value **keep)
     result_restart(r, "value");
     result_string(r, "name", name.text);
     value *v = names_find(&s->names, name.text);
-    if (v) return show_value(s, r, name.text, v) == TW_OK ? TW_OK : request_fail_at(s, name.at);
+    bool shown = v != NULL;
+    if (v && show_value(s, r, name.text, v) != TW_OK) return request_fail_at(s, name.at);
+    value *x = names_find(&s->rules, name.text);
+    if (x) show_rule_value(s, r, name.text, x);
+    shown = show_file(s, r, name.text) || shown || x;
+    if (shown) return TW_OK;
     expr *symbol = expr_symbol(s->e, name.text);
     if (!symbol) return request_fail_at(s, name.at);
     if (!session_declares(s, symbol)) return session_unknown_name(s, name);

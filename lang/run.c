@@ -166,7 +166,8 @@ static bool run_statement(run *r, source *whole, size_t from, const statement *s
     text_init(&words);
     session_describe(st, &words);
     budget_start(e, r->options.time_limit);
-    progress_start(e, words.bytes, true, r->options.time_limit, r->at_prompt, r->options.json);
+progress_start(e, words.bytes, true, r->options.time_limit, r->at_prompt, r->options.json);
+    r->session.line = source_find(whole, st->at.from + (uint32_t)from).line;
     result made;
     result_init(&made, "done");
     made.width = r->width;
@@ -247,10 +248,13 @@ static bool run_bytes(run *r, const char *path, const text *bytes)
     const char *before = r->session.folder;
     char *folder = file_folder(path);
     r->session.folder = folder;
+    const char *outer = r->session.file;
+    r->session.file = path;
     source whole;
     source_init(&whole, path, bytes->bytes, bytes->length);
     bool go_on = run_source(r, &whole, 0);
     r->session.folder = before;
+    r->session.file = outer;
     free(folder);
     return go_on;
 }

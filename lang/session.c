@@ -7,6 +7,7 @@
 #include <string.h>
 
 #include "lang/request.h"
+#include "lang/verdicts.h"
 
 /* ---- the table of requests ---- */
 
@@ -20,6 +21,12 @@ static const struct {
     [STATEMENT_GIVEN] = {request_given, CHANGES_FACTS},
     [STATEMENT_GRANT] = {request_grant, CHANGES_FACTS},
     [STATEMENT_USE] = {request_use, CHANGES_ALL},
+    [STATEMENT_RULE] = {request_rule, CHANGES_FACTS},
+    [STATEMENT_PASS] = {request_pass, CHANGES_LAST},
+    [STATEMENT_REWRITE] = {request_rewrite, CHANGES_FACTS},
+    [STATEMENT_CHECK_RULE] = {request_check_rule, CHANGES_FACTS},
+    [STATEMENT_WHY_NOT] = {request_why_not, CHANGES_FACTS},
+    [STATEMENT_CHECK_FILE] = {request_check_file, CHANGES_ALL},
     [STATEMENT_DROP] = {request_drop, CHANGES_FACTS},
     [STATEMENT_LET] = {request_let, CHANGES_FACTS},
     [STATEMENT_DERIVE] = {request_derive, CHANGES_FACTS},
@@ -58,32 +65,41 @@ tw_status request_run(session *s, const statement *st, result *r, value **keep)
 
 /* ---- taking back ---- */
 
-typedef struct mark {
-    struct facts *facts;
-    bool with_names;
-    name_table names;
-} mark;
+static void names_copy(name_table *to, const name_table *from)
+{
+    for (size_t k = 0; k < from->room; k++)
+        if (from->entries[k].name) names_set(to, from->entries[k].name, value_hold(from->entries[k].value));
+}
 
-static void mark_set(session *s, mark *m, bool with_names)
+/* Back: the names as they were; in any case the copy goes. */
+static void names_end(name_table *now, name_table *copy, bool back)
+{
+    if (back) {
+        name_table failed = *now;
+        *now = *copy;
+        *copy = failed;
+    }
+    names_clear(copy);
+}
+
+void session_mark_set(session *s, session_mark *m, bool with_names)
 {
     memset(m, 0, sizeof *m);
     m->facts = facts_copy(s->e);
     m->with_names = with_names;
-    for (size_t k = 0; with_names && k < s->names.room; k++)
-        if (s->names.entries[k].name) names_set(&m->names, s->names.entries[k].name, value_hold(s->names.entries[k].value));
+    if (!with_names) return;
+    names_copy(&m->names, &s->names);
+    names_copy(&m->rules, &s->rules);
+    names_copy(&m->files, &s->files);
 }
 
-/* Ends the mark: back to it, or on from here. */
-static void mark_end(session *s, mark *m, bool back)
+void session_mark_end(session *s, session_mark *m, bool back)
 {
     if (back) facts_restore(s->e, m->facts);
     else facts_discard(m->facts);
-    if (back && m->with_names) {
-        name_table failed = s->names;
-        s->names = m->names;
-        m->names = failed;
-    }
-    names_clear(&m->names);
+    names_end(&s->names, &m->names, back && m->with_names);
+    names_end(&s->rules, &m->rules, back && m->with_names);
+    names_end(&s->files, &m->files, back && m->with_names);
 }
 
 /* ---- running ---- */
@@ -103,10 +119,10 @@ static tw_status run_job(void *host)
 static tw_status run_marked(void *host)
 {
     job *j = host;
-    mark m;
-    mark_set(j->s, &m, requests[j->st->kind].care == CHANGES_ALL);
+    session_mark m;
+    session_mark_set(j->s, &m, requests[j->st->kind].care == CHANGES_ALL);
     tw_status status = engine_protect(j->s->e, run_job, j);
-    mark_end(j->s, &m, status != TW_OK);
+    session_mark_end(j->s, &m, status != TW_OK);
     return status;
 }
 
@@ -183,7 +199,7 @@ static void offer_functions(void *host, suggestion *to)
     names_each(&s->names, offer_if_function, &o);
 }
 
-static void lowering_start(session *s, lowering *l)
+void session_lowering_start(session *s, lowering *l)
 {
     lowering_init(l, s->e, s);
     l->meaning = meaning_of;
@@ -193,7 +209,7 @@ static void lowering_start(session *s, lowering *l)
 }
 
 /* Ends it; a failure's place becomes the session's. Expansions within expressions belong to a later version. */
-static tw_status lowering_end(session *s, lowering *l, bool good, span whole)
+tw_status session_lowering_end(session *s, lowering *l, bool good, span whole)
 {
     if (!good) s->at = l->failed ? l->place : whole;
     lowering_clear(l);
@@ -212,34 +228,34 @@ expr *session_lower(session *s, const syntax *x)
         return NULL;
     }
     lowering l;
-    lowering_start(s, &l);
+    session_lowering_start(s, &l);
     expr *a = lower_expression(&l, x);
-    return lowering_end(s, &l, a != NULL, x->at) == TW_OK ? a : NULL;
+    return session_lowering_end(s, &l, a != NULL, x->at) == TW_OK ? a : NULL;
 }
 
 tw_status session_lower_function(session *s, const syntax_name *parameters, size_t count, const syntax *body,
                                  lower_function *out)
 {
     lowering l;
-    lowering_start(s, &l);
+    session_lowering_start(s, &l);
     tw_status status = lower_function_define(&l, parameters, count, body, out);
-    return lowering_end(s, &l, status == TW_OK, body->at);
+    return session_lowering_end(s, &l, status == TW_OK, body->at);
 }
 
 tw_status session_lower_condition(session *s, const syntax *x, lower_conditions *out)
 {
     lowering l;
-    lowering_start(s, &l);
+    session_lowering_start(s, &l);
     tw_status status = lower_condition(&l, x, out);
-    return lowering_end(s, &l, status == TW_OK, x->at);
+    return session_lowering_end(s, &l, status == TW_OK, x->at);
 }
 
 tw_status session_lower_count(session *s, const syntax *x, const char *what, slong least, slong most, slong *out)
 {
     lowering l;
-    lowering_start(s, &l);
+    session_lowering_start(s, &l);
     tw_status status = lower_count(&l, x, what, least, most, out);
-    return lowering_end(s, &l, status == TW_OK, x->at);
+    return session_lowering_end(s, &l, status == TW_OK, x->at);
 }
 
 /* ---- questions ---- */
@@ -309,6 +325,9 @@ void session_clear(session *s)
     names_clear(&s->names);
     manual_release(s->open);
     free(s->open_name);
+    names_clear(&s->rules);
+    names_clear(&s->files);
+    verdicts_free(s->verdicts);
     tw_engine_free(s->e);
     s->e = NULL;
 }

@@ -8,6 +8,7 @@
 #include "engine/manual/manual.h"
 #include "engine/method/expansion.h"
 #include "engine/numeric/evaluate.h"
+#include "engine/rewrite/pass.h"
 #include "lang/lower.h"
 #include "lang/result.h"
 #include "lang/syntax.h"
@@ -17,6 +18,8 @@ typedef enum value_kind {
     VALUE_FUNCTION,
     VALUE_EXPANSION,
     VALUE_DERIVATION, /* by hand */
+    VALUE_RULE,
+    VALUE_PASS,
     VALUE_RESULT,     /* what a request gave that is no expression: a number, a table, steps */
 } value_kind;
 
@@ -28,6 +31,12 @@ typedef struct value {
     char **parameter_names;
     expansion expansion;   /* EXPANSION */
     manual *derivation;    /* DERIVATION */
+    rule *rule;            /* RULE, held */
+    pass *pass;            /* PASS, held */
+    char *text;            /* PASS: as it is typed */
+    char *file;            /* PASS: where it was read, or NULL */
+    unsigned line;
+    condition_list conditions; /* EXPRESSION: what it rests on when it was rewritten */
     result result;         /* RESULT */
     const char *what;      /* RESULT: "a number", "a table of coefficients", ...; DERIVATION: "a derivation" */
 } value;
@@ -66,9 +75,15 @@ typedef struct session_elsewhere {
 typedef struct session {
     tw_engine *e;
     name_table names;
+    name_table rules;      /* rules and passes: they have names of their own */
+    name_table files;      /* by path: those that `use` has run, each once */
     slong digits;          /* significant digits: of tables, and of `evaluate INTEGRAL` without `to D digits` */
     bool json;             /* the object of a result is wanted: an expansion's holds its bound, which takes time */
     const char *folder;    /* where `use "FILE"` looks: the folder of the file that runs, "" for the working folder */
+    const char *file;      /* the file that runs, or NULL */
+    unsigned line;         /* where in it the running statement begins */
+    struct verdicts *verdicts; /* lang/verdicts.h; NULL: not read yet */
+    expr *current;         /* the expression that was rewritten last, for `why not`; NULL: none */
     bool quit;             /* `quit` has run */
     span at;               /* after a failure: where in the statement's source */
     session_elsewhere elsewhere; /* after a failure in a file that the statement read: where in that */
@@ -89,12 +104,25 @@ enum { SESSION_DIGITS = 10, SESSION_DIGITS_LIMIT = 1000000 };
 tw_status session_init(session *s); /* TW_ERROR: no memory for an engine */
 void session_clear(session *s);
 
+/* The state that names and facts have now, and the end of it: back to it, or on from here. */
+typedef struct session_mark {
+    struct facts *facts;
+    bool with_names;
+    name_table names, rules, files;
+} session_mark;
+void session_mark_set(session *s, session_mark *m, bool with_names);
+void session_mark_end(session *s, session_mark *m, bool back);
+
 /* Runs a statement; r is initialised and filled. On failure the engine holds the error, s->at its place, and r holds what is
  * to be shown nevertheless (nothing, but for a refuted comparison). */
 tw_status session_run(session *s, const statement *st, result *r);
 
 /* What a running statement does, for the progress line: "expand F to 8 terms". */
 void session_describe(const statement *st, text *out);
+
+/* A lowering in which names mean what they mean now; its end, whose failure's place becomes the session's. */
+void session_lowering_start(session *s, lowering *l);
+tw_status session_lowering_end(session *s, lowering *l, bool good, span whole);
 
 /* The expression that x means now, names put in; NULL with the error set. */
 expr *session_lower(session *s, const syntax *x);

@@ -31,6 +31,11 @@ void value_release(value *v)
     if (v->kind == VALUE_EXPANSION) expansion_clear(&v->expansion);
     if (v->kind == VALUE_RESULT) result_clear(&v->result);
     if (v->kind == VALUE_DERIVATION) manual_release(v->derivation);
+    rule_release(v->rule);
+    pass_release(v->pass);
+    free(v->text);
+    free(v->file);
+    conditions_clear(&v->conditions);
     for (size_t k = 0; v->parameter_names && k < v->function.count; k++) free(v->parameter_names[k]);
     free(v->parameter_names);
     free(v);

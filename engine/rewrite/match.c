@@ -37,7 +37,8 @@ typedef struct matcher {
     trail_entry *trail;
     size_t trail_count, trail_room;
     taken *taken;
-    long trials;
+    long trials, depth;
+    nearest *nearest;        /* where failures are noted, or NULL */
     match_visitor *visit;
     void *host;
     bool found, failed;
@@ -65,6 +66,13 @@ static bool trial(matcher *m, size_t weight)
     return false;
 }
 
+/* The part is about to be tried here. */
+static void note(matcher *m, const part *p, expr *place)
+{
+    if (!m->nearest || m->depth <= m->nearest->depth) return;
+    *m->nearest = (nearest){m->depth, p->form, place};
+}
+
 /* ---- views ---- */
 
 void view_init(tw_engine *e, view *v, expr *subject, bool product)
@@ -73,7 +81,7 @@ void view_init(tw_engine *e, view *v, expr *subject, bool product)
     expr **own = engine_scratch(e, 1, sizeof *own);
     *own = subject;
     size_t n = product ? expr_factors(own, &parts) : expr_terms(own, &parts);
-    *v = (view){.product = product, .number = expr_int(e, product)};
+    *v = (view){.product = product, .number = expr_int(e, product), .whole = subject};
     if (n > 0 && parts[0]->kind == EXPR_NUMBER) {
         v->number = parts[0];
         parts++;
@@ -623,6 +631,7 @@ static bool solve_part(matcher *m, view *g, const part *group, size_t at, const 
 {
     const part *p = group->parts[at];
     const goal then = {.part = group, .group = g, .at = at + 1, .next = next};
+    note(m, p, g->whole);
     if (p->kind == PART_CHECKED && !(m->bound & bit(p->variable))) return false;
     if (p->kind == PART_FIXED || (p->variables & ~m->bound) == 0) return solve_bound(m, g, p, &then);
     bool stop = false;
@@ -703,13 +712,11 @@ static bool solve_checked(matcher *m, const part *p, expr *subject, const goal *
     return value == subject && solve(m, next);
 }
 
-static bool solve(matcher *m, const goal *g)
+static bool solve_one(matcher *m, const goal *g)
 {
-    if (!g) return report(m);
-    if (!trial(m, 1)) return fail(m);
-    if (!g->subject) return solve_group(m, g);
     const arena_place mark = arena_mark(&m->e->scratch);
     bool stop = false;
+    note(m, g->part, g->subject);
     switch (g->part->kind) {
     case PART_FIXED: stop = g->part->form == g->subject && solve(m, g->next); break;
     case PART_VARIABLE: case PART_FUNCTION: stop = solve_variable(m, g->part, g->subject, g->next); break;
@@ -720,6 +727,16 @@ static bool solve(matcher *m, const goal *g)
     case PART_ROOTED: break; /* stands in products only, which share it out */
     }
     arena_release(&m->e->scratch, mark);
+    return stop;
+}
+
+static bool solve(matcher *m, const goal *g)
+{
+    if (!g) return report(m);
+    if (!trial(m, 1)) return fail(m);
+    m->depth++;
+    const bool stop = g->subject ? solve_one(m, g) : solve_group(m, g);
+    m->depth--;
     return stop;
 }
 
@@ -773,6 +790,27 @@ tw_status pattern_match_view(tw_engine *e, const pattern *p, view *v, match_visi
     }
     tw_status status = run(&m, &first, found);
     v->number = number;
+    return status;
+}
+
+tw_status pattern_nearest(tw_engine *e, const pattern *p, expr *subject, nearest *out)
+{
+    const arena_place mark = arena_mark(&e->scratch);
+    matcher m = {.e = e, .p = p, .nearest = out};
+    view v;
+    goal first = {.part = p->root, .subject = subject};
+    bool sound = true;
+    if (is_group(p->root)) {
+        view_init(e, &v, subject, p->root->kind == PART_PRODUCT);
+        m.top = &v;
+        m.whole_number = v.number;
+        first = (goal){.part = p->root, .group = &v};
+        sound = number_leaves(&m, &v, p->root);
+    } else {
+        m.subject = subject;
+    }
+    tw_status status = sound ? run(&m, &first, NULL) : passes_over(&m) ? TW_OK : TW_ERROR;
+    arena_release(&e->scratch, mark);
     return status;
 }
 

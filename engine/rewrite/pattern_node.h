@@ -54,6 +54,7 @@ typedef struct view {
     expr *const *items;  /* sorted, without the number */
     expr **left;         /* what is left of each: itself, a lower power of it, NULL when it is taken */
     expr *number;        /* the coefficient or number term that is left */
+    expr *whole;         /* the sum or product itself */
     struct candidates *candidates; /* for each part of the pattern where it may stand; NULL: not prepared */
 } view;
 
@@ -78,6 +79,14 @@ typedef struct taken {
 
 /* As pattern_match with the rest of a view that is kept from match to match. */
 tw_status pattern_match_view(tw_engine *e, const pattern *p, view *v, match_visitor *visit, void *host, bool *found);
+/* How far matching came where it failed: the part of the pattern that fitted nothing, and where it was tried. */
+typedef struct nearest {
+    long depth;          /* parts that did fit; 0: none */
+    expr *part, *place;
+} nearest;
+/* Matches as pattern_match with a rest, and keeps the failure that came furthest in *out, if it came further. */
+tw_status pattern_nearest(tw_engine *e, const pattern *p, expr *subject, nearest *out);
+
 /* In a visitor: the changes of the kept view, as many as returned; *number is what is left of its number. */
 size_t match_taken(const match *m, const taken **list, expr **number);
 
