@@ -166,7 +166,7 @@ static bool run_statement(run *r, source *whole, size_t from, const statement *s
     text_init(&words);
     session_describe(st, &words);
     budget_start(e, r->options.time_limit);
-progress_start(e, words.bytes, true, r->options.time_limit, r->at_prompt, r->options.json);
+    progress_start(e, words.bytes, true, r->options.time_limit, r->at_prompt, r->options.json);
     r->session.line = source_find(whole, st->at.from + (uint32_t)from).line;
     result made;
     result_init(&made, "done");
