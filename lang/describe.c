@@ -177,7 +177,7 @@ static tw_status add_lesser(session *s, result *r, expansion *a, size_t k)
 {
     text line;
     text_init(&line);
-    text_add(&line, "  subdominant, from ");
+    text_add(&line, a->contributions[k].on_stokes_line ? "  on a Stokes line, from " : "  subdominant, from ");
     add_place(s, &line, &a->contributions[k]);
     text_add(&line, ": ");
     tw_status status = add_contribution(s, &line, a, k);
@@ -552,7 +552,7 @@ static void add_place_lines(session *s, result *r, const expansion *a)
         text_init(&line);
         add_place(s, &line, c);
         result_line(r, "  contribution of %s: %s, %s, by %s%s", line.bytes, point_kind_word(c->kind),
-                    c->dominant ? "dominant" : "subdominant", method_title(c->method), c->terminates ? ", ends by itself" : "");
+                    c->on_stokes_line ? "on a Stokes line" : c->dominant ? "dominant" : "subdominant", method_title(c->method), c->terminates ? ", ends by itself" : "");
         text_clear(&line);
     }
 }

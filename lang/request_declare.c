@@ -3,6 +3,7 @@
 #include <stdlib.h>
 #include <string.h>
 
+#include "engine/method/descent.h"
 #include "engine/method/method.h"
 #include "lang/request.h"
 
@@ -136,6 +137,22 @@ static bool has_integral(expr *a)
     return false;
 }
 
+static tw_status summarise_path(session *s, text *out, expr *a)
+{
+    char *words;
+    tw_status status = descent_summary(s->e, &words, a);
+    if (status == TW_OK) {
+        text_add(out, words);
+    } else if (!error_is_fatal(s->e->error.kind)) {
+        add_dependence(s, out, a);
+        text_addf(out, "; %s", s->e->error.words);
+        engine_forgive(s->e);
+        status = TW_OK;
+    }
+    free(words);
+    return status;
+}
+
 /* What reading an integral finds, for the echo. An integral that cannot be expanded is a value all the same, so what stands
  * against it is said and the definition holds. */
 static tw_status summarise(session *s, text *out, expr *a)
@@ -145,6 +162,7 @@ static tw_status summarise(session *s, text *out, expr *a)
         add_dependence(s, out, a);
         return TW_OK;
     }
+    if (descent_applies(a)) return summarise_path(s, out, a);
     reading seen;
     reading_init(&seen);
     tw_status status = integral_read(s->e, &seen, a);

@@ -94,7 +94,7 @@ static tw_status add_contribution(tw_engine *e, text *out, const expansion *a, c
     json_string(out, place.bytes);
     text_clear(&place);
     text_addf(out, ", \"kind\": \"%s\", \"method\": \"%s\", \"dominance\": \"%s\", \"prefactor\": ",
-              point_kind_word(c->kind), c->method, c->dominant ? "dominant" : "subdominant");
+              point_kind_word(c->kind), c->method, c->on_stokes_line ? "on a Stokes line" : c->dominant ? "dominant" : "subdominant");
     json_expr(e, out, c->prefactor);
     text_add(out, ",\n   \"lanes\": [");
     for (size_t k = 0; k < c->lane_count; k++) {

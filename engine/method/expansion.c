@@ -8,6 +8,7 @@
 
 #include "engine/ball/decide.h"
 #include "engine/method/attach.h"
+#include "engine/method/descent.h"
 #include "engine/method/lanes.h"
 #include "engine/method/method.h"
 #include "engine/numeric/bound.h"
@@ -82,6 +83,8 @@ void contribution_clear_lanes(contribution *c)
 void contribution_clear(contribution *c)
 {
     contribution_clear_lanes(c);
+    steepest_free(c->steepest);
+    c->steepest = NULL;
     local_form_clear(&c->local);
     local_form_clear(&c->formal);
     recurrence_memo_free(c->recurrences);

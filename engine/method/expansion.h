@@ -57,6 +57,8 @@ typedef struct contribution {
     lane *zeros;
     bool lanes_cut; /* a lane begins beyond the terms kept and is not in the list */
     domain_kind domain;
+    bool on_stokes_line; /* its integer differs on both sides: half of it is taken, and it is not dominant */
+    struct steepest *steepest; /* descent: what stands behind it; owned */
     local_form local; /* no branches for a far end */
     local_form
         formal;      /* far ends only: factor * int_0 q exp(+scale * p), whose terms are (-scale)^-(n+1) times n! g_n */

@@ -8,7 +8,7 @@
 #include <stdlib.h>
 #include <string.h>
 
-enum { DEGREE_LIMIT = 60, FIRST_BITS = 256, LAST_BITS = 16384, NORM_LIMIT = 40 };
+enum { DEGREE_LIMIT = 60, FIRST_BITS = 256, LAST_BITS = 16384, UNKNOWN_BITS = 4096, NORM_LIMIT = 40 };
 
 /* ---- polynomials over Q(i) ---- */
 
@@ -222,6 +222,19 @@ static bool read_fraction(fraction *out, tw_engine *e, expr *a, expr *z)
     case EXPR_POWER: return read_power(out, e, a, z);
     default: return false;
     }
+}
+
+bool gauss_fraction(tw_engine *e, expr *a, expr *z, gauss_poly *top, gauss_poly *bottom)
+{
+    fraction f;
+    fraction_init(&f);
+    if (!read_fraction(&f, e, a, z)) {
+        fraction_clear(&f);
+        return false;
+    }
+    *top = f.top;
+    *bottom = f.bottom;
+    return true;
 }
 
 bool gauss_number(tw_engine *e, expr *a, fmpq_t re, fmpq_t im)
@@ -559,6 +572,19 @@ bool landscape_point(landscape *l, spot *out, expr *place)
     return fine;
 }
 
+bool landscape_spot(landscape *l, spot *out, const qqbar_t place, slong order)
+{
+    spot_init(out);
+    qqbar_set(out->exact, place);
+    out->order = order;
+    out->place = expr_from_algebraic(l->e, place);
+    spot_refine(l, out, l->bits);
+    if (out->place && acb_is_finite(out->height))
+        return true;
+    spot_clear(out);
+    return false;
+}
+
 /* ---- exact heights ---- */
 
 /* p at an exact place. */
@@ -642,6 +668,39 @@ static bool part_is_zero(const landscape *l, const spot *a, const spot *b, int p
     return zero;
 }
 
+/* Does p(conj(z)) = conj(p(z)) (unit 1), or p(-conj(z)) = conj(p(z)) (unit -1), by the coefficients? */
+static bool is_mirrored(const landscape *l, int unit)
+{
+    const gauss_poly *both[] = {&l->numerator, &l->denominator};
+    fmpq_t c;
+    fmpq_init(c);
+    bool fine = true;
+    for (int n = 0; n < 2; n++)
+        for (slong k = 0; k <= gauss_degree(both[n]) && fine; k++) { /* c_k unit^k = conj(c_k) */
+            bool odd = unit < 0 && k % 2;
+            fmpq_poly_get_coeff_fmpq(c, odd ? both[n]->re : both[n]->im, k);
+            fine = fmpq_is_zero(c);
+        }
+    fmpq_clear(c);
+    return fine;
+}
+
+/* Heights that are conjugate because the places are mirror images: their real parts are equal. */
+static bool mirror_images(const landscape *l, const spot *a, const spot *b, int part)
+{
+    qqbar_t c;
+    bool same = false;
+    if (part != 0)
+        return false;
+    qqbar_init(c);
+    qqbar_conj(c, a->exact);
+    same = qqbar_equal(c, b->exact) && is_mirrored(l, 1);
+    qqbar_neg(c, c);
+    same = same || (qqbar_equal(c, b->exact) && is_mirrored(l, -1));
+    qqbar_clear(c);
+    return same;
+}
+
 int heights_compare(const landscape *l, const spot *a, const spot *b, int part)
 {
     acb_t d;
@@ -651,14 +710,17 @@ int heights_compare(const landscape *l, const spot *a, const spot *b, int part)
     int sign = arb_is_zero(x) ? 0 : arb_is_positive(x) ? 1 : arb_is_negative(x) ? -1 : 2;
     if (sign == 2) {
         bool known;
-        if (part_is_zero(l, a, b, part, &known))
+        slong most = LAST_BITS;
+        if (mirror_images(l, a, b, part) || part_is_zero(l, a, b, part, &known))
             sign = 0;
-        else if (known) { /* different, so more bits show it */
+        else { /* known: different, so more bits show it; else they may */
+            if (!known)
+                most = UNKNOWN_BITS;
             spot s, t;
             spot_init(&s), spot_init(&t);
             qqbar_set(s.exact, a->exact), qqbar_set(t.exact, b->exact);
             s.order = a->order, t.order = b->order;
-            for (slong bits = 2 * l->bits; bits <= LAST_BITS && sign == 2; bits *= 2) {
+            for (slong bits = 2 * l->bits; bits <= most && sign == 2; bits *= 2) {
                 spot_refine(l, &s, bits), spot_refine(l, &t, bits);
                 acb_sub(d, s.height, t.height, bits);
                 sign = arb_is_positive(x) ? 1 : arb_is_negative(x) ? -1 : 2;
@@ -722,6 +784,18 @@ static expr *quadratic(tw_engine *e, const qqbar_t x)
     return out;
 }
 
+/* exp(i pi p/q), in square roots where the engine knows them. */
+static expr *unit_at(tw_engine *e, slong p, slong q)
+{
+    expr *angle = expr_mul(e, expr_constant_of(e, CONSTANT_PI), expr_frac(e, p, q)), *i = expr_constant_of(e, CONSTANT_I);
+    if (q == 1 || q == 2 || q == 3 || q == 4 || q == 6) {
+        expr *c = expr_call1(e, FUNCTION_COS, angle), *s = expr_call1(e, FUNCTION_SIN, angle);
+        if (c && s && c->kind != EXPR_CALL && s->kind != EXPR_CALL)
+            return expr_add(e, c, expr_mul(e, i, s));
+    }
+    return expr_call1(e, FUNCTION_EXP, expr_mul(e, i, angle));
+}
+
 /* x^n = c for a rational c: |c|^(1/n) times a root of unity; for n = 3, 4, 6 in square roots. */
 static expr *pure_root(tw_engine *e, const qqbar_t x)
 {
@@ -738,10 +812,9 @@ static expr *pure_root(tw_engine *e, const qqbar_t x)
     fmpz_clear(top);
     if (negative)
         value = expr_neg(e, value);
-    expr *modulus = expr_pow(e, value, expr_frac(e, 1, n)), *i = expr_constant_of(e, CONSTANT_I), *pi = expr_constant_of(e, CONSTANT_PI);
-    for (slong k = 0; k < n; k++) {
-        expr *angle = expr_mul(e, expr_mul(e, i, pi), expr_frac(e, 2 * k + (negative ? 1 : 0), n));
-        expr *out = expr_mul(e, modulus, expr_call1(e, FUNCTION_EXP, angle));
+    expr *modulus = expr_pow(e, value, expr_frac(e, 1, n));
+    for (slong k = -(n / 2) - 1; k <= n / 2; k++) {
+        expr *out = expr_mul(e, modulus, unit_at(e, 2 * k + (negative ? 1 : 0), n));
         if (holds(e, out, x))
             return out;
     }

@@ -40,6 +40,8 @@ void landscape_refine(landscape *l, slong bits);
 /* A further spot of order 0 or the order of the saddle that lies there: an end of the path at `place`, an expression with an exact
  * value over Q(i). False when it has none or p has a pole there. */
 bool landscape_point(landscape *l, spot *out, expr *place);
+/* The same for an exact place and a known order of p' there. */
+bool landscape_spot(landscape *l, spot *out, const qqbar_t place, slong order);
 void spot_clear(spot *s);
 
 /* p, p' at z. */
@@ -51,6 +53,9 @@ int heights_compare(const landscape *l, const spot *a, const spot *b, int part);
 
 /* An algebraic number as an expression: rational, radicals where these are short, else `root of`. */
 expr *expr_from_algebraic(tw_engine *e, const qqbar_t x);
+
+/* a = top/bottom over Q(i), both initialised then (and cleared by the caller) when true. */
+bool gauss_fraction(tw_engine *e, expr *a, expr *z, gauss_poly *top, gauss_poly *bottom);
 
 /* An expression without symbols in Q(i): true and its parts. */
 bool gauss_number(tw_engine *e, expr *a, fmpq_t re, fmpq_t im);

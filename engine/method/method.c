@@ -7,10 +7,11 @@
 #include <stdlib.h>
 #include <string.h>
 
+#include "engine/method/descent.h"
 #include "engine/method/scale.h"
 
-static const method *const METHODS[] = {&method_moments, &method_watson, &method_parts};
-static const char *const PLANNED[] = {"laplace", "phase", "descent", "mellin"};
+static const method *const METHODS[] = {&method_moments, &method_watson, &method_parts, &method_descent};
+static const char *const PLANNED[] = {"laplace", "phase", "mellin"};
 
 enum { METHOD_COUNT = sizeof METHODS / sizeof *METHODS, PLANNED_COUNT = sizeof PLANNED / sizeof *PLANNED };
 
@@ -101,6 +102,11 @@ static void take_reading(expansion *out, reading *r)
 
 static tw_status expand_one(tw_engine *e, expansion *out, expr *integral, slong terms, const char *by)
 {
+    if (descent_applies(integral) || (by && strcmp(by, "descent") == 0)) {
+        if (by && strcmp(by, "descent") != 0)
+            return engine_fail(e, ERROR_UNSUITABLE, "an integral along a path in the complex plane needs the method `descent`");
+        return descent_expand(e, out, integral, terms);
+    }
     reading r;
     reading_init(&r);
     const method *m = NULL;
