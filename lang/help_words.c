@@ -223,8 +223,9 @@ static const help_entry entries[] = {
      "large s\nlet F = integral from -1 to 2 of exp(-s*(x^2 + x^4)) dx\nexpand F to 4 terms by laplace", NULL},
     {"phase", HELP_METHOD, LATER, "expand INTEGRAL to N terms by phase", "Stationary phase (DLMF 2.3(iv)).",
      "large s\nexpand integral from 0 to 1 of exp(i*s*x^2) dx to 4 terms by phase", NULL},
-    {"descent", HELP_METHOD, LATER, "expand INTEGRAL to N terms by descent", "Steepest descent (DLMF 2.4(iv)).",
-     "large s\nlet F = integral from 0 to inf of exp(-s*x)/(1 + x^2) dx\nexpand F to 4 terms by descent", NULL},
+    {"descent", HELP_METHOD, HERE, "expand INTEGRAL to N terms by descent",
+     "Steepest descent (DLMF 2.4(iv)): the path becomes steepest curves through\nsaddles; `steps` prints how often each counts.",
+     "large s\nlet F = integral along inf(-pi/4) to inf(pi/4) of exp(s*(z^4 - z)) dz\nexpand F to 4 terms by descent", NULL},
     {"mellin", HELP_METHOD, LATER, "expand INTEGRAL to N terms by mellin", "Mellin transforms (DLMF 2.5).",
      "large s\nexpand integral from 0 to inf of exp(-x)/(1 + s*x) dx to 4 terms by mellin", NULL},
 
