@@ -49,7 +49,7 @@ static tw_status row_bound(tw_engine *e, comparison_row *row, expansion *a, cons
     tw_status status;
     point_bound_init(&b);
     mag_init(m);
-    status = remainder_at_as(e, &b, a, at, row->terms, COMPARE_BITS, false);
+    status = remainder_at_as(e, &b, a, at, row->terms, COMPARE_BITS, true);
     arb_get_mag(m, b.error);
     arf_set_mag(arb_midref(row->bound), m);
     row->label = b.label;

@@ -6,6 +6,7 @@
 #include <stdlib.h>
 #include <string.h>
 
+#include "engine/numeric/problem.h"
 #include "engine/numeric/shared.h"
 #include "engine/numeric/terms.h"
 
@@ -120,15 +121,28 @@ static void try_clear(attempt *t)
     point_bound_clear(&t->bound);
 }
 
+/* The sum is made with so many bits that its rounding is nothing beside the bound, which may be exponentially small. */
 static tw_status try_terms(tw_engine *e, attempt *t, expansion *a, const env *at, slong terms, slong bits, bool sharp)
 {
+    enum { BITS_MOST = 40000 };
     arb_t sum;
+    double more;
     tw_status status;
     arb_init(sum);
     t->terms = terms;
     status = partial_sum(e, sum, a, at, terms, bits);
     if (status == TW_OK)
         status = remainder_at_as(e, &t->bound, a, at, terms, bits, sharp);
+    if (status == TW_OK) {
+        mag_t radius;
+        mag_init_set(radius, arb_radref(t->bound.error));
+        more = mag_is_zero(radius) ? -HUGE_VAL : log2_ball(sum) - mag_log2(radius) + 32;
+        mag_clear(radius);
+        if (more > (double)bits && more < BITS_MOST) {
+            bits = (slong)more;
+            status = partial_sum(e, sum, a, at, terms, bits);
+        }
+    }
     if (status == TW_OK)
         arb_add(t->value, sum, t->bound.error, bits + 64);
     arb_clear(sum);
@@ -383,17 +397,15 @@ tw_status evaluate_expansion(tw_engine *e, number *out, expansion *a, const env 
     out->terms_known = FLINT_MAX(most, a->terms_asked);
     try_init(&best);
     if (o->terms >= 0)
-        status = try_terms(e, &best, a, at, o->terms, bits, false);
+        status = try_terms(e, &best, a, at, o->terms, bits, true);
     else
-        status = try_best(e, &best, a, at, terms, most, bits, false);
+        status = try_best(e, &best, a, at, terms, most, bits, true);
     if (status == TW_OK && o->digits > 0 && !has_digits(best.value, o->digits)) {
         attempt more;
         try_init(&more);
-        if (o->terms >= 0)
-            status = try_terms(e, &more, a, at, o->terms, bits, true);
-        else
+        if (o->terms < 0)
             status = best_ball(e, &more, a, at, o->digits, bits);
-        if (status == TW_OK && more.bound.label <= best.bound.label &&
+        if (status == TW_OK && o->terms < 0 && more.bound.label <= best.bound.label &&
             arb_rel_accuracy_bits(more.value) > arb_rel_accuracy_bits(best.value)) {
             attempt swap = best;
             best = more;

@@ -12,7 +12,7 @@
 /* Does the enclosing theorem hold for the contribution at these values? */
 answer known_encloses(tw_engine *e, expansion *a, size_t index, const env *at);
 
-/* As remainder_at; sharp: by panels even where the enclosing theorem holds, because they come closer. */
+/* As remainder_at; sharp: where the enclosing theorem holds the panels are tried as well, and the smaller bound stands. */
 tw_status remainder_at_as(tw_engine *e, point_bound *out, expansion *a, const env *at, slong terms, slong bits, bool sharp);
 
 /* How many parts the panels bound the contribution in (a branch each when the phase is no pure power); 0: *reason says why none. */
