@@ -257,6 +257,7 @@ tw_status contribution_fill_directly(tw_engine *e, contribution *c, expr *large,
         }
         slong guess = found > 0 ? length / found * terms + terms : 0;
         length = guess > length + length / 2 && guess < 8 * length ? guess : 2 * length;
+        length = FLINT_MIN(length, SEARCH_FACTOR * terms + ZEROS_AT_MOST + 1);
     }
     kernel_clear(&k);
     return status == TW_OK && e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;

@@ -17,12 +17,16 @@
 #include "engine/numeric/enclosing.h"
 #include "engine/numeric/panels.h"
 #include "engine/numeric/shared.h"
+#include "engine/numeric/signs.h"
 #include "engine/method/lanes.h"
 #include "engine/numeric/split_off.h"
 #include "engine/numeric/terms.h"
 
 /* Beyond so many terms the panels take long and the theorem does. */
 enum { SHARP_MOST = 150 };
+
+/* The relative accuracy that the panels are asked for. */
+#define GOAL 0.008
 
 const char *label_word(label l)
 {
@@ -285,7 +289,7 @@ static tw_status groups_kept_beside(tw_engine *e, expansion *a, size_t index, co
 static tw_status groups_kept(tw_engine *e, expansion *a, size_t index, const env *at, problem *p, bool beside, slong terms,
                              slong *first, slong *extra)
 {
-    slong n = 0, groups;
+    slong n = 0, last = -1, groups;
     if (beside)
         return groups_kept_beside(e, a, index, at, p, terms, first, extra);
     if (count_groups(e, a, index, at, terms, &groups, extra) != TW_OK ||
@@ -294,8 +298,10 @@ static tw_status groups_kept(tw_engine *e, expansion *a, size_t index, const env
     for (;; n++) {
         bool here = false;
         if (n == p->known) {
-            if (p->terminates || n > 4000)
+            if (p->terminates || n > 8 * terms + 400) {
+                n = last + 1; /* all of it is kept */
                 break;
+            }
             if (problem_coefficients(p, 2 * n + 32, p->bits) != TW_OK)
                 return TW_ERROR;
         }
@@ -303,6 +309,8 @@ static tw_status groups_kept(tw_engine *e, expansion *a, size_t index, const env
             here = here || !arb_is_zero(p->f[k] + n);
         if (here && groups-- == 0)
             break;
+        if (here)
+            last = n;
     }
     *first = n;
     return TW_OK;
@@ -432,55 +440,76 @@ static tw_status groups_less_kept(tw_engine *e, arb_t out, expansion *a, const t
 }
 
 /* By panels, for contribution t: error = R_K + (S_K - sum of the kept terms). */
-static tw_status panel_error(tw_engine *e, piece_bound *out, expansion *a, const term_values *t, const env *at, slong terms,
-                             slong bits)
+static tw_status panel_sum(tw_engine *e, arb_t error, expansion *a, const term_values *t, const env *at, slong terms, slong bits,
+                           known_problem *k, double goal, bool *made, const char **reason)
 {
     const contribution *c = a->contributions + t->contribution;
-    known_problem *k;
-    arb_t S, factor, groups;
+    arb_t S, factor, part;
     expr *scale = put_values(e, c->local.scale, at);
     panel_report report = {0};
     slong first, extra;
+    tw_status status;
+    arb_init(S);
+    arb_init(factor);
+    arb_init(part);
+    *made = true;
+    status = real_ball(e, S, scale, bits + 64);
+    if (status == TW_OK)
+        status = real_ball(e, factor, put_values(e, c->local.factor, at), bits + 64);
+    arb_zero(error);
+    for (size_t j = 0; j < k->count && status == TW_OK && *made; j++) {
+        status = groups_kept(e, a, t->contribution, at, k->p[j], k->count > 1, terms, &first, &extra);
+        if (status == TW_OK)
+            status = panels_at(k->p[j], first, scale, S, goal, part, made, &report);
+        if (status == TW_OK && *made)
+            arb_add(error, error, part, bits + 64);
+    }
+    if (status == TW_OK && *made) {
+        arb_mul(error, error, factor, bits + 64);
+        status = groups_less_kept(e, part, a, t, at, terms, k, bits, error);
+        arb_add(error, error, part, bits + 64);
+        *made = arb_is_finite(error);
+    }
+    if (status == TW_OK && !*made)
+        *reason = report.reason ? report.reason : "the bound is not finite there";
+    arb_clear(part);
+    arb_clear(factor);
+    arb_clear(S);
+    return status;
+}
+
+/* Branches and cut groups may cancel: then each is asked for more. */
+static tw_status panel_error(tw_engine *e, piece_bound *out, expansion *a, const term_values *t, const env *at, slong terms,
+                             slong bits)
+{
+    known_problem *k;
+    arb_t error;
+    double goal = GOAL, relative;
     bool made = true;
     tw_status status = known_problem_of(e, &k, a, t->contribution, at);
     if (status != TW_OK)
         return status;
+    out->label = LABEL_ESTIMATED;
     if (k->count == 0) {
-        out->label = LABEL_ESTIMATED;
         out->reason = k->reason;
         return TW_OK;
     }
-    arb_init(S);
-    arb_init(factor);
-    arb_init(groups);
-    status = real_ball(e, S, scale, bits + 64);
-    if (status == TW_OK)
-        status = real_ball(e, factor, put_values(e, c->local.factor, at), bits + 64);
-    arb_zero(out->error);
-    for (size_t j = 0; j < k->count && status == TW_OK && made; j++) {
-        status = groups_kept(e, a, t->contribution, at, k->p[j], k->count > 1, terms, &first, &extra);
-        if (status == TW_OK)
-            status = panels_at(k->p[j], first, scale, S, groups, &made, &report);
-        if (status == TW_OK && made)
-            arb_add(out->error, out->error, groups, bits + 64);
-    }
-    if (status == TW_OK && made) {
-        arb_mul(out->error, out->error, factor, bits + 64);
-        status = groups_less_kept(e, groups, a, t, at, terms, k, bits, out->error);
-    }
-    if (status == TW_OK && made) {
-        arb_add(out->error, out->error, groups, bits + 64);
+    arb_init(error);
+    for (int pass = 0; pass < 3 && status == TW_OK && made && goal > 1e-7; pass++) {
+        status = panel_sum(e, error, a, t, at, terms, bits, k, goal, &made, &out->reason);
+        if (status != TW_OK || !made)
+            break;
+        if (out->label == LABEL_ESTIMATED || mag_cmp(arb_radref(error), arb_radref(out->error)) < 0)
+            arb_set(out->error, error);
         out->label = LABEL_PROVED;
-        if (!arb_is_finite(out->error))
-            made = false;
+        relative = panels_relative(error);
+        if (relative < 2.5 * GOAL)
+            break;
+        goal = fmax(goal * GOAL / relative, goal / 1000);
     }
-    if (status == TW_OK && !made) {
-        out->label = LABEL_ESTIMATED;
-        out->reason = report.reason ? report.reason : "the bound is not finite there";
-    }
-    arb_clear(groups);
-    arb_clear(factor);
-    arb_clear(S);
+    if (out->label == LABEL_PROVED)
+        out->reason = NULL;
+    arb_clear(error);
     return status;
 }
 
@@ -529,6 +558,13 @@ static tw_status contribution_error(tw_engine *e, piece_bound *out, expansion *a
         return sharp && terms <= SHARP_MOST ? sharpen(e, out, a, t, at, terms, bits) : TW_OK;
     } else {
         status = panel_error(e, out, a, t, at, terms, bits);
+    }
+    if (status == TW_OK && out->label == LABEL_ESTIMATED && terms < t->count &&
+        signs_enclose(e, &c->local, a->large, at, terms) == ANSWER_YES) {
+        enclosing_error(out->error, t->value + terms);
+        out->label = LABEL_PROVED;
+        out->enclosing = true;
+        out->reason = NULL;
     }
     if (status == TW_OK && out->label == LABEL_ESTIMATED)
         status = estimate_error(e, out->error, a, t->contribution, at, terms);

@@ -274,8 +274,11 @@ static bool disc_prove(mag_t size, walker *w, const arf_t c, const arf_t R)
  * been continued analytically along the path, so h = 0 there; a sheet that has ended breaks it. */
 static bool vanishes(const walker *w, double y)
 {
-    if (!w->p->terminates || w->first < w->p->known)
+    if (!w->p->terminates)
         return false;
+    for (slong n = w->first; n < w->p->known; n++)
+        if (!problem_is_zero(w->p, n))
+            return false;
     for (size_t b = 0; b < w->p->sheet_count; b++)
         if (!sheet_alive(w->p->sheets + b, y))
             return false;
@@ -283,7 +286,7 @@ static bool vanishes(const walker *w, double y)
 }
 
 /* Is the error small beside the polynomial? */
-static bool error_small(const patch *q)
+static bool error_small(const patch *q, bool fine)
 {
     mag_t sum, part;
     bool small;
@@ -293,7 +296,7 @@ static bool error_small(const patch *q)
         arb_get_mag(part, q->poly + j);
         mag_max(sum, sum, part);
     }
-    mag_mul_2exp_si(part, q->error[0], 9);
+    mag_mul_2exp_si(part, q->error[0], fine ? 22 : 9);
     small = mag_cmp(part, sum) < 0;
     mag_clear(part);
     mag_clear(sum);
@@ -333,7 +336,7 @@ static bool disc_patch(walker *w, double c, double width, bool choosy)
             mag_mul(q->error[0], size, ratio);
             mag_mul_ui(q->error[0], q->error[0], 11); /* 5/4 and a tenth for |z| a little above 1, see patch_range */
             mag_mul_2exp_si(q->error[0], q->error[0], -3);
-            fine = !choosy || error_small(q);
+            fine = !choosy || error_small(q, w->s->fine);
         }
         if (fine) {
             w->s->discs++;

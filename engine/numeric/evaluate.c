@@ -156,28 +156,27 @@ static bool try_better(const attempt *x, const attempt *y)
     return log2_ball(x->bound.error) < log2_ball(y->bound.error);
 }
 
-/* Around the envelope's choice; the enclosing theorem's bound is the term itself, so the choice stands there. */
+/* Around the envelope's choice; the enclosing theorem's bound is the term itself, so the choice stands there. Terms of several lanes
+ * alternate in size: one worse neighbour is looked past. */
 static tw_status try_best(tw_engine *e, attempt *best, expansion *a, const env *at, slong terms, slong most, slong bits, bool sharp)
 {
     tw_status status = try_terms(e, best, a, at, terms, bits, sharp);
     for (int side = -1; side <= 1 && status == TW_OK; side += 2)
-        while (!best->bound.manner && best->bound.label == LABEL_PROVED) {
-            slong next = best->terms + side;
+        for (slong next = best->terms + side, worse = 0; worse < 2 && next >= 0 && next <= most; next += side) {
             attempt other;
             bool better;
-            if (next < 0 || next > most)
+            if (best->bound.manner || best->bound.label != LABEL_PROVED || status != TW_OK)
                 break;
             try_init(&other);
             status = try_terms(e, &other, a, at, next, bits, sharp);
             better = status == TW_OK && try_better(&other, best);
+            worse = better ? 0 : worse + 1;
             if (better) {
                 attempt swap = *best;
                 *best = other;
                 other = swap;
             }
             try_clear(&other);
-            if (!better)
-                break;
         }
     return status;
 }

@@ -100,7 +100,7 @@ static void tail_bound(mag_t out, const problem *p, const lemma *l, slong k, slo
     arb_clear(ratio);
 }
 
-static bool tail_small(const problem *p, const lemma *l, slong first, double T)
+static bool tail_small(const problem *p, const lemma *l, slong first, double T, double below)
 {
     arb_t at;
     mag_t tail;
@@ -113,7 +113,7 @@ static bool tail_small(const problem *p, const lemma *l, slong first, double T)
         tail_bound(tail, p, l, k, first, at);
         for (slong n = first; n < p->known; n++)
             scale = fmax(scale, log2_coefficient(p, n) + (n - first) * log2(T));
-        small = mag_is_zero(tail) || mag_log2(tail) < scale - 11;
+        small = mag_is_zero(tail) || mag_log2(tail) < scale - below;
     }
     mag_clear(tail);
     arb_clear(at);
@@ -198,7 +198,7 @@ static double first_end(const problem *p)
 static bool near_cut(patches *s, problem *p, lemma *l, double *T)
 {
     slong most = s->first + 60 + 4 * s->first;
-    while (!tail_small(p, l, s->first, *T)) {
+    while (!tail_small(p, l, s->first, *T, s->fine ? 28 : 11)) {
         slong more = s->first + (p->known - s->first) * 3 / 2;
         if (more > most) {
             *T *= 0.8;

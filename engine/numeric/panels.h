@@ -30,9 +30,12 @@ typedef struct panel_report {
 } panel_report;
 
 /* R = contribution/factor - sum of all kept groups with index below `first` (the first index that is not kept; coefficients that
- * are zero from there on are skipped). S: the scale's value, as expression and ball.
+ * are zero from there on are skipped). S: the scale's value, as expression and ball; goal: the relative accuracy to aim at.
  * *made false: the machine cannot prove it; report->reason says why. */
-tw_status panels_at(problem *p, slong first, expr *S_expr, const arb_t S, arb_t error, bool *made, panel_report *report);
+tw_status panels_at(problem *p, slong first, expr *S_expr, const arb_t S, double goal, arb_t error, bool *made,
+                    panel_report *report);
+/* The radius over the least modulus; inf when x may be 0. */
+double panels_relative(const arb_t x);
 /* For all S >= S. */
 tw_status panels_for_all(problem *p, slong first, expr *S_expr, const arb_t S, power_bound *out, bool *made,
                          panel_report *report);

@@ -4,7 +4,7 @@
 
 #include <string.h>
 
-enum { PATCH_BITS = 64 };
+enum { PATCH_BITS = 64, LINE_BITS = 128 };
 
 /* Patches are laid side by side in doubles; each is read a little beyond its ends, so that no sliver is left between two. */
 #define SLACK 1e-6
@@ -87,48 +87,48 @@ void kept_taylor(arb_ptr out, slong length, arb_srcptr f, slong count, const arb
     }
 }
 
-/* The polynomial over centre +- half inside |z| <= 1: value and slope at the centre, and a bound of the second derivative. */
-static void poly_range(arb_t out, arb_srcptr a, slong length, double centre, double half)
+/* The polynomial around centre inside |z| <= 1: value and slope there, and a bound of what bends up to out->half. */
+static void poly_affine(affine *out, arb_srcptr a, slong length, double centre)
 {
-    arb_t c, slope, value;
-    mag_t z, bend, part, h;
+    arb_t c;
+    mag_t z, bend, part;
     arb_init(c);
-    arb_init(slope);
-    arb_init(value);
     mag_init(z);
     mag_init(bend);
     mag_init(part);
-    mag_init(h);
     arb_set_d(c, centre);
+    arb_zero(out->v);
+    arb_zero(out->b);
     for (slong j = length - 1; j >= 0; j--) {
         if (j < length - 1)
-            arb_mul(slope, slope, c, PATCH_BITS);
-        arb_add(slope, slope, value, PATCH_BITS);
-        arb_mul(value, value, c, PATCH_BITS);
-        arb_add(value, value, a + j, PATCH_BITS);
+            arb_mul(out->b, out->b, c, PATCH_BITS);
+        arb_add(out->b, out->b, out->v, PATCH_BITS);
+        arb_mul(out->v, out->v, c, PATCH_BITS);
+        arb_add(out->v, out->v, a + j, PATCH_BITS);
     }
-    mag_set_d(z, (centre < 0 ? -centre : centre) + half);
+    mag_set_d(z, centre < 0 ? -centre : centre);
+    mag_add(z, z, out->half);
     for (slong j = length - 1; j >= 2; j--) {
         mag_mul(bend, bend, z);
         arb_get_mag(part, a + j);
         mag_mul_ui(part, part, (ulong)(j * (j - 1)));
         mag_add(bend, bend, part);
     }
-    mag_set_d(h, half);
-    mag_mul(bend, bend, h);
-    mag_mul_2exp_si(bend, bend, -1);
-    arb_get_mag(part, slope);
-    mag_add(bend, bend, part);
-    mag_mul(bend, bend, h);
-    arb_set(out, value);
-    mag_add(arb_radref(out), arb_radref(out), bend);
-    mag_clear(h);
+    mag_mul(bend, bend, out->half);
+    mag_mul(bend, bend, out->half);
+    mag_mul_2exp_si(out->r, bend, -1);
     mag_clear(part);
     mag_clear(bend);
     mag_clear(z);
-    arb_clear(value);
-    arb_clear(slope);
     arb_clear(c);
+}
+
+/* The coordinate at z, exactly. */
+static void coordinate(arb_t y, const patch *s, double z)
+{
+    arb_set_d(y, z);
+    arb_mul_arf(y, y, s->width, ARF_PREC_EXACT);
+    arb_add_arf(y, y, s->centre, ARF_PREC_EXACT);
 }
 
 void patch_t(arb_t t, const problem *p, const patch *s, double z)
@@ -143,14 +143,155 @@ void patch_t(arb_t t, const problem *p, const patch *s, double z)
         return;
     }
     arb_init(y);
-    arb_set_d(y, z);
-    arb_mul_arf(y, y, s->width, ARF_PREC_EXACT);
-    arb_add_arf(y, y, s->centre, ARF_PREC_EXACT);
+    coordinate(y, s, z);
     if (s->near)
         problem_power(t, p, y, 2 * PATCH_BITS);
     else
         problem_t(t, p, y, 2 * PATCH_BITS);
     arb_clear(y);
+}
+
+void patch_lane_bound(mag_t bound, const patch *s, slong k, double z0, double z1)
+{
+    affine part;
+    arb_t range;
+    affine_init(&part);
+    arb_init(range);
+    mag_set_d(part.half, z1 / 2 - z0 / 2 + SLACK);
+    poly_affine(&part, s->poly + k * s->length, s->length, z0 / 2 + z1 / 2);
+    mag_add(part.r, part.r, s->error[k]);
+    affine_range(range, &part, PATCH_BITS);
+    arb_get_mag(bound, range);
+    arb_clear(range);
+    affine_clear(&part);
+}
+
+/* X^m for X = middle + step, |step| <= reach < middle: value, slope times `width`, and what bends. */
+static bool power_affine(affine *t, const problem *p, const arb_t middle, const arb_t reach, const arb_t width)
+{
+    arb_t X, bend, m;
+    bool fine = true;
+    arb_init(X);
+    arb_init(bend);
+    arb_init(m);
+    arb_set_fmpq(m, p->m, LINE_BITS);
+    arb_pow(t->v, middle, m, LINE_BITS);
+    arb_div(t->b, t->v, middle, LINE_BITS);
+    arb_mul(t->b, t->b, m, LINE_BITS);
+    arb_mul(t->b, t->b, width, LINE_BITS);
+    mag_zero(t->r);
+    if (!fmpq_is_one(p->m)) { /* m (m - 1) X^(m - 2) reach^2 / 2, greatest at one of the ends */
+        arb_sub_ui(bend, m, 2, LINE_BITS);
+        if (arb_is_negative(bend))
+            arb_sub(X, middle, reach, LINE_BITS);
+        else
+            arb_add(X, middle, reach, LINE_BITS);
+        fine = arb_is_positive(X);
+        arb_pow(X, X, bend, LINE_BITS);
+        arb_sub_ui(bend, m, 1, LINE_BITS);
+        arb_mul(bend, bend, m, LINE_BITS);
+        arb_mul(X, X, bend, LINE_BITS);
+        arb_mul(X, X, reach, LINE_BITS);
+        arb_mul(X, X, reach, LINE_BITS);
+        arb_mul_2exp_si(X, X, -1);
+        arb_get_mag(t->r, X);
+    }
+    arb_clear(m);
+    arb_clear(bend);
+    arb_clear(X);
+    return fine && mag_is_finite(t->r);
+}
+
+/* ell = ell_factor * m * log(X), likewise. */
+static bool log_affine(affine *ell, const problem *p, const arb_t middle, const arb_t reach, const arb_t width)
+{
+    arb_t x, front;
+    bool fine;
+    arb_init(x);
+    arb_init(front);
+    arb_set_fmpq(front, p->m, LINE_BITS);
+    arb_mul(front, front, p->ell_factor, LINE_BITS);
+    arb_log(ell->v, middle, LINE_BITS);
+    arb_mul(ell->v, ell->v, front, LINE_BITS);
+    arb_div(ell->b, front, middle, LINE_BITS);
+    arb_mul(ell->b, ell->b, width, LINE_BITS);
+    arb_sub(x, middle, reach, LINE_BITS);
+    fine = arb_is_positive(x);
+    arb_div(x, reach, x, LINE_BITS);
+    arb_mul(x, x, x, LINE_BITS);
+    arb_mul(x, x, front, LINE_BITS);
+    arb_mul_2exp_si(x, x, -1);
+    arb_get_mag(ell->r, x);
+    arb_clear(front);
+    arb_clear(x);
+    return fine && mag_is_finite(ell->r);
+}
+
+/* p(middle + step), likewise, by jets. */
+static bool phase_affine(affine *t, const problem *p, const arb_t middle, const arb_t reach, const arb_t width)
+{
+    acb_struct jet[3];
+    acb_t at;
+    mag_t away;
+    bool fine = true;
+    for (int k = 0; k < 3; k++)
+        acb_init(jet + k);
+    acb_init(at);
+    mag_init(away);
+    arb_set(acb_realref(at), middle);
+    tape_jet(jet, p->phase, at, 2, LINE_BITS);
+    fine = acb_is_finite(jet) && acb_is_finite(jet + 1);
+    arb_set(t->v, acb_realref(jet));
+    arb_mul(t->b, acb_realref(jet + 1), width, LINE_BITS);
+    arb_get_mag(away, reach);
+    mag_add(arb_radref(acb_realref(at)), arb_radref(acb_realref(at)), away);
+    tape_jet(jet, p->phase, at, 3, PATCH_BITS);
+    fine = fine && acb_is_finite(jet + 2);
+    arb_get_mag(t->r, acb_realref(jet + 2));
+    mag_mul(t->r, t->r, away);
+    mag_mul(t->r, t->r, away);
+    mag_clear(away);
+    acb_clear(at);
+    for (int k = 0; k < 3; k++)
+        acb_clear(jet + k);
+    return fine && mag_is_finite(t->r);
+}
+
+bool patch_affine(affine *h, affine *t, affine *ell, const problem *p, const patch *s, double z0, double z1)
+{
+    double centre = z0 / 2 + z1 / 2, half = z1 / 2 - z0 / 2;
+    arb_t middle, reach, width;
+    affine part;
+    bool fine;
+    arb_init(middle);
+    arb_init(reach);
+    arb_init(width);
+    affine_init(&part);
+    coordinate(middle, s, centre);
+    arb_set_arf(width, s->width);
+    /* patches near 0 lie exactly side by side; others have the slack that patch_range has */
+    arb_set_d(reach, half + (s->near ? 0x1p-50 * half : SLACK));
+    arb_mul(reach, reach, width, LINE_BITS);
+    mag_set_d(h->half, half + SLACK);
+    mag_set(t->half, h->half);
+    mag_set(ell->half, h->half);
+    mag_set(part.half, h->half);
+    fine = s->near || p->pure ? power_affine(t, p, middle, reach, width) : phase_affine(t, p, middle, reach, width);
+    if (fine && p->lanes > 1)
+        fine = log_affine(ell, p, middle, reach, width);
+    affine_zero(h, part.half);
+    for (slong k = s->lanes - 1; k >= 0 && fine; k--) {
+        if (k < s->lanes - 1)
+            affine_mul(h, h, ell, PATCH_BITS);
+        poly_affine(&part, s->poly + k * s->length, s->length, centre);
+        mag_add(part.r, part.r, s->error[k]);
+        affine_add(h, h, &part, PATCH_BITS);
+    }
+    affine_clear(&part);
+    arb_clear(width);
+    arb_clear(reach);
+    arb_clear(middle);
+    return fine;
 }
 
 /* ell over the part of the path between z0 and z1; t > 0 there. */
@@ -167,33 +308,26 @@ static void ell_range(arb_t ell, const problem *p, const patch *s, double z0, do
     arb_clear(other);
 }
 
-void patch_lane_bound(mag_t bound, const patch *s, slong k, double z0, double z1)
-{
-    arb_t part;
-    arb_init(part);
-    poly_range(part, s->poly + k * s->length, s->length, z0 / 2 + z1 / 2, z1 / 2 - z0 / 2 + SLACK);
-    mag_add(arb_radref(part), arb_radref(part), s->error[k]);
-    arb_get_mag(bound, part);
-    arb_clear(part);
-}
-
 void patch_range(arb_t h, const problem *p, const patch *s, double z0, double z1)
 {
-    arb_t ell, part;
-    double centre = z0 / 2 + z1 / 2, half = z1 / 2 - z0 / 2;
+    arb_t ell, range;
+    affine part;
     arb_init(ell);
-    arb_init(part);
-    half += SLACK;
+    arb_init(range);
+    affine_init(&part);
+    mag_set_d(part.half, z1 / 2 - z0 / 2 + SLACK);
     if (s->lanes > 1)
         ell_range(ell, p, s, z0, z1);
     arb_zero(h);
     for (slong k = s->lanes - 1; k >= 0; k--) {
         if (k < s->lanes - 1)
             arb_mul(h, h, ell, PATCH_BITS);
-        poly_range(part, s->poly + k * s->length, s->length, centre, half);
-        mag_add(arb_radref(part), arb_radref(part), s->error[k]);
-        arb_add(h, h, part, PATCH_BITS);
+        poly_affine(&part, s->poly + k * s->length, s->length, z0 / 2 + z1 / 2);
+        mag_add(part.r, part.r, s->error[k]);
+        affine_range(range, &part, PATCH_BITS);
+        arb_add(h, h, range, PATCH_BITS);
     }
-    arb_clear(part);
+    affine_clear(&part);
+    arb_clear(range);
     arb_clear(ell);
 }

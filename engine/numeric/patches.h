@@ -3,6 +3,7 @@
 #ifndef TW_NUMERIC_PATCHS_H
 #define TW_NUMERIC_PATCHS_H
 
+#include "engine/numeric/affine.h"
 #include "engine/numeric/problem.h"
 
 /* h = sum over k of (poly_k(z) + error_k) * ell^k for the coordinate centre + width * z, z in [-1, 1]; the coordinate is T when
@@ -22,6 +23,7 @@ typedef struct patches {
     slong count, room;
     patch *list;
     slong first;     /* index of the first omitted nonzero coefficient */
+    bool fine;       /* with errors far below what a panel loses by its width */
     double rho;      /* of the contour, for the record */
     slong discs;
     const char *reason; /* why the patches could not be made, in words; NULL: made */
@@ -41,6 +43,8 @@ bool near_build(patches *s, problem *p, double T_needed, double *T_near);
 /* From there to y_far. */
 bool discs_build(patches *s, problem *p, double T_near, double y_far);
 
+/* h, t and (with logarithms) ell as functions of d = z - (z0 + z1)/2 on z0 <= z <= z1; false: one of them bends without bound. */
+bool patch_affine(affine *h, affine *t, affine *ell, const problem *p, const patch *s, double z0, double z1);
 /* h over z0 <= z <= z1 as a ball. */
 void patch_range(arb_t h, const problem *p, const patch *s, double z0, double z1);
 /* Upper bound of the factor of ell^k over z0 <= z <= z1. */

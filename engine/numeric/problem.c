@@ -21,6 +21,7 @@ struct problem_source {
     size_t series_count;
     series *series;
     fmpq_t mu;        /* pure: t = x^mu */
+    bool constant;    /* not pure: F is a constant */
 };
 
 static char *words(const char *format, const char *what)
@@ -50,6 +51,14 @@ double mag_log2(const mag_t m)
     arf_clear(mantissa);
     arf_clear(x);
     return out;
+}
+
+bool problem_is_zero(const problem *p, slong n)
+{
+    for (slong k = 0; k < p->lanes && n < p->known; k++)
+        if (!arb_is_zero(p->f[k] + n))
+            return false;
+    return n < p->known || p->terminates;
 }
 
 void problem_power(arb_t t, const problem *p, const arb_t T, slong bits)
@@ -190,7 +199,7 @@ tw_status problem_coefficients(problem *p, slong count, slong bits)
     count = FLINT_MAX(count, p->known);
     bits = FLINT_MAX(bits, p->bits);
     if (!p->terminates || !p->source->made) {
-        status = source_make(p, count + 1);
+        status = source_make(p, p->source->constant ? 4 : count + 1);
         if (status != TW_OK)
             return status;
     }
@@ -214,6 +223,7 @@ tw_status problem_coefficients(problem *p, slong count, slong bits)
                 p->terminates = false;
         }
     }
+    p->terminates = p->terminates || p->source->constant;
     return status;
 }
 
@@ -291,6 +301,14 @@ static tape *tape_in(problem *p, expr *f)
     return f ? tape_new(p->e, f, vars, 1) : NULL;
 }
 
+/* Does f not depend on y, as far as the normal form of its derivative shows? */
+static bool is_constant(problem *p, expr *f)
+{
+    expr *positive[] = {p->y};
+    expr *slope = f ? expr_normal(p->e, expr_derivative(p->e, f, p->y), positive, 1) : NULL;
+    return slope && expr_is_zero(slope);
+}
+
 /* The regular parts of each sheet: A y^-v as a polynomial in log(y). v is what every sheet can give. */
 static bool sheets_regular(problem *p, char **reason)
 {
@@ -350,6 +368,8 @@ static bool sheets_regular(problem *p, char **reason)
                                  expr_mul(e, expr_pow(e, expr_derivative(e, p->phase_expr, p->y), expr_int(e, -1)),
                                           expr_pow(e, p->phase_expr, power)));
             }
+            if (!p->pure && p->sheet_count == 1)
+                p->source->constant = is_constant(p, value);
             s->value = tape_in(p, value);
             fine = s->value != NULL;
         }

@@ -56,6 +56,9 @@ void problem_free(problem *p);
 /* At least `count` coefficients to `bits` bits of precision; TW_OK also when the series terminates earlier (then zeros). */
 tw_status problem_coefficients(problem *p, slong count, slong bits);
 
+/* Are all coefficients of T^n exactly 0? Also true beyond the known ones of a series that terminates. */
+bool problem_is_zero(const problem *p, slong n);
+
 /* t at the exact coordinate y, as a ball. */
 void problem_t(arb_t t, const problem *p, const arb_t y, slong bits);
 

@@ -7,6 +7,7 @@
 
 #include "engine/ball/decide.h"
 #include "engine/numeric/shared.h"
+#include "engine/numeric/signs.h"
 #include "engine/numeric/split_off.h"
 #include "engine/numeric/terms.h"
 
@@ -246,6 +247,23 @@ static bool all_enclose(tw_engine *e, expansion *a, const env *at)
     return any;
 }
 
+/* The same by the signs of the amplitudes' remainders; the parameters have values. */
+static bool all_signs_enclose(tw_engine *e, expansion *a, const env *at, slong terms)
+{
+    bool any = false;
+    if (a->rest.count > 0)
+        return false;
+    for (size_t k = 0; k < a->contribution_count; k++) {
+        if (!contribution_counts(a, k, false))
+            continue;
+        if (a->contributions[k].local.count == 0 || !budget_ok(e) ||
+            signs_enclose(e, &a->contributions[k].local, a->large, at, terms) != ANSWER_YES)
+            return false;
+        any = true;
+    }
+    return any;
+}
+
 /* factor times the moduli of the next `more` terms that are not kept, over the contributions that count; NULL on an error. */
 static expr *omitted_terms(tw_engine *e, slong kept, slong more, slong factor, expansion *a, const env *values)
 {
@@ -266,7 +284,7 @@ static expr *omitted_terms(tw_engine *e, slong kept, slong more, slong factor, e
     return sum;
 }
 
-static tw_status enclosing_bound(tw_engine *e, remainder_bound *out, expansion *a, const env *values)
+static tw_status enclosing_bound(tw_engine *e, remainder_bound *out, expansion *a, const env *values, const char *source)
 {
     expr *sum = omitted_terms(e, out->terms, 1, 1, a, values);
     if (TW_BOUND_FACTOR != 1) {
@@ -279,7 +297,7 @@ static tw_status enclosing_bound(tw_engine *e, remainder_bound *out, expansion *
     out->bound = sum;
     out->label = LABEL_PROVED;
     out->manner = "enclosing";
-    out->source = base_copy("the amplitude is completely monotone, so that each partial sum encloses (Olver 1974, ch. 3)");
+    out->source = base_copy(source);
     return sum ? TW_OK : TW_ERROR;
 }
 
@@ -606,6 +624,10 @@ static tw_status rest_bound(tw_engine *e, remainder_bound *out, expansion *a, co
 static tw_status estimated_bound(tw_engine *e, remainder_bound *out, expansion *a, const env *values)
 {
     expr *sum = omitted_terms(e, out->terms, 2, 3, a, values);
+    if (sum && expr_is_zero(sum)) { /* the series has ended: its terms say nothing about what is left */
+        out->label = LABEL_UNKNOWN;
+        return TW_OK;
+    }
     out->bound = sum;
     out->source = base_copy("three times the next omitted terms");
     return sum ? TW_OK : TW_ERROR;
@@ -672,6 +694,48 @@ static tw_status default_terms(tw_engine *e, remainder_bound *out, expansion *a,
     return status;
 }
 
+/* With logarithms or irrational powers the bound's form holds from scale 1 on only. */
+static bool needs_scale_one(tw_engine *e, const expansion *a, const env *values)
+{
+    for (size_t k = 0; k < a->contribution_count; k++)
+        for (size_t j = 0; j < a->contributions[k].lane_count && contribution_counts(a, k, false); j++) {
+            const lane *l = a->contributions[k].lanes + j;
+            expr *first = put_values(e, l->first_exponent, values);
+            if (l->log_power > 0 || !first || !expr_is_number(first))
+                return true;
+        }
+    return false;
+}
+
+/* Moves *from, two digits, to where every scale is at least 1. */
+static tw_status raise_to_scale_one(tw_engine *e, expr **from, const expansion *a, const env *values)
+{
+    arb_t x, scale, one;
+    tw_status status;
+    arb_init(x);
+    arb_init(scale);
+    arb_init(one);
+    arb_one(one);
+    status = real_ball(e, x, *from, 64);
+    for (size_t k = 0; k < a->contribution_count && status == TW_OK; k++)
+        for (int j = 0; j < 200 && status == TW_OK && contribution_counts(a, k, false); j++) {
+            expr *here = put_values(e, a->contributions[k].local.scale, values);
+            if (a->contributions[k].local.count == 0)
+                break;
+            status = here ? real_ball(e, scale, expr_substitute(e, here, a->large, *from), 64) : TW_ERROR;
+            if (status != TW_OK || arb_ge(scale, one))
+                break;
+            arb_mul_ui(x, x, a->small ? 4 : 5, 64);
+            arb_div_ui(x, x, a->small ? 5 : 4, 64);
+            *from = decimal_expr(e, x, 2, !a->small);
+            status = *from ? TW_OK : TW_ERROR;
+        }
+    arb_clear(one);
+    arb_clear(scale);
+    arb_clear(x);
+    return status;
+}
+
 tw_status remainder_for_all(tw_engine *e, remainder_bound *out, expansion *a, const env *at, slong terms, expr *s0)
 {
     env values;
@@ -691,18 +755,25 @@ tw_status remainder_for_all(tw_engine *e, remainder_bound *out, expansion *a, co
     } else if (a->remainder) {
         status = split_off_for_all(e, out, a, &values, s0);
     } else if (all_enclose(e, a, &values)) {
-        status = enclosing_bound(e, out, a, &values);
+        status = enclosing_bound(e, out, a, &values,
+                                 "the amplitude is completely monotone, so that each partial sum encloses (Olver 1974, ch. 3)");
     } else if (missing) {
         text words;
         text_init(&words);
         text_addf(&words, "the parameter %s has no value; with a value the bound can be computed", missing);
         out->reason = text_take(&words);
         out->label = LABEL_UNKNOWN;
+    } else if (all_signs_enclose(e, a, &values, out->terms)) {
+        status = enclosing_bound(e, out, a, &values,
+                                 "the amplitude less these terms has one sign, less one term more the opposite one, so that the sum "
+                                 "encloses (Olver 1974, ch. 3)");
     } else {
         if (!s0 && expansion_extend(e, a, out->terms + 2) != TW_OK)
             status = TW_ERROR;
         if (!s0 && status == TW_OK)
             status = useful_from(e, &out->from, a, &values, out->terms);
+        if (!s0 && status == TW_OK && needs_scale_one(e, a, &values))
+            status = raise_to_scale_one(e, &out->from, a, &values);
         if (status == TW_OK)
             status = panels_everywhere(e, out, a, &values);
     }

@@ -10,12 +10,16 @@ void weight_init(weight *w, const arb_t alpha, const arb_t S)
     arb_set(w->S, S);
     /* Arb's incomplete Gamma function loses about alpha bits around its turning point. */
     w->bits = 128 + (slong)arf_get_d(arb_midref(alpha), ARF_RND_UP);
+    arb_init(w->gamma);
+    arb_add_ui(w->gamma, alpha, 1, w->bits);
+    arb_gamma(w->gamma, w->gamma, w->bits);
 }
 
 void weight_clear(weight *w)
 {
     arb_clear(w->alpha);
     arb_clear(w->S);
+    arb_clear(w->gamma);
 }
 
 void joint_init(joint *j)
@@ -23,6 +27,7 @@ void joint_init(joint *j)
     arb_init(j->t);
     arb_init(j->below);
     arb_init(j->above);
+    arb_init(j->next);
 }
 
 void joint_clear(joint *j)
@@ -30,6 +35,7 @@ void joint_clear(joint *j)
     arb_clear(j->t);
     arb_clear(j->below);
     arb_clear(j->above);
+    arb_clear(j->next);
 }
 
 /* A probability: what is computed, cut to [0, 1]. */
@@ -53,6 +59,7 @@ void joint_set(joint *j, const weight *w, const arb_t t)
     if (arb_is_zero(t)) {
         arb_zero(j->below);
         arb_one(j->above);
+        arb_zero(j->next);
         return;
     }
     arb_init(x);
@@ -68,6 +75,11 @@ void joint_set(joint *j, const weight *w, const arb_t t)
         arb_sub_ui(j->below, j->above, 1, w->bits);
         arb_neg(j->below, j->below);
     }
+    arb_pow(j->next, x, w->alpha, w->bits);
+    arb_neg(x, x);
+    arb_exp(x, x, w->bits);
+    arb_mul(j->next, j->next, x, w->bits);
+    arb_div(j->next, j->next, w->gamma, w->bits);
     arb_clear(x);
 }
 
@@ -80,6 +92,24 @@ void joint_mass(arb_t mass, const joint *a, const joint *b, slong bits)
     if (mag_cmp(arb_radref(other), arb_radref(mass)) < 0)
         arb_swap(mass, other);
     arb_nonnegative_part(mass, mass);
+    arb_clear(other);
+}
+
+void joint_moment(arb_t moment, const weight *w, const joint *a, const joint *b)
+{
+    arb_t other, less;
+    arb_init(other);
+    arb_init(less);
+    /* DLMF 8.8.5, 8.8.6: P and Q for alpha + 1 */
+    arb_sub(less, b->next, a->next, w->bits);
+    arb_sub(moment, b->below, a->below, w->bits);
+    arb_sub(other, a->above, b->above, w->bits);
+    if (mag_cmp(arb_radref(other), arb_radref(moment)) < 0)
+        arb_swap(moment, other);
+    arb_sub(moment, moment, less, w->bits);
+    arb_mul(moment, moment, w->alpha, w->bits);
+    arb_div(moment, moment, w->S, w->bits);
+    arb_clear(less);
     arb_clear(other);
 }
 

@@ -6,7 +6,7 @@
 
 /* The weight, normalised: density t^(alpha-1) S^alpha exp(-S t)/Gamma(alpha). */
 typedef struct weight {
-    arb_t alpha, S;
+    arb_t alpha, S, gamma; /* gamma: Gamma(alpha + 1) */
     slong bits;
 } weight;
 void weight_init(weight *w, const arb_t alpha, const arb_t S);
@@ -15,12 +15,15 @@ void weight_clear(weight *w);
 /* A joint of panels: t, and the mass below and above it (regularised incomplete Gamma functions, DLMF 8.2.4). */
 typedef struct joint {
     arb_t t, below, above;
+    arb_t next; /* (S t)^alpha exp(-S t) / Gamma(alpha + 1): below less it, above plus it are the masses for alpha + 1 */
 } joint;
 void joint_init(joint *j);
 void joint_clear(joint *j);
 void joint_set(joint *j, const weight *w, const arb_t t);
 /* Mass between two joints a < b. */
 void joint_mass(arb_t mass, const joint *a, const joint *b, slong bits);
+/* The integral of t over the same part, in the same units. */
+void joint_moment(arb_t moment, const weight *w, const joint *a, const joint *b);
 /* Gamma(alpha) * S^-alpha */
 void weight_total(arb_t total, const weight *w);
 

@@ -119,7 +119,7 @@ static inline bool table_run(const table_row *row, table_result *out)
         arb_init(truth);
         arb_init(bound);
         arb_set_si(S, row->s);
-        fine = panels_at(p, row->first, value, S, error, &out->made, &out->report) == TW_OK && out->made;
+        fine = panels_at(p, row->first, value, S, 0.008, error, &out->made, &out->report) == TW_OK && out->made;
         out->one_ms = table_cpu_ms() - start;
         start = table_cpu_ms();
         fine = fine && panels_for_all(p, row->first, value, S, &b, &out->made, &out->report) == TW_OK && out->made;

@@ -73,8 +73,9 @@ static void enclosing_values(void **state)
     assert_int_equal(number_at(&n, "10", 0, -1), TW_OK);
     assert_int_equal(n.terms, 5);
     assert_int_equal(n.least_term, 5);
-    assert_string_equal(n.manner, "enclosing");
-    assert_true(mag_cmp_2exp_si(arb_radref(acb_realref(n.value)), -16) < 0);
+    /* the panels come closer than the theorem, and the label is theirs */
+    assert_null(n.manner);
+    assert_true(mag_cmp_2exp_si(arb_radref(acb_realref(n.value)), -22) < 0);
     number_clear(&n);
     number_init(&n);
     assert_int_equal(number_at(&n, "5", 0, 2), TW_OK);

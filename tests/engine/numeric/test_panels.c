@@ -51,7 +51,7 @@ static void hidden_flat_term(void **state)
         arb_init(S);
         arb_init(error);
         arb_set_si(S, 10);
-        (void)panels_at(p, 3, expr_int(e, 10), S, error, &made, &r);
+        (void)panels_at(p, 3, expr_int(e, 10), S, 0.008, error, &made, &r);
         assert_false(made);
         arb_clear(S);
         arb_clear(error);
@@ -80,7 +80,7 @@ static void not_analytic_on_the_path(void **state)
         arb_init(error);
         arb_set_si(S, 5);
         if (trap_problem(e, &p, bad[k], &reason) == TW_OK && p)
-            (void)panels_at(p, 2, expr_int(e, 5), S, error, &made, &r);
+            (void)panels_at(p, 2, expr_int(e, 5), S, 0.008, error, &made, &r);
         if (made)
             printf("%s: accepted, %g\n", bad[k], arf_get_d(arb_midref(error), ARF_RND_NEAR));
         assert_false(made);
