@@ -143,6 +143,34 @@ static bool no_head(const growth_record *r)
     return fmpq_is_zero(r->c) && fmpq_is_zero(r->a) && fmpq_is_zero(r->k) && fmpq_is_zero(r->slack);
 }
 
+/* 1 + w (1 + w (1/2 + w h)), h = int_0^1 (1 - s)^2/2 e^(s w) ds in star/6, star a ball that holds all e^(s w): three
+ * orders, so that a sum may lose the first ones without losing all. */
+static bool exp_near_zero(growth_record *out, const growth_record *w, const acb_t star, const growth_place *p)
+{
+    growth_record t;
+    fmpq_t q;
+    acb_t h;
+    record_init(&t);
+    fmpq_init(q);
+    acb_init(h);
+    acb_div_ui(h, star, 6, p->prec);
+    fmpq_set_si(q, 1, 2);
+    bool ok = record_near(&t, q, w, h, p);
+    for (int order = 2; ok && order > 0; order--) {
+        growth_record c;
+        record_init(&c);
+        record_set_si(&c, 1);
+        ok = record_mul(&t, w, &t, p) && record_add(&t, &t, &c, p);
+        record_clear(&c);
+    }
+    if (ok)
+        record_swap(out, &t);
+    record_clear(&t);
+    fmpq_clear(q);
+    acb_clear(h);
+    return ok;
+}
+
 /* exp of something that stays in a ball. */
 static bool exp_bounded(growth_record *out, const growth_record *r, const growth_place *p)
 {
@@ -155,12 +183,8 @@ static bool exp_bounded(growth_record *out, const growth_record *r, const growth
     acb_init(v);
     bool ok = false;
     if (w && record_star(v, w, p)) {
-        fmpq_t one;
-        fmpq_init(one);
-        fmpq_one(one);
-        acb_exp(v, v, p->prec); /* e^w - 1 = w int_0^1 e^(sw) ds */
-        ok = record_near(out, one, w, v, p);
-        fmpq_clear(one);
+        acb_exp(v, v, p->prec);
+        ok = exp_near_zero(out, w, v, p);
     }
     if (!ok && record_ball(v, r, p)) {
         acb_exp(v, v, p->prec);

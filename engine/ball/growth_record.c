@@ -7,7 +7,7 @@
 
 #include <stdlib.h>
 
-enum { REST_DEPTH = 2, Q_BITS_LIMIT = 400 };
+enum { REST_DEPTH = 3, Q_BITS_LIMIT = 400 };
 
 void growth_place_init(growth_place *p, tw_engine *e)
 {
@@ -739,7 +739,8 @@ static bool power_ball(acb_t out, const growth_record *r, const arb_t power, boo
     return acb_is_finite(out);
 }
 
-/* (q + w)^power = q^power + w h,  h in power (q + star)^(power - 1). */
+/* (q + w)^power = q^power + w (power q^(power - 1) + w h),  h in power (power - 1)/2 (q + star)^(power - 2): two orders,
+ * so that a sum may lose its first without losing all. */
 static bool power_rest(growth_record *rest, fmpq_t value, const growth_record *r, const fmpq_t power,
         const growth_place *p)
 {
@@ -749,9 +750,11 @@ static bool power_rest(growth_record *rest, fmpq_t value, const growth_record *r
         return true;
     acb_t h, e;
     growth_record t;
+    fmpq_t slope;
     acb_init(h);
     acb_init(e);
     record_init(&t);
+    fmpq_init(slope);
     bool ok = record_star(h, r->rest, p);
     if (ok) {
         acb_set_fmpq(e, r->q, p->prec);
@@ -760,16 +763,21 @@ static bool power_rest(growth_record *rest, fmpq_t value, const growth_record *r
     }
     if (ok) {
         acb_set_fmpq(e, power, p->prec);
-        acb_sub_ui(e, e, 1, p->prec);
+        acb_sub_ui(e, e, 2, p->prec);
         acb_pow(h, h, e, p->prec);
         acb_add_ui(e, e, 1, p->prec);
         acb_mul(h, h, e, p->prec);
-        record_set_ball(&t, h);
-        ok = acb_is_finite(h) && record_mul(rest, r->rest, &t, p);
+        acb_add_ui(e, e, 1, p->prec);
+        acb_mul(h, h, e, p->prec);
+        acb_mul_2exp_si(h, h, -1);
+        fmpq_div(slope, value, r->q);
+        fmpq_mul(slope, slope, power);
+        ok = acb_is_finite(h) && record_near(&t, slope, r->rest, h, p) && record_mul(rest, r->rest, &t, p);
     }
     record_clear(&t);
     acb_clear(h);
     acb_clear(e);
+    fmpq_clear(slope);
     return ok;
 }
 
