@@ -56,9 +56,11 @@ static const help_entry entries[] = {
      "recurrence is compared, and proved\nwhen it follows from the proved one.",
      "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/sqrt(4 + x^2) dx to 4 terms\nrecurrence of A\n"
      "check recurrence of A\ncheck recurrence 4*c[n+1] = -(2*n + 1)^2*c[n] of A", NULL},
-    {"growth", HELP_REQUEST, LATER, "growth of NAME",
-     "The form of the coefficients for large n: factor, distance, power.",
-     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 4 terms\ngrowth of A", NULL},
+    {"growth", HELP_REQUEST, HERE, "growth of NAME",
+     "The form of the coefficients for large n, K*Gamma(m*n + b)/F^n. F and b are\nexact, from the recurrence; K is exact where "
+     "the recurrence has order one,\notherwise `estimated` from coefficients far out, with its spread. With it: near\nwhich n "
+     "the terms are least, and how small the error can become.",
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/sqrt(4 + x^2) dx to 4 terms\ngrowth of A", NULL},
     {"remainder", HELP_REQUEST, HERE, "remainder of NAME [with M terms]",
      "A bound for the integral minus the kept terms, as a formula that holds for\nall values of the large parameter from some "
      "value on, with the theorem or\ncomputation behind it.",

@@ -65,7 +65,7 @@ request_function request_large, request_small, request_given, request_grant, req
     request_drop, request_expand, request_steps, request_coefficients, request_remainder, request_evaluate, request_compare,
     request_write, request_help, request_quit, request_derive, request_move, request_done, request_undo, request_replay,
     request_expansion_of;
-request_function request_recurrence, request_check_recurrence;
+request_function request_recurrence, request_check_recurrence, request_growth;
 request_function request_rule, request_pass, request_rewrite, request_check_rule, request_check_file, request_why_not;
 
 /* The steps of the open derivation, or an error when none is open; the steps of a kept one. */

@@ -4,6 +4,7 @@
 #include <stdlib.h>
 #include <string.h>
 
+#include "engine/exact/closed_form.h"
 #include "engine/exact/recurrence_check.h"
 #include "engine/export/format.h"
 #include "engine/method/attach.h"
@@ -32,6 +33,14 @@ static void tell_range(session *s, result *r, const recurrence *found, const lan
     text_clear(&t);
 }
 
+/* c[n] by Gamma functions, where the recurrence has order one and splits; NULL otherwise. */
+static char *closed_words(session *s, const recurrence *found, const lane *l)
+{
+    closed_form closed;
+    if (l->c.count < 1 || !closed_form_find(s->e, &closed, found, coefficient_expr(s->e, &l->c, 0))) return NULL;
+    return expr_text(s->e, closed_form_expr(s->e, &closed, found->n));
+}
+
 static void add_object(session *s, text *json, const contribution *c, const lane *l, const recurrence *found,
                        const char *words)
 {
@@ -50,15 +59,18 @@ static void add_object(session *s, text *json, const contribution *c, const lane
         if (n) text_add(json, ", ");
         json_expr(s->e, json, coefficient_expr(s->e, &l->c, n));
     }
-    text_add(json, "], \"certificate\": ");
-    char *proof = recurrence_certificate(s->e, found);
+    char *closed = closed_words(s, found, l), *proof = recurrence_certificate(s->e, found);
+    text_add(json, "], \"closed_form\": ");
+    json_string(json, closed);
+    text_add(json, ", \"certificate\": ");
     json_string(json, proof);
+    free(closed);
     free(proof);
     text_add_char(json, '}');
 }
 
 static tw_status tell_recurrence(session *s, result *r, text *json, const contribution *c, const lane *l,
-                                 const recurrence *found)
+                                 const recurrence *found, const char *why)
 {
     text t;
     text_init(&t);
@@ -66,6 +78,11 @@ static tw_status tell_recurrence(session *s, result *r, text *json, const contri
     if (status == TW_OK) {
         result_labelled(r, t.bytes, recurrence_label_word(found->label), NULL);
         tell_range(s, r, found, l);
+        char *closed = closed_words(s, found, l);
+        if (closed) result_line(r, "  closed form: c[%s] = %s", found->n->is.name, closed);
+        free(closed);
+        if (found->label == RECURRENCE_FITTED)
+            result_line(r, "  found from the coefficients and tested on %ld others; not proved: %s", (long)found->tried, why);
         add_object(s, json, c, l, found, t.bytes);
     }
     text_clear(&t);
@@ -91,6 +108,18 @@ static void tell_end(result *r, const lane *l)
     text_clear(&t);
 }
 
+/* The proved recurrence, or one that fits; NULL for none. *why: why none is proved. */
+static tw_status find_any(session *s, const expansion *a, contribution *c, const lane *l, const recurrence **known,
+                          char **why)
+{
+    if (lane_recurrence(s->e, c, l, a->large, known) == TW_OK) return TW_OK;
+    if (s->e->error.kind != ERROR_UNSUITABLE) return TW_ERROR;
+    free(*why);
+    *why = base_copy(s->e->error.words);
+    engine_forgive(s->e);
+    return lane_recurrence_fitted(s->e, c, l, a->large, a->small, known);
+}
+
 /* One lane; *found counts those that have a recurrence or end. The reason of the last that has none stays in *why. */
 static tw_status tell_lane(session *s, result *r, text *json, expansion *a, contribution *c, size_t k, size_t *found,
                            char **why)
@@ -103,16 +132,13 @@ static tw_status tell_lane(session *s, result *r, text *json, expansion *a, cont
         ++*found;
         return TW_OK;
     }
-    tw_status status = lane_recurrence(s->e, c, l, a->large, &known);
-    if (status != TW_OK && s->e->error.kind == ERROR_UNSUITABLE) {
-        free(*why);
-        *why = base_copy(s->e->error.words);
-        engine_forgive(s->e);
+    tw_status status = find_any(s, a, c, l, &known, why);
+    if (status == TW_OK && !known) {
         result_line(r, "  %s", *why);
         return TW_OK;
     }
     if (status == TW_OK && known->needed > l->c.count) status = expansion_extend(s->e, a, known->needed);
-    if (status == TW_OK) status = tell_recurrence(s, r, json, c, &c->lanes[k], known);
+    if (status == TW_OK) status = tell_recurrence(s, r, json, c, &c->lanes[k], known, *why ? *why : "");
     if (status == TW_OK) ++*found;
     return status;
 }
@@ -328,7 +354,11 @@ static tw_status check_lane(session *s, verdict *v, expansion *a, contribution *
     const recurrence *r = typed;
     *v = (verdict){.misfit = -1};
     if (!typed) {
-        if (lane_recurrence(s->e, c, l, a->large, &r) != TW_OK || recurrence_verify(s->e, r) != TW_OK) return TW_ERROR;
+        char *why = NULL;
+        tw_status status = find_any(s, a, c, l, &r, &why);
+        if (status == TW_OK && !r) status = engine_fail(s->e, ERROR_UNSUITABLE, "%s", why);
+        free(why);
+        if (status != TW_OK || recurrence_verify(s->e, r) != TW_OK) return TW_ERROR;
         v->proved = r->label == RECURRENCE_PROVED;
     }
     if (compare_lane(s, v, a, c, l, r) != TW_OK) return TW_ERROR;

@@ -42,6 +42,7 @@ static const struct {
     [STATEMENT_EVALUATE] = {request_evaluate, CHANGES_LAST},
     [STATEMENT_COMPARE] = {request_compare, CHANGES_LAST},
     [STATEMENT_RECURRENCE] = {request_recurrence, CHANGES_LAST},
+    [STATEMENT_GROWTH] = {request_growth, CHANGES_LAST},
     [STATEMENT_CHECK_RECURRENCE] = {request_check_recurrence, CHANGES_LAST},
     [STATEMENT_WRITE] = {request_write, CHANGES_FACTS},
     [STATEMENT_SHOW] = {request_show, CHANGES_FACTS},

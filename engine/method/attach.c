@@ -12,9 +12,10 @@
 #include <string.h>
 #include <time.h>
 
+#include "engine/exact/closure.h"
+#include "engine/exact/guess.h"
 #include "engine/exact/rationalise.h"
 #include "engine/exact/telescope.h"
-#include "engine/exact/values.h"
 #include "engine/method/lanes.h"
 
 enum { ORDER_LIMIT = 12, PIECES_LIMIT = 12, ROOM_LIMIT = 24, SHIFT_LIMIT = 24 };
@@ -27,6 +28,9 @@ struct recurrence_memo {
         slong log_power;
         recurrence *found; /* NULL: none, for this reason */
         char *why;
+        bool impossible; /* the reason is that there is none */
+        bool fit_tried;
+        recurrence *fitted;
     } *list;
 };
 
@@ -36,6 +40,7 @@ void recurrence_memo_free(struct recurrence_memo *m)
     for (size_t k = 0; k < m->count; k++) {
         fmpq_clear(m->list[k].step);
         recurrence_free(m->list[k].found);
+        recurrence_free(m->list[k].fitted);
         free(m->list[k].why);
     }
     free(m->list);
@@ -73,6 +78,7 @@ typedef struct task {
     expr *z;  /* of n = 0 */
     slong h;  /* z moves by it */
     expr *n, *x;
+    bool impossible; /* it was seen that there is no finite recurrence */
     size_t count; /* terms q p^-z; the lane's coefficients are the sum of their residues */
     struct {
         expr *p, *q;
@@ -180,22 +186,79 @@ static bool add_terms(task *t, expr *p, expr *q)
     return true;
 }
 
-static bool holds_call(expr *f, expr *x, function_id wanted)
+/* Is a made of rational functions of x and logarithms of them, one logarithm at least? */
+static bool is_rational_with_logs(task *t, expr *a, bool *log)
 {
-    if (!expr_has(f, x)) return false;
-    if (expr_is_call(f, wanted)) return true;
-    for (uint32_t k = 0; k < f->count; k++)
-        if (holds_call(f->args[k], x, wanted)) return true;
-    return false;
+    if (!expr_has(a, t->x) || a == t->x) return true;
+    if (expr_is_call(a, FUNCTION_LOG)) {
+        bool inside = false;
+        *log = true;
+        return is_rational_with_logs(t, a->args[0], &inside) && !inside;
+    }
+    if (a->kind == EXPR_POWER && (!expr_is_number(a->args[1]) || !fmpz_is_one(fmpq_denref(expr_number(a->args[1])))))
+        return false;
+    if (a->kind != EXPR_SUM && a->kind != EXPR_PRODUCT && a->kind != EXPR_POWER) return false;
+    bool good = true;
+    for (uint32_t k = 0; k < a->count && good; k++) good = is_rational_with_logs(t, a->args[k], log);
+    return good;
 }
 
-static tw_status refuse_kind(const task *t, expr *p, expr *q)
+/* A pole of q, as a rational function of exp(u x) or of tan(u x/2), other than where these have no preimage: it has one in
+ * each period. Infinity is an ordinary point of the new variable y, at which dx/dy falls like y^-2. */
+static bool has_periodic_poles(task *t, expr *q)
 {
     tw_engine *e = t->e;
-    bool log_p = holds_call(p, t->x, FUNCTION_LOG);
-    if (log_p)
+    bool found = false;
+    for (int which = CHANGE_HYPERBOLIC; which <= CHANGE_CIRCULAR && !found && e->error.kind == ERROR_NONE; which++) {
+        changed made;
+        if (!change_variable(e, &made, which, expr_int(e, 1), q, t->x)) continue;
+        expr *inside = expr_substitute(e, made.q, made.y, t->x);
+        expr *square = expr_pow(e, t->x, expr_int(e, 2)), *one = expr_int(e, 1);
+        expr *away = which == CHANGE_CIRCULAR ? expr_add(e, one, square) : expr_sub(e, one, square);
+        bool again = true;
+        for (slong room = 2; inside && away && room <= ROOM_LIMIT && again && e->error.kind == ERROR_NONE; room++) {
+            field f;
+            hyper h;
+            element value, gone;
+            field_init(&f, e, room);
+            element_init(&f, &value), element_init(&f, &gone);
+            tw_status status = hyper_init(&h, &f, t->x);
+            if (status == TW_OK) status = hyper_rational(&h, &value, inside);
+            if (status == TW_OK) status = hyper_rational(&h, &gone, away);
+            again = f.full;
+            fmpz_mpoly_t rest, g;
+            fmpz_mpoly_init(rest, f.ctx), fmpz_mpoly_init(g, f.ctx);
+            fmpz_mpoly_set(rest, fmpz_mpoly_q_denref(&value), f.ctx);
+            while (status == TW_OK && fmpz_mpoly_gcd(g, rest, fmpz_mpoly_q_numref(&gone), f.ctx) &&
+                   fmpz_mpoly_degree_si(g, h.variable, f.ctx) > 0)
+                fmpz_mpoly_divides(rest, rest, g, f.ctx);
+            slong up = fmpz_mpoly_degree_si(fmpz_mpoly_q_numref(&value), h.variable, f.ctx),
+                  down = fmpz_mpoly_degree_si(fmpz_mpoly_q_denref(&value), h.variable, f.ctx);
+            found = status == TW_OK && (fmpz_mpoly_degree_si(rest, h.variable, f.ctx) > 0 || up > down - 2);
+            fmpz_mpoly_clear(rest, f.ctx), fmpz_mpoly_clear(g, f.ctx);
+            hyper_clear(&h);
+            element_clear(&f, &value), element_clear(&f, &gone);
+            field_clear(&f);
+        }
+    }
+    return found;
+}
+
+/* Sequences with a finite recurrence have a Borel transform with finitely many singularities. */
+static tw_status refuse_kind(task *t, expr *p, expr *q)
+{
+    tw_engine *e = t->e;
+    fmpq_t mu;
+    fmpq_init(mu);
+    bool log = false, pure = is_pure_power(e, p, t->x, mu);
+    fmpq_clear(mu);
+    t->impossible = true;
+    if (is_rational_with_logs(t, p, &log) && log)
         return refuse(t, "no finite recurrence exists: the exponent holds a logarithm, whose sheets give it infinitely many "
                          "critical values");
+    if (pure && has_periodic_poles(t, q))
+        return refuse(t, "no finite recurrence exists: the amplitude has a pole in each period, so infinitely many");
+    t->impossible = false;
     char *words = expr_text(e, expr_has(q, t->x) ? q : p);
     engine_fail(e, ERROR_UNSUITABLE,
                 "no recurrence can be proved: the integrand is not made of rational functions, powers and exponentials of "
@@ -235,8 +298,9 @@ static tw_status add_branches(task *t)
 
 /* ---- from terms to the recurrence ---- */
 
-/* The telescoper of piece k for n -> n + 1. TW_ERROR with f->full when the field is too narrow. */
-static tw_status telescope_piece(const task *t, field *f, size_t k, telescope *out)
+/* F = q p^-(z + h n) of piece k into *h (always initialised), and its ratio p^-h for n -> n + 1. TW_ERROR with f->full when
+ * the field is too narrow. */
+static tw_status read_piece(const task *t, field *f, size_t k, hyper *into, element *ratio)
 {
     hyper h;
     element weight, p;
@@ -249,14 +313,34 @@ static tw_status telescope_piece(const task *t, field *f, size_t k, telescope *o
     if (status == TW_OK) status = hyper_rational(&h, &p, t->pieces[k].p);
     if (status == TW_OK) status = field_from_expr(f, &weight, expr_neg(t->e, expr_add(t->e, t->z, expr_mul(t->e, expr_int(t->e, t->h), t->n))));
     if (status == TW_OK) status = hyper_multiply_rational(&h, &p, &weight);
-    if (status == TW_OK) status = field_pow(f, &p, &p, -t->h);
-    if (status == TW_OK) {
-        telescope_init(out, f, h.variable);
-        status = telescope_find(out, &h, &p, ORDER_LIMIT);
-        if (status != TW_OK) telescope_clear(out);
-    }
-    hyper_clear(&h);
+    if (status == TW_OK) status = field_pow(f, ratio, &p, -t->h);
+    *into = h;
     element_clear(f, &weight), element_clear(f, &p);
+    return status;
+}
+
+/* The telescoper of piece k. */
+static tw_status telescope_piece(const task *t, field *f, size_t k, telescope *out, element *ratio)
+{
+    hyper h;
+    tw_status status = read_piece(t, f, k, &h, ratio);
+    telescope_init(out, f, h.variable);
+    if (status == TW_OK) status = telescope_find(out, &h, ratio, ORDER_LIMIT);
+    hyper_clear(&h);
+    return status;
+}
+
+/* Proves the identity of piece k as it now is. */
+static tw_status prove_piece(const task *t, field *f, size_t k, const telescope *one)
+{
+    hyper h;
+    element ratio;
+    element_init(f, &ratio);
+    tw_status status = read_piece(t, f, k, &h, &ratio);
+    if (status == TW_OK && !telescope_holds(one, &h, &ratio))
+        status = engine_fail(t->e, ERROR_INTERNAL, "the certificate of a recurrence of a sum does not hold");
+    hyper_clear(&h);
+    element_clear(f, &ratio);
     return status;
 }
 
@@ -360,19 +444,31 @@ static tw_status keep_certificates(const task *t, recurrence *r, const telescope
     return TW_OK;
 }
 
+/* All pieces satisfy the recurrence of the first, or that of the sum is made. */
+static tw_status align_pieces(const task *t, field *f, telescope *list, const element *ratios)
+{
+    bool same = true;
+    for (size_t k = 1; k < t->count && same; k++) same = same_telescoper(&list[0], &list[k]);
+    if (same) {
+        for (size_t k = 1; k < t->count; k++) align_certificate(&list[0], &list[k]);
+        return TW_OK;
+    }
+    if (telescopes_unite(list, ratios, t->count, field_variable(f, t->n), ORDER_LIMIT) != TW_OK) return TW_ERROR;
+    for (size_t k = 0; k < t->count; k++)
+        if (prove_piece(t, f, k, &list[k]) != TW_OK) return TW_ERROR;
+    return TW_OK;
+}
+
 /* With this field, unless it is too narrow. f becomes the recurrence's own. */
 static tw_status find_in_field(const task *t, field *f, recurrence **out)
 {
     telescope *list = base_alloc(t->count * sizeof *list);
+    element *ratios = elements_new(f, (slong)t->count);
     size_t done = 0;
     tw_status status = TW_OK;
-    for (; done < t->count && status == TW_OK; done++) {
-        status = telescope_piece(t, f, done, &list[done]);
-        if (status != TW_OK) break;
-        if (done == 0) continue;
-        if (same_telescoper(&list[0], &list[done])) align_certificate(&list[0], &list[done]);
-        else status = refuse(t, "the parts of the integrand have different recurrences");
-    }
+    for (; done < t->count && status == TW_OK; done++) status = telescope_piece(t, f, done, &list[done], &ratios[done]);
+    if (status == TW_OK) status = align_pieces(t, f, list, ratios);
+    elements_free(f, ratios, (slong)t->count);
     if (status == TW_OK) {
         slong order = list[0].order;
         fmpz_mpoly_struct *a = base_alloc((size_t)(order + 1) * sizeof *a);
@@ -441,7 +537,8 @@ static tw_status check_known(const task *t, const recurrence *r)
     return misfit == -1 ? TW_OK : TW_ERROR;
 }
 
-static tw_status find_for_lane(tw_engine *e, const contribution *c, const lane *l, expr *large, recurrence **out)
+static tw_status find_for_lane(tw_engine *e, const contribution *c, const lane *l, expr *large, recurrence **out,
+                               bool *impossible)
 {
     task t = {.e = e, .c = c, .l = l};
     kernel_init(&t.k);
@@ -449,6 +546,7 @@ static tw_status find_for_lane(tw_engine *e, const contribution *c, const lane *
     if (status == TW_OK) status = find_recurrence(&t, out);
     if (status == TW_OK) status = check_known(&t, *out);
     kernel_clear(&t.k);
+    *impossible = t.impossible;
     if (status == TW_OK) return TW_OK;
     recurrence_free(*out);
     *out = NULL;
@@ -460,13 +558,38 @@ tw_status lane_recurrence(tw_engine *e, contribution *c, const lane *l, expr *la
     struct remembered *m = remember(c, l);
     if (!m->found && !m->why) {
         recurrence *made = NULL;
-        tw_status status = find_for_lane(e, c, l, large, &made);
+        tw_status status = find_for_lane(e, c, l, large, &made, &m->impossible);
         if (status == TW_OK) m->found = made;
         else if (e->error.kind == ERROR_UNSUITABLE) m->why = base_copy(e->error.words);
         if (status != TW_OK) return TW_ERROR;
     }
     *out = m->found;
     return m->found ? TW_OK : engine_fail(e, ERROR_UNSUITABLE, "%s", m->why);
+}
+
+tw_status lane_recurrence_fitted(tw_engine *e, contribution *c, const lane *l, expr *large, bool small,
+                                 const recurrence **out)
+{
+    struct remembered *m = remember(c, l);
+    *out = m->fitted;
+    if (m->fit_tried || m->impossible || c->terminates) return TW_OK;
+    expr **list;
+    slong found;
+    if (lane_coefficients(e, c, l, large, small, GUESS_COEFFICIENTS, NULL, &list, &found) != TW_OK) return TW_ERROR;
+    m = remember(c, l);
+    bool rational = true;
+    for (slong n = 0; n < found && rational; n++) rational = expr_is_number(list[n]);
+    tw_status status = TW_OK;
+    if (rational) {
+        fmpq *q = _fmpq_vec_init(found);
+        for (slong n = 0; n < found; n++) fmpq_set(&q[n], expr_number(list[n]));
+        status = recurrence_guess(e, &m->fitted, expr_symbol(e, "n"), q, found);
+        _fmpq_vec_clear(q, found);
+    }
+    free(list);
+    m->fit_tried = status == TW_OK;
+    *out = m->fitted;
+    return status;
 }
 
 static double now(void)
@@ -490,205 +613,3 @@ tw_status lane_recurrence_if_quick(tw_engine *e, contribution *c, const lane *l,
     return TW_OK;
 }
 
-/* ---- the certificate again ---- */
-
-/* f'/f by the rules of logarithmic differentiation, on expressions. */
-static expr *log_slope(tw_engine *e, expr *f, expr *x)
-{
-    if (!f) return NULL;
-    if (!expr_has(f, x)) return expr_int(e, 0);
-    if (f->kind == EXPR_PRODUCT) {
-        expr *sum = expr_int(e, 0);
-        for (uint32_t k = 0; k < f->count; k++) sum = expr_add(e, sum, log_slope(e, f->args[k], x));
-        return sum;
-    }
-    if (expr_is_call(f, FUNCTION_EXP)) return expr_derivative(e, f->args[0], x);
-    if (f->kind == EXPR_POWER && !expr_has(f->args[1], x)) return expr_mul(e, f->args[1], log_slope(e, f->args[0], x));
-    return expr_div(e, expr_derivative(e, f, x), f);
-}
-
-/* sum_j c_j p^(-h j) - R' - R F'/F, which is zero when the certificate holds. */
-static expr *certificate_defect(tw_engine *e, const recurrence *r, const certificate *one)
-{
-    expr *sum = expr_int(e, 0);
-    for (slong j = 0; j <= r->order; j++)
-        sum = expr_add(e, sum, expr_mul(e, r->c[j], expr_pow(e, one->p, expr_int(e, -r->h * j))));
-    expr *z = expr_add(e, r->z, expr_mul(e, expr_int(e, r->h), r->n));
-    expr *slope = expr_sub(e, log_slope(e, one->q, one->x), expr_mul(e, z, log_slope(e, one->p, one->x)));
-    sum = expr_sub(e, sum, expr_derivative(e, one->r, one->x));
-    return expr_sub(e, sum, expr_mul(e, one->r, slope));
-}
-
-/* Zero as a rational function? */
-static answer is_zero_function(tw_engine *e, expr *a)
-{
-    if (!a) return ANSWER_UNKNOWN;
-    for (slong room = 4; room <= ROOM_LIMIT; room += 4) {
-        field f;
-        element value;
-        field_init(&f, e, room);
-        element_init(&f, &value);
-        tw_status status = field_from_expr(&f, &value, a);
-        bool full = f.full;
-        answer zero = status == TW_OK ? field_is_zero(&f, &value) : ANSWER_UNKNOWN;
-        element_clear(&f, &value);
-        field_clear(&f);
-        if (!full) return zero;
-    }
-    return ANSWER_UNKNOWN;
-}
-
-tw_status recurrence_verify(tw_engine *e, const recurrence *r)
-{
-    for (size_t k = 0; k < r->certificate_count; k++) {
-        answer zero = is_zero_function(e, certificate_defect(e, r, &r->certificates[k]));
-        if (e->error.kind != ERROR_NONE) return TW_ERROR;
-        if (zero == ANSWER_NO) return engine_fail(e, ERROR_REFUTED, "the certificate does not hold: the identity is false");
-        if (zero == ANSWER_UNKNOWN)
-            return engine_fail(e, ERROR_UNDECIDED, "the certificate could be neither proved nor refuted in this form");
-    }
-    return TW_OK;
-}
-
-static void add_expr(tw_engine *e, text *out, const char *before, expr *a)
-{
-    text_add(out, before);
-    if (a) expr_print(e, out, a);
-}
-
-char *recurrence_certificate(tw_engine *e, const recurrence *r)
-{
-    if (r->certificate_count == 0) return NULL;
-    text t;
-    text_init(&t);
-    expr *z = expr_add(e, r->z, expr_mul(e, expr_int(e, r->h), r->n));
-    text_add(&t, "sum over j of C_j*p^(-");
-    text_addf(&t, "%ld*j)*F = derivative of R*F in %s, F = q*p^(-z)", (long)r->h, r->certificates[0].x->is.name);
-    add_expr(e, &t, ", z = ", z);
-    for (slong j = 0; j <= r->order; j++) {
-        text_addf(&t, ", C_%ld = ", (long)j);
-        add_expr(e, &t, "", r->c[j]);
-    }
-    for (size_t k = 0; k < r->certificate_count; k++) {
-        add_expr(e, &t, k ? "; p = " : ", p = ", r->certificates[k].p);
-        add_expr(e, &t, ", q = ", r->certificates[k].q);
-        add_expr(e, &t, ", R = ", r->certificates[k].r);
-    }
-    return text_take(&t);
-}
-
-/* ---- direct coefficients ---- */
-
-static expr *put_in(tw_engine *e, expr *a, const env *at)
-{
-    return !a || !at || at->count == 0 ? a : expr_substitute_all(e, a, at->symbols, at->values, at->count);
-}
-
-static void copy_form(tw_engine *e, local_form *to, const local_form *from, const env *at)
-{
-    if (from->count == 0) return;
-    to->scale = put_in(e, from->scale, at);
-    to->factor = put_in(e, from->factor, at);
-    for (size_t k = 0; k < from->count; k++) {
-        const branch *b = &from->branches[k];
-        local_form_add(to, b->x, b->end, put_in(e, b->p, at), put_in(e, b->q, at));
-    }
-}
-
-/* A copy of the contribution with its local forms only. */
-static void copy_forms(tw_engine *e, contribution *to, const contribution *c, const env *at)
-{
-    contribution_init(to);
-    to->variable = c->variable;
-    to->place = c->place;
-    to->kind = c->kind;
-    to->method = c->method;
-    to->prefactor = c->prefactor;
-    copy_form(e, &to->local, &c->local, at);
-    copy_form(e, &to->formal, &c->formal, at);
-}
-
-/* Is l the lane `wanted` with the values put in? Its constant may have taken another form then. */
-static bool is_same_lane(tw_engine *e, const lane *l, const lane *wanted, const env *at)
-{
-    return l->log_power == wanted->log_power && l->first_exponent == put_in(e, wanted->first_exponent, at) &&
-           fmpq_equal(l->step, wanted->step) && (at || l->constant == wanted->constant);
-}
-
-tw_status lane_coefficients(tw_engine *e, const contribution *c, const lane *wanted, expr *large, bool small, slong count,
-                            const env *at, expr ***out, slong *found)
-{
-    contribution fresh;
-    *out = NULL;
-    *found = 0;
-    copy_forms(e, &fresh, c, at);
-    slong terms = count * (slong)FLINT_MAX(c->lane_count, 1);
-    tw_status status = e->error.kind == ERROR_NONE
-                           ? contribution_fill_directly(e, &fresh, large, small, terms, NULL) : TW_ERROR;
-    bool same = status == TW_OK && (!at || fresh.lane_count == c->lane_count);
-    for (size_t k = 0; k < fresh.lane_count && same && !*out; k++) {
-        const struct lane *l = &fresh.lanes[k];
-        if (!is_same_lane(e, l, wanted, at)) continue;
-        *found = FLINT_MIN(l->c.count, count);
-        *out = base_alloc((size_t)(*found + 1) * sizeof **out);
-        for (slong n = 0; n < *found; n++)
-            if (!((*out)[n] = coefficient_expr(e, &l->c, n))) status = TW_ERROR;
-    }
-    contribution_clear(&fresh);
-    if (status == TW_OK && *out) return TW_OK;
-    free(*out);
-    *out = NULL;
-    return status == TW_OK ? engine_fail(e, ERROR_UNSUITABLE, "the lane's direct coefficients could not be found again")
-                           : TW_ERROR;
-}
-
-/* ---- parameters ---- */
-
-static void add_parameters(expr *a, expr *large, expr *x, expr **symbols, size_t *count)
-{
-    expr **list;
-    size_t n = a ? expr_symbols(a, &list) : 0;
-    for (size_t k = 0; k < n; k++) {
-        bool old = list[k] == large || list[k] == x || *count == PARAMETERS_LIMIT;
-        for (size_t m = 0; m < *count && !old; m++) old = symbols[m] == list[k];
-        if (!old) symbols[(*count)++] = list[k];
-    }
-    if (a) free(list);
-}
-
-size_t contribution_parameters(const contribution *c, expr *large, expr **symbols)
-{
-    size_t count = 0;
-    const local_form *l = c->local.count ? &c->local : &c->formal;
-    add_parameters(l->scale, large, NULL, symbols, &count);
-    add_parameters(l->factor, large, NULL, symbols, &count);
-    for (size_t k = 0; k < l->count; k++) {
-        add_parameters(l->branches[k].p, large, l->branches[k].x, symbols, &count);
-        add_parameters(l->branches[k].q, large, l->branches[k].x, symbols, &count);
-    }
-    return count;
-}
-
-slong lane_compare(tw_engine *e, const contribution *c, const lane *l, expr *large, bool small, const recurrence *r,
-                   slong count, slong *compared, expr **left, expr **right)
-{
-    expr *symbols[PARAMETERS_LIMIT], *values[PARAMETERS_LIMIT], **list;
-    env at = {contribution_parameters(c, large, symbols), symbols, values};
-    *compared = 0;
-    *left = *right = NULL;
-    for (int trial = 0; trial < 3; trial++) {
-        for (size_t k = 0; k < at.count; k++)
-            if (!(values[k] = value_sample(e, symbols[k], trial))) return -2;
-        const env *here = at.count ? &at : NULL;
-        if (lane_coefficients(e, c, l, large, small, count, here, &list, compared) == TW_OK) {
-            slong misfit = recurrence_misfit(e, r, here, list, *compared);
-            if (misfit >= 0) recurrence_sides(e, r, here, list, misfit, left, right);
-            free(list);
-            return misfit;
-        }
-        if (!here || (e->error.kind != ERROR_UNSUITABLE && e->error.kind != ERROR_DIVERGENT && e->error.kind != ERROR_VALUE)) return -2;
-        engine_forgive(e); /* other values may keep the lanes apart */
-    }
-    engine_fail(e, ERROR_UNDECIDED, "no values of the parameters were found at which the lanes can be compared");
-    return -2;
-}

@@ -15,6 +15,11 @@ tw_status lane_recurrence(tw_engine *e, contribution *c, const lane *l, expr *la
  * more than two seconds. */
 tw_status lane_recurrence_if_quick(tw_engine *e, contribution *c, const lane *l, expr *large, const recurrence **out);
 
+/* A recurrence that fits the lane's first coefficients, found where none is proved; *out is NULL, without an error, when none
+ * fits, when it is known that none exists, or when the coefficients are not rational. */
+tw_status lane_recurrence_fitted(tw_engine *e, contribution *c, const lane *l, expr *large, bool small,
+                                 const recurrence **out);
+
 /* The certificates once more, by another way than the one that found them: as expressions, derived and brought to normal
  * form. ERROR_REFUTED when one does not hold. */
 tw_status recurrence_verify(tw_engine *e, const recurrence *r);
