@@ -9,6 +9,7 @@
 #include <string.h>
 
 #include "engine/ball/tape.h"
+#include "engine/exact/algebraic.h"
 #include "engine/exact/values.h"
 
 static slong variable_of(const field *f, slong k) { return f->room - 1 - k; } /* of generator k */
@@ -68,6 +69,80 @@ static bool reduce_polynomial(field *f, fmpz_mpoly_t p)
     return changed;
 }
 
+/* den as a polynomial in generator k alone, with integers for coefficients; false when others occur. */
+static bool alone_in(field *f, fmpq_poly_t out, const fmpz_mpoly_t den, slong k)
+{
+    slong n = fmpz_mpoly_length(den, f->ctx), variable = variable_of(f, k);
+    ulong *exponents = base_alloc((size_t)f->room * sizeof *exponents);
+    fmpz_t c;
+    fmpz_init(c);
+    bool alone = true;
+    fmpq_poly_zero(out);
+    for (slong t = 0; t < n && alone; t++) {
+        fmpz_mpoly_get_term_exp_ui(exponents, den, t, f->ctx);
+        for (slong v = 0; v < f->room && alone; v++)
+            alone = v == variable || exponents[v] == 0;
+        fmpz_mpoly_get_term_coeff_fmpz(c, den, t, f->ctx);
+        if (alone)
+            fmpq_poly_set_coeff_fmpz(out, (slong)exponents[variable], c);
+    }
+    fmpz_clear(c);
+    free(exponents);
+    return alone;
+}
+
+static void set_in_generator(field *f, fmpz_mpoly_t out, const fmpq_poly_t a, slong k)
+{
+    fmpz_mpoly_t g, term;
+    fmpz_t c;
+    fmpz_init(c);
+    fmpz_mpoly_init(g, f->ctx), fmpz_mpoly_init(term, f->ctx);
+    fmpz_mpoly_zero(out, f->ctx);
+    for (slong j = fmpq_poly_degree(a); j >= 0; j--) {
+        fmpz_mpoly_gen(g, variable_of(f, k), f->ctx);
+        fmpz_mpoly_pow_ui(term, g, (ulong)j, f->ctx);
+        fmpz_set(c, fmpq_poly_numref(a) + j);
+        fmpz_mpoly_scalar_mul_fmpz(term, term, c, f->ctx);
+        fmpz_mpoly_add(out, out, term, f->ctx);
+    }
+    fmpz_mpoly_clear(g, f->ctx), fmpz_mpoly_clear(term, f->ctx);
+    fmpz_clear(c);
+}
+
+/* The inverse in the number field of generator k, times an integer. */
+static bool inverse_in_number_field(field *f, fmpz_mpoly_t adjoint, const fmpz_mpoly_t den, slong k)
+{
+    fmpq_poly_t d, m, g, s, t;
+    fmpq_poly_init(d), fmpq_poly_init(m), fmpq_poly_init(g), fmpq_poly_init(s), fmpq_poly_init(t);
+    bool fits = alone_in(f, d, den, k) && alone_in(f, m, f->generators[k].relation, k);
+    if (fits) {
+        fmpq_poly_xgcd(g, s, t, d, m);
+        fits = fmpq_poly_degree(g) == 0;
+    }
+    if (fits) {
+        fmpq_poly_scalar_mul_fmpz(s, s, fmpq_poly_denref(s));
+        set_in_generator(f, adjoint, s, k);
+    }
+    fmpq_poly_clear(d), fmpq_poly_clear(m), fmpq_poly_clear(g), fmpq_poly_clear(s), fmpq_poly_clear(t);
+    return fits;
+}
+
+/* g^degree = a polynomial in earlier generators, or one with lower powers of g too? */
+static bool relation_is_binomial(field *f, slong k)
+{
+    const generator *g = f->generators + k;
+    fmpz_mpoly_t part;
+    slong variable = variable_of(f, k);
+    bool binomial = true;
+    fmpz_mpoly_init(part, f->ctx);
+    for (ulong j = 1; j < (ulong)g->degree && binomial; j++) {
+        fmpz_mpoly_get_coeff_vars_ui(part, g->relation, &variable, &j, 1, f->ctx);
+        binomial = fmpz_mpoly_is_zero(part, f->ctx);
+    }
+    fmpz_mpoly_clear(part, f->ctx);
+    return binomial;
+}
+
 /* adjoint = the product of den's other conjugates over g, g^degree = c, so that den * adjoint is free of g: for A
  * + B g the element A - B g, for A + B g + C g^2 (degree 3) the element A^2 - B C c + (C^2 c - A B) g + (B^2 - A
  * C) g^2, for a monomial in g of any degree the missing power. False when none of these fits. */
@@ -76,6 +151,8 @@ static bool adjoint_of(field *f, fmpz_mpoly_t adjoint, const fmpz_mpoly_t den, s
     fmpz_mpoly_struct part[3], power, c, t;
     slong variable = variable_of(f, k), degree = f->generators[k].degree;
     bool fits = true, monomial = true;
+    if (!relation_is_binomial(f, k))
+        return inverse_in_number_field(f, adjoint, den, k);
     fmpz_mpoly_init(&power, f->ctx), fmpz_mpoly_init(&c, f->ctx), fmpz_mpoly_init(&t, f->ctx);
     for (int j = 0; j < 3; j++)
         fmpz_mpoly_init(part + j, f->ctx);
@@ -497,6 +574,50 @@ static tw_status from_parts(field *f, element *out, expr *a)
     return s;
 }
 
+/* An algebraic number r: the generator is g = lc*r, whose polynomial is monic: lc^(d-1) m(g/lc). */
+static tw_status from_root(field *f, element *out, expr *a)
+{
+    tw_engine *e = f->e;
+    fmpz_poly_t m;
+    fmpz_poly_init(m);
+    if (!algebraic_polynomial(e, m, a)) {
+        fmpz_poly_clear(m);
+        return e->error.kind == ERROR_NONE ? atom_plain(f, out, a) : TW_ERROR;
+    }
+    slong d = fmpz_poly_degree(m);
+    fmpz_t lc, power, c;
+    fmpz_init(lc), fmpz_init(power), fmpz_init(c);
+    fmpz_set(lc, m->coeffs + d);
+    expr *atom = expr_mul(e, expr_fmpz(e, lc), a);
+    tw_status s = generator_find(f, out, atom, 0, NULL);
+    slong k = 0;
+    while (s == TW_OK && f->generators[k].atom != atom)
+        k++;
+    if (s == TW_OK && f->generators[k].degree == 0) {
+        generator *g = f->generators + k;
+        fmpz_mpoly_t term;
+        fmpz_mpoly_init(term, f->ctx);
+        g->degree = d;
+        fmpz_mpoly_gen(g->relation, variable_of(f, k), f->ctx);
+        fmpz_mpoly_pow_ui(g->relation, g->relation, (ulong)d, f->ctx);
+        fmpz_one(power);
+        for (slong j = d - 1; j >= 0; j--) { /* m_j lc^(d-1-j) g^j */
+            fmpz_mpoly_gen(term, variable_of(f, k), f->ctx);
+            fmpz_mpoly_pow_ui(term, term, (ulong)j, f->ctx);
+            fmpz_mul(c, m->coeffs + j, power);
+            fmpz_mpoly_scalar_mul_fmpz(term, term, c, f->ctx);
+            fmpz_mpoly_add(g->relation, g->relation, term, f->ctx);
+            fmpz_mul(power, power, lc);
+        }
+        fmpz_mpoly_clear(term, f->ctx);
+    }
+    if (s == TW_OK && !fmpz_is_one(lc))
+        fmpz_mpoly_q_div_fmpz(out, out, lc, f->ctx);
+    fmpz_clear(lc), fmpz_clear(power), fmpz_clear(c);
+    fmpz_poly_clear(m);
+    return s;
+}
+
 tw_status field_from_expr(field *f, element *out, expr *a)
 {
     if (a == NULL || !budget_ok(f->e))
@@ -518,6 +639,7 @@ tw_status field_from_expr(field *f, element *out, expr *a)
     case EXPR_PRODUCT: return from_parts(f, out, a);
     case EXPR_POWER: return from_power(f, out, a);
     case EXPR_CALL: return from_call(f, out, a);
+    case EXPR_ROOT: return from_root(f, out, a);
     default: return atom_plain(f, out, a);
     }
 }

@@ -7,14 +7,15 @@
 
 #include "engine/ball/decide.h"
 #include "engine/ball/tape.h"
+#include "engine/exact/algebraic.h"
 
 /* ---- exact zero by Calcium ---- */
 
 enum { EXACT_SIZE_LIMIT = 200 }; /* nodes: Calcium's work grows fast with the number of extension elements */
 
-static bool to_exact(ca_t out, expr *a, ca_ctx_t ctx);
+static bool to_exact(tw_engine *e, ca_t out, expr *a, ca_ctx_t ctx);
 
-static bool exact_parts(ca_t out, expr *a, ca_ctx_t ctx)
+static bool exact_parts(tw_engine *e, ca_t out, expr *a, ca_ctx_t ctx)
 {
     ca_t t;
     ca_init(t, ctx);
@@ -24,7 +25,7 @@ static bool exact_parts(ca_t out, expr *a, ca_ctx_t ctx)
     else
         ca_one(out, ctx);
     for (uint32_t k = 0; k < a->count && ok; k++) {
-        ok = to_exact(t, a->args[k], ctx);
+        ok = to_exact(e, t, a->args[k], ctx);
         if (ok && sum)
             ca_add(out, out, t, ctx);
         else if (ok)
@@ -34,18 +35,18 @@ static bool exact_parts(ca_t out, expr *a, ca_ctx_t ctx)
     return ok;
 }
 
-static bool exact_power(ca_t out, expr *a, ca_ctx_t ctx)
+static bool exact_power(tw_engine *e, ca_t out, expr *a, ca_ctx_t ctx)
 {
     ca_t base, exponent;
     ca_init(base, ctx), ca_init(exponent, ctx);
-    bool ok = to_exact(base, a->args[0], ctx);
+    bool ok = to_exact(e, base, a->args[0], ctx);
     if (ok && expr_is_number(a->args[1])) {
         ok = fmpz_bits(fmpq_numref(expr_number(a->args[1]))) <= 16 &&
              fmpz_bits(fmpq_denref(expr_number(a->args[1]))) <= 16;
         if (ok)
             ca_pow_fmpq(out, base, expr_number(a->args[1]), ctx);
     } else if (ok) {
-        ok = to_exact(exponent, a->args[1], ctx);
+        ok = to_exact(e, exponent, a->args[1], ctx);
         if (ok)
             ca_pow(out, base, exponent, ctx);
     }
@@ -53,11 +54,11 @@ static bool exact_power(ca_t out, expr *a, ca_ctx_t ctx)
     return ok;
 }
 
-static bool exact_call(ca_t out, expr *a, ca_ctx_t ctx)
+static bool exact_call(tw_engine *e, ca_t out, expr *a, ca_ctx_t ctx)
 {
     ca_t z, other;
     ca_init(z, ctx), ca_init(other, ctx);
-    bool ok = a->count == 1 && to_exact(z, a->args[0], ctx);
+    bool ok = a->count == 1 && to_exact(e, z, a->args[0], ctx);
     if (ok)
         switch (a->is.function) {
         case FUNCTION_EXP: ca_exp(out, z, ctx); break;
@@ -73,7 +74,18 @@ static bool exact_call(ca_t out, expr *a, ca_ctx_t ctx)
     return ok;
 }
 
-static bool to_exact(ca_t out, expr *a, ca_ctx_t ctx)
+static bool exact_root(tw_engine *e, ca_t out, expr *a, ca_ctx_t ctx)
+{
+    qqbar_t r;
+    qqbar_init(r);
+    bool ok = algebraic_number(e, r, a);
+    if (ok)
+        ca_set_qqbar(out, r, ctx);
+    qqbar_clear(r);
+    return ok;
+}
+
+static bool to_exact(tw_engine *e, ca_t out, expr *a, ca_ctx_t ctx)
 {
     switch (a->kind) {
     case EXPR_NUMBER: ca_set_fmpq(out, expr_number(a), ctx); return true;
@@ -88,14 +100,15 @@ static bool to_exact(ca_t out, expr *a, ca_ctx_t ctx)
             return false;
         return true;
     case EXPR_SUM:
-    case EXPR_PRODUCT: return exact_parts(out, a, ctx);
-    case EXPR_POWER: return exact_power(out, a, ctx);
-    case EXPR_CALL: return exact_call(out, a, ctx);
+    case EXPR_PRODUCT: return exact_parts(e, out, a, ctx);
+    case EXPR_POWER: return exact_power(e, out, a, ctx);
+    case EXPR_CALL: return exact_call(e, out, a, ctx);
+    case EXPR_ROOT: return exact_root(e, out, a, ctx);
     default: return false;
     }
 }
 
-static answer exact_is_zero(expr *a)
+static answer exact_is_zero(tw_engine *e, expr *a)
 {
     if (expr_size(a) > EXACT_SIZE_LIMIT)
         return ANSWER_UNKNOWN;
@@ -104,7 +117,7 @@ static answer exact_is_zero(expr *a)
     answer result = ANSWER_UNKNOWN;
     ca_ctx_init(ctx);
     ca_init(value, ctx);
-    if (to_exact(value, a, ctx)) {
+    if (to_exact(e, value, a, ctx)) {
         truth_t t = ca_check_is_zero(value, ctx);
         result = t == T_TRUE ? ANSWER_YES : t == T_FALSE ? ANSWER_NO : ANSWER_UNKNOWN;
     }
@@ -198,7 +211,7 @@ answer value_is_zero(tw_engine *e, expr *a)
     acb_init(ball);
     int excludes = ball_excludes_zero(e, ball, a, 1024);
     answer result = excludes == 1 ? ANSWER_NO : ANSWER_UNKNOWN;
-    if (excludes == 0 && exact_is_zero(a) == ANSWER_YES)
+    if (excludes == 0 && exact_is_zero(e, a) == ANSWER_YES)
         result = ANSWER_YES;
     acb_clear(ball);
     return result;
@@ -215,7 +228,7 @@ int value_sign(tw_engine *e, expr *a)
     int sign = 2, excludes = ball_excludes_zero(e, ball, a, 1024);
     if (excludes == 1 && arb_contains_zero(acb_imagref(ball)) && !arb_contains_zero(acb_realref(ball)))
         sign = arb_is_positive(acb_realref(ball)) ? 1 : -1;
-    else if (excludes == 0 && exact_is_zero(a) == ANSWER_YES)
+    else if (excludes == 0 && exact_is_zero(e, a) == ANSWER_YES)
         sign = 0;
     acb_clear(ball);
     return sign;
