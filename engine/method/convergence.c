@@ -582,3 +582,33 @@ tw_status branch_converges(tw_engine *e, reading *r, const critical_point *c, si
     if (!expr_is_inf(b->end)) return c->far_places[k] ? far_end_converges(e, r, b, c->far_places[k]) : TW_OK;
     return infinity_converges(e, r, b, least, proved);
 }
+
+/* Does the phase grow without limit towards the finite end? */
+static bool phase_is_infinite(tw_engine *e, const branch *b)
+{
+    expr *value = expr_substitute(e, b->p, b->x, b->end);
+    acb_t ball;
+    acb_init(ball);
+    bool finite = value && !value->infinite &&
+                  (!expr_is_closed_value(value) || (ball_value(e, ball, value, 64) == TW_OK && acb_is_finite(ball)));
+    acb_clear(ball);
+    if (e->error.kind == ERROR_VALUE) engine_forgive(e);
+    return !finite;
+}
+
+tw_status rest_converges(tw_engine *e, reading *r, const branch *b, expr **least, bool *proved)
+{
+    path p = {e, r, b, false};
+    if (path_is_smooth(&p, b->q) != TW_OK) return TW_ERROR;
+    if (expr_is_inf(b->end)) return infinity_converges(e, r, b, least, proved);
+    if (!phase_is_infinite(e, b)) {
+        if (e->error.kind != ERROR_NONE) return TW_ERROR;
+        return far_end_converges(e, r, b, r->original_variable);
+    }
+    if (e->error.kind != ERROR_NONE) return TW_ERROR;
+    /* x = end - 1/w carries the end to infinity */
+    expr *w = expr_fresh(e, "w"), *x = expr_sub(e, b->end, expr_pow(e, w, expr_int(e, -1)));
+    branch far = {w, expr_constant_of(e, CONSTANT_INF), normal_under_facts(e, expr_substitute(e, b->p, b->x, x), &w, 1),
+                  normal_under_facts(e, expr_mul(e, expr_substitute(e, b->q, b->x, x), expr_pow(e, w, expr_int(e, -2))), &w, 1)};
+    return far.p && far.q ? infinity_converges(e, r, &far, least, proved) : TW_ERROR;
+}

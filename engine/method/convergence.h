@@ -36,4 +36,7 @@ int signs_seen(tw_engine *e, expr *f, expr *x, expr *end);
  * never does. */
 tw_status branch_converges(tw_engine *e, reading *r, const critical_point *c, size_t k, expr **least, bool *proved);
 
+/* The same for a branch of the rest, which starts at a regular place; at a finite end the phase may be infinite. */
+tw_status rest_converges(tw_engine *e, reading *r, const branch *b, expr **least, bool *proved);
+
 #endif

@@ -23,43 +23,72 @@ static expr *factor_rest(tw_engine *e, expr *factor, expr *large)
     return rest;
 }
 
-tw_status local_expand(tw_engine *e, expansion *out, const reading *r, slong terms, const char *name)
+static tw_status expand_point(tw_engine *e, expansion *out, const reading *r, const critical_point *p, slong terms,
+                              const char *name)
 {
     contribution *c = expansion_add(out);
     c->variable = r->original_variable;
-    c->place = r->points->place;
-    c->kind = r->points->kind;
+    c->place = p->place;
+    c->kind = p->kind;
     c->method = name;
-    c->dominant = true;
-    c->prefactor = factor_rest(e, r->points->local.factor, r->large);
-    local_form_copy(&c->local, &r->points->local);
-    return contribution_fill(e, c, r->large, r->small, terms, &out->conditions);
+    c->dominant = p->dominant;
+    c->prefactor = factor_rest(e, p->local.factor, r->large);
+    local_form_copy(&c->local, &p->local);
+    return contribution_fill(e, c, r->large, r->small, terms, p->dominant ? &out->conditions : NULL);
+}
+
+/* A lesser point that has no series is left out: the bound covers it. */
+static tw_status leave_out(tw_engine *e, expansion *out, const reading *r, const critical_point *p)
+{
+    if (e->error.kind != ERROR_UNSUITABLE && e->error.kind != ERROR_VALUE && e->error.kind != ERROR_UNDECIDED) return TW_ERROR;
+    contribution_clear(&out->contributions[--out->contribution_count]);
+    char *place = expr_text(e, p->place);
+    text words;
+    text_init(&words);
+    text_addf(&words, "%s = %s: %s", r->original_variable->is.name, place ? place : "", e->error.words);
+    step *s = derivation_add(&out->derivation, "leave out a lesser point", NULL);
+    s->detail = text_take(&words);
+    s->form = base_copy("unchanged; the remainder's bound covers it");
+    free(place);
+    engine_forgive(e);
+    return TW_OK;
+}
+
+tw_status local_expand(tw_engine *e, expansion *out, const reading *r, slong terms, const char *name)
+{
+    for (size_t k = 0; k < r->point_count; k++) {
+        const critical_point *p = &r->points[k];
+        if (expand_point(e, out, r, p, terms, name) == TW_OK) continue;
+        if (p->dominant || leave_out(e, out, r, p) != TW_OK) return TW_ERROR;
+    }
+    return TW_OK;
 }
 
 /* exp(-scale p(end)) * int_0 q(end - y) exp(+scale (p(end) - p(end - y))) dy */
-static tw_status far_form(tw_engine *e, local_form *out, const reading *r, const branch *b)
+static tw_status far_form(tw_engine *e, local_form *out, const reading *r, const critical_point *c, const branch *b)
 {
     expr *y = expr_fresh(e, "y"), *x = expr_sub(e, b->end, y);
     expr *height = expr_substitute(e, b->p, b->x, b->end);
     expr *p = expr_expand(e, expr_sub(e, height, expr_substitute(e, b->p, b->x, x)));
     expr *q = normal_under_facts(e, expr_substitute(e, b->q, b->x, x), &y, 1);
-    expr *small = expr_call1(e, FUNCTION_EXP, expr_neg(e, expr_mul(e, r->points->local.scale, height)));
-    out->scale = r->points->local.scale;
-    out->factor = normal_under_facts(e, expr_mul(e, r->points->local.factor, small), &r->large, 1);
+    expr *small = expr_call1(e, FUNCTION_EXP, expr_neg(e, expr_mul(e, c->local.scale, height)));
+    out->scale = c->local.scale;
+    out->factor = normal_under_facts(e, expr_mul(e, c->local.factor, small), &r->large, 1);
     if (!p || !q || !out->factor) return TW_ERROR;
     local_form_add(out, y, b->end, p, q);
     return TW_OK;
 }
 
-static tw_status add_far_end(tw_engine *e, expansion *out, const reading *r, size_t k, slong terms, const char *name)
+static tw_status add_far_end(tw_engine *e, expansion *out, const reading *r, const critical_point *from, size_t k,
+                             slong terms, const char *name)
 {
     contribution *c = expansion_add(out);
     c->variable = r->original_variable;
-    c->place = r->points->far_places[k];
+    c->place = from->far_places[k];
     c->kind = POINT_FAR_END;
     c->method = name;
     c->dominant = false;
-    tw_status status = far_form(e, &c->formal, r, &r->points->local.branches[k]);
+    tw_status status = far_form(e, &c->formal, r, from, &from->local.branches[k]);
     if (status == TW_OK) {
         c->prefactor = factor_rest(e, c->formal.factor, r->large);
         status = contribution_fill(e, c, r->large, r->small, terms, NULL);
@@ -74,11 +103,13 @@ tw_status local_expand_far_ends(tw_engine *e, expansion *out, const reading *r, 
                                 bool *all)
 {
     *all = true;
-    for (size_t k = 0; k < r->points->local.count; k++) {
-        if (!r->points->far_places[k]) continue;
-        char *place = expr_text(e, r->points->far_places[k]);
+    for (size_t m = 0; m < 2 * r->point_count; m++) {
+        const critical_point *c = &r->points[m / 2];
+        size_t k = m % 2;
+        if (!c->dominant || k >= c->local.count || !c->far_places[k]) continue;
+        char *place = expr_text(e, c->far_places[k]);
         if (!place) return TW_ERROR;
-        tw_status status = add_far_end(e, out, r, k, terms, name);
+        tw_status status = add_far_end(e, out, r, c, k, terms, name);
         bool left_out = status != TW_OK && (e->error.kind == ERROR_UNSUITABLE || e->error.kind == ERROR_VALUE);
         text words;
         text_init(&words);

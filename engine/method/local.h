@@ -5,10 +5,10 @@
 
 #include "engine/method/method.h"
 
-/* The contribution of the critical point, lanes filled with `terms` terms. */
+/* The contributions of all points of the reading, the dominant ones first, lanes filled with `terms` terms each. */
 tw_status local_expand(tw_engine *e, expansion *out, const reading *r, slong terms, const char *name);
 
-/* The contributions of finite far ends, exponentially small, behind it. One that has no such form (a branch point
+/* The contributions of finite far ends of the dominant points, exponentially small, behind them. One that has no such form (a branch point
  * there) is left out with a note in the derivation; *all: none was left out. */
 tw_status local_expand_far_ends(tw_engine *e, expansion *out, const reading *r, slong terms, const char *name,
                                 bool *all);

@@ -10,8 +10,8 @@
 #include "engine/method/descent.h"
 #include "engine/method/scale.h"
 
-static const method *const METHODS[] = {&method_moments, &method_watson, &method_parts, &method_descent};
-static const char *const PLANNED[] = {"laplace", "phase", "mellin"};
+static const method *const METHODS[] = {&method_moments, &method_watson, &method_parts, &method_laplace, &method_descent};
+static const char *const PLANNED[] = {"phase", "mellin"};
 
 enum { METHOD_COUNT = sizeof METHODS / sizeof *METHODS, PLANNED_COUNT = sizeof PLANNED / sizeof *PLANNED };
 
@@ -50,7 +50,7 @@ static tw_status refuse_all(tw_engine *e, const reading *r)
     }
     if (e->error.kind == ERROR_NONE)
         engine_fail(e, ERROR_UNAVAILABLE,
-                    "no method of this version fits (%s); `laplace` is the method for this exponent", words.bytes);
+                    "no method of this version fits (%s)", words.bytes);
     text_clear(&words);
     return TW_ERROR;
 }

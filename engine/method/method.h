@@ -67,11 +67,11 @@ struct method {
     tw_status (*extend)(tw_engine *e, expansion *a, slong terms);
 };
 
-extern const method method_watson, method_parts, method_moments, method_descent;
+extern const method method_watson, method_parts, method_moments, method_laplace, method_descent;
 /* The table, in the order in which the engine tries them; *count of them. */
 const method *const *method_table(size_t *count);
 const method *method_find(const char *name);
-/* Words of the language for methods that this version lacks: laplace, phase, mellin. */
+/* Words of the language for methods that this version lacks: phase, mellin. */
 bool method_is_planned(const char *name);
 
 /* The one function that lists the stages in order: read, choose, expand, prove. by: a method's name or NULL.

@@ -1,6 +1,6 @@
 /* Where the phase is least on the path. The one idea: a phase that is exactly a constant plus a multiple of a pure
- * power tells its least point itself; any other phase is accepted only when its slope has one sign on the whole path,
- * so that the least point is an end. Everything else belongs to other methods and is said so. */
+ * power tells its least point itself; a phase whose slope has one sign on the whole path is least at an end. Everything
+ * else is for wells.c. */
 #include "engine/method/place.h"
 
 #include <stdlib.h>
@@ -152,9 +152,8 @@ static tw_status growing_kernel(tw_engine *e, expr *large)
 static tw_status refuse_interior(tw_engine *e, expr *phase, bool known)
 {
     char *words = expr_text(e, phase);
-    engine_fail(e, known ? ERROR_UNAVAILABLE : ERROR_UNDECIDED,
-                "%s %s monotone on the path, so its least value may lie inside: that "
-                "needs the method `laplace`, which this version does not have",
+    engine_fail(e, known ? ERROR_UNSUITABLE : ERROR_UNDECIDED,
+                "%s %s monotone on the path, and the place where it is least was not found",
                 words ? words : "", known ? "is not" : "could not be shown to be");
     free(words);
     return TW_ERROR;
@@ -183,7 +182,7 @@ static int slope_sign(tw_engine *e, expr *slope, expr *x, expr *from, expr *to, 
     return !*seen ? 2 : signs == SIGN_SEEN_POSITIVE ? 1 : -1;
 }
 
-static tw_status place_by_slope(tw_engine *e, place *out, expr *phase, expr *x, expr *from, expr *to, expr *large,
+tw_status place_find_by_slope(tw_engine *e, place *out, expr *phase, expr *x, expr *from, expr *to, expr *large,
                                 condition_list *conditions)
 {
     if (expr_is_minus_inf(from)) return refuse_interior(e, phase, true);
@@ -250,19 +249,18 @@ static tw_status place_power(tw_engine *e, place *out, power_shape shape, expr *
     return TW_OK;
 }
 
-tw_status place_find(tw_engine *e, place *out, expr *phase, expr *x, expr *from, expr *to, expr *large,
-                     condition_list *conditions)
+tw_status place_find_pure(tw_engine *e, place *out, expr *phase, expr *x, expr *from, expr *to, expr *large,
+                          condition_list *conditions, bool *found)
 {
+    *found = false;
     power_shape shape = read_shape(e, out, phase, x);
     if (e->error.kind != ERROR_NONE) return TW_ERROR;
-    if (shape == SHAPE_NONE) return place_by_slope(e, out, phase, x, from, to, large, conditions);
+    if (shape == SHAPE_NONE) return TW_OK;
     int sign;
     if (power_sign(e, out->c, conditions, &sign) != TW_OK) return TW_ERROR;
+    *found = shape == SHAPE_LINEAR;
     if (shape == SHAPE_LINEAR) return place_linear(e, out, sign, from, to, large);
     bool endless = expr_is_inf(to) || expr_is_minus_inf(from);
     if (sign < 0 && endless && shape == SHAPE_EVEN) return growing_kernel(e, large);
-    bool found = false;
-    if (sign > 0 && place_power(e, out, shape, x, from, to, &found) != TW_OK) return TW_ERROR;
-    if (found) return TW_OK;
-    return place_by_slope(e, out, phase, x, from, to, large, conditions);
+    return sign > 0 ? place_power(e, out, shape, x, from, to, found) : TW_OK;
 }

@@ -21,9 +21,13 @@ typedef struct place {
 void place_init(place *p);
 void place_clear(place *p);
 
-/* x runs over (from, to), from may be -inf, to inf; large and power are for words. Conditions (sign of c, no other
- * place) are added. UNSUITABLE, UNAVAILABLE, DIVERGENT, UNDECIDED with reasons. */
-tw_status place_find(tw_engine *e, place *out, expr *phase, expr *x, expr *from, expr *to, expr *large,
-                     condition_list *conditions);
+/* x runs over (from, to), from may be -inf, to inf; large is for words. Conditions (sign of c) are added. *found false:
+ * the phase is no pure power about a center on the path. UNSUITABLE, DIVERGENT, UNDECIDED with reasons. */
+tw_status place_find_pure(tw_engine *e, place *out, expr *phase, expr *x, expr *from, expr *to, expr *large,
+                          condition_list *conditions, bool *found);
+
+/* A phase whose slope has one sign on the whole path. Where only samples say so, an open condition is added. */
+tw_status place_find_by_slope(tw_engine *e, place *out, expr *phase, expr *x, expr *from, expr *to, expr *large,
+                              condition_list *conditions);
 
 #endif

@@ -8,8 +8,8 @@
 
 #include "engine/ball/decide.h"
 #include "engine/method/convergence.h"
-#include "engine/method/place.h"
-#include "engine/method/scale.h"
+#include "engine/method/frame.h"
+#include "engine/method/kinks.h"
 
 void reading_init(reading *r)
 {
@@ -20,15 +20,23 @@ void reading_init(reading *r)
     derivation_init(&r->derivation);
 }
 
-void reading_clear(reading *r)
+static void reading_forget_points(reading *r)
 {
-    fmpq_clear(r->power);
     for (size_t k = 0; k < r->point_count; k++) {
         fmpq_clear(r->points[k].mu);
         local_form_clear(&r->points[k].local);
     }
     free(r->points);
+    r->points = NULL;
+    r->point_count = 0;
     local_form_clear(&r->rest);
+    r->rest_floor = NULL;
+}
+
+void reading_clear(reading *r)
+{
+    fmpq_clear(r->power);
+    reading_forget_points(r);
     conditions_clear(&r->conditions);
     derivation_clear(&r->derivation);
     free(r->summary);
@@ -46,27 +54,9 @@ critical_point *reading_add(reading *r)
     return c;
 }
 
-/* What is known half way. */
-typedef struct frame {
-    tw_engine *e;
-    reading *r;
-    expr *binder;         /* the EXPR_INTEGRAL */
-    expr *x, *from, *to;  /* opened; x a fresh symbol */
-    expr *body, *outside; /* integral = outside * int body dx */
-    bool mirrored;
-    expr *
-        logarithm; /* u with u = log of a linear function of the variable before it, `unwound` that variable; or NULL */
-    expr *unwound;
-    separation s;
-    place p;
-} frame;
-
 /* ---- the record ---- */
 
-static step *record(frame *f, const char *rule, const char *source, expr *after, const char *format, ...)
-    __attribute__((format(printf, 5, 6)));
-
-static step *record(frame *f, const char *rule, const char *source, expr *after, const char *format, ...)
+step *frame_record(frame *f, const char *rule, const char *source, expr *after, const char *format, ...)
 {
     step *s = derivation_add(&f->r->derivation, rule, source);
     s->after = after;
@@ -193,7 +183,7 @@ static tw_status turn_path(frame *f)
     f->from = f->to;
     f->to = swap;
     f->outside = expr_neg(e, f->outside);
-    record(f, "turn the path round", NULL, form_so_far(f), NULL);
+    frame_record(f, "turn the path round", NULL, form_so_far(f), NULL);
     return TW_OK;
 }
 
@@ -208,18 +198,19 @@ static tw_status mirror_path(frame *f)
     f->x = y;
     f->mirrored = true;
     if (!f->body || !f->from) return TW_ERROR;
-    record(f, "mirror the path", NULL, form_so_far(f), "%s is replaced by -%s", f->r->original_variable->is.name,
+    frame_record(f, "mirror the path", NULL, form_so_far(f), "%s is replaced by -%s", f->r->original_variable->is.name,
            f->r->original_variable->is.name);
     return TW_OK;
 }
 
 /* ---- kernel and amplitude ---- */
 
-static tw_status separate(frame *f)
+static tw_status separate(frame *f, bool moved)
 {
     tw_engine *e = f->e;
     reading *r = f->r;
-    if (body_separate(e, &f->s, f->body, f->x, f->from, f->to, r->large, r->small) != TW_OK) return TW_ERROR;
+    if (body_separate(e, &f->s, f->body, f->x, f->from, f->to, r->large, r->small, moved) != TW_OK)
+        return TW_ERROR;
     if (holds_i(f->s.phase))
         return engine_fail(e, ERROR_UNAVAILABLE,
                            "the exponent is not real on the path: an oscillating kernel needs the method "
@@ -237,17 +228,17 @@ static tw_status separate(frame *f)
     if (!form) return TW_ERROR;
     if (stretched) {
         char *by = expr_text(e, expr_pow(e, r->large, expr_fmpq(e, f->s.stretch)));
-        record(f, "stretch the variable", NULL, form, "%s = %s*t separates %s from the variable",
+        frame_record(f, "stretch the variable", NULL, form, "%s = %s*t separates %s from the variable",
                r->original_variable->is.name, by ? by : "", r->large->is.name);
         free(by);
     } else if (form != r->derivation.steps[r->derivation.count - 1].after) {
-        record(f, "separate kernel and amplitude", NULL, form, NULL);
+        frame_record(f, "separate kernel and amplitude", NULL, form, NULL);
     }
     return TW_OK;
 }
 
 /* The original variable at t. */
-static expr *original_place(const frame *f, expr *t)
+expr *frame_place(const frame *f, expr *t)
 {
     tw_engine *e = f->e;
     if (f->logarithm) t = expr_substitute(e, f->unwound, f->logarithm, t);
@@ -316,7 +307,7 @@ static tw_status unwind_logarithm(frame *f)
     expr *scale = expr_pow(e, f->r->large, expr_fmpq(e, f->r->power));
     f->body = expr_mul(e, f->s.amplitude, expr_call1(e, FUNCTION_EXP, expr_neg(e, expr_mul(e, scale, f->s.phase))));
     char *words = expr_text(e, linear);
-    record(f, "take the base of the power for the variable", NULL, form_so_far(f), "%s = exp(u)", words ? words : "");
+    frame_record(f, "take the base of the power for the variable", NULL, form_so_far(f), "%s = exp(u)", words ? words : "");
     free(words);
     return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
 }
@@ -419,7 +410,7 @@ static tw_status add_branch(frame *f, critical_point *c, int sign, expr *far)
         f->p.level = level;
     }
     if (!p || !q || refuse_kinks(e, q, y) != TW_OK) return TW_ERROR;
-    c->far_places[c->local.count] = endless ? NULL : original_place(f, far);
+    c->far_places[c->local.count] = endless ? NULL : frame_place(f, far);
     local_form_add(&c->local, y, end, p, q);
     return TW_OK;
 }
@@ -433,7 +424,7 @@ static tw_status make_branches(frame *f)
     c->kind = p->kind == PLACE_INSIDE ? POINT_INTERIOR : POINT_END;
     c->pure = p->pure;
     fmpq_set(c->mu, p->mu);
-    c->place = original_place(f, p->center);
+    c->place = frame_place(f, p->center);
     if (p->kind != PLACE_TO && add_branch(f, c, 1, f->to) != TW_OK) return TW_ERROR;
     if (p->kind != PLACE_FROM && add_branch(f, c, -1, f->from) != TW_OK) return TW_ERROR;
     c->depth = p->level;
@@ -447,7 +438,7 @@ static tw_status make_branches(frame *f)
     const char *rule = p->kind == PLACE_INSIDE   ? "split at the critical point"
                        : expr_is_zero(p->center) ? "find the critical point"
                                                  : "shift to the critical point";
-    record(f, rule, NULL, local_form_integral(e, &c->local), "the exponent is greatest at %s = %s only",
+    frame_record(f, rule, NULL, local_form_integral(e, &c->local), "the exponent is greatest at %s = %s only",
            r->original_variable->is.name, words ? words : "");
     free(words);
     return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
@@ -477,9 +468,11 @@ static tw_status check_convergence(frame *f, text *summary)
     bool proved = true;
     for (size_t n = 0; n < r->point_count; n++) {
         const critical_point *c = &r->points[n];
-        for (size_t k = 0; k < c->local.count; k++)
+        for (size_t k = 0; k < c->local.count && c->dominant; k++)
             if (branch_converges(e, r, c, k, &least, &proved) != TW_OK) return TW_ERROR;
     }
+    for (size_t k = 0; k < r->rest.count; k++)
+        if (rest_converges(e, r, &r->rest.branches[k], &least, &proved) != TW_OK) return TW_ERROR;
     const char *s = r->large->is.name, *sign = r->small ? "<" : ">";
     expr *bound = least ? parameter_bound(f, least) : NULL;
     if (e->error.kind != ERROR_NONE) return TW_ERROR;
@@ -515,10 +508,18 @@ static void begin_summary(frame *f, text *t)
     for (size_t k = 0; k < count; k++)
         if (symbols[k] != f->r->large) text_addf(t, ", %s", symbols[k]->is.name);
     free(symbols);
-    char *words = expr_text(f->e, f->r->points->place);
-    text_addf(t, "; one critical point, %s%s = %s%s", f->r->points->kind == POINT_END ? "the end " : "",
-              f->r->original_variable->is.name, words ? words : "", f->r->points->kind == POINT_END ? "" : " inside the path");
-    free(words);
+    const reading *r = f->r;
+    size_t dominant = 0;
+    for (size_t k = 0; k < r->point_count; k++) dominant += r->points[k].dominant;
+    text_add(t, dominant == 1 ? "; one critical point, " : "; critical points of equal depth, ");
+    for (size_t k = 0; k < r->point_count; k++) {
+        const critical_point *c = &r->points[k];
+        if (!c->dominant) continue;
+        char *words = expr_text(f->e, c->place);
+        text_addf(t, "%s%s%s = %s%s", k == 0 ? "" : " and ", c->kind == POINT_END ? "the end " : "",
+                  r->original_variable->is.name, words ? words : "", c->kind == POINT_END ? "" : " inside the path");
+        free(words);
+    }
 }
 
 static bool holds_decaying_exponential(expr *a, expr *x)
@@ -529,33 +530,69 @@ static bool holds_decaying_exponential(expr *a, expr *x)
     return false;
 }
 
-/* Where the kernel grows but the amplitude has an exponential of its own (x^s*exp(-x)), the least point moves with s.
- */
-static tw_status find_place(frame *f)
+/* The points that count: pure powers by themselves, everything else from the path cut where the phase turns; where that
+ * cannot be decided, a phase that rises or falls all along is enough. */
+static tw_status find_points(frame *f)
 {
     tw_engine *e = f->e;
-    tw_status status = place_find(e, &f->p, f->s.phase, f->x, f->from, f->to, f->r->large, &f->r->conditions);
-    if (status == TW_OK || e->error.kind != ERROR_DIVERGENT || !holds_decaying_exponential(f->s.amplitude, f->x))
-        return status;
+    bool found = false;
+    if (place_find_pure(e, &f->p, f->s.phase, f->x, f->from, f->to, f->r->large, &f->r->conditions, &found) != TW_OK)
+        return TW_ERROR;
+    if (found && !find_kink(f->s.amplitude, f->x)) return make_branches(f);
+    if (frame_find_wells(f) == TW_OK) return TW_OK;
+    if (e->error.kind != ERROR_UNDECIDED && e->error.kind != ERROR_VALUE) return TW_ERROR;
+    tw_error first = {e->error.kind, base_copy(e->error.words)};
     engine_forgive(e);
-    const char *x = f->r->original_variable->is.name, *s = f->r->large->is.name;
-    return engine_fail(e, ERROR_UNAVAILABLE,
-                       "the kernel grows along the path and only the amplitude holds it, so the critical point "
-                       "moves with %s: put %s = %s^a*t with an a that keeps it in place; a critical point "
-                       "inside the path needs the method `laplace`, which this version does not have",
-                       s, x, s);
+    reading_forget_points(f->r);
+    tw_status status = found ? TW_OK : place_find_by_slope(e, &f->p, f->s.phase, f->x, f->from, f->to, f->r->large, &f->r->conditions);
+    if (status == TW_OK) status = make_branches(f);
+    bool hard = e->error.kind == ERROR_TIME || e->error.kind == ERROR_INTERRUPT || e->error.kind == ERROR_MEMORY;
+    if (status != TW_OK && !hard) {
+        engine_forgive(e);
+        engine_fail(e, first.kind, "%s", first.words);
+    }
+    free(first.words);
+    return status;
+}
+
+/* The kernel by itself first. Where it grows but the amplitude has an exponential of its own (x^s*exp(-x)), the least
+ * point moves with the large parameter: a stretched variable keeps it in place. */
+static tw_status separate_and_find(frame *f)
+{
+    tw_engine *e = f->e;
+    frame before = *f;
+    size_t steps = f->r->derivation.count;
+    if (separate(f, false) != TW_OK || unwind_logarithm(f) != TW_OK) return TW_ERROR;
+    if (find_points(f) == TW_OK) return TW_OK;
+    if (e->error.kind != ERROR_DIVERGENT || !holds_decaying_exponential(f->s.amplitude, f->x)) return TW_ERROR;
+    tw_error first = {e->error.kind, base_copy(e->error.words)};
+    engine_forgive(e);
+    reading_forget_points(f->r);
+    derivation_cut(&f->r->derivation, steps);
+    f->x = before.x;
+    f->from = before.from;
+    f->to = before.to;
+    f->body = before.body;
+    f->outside = before.outside;
+    f->logarithm = f->unwound = NULL;
+    tw_status status = separate(f, true);
+    if (status == TW_OK) status = find_points(f);
+    bool soft = e->error.kind == ERROR_UNSUITABLE || e->error.kind == ERROR_DIVERGENT;
+    if (status != TW_OK && soft) {
+        engine_forgive(e);
+        engine_fail(e, first.kind, "%s", first.words);
+    }
+    free(first.words);
+    return status;
 }
 
 static tw_status read_stages(frame *f, text *summary)
 {
     reading *r = f->r;
     if (find_binder(f, r->integral) != TW_OK || open_binder(f) != TW_OK || find_large(f) != TW_OK) return TW_ERROR;
-    step *first = record(f, "as typed", NULL, r->integral, NULL);
+    step *first = frame_record(f, "as typed", NULL, r->integral, NULL);
     first->before = r->integral;
-    if (turn_path(f) != TW_OK || mirror_path(f) != TW_OK || separate(f) != TW_OK || unwind_logarithm(f) != TW_OK)
-        return TW_ERROR;
-    if (find_place(f) != TW_OK) return TW_ERROR;
-    if (make_branches(f) != TW_OK) return TW_ERROR;
+    if (turn_path(f) != TW_OK || mirror_path(f) != TW_OK || separate_and_find(f) != TW_OK) return TW_ERROR;
     begin_summary(f, summary);
     return check_convergence(f, summary);
 }

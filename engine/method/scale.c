@@ -575,7 +575,7 @@ static bool power_grows(const separation *s, bool small)
 }
 
 tw_status body_separate(tw_engine *e, separation *out, expr *body, expr *x, expr *from, expr *to, expr *large,
-                        bool small)
+                        bool small, bool stretched)
 {
     enum { CANDIDATES_AT_MOST = 3 + MEETINGS_AT_MOST + MEETINGS_AT_MOST * MEETINGS_AT_MOST };
     fmpq *list = _fmpq_vec_init(CANDIDATES_AT_MOST);
@@ -585,7 +585,7 @@ tw_status body_separate(tw_engine *e, separation *out, expr *body, expr *x, expr
     bool found = false, weak = false;
     flat_end flat; /* when nothing is stretched: another scale may then do better */
     flat_end_init(&flat);
-    for (size_t k = 0; k < count && !found && budget_ok(e); k++) {
+    for (size_t k = stretched ? 1 : 0; k < count && !found && budget_ok(e); k++) {
         sorting s = {e, x, large, NULL, NULL, NULL, {{0}}, NULL, NULL};
         fmpq_init(s.power);
         bool separated = try_stretch(e, out, &s, body, x, from, to, &list[k]);
@@ -597,7 +597,7 @@ tw_status body_separate(tw_engine *e, separation *out, expr *body, expr *x, expr
             count = expr_is_zero(from) ? 2 : 1;
             flat_end_stretch(&flat, &list[1]);
         }
-        if (k == 0) {
+        if (!why) {
             why = s.why;
             culprit = s.culprit;
         }

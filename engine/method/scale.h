@@ -17,10 +17,10 @@ typedef struct separation {
 void separation_init(separation *s);
 void separation_clear(separation *s);
 
-/* Tries stretch 0, then the exponents at which large and x meet in the body or the ends. x runs over (from, to).
+/* Tries stretch 0 (unless `stretched`), then the exponents at which large and x meet in the body or the ends. x runs over (from, to).
  * ERROR_UNSUITABLE or UNAVAILABLE with the reason and advice when nothing separates them. */
 tw_status body_separate(tw_engine *e, separation *out, expr *body, expr *x, expr *from, expr *to, expr *large,
-                        bool small);
+                        bool small, bool stretched);
 
 /* expr_normal with all symbols that the facts make positive, and those of `more`. */
 expr *normal_under_facts(tw_engine *e, expr *a, expr *const *more, size_t count);
