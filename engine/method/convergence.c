@@ -606,6 +606,18 @@ tw_status rest_converges(tw_engine *e, reading *r, const branch *b, expr **least
         return far_end_converges(e, r, b, r->original_variable);
     }
     if (e->error.kind != ERROR_NONE) return TW_ERROR;
+    /* the kernel is bounded there, so an amplitude that can be integrated is enough */
+    condition_list kept;
+    conditions_init(&kept);
+    conditions_append(&kept, &r->conditions);
+    if (far_end_converges(e, r, b, r->original_variable) == TW_OK && r->conditions.count == kept.count) {
+        conditions_clear(&kept);
+        return TW_OK;
+    }
+    conditions_clear(&r->conditions);
+    r->conditions = kept;
+    if (e->error.kind != ERROR_NONE && e->error.kind != ERROR_DIVERGENT && e->error.kind != ERROR_UNSUITABLE) return TW_ERROR;
+    engine_forgive(e);
     /* x = end - 1/w carries the end to infinity */
     expr *w = expr_fresh(e, "w"), *x = expr_sub(e, b->end, expr_pow(e, w, expr_int(e, -1)));
     branch far = {w, expr_constant_of(e, CONSTANT_INF), normal_under_facts(e, expr_substitute(e, b->p, b->x, x), &w, 1),

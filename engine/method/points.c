@@ -83,6 +83,11 @@ static tw_status joints_add(tw_engine *e, path_cut *c, expr **places, size_t cou
 
 /* ---- slopes ---- */
 
+static bool is_finite_place(expr *a)
+{
+    return !expr_is_inf(a) && !expr_is_minus_inf(a);
+}
+
 /* A value inside (a, b). */
 static expr *inside_of(tw_engine *e, expr *a, expr *b)
 {
@@ -111,11 +116,6 @@ static int slope_beside(tw_engine *e, expr *slope, expr *x, expr *z, int side)
     }
     if (e->error.kind == ERROR_VALUE) engine_forgive(e);
     return 2;
-}
-
-static bool is_finite_place(expr *a)
-{
-    return !expr_is_inf(a) && !expr_is_minus_inf(a);
 }
 
 /* The sign of the slope on a piece known to have no zero inside. */
@@ -171,10 +171,11 @@ static tw_status cut_piece(tw_engine *e, path_cut *all, expr *phase, expr *x, ex
 
 static tw_status mark_stationary(tw_engine *e, path_cut *c, expr *x)
 {
-    for (size_t k = 1; k < c->count; k++) {
+    for (size_t k = 0; k <= c->count; k++) {
         joint_place *j = &c->joints[k];
-        bool left = false, right = false;
-        for (int side = 0; side < 2; side++) {
+        bool left = k == 0, right = k == c->count; /* at an end the one side decides */
+        if (!is_finite_place(j->place)) continue;
+        for (int side = k == 0; side < (k == c->count ? 1 : 2); side++) {
             expr *slope = expr_derivative(e, c->pieces[k - 1 + (size_t)side].phase, x);
             expr *value = slope ? expr_substitute(e, slope, x, j->place) : NULL;
             value = value_canonical(e, value);

@@ -34,6 +34,11 @@ static bool coordinate_series(arb_ptr T, walker *w, const arb_t c, slong n, slon
         arb_one(T + 1);
         return true;
     }
+    if (problem_is_beyond(p, arb_midref(c))) {
+        arb_mul(T, c, p->ratio, bits);
+        arb_set(T + 1, p->ratio);
+        return true;
+    }
     acb_init(at);
     jet = _acb_vec_init(n);
     arb_set(acb_realref(at), c);
@@ -45,9 +50,12 @@ static bool coordinate_series(arb_ptr T, walker *w, const arb_t c, slong n, slon
     fine = fine && arb_is_positive(T);
     if (fine && !fmpq_is_one(w->inverse_m)) {
         arb_t power;
+        arb_ptr root = _arb_vec_init(n); /* square roots of series must not overwrite their argument */
         arb_init(power);
         arb_set_fmpq(power, w->inverse_m, bits);
-        _arb_poly_pow_arb_series(T, T, n, power, n, bits);
+        _arb_poly_pow_arb_series(root, T, n, power, n, bits);
+        _arb_vec_swap(root, T, n);
+        _arb_vec_clear(root, n);
         arb_clear(power);
     }
     _acb_vec_clear(jet, n);
@@ -102,9 +110,11 @@ static bool coordinate_range(mag_t most, arb_t least, walker *w, const arf_t c, 
     arb_set_arf(acb_realref(disc), c);
     arf_get_mag(arb_radref(acb_realref(disc)), R);
     arf_get_mag(arb_radref(acb_imagref(disc)), R);
-    if (p->pure) {
+    if (p->pure || problem_is_beyond(p, c)) {
         /* exactly c - R <= |y| <= c + R on the disc */
         arb_set(modulus, acb_realref(disc));
+        if (!p->pure)
+            arb_mul(modulus, modulus, p->ratio, LOW_BITS);
     } else {
         acb_t value;
         acb_init(value);
@@ -131,7 +141,7 @@ static bool slope_positive(walker *w, const arf_t c, const arf_t width)
 {
     acb_t real, value;
     bool fine;
-    if (w->p->pure)
+    if (w->p->pure || problem_is_beyond(w->p, c))
         return true;
     acb_init(real);
     acb_init(value);
@@ -422,7 +432,13 @@ static double coordinate_pace(walker *w, double y)
     const problem *p = w->p;
     acb_t at, t, slope;
     double pace = 1;
-    if (p->pure)
+    arf_t here;
+    bool beyond;
+    arf_init(here);
+    arf_set_d(here, y);
+    beyond = problem_is_beyond(p, here);
+    arf_clear(here);
+    if (p->pure || beyond)
         return 1;
     acb_init(at);
     acb_init(t);

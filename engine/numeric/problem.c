@@ -73,11 +73,21 @@ void problem_alpha(arb_t alpha, const problem *p, slong n, slong bits)
     arb_div_fmpz(alpha, alpha, fmpq_numref(p->m), bits);
 }
 
+bool problem_is_beyond(const problem *p, const arf_t y)
+{
+    return p->ends && arf_cmp(y, arb_midref(p->beyond)) > 0;
+}
+
 void problem_t(arb_t t, const problem *p, const arb_t y, slong bits)
 {
     acb_t at, value;
     if (p->pure) {
         problem_power(t, p, y, bits);
+        return;
+    }
+    if (problem_is_beyond(p, arb_midref(y))) {
+        arb_mul(t, y, p->ratio, bits);
+        problem_power(t, p, t, bits);
         return;
     }
     acb_init(at);
@@ -439,6 +449,27 @@ static bool sheets_make(problem *p, char **reason)
     return sheets_regular(p, reason);
 }
 
+/* Beyond the last end the coordinate is continued linearly in T. */
+static void continue_coordinate(problem *p)
+{
+    enum { END_BITS = 320 };
+    const sheet *last = p->sheets;
+    fmpq_t inverse;
+    for (size_t b = 0; b < p->sheet_count; b++) {
+        if (!p->sheets[b].end)
+            return;
+        if (arf_cmp(arb_midref(p->sheets[b].end_y), arb_midref(last->end_y)) > 0)
+            last = p->sheets + b;
+    }
+    fmpq_init(inverse);
+    fmpq_inv(inverse, p->m);
+    arb_pow_fmpq(p->ratio, last->end_t, inverse, END_BITS);
+    arb_div(p->ratio, p->ratio, last->end_y, END_BITS);
+    arb_set(p->beyond, last->end_y);
+    p->ends = true;
+    fmpq_clear(inverse);
+}
+
 /* ---- from the contribution ---- */
 
 static bool has_unit(expr *a)
@@ -543,6 +574,8 @@ static bool problem_make(problem *p, const local_form *l, const env *at, expr *l
         *reason = base_copy("the amplitude begins with a fractional power that is hidden in a root");
         return false;
     }
+    if (!p->pure)
+        continue_coordinate(p);
     fmpq_init(inverse);
     fmpq_inv(inverse, p->m);
     arb_set_fmpq(p->ell_factor, inverse, 400);
@@ -562,6 +595,8 @@ tw_status problem_new(tw_engine *e, problem **out, const local_form *l, expr *la
     fmpq_init(p->m);
     arb_init(p->v);
     arb_init(p->ell_factor);
+    arb_init(p->beyond);
+    arb_init(p->ratio);
     p->source = base_alloc(sizeof *p->source);
     memset(p->source, 0, sizeof *p->source);
     fmpq_init(p->source->mu);
@@ -609,5 +644,7 @@ void problem_free(problem *p)
     fmpq_clear(p->m);
     arb_clear(p->v);
     arb_clear(p->ell_factor);
+    arb_clear(p->beyond);
+    arb_clear(p->ratio);
     free(p);
 }

@@ -36,6 +36,8 @@ typedef struct problem {
     bool pure;
     expr *phase_expr;       /* p(y) */
     tape *phase, *slope;    /* p, p'; NULL when pure */
+    bool ends;              /* a general phase all of whose sheets end: beyond the last end, where only the kept terms are left, */
+    arb_t beyond, ratio;    /* y >= beyond, the coordinate goes on as T = ratio*y (p itself may turn there) */
     fmpq_t m;
     expr *v_expr;
     arb_t v;
@@ -64,6 +66,9 @@ void problem_t(arb_t t, const problem *p, const arb_t y, slong bits);
 
 /* log2 of a positive mag, to double precision whatever its exponent (-inf for 0). */
 double mag_log2(const mag_t m);
+
+/* Is y beyond the last end of a general phase? */
+bool problem_is_beyond(const problem *p, const arf_t y);
 
 /* T^m */
 void problem_power(arb_t t, const problem *p, const arb_t T, slong bits);
