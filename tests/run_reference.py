@@ -16,8 +16,9 @@ from reader import Program, Score, terms, value
 import os
 from reader import HERE
 
-FAMILIES = ("watson", "parts", "symbolic-parameter", "mellin-log")
-OTHER_METHOD = ("s-bessel-k",)  # an interior saddle in disguise: K_nu by Laplace's method
+FAMILIES = ("watson", "parts", "symbolic-parameter", "mellin-log", "laplace-interior", "laplace-endpoint",
+            "high-order-saddle", "laplace-multi", "bessel-kernel", "two-scale")
+
 
 program = Program(sys.argv[1] if len(sys.argv) > 1 else "build")
 score = Score()
@@ -61,6 +62,12 @@ def check_coefficients(case, made):
     dominant = [c for c in made["contributions"] if c["dominance"] == "dominant"]
     got = [t for c in dominant for t in terms(c, at, "s")]
     got.sort(key=lambda t: (-t[0], -t[1]))
+    if len(dominant) > 1:  # points of equal depth: the reference has their sum
+        added = {}
+        for t in got:
+            key = (mpmath.nstr(t[0], 20), t[1])
+            added[key] = (t[0], t[1], t[2] + (added[key][2] if key in added else 0))
+        got = list(added.values())
     n = min(len(want), len(got))
     good = n >= min(8, len(want)) and all(abs(w[2] - g[2]) <= mpf(10) ** -35 * abs(w[2]) for w, g in zip(want, got))
     score.check(good, "%s: coefficients of the JSON file (%d compared)" % (case["id"], n))
@@ -113,7 +120,7 @@ def check_numbers(case, results):
 
 
 for case in cases:
-    if case["family"] not in FAMILIES or case["id"] in OTHER_METHOD:
+    if case["family"] not in FAMILIES:
         continue
     results, status, complaints = program.run(script(case, 12))
     score.check(status == 0, "%s: exit status %d\n%s" % (case["id"], status, complaints))

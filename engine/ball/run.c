@@ -13,14 +13,88 @@
 
 /* ---- constants ---- */
 
-/* The root of a rational polynomial nearest to the value given; non-finite when two are equally near or it is no
- * polynomial. */
+/* A root of a function that is no polynomial: Newton from the value given, then a disc around it on which f' keeps away
+ * from 0 and the Newton operator maps into itself: the disc holds exactly one root, and the value lies in it. */
+static void transcendental_root(tw_engine *e, acb_t out, expr *body, expr *x, expr *near, slong prec)
+{
+    expr *const vars[] = {x};
+    tape *t = tape_new(e, body, vars, 1);
+    acb_t z, step;
+    acb_ptr jet = _acb_vec_init(2);
+    slong bits = 2 * prec + 64;
+    acb_init(z);
+    acb_init(step);
+    bool fine = t && ball_value(e, z, near, bits) == TW_OK && acb_is_finite(z);
+    if (fine) {
+        mag_zero(arb_radref(acb_realref(z)));
+        mag_zero(arb_radref(acb_imagref(z)));
+        bool real = arb_is_zero(acb_imagref(z)) && sign_is_real(e, body);
+        /* the disc around the value given: radius four Newton steps and some */
+        acb_t disc, image, middle;
+        mag_t radius, floor;
+        acb_init(disc);
+        acb_init(image);
+        acb_init(middle);
+        mag_init(radius);
+        mag_init(floor);
+        tape_jet(jet, t, z, 2, bits);
+        acb_div(step, jet, jet + 1, bits);
+        fine = acb_is_finite(step);
+        acb_get_mag(radius, step);
+        mag_mul_2exp_si(radius, radius, 2);
+        acb_get_mag(floor, z);
+        mag_mul_2exp_si(floor, floor, -60);
+        if (mag_is_zero(floor)) mag_set_ui_2exp_si(floor, 1, -60);
+        mag_max(radius, radius, floor);
+        acb_set(middle, z);
+        acb_set(disc, z);
+        acb_add_error_mag(disc, radius);
+        for (int round = 0; round < 12 && fine; round++) { /* interval Newton: m - f(m)/f'(disc) */
+            tape_jet(jet, t, disc, 2, bits);
+            fine = acb_is_finite(jet + 1) && !acb_contains_zero(jet + 1);
+            if (!fine) break;
+            acb_set(step, jet + 1);
+            tape_eval(image, t, middle, false, bits);
+            acb_div(image, image, step, bits);
+            acb_sub(image, middle, image, bits);
+            fine = acb_is_finite(image) && (round > 0 || acb_contains_interior(disc, image));
+            if (!fine) break;
+            if (!arb_intersection(acb_realref(disc), acb_realref(disc), acb_realref(image), bits) ||
+                !arb_intersection(acb_imagref(disc), acb_imagref(disc), acb_imagref(image), bits)) {
+                fine = false;
+                break;
+            }
+            acb_get_mid(middle, disc);
+            if (acb_rel_accuracy_bits(disc) >= prec + 8) break;
+        }
+        if (fine) {
+            acb_set(out, disc);
+            if (real) arb_zero(acb_imagref(out)); /* a real function has the conjugate of a root for a root: the only one is real */
+        }
+        mag_clear(floor);
+        mag_clear(radius);
+        acb_clear(middle);
+        acb_clear(image);
+        acb_clear(disc);
+    }
+    _acb_vec_clear(jet, 2);
+    acb_clear(step);
+    acb_clear(z);
+    tape_free(t);
+}
+
+/* The root of a rational polynomial nearest to the value given; non-finite when two are equally near. Other functions:
+ * see above. */
 static void root_value(tw_engine *e, acb_t out, expr *a, slong prec)
 {
     acb_indeterminate(out);
     expr *x = expr_fresh(e, "r"), *body = expr_open(e, a, x), **c = NULL;
     slong degree;
-    if (!body || expr_polynomial(e, body, x, 1000, &c, &degree) != TW_OK) return;
+    if (!body) return;
+    if (expr_polynomial(e, body, x, 1000, &c, &degree) != TW_OK) {
+        if (e->error.kind == ERROR_NONE) transcendental_root(e, out, body, x, a->args[1], prec);
+        return;
+    }
     fmpq_poly_t p;
     fmpq_poly_init(p);
     bool rational = degree >= 1;

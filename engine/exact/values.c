@@ -304,6 +304,16 @@ static bool call_is_real(tw_engine *e, expr *a)
     }
 }
 
+/* The isolated root is given with an imaginary part that is exactly 0 when it is real. */
+static bool root_is_real(tw_engine *e, expr *a)
+{
+    acb_t z;
+    acb_init(z);
+    bool real = ball_value(e, z, a, 128) == TW_OK && acb_is_finite(z) && arb_is_zero(acb_imagref(z));
+    acb_clear(z);
+    return real;
+}
+
 bool value_is_real(tw_engine *e, expr *a)
 {
     switch (a->kind) {
@@ -321,6 +331,7 @@ bool value_is_real(tw_engine *e, expr *a)
             return false;
         return value_is_integer(e, a->args[1]) || value_sign(e, a->args[0]) == 1;
     case EXPR_CALL: return call_is_real(e, a);
+    case EXPR_ROOT: return root_is_real(e, a);
     default: return false;
     }
 }

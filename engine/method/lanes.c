@@ -14,6 +14,8 @@
 #include <stdlib.h>
 #include <string.h>
 
+#include "engine/exact/algebraic.h"
+
 struct draft {
     expr *constant;
     slong log_power;
@@ -522,6 +524,7 @@ static tw_status class_add(class_of *c)
 tw_status drafts_add(tw_engine *e, drafts *d, const series *q, const kernel *k)
 {
     bool logs = false;
+    d->sources++;
     for (size_t s = 0; s < q->count; s++) logs = logs || q->strands[s].log_power > 0;
     for (size_t s = 0; s < q->count; s++) {
         const strand *one = &q->strands[s];
@@ -640,7 +643,12 @@ tw_status drafts_finish(tw_engine *e, drafts *d, contribution *c, const kernel *
     fmpq_init(minus);
     fmpq_neg(minus, k->power);
     for (size_t n = 0; n < d->count; n++) {
-        const draft *one = d->list[n];
+        draft *one = d->list[n];
+        for (slong j = 0; d->sources > 1 && one->x && j < one->count; j++) {
+            if (one->x[j] && one->x[j]->kind == EXPR_SUM) one->x[j] = value_canonical(e, one->x[j]);
+            if (!one->x[j]) break;
+        }
+        if (e->error.kind != ERROR_NONE) break;
         bool zero = draft_is_zero(one);
         lane *l = zero ? &c->zeros[c->zero_count++] : &c->lanes[c->lane_count++];
         lane_init(l);

@@ -42,6 +42,7 @@ typedef struct draft draft;
 typedef struct drafts {
     size_t count;
     draft **list;
+    size_t sources; /* calls of drafts_add: what several branches give is brought to lowest terms, so that it cancels */
 } drafts;
 void drafts_init(drafts *d);
 void drafts_clear(drafts *d);

@@ -47,7 +47,7 @@ static tw_status laplace_expand(tw_engine *e, expansion *out, const reading *r, 
     bool all;
     if (e->error.kind != ERROR_NONE) return TW_ERROR;
     if (local_expand_far_ends(e, out, r, terms, "laplace", &all) != TW_OK) return TW_ERROR;
-    out->exact = all && r->rest.count == 0;
+    out->exact = all && out->rest.count == 0;
     for (size_t k = 0; k < out->contribution_count; k++) out->exact = out->exact && out->contributions[k].terminates;
     return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
 }

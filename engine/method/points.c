@@ -43,7 +43,7 @@ static void joint_insert(path_cut *c, size_t at, expr *place)
 {
     c->joints = base_resize(c->joints, (c->count + 2) * sizeof *c->joints);
     memmove(c->joints + at + 1, c->joints + at, (c->count + 1 - at) * sizeof *c->joints);
-    c->joints[at] = (joint_place){place, NULL, false};
+    c->joints[at] = (joint_place){place, NULL, false, false};
     c->count++;
 }
 
@@ -58,7 +58,7 @@ static tw_status undecided(tw_engine *e, expr *a, expr *b)
 }
 
 /* A place inside the path becomes a joint, once. */
-static tw_status joint_add(tw_engine *e, path_cut *c, expr *place)
+static tw_status joint_add(tw_engine *e, path_cut *c, expr *place, bool turning)
 {
     for (size_t k = 0; k <= c->count; k++) {
         int order = places_compare(e, place, c->joints[k].place);
@@ -66,17 +66,20 @@ static tw_status joint_add(tw_engine *e, path_cut *c, expr *place)
         if (order == 2) return undecided(e, place, c->joints[k].place);
         if (order == 0) return TW_OK;
         if (order < 0) {
-            if (k > 0) joint_insert(c, k, place);
+            if (k > 0) {
+                joint_insert(c, k, place);
+                c->joints[k].turning = turning;
+            }
             return TW_OK;
         }
     }
     return TW_OK;
 }
 
-static tw_status joints_add(tw_engine *e, path_cut *c, expr **places, size_t count)
+static tw_status joints_add(tw_engine *e, path_cut *c, expr **places, size_t count, bool turning)
 {
     tw_status status = TW_OK;
-    for (size_t k = 0; k < count && status == TW_OK; k++) status = joint_add(e, c, places[k]);
+    for (size_t k = 0; k < count && status == TW_OK; k++) status = joint_add(e, c, places[k], turning);
     free(places);
     return status;
 }
@@ -152,10 +155,10 @@ static tw_status cut_at_kinks(tw_engine *e, path_cut *c, expr *phase, expr *ampl
     expr **kinks;
     size_t count;
     expr *from = c->joints[0].place, *to = c->joints[c->count].place;
-    if (kinks_between(e, phase, x, from, to, &kinks, &count) != TW_OK || joints_add(e, c, kinks, count) != TW_OK)
+    if (kinks_between(e, phase, x, from, to, &kinks, &count) != TW_OK || joints_add(e, c, kinks, count, false) != TW_OK)
         return TW_ERROR;
     if (kinks_between(e, amplitude, x, from, to, &kinks, &count) != TW_OK) return TW_ERROR;
-    return joints_add(e, c, kinks, count);
+    return joints_add(e, c, kinks, count, false);
 }
 
 static tw_status cut_piece(tw_engine *e, path_cut *all, expr *phase, expr *x, expr *from, expr *to)
@@ -166,7 +169,16 @@ static tw_status cut_piece(tw_engine *e, path_cut *all, expr *phase, expr *x, ex
     expr **zeros;
     size_t count;
     if (zeros_between(e, slope, x, from, to, &zeros, &count) != TW_OK) return TW_ERROR;
-    return joints_add(e, all, zeros, count);
+    return joints_add(e, all, zeros, count, true);
+}
+
+static bool ball_holds_zero(tw_engine *e, expr *a)
+{
+    acb_t z;
+    acb_init(z);
+    bool holds = ball_value(e, z, a, 256) == TW_OK && acb_is_finite(z) && acb_contains_zero(z);
+    acb_clear(z);
+    return holds;
 }
 
 static tw_status mark_stationary(tw_engine *e, path_cut *c, expr *x)
@@ -181,6 +193,8 @@ static tw_status mark_stationary(tw_engine *e, path_cut *c, expr *x)
             value = value_canonical(e, value);
             bool zero = value && (expr_is_zero(value) || (expr_is_closed_value(value) && value_is_zero(e, value) == ANSWER_YES));
             if (!value && e->error.kind == ERROR_VALUE) engine_forgive(e);
+            /* a zero without a closed form was proved to be one when it was found; a pole has no finite value */
+            if (value && !zero && j->turning && expr_is_closed_value(value)) zero = ball_holds_zero(e, value);
             if (side) right = zero;
             else left = zero;
         }
@@ -194,8 +208,8 @@ tw_status path_cut_make(tw_engine *e, path_cut *out, expr *phase, expr *amplitud
 {
     (void)conditions;
     out->joints = base_alloc(2 * sizeof *out->joints);
-    out->joints[0] = (joint_place){from, NULL, false};
-    out->joints[1] = (joint_place){to, NULL, false};
+    out->joints[0] = (joint_place){from, NULL, false, false};
+    out->joints[1] = (joint_place){to, NULL, false, false};
     out->count = 1;
     if (cut_at_kinks(e, out, phase, amplitude, x) != TW_OK) return TW_ERROR;
     size_t smooth = out->count;

@@ -9,6 +9,7 @@ typedef struct joint_place {
     expr *place;     /* inf, -inf at open ends */
     expr *level;     /* the phase there, as its limit from the pieces beside it; inf, -inf; NULL: not needed yet */
     bool stationary; /* the slope vanishes there from both sides */
+    bool turning;    /* found as a zero of the slope (or a singularity of it) */
 } joint_place;
 
 /* Between joints k and k + 1. */

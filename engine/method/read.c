@@ -579,8 +579,12 @@ static tw_status separate_and_find(frame *f)
     if (status == TW_OK) status = find_points(f);
     bool soft = e->error.kind == ERROR_UNSUITABLE || e->error.kind == ERROR_DIVERGENT;
     if (status != TW_OK && soft) {
+        const char *s = f->r->large->is.name, *x = f->r->original_variable->is.name;
         engine_forgive(e);
-        engine_fail(e, first.kind, "%s", first.words);
+        engine_fail(e, ERROR_UNSUITABLE,
+                    "the kernel does not hold the integral together, only the amplitude does, so the critical point moves "
+                    "with %s; no substitution %s = %s^a*t brings it to rest and separates %s from the variable",
+                    s, x, s, s);
     }
     free(first.words);
     return status;

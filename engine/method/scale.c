@@ -574,6 +574,16 @@ static bool power_grows(const separation *s, bool small)
     return s->phase && fmpq_sgn(s->power) == (small ? -1 : 1);
 }
 
+/* Does an exponential of the variable stand in a? Its place is in the kernel when the variable was stretched for it. */
+static bool holds_exponential(expr *a, expr *x)
+{
+    if (!expr_has(a, x)) return false;
+    if (expr_is_call(a, FUNCTION_EXP)) return true;
+    for (uint32_t k = 0; k < a->count; k++)
+        if (holds_exponential(a->args[k], x)) return true;
+    return false;
+}
+
 tw_status body_separate(tw_engine *e, separation *out, expr *body, expr *x, expr *from, expr *to, expr *large,
                         bool small, bool stretched)
 {
@@ -589,7 +599,7 @@ tw_status body_separate(tw_engine *e, separation *out, expr *body, expr *x, expr
         sorting s = {e, x, large, NULL, NULL, NULL, {{0}}, NULL, NULL};
         fmpq_init(s.power);
         bool separated = try_stretch(e, out, &s, body, x, from, to, &list[k]);
-        found = separated && power_grows(out, small);
+        found = separated && power_grows(out, small) && !(stretched && holds_exponential(out->amplitude, out->variable));
         weak = weak || (separated && !found);
         if (found && k == 0) find_flat_start(e, out, &flat);
         if (k == 0 && flat.factor) { /* only the stretch that brings both to one scale can help */

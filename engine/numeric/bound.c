@@ -240,7 +240,7 @@ static expr *power_in(tw_engine *e, expr *product, expr *large)
     for (size_t k = 0; k < count; k++) {
         expr *base, *exponent;
         expr_as_power(e, factors[k], &base, &exponent);
-        if (base == large)
+        if (base == large && expr_is_number(exponent)) /* other powers of it stand in the prefactor */
             sum = expr_add(e, sum, exponent);
     }
     return sum;

@@ -282,7 +282,7 @@ static void check_case(const json *c)
     expansion_terms(e, got, &a, &at);
     slong compared = compare(want, got, horizon, id);
     print_message("%s: %ld terms compared\n", id, (long)compared);
-    assert_true(compared >= 8);
+    assert_true(compared >= 8 || compared == count_nonzero(want)); /* l-root2 lists four */
     expansion_clear(&a);
     arb_clear(horizon);
     numbers_clear(want);
@@ -295,41 +295,26 @@ static void check_case(const json *c)
 static void test_cases(void **state)
 {
     (void)state;
-    static const char *const families[] = {"watson", "parts", "symbolic-parameter", "mellin-log"};
+    static const char *const families[] = {"watson", "parts", "symbolic-parameter", "mellin-log", "laplace-interior", "laplace-endpoint",
+                                           "high-order-saddle", "laplace-multi", "bessel-kernel", "two-scale"};
     json *j = load_cases(), *cases = get(j, "cases");
     size_t checked = 0;
     for (size_t k = 0; k < cases->count; k++) {
         json *c = cases->parts[k];
         bool ours = false;
-        for (size_t f = 0; f < 4; f++) ours = ours || strcmp(get(c, "family")->words, families[f]) == 0;
-        if (!ours || strcmp(get(c, "id")->words, "s-bessel-k") == 0) continue;
+        for (size_t f = 0; f < sizeof families / sizeof *families; f++) ours = ours || strcmp(get(c, "family")->words, families[f]) == 0;
+        if (!ours) continue;
         check_case(c);
         checked++;
     }
-    assert_true(checked >= 17);
+    assert_true(checked >= 30);
     free_json(j);
-}
-
-/* An end where the slope of the exponent vanishes is none of these methods' business, and that is said. */
-static void test_bessel_needs_laplace(void **state)
-{
-    (void)state;
-    tw_engine *e = text_engine("s", LARGE_POSITIVE);
-    expansion a;
-    expansion_init(&a);
-    expr *integral = text_parse(e, "integral from 0 to inf of exp(-s*cosh(x))*cosh(nu*x) dx");
-    assert_int_equal(expand(e, &a, integral, 4, NULL), TW_ERROR);
-    assert_int_equal(e->error.kind, ERROR_UNAVAILABLE);
-    assert_non_null(strstr(e->error.words, "laplace"));
-    expansion_clear(&a);
-    tw_engine_free(e);
 }
 
 int main(void)
 {
     const struct CMUnitTest tests[] = {
         cmocka_unit_test(test_cases),
-        cmocka_unit_test(test_bessel_needs_laplace),
     };
     return cmocka_run_group_tests_name("reference", tests, NULL, NULL);
 }
