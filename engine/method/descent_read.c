@@ -143,7 +143,7 @@ static tw_status separate(descent_problem *d, const binder *b)
     separation s;
     separation_init(&s);
     expr *inf = expr_constant_of(e, CONSTANT_INF);
-    tw_status status = body_separate(e, &s, b->body, b->x, expr_neg(e, inf), inf, d->large, d->small);
+    tw_status status = body_separate(e, &s, b->body, b->x, expr_neg(e, inf), inf, d->large, d->small, false);
     if (status == TW_OK) {
         d->z = s.variable;
         d->p = s.phase;
