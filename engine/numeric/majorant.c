@@ -261,7 +261,7 @@ static void majorant_steps(power_bound *out, majorant *m, const arb_t far_units)
     sheaf *s = m->s;
     slong n = s->panel_count, last = n - 1;
     arb_t x;
-    if (m->K > 0 || n == 0)
+    if (m->K > 0 || n == 0 || out->cut)
         return;
     arb_init(x);
     out->step_count = n;
@@ -325,6 +325,36 @@ static void majorant_finish(power_bound *out, majorant *m)
     arb_clear(far);
 }
 
+/* The tails' moduli join what is far: they fall at least like exp(-S t), t where the first begins. False: s->patches.reason says why
+ * the bound cannot be had. */
+static bool majorant_tail(majorant *m, power_bound *out, expr *S_expr)
+{
+    sheaf *s = m->s;
+    arb_t x;
+    mag_t size;
+    bool fine = true, ended = false;
+    arb_init(x);
+    mag_init(size);
+    for (slong k = 0; k < s->patches.count; k++)
+        ended = ended || s->patches.list[k].ended;
+    out->cut = problem_has_tail(s->p, x);
+    if (out->cut) { /* a bound that holds the ended patches' share apart takes the tails as they are */
+        fine = ended || arf_cmp_d(arb_midref(x), m->t_mean * (1 + 1e-9)) > 0;
+        if (!fine)
+            s->patches.reason = "the far end, where the amplitude is singular, is too near for this value";
+        fine = fine && problem_tail(x, s->p, S_expr, true);
+        if (!fine && !s->patches.reason)
+            s->patches.reason = "the integral next to the far end, where the amplitude is singular, could not be certified";
+        arb_mul_fmpz(x, x, fmpq_numref(s->p->m), SUM_BITS);
+        arb_div_fmpz(x, x, fmpq_denref(s->p->m), SUM_BITS);
+        arb_get_mag(size, x);
+        mag_add(s->far, s->far, size);
+    }
+    mag_clear(size);
+    arb_clear(x);
+    return fine;
+}
+
 tw_status panels_for_all(problem *p, slong first, expr *S_expr, const arb_t S, power_bound *out, bool *made,
                          panel_report *report)
 {
@@ -350,6 +380,9 @@ tw_status panels_for_all(problem *p, slong first, expr *S_expr, const arb_t S, p
         if (!arb_is_finite(m.total) || !arb_is_positive(m.total)) {
             *made = false;
             s.patches.reason = "the weight's mass could not be computed";
+        } else if (!majorant_tail(&m, out, S_expr)) {
+            *made = false;
+            status = p->e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
         } else if (!sheaf_refine(&s, sum, 0.008) || !refine_majorant(&m)) {
             status = TW_ERROR;
         } else if (arf_cmp_d(arb_midref(s.t_far), m.t_mean) < 0) {

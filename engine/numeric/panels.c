@@ -20,7 +20,22 @@ double panels_relative(const arb_t x)
     return radius == -HUGE_VAL ? 0 : exp2(radius - size);
 }
 
-/* In units of the normalised weight. */
+static tw_status add_tail(sheaf *s, problem *p, expr *S_expr, arb_t sum, bool *made)
+{
+    tw_status status = TW_OK;
+    arb_t tail;
+    arb_init(tail);
+    if (problem_has_tail(p, tail)) {
+        *made = problem_tail(tail, p, S_expr, false);
+        arb_add(sum, sum, tail, 2 * SUM_BITS);
+        if (!*made)
+            s->patches.reason = "the integral next to the far end, where the amplitude is singular, could not be certified";
+        status = p->e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
+    }
+    arb_clear(tail);
+    return status;
+}
+
 static tw_status sheaf_sum(sheaf *s, problem *p, bool fine, slong first, expr *S_expr, const arb_t S, double goal, arb_t sum,
                            bool *made)
 {
@@ -34,6 +49,7 @@ static tw_status sheaf_sum(sheaf *s, problem *p, bool fine, slong first, expr *S
         sheaf_denormalise(sum, s);
         mag_add(arb_radref(sum), arb_radref(sum), s->far);
         sheaf_over_m(sum, p);
+        status = add_tail(s, p, S_expr, sum, made);
     }
     return status;
 }

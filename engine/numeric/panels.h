@@ -15,6 +15,7 @@ typedef struct power_bound {
     slong K;
     arb_ptr table;
     arb_t end, end_t; /* end = 0: no such term */
+    bool cut;         /* end_t is no end of the path, but where a tail begins */
     /* the steps: |R| <= int of t^(alpha-1) H(t) exp(-S t), H = height[j] between t[j] and t[j+1]; K = 0 only */
     slong step_count;
     arb_ptr step_t, step_height; /* step_count + 1, step_count */

@@ -403,9 +403,52 @@ static bool real_value(problem *p, arb_t out, expr *f, slong bits)
     return fine;
 }
 
-static bool sheets_make(problem *p, char **reason)
+/* Is A analytic on a small disc around its end? */
+static bool regular_end(problem *p, const sheet *one)
+{
+    acb_t at, value;
+    mag_t r;
+    tape *t = tape_in(p, one->amplitude);
+    bool fine = t != NULL;
+    acb_init(at);
+    acb_init(value);
+    mag_init(r);
+    if (fine) {
+        arb_get_mag(r, one->end_y);
+        mag_mul_2exp_si(r, r, -16);
+        arb_set(acb_realref(at), one->end_y);
+        mag_add(arb_radref(acb_realref(at)), arb_radref(acb_realref(at)), r);
+        mag_set(arb_radref(acb_imagref(at)), r);
+        tape_eval(value, t, at, true, 128);
+        fine = acb_is_finite(value);
+    }
+    mag_clear(r);
+    acb_clear(value);
+    acb_clear(at);
+    tape_free(t);
+    return fine;
+}
+
+/* The end of the sheet and its height; false, with the reason, where they have no value. */
+static bool sheet_end(problem *p, sheet *one, expr *end, slong D, char **reason)
 {
     enum { END_BITS = 320 };
+    tw_engine *e = p->e;
+    one->end = expr_pow(e, end, expr_frac(e, 1, D));
+    if (!real_value(p, one->end_y, one->end, END_BITS) || !arb_is_positive(one->end_y)) {
+        *reason = base_copy("an end of the path could not be evaluated");
+        return false;
+    }
+    problem_t(one->end_t, p, one->end_y, END_BITS);
+    if (!arb_is_finite(one->end_t) || !arb_is_positive(one->end_t)) {
+        *reason = base_copy("the phase at an end of the path could not be evaluated");
+        return false;
+    }
+    return true;
+}
+
+static bool sheets_make(problem *p, char **reason)
+{
     tw_engine *e = p->e;
     struct problem_source *s = p->source;
     slong D = s->spread;
@@ -434,15 +477,16 @@ static bool sheets_make(problem *p, char **reason)
         if (!one->amplitude)
             return false;
         if (s->branches[b].end) {
-            one->end = expr_pow(e, s->branches[b].end, expr_frac(e, 1, D));
-            if (!real_value(p, one->end_y, one->end, END_BITS) || !arb_is_positive(one->end_y)) {
-                *reason = base_copy("an end of the path could not be evaluated");
+            if (!sheet_end(p, one, s->branches[b].end, D, reason))
                 return false;
-            }
-            problem_t(one->end_t, p, one->end_y, END_BITS);
-            if (!arb_is_finite(one->end_t) || !arb_is_positive(one->end_t)) {
-                *reason = base_copy("the phase at an end of the path could not be evaluated");
-                return false;
+            if (s->count == 1 && !regular_end(p, one)) {
+                one->tail_to = s->branches[b].end;
+                one->tail_from = expr_mul(e, one->tail_to, expr_frac(e, 7, 8));
+                p->tail_x = s->x;
+                p->tail_q = s->branches[b].q;
+                p->tail_p = s->branches[b].p;
+                if (!sheet_end(p, one, one->tail_from, D, reason))
+                    return false;
             }
         }
     }

@@ -26,6 +26,7 @@ typedef struct sheet {
     expr *regular_expr[PROBLEM_LOGS];
     tape *regular[PROBLEM_LOGS]; /* NULL: this power does not occur */
     arb_t end_y, end_t;          /* finite ends only */
+    expr *tail_from, *tail_to;   /* in x; NULL: none. What lies next to an end at which A is singular is no part of the sheet */
 } sheet;
 
 typedef struct problem {
@@ -48,6 +49,7 @@ typedef struct problem {
     bool terminates;        /* the series is F itself: no further coefficients */
     arb_ptr f[PROBLEM_LOGS]; /* exact zeros are zero balls */
     struct problem_source *source; /* what problem_coefficients needs */
+    expr *tail_x, *tail_q, *tail_p;  /* q and p in x, for the tails */
 } problem;
 
 /* Makes the problem of a local form with values for the parameters. *out NULL with TW_OK: the machine does not apply, *reason
@@ -75,6 +77,12 @@ void problem_power(arb_t t, const problem *p, const arb_t T, slong bits);
 
 /* (v + 1 + n)/m */
 void problem_alpha(arb_t alpha, const problem *p, slong n, slong bits);
+
+/* Is there a tail, and where in t does the first one begin? */
+bool problem_has_tail(const problem *p, arb_t t);
+/* The sum over the tails of int A exp(-S p), of |A| when `positive`, by certified quadrature; false when that cannot be had
+ * (end_tail.c). */
+bool problem_tail(arb_t out, problem *p, expr *S, bool positive);
 
 /* Upper bound of the integral of |A| exp(-S p) over y >= *y of all sheets that reach beyond it (far.c). *y is raised when a growth
  * record is valid only later. False: no bound is known. */

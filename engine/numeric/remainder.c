@@ -551,7 +551,7 @@ static tw_status part_bound(tw_engine *e, remainder_bound *out, expansion *a, si
         reason = base_copy("the bound with logarithms or an irrational power holds from scale 1 on only");
     }
     if (status == TW_OK && made) {
-        expr *end = end_height(e, &c->local, values), *large = a->large, *s0 = out->from;
+        expr *end = b.cut ? NULL : end_height(e, &c->local, values), *large = a->large, *s0 = out->from;
         if (!end && !arb_is_zero(b.end))
             end = decimal_expr(e, b.end_t, 12, false);
         status = add_power_bound(e, sum, &b, put_values(e, c->local.scale, values), put_values(e, c->local.factor, values), s0, end,

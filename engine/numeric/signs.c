@@ -12,6 +12,7 @@ typedef struct sides {
     tw_engine *e;
     expr *x, *amplitude, *end;     /* on (0, end) of x; end NULL: infinite */
     expr *unit, *front;            /* kept terms: front * sum c_k unit^k, as functions of x */
+    slong shift;                   /* of the order at 0: front is unit^shift there */
     expr *t, *t_end;               /* beyond a finite end: sum c_k t^k on (t_end, inf) */
     series s;
 } sides;
@@ -46,7 +47,7 @@ static bool rest_has_sign(sides *w, slong count, int sign)
     tw_engine *e = w->e;
     expr *front = expr_int(e, sign);
     expr *r = expr_mul(e, front, expr_sub(e, w->amplitude, expr_mul(e, w->front, kept(w, w->unit, count))));
-    if (!never_negative(w, r, count))
+    if (!never_negative(w, r, count + w->shift))
         return false;
     if (!w->end)
         return true;
@@ -85,6 +86,16 @@ static bool sides_pure(sides *w, const branch *b)
     const strand *one = w->s.strands;
     expr *y = expr_fresh(e, "y"), *positive_x[] = {b->x}, *positive_y[] = {y};
     expr *power = expr_int(e, one->den);
+    bool plain = one->den == 1 && expr_is_number(one->exponent) && fmpz_is_one(fmpq_denref(expr_number(one->exponent))) &&
+                 fmpq_sgn(expr_number(one->exponent)) >= 0 && fmpz_cmp_si(fmpq_numref(expr_number(one->exponent)), 20) < 0;
+    if (plain) { /* nothing to take out: log(1 + x) stays what it is */
+        w->x = w->t = w->unit = b->x;
+        w->amplitude = b->q;
+        w->front = expr_pow(e, b->x, one->exponent);
+        w->shift = fmpz_get_si(fmpq_numref(expr_number(one->exponent)));
+        w->t_end = w->end;
+        return w->front != NULL;
+    }
     expr *f = expr_normal(e, expr_mul(e, b->q, expr_pow(e, b->x, expr_neg(e, one->exponent))), positive_x, 1);
     f = f ? expr_normal(e, expr_substitute(e, f, b->x, expr_pow(e, y, power)), positive_y, 1) : NULL;
     w->x = w->t = w->unit = y;

@@ -94,6 +94,11 @@ static void panel_values(void **state)
         "integral from 0 to inf of exp(-s*(x + x^2))*(1 + x)^(1/3) dx",
         "integral from 2 to inf of exp(-s*x)*cos(x)/x^3 dx",
         "integral from 0 to inf of exp(-s*x^2)*cos(x)/(1 + x) dx",
+        "integral from 0 to inf of exp(-s*x)*exp(-sqrt(x)) dx",
+        /* a far end that no disc reaches */
+        "integral from 0 to 1 of exp(-s*x)*(1 - x)^(-1/2) dx",
+        "integral from 0 to 1 of exp(-s*x)*x*log(1 - x) dx",
+        "integral from 0 to 2 of exp(-s*(x + x^2))*(4 - x^2)^(-1/3) dx",
     };
     (void)state;
     for (size_t k = 0; k < sizeof cases / sizeof *cases; k++) {
@@ -246,6 +251,42 @@ static void steps_and_source(void **state)
     remainder_bound_clear(&r);
 }
 
+/* The second enclosing route: log(1 + 2*x) and 1/(1 + x + x^2) are not completely monotone; a short range breaks 1/(1 + x), and so
+ * do 1 - x + 10 x^2, whose coefficients alternate as well, and exp(x). */
+static void signs(void **state)
+{
+    static const struct {
+        const char *integral;
+        slong terms;
+        const char *bound; /* NULL: does not enclose */
+    } rows[] = {
+        {"integral from 0 to inf of exp(-s*x)*log(1 + 2*x) dx", 2, "16*s^-4"},
+        {"integral from 0 to inf of exp(-s*x)/(1 + x + x^2) dx", 2, "6*s^-4"},
+        {"integral from 0 to 1 of exp(-s*x)/(1 + x) dx", 2, "2*s^-3"},
+        {"integral from 0 to 1/10 of exp(-s*x)/(1 + x) dx", 2, NULL},
+        {"integral from 0 to inf of exp(-s*x)*(1 - x + 10*x^2)/(1 + x^5) dx", 1, NULL},
+        {"integral from 0 to inf of exp(-s*x)*exp(-sqrt(x)) dx", 3, "1/8*sqrt(pi)*s^(-5/2)"}, /* exp(-y) in y = sqrt(x) */
+        {"integral from 0 to inf of exp(-s*x)*exp(x)/(1 + x^2) dx", 2, NULL},
+    };
+    static const env nowhere = {0};
+    (void)state;
+    for (size_t k = 0; k < sizeof rows / sizeof *rows; k++) {
+        remainder_bound r;
+        expansion_clear(&a);
+        expansion_init(&a);
+        expand_words(rows[k].integral, rows[k].terms + 2);
+        remainder_bound_init(&r);
+        assert_int_equal(remainder_for_all(e, &r, &a, &nowhere, rows[k].terms, NULL), TW_OK);
+        if (!rows[k].bound != !r.manner)
+            fail_msg("%s: %s", rows[k].integral, r.manner ? r.manner : r.reason ? r.reason : "by panels");
+        if (rows[k].bound) {
+            assert_int_equal(r.label, LABEL_PROVED);
+            assert_ptr_equal(r.bound, read_expr(e, rows[k].bound));
+        }
+        remainder_bound_clear(&r);
+    }
+}
+
 int main(void)
 {
     const struct CMUnitTest tests[] = {
@@ -256,6 +297,7 @@ int main(void)
         cmocka_unit_test_setup_teardown(parameters, set_up, tear_down),
         cmocka_unit_test_setup_teardown(comparisons, set_up, tear_down),
         cmocka_unit_test_setup_teardown(formulas, set_up, tear_down),
+        cmocka_unit_test_setup_teardown(signs, set_up, tear_down),
         cmocka_unit_test_setup_teardown(steps_and_source, set_up, tear_down),
     };
     return cmocka_run_group_tests_name("test_evaluate", tests, NULL, NULL);
