@@ -3,6 +3,7 @@
 #include <stdlib.h>
 #include <string.h>
 
+#include "engine/method/combine.h"
 #include "engine/method/descent.h"
 #include "engine/method/method.h"
 #include "lang/request.h"
@@ -180,6 +181,47 @@ static tw_status summarise(session *s, text *out, expr *a)
     return status;
 }
 
+/* Terms with one integral each, and nothing of integrals in their other factors. */
+static bool is_sum_of_integrals(expr *a)
+{
+    expr *const *terms, *const *factors;
+    size_t count = expr_terms(&a, &terms);
+    for (size_t k = 0; k < count; k++) {
+        size_t n = expr_factors(&terms[k], &factors), integrals = 0;
+        for (size_t i = 0; i < n; i++) {
+            if (!has_integral(factors[i])) continue;
+            if (factors[i]->kind != EXPR_INTEGRAL && factors[i]->kind != EXPR_CONTOUR) return false;
+            integrals++;
+        }
+        if (integrals != 1) return false;
+    }
+    return true;
+}
+
+/* let L = log(A), let R = A/B, let D = derivative of A in s: an expansion again. One integral (a sum of integrals of one
+ * size) is expanded as it is, anything else is combined from the expansions of its integrals. */
+static tw_status let_combination(session *s, syntax_name name, const syntax *x, expr *a, result *r)
+{
+    value *v = value_new(VALUE_EXPANSION);
+    slong terms = s->met_terms;
+    bool plain = is_sum_of_integrals(a);
+    tw_status status = plain ? expand(s->e, &v->expansion, a, terms, NULL) : TW_ERROR;
+    bool soft = !plain || s->e->error.kind == ERROR_UNSUITABLE || s->e->error.kind == ERROR_UNAVAILABLE ||
+                s->e->error.kind == ERROR_DIVERGENT || s->e->error.kind == ERROR_UNDECIDED;
+    if (status != TW_OK && soft) {
+        engine_forgive(s->e);
+        expansion_clear(&v->expansion);
+        status = combine(s->e, &v->expansion, a, terms);
+    }
+    if (status == TW_OK) status = request_tell_expansion(s, r, name.text, name.text, v);
+    if (status == TW_OK) {
+        r->echo = false;
+        names_set(&s->names, name.text, value_hold(v));
+    }
+    value_release(v);
+    return status == TW_OK ? TW_OK : request_fail_at(s, x->at);
+}
+
 static tw_status let_expression(session *s, const statement *st, result *r)
 {
     syntax_name name = st->as.let.name;
@@ -194,6 +236,7 @@ static tw_status let_expression(session *s, const statement *st, result *r)
     }
     expr *a = session_lower(s, x);
     if (!a) return TW_ERROR;
+    if (s->met_expansion && has_integral(a)) return let_combination(s, name, x, a, r);
     bool integral = has_integral(a);
     text words, summary;
     text_init(&words);

@@ -170,7 +170,13 @@ static lower_meaning meaning_of(void *host, const char *name, expr **stands_for,
     }
     *stands_for = v->expression;
     if (v->kind == VALUE_EXPRESSION) return MEANING_VALUE;
-    s->met_expansion = s->met_expansion || v->kind == VALUE_EXPANSION;
+    if (v->kind == VALUE_EXPANSION && v->expansion.integral) { /* its integral stands for it; `let` expands the whole again */
+        slong terms = v->expansion.terms_asked;
+        if (!s->met_expansion || terms > s->met_terms) s->met_terms = terms;
+        s->met_expansion = true;
+        *stands_for = v->expansion.integral;
+        return MEANING_VALUE;
+    }
     *what = v->kind == VALUE_EXPANSION ? "an expansion" : v->what;
     return MEANING_OTHER;
 }
@@ -209,17 +215,12 @@ void session_lowering_start(session *s, lowering *l)
     s->met_expansion = false;
 }
 
-/* Ends it; a failure's place becomes the session's. Expansions within expressions belong to a later version. */
+/* Ends it; a failure's place becomes the session's. */
 tw_status session_lowering_end(session *s, lowering *l, bool good, span whole)
 {
     if (!good) s->at = l->failed ? l->place : whole;
     lowering_clear(l);
-    if (good) return TW_OK;
-    if (s->met_expansion && s->e->error.kind == ERROR_NAME) {
-        engine_forgive(s->e);
-        return request_fail(s, s->at, ERROR_UNAVAILABLE, "arithmetic with expansions is not available in this version");
-    }
-    return TW_ERROR;
+    return good ? TW_OK : TW_ERROR;
 }
 
 expr *session_lower(session *s, const syntax *x)

@@ -87,7 +87,8 @@ typedef struct session {
     bool quit;             /* `quit` has run */
     span at;               /* after a failure: where in the statement's source */
     session_elsewhere elsewhere; /* after a failure in a file that the statement read: where in that */
-    bool met_expansion;    /* an expression named an expansion: said when it cannot be built */
+    bool met_expansion; /* names of expansions stood in the expression; met_terms: the most terms that one of them has */
+    slong met_terms;
     manual *open;          /* the derivation that `derive` opened; NULL: none */
     char *open_name;       /* what it is of: a name, or the integral as typed */
     bool open_is_name;

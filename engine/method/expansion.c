@@ -3,6 +3,8 @@
  * next, unknown term could come first. It may not know how lanes are made. */
 #include "engine/method/expansion.h"
 
+#include "engine/method/combine.h"
+
 #include <stdlib.h>
 #include <string.h>
 
@@ -104,6 +106,7 @@ void expansion_clear(expansion *a)
     for (size_t k = 0; k < a->contribution_count; k++) contribution_clear(&a->contributions[k]);
     free(a->contributions);
     local_form_clear(&a->rest);
+    combination_free(a->combined);
     conditions_clear(&a->conditions);
     derivation_clear(&a->derivation);
     free(a->why);
@@ -388,6 +391,7 @@ static tw_status extend_by(extension *x)
 
 tw_status expansion_extend(tw_engine *e, expansion *a, slong terms)
 {
+    if (a->combined) return a->made_by->extend(e, a, terms);
     for (size_t k = 0; k < a->contribution_count; k++) {
         const contribution *c = &a->contributions[k];
         if (!lacks_terms(c, terms)) continue;

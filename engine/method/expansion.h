@@ -88,6 +88,7 @@ typedef struct expansion {
     expr **facts; /* the facts in force when it was made (EXPR_RELATION) */
     condition_label *fact_labels;
     size_t fact_count;
+    struct combination *combined; /* of an expression in several integrals (combine.h); else NULL */
     struct bound_cache *cache; /* engine/numeric's memory of proved bounds; freed through bound_cache_free */
 } expansion;
 

@@ -600,6 +600,12 @@ tw_status remainder_at_as(tw_engine *e, point_bound *out, expansion *a, const en
     bool all_enclosing = true;
     if (status != TW_OK)
         return status;
+    if (a->combined) {
+        status = combined_error(e, out, a, at, terms, bits);
+        if (status == TW_OK && out->label <= LABEL_PROVED && !conditions_all_sure(&out->conditions))
+            out->label = LABEL_CONDITIONAL;
+        return status;
+    }
     if (a->remainder) {
         status = split_off_at(e, out, a, at, terms, bits);
         if (status == TW_OK)

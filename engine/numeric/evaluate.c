@@ -387,6 +387,8 @@ tw_status evaluate_expansion(tw_engine *e, number *out, expansion *a, const env 
     tw_status status = point_complete(e, a, at);
     if (status != TW_OK)
         return status;
+    if (a->combined)
+        return combined_number(e, out, a, at, o);
     if (a->exact && o->terms < 0)
         return sum_exact(e, out, a, at, bits);
     most = o->terms >= 0 ? o->terms : a->terms_asked;

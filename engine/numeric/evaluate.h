@@ -28,6 +28,9 @@ typedef struct evaluate_options {
  * there, from which value of the large parameter on the digits can be had, and that `evaluate INTEGRAL` gives them. */
 tw_status evaluate_expansion(tw_engine *e, number *out, expansion *a, const env *at, const evaluate_options *o);
 
+/* The same for a combined expansion: the parts' balls, combined. */
+tw_status combined_number(tw_engine *e, number *out, expansion *a, const env *at, const evaluate_options *o);
+
 typedef struct comparison_row {
     slong terms;             /* kept */
     acb_t term;              /* the last kept term, the sum, certified value, true error = value - sum */

@@ -748,7 +748,11 @@ tw_status remainder_for_all(tw_engine *e, remainder_bound *out, expansion *a, co
     if (status == TW_OK && terms < 0)
         status = default_terms(e, out, a, &values, s0);
     missing = missing_parameter(a, &values);
-    if (status != TW_OK) {
+    if (status == TW_OK && a->combined) {
+        out->reason = base_copy("combined expansions are bounded at each value that is asked, from the balls of their parts; "
+                                "there is no formula for all values");
+        out->label = LABEL_UNKNOWN;
+    } else if (status != TW_OK) {
     } else if (a->exact && out->terms >= a->terms_asked) {
         out->label = LABEL_EXACT;
         out->bound = expr_int(e, 0);

@@ -23,6 +23,9 @@ tw_status power_bound_count(tw_engine *e, expansion *a, size_t index, const env 
 tw_status power_bound_of(tw_engine *e, power_bound *out, expansion *a, size_t index, size_t part, const env *at, slong terms,
                          bool *made, slong *extra, char **reason);
 
+/* combined.c: value minus partial sum of a combined expansion, from the parts' balls. */
+tw_status combined_error(tw_engine *e, point_bound *out, expansion *a, const env *at, slong terms, slong bits);
+
 /* rest.c: what the dominant contributions' local forms leave out, at a point (every symbol has a value there), by certified
  * quadrature; *made false: it could not be had. REST_REASON says so to people. */
 tw_status rest_at(tw_engine *e, arb_t out, expansion *a, const env *at, bool *made);

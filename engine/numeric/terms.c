@@ -1,12 +1,63 @@
 /* Terms of an expansion as real balls, in order of size. Powers of the large parameter are taken once a lane and multiplied on. */
 #include "engine/numeric/terms.h"
 
+#include <math.h>
 #include <stdlib.h>
 #include <string.h>
 
+static bool is_moved(expr *f, const env *at)
+{
+    for (size_t k = 0; k < at->count; k++)
+        if (expr_has(f, at->symbols[k]))
+            return true;
+    return false;
+}
+
+static expr *put_plain(tw_engine *e, expr *f, const env *at)
+{
+    return expr_substitute_all(e, f, at->symbols, at->values, at->count);
+}
+
+/* b^x as exp(x*acosh((b + 1/b)/2)) for rational b > 0: the same value, but no constructor writes it out in digits (s^(1 + s) at
+ * s = 10^6 has 20 million of them). NULL: small enough as it is. */
+static expr *huge_power(tw_engine *e, expr *base, expr *exponent)
+{
+    enum { BITS_MOST = 1 << 16 };
+    expr *two = expr_int(e, 2);
+    if (!base || !exponent || !expr_is_number(base) || !expr_is_number(exponent) || fmpq_sgn(expr_number(base)) <= 0)
+        return NULL;
+    double bits = (double)(fmpz_bits(fmpq_numref(expr_number(base))) + fmpz_bits(fmpq_denref(expr_number(base))));
+    if (fabs(fmpz_get_d(fmpq_numref(expr_number(exponent)))) * bits < BITS_MOST)
+        return NULL;
+    bool below = fmpz_cmp(fmpq_numref(expr_number(base)), fmpq_denref(expr_number(base))) < 0;
+    expr *cosh = expr_div(e, expr_add(e, base, expr_pow(e, base, expr_int(e, -1))), two);
+    expr *log = expr_call1(e, FUNCTION_ACOSH, cosh);
+    return expr_call1(e, FUNCTION_EXP, expr_mul(e, below ? expr_neg(e, exponent) : exponent, log));
+}
+
+/* The large powers first, then the rest by plain substitution. */
+static expr *tame_powers(tw_engine *e, expr *f, const env *at)
+{
+    if (!f || !is_moved(f, at))
+        return f;
+    if (f->kind == EXPR_POWER && is_moved(f->args[1], at)) {
+        expr *tamed = huge_power(e, put_plain(e, f->args[0], at), put_plain(e, f->args[1], at));
+        return tamed ? tamed : f;
+    }
+    if (f->kind != EXPR_PRODUCT && f->kind != EXPR_SUM)
+        return f;
+    expr *made = expr_int(e, f->kind == EXPR_SUM ? 0 : 1);
+    for (uint32_t k = 0; k < f->count; k++) {
+        expr *part = tame_powers(e, f->args[k], at);
+        made = f->kind == EXPR_SUM ? expr_add(e, made, part) : expr_mul(e, made, part);
+    }
+    return made;
+}
+
 expr *put_values(tw_engine *e, expr *f, const env *at)
 {
-    return at->count == 0 ? f : expr_substitute_all(e, f, at->symbols, at->values, at->count);
+    f = at->count == 0 ? f : tame_powers(e, f, at);
+    return !f || at->count == 0 ? f : put_plain(e, f, at);
 }
 
 tw_status real_ball(tw_engine *e, arb_t out, expr *f, slong bits)
