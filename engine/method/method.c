@@ -136,6 +136,30 @@ static expr *exponential_part(tw_engine *e, expr *prefactor)
     return found;
 }
 
+/* The rests of the parts as one: equal scales, and factors whose ratio is free of the large parameter. */
+static tw_status append_rest(tw_engine *e, expansion *out, expansion *part)
+{
+    if (part->rest.count == 0) return TW_OK;
+    if (out->rest.count == 0) {
+        local_form_clear(&out->rest);
+        out->rest = part->rest;
+        out->rest_floor = part->rest_floor;
+        local_form_init(&part->rest);
+        return TW_OK;
+    }
+    expr *ratio = normal_under_facts(e, expr_div(e, part->rest.factor, out->rest.factor), &out->large, 1);
+    if (!ratio) return TW_ERROR;
+    if (part->rest.scale != out->rest.scale || expr_has(ratio, out->large))
+        return engine_fail(e, ERROR_UNSUITABLE, "the integrals of this sum have kernels of different kinds: expand each by itself");
+    for (size_t k = 0; k < part->rest.count; k++) {
+        const branch *b = &part->rest.branches[k];
+        local_form_add(&out->rest, b->x, b->end, b->p, expr_mul(e, ratio, b->q));
+    }
+    expr *both[] = {out->rest_floor, part->rest_floor};
+    out->rest_floor = expr_call(e, FUNCTION_MIN, both, 2);
+    return out->rest_floor ? TW_OK : TW_ERROR;
+}
+
 static tw_status append(tw_engine *e, expansion *out, expansion *part)
 {
     if (out->contribution_count > 0 && part->contribution_count > 0) {
@@ -145,6 +169,7 @@ static tw_status append(tw_engine *e, expansion *out, expansion *part)
             return engine_fail(e, ERROR_UNSUITABLE,
                                "the integrals of this sum are of different exponential size: expand each by itself");
     }
+    if (append_rest(e, out, part) != TW_OK) return TW_ERROR;
     for (size_t k = 0; k < part->contribution_count; k++) *expansion_add(out) = part->contributions[k];
     part->contribution_count = 0;
     derivation_move(&out->derivation, &part->derivation);
