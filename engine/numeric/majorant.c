@@ -8,6 +8,8 @@
 
 #include "engine/numeric/shared.h"
 
+enum { FIT_MOST = 4 };
+
 typedef struct majorant {
     sheaf *s;
     slong K;
@@ -19,6 +21,8 @@ typedef struct majorant {
     mag_t crumb_h, crumb_mass;
     arb_t mean;       /* sum of H * mass, in units of Gamma(alpha) S^-alpha */
     arb_t end;        /* the same of what goes with exp(-(S - S0) end_t) */
+    slong fit;        /* 0, or: h is measured from b[0] + b[1] t + ... + b[fit-1] t^(fit-1), whose integral is kept with its sign */
+    arb_t b[FIT_MOST];
 } majorant;
 
 /* c of omega from the leading coefficients: h = f1 ell + f0 ~ (-log t + c). */
@@ -44,14 +48,51 @@ static void majorant_shift(majorant *m)
     arb_clear(top);
 }
 
-/* Upper bound of |h|/omega on a panel and of omega * mass. */
-static void majorant_panel(mag_t h, arb_t mass, const majorant *m, const panel *q)
+/* h less the fitted polynomial over a panel. */
+static void panel_beyond_fit(arb_t out, const majorant *m, const panel *q)
+{
+    arb_t t, c;
+    arb_init(t);
+    arb_init(c);
+    arb_union(t, m->s->joints[q->left].t, m->s->joints[q->right].t, SUM_BITS);
+    _arb_poly_evaluate(t, m->b[0], m->fit, t, SUM_BITS);
+    arb_sub(out, q->h, t, SUM_BITS);
+    if (q->lines) { /* straight lines cancel before the range is taken */
+        affine sum, power;
+        affine_init(&sum);
+        affine_init(&power);
+        affine_set(&sum, &q->line);
+        arb_sub(sum.v, sum.v, m->b[0], SUM_BITS);
+        affine_set(&power, &q->t);
+        for (slong j = 1; j < m->fit; j++) {
+            arb_neg(c, m->b[j]);
+            affine_addmul(&sum, &power, c, SUM_BITS);
+            if (j + 1 < m->fit)
+                affine_mul(&power, &power, &q->t, SUM_BITS);
+        }
+        affine_range(t, &sum, SUM_BITS);
+        if (mag_cmp(arb_radref(t), arb_radref(out)) < 0)
+            arb_swap(out, t);
+        affine_clear(&power);
+        affine_clear(&sum);
+    }
+    arb_clear(c);
+    arb_clear(t);
+}
+
+/* Upper bound of |h|/omega on a panel and of omega * mass; what part of it is the panel's own width. */
+static double majorant_panel(mag_t h, arb_t mass, const majorant *m, const panel *q)
 {
     arb_t a, b, x;
+    double wide;
     arb_init(a);
     arb_init(b);
     arb_init(x);
-    arb_get_mag(h, q->h);
+    arb_set(a, q->h);
+    if (m->fit)
+        panel_beyond_fit(a, m, q);
+    arb_get_mag(h, a);
+    wide = fmin(1, 2 * mag_get_d(arb_radref(a)) / (mag_get_d(h) + 1e-300));
     arb_set(mass, q->mass);
     if (m->K > 0) {
         omega_value(a, m->s->joints[q->left].t, m->c, m->K, SUM_BITS);
@@ -82,6 +123,7 @@ static void majorant_panel(mag_t h, arb_t mass, const majorant *m, const panel *
     arb_clear(x);
     arb_clear(b);
     arb_clear(a);
+    return wide;
 }
 
 /* The crumb next to 0: |h| <= H omega^K with omega >= |log t| >= |log t0|, and its mass. */
@@ -192,8 +234,8 @@ static void majorant_sum(majorant *m, double *losses, arb_ptr heights)
     for (slong k = 0; k < s->panel_count; k++) {
         panel *q = s->panels + k;
         bool late = beyond_mean(m, q), after = k >= m->ended;
-        majorant_panel(h, mass, m, q);
-        excess[k] = mag_get_d(h) * fmin(1, 2 * mag_get_d(arb_radref(q->h)) / (arb_size(q->h) + 1e-300));
+        excess[k] = majorant_panel(h, mass, m, q);
+        excess[k] *= mag_get_d(h);
         if (late || after) {
             /* The running maximum stays as it is, which keeps it non-decreasing; what exceeds it here falls by itself: with
              * exp(-(S - S0) end_t) beyond the end, with the panel's share of the weight beyond the mean. */
@@ -288,6 +330,165 @@ static void majorant_steps(power_bound *out, majorant *m, const arb_t far_units)
     arb_clear(x);
 }
 
+/* ---- a fitted polynomial ---- */
+
+/* Solves the n x n system in place by elimination; false when it is singular. */
+static bool solve(double A[FIT_MOST][FIT_MOST + 1], int n)
+{
+    for (int k = 0; k < n; k++) {
+        int best = k;
+        for (int r = k + 1; r < n; r++)
+            if (fabs(A[r][k]) > fabs(A[best][k]))
+                best = r;
+        if (!(fabs(A[best][k]) > 1e-280))
+            return false;
+        for (int c = 0; c <= n; c++) {
+            double swap = A[k][c];
+            A[k][c] = A[best][c];
+            A[best][c] = swap;
+        }
+        for (int r = 0; r < n; r++)
+            for (int c = n; r != k && c >= k; c--)
+                A[r][c] -= A[r][k] / A[k][k] * A[k][c];
+    }
+    for (int k = 0; k < n; k++)
+        A[k][n] /= A[k][k];
+    return true;
+}
+
+/* b[0] = h(0), the first omitted coefficient; the others by least squares with the weight. Any values will do for the proof. */
+static bool fit_make(majorant *m, slong fit)
+{
+    sheaf *s = m->s;
+    double A[FIT_MOST][FIT_MOST + 1] = {0}, b0;
+    int n = (int)fit - 1;
+    m->fit = fit;
+    arb_set(m->b[0], s->p->f[0] + s->patches.first);
+    b0 = arf_get_d(arb_midref(m->b[0]), ARF_RND_NEAR);
+    for (slong k = 0; k < s->panel_count; k++) {
+        const panel *q = s->panels + k;
+        double t, h, mass, basis[FIT_MOST] = {1};
+        if (!q->lines || s->patches.list[q->patch].ended)
+            continue;
+        t = arf_get_d(arb_midref(q->t.v), ARF_RND_NEAR) / m->t_mean;
+        h = arf_get_d(arb_midref(q->line.v), ARF_RND_NEAR) - b0;
+        mass = arf_get_d(arb_midref(q->mass), ARF_RND_NEAR);
+        for (int j = 1; j <= n; j++)
+            basis[j] = basis[j - 1] * t;
+        for (int r = 0; r < n; r++) {
+            for (int c = 0; c < n; c++)
+                A[r][c] += mass * basis[r + 1] * basis[c + 1];
+            A[r][n] += mass * basis[r + 1] * h;
+        }
+    }
+    if (n > 0 && !solve(A, n))
+        return false;
+    for (int j = 1; j <= n; j++) {
+        if (!isfinite(A[j - 1][n] / pow(m->t_mean, j)))
+            return false;
+        arb_set_d(m->b[j], A[j - 1][n] / pow(m->t_mean, j));
+    }
+    return true;
+}
+
+/* The polynomial's integral with the normalised weight at S0, and in `far` what of its modulus lies beyond t_far; false when that does
+ * not fall from S0 on. */
+static bool fit_integral(const majorant *m, arb_t value, arb_t far)
+{
+    const sheaf *s = m->s;
+    arb_t x, alpha, part, moment;
+    bool fine = true;
+    arb_init(x);
+    arb_init(alpha);
+    arb_init(part);
+    arb_init(moment);
+    arb_zero(value);
+    arb_zero(far);
+    arb_one(moment); /* (alpha)_j S^-j */
+    for (slong j = 0; j < m->fit && fine; j++) {
+        arb_addmul(value, m->b[j], moment, SUM_BITS);
+        arb_add_si(alpha, s->w.alpha, j, s->w.bits);
+        arb_mul(x, s->w.S, s->t_far, s->w.bits);
+        fine = arb_gt(x, alpha);
+        arb_hypgeom_gamma_upper(part, alpha, x, 1, s->w.bits);
+        arb_mul(part, part, moment, SUM_BITS);
+        arb_mul(part, part, m->b[j], SUM_BITS);
+        arb_abs(part, part);
+        arb_add(far, far, part, SUM_BITS);
+        arb_mul(moment, moment, alpha, SUM_BITS);
+        arb_div(moment, moment, s->w.S, SUM_BITS);
+    }
+    arb_clear(moment);
+    arb_clear(part);
+    arb_clear(alpha);
+    arb_clear(x);
+    return fine && arb_is_finite(far);
+}
+
+/* The whole bound at S0 in units of the normalised weight, what is far left out. */
+static double fit_size(majorant *m)
+{
+    double size = HUGE_VAL;
+    arb_t value, far;
+    arb_init(value);
+    arb_init(far);
+    majorant_sum(m, NULL, NULL);
+    if (!m->fit)
+        size = arb_size(m->mean) + arb_size(m->end);
+    else if (fit_integral(m, value, far))
+        size = arb_size(value) + arb_size(far) + arb_size(m->mean) + arb_size(m->end);
+    arb_clear(far);
+    arb_clear(value);
+    return isfinite(size) ? size : HUGE_VAL;
+}
+
+/* Where the rest at S0 is small beside the bound, because h changes sign, one power cannot be near it: then the polynomial that
+ * serves best takes the bulk of h, with its sign. True unless the budget is spent. */
+static bool fit_choose(majorant *m, const arb_t sum)
+{
+    double simple = fit_size(m), rest = fabs(arf_get_d(arb_midref(sum), ARF_RND_NEAR)), best = 0.6 * simple;
+    slong chosen = 0;
+    if (m->K > 0 || simple <= 2.3 * rest)
+        return true;
+    for (slong fit = 1; fit <= FIT_MOST; fit++) {
+        double size = fit_make(m, fit) ? fit_size(m) : HUGE_VAL;
+        if (size < best) {
+            best = size * 0.97; /* a further power has to pay */
+            chosen = fit;
+        }
+    }
+    m->fit = 0;
+    if (chosen)
+        fit_make(m, chosen);
+    return refine_majorant(m);
+}
+
+/* The polynomial's part of the result, coefficients of S^(-alpha-j). */
+static void fit_finish(power_bound *out, majorant *m, arb_t far)
+{
+    arb_t value, more, alpha;
+    if (!m->fit)
+        return;
+    arb_init(value);
+    arb_init(more);
+    arb_init(alpha);
+    fit_integral(m, value, more);
+    arb_add(far, far, more, SUM_BITS);
+    out->signed_count = m->fit;
+    out->signed_part = _arb_vec_init(m->fit);
+    for (slong j = 0; j < m->fit; j++) {
+        arb_add_si(alpha, m->s->w.alpha, j, m->s->w.bits);
+        arb_gamma(out->signed_part + j, alpha, m->s->w.bits);
+        arb_mul(out->signed_part + j, out->signed_part + j, m->b[j], 2 * SUM_BITS);
+        sheaf_over_m(out->signed_part + j, m->s->p);
+        arb_set_d(alpha, TW_BOUND_FACTOR);
+        arb_mul(out->signed_part + j, out->signed_part + j, alpha, 2 * SUM_BITS);
+    }
+    arb_clear(alpha);
+    arb_clear(more);
+    arb_clear(value);
+}
+
 static void majorant_finish(power_bound *out, majorant *m)
 {
     sheaf *s = m->s;
@@ -303,6 +504,7 @@ static void majorant_finish(power_bound *out, majorant *m)
     arf_set_mag(arb_midref(far), s->far);
     arb_div(far, far, total, SUM_BITS); /* in units of Gamma(alpha) S^-alpha */
     majorant_steps(out, m, far);
+    fit_finish(out, m, far);
     if (m->ended < s->panel_count)
         arb_add(m->end, m->end, far, SUM_BITS);
     else
@@ -371,6 +573,8 @@ tw_status panels_for_all(problem *p, slong first, expr *S_expr, const arb_t S, p
         arb_init(m.total);
         arb_init(m.mean);
         arb_init(m.end);
+        for (int j = 0; j < FIT_MOST; j++)
+            arb_init(m.b[j]);
         mag_init(m.crumb_h);
         mag_init(m.crumb_mass);
         m.table = _arb_vec_init((m.K + 1) * (m.K + 1));
@@ -383,7 +587,7 @@ tw_status panels_for_all(problem *p, slong first, expr *S_expr, const arb_t S, p
         } else if (!majorant_tail(&m, out, S_expr)) {
             *made = false;
             status = p->e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
-        } else if (!sheaf_refine(&s, sum, 0.008) || !refine_majorant(&m)) {
+        } else if (!sheaf_refine(&s, sum, 0.008) || !refine_majorant(&m) || !fit_choose(&m, sum)) {
             status = TW_ERROR;
         } else if (arf_cmp_d(arb_midref(s.t_far), m.t_mean) < 0) {
             *made = false;
@@ -397,6 +601,8 @@ tw_status panels_for_all(problem *p, slong first, expr *S_expr, const arb_t S, p
         _arb_vec_clear(m.table, (m.K + 1) * (m.K + 1));
         mag_clear(m.crumb_mass);
         mag_clear(m.crumb_h);
+        for (int j = 0; j < FIT_MOST; j++)
+            arb_clear(m.b[j]);
         arb_clear(m.end);
         arb_clear(m.mean);
         arb_clear(m.total);

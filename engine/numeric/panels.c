@@ -105,6 +105,8 @@ void power_bound_clear(power_bound *b)
     arb_clear(b->end_t);
     if (b->table)
         _arb_vec_clear(b->table, (b->K + 1) * (b->K + 1));
+    if (b->signed_part)
+        _arb_vec_clear(b->signed_part, b->signed_count);
     if (b->step_t) {
         _arb_vec_clear(b->step_t, b->step_count + 1);
         _arb_vec_clear(b->step_height, b->step_count);
@@ -116,6 +118,19 @@ void power_bound_value(arb_t out, const power_bound *b, const arb_t S, slong bit
     arb_t x;
     arb_init(x);
     omega_total(out, b->table, b->alpha, S, b->K, bits);
+    if (b->signed_count) {
+        arb_t power, sum;
+        arb_init(power);
+        arb_init(sum);
+        arb_inv(x, S, bits);
+        _arb_poly_evaluate(sum, b->signed_part, b->signed_count, x, bits);
+        arb_pow(power, x, b->alpha, bits);
+        arb_mul(sum, sum, power, bits);
+        arb_abs(sum, sum);
+        arb_add(out, out, sum, bits);
+        arb_clear(sum);
+        arb_clear(power);
+    }
     if (!arb_is_zero(b->end)) {
         arb_sub(x, b->S0, S, bits);
         arb_mul(x, x, b->end_t, bits);

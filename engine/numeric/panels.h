@@ -7,13 +7,16 @@
 
 /* A bound valid for all S >= S0, without the contribution's factor:
  *
- *   |R| <= sum over i, j of table[i*(K+1)+j] * S^(-alpha-i) * (log S)^j   +   end * exp(-(S - S0) * end_t)
+ *   |R| <= |sum over j of signed_part[j] * S^(-alpha-j)|
+ *          + sum over i, j of table[i*(K+1)+j] * S^(-alpha-i) * (log S)^j   +   end * exp(-(S - S0) * end_t)
  *
  * K = 0: table[0] * S^-alpha. With K > 0 it holds for S >= max(S0, 1). */
 typedef struct power_bound {
     arb_t alpha, S0;
     slong K;
     arb_ptr table;
+    slong signed_count; /* 0: no such part */
+    arb_ptr signed_part;
     arb_t end, end_t; /* end = 0: no such term */
     bool cut;         /* end_t is no end of the path, but where a tail begins */
     /* the steps: |R| <= int of t^(alpha-1) H(t) exp(-S t), H = height[j] between t[j] and t[j+1]; K = 0 only */

@@ -276,7 +276,16 @@ bool patch_affine(affine *h, affine *t, affine *ell, const problem *p, const pat
     mag_set(t->half, h->half);
     mag_set(ell->half, h->half);
     mag_set(part.half, h->half);
-    fine = s->near || p->pure ? power_affine(t, p, middle, reach, width) : phase_affine(t, p, middle, reach, width);
+    if (s->near || p->pure) {
+        fine = power_affine(t, p, middle, reach, width);
+    } else if (problem_is_beyond(p, arb_midref(middle))) { /* T = ratio*y there */
+        arb_mul(middle, middle, p->ratio, LINE_BITS);
+        arb_mul(reach, reach, p->ratio, LINE_BITS);
+        arb_mul(width, width, p->ratio, LINE_BITS);
+        fine = power_affine(t, p, middle, reach, width);
+    } else {
+        fine = phase_affine(t, p, middle, reach, width);
+    }
     if (fine && p->lanes > 1)
         fine = log_affine(ell, p, middle, reach, width);
     affine_zero(h, part.half);

@@ -393,10 +393,52 @@ static bool exponent_exact(tw_engine *e, const power_bound *b)
     return alpha_expr(e, b, &exact) && exact;
 }
 
+/* The part that keeps its sign, with coefficients of five digits; *lost: what the rounding costs at most, as a coefficient of
+ * S^-alpha for S >= S0. */
+static tw_status add_signed_part(tw_engine *e, expr **sum, arb_t lost, const power_bound *b, expr *alpha, expr *scale,
+                                 const arb_t front, expr *factor_rest, expr *large)
+{
+    arb_t power, c, rounded;
+    expr *inner = expr_int(e, 0);
+    tw_status status = TW_OK;
+    arb_init(power);
+    arb_init(c);
+    arb_init(rounded);
+    for (slong j = 0; j < b->signed_count && status == TW_OK; j++) {
+        expr *rest, *decimal;
+        status = scale_power(e, power, &rest, scale, expr_neg(e, expr_add(e, alpha, expr_int(e, j))), large);
+        if (status != TW_OK)
+            break;
+        arb_mul(power, power, front, 128);
+        arb_mul(c, b->signed_part + j, power, 128);
+        decimal = decimal_expr(e, c, 5, true);
+        inner = expr_add(e, inner, expr_mul(e, decimal, rest));
+        if (!inner) {
+            status = TW_ERROR;
+            break;
+        }
+        arb_set_fmpq(rounded, expr_number(decimal), 128);
+        arb_sub(c, c, rounded, 128);
+        arb_div(c, c, power, 128);
+        arb_abs(c, c);
+        arb_pow_ui(rounded, b->S0, (ulong)j, 128);
+        arb_div(c, c, rounded, 128);
+        arb_add(lost, lost, c, 128);
+    }
+    if (status == TW_OK) {
+        *sum = expr_add(e, *sum, expr_mul(e, modulus(e, inner), factor_rest));
+        status = *sum ? TW_OK : TW_ERROR;
+    }
+    arb_clear(rounded);
+    arb_clear(c);
+    arb_clear(power);
+    return status;
+}
+
 static tw_status add_power_bound(tw_engine *e, expr **sum, const power_bound *b, expr *scale, expr *factor, expr *s0, expr *end_t,
                                  expr *large)
 {
-    arb_t front, power, c;
+    arb_t front, power, c, lost;
     bool exact;
     expr *factor_rest, *alpha = alpha_expr(e, b, &exact), *scale0 = expr_substitute(e, scale, large, s0);
     tw_status status = TW_OK;
@@ -404,7 +446,11 @@ static tw_status add_power_bound(tw_engine *e, expr **sum, const power_bound *b,
     arb_init(front);
     arb_init(power);
     arb_init(c);
+    arb_init(lost);
     status = alpha ? factor_modulus(e, front, &factor_rest, factor, large) : TW_ERROR;
+    arb_zero(lost);
+    if (status == TW_OK && b->signed_count)
+        status = add_signed_part(e, sum, lost, b, alpha, scale, front, factor_rest, large);
     for (slong i = 0; i <= K && status == TW_OK; i++) {
         expr *rest, *inner = expr_int(e, 0);
         status = scale_power(e, power, &rest, scale, expr_neg(e, expr_add(e, alpha, expr_int(e, i))), large);
@@ -414,7 +460,10 @@ static tw_status add_power_bound(tw_engine *e, expr **sum, const power_bound *b,
             expr *log_part = j ? expr_pow(e, expr_call1(e, FUNCTION_LOG, scale), expr_int(e, j)) : expr_int(e, 1);
             if (arb_is_zero(b->table + i * (K + 1) + j))
                 continue;
-            arb_mul(c, b->table + i * (K + 1) + j, power, 128);
+            arb_set(c, b->table + i * (K + 1) + j);
+            if (i == 0 && j == 0)
+                arb_add(c, c, lost, 128);
+            arb_mul(c, c, power, 128);
             arb_mul(c, c, front, 128);
             inner = expr_add(e, inner, expr_mul(e, decimal_expr(e, c, 4, true), log_part));
         }
@@ -429,6 +478,7 @@ static tw_status add_power_bound(tw_engine *e, expr **sum, const power_bound *b,
         if (!*sum)
             status = TW_ERROR;
     }
+    arb_clear(lost);
     arb_clear(c);
     arb_clear(power);
     arb_clear(front);

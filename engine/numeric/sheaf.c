@@ -497,12 +497,17 @@ static void signed_sum(arb_t sum, sheaf *s)
 
 bool sheaf_refine(sheaf *s, arb_t sum, double goal)
 {
+    double before = HUGE_VAL;
+    int stale = 0;
     for (int pass = 0; pass < PASSES_MOST; pass++) {
         double *losses, middle, radius;
         signed_sum(sum, s);
         middle = fabs(arf_get_d(arb_midref(sum), ARF_RND_NEAR));
         radius = mag_get_d(arb_radref(sum));
-        if (radius < goal * middle || s->panel_count > PANELS_MOST)
+        /* where the patches' own errors are what is left, splitting helps no more */
+        stale = radius > 0.85 * before ? stale + 1 : 0;
+        before = radius;
+        if (radius < goal * middle || stale == 2 || s->panel_count > PANELS_MOST)
             return true;
         if (!budget_ok(s->p->e))
             return false;

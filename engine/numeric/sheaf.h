@@ -5,7 +5,7 @@
 
 #include "engine/numeric/panels.h"
 
-enum { SUM_BITS = 64, PANELS_MOST = 6000, PASSES_MOST = 14 };
+enum { SUM_BITS = 64, PANELS_MOST = 4000, PASSES_MOST = 14 };
 
 typedef struct panel {
     slong patch, left, right; /* joints */
