@@ -504,6 +504,22 @@ expr *definite_integral(work *w, expr *f, expr *x, expr *from, expr *to)
     return made || forgive(e) ? made : NULL;
 }
 
+expr *inner_integral(work *w, expr *f, expr *x, expr *from, expr *to, expr *other, expr *low, expr *high)
+{
+    tw_engine *e = w->e;
+    condition_list kept = w->needs;
+    struct facts *facts = facts_copy(e);
+    conditions_init(&w->needs);
+    if (!expr_is_minus_inf(low)) facts_add(e, expr_relation_of(e, RELATION_LESS, low, other), CONDITION_GIVEN);
+    if (forgive(e) && !expr_is_inf(high)) facts_add(e, expr_relation_of(e, RELATION_LESS, other, high), CONDITION_GIVEN);
+    expr *made = forgive(e) ? definite_integral(w, f, x, from, to) : NULL;
+    if (made && !conditions_all_sure(&w->needs)) made = NULL;
+    facts_restore(e, facts);
+    conditions_clear(&w->needs);
+    w->needs = kept;
+    return forgive(e) ? made : NULL;
+}
+
 /* ---- inverses ---- */
 
 /* Solves y = phi(t) by peeling off what stands around the only place where t is. */

@@ -64,6 +64,21 @@ static expr *fold_pair(tw_engine *e, function_id outer, expr *inner)
     return NULL;
 }
 
+/* 1 + sinh(u)^2 = cosh(u)^2 with cosh(u) > 0 for a real u: cosh(u); else NULL. */
+static expr *square_of_sum(tw_engine *e, expr *f)
+{
+    if (f->kind != EXPR_SUM || f->count != 2 || !expr_is_one(f->args[0])) return NULL;
+    expr *base, *r;
+    expr_as_power(e, f->args[1], &base, &r);
+    if (!expr_is_int(r, 2) || !expr_is_call(base, FUNCTION_SINH)) return NULL;
+    expr **symbols, *u = base->args[0];
+    size_t count = expr_symbols(u, &symbols);
+    for (size_t k = 0; k < count; k++) /* fresh symbols are variables over a real range */
+        if (symbols[k]->fresh) u = expr_substitute(e, u, symbols[k], expr_symbol(e, "x_real"));
+    free(symbols);
+    return u && value_is_real(e, u) ? expr_call1(e, FUNCTION_COSH, base->args[0]) : NULL;
+}
+
 static expr *fold_inverses(tw_engine *e, expr *f)
 {
     if (!f || f->count == 0 || f->kind == EXPR_INTEGRAL || f->kind == EXPR_CONTOUR || f->kind == EXPR_SUMMATION ||
@@ -75,7 +90,10 @@ static expr *fold_inverses(tw_engine *e, expr *f)
         parts[k] = fold_inverses(e, f->args[k]);
         same = same && parts[k] == f->args[k];
     }
-    if (f->kind == EXPR_CALL && f->count == 1 && parts[0] && parts[0]->kind == EXPR_CALL && parts[0]->count == 1 &&
+    expr *root;
+    if (f->kind == EXPR_POWER && parts[0] && (root = square_of_sum(e, parts[0])) != NULL) {
+        made = expr_pow(e, root, expr_mul(e, expr_int(e, 2), parts[1]));
+    } else if (f->kind == EXPR_CALL && f->count == 1 && parts[0] && parts[0]->kind == EXPR_CALL && parts[0]->count == 1 &&
         (made = fold_pair(e, f->is.function, parts[0])) != NULL) {
     } else if (same) made = f;
     else if (f->kind == EXPR_SUM) made = expr_sum(e, parts, f->count);

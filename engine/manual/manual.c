@@ -300,6 +300,7 @@ void manual_release(manual *m)
     free(m->frames);
     free(m->moves);
     derivation_clear(&m->record);
+    manual_values_free(m->values);
     free(m);
 }
 

@@ -82,6 +82,9 @@ typedef struct manual_frame {
     size_t tried;                 /* moves so far that were only tried at samples */
 } manual_frame;
 
+/* Values of forms at the samples, so that a form is not integrated again for the move after it (verify.c). */
+struct manual_values;
+
 typedef struct manual {
     tw_engine *e;
     expr *typed;
@@ -92,6 +95,7 @@ typedef struct manual {
     manual_move *moves;   /* count - 1 of them */
     derivation record;
     unsigned holders;
+    struct manual_values *values;
 } manual;
 
 /* A derivation that begins with f: an integral, or a sum of terms each with at most one integral as a factor. NULL with

@@ -216,20 +216,8 @@ static bool converges_in_turn(work *w, expr *f, const piece *outer, expr *y, exp
             forgive(e);
             continue;
         }
-        condition_list kept = w->needs;
-        conditions_init(&w->needs);
-        struct facts *facts = facts_copy(e);
-        expr *other = xs[1 - k], *low = froms[1 - k];
-        if (expr_is_number(low)) facts_add(e, expr_relation_of(e, RELATION_LESS, low, other), CONDITION_GIVEN);
-        if (expr_is_number(tos[1 - k]))
-            facts_add(e, expr_relation_of(e, RELATION_LESS, other, tos[1 - k]), CONDITION_GIVEN);
-        expr *inner = forgive(e) ? definite_integral(w, size, xs[k], froms[k], tos[k]) : NULL;
-        bool sure = conditions_all_sure(&w->needs);
-        facts_restore(e, facts);
-        conditions_clear(&w->needs);
-        w->needs = kept;
-        if (forgive(e) && inner && sure &&
-            converges_absolutely(e, inner, xs[1 - k], froms[1 - k], tos[1 - k]) == ANSWER_YES)
+        expr *inner = inner_integral(w, size, xs[k], froms[k], tos[k], xs[1 - k], froms[1 - k], tos[1 - k]);
+        if (inner && converges_absolutely(e, inner, xs[1 - k], froms[1 - k], tos[1 - k]) == ANSWER_YES)
             return true;
     }
     return false;
@@ -253,6 +241,9 @@ tw_status move_swap(work *w, const piece *p)
     if (!forgive(e)) return TW_ERROR;
     work_needs(w, sure ? CONDITION_PROVED : CONDITION_OPEN, "the double integral converges absolutely");
     w->source = "Fubini's theorem";
+    const manual_frame *now = manual_now(w->m);
+    if (sure && now->live.count == 1 && now->split_off.count == 0 && expr_is_zero(now->plain) && !now->pending)
+        w->next.converges = true;
     expr *turned = expr_integral(e, p->x, p->from, p->to, f);
     piece made = {p->outside, y, from, to, turned, name};
     return work_add_integral(w, &made);

@@ -225,6 +225,21 @@ tw_status move_expand(work *w, const piece *p)
 
 /* ---- integrate termwise ---- */
 
+/* term = rest * an inner integral that has a closed form for all x of the range: with it put in; else NULL. */
+static expr *open_inner(work *w, const piece *p, expr *part)
+{
+    tw_engine *e = w->e;
+    expr *const *factors, *inner = NULL, *rest = expr_int(e, 1);
+    size_t count = expr_factors(&part, &factors);
+    for (size_t k = 0; k < count; k++)
+        if (!inner && factors[k]->kind == EXPR_INTEGRAL) inner = factors[k];
+        else rest = expr_mul(e, rest, factors[k]);
+    if (!inner) return NULL;
+    expr *y = expr_fresh(e, expr_binder_name(inner)), *body = y ? expr_open(e, inner, y) : NULL;
+    expr *value = body ? inner_integral(w, body, y, inner->args[0], inner->args[1], p->x, p->from, p->to) : NULL;
+    return value ? tidy(e, expr_mul(e, rest, value), p->x, range_is_positive(e, p->from)) : NULL;
+}
+
 tw_status move_termwise(work *w, const piece *p)
 {
     tw_engine *e = w->e;
@@ -234,18 +249,23 @@ tw_status move_termwise(work *w, const piece *p)
     if (body) body = tidy(e, body, p->x, positive);
     if (!body) return TW_ERROR;
     expr *const *parts;
-    size_t count = expr_terms(&body, &parts), done = 0;
+    size_t count = expr_terms(&body, &parts), done = 0, inner = 0;
     expr *left = expr_int(e, 0);
     for (size_t k = 0; k < count && budget_ok(e); k++) {
-        expr *value = definite_integral(w, parts[k], p->x, p->from, p->to);
+        expr *part = parts[k], *opened = open_inner(w, p, part);
+        if (opened) {
+            part = opened;
+            inner++;
+        }
+        expr *value = e->error.kind == ERROR_NONE ? definite_integral(w, part, p->x, p->from, p->to) : NULL;
         if (!value && e->error.kind != ERROR_NONE) return TW_ERROR;
         if (value) {
             done++;
             if (work_add_plain(w, expr_mul(e, p->outside, value)) != TW_OK) return TW_ERROR;
-        } else left = expr_add(e, left, parts[k]);
+        } else left = expr_add(e, left, part);
     }
     if (e->error.kind != ERROR_NONE || !left) return TW_ERROR;
-    if (done == 0) {
+    if (done + inner == 0) {
         char *words = expr_text(e, parts[0]);
         engine_fail(e, ERROR_UNSUITABLE, "no term has a closed form here; the first is %.200s", words ? words : "");
         free(words);

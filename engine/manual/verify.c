@@ -9,8 +9,8 @@
 #include "engine/ball/quadrature.h"
 #include "engine/manual/work.h"
 
-enum { SAMPLES_WANTED = 2, SAMPLES_MOST = 5, DIGITS = 9 };
-#define SECONDS_EACH 4.0
+enum { SAMPLES_WANTED = 2, SAMPLES_MOST = 5, DIGITS = 8, VALUES_KEPT = 12 };
+#define SECONDS_EACH 2.0
 
 /* ---- samples ---- */
 
@@ -106,10 +106,53 @@ static double now(void)
     return (double)t.tv_sec + 1e-9 * (double)t.tv_nsec;
 }
 
+struct manual_values {
+    size_t next;
+    struct {
+        expr *f;
+        slong trial;
+        error_kind kind; /* why there is no ball; NONE: there is one */
+        acb_t value;
+    } list[VALUES_KEPT];
+};
+
+void manual_values_free(struct manual_values *v)
+{
+    for (size_t k = 0; v && k < VALUES_KEPT; k++) acb_clear(v->list[k].value);
+    free(v);
+}
+
+static bool known_value(const manual *m, expr *f, slong trial, acb_t out, error_kind *kind)
+{
+    for (size_t k = 0; m->values && k < VALUES_KEPT; k++)
+        if (m->values->list[k].f == f && m->values->list[k].trial == trial) {
+            acb_set(out, m->values->list[k].value);
+            *kind = m->values->list[k].kind;
+            return true;
+        }
+    return false;
+}
+
+static void keep_value(manual *m, expr *f, slong trial, const acb_t value, error_kind kind)
+{
+    if (!m->values) {
+        m->values = base_alloc(sizeof *m->values);
+        memset(m->values, 0, sizeof *m->values);
+        for (size_t k = 0; k < VALUES_KEPT; k++) acb_init(m->values->list[k].value);
+    }
+    size_t k = m->values->next++ % VALUES_KEPT;
+    m->values->list[k].f = f;
+    m->values->list[k].trial = trial;
+    m->values->list[k].kind = kind;
+    acb_set(m->values->list[k].value, value);
+}
+
 /* The value, within an allowance of its own so that one hard sample does not eat the request's. False: none was had; a
  * spent budget of the request stays an error. *kind: why none was had. */
-static bool ball_at(tw_engine *e, acb_t out, expr *f, const sample *s, error_kind *kind)
+static bool ball_at(manual *m, acb_t out, expr *f, const sample *s, slong trial, error_kind *kind)
 {
+    tw_engine *e = m->e;
+    if (known_value(m, f, trial, out, kind)) return *kind == ERROR_NONE;
     env at = {s->count, s->symbols, s->values};
     double deadline = e->deadline, mine = now() + SECONDS_EACH;
     bool lent = deadline == 0 || mine < deadline;
@@ -119,7 +162,10 @@ static bool ball_at(tw_engine *e, acb_t out, expr *f, const sample *s, error_kin
     *kind = status == TW_OK ? ERROR_NONE : e->error.kind;
     if (status != TW_OK && e->error.kind == ERROR_TIME && lent) engine_forgive(e);
     if (status != TW_OK && !forgive(e)) return false;
-    return status == TW_OK && acb_is_finite(out);
+    bool good = status == TW_OK && acb_is_finite(out);
+    if (!good && *kind == ERROR_NONE) *kind = ERROR_PRECISION;
+    keep_value(m, f, trial, out, *kind);
+    return good;
 }
 
 static void add_values(tw_engine *e, text *out, const sample *s)
@@ -198,7 +244,8 @@ tw_status verify_by_balls(work *w, expr *before, expr *after, slong *tried)
         error_kind kind = ERROR_NONE;
         if (!budget_ok(e)) break;
         bool drawn = sample_draw(e, &s, before, after, trial);
-        if (drawn && ball_at(e, x, before, &s, &kind) && (before == after || ball_at(e, y, after, &s, &kind))) {
+        if (drawn && ball_at(w->m, x, before, &s, trial, &kind) &&
+            (before == after || ball_at(w->m, y, after, &s, trial, &kind))) {
             if (w->loosely) loosen(x, y);
             if (before != after && !acb_overlaps(x, y)) status = refute(w, &s, x, y);
             else {

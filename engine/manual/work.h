@@ -81,6 +81,10 @@ expr *antiderivative(tw_engine *e, expr *f, expr *x, bool positive);
  * limits; the conditions are added. NULL without an error when there is none. */
 expr *definite_integral(work *w, expr *f, expr *x, expr *from, expr *to);
 
+/* The same while another variable, `other`, runs over (low, high): the conditions must hold for all its values, none is
+ * added. */
+expr *inner_integral(work *w, expr *f, expr *x, expr *from, expr *to, expr *other, expr *low, expr *high);
+
 /* t = psi(x) solved from x = phi(t): NULL without an error when it is not found. */
 expr *solve_inverse(tw_engine *e, expr *phi, expr *t, expr *x);
 
@@ -89,5 +93,6 @@ expr *solve_inverse(tw_engine *e, expr *phi, expr *t, expr *x);
 /* Compares the value of `after` with that of `before` at sample values of their parameters by certified balls. Disjoint:
  * ERROR_REFUTED with the values. *tried: at so many samples balls were had for both. detail: words for the record. */
 tw_status verify_by_balls(work *w, expr *before, expr *after, slong *tried);
+void manual_values_free(struct manual_values *v); /* NULL: nothing */
 
 #endif
