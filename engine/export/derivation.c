@@ -39,9 +39,8 @@ static void add_parameters(tw_engine *e, text *out, const manual *m)
         json_expr(e, out, symbols[k]);
         text_add(out, ", \"facts\": [");
         bool first_fact = true;
-        for (size_t f = 0; f < facts_count(e); f++) {
-            condition_label l;
-            expr *fact = facts_at(e, f, &l);
+        for (size_t f = 0; f < m->fact_count; f++) {
+            expr *fact = m->facts[f];
             if (!expr_has(fact, symbols[k])) continue;
             if (!first_fact) text_add(out, ", ");
             first_fact = false;

@@ -246,6 +246,25 @@ static bool all_converge(tw_engine *e, work *w, const manual_terms *t)
     return good;
 }
 
+/* What is known now is what the moves may rest on. */
+static void note_facts(manual *m)
+{
+    for (size_t k = 0; k < facts_count(m->e); k++) {
+        condition_label label;
+        expr *fact = facts_at(m->e, k, &label);
+        bool known = false;
+        for (size_t j = 0; j < m->fact_count && !known; j++) {
+            known = m->facts[j] == fact;
+            if (known && label == CONDITION_GRANTED) m->fact_labels[j] = label;
+        }
+        if (known) continue;
+        m->facts = base_resize(m->facts, (m->fact_count + 1) * sizeof *m->facts);
+        m->fact_labels = base_resize(m->fact_labels, (m->fact_count + 1) * sizeof *m->fact_labels);
+        m->facts[m->fact_count] = fact;
+        m->fact_labels[m->fact_count++] = label;
+    }
+}
+
 manual *manual_new(tw_engine *e, expr *f)
 {
     if (!f) return NULL;
@@ -279,6 +298,7 @@ manual *manual_new(tw_engine *e, expr *f)
     }
     step *s = derivation_add(&m->record, "as typed", NULL);
     push_frame(m, &w.next);
+    note_facts(m);
     m->frames[0].steps = 1;
     text form;
     text_init(&form);
@@ -297,8 +317,11 @@ void manual_release(manual *m)
 {
     if (!m || --m->holders > 0) return;
     for (size_t k = 0; k < m->count; k++) frame_clear(&m->frames[k]);
+    for (size_t k = 0; k + 1 < m->count; k++) pass_release(m->moves[k].pass);
     free(m->frames);
     free(m->moves);
+    free(m->facts);
+    free(m->fact_labels);
     derivation_clear(&m->record);
     manual_values_free(m->values);
     free(m);
@@ -493,6 +516,7 @@ static tw_status make(work *w)
 static void drop_frame(manual *m)
 {
     frame_clear(&m->frames[--m->count]);
+    pass_release(m->moves[m->count - 1].pass);
     derivation_cut(&m->record, m->frames[m->count - 1].steps);
 }
 
@@ -522,7 +546,9 @@ tw_status manual_apply(manual *m, const manual_move *move)
         if (!w.proved) w.next.tried++;
         size_t number = m->count;
         push_frame(m, &w.next);
+        note_facts(m);
         m->moves[number - 1] = *move;
+        if (move->pass) pass_hold(move->pass);
         record_move(&w, number);
         m->frames[m->count - 1].steps = m->record.count;
     } else {

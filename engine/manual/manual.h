@@ -10,6 +10,7 @@
 #define TW_MANUAL_MANUAL_H
 
 #include "engine/method/expansion.h"
+#include "engine/rewrite/pass.h"
 
 typedef enum manual_move_kind {
     MANUAL_SUBSTITUTE,
@@ -26,11 +27,6 @@ typedef enum manual_move_kind {
     MANUAL_MOVE_COUNT
 } manual_move_kind;
 
-/* A rewriting from outside (a rule, a pass), as the host knows it: *out is what f, an integral or any expression of the
- * form, becomes (f itself: it does not apply). *proved: the engine proves each rule that was used. Conditions that were
- * needed are added. */
-typedef tw_status manual_rewriter(void *host, tw_engine *e, expr *f, expr **out, bool *proved, condition_list *needs);
-
 /* One move. Expressions name the variables of the form by their symbols. */
 typedef struct manual_move {
     manual_move_kind kind;
@@ -43,10 +39,7 @@ typedef struct manual_move {
     slong which;       /* in integral K, from 1; 0: every integral that it fits */
     bool goes_on;      /* REPEAT_PARTS: not the first time of its line; undone with the one before */
     const char *words; /* as typed; in the engine's arena */
-    manual_rewriter *rewrite; /* REWRITE */
-    void *host;               /* REWRITE: lives as long as the move */
-    const char *name;         /* REWRITE: of the rule or pass */
-    const char *source;       /* REWRITE: of the rule, or NULL */
+    pass *pass;        /* REWRITE: held by the derivation once the move is made */
 } manual_move;
 
 /* One integral of the form. */
@@ -94,6 +87,9 @@ typedef struct manual {
     manual_frame *frames;
     manual_move *moves;   /* count - 1 of them */
     derivation record;
+    size_t fact_count;    /* facts in force at the beginning or at a move; they may be dropped later */
+    expr **facts;
+    condition_label *fact_labels;
     unsigned holders;
     struct manual_values *values;
 } manual;
@@ -130,6 +126,11 @@ expr *manual_value(const manual *m);
 void manual_conditions(const manual *m, condition_list *out);
 /* No open or granted condition, every move proved. */
 bool manual_is_proved(const manual *m);
+
+/* The derivation as a rule: the integral as typed becomes the form, remainders included, under the facts about its
+ * parameters (they are the rule's variables) and the conditions of the moves. `proved` when every move is proved and no
+ * condition is open or granted; else unchecked, to be tried. UNSUITABLE while a differentiation is not integrated back. */
+rule *manual_rule(const manual *m, const char *name);
 
 /* Reads the form as an expansion in the large or small parameter: the plain terms, with all integrals as remainder.
  * UNSUITABLE when a plain term is no power of it (with powers of its logarithm and one exponential in front). */

@@ -260,14 +260,22 @@ tw_status move_integrate_back(work *w)
 
 static tw_status rewrite_part(work *w, expr *f, expr **out, size_t *changed)
 {
-    const manual_move *m = w->move;
-    bool proved = true;
+    rewriting r;
+    rewriting_init(&r);
     *out = f;
-    if (m->rewrite(m->host, w->e, f, out, &proved, &w->needs) != TW_OK) return TW_ERROR;
-    if (*out == f) return TW_OK;
-    ++*changed;
-    w->proved = w->proved && proved;
-    return TW_OK;
+    tw_status status = pass_run(w->e, w->move->pass, f, &r);
+    if (status == TW_OK && r.applied && r.after && r.after != f) {
+        *out = r.after;
+        ++*changed;
+        conditions_append(&w->needs, &r.conditions);
+        for (size_t k = 0; k < r.steps.count; k++) {
+            const step *one = &r.steps.steps[k];
+            text_addf(&w->detail, "%sby %s", w->detail.length ? ", " : "", one->rule);
+            if (one->source) text_addf(&w->detail, " (%s)", one->source);
+        }
+    }
+    rewriting_clear(&r);
+    return status;
 }
 
 static tw_status rewrite_terms(work *w, const manual_terms *t, slong offset, size_t *changed)
@@ -295,7 +303,6 @@ tw_status move_rewrite(work *w)
     if (w->move->which > (slong)total)
         return engine_fail(e, ERROR_VALUE, "the form has %zu integral%s, so there is no integral %ld", total,
                            total == 1 ? "" : "s", (long)w->move->which);
-    w->source = w->move->source;
     if (work_add_plain(w, now->plain) != TW_OK || rewrite_terms(w, &now->live, 0, &changed) != TW_OK) return TW_ERROR;
     w->remainder = true;
     tw_status status = rewrite_terms(w, &now->split_off, (slong)now->live.count, &changed);
@@ -313,5 +320,5 @@ tw_status move_rewrite(work *w)
             return work_add_any(w, made, NULL);
         }
     }
-    return engine_fail(e, ERROR_UNSUITABLE, "`%s` does not apply to any part of the form", w->move->name);
+    return engine_fail(e, ERROR_UNSUITABLE, "nothing of it applies to any part of the form (`why not RULE` says why)");
 }

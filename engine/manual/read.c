@@ -194,12 +194,12 @@ static void stride_of(tw_engine *e, const reading_list *t, size_t k, bool small,
     fmpz_init(gcd);
     fmpz_init_set_ui(den, 1);
     fmpz_init(num);
-    for (int pass = 0; pass < 2; pass++)
+    for (int round = 0; round < 2; round++)
         for (size_t j = 0; j < t->count; j++) {
             if (t->list[j].logs != t->list[k].logs || t->list[j].prefactor != t->list[k].prefactor) continue;
             expr *d = expr_sub(e, t->list[j].exponent, t->list[k].exponent);
             if (!d || !expr_is_number(d)) continue;
-            if (pass == 0) fmpz_lcm(den, den, fmpq_denref(expr_number(d)));
+            if (round == 0) fmpz_lcm(den, den, fmpq_denref(expr_number(d)));
             else {
                 fmpz_divexact(num, den, fmpq_denref(expr_number(d)));
                 fmpz_mul(num, num, fmpq_numref(expr_number(d)));
@@ -304,13 +304,17 @@ static void take_steps(const manual *m, expansion *out)
     }
 }
 
-static void keep_facts(tw_engine *e, expansion *out)
+static void keep_facts(const manual *m, expansion *out)
 {
-    if (out->facts) return;
-    out->fact_count = facts_count(e);
+    free(out->facts);
+    free(out->fact_labels);
+    out->fact_count = m->fact_count;
     out->facts = base_alloc((out->fact_count + 1) * sizeof *out->facts);
     out->fact_labels = base_alloc((out->fact_count + 1) * sizeof *out->fact_labels);
-    for (size_t k = 0; k < out->fact_count; k++) out->facts[k] = facts_at(e, k, &out->fact_labels[k]);
+    for (size_t k = 0; k < out->fact_count; k++) {
+        out->facts[k] = m->facts[k];
+        out->fact_labels[k] = m->fact_labels[k];
+    }
 }
 
 tw_status manual_expansion(const manual *m, expansion *out)
@@ -338,7 +342,7 @@ tw_status manual_expansion(const manual *m, expansion *out)
                                      : "a derivation by hand; the integrals that were split off are the remainder");
         manual_conditions(m, &out->conditions);
         take_steps(m, out);
-        keep_facts(e, out);
+        keep_facts(m, out);
     }
     free(t.list);
     return status;

@@ -3,7 +3,6 @@
  * counted. Samples are drawn from the facts, the same for every move, so that a script runs the same way twice. */
 #include <stdlib.h>
 #include <string.h>
-#include <time.h>
 
 #include "engine/ball/decide.h"
 #include "engine/ball/quadrature.h"
@@ -99,13 +98,6 @@ static bool sample_draw(tw_engine *e, sample *s, expr *before, expr *after, slon
 
 /* ---- balls ---- */
 
-static double now(void)
-{
-    struct timespec t;
-    clock_gettime(CLOCK_MONOTONIC, &t);
-    return (double)t.tv_sec + 1e-9 * (double)t.tv_nsec;
-}
-
 struct manual_values {
     size_t next;
     struct {
@@ -147,6 +139,19 @@ static void keep_value(manual *m, expr *f, slong trial, const acb_t value, error
     acb_set(m->values->list[k].value, value);
 }
 
+typedef struct ball_job {
+    tw_engine *e;
+    acb_ptr out;
+    expr *f;
+    const env *at;
+} ball_job;
+
+static tw_status run_ball(void *host)
+{
+    ball_job *j = host;
+    return quadrature(j->e, j->out, j->f, j->at, DIGITS, true, NULL);
+}
+
 /* The value, within an allowance of its own so that one hard sample does not eat the request's. False: none was had; a
  * spent budget of the request stays an error. *kind: why none was had. */
 static bool ball_at(manual *m, acb_t out, expr *f, const sample *s, slong trial, error_kind *kind)
@@ -154,10 +159,11 @@ static bool ball_at(manual *m, acb_t out, expr *f, const sample *s, slong trial,
     tw_engine *e = m->e;
     if (known_value(m, f, trial, out, kind)) return *kind == ERROR_NONE;
     env at = {s->count, s->symbols, s->values};
-    double deadline = e->deadline, mine = now() + SECONDS_EACH;
+    double deadline = e->deadline, mine = budget_clock() + SECONDS_EACH;
     bool lent = deadline == 0 || mine < deadline;
     if (lent) e->deadline = mine;
-    tw_status status = quadrature(e, out, f, &at, DIGITS, true, NULL);
+    ball_job job = {e, out, f, &at};
+    tw_status status = engine_protect(e, run_ball, &job); /* a library call may be left in the middle */
     e->deadline = deadline;
     *kind = status == TW_OK ? ERROR_NONE : e->error.kind;
     if (status != TW_OK && e->error.kind == ERROR_TIME && lent) engine_forgive(e);

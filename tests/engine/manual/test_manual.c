@@ -301,26 +301,23 @@ static void test_swap(void **state)
     tw_engine_free(e);
 }
 
-/* A rewriting that is wrong is refuted with the values. */
-static tw_status doubles(void *host, tw_engine *e, expr *f, expr **out, bool *proved, condition_list *needs)
-{
-    (void)host;
-    (void)needs;
-    *proved = true;
-    *out = f->kind == EXPR_INTEGRAL ? expr_mul(e, expr_int(e, 2), f) : f;
-    return TW_OK;
-}
-
-static void test_wrong_rewriting(void **state)
+/* A rule that is wrong is refuted with the values, even if nobody checked it before. */
+static void test_wrong_rule(void **state)
 {
     (void)state;
     tw_engine *e = text_engine("s", LARGE_POSITIVE);
     manual *m = begin(e, "integral from 0 to inf of exp(-s*x)/(1 + x) dx");
+    pattern_variable a = {.name = "a", .symbol = expr_symbol(e, "a")};
+    rule *wrong = rule_new(e, "wrong", &a, 1, text_parse(e, "1/(1 + a)"), text_parse(e, "1/(1 + 2*a)"), NULL, 0, NULL);
+    if (!wrong) fail_msg("%s", e->error.words);
+    pass *one = pass_of_rule(wrong), *parts[] = {one};
+    pass *p = pass_join(STRATEGY_ONCE, parts, 1);
     manual_move move = move_of(e, MANUAL_REWRITE, NULL, NULL);
-    move.rewrite = doubles;
-    move.name = "doubles";
+    move.pass = p;
     refused(m, 1, manual_apply(m, &move), ERROR_REFUTED, "at s = ");
     form_is(m, "integral from 0 to inf of exp(-s*x)/(1 + x) dx");
+    pass_release(p);
+    rule_release(wrong);
     manual_release(m);
     tw_engine_free(e);
 }
@@ -506,7 +503,7 @@ int main(void)
     const struct CMUnitTest tests[] = {
         cmocka_unit_test(test_substitute), cmocka_unit_test(test_wrong_inverse), cmocka_unit_test(test_parts),
         cmocka_unit_test(test_parameter),  cmocka_unit_test(test_split_and_pick), cmocka_unit_test(test_rotate),
-        cmocka_unit_test(test_expand),     cmocka_unit_test(test_swap),           cmocka_unit_test(test_wrong_rewriting),
+        cmocka_unit_test(test_expand),     cmocka_unit_test(test_swap),           cmocka_unit_test(test_wrong_rule),
         cmocka_unit_test(test_begin),      cmocka_unit_test(test_replay),         cmocka_unit_test(test_random),
     };
     return cmocka_run_group_tests(tests, NULL, NULL);
