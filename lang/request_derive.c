@@ -173,6 +173,7 @@ typedef struct unknown_names {
     expr *form;
     const char *first;
     size_t count; /* different ones */
+    const char *old; /* the variable that is replaced */
 } unknown_names;
 
 static bool is_constant_word(const char *name)
@@ -196,6 +197,17 @@ static void take_unknown(void *host, const char *name, span at)
     u->count++;
 }
 
+static void take_variable(void *host, const char *name, span at)
+{
+    unknown_names *u = host;
+    (void)at;
+    expr *symbol = expr_symbol(u->s->e, name);
+    if (!symbol || strcmp(name, u->old) == 0 || !manual_has_variable(u->s->open, symbol) || expr_has(u->form, symbol)) return;
+    if (u->first && strcmp(u->first, name) == 0) return;
+    u->first = name;
+    u->count++;
+}
+
 /* The new variable of a substitution: the one name not yet known, or what `with` says. */
 static tw_status find_new_variable(session *s, const statement *st, const char **name)
 {
@@ -204,13 +216,19 @@ static tw_status find_new_variable(session *s, const statement *st, const char *
         *name = st->as.move->as.substitute.new_name.text;
         return TW_OK;
     }
-    unknown_names u = {s, manual_value(s->open), NULL, 0};
+    unknown_names u = {s, manual_value(s->open), NULL, 0, st->as.move->as.substitute.name.text};
     if (!u.form) return request_fail_at(s, st->at);
     names_in(typed, take_unknown, &u);
     if (u.count == 1) {
         *name = u.first;
         return TW_OK;
     }
+    if (u.count == 0) { /* the variable of another integral may serve again */
+        u.first = NULL;
+        names_in(typed, take_variable, &u);
+        *name = u.first;
+    }
+    if (u.count == 1) return TW_OK;
     if (u.count == 0)
         return request_fail(s, typed->at, ERROR_NAME, "no name here is new, so the new variable is not known; choose one that has "
                                                       "no meaning yet, or say `with NEW = ...`");
@@ -310,9 +328,13 @@ tw_status request_move(session *s, const statement *st, result *r, value **keep)
     if (status == TW_OK && st->as.move->integral)
         status = session_lower_count(s, st->as.move->integral, "the number of the integral", 1, INTEGRALS_LIMIT, &m.which);
     s->reads_move = false;
+    if (status == TW_OK) {
+        m.words = words_of_move(s, st);
+        status = manual_apply(s->open, &m);
+        if (status != TW_OK) request_fail_at(s, st->at);
+    }
+    pass_release(m.pass); /* the derivation holds it now */
     if (status != TW_OK) return TW_ERROR;
-    m.words = words_of_move(s, st);
-    if (manual_apply(s->open, &m) != TW_OK) return request_fail_at(s, st->at);
     result_restart(r, "derivation");
     result_string(r, "of", s->open_name);
     tell_form(s, r, s->open_name, s->open_is_name, s->open);

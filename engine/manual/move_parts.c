@@ -7,6 +7,28 @@
 #include "engine/exact/series.h"
 #include "engine/manual/work.h"
 
+/* ---- the rest ---- */
+
+expr *quotient_of(work *w, const piece *p, expr *factor)
+{
+    enum { FACTORS_MOST = 6 };
+    tw_engine *e = w->e;
+    bool positive = range_is_positive(e, p->from);
+    expr *plain = tidy(e, expr_div(e, p->body, factor), p->x, positive);
+    expr *const *factors;
+    size_t count = expr_factors(&p->body, &factors);
+    if (!plain || count > FACTORS_MOST || expr_size(plain) < expr_size(p->body)) return plain;
+    for (size_t chosen = 0; chosen < (size_t)1 << count && budget_ok(e); chosen++) { /* a part of the body's factors */
+        expr *rest = expr_int(e, 1);
+        for (size_t k = 0; k < count; k++)
+            if (chosen >> k & 1) rest = expr_mul(e, rest, factors[k]);
+        expr *difference = expr_sub(e, p->body, expr_mul(e, rest, factor));
+        if (difference && is_identically_zero(e, difference, positive ? p->x : NULL)) return rest;
+        if (!forgive(e)) return NULL;
+    }
+    return plain;
+}
+
 /* ---- parts ---- */
 
 /* The factor of this piece, from what was typed or from the parts before. */
@@ -52,7 +74,7 @@ tw_status move_parts(work *w, const piece *p)
         free(words);
     }
     if (!G) return TW_ERROR;
-    expr *rest = tidy(e, expr_div(e, p->body, factor), p->x, positive), *edge;
+    expr *rest = quotient_of(w, p, factor), *edge;
     expr *slope = rest ? expr_derivative(e, rest, p->x) : NULL;
     expr *product = slope ? tidy(e, expr_mul(e, G, rest), p->x, positive) : NULL;
     if (!product || boundary(w, p, product, &edge) != TW_OK) return TW_ERROR;
@@ -197,7 +219,7 @@ static tw_status require_convergence(work *w, const piece *p, expr *body)
 tw_status move_expand(work *w, const piece *p)
 {
     tw_engine *e = w->e;
-    bool positive = range_is_positive(e, p->from), all = false;
+    bool all = false;
     expr *factor = piece_read(w, p, w->move->value), *point = w->move->extra;
     local_variable v = {NULL, NULL, NULL};
     if (!factor || choose_variable(w, p, point, &v) != TW_OK) return TW_ERROR;
@@ -206,12 +228,12 @@ tw_status move_expand(work *w, const piece *p)
     expr *local = tidy(e, expr_substitute(e, factor, p->x, v.inside), v.y, true), *sum;
     if (!local || partial_sum(w, local, v.y, w->move->count, &sum, &all) != TW_OK) return TW_ERROR;
     sum = expr_substitute(e, sum, v.y, v.back);
-    expr *rest = tidy(e, expr_div(e, p->body, factor), p->x, positive);
+    expr *rest = quotient_of(w, p, factor);
     if (!sum || !rest) return TW_ERROR;
     piece kept = *p, left = *p;
     kept.body = expr_mul(e, rest, sum);
     left.body = expr_mul(e, rest, expr_sub(e, factor, sum));
-    if (!kept.body || !left.body || require_convergence(w, p, tidy(e, kept.body, p->x, positive)) != TW_OK)
+    if (!kept.body || !left.body || require_convergence(w, p, tidy(e, kept.body, p->x, range_is_positive(e, p->from))) != TW_OK)
         return TW_ERROR;
     w->source = "the series of the factor";
     bool before = w->remainder;

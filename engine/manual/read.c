@@ -304,6 +304,18 @@ static void take_steps(const manual *m, expansion *out)
     }
 }
 
+/* Those that are not proved; the steps have them all. */
+static void take_conditions(const manual *m, expansion *out)
+{
+    condition_list all;
+    conditions_init(&all);
+    manual_conditions(m, &all);
+    for (size_t k = 0; k < all.count; k++)
+        if (all.list[k].label == CONDITION_OPEN || all.list[k].label == CONDITION_GRANTED)
+            conditions_add(&out->conditions, all.list[k].words, all.list[k].relation, all.list[k].label);
+    conditions_clear(&all);
+}
+
 static void keep_facts(const manual *m, expansion *out)
 {
     free(out->facts);
@@ -340,7 +352,7 @@ tw_status manual_expansion(const manual *m, expansion *out)
         out->why = base_copy(engines ? "a derivation by hand; its terms are those of the engine's own expansion, which bounds the "
                                        "remainder"
                                      : "a derivation by hand; the integrals that were split off are the remainder");
-        manual_conditions(m, &out->conditions);
+        take_conditions(m, out);
         take_steps(m, out);
         keep_facts(m, out);
     }

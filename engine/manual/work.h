@@ -41,6 +41,10 @@ tw_status work_add_term(work *w, const manual_term *t);
 /* Adds a plain expression or a sum in which integrals may stand as factors. */
 tw_status work_add_any(work *w, expr *a, const char *name);
 
+/* body/factor, in a form in which the factor has gone where it is one: rest * factor = body is proved when it is not the
+ * plain quotient. */
+expr *quotient_of(work *w, const piece *p, expr *factor);
+
 /* A condition in words (open), and a relation that is decided: yes and no as conditions_require has it. */
 void work_needs(work *w, condition_label label, const char *format, ...) __attribute__((format(printf, 3, 4)));
 tw_status work_require(work *w, expr *relation);

@@ -397,7 +397,9 @@ tw_status evaluate_expansion(tw_engine *e, number *out, expansion *a, const env 
     out->least_term = least;
     out->terms_known = FLINT_MAX(most, a->terms_asked);
     try_init(&best);
-    if (o->terms >= 0)
+    if (a->remainder) /* what is left is known exactly, whatever is kept */
+        status = try_terms(e, &best, a, at, most, bits, false);
+    else if (o->terms >= 0)
         status = try_terms(e, &best, a, at, o->terms, bits, true);
     else
         status = try_best(e, &best, a, at, terms, most, bits, true);
