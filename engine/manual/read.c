@@ -214,15 +214,26 @@ static void stride_of(tw_engine *e, const reading_list *t, size_t k, bool small,
     fmpz_clear(num);
 }
 
-/* What of a constant is no rational number. */
+/* A rational function of the parameters? */
+static bool is_rational_function(expr *a)
+{
+    if (a->kind == EXPR_NUMBER || a->kind == EXPR_SYMBOL) return true;
+    if (a->kind == EXPR_POWER)
+        return is_rational_function(a->args[0]) && expr_is_number(a->args[1]) &&
+               fmpz_is_one(fmpq_denref(expr_number(a->args[1])));
+    if (a->kind != EXPR_SUM && a->kind != EXPR_PRODUCT) return false;
+    for (uint32_t k = 0; k < a->count; k++)
+        if (!is_rational_function(a->args[k])) return false;
+    return true;
+}
+
+/* What of a constant is no rational function of the parameters: the lane's constant. */
 static expr *irrational_part(tw_engine *e, expr *c)
 {
-    fmpq_t q;
-    expr *rest;
-    fmpq_init(q);
-    expr_as_coefficient(e, c, q, &rest);
-    if (expr_is_number(c)) rest = expr_int(e, 1);
-    fmpq_clear(q);
+    expr *const *factors, *rest = expr_int(e, 1);
+    size_t count = expr_factors(&c, &factors);
+    for (size_t k = 0; k < count; k++)
+        if (!is_rational_function(factors[k])) rest = expr_mul(e, rest, factors[k]);
     return rest;
 }
 
