@@ -161,8 +161,8 @@ static const help_entry entries[] = {
      "given a > 0, b > 0\nderive integral from 0 to inf of exp(-a*x)*sin(b*x)/x dx\n    differentiate in b\n    integrate "
      "termwise\n    integrate back in b from 0\ndone", NULL},
     {"integrate", HELP_MOVE, HERE, "integrate termwise [in integral K]\nintegrate back in PARAM from VALUE",
-     "Termwise: multiplies the integrand out and integrates each term that has a\nknown integral. Back: from the value of PARAM "
-     "at which the integral is known,\nover the derivative that the form is, to PARAM; VALUE may be inf.",
+     "Termwise: multiplies the integrand out and integrates each term that has a\nknown integral; where none has, each gets an integral of its own. Back: from\nthe value of PARAM "
+     "at which the integral is known, over the derivative that\nthe form is, to PARAM; VALUE may be inf.",
      "given a > 0\nderive integral from 0 to inf of (1 + x)^2*exp(-a*x) dx\n    integrate termwise\ndone", NULL},
     {"split", HELP_MOVE, HERE, "split at POINT [in integral K]",
      "Splits an integral in two at a point inside its range. After it a move acts\non every integral that it fits; `in integral "

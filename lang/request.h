@@ -64,7 +64,7 @@ typedef tw_status request_function(session *s, const statement *st, result *r, v
 request_function request_large, request_small, request_given, request_grant, request_let, request_use, request_show,
     request_drop, request_expand, request_steps, request_coefficients, request_remainder, request_evaluate, request_compare,
     request_write, request_help, request_quit, request_derive, request_move, request_done, request_undo, request_replay,
-    request_expansion_of;
+    request_expansion_of, request_rule_from;
 request_function request_recurrence, request_check_recurrence, request_growth;
 request_function request_rule, request_pass, request_rewrite, request_check_rule, request_check_file, request_why_not;
 

@@ -7,6 +7,7 @@
 #include "engine/export/format.h"
 #include "lang/describe.h"
 #include "lang/request.h"
+#include "lang/rules.h"
 
 enum { MOVE_TIMES_LIMIT = 10000, MOVE_TERMS_LIMIT = 10000, INTEGRALS_LIMIT = 1000000 };
 
@@ -18,7 +19,8 @@ static void add_remainders(result *r, const manual *m)
     text_init(&words);
     manual_print_remainders(m, &words);
     result_string(r, "remainder", words.length ? words.bytes : NULL);
-    if (words.length) result_line(r, "  exact remainder: %s", words.bytes);
+    bool listed = manual_now(m)->live.count + manual_now(m)->split_off.count > 1; /* then it stands in the list */
+    if (words.length && !listed) result_line(r, "  exact remainder: %s", words.bytes);
     text_clear(&words);
 }
 
@@ -35,7 +37,7 @@ static void add_integrals(result *r, const manual *m)
         text_cut(&words, 0);
         manual_print_term(m, k, &words);
         if (total > 1)
-            result_line(r, "  integral %zu: %s%s", k + 1, words.bytes, k < now->live.count ? "" : "  (remainder)");
+            result_line(r, "  integral %zu: %s%s", k + 1, words.bytes, k < now->live.count ? "" : "  (exact remainder)");
         json_next(&json);
         json_string(&json, words.bytes);
     }
@@ -123,6 +125,7 @@ tw_status request_derive(session *s, const statement *st, result *r, value **kee
                                              x.kept->kind == VALUE_EXPANSION ? "an expansion" : x.kept->what);
     manual *m = status == TW_OK ? manual_new(s->e, x.expression) : NULL;
     if (m) {
+        s->current = x.expression;
         open_derivation(s, m, x.name, x.is_name);
         result_restart(r, "derivation");
         result_string(r, "of", x.name);
@@ -272,6 +275,17 @@ static tw_status read_value(session *s, const syntax *x, expr **out)
     return *out ? TW_OK : TW_ERROR;
 }
 
+/* A rule is used at the first place that it fits. The rules are checked before their first use. */
+static tw_status read_rewrite(session *s, const statement *st, manual_move *m)
+{
+    syntax_pass named = {.kind = PASS_NAME, .at = st->as.move->as.rule.at, .name = st->as.move->as.rule.text}, *parts[] = {&named};
+    syntax_pass once = {.kind = PASS_ONCE, .at = named.at, .count = 1, .parts = parts};
+    const syntax_pass *typed = st->as.move->kind == MOVE_USE_RULE ? &once : st->as.move->as.with;
+    m->pass = session_pass(s, typed);
+    if (!m->pass) return TW_ERROR;
+    return session_check_pass(s, m->pass) == TW_OK ? TW_OK : request_fail_at(s, typed->at);
+}
+
 static tw_status read_move(session *s, const statement *st, manual_move *m)
 {
     const syntax *factor;
@@ -297,6 +311,8 @@ static tw_status read_move(session *s, const statement *st, manual_move *m)
             return TW_ERROR;
         return session_lower_count(s, st->as.move->as.expand.terms, "the number of terms", 1, MOVE_TERMS_LIMIT, &m->count);
     case MOVE_TERMWISE: m->kind = MANUAL_TERMWISE; return TW_OK;
+    case MOVE_USE_RULE:
+    case MOVE_REWRITE: m->kind = MANUAL_REWRITE; return read_rewrite(s, st, m);
     case MOVE_SWAP: m->kind = MANUAL_SWAP; return TW_OK;
     default: return request_unavailable(s, st->at, statement_words(st));
     }
@@ -335,6 +351,7 @@ tw_status request_move(session *s, const statement *st, result *r, value **keep)
     }
     pass_release(m.pass); /* the derivation holds it now */
     if (status != TW_OK) return TW_ERROR;
+    s->current = manual_value(s->open);
     result_restart(r, "derivation");
     result_string(r, "of", s->open_name);
     tell_form(s, r, s->open_name, s->open_is_name, s->open);
@@ -348,6 +365,7 @@ tw_status request_undo(session *s, const statement *st, result *r, value **keep)
     (void)keep;
     if (!s->open) return nothing_open(s, st->at, "`undo`");
     if (!manual_undo(s->open)) return request_fail(s, st->at, ERROR_VALUE, "no move has been made yet: there is nothing to undo");
+    s->current = manual_value(s->open);
     result_restart(r, "derivation");
     result_string(r, "of", s->open_name);
     tell_form(s, r, s->open_name, s->open_is_name, s->open);
@@ -356,6 +374,18 @@ tw_status request_undo(session *s, const statement *st, result *r, value **keep)
 }
 
 /* ---- the whole ---- */
+
+/* The conditions that are open or granted. */
+static void tell_unsure(result *r, const condition_list *all)
+{
+    condition_list some;
+    conditions_init(&some);
+    for (size_t k = 0; k < all->count; k++)
+        if (all->list[k].label == CONDITION_OPEN || all->list[k].label == CONDITION_GRANTED)
+            conditions_add(&some, all->list[k].words, all->list[k].relation, all->list[k].label);
+    if (some.count > 0) result_conditions(r, &some);
+    conditions_clear(&some);
+}
 
 void derivation_tell_steps(session *s, result *r, const char *name, const manual *m)
 {
@@ -371,12 +401,31 @@ void derivation_show(session *s, result *r, const char *name, const manual *m)
     result_line(r, "%s: a derivation of %zu move%s", name, m->count - 1, m->count == 2 ? "" : "s");
     tell_form(s, r, name, false, m);
     manual_conditions(m, &all);
-    if (!conditions_all_sure(&all)) result_conditions(r, &all);
+    tell_unsure(r, &all);
     text json;
     text_init(&json);
     json_conditions(&json, &all);
     result_json(r, "conditions", json.bytes);
     text_clear(&json);
+    conditions_clear(&all);
+}
+
+/* One line, and what it rests on unless everything is proved. */
+static void tell_done(result *r, const char *name, const manual *m)
+{
+    condition_list all;
+    text form;
+    conditions_init(&all);
+    text_init(&form);
+    text_addf(&form, "%s: a derivation of %zu move%s", name, m->count - 1, m->count == 2 ? "" : "s");
+    result_labelled(r, form.bytes, known_word(m), NULL);
+    text_cut(&form, 0);
+    manual_print_form(m, &form);
+    result_string(r, "form", form.bytes);
+    result_string(r, "label", known_word(m));
+    manual_conditions(m, &all);
+    tell_unsure(r, &all);
+    text_clear(&form);
     conditions_clear(&all);
 }
 
@@ -406,7 +455,7 @@ tw_status request_done(session *s, const statement *st, result *r, value **keep)
     result_string(r, "of", s->open_name);
     result_string(r, "name", as.text);
     result_integer(r, "moves", (long)s->open->count - 1);
-    derivation_show(s, r, as.text ? as.text : s->open_is_name ? s->open_name : "done", s->open);
+    tell_done(r, as.text ? as.text : s->open_is_name ? s->open_name : "done", s->open);
     r->echo = true;
     if (as.text) {
         value *v = value_new(VALUE_DERIVATION);
@@ -474,4 +523,23 @@ tw_status request_expansion_of(session *s, const statement *st, result *r, value
     if (status == TW_OK && keep) *keep = v;
     else value_release(v);
     return status;
+}
+
+tw_status request_rule_from(session *s, const statement *st, result *r, value **keep)
+{
+    subject x;
+    if (read_derivation(s, &x, st->as.subject) != TW_OK) return TW_ERROR;
+    rule *made = manual_rule(x.kept->derivation, s->let_name ? s->let_name : x.name);
+    subject_clear(&x);
+    if (!made) return request_fail_at(s, st->as.subject->at);
+    made->file = s->file ? base_copy(s->file) : NULL;
+    made->line = s->line;
+    value *v = value_new(VALUE_RULE);
+    v->rule = made;
+    result_restart(r, "rule");
+    result_string(r, "name", made->name);
+    show_rule_value(s, r, made->name, v);
+    if (keep) *keep = v;
+    else value_release(v);
+    return TW_OK;
 }

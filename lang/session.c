@@ -35,6 +35,7 @@ static const struct {
     [STATEMENT_UNDO] = {request_undo, CHANGES_LAST},
     [STATEMENT_REPLAY] = {request_replay, CHANGES_FACTS},
     [STATEMENT_EXPANSION_OF] = {request_expansion_of, CHANGES_FACTS},
+    [STATEMENT_RULE_FROM] = {request_rule_from, CHANGES_FACTS},
     [STATEMENT_EXPAND] = {request_expand, CHANGES_FACTS},
     [STATEMENT_STEPS] = {request_steps, CHANGES_LAST},
     [STATEMENT_COEFFICIENTS] = {request_coefficients, CHANGES_LAST},

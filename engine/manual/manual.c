@@ -7,6 +7,8 @@
 #include <stdlib.h>
 #include <string.h>
 
+#define CONVERGES "the integral as typed converges"
+
 /* ---- terms ---- */
 
 static char *keep_words(tw_engine *e, const char *words)
@@ -297,6 +299,7 @@ manual *manual_new(tw_engine *e, expr *f)
         return NULL;
     }
     step *s = derivation_add(&m->record, "as typed", NULL);
+    if (w.next.converges) conditions_add(&s->conditions, CONVERGES, NULL, CONDITION_PROVED);
     push_frame(m, &w.next);
     note_facts(m);
     m->frames[0].steps = 1;
@@ -617,7 +620,7 @@ expr *manual_value(const manual *m)
 
 void manual_conditions(const manual *m, condition_list *out)
 {
-    conditions_add(out, "the integral as typed converges", NULL,
+    conditions_add(out, CONVERGES, NULL,
                    manual_now(m)->converges ? CONDITION_PROVED : CONDITION_OPEN);
     for (size_t k = 0; k < m->record.count; k++) conditions_append(out, &m->record.steps[k].conditions);
 }

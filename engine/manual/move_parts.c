@@ -287,6 +287,15 @@ tw_status move_termwise(work *w, const piece *p)
         } else left = expr_add(e, left, part);
     }
     if (e->error.kind != ERROR_NONE || !left) return TW_ERROR;
+    if (done + inner == 0 && count > 1) { /* then at least each by itself */
+        w->source = "additivity of the integral";
+        for (size_t k = 0; k < count; k++) {
+            piece one = *p;
+            one.body = parts[k];
+            if (require_convergence(w, p, parts[k]) != TW_OK || work_add_integral(w, &one) != TW_OK) return TW_ERROR;
+        }
+        return TW_OK;
+    }
     if (done + inner == 0) {
         char *words = expr_text(e, parts[0]);
         engine_fail(e, ERROR_UNSUITABLE, "no term has a closed form here; the first is %.200s", words ? words : "");

@@ -184,11 +184,11 @@ static void add_values(tw_engine *e, text *out, const sample *s)
 
 static void add_ball(text *out, const acb_t z)
 {
-    char *re = arb_get_str(acb_realref(z), 10, 0);
+    char *re = arb_get_str(acb_realref(z), 7, 0);
     text_add(out, re);
     flint_free(re);
     if (arb_is_zero(acb_imagref(z))) return;
-    char *im = arb_get_str(acb_imagref(z), 10, 0);
+    char *im = arb_get_str(acb_imagref(z), 7, 0);
     text_addf(out, " + (%s)*i", im);
     flint_free(im);
 }
