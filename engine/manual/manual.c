@@ -450,7 +450,9 @@ static bool same_terms(const manual_terms *a, const manual_terms *b)
 {
     if (a->count != b->count) return false;
     for (size_t k = 0; k < a->count; k++)
-        if (!same_term(&a->list[k], &b->list[k]) || a->list[k].outside != b->list[k].outside) return false;
+        if (!same_term(&a->list[k], &b->list[k]) || a->list[k].outside != b->list[k].outside ||
+            strcmp(a->list[k].name, b->list[k].name) != 0) /* a new name alone is a change of variable, too */
+            return false;
     return true;
 }
 

@@ -287,8 +287,11 @@ static tw_status rewrite_terms(work *w, const manual_terms *t, slong offset, siz
         bool picked = which ? which == offset + (slong)k + 1 : !w->remainder;
         expr *made = one->integral;
         if (picked && rewrite_part(w, one->integral, &made, changed) != TW_OK) return TW_ERROR;
-        tw_status status = made == one->integral ? work_add_term(w, one)
-                                                 : work_add_any(w, expr_mul(e, one->outside, made), one->name);
+        bool same_range = made->kind == EXPR_INTEGRAL && one->integral->kind == EXPR_INTEGRAL &&
+                          made->args[0] == one->integral->args[0] && made->args[1] == one->integral->args[1];
+        tw_status status = made == one->integral
+                               ? work_add_term(w, one)
+                               : work_add_any(w, expr_mul(e, one->outside, made), same_range ? one->name : NULL);
         if (status != TW_OK) return TW_ERROR;
     }
     return e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
