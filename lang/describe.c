@@ -166,7 +166,7 @@ static void add_note(session *s, text *out, const expansion *a)
     add_place(s, out, first);
     for (size_t k = 0; k < a->contribution_count; k++) {
         const contribution *c = &a->contributions[k];
-        if (!c->dominant || c == first) continue;
+        if (!c->dominant || c == first || c->place == a->contributions[k - 1].place) continue;
         text_add(out, ", ");
         add_place(s, out, c);
     }

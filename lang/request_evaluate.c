@@ -95,6 +95,9 @@ static tw_status tell_terms(session *s, result *r, const task *t, const number *
         text_add(&line, "; the least term is ");
         status = add_least_term(s, &line, &t->x.kept->expansion, n->least_term);
     }
+    const expansion *a = &t->x.kept->expansion;
+    if (a->contribution_count > 0 && strcmp(a->contributions[0].method, "phase") == 0 && n->label == LABEL_PROVED)
+        text_add(&line, "; what they leave was enclosed by certified quadrature");
     result_line(r, "%s", line.bytes);
     text_clear(&line);
     return status;

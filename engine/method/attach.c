@@ -540,6 +540,9 @@ static tw_status check_known(const task *t, const recurrence *r)
 static tw_status find_for_lane(tw_engine *e, const contribution *c, const lane *l, expr *large, recurrence **out,
                                bool *impossible)
 {
+    if (c->local.count == 0 && c->formal.count == 0)
+        return engine_fail(e, ERROR_UNSUITABLE, "the contribution has no integral of its own on the real line, from which "
+                                                "a recurrence could be found");
     task t = {.e = e, .c = c, .l = l};
     kernel_init(&t.k);
     tw_status status = prepare(&t, large);

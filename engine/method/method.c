@@ -8,10 +8,12 @@
 #include <string.h>
 
 #include "engine/method/descent.h"
+#include "engine/method/phase.h"
 #include "engine/method/scale.h"
 
-static const method *const METHODS[] = {&method_moments, &method_watson, &method_parts, &method_laplace, &method_descent};
-static const char *const PLANNED[] = {"phase", "mellin"};
+static const method *const METHODS[] = {&method_moments, &method_watson, &method_parts, &method_laplace, &method_phase,
+                                        &method_descent};
+static const char *const PLANNED[] = {"mellin"};
 
 enum { METHOD_COUNT = sizeof METHODS / sizeof *METHODS, PLANNED_COUNT = sizeof PLANNED / sizeof *PLANNED };
 
@@ -100,6 +102,30 @@ static void take_reading(expansion *out, reading *r)
     out->rest_floor = r->rest_floor;
 }
 
+/* An oscillating kernel has a reading of its own; *done: it is one. */
+static tw_status expand_oscillating(tw_engine *e, expansion *out, expr *integral, slong terms, const char *by, bool *done)
+{
+    bool asked = by && strcmp(by, method_phase.name) == 0;
+    phase_reading r;
+    char *why = NULL;
+    phase_reading_init(&r);
+    answer a = !by || asked ? phase_read(e, &r, integral, &why) : ANSWER_NO;
+    tw_status status = e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
+    *done = status != TW_OK || a == ANSWER_YES || why || asked;
+    if (status == TW_OK && a == ANSWER_YES) {
+        out->made_by = &method_phase;
+        out->integral = integral;
+        out->why = base_copy("stationary phase: the kernel oscillates");
+        status = phase_expand(e, out, &r, terms);
+    } else if (status == TW_OK && *done) {
+        status = engine_fail(e, ERROR_UNSUITABLE, "stationary phase does not fit: %s",
+                             why ? why : "the kernel does not oscillate");
+    }
+    free(why);
+    phase_reading_clear(&r);
+    return status;
+}
+
 static tw_status expand_one(tw_engine *e, expansion *out, expr *integral, slong terms, const char *by)
 {
     if (descent_applies(integral) || (by && strcmp(by, "descent") == 0)) {
@@ -107,6 +133,9 @@ static tw_status expand_one(tw_engine *e, expansion *out, expr *integral, slong 
             return engine_fail(e, ERROR_UNSUITABLE, "an integral along a path in the complex plane needs the method `descent`");
         return descent_expand(e, out, integral, terms);
     }
+    bool done;
+    tw_status oscillating = expand_oscillating(e, out, integral, terms, by, &done);
+    if (done || oscillating != TW_OK) return oscillating;
     reading r;
     reading_init(&r);
     const method *m = NULL;

@@ -67,7 +67,7 @@ struct method {
     tw_status (*extend)(tw_engine *e, expansion *a, slong terms);
 };
 
-extern const method method_watson, method_parts, method_moments, method_laplace, method_descent;
+extern const method method_watson, method_parts, method_moments, method_laplace, method_phase, method_descent;
 /* The table, in the order in which the engine tries them; *count of them. */
 const method *const *method_table(size_t *count);
 const method *method_find(const char *name);

@@ -213,8 +213,8 @@ static tw_status separate(frame *f, bool moved)
         return TW_ERROR;
     if (holds_i(f->s.phase))
         return engine_fail(e, ERROR_UNAVAILABLE,
-                           "the exponent is not real on the path: an oscillating kernel needs the method "
-                           "`phase` or `descent`, which this version does not have");
+                           "the exponent is not real on the path, and not of the form i*scale*phase that "
+                           "stationary phase takes");
     fmpq_set(r->power, f->s.power);
     f->outside = expr_mul(e, f->outside, f->s.factor);
     bool stretched = !fmpq_is_zero(f->s.stretch);

@@ -398,7 +398,7 @@ static tw_status refuse_body(tw_engine *e, expr *body, expr *x, expr *large, con
     const char *format = NULL;
     error_kind kind = ERROR_UNAVAILABLE;
     if (found) {
-        format = "the kernel %s oscillates: that needs the method `phase`, which this version does not have";
+        format = "the kernel %s oscillates in a form that stationary phase does not take";
     } else if ((found = find_call_with(body, x, large, is_growing))) {
         kind = ERROR_UNSUITABLE;
         format = "%s is the sum of a growing and a decaying exponential: write it with exp and expand the parts";

@@ -21,6 +21,7 @@
 #include "engine/method/lanes.h"
 #include "engine/numeric/split_off.h"
 #include "engine/numeric/terms.h"
+#include "engine/numeric/turned.h"
 
 /* Beyond so many terms the panels take long and the theorem does. */
 enum { SHARP_MOST = 150 };
@@ -608,6 +609,14 @@ tw_status remainder_at_as(tw_engine *e, point_bound *out, expansion *a, const en
     }
     if (a->remainder) {
         status = split_off_at(e, out, a, at, terms, bits);
+        if (status == TW_OK)
+            status = conditions_at(e, &out->conditions, a, at);
+        if (out->label <= LABEL_PROVED && !conditions_all_sure(&out->conditions))
+            out->label = LABEL_CONDITIONAL;
+        return status;
+    }
+    if (is_turned(a)) {
+        status = turned_at(e, out, a, at, terms);
         if (status == TW_OK)
             status = conditions_at(e, &out->conditions, a, at);
         if (out->label <= LABEL_PROVED && !conditions_all_sure(&out->conditions))

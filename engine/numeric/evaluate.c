@@ -9,6 +9,7 @@
 #include "engine/numeric/problem.h"
 #include "engine/numeric/shared.h"
 #include "engine/numeric/terms.h"
+#include "engine/numeric/turned.h"
 
 enum { TERMS_MOST = 600 };
 
@@ -389,6 +390,16 @@ tw_status evaluate_expansion(tw_engine *e, number *out, expansion *a, const env 
         return status;
     if (a->combined)
         return combined_number(e, out, a, at, o);
+    if (turned_is_complex(a)) {
+        out->terms = o->terms >= 0 ? o->terms : a->terms_asked;
+        out->terms_known = FLINT_MAX(out->terms, a->terms_asked);
+        out->label = LABEL_PROVED;
+        if (turned_value(e, out->value, a, at, out->terms, bits) != TW_OK || conditions_at(e, &out->conditions, a, at) != TW_OK)
+            return TW_ERROR;
+        if (!conditions_all_sure(&out->conditions))
+            out->label = LABEL_CONDITIONAL;
+        return TW_OK;
+    }
     if (a->exact && o->terms < 0)
         return sum_exact(e, out, a, at, bits);
     most = o->terms >= 0 ? o->terms : a->terms_asked;

@@ -10,6 +10,7 @@
 #include "engine/numeric/signs.h"
 #include "engine/numeric/split_off.h"
 #include "engine/numeric/terms.h"
+#include "engine/numeric/turned.h"
 
 void remainder_bound_init(remainder_bound *r)
 {
@@ -119,7 +120,7 @@ static char *decimal_words(const arb_t x, bool up)
 /* ---- positive factors ---- */
 
 /* |f| for an expression that is real where it stands. */
-static expr *modulus(tw_engine *e, expr *f)
+expr *bound_modulus(tw_engine *e, expr *f)
 {
     int sign = f ? decide_sign(e, f) : 2;
     if (!f)
@@ -131,7 +132,7 @@ static expr *modulus(tw_engine *e, expr *f)
     if (f->kind == EXPR_PRODUCT) {
         expr *product = expr_int(e, 1);
         for (uint32_t k = 0; k < f->count; k++)
-            product = expr_mul(e, product, modulus(e, f->args[k]));
+            product = expr_mul(e, product, bound_modulus(e, f->args[k]));
         return product;
     }
     return expr_call1(e, FUNCTION_ABS, f);
@@ -278,7 +279,7 @@ static expr *omitted_terms(tw_engine *e, slong kept, slong more, slong factor, e
         if (expansion_order(e, a, k, kept + more, &order, &found) != TW_OK)
             return NULL;
         for (slong j = kept; j < found; j++)
-            sum = expr_add(e, sum, expr_mul(e, expr_int(e, factor), modulus(e, term_formula(e, a, k, order[j], values))));
+            sum = expr_add(e, sum, expr_mul(e, expr_int(e, factor), bound_modulus(e, term_formula(e, a, k, order[j], values))));
         free(order);
     }
     return sum;
@@ -333,7 +334,7 @@ static tw_status factor_modulus(tw_engine *e, arb_t front, expr **rest, expr *fa
             moving = expr_mul(e, moving, parts[k]);
         else
             constant = expr_mul(e, constant, parts[k]);
-    *rest = modulus(e, moving);
+    *rest = bound_modulus(e, moving);
     if (!*rest)
         return TW_ERROR;
     if (real_ball(e, front, constant, 128) != TW_OK)
@@ -561,7 +562,7 @@ static tw_status add_missing(tw_engine *e, const remainder_bound *out, expansion
         status = real_ball(e, x, fronts[j], 128);
         arb_abs(x, x);
         size = status == TW_OK ? decimal_expr(e, x, 4, true) : NULL;
-        *sum = expr_add(e, *sum, modulus(e, expr_mul(e, expr_mul(e, size, rest[j]), put_values(e, c->prefactor, values))));
+        *sum = expr_add(e, *sum, bound_modulus(e, expr_mul(e, expr_mul(e, size, rest[j]), put_values(e, c->prefactor, values))));
         if (!*sum)
             status = TW_ERROR;
     }
@@ -808,6 +809,18 @@ tw_status remainder_for_all(tw_engine *e, remainder_bound *out, expansion *a, co
         out->bound = expr_int(e, 0);
     } else if (a->remainder) {
         status = split_off_for_all(e, out, a, &values, s0);
+    } else if (is_turned(a) && !missing) {
+        bool made;
+        status = turned_for_all(e, out, a, &values, &made, &out->reason);
+        if (status == TW_OK && !made) {
+            out->label = LABEL_ESTIMATED;
+            if (!s0 && turned_is_complex(a))
+                out->from = expr_int(e, 1);
+            else if (!s0)
+                status = useful_from(e, &out->from, a, &values, out->terms);
+            if (status == TW_OK)
+                status = estimated_bound(e, out, a, &values);
+        }
     } else if (all_enclose(e, a, &values)) {
         status = enclosing_bound(e, out, a, &values,
                                  "the amplitude is completely monotone, so that each partial sum encloses (Olver 1974, ch. 3)");

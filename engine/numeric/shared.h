@@ -40,6 +40,9 @@ tw_status groups_agree(tw_engine *e, expansion *a, size_t index, const env *at, 
  * ERROR_VALUE. */
 tw_status conditions_at(tw_engine *e, condition_list *out, const expansion *a, const env *at);
 
+/* |f| for an expression that is real where it stands: abs only around factors of unknown sign. */
+expr *bound_modulus(tw_engine *e, expr *f);
+
 /* The number of terms with the least bound by the envelope of the terms at the point, at most `most`; *least: index of the least
  * term. */
 tw_status best_terms(tw_engine *e, expansion *a, const env *at, slong most, slong *terms, slong *least);
