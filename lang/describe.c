@@ -7,6 +7,7 @@
 #include <string.h>
 
 #include "engine/export/format.h"
+#include "engine/expr/root_names.h"
 #include "engine/method/method.h"
 
 enum { TERMS_SHOWN = 4, NOTE_COLUMN = 54 };
@@ -186,7 +187,46 @@ static tw_status add_lesser(session *s, result *r, expansion *a, size_t k)
     return status;
 }
 
-tw_status describe_series(session *s, result *r, const char *name, expansion *a)
+/* ---- names of algebraic numbers ---- */
+
+static void begin_names(session *s, root_names *n, const expansion *a)
+{
+    root_names_init(n);
+    for (size_t k = 0; k < a->contribution_count; k++) {
+        const contribution *c = &a->contributions[k];
+        root_names_collect(n, c->place, a->integral);
+        root_names_collect(n, c->prefactor, a->integral);
+        for (size_t l = 0; l < c->lane_count; l++) {
+            root_names_collect(n, c->lanes[l].constant, a->integral);
+            for (slong j = 0; c->lanes[l].c.x && j < c->lanes[l].c.count; j++)
+                root_names_collect(n, c->lanes[l].c.x[j], a->integral);
+        }
+    }
+    s->e->root_names = n;
+}
+
+/* A line for each name: what it stands for. */
+static void end_names(session *s, result *r, root_names *n)
+{
+    s->e->root_names = NULL;
+    for (size_t k = 0; k < n->count; k++) {
+        char *words = expr_text(s->e, n->roots[k]);
+        acb_t z;
+        acb_init(z);
+        if (words && ball_value(s->e, z, n->roots[k], 128) == TW_OK) {
+            text digits;
+            text_init(&digits);
+            add_decimal(&digits, acb_realref(z), 12);
+            result_expression(r, "  with %s = %s, which is %s...", n->names[k], words, digits.bytes);
+            text_clear(&digits);
+        }
+        acb_clear(z);
+        free(words);
+    }
+    root_names_clear(n);
+}
+
+static tw_status describe_series_named(session *s, result *r, const char *name, expansion *a)
 {
     text line;
     text_init(&line);
@@ -206,6 +246,15 @@ tw_status describe_series(session *s, result *r, const char *name, expansion *a)
     for (size_t k = 0; status == TW_OK && k < a->contribution_count; k++)
         if (!a->contributions[k].dominant) status = add_lesser(s, r, a, k);
     if (status == TW_OK && !conditions_all_sure(&a->conditions)) result_conditions(r, &a->conditions);
+    return status;
+}
+
+tw_status describe_series(session *s, result *r, const char *name, expansion *a)
+{
+    root_names n;
+    begin_names(s, &n, a);
+    tw_status status = describe_series_named(s, r, name, a);
+    end_names(s, r, &n);
     return status;
 }
 
@@ -292,11 +341,14 @@ static void add_row(session *s, table *t, text *json, const lane *l, slong n, bo
         expr_print(s->e, &cell, c);
         table_take(t, &cell);
     }
+    const root_names *names = s->e->root_names; /* for people only: the result's text parses by itself */
+    s->e->root_names = NULL;
     json_next(json);
     text_addf(json, "{\"n\": %ld, \"exponent\": ", (long)n);
     json_expr(s->e, json, exponent);
     text_add(json, ", \"coefficient\": ");
     json_expr(s->e, json, c);
+    s->e->root_names = names;
     text_add_char(json, '}');
 }
 
@@ -332,12 +384,15 @@ tw_status describe_coefficients(session *s, result *r, expansion *a, slong from,
     if (to >= 0 && reach(s, a, to) != TW_OK) return TW_ERROR;
     text json;
     text_init(&json);
+    root_names n;
+    begin_names(s, &n, a);
     text_add_char(&json, '[');
     tw_status status = TW_OK;
     for (size_t k = 0; status == TW_OK && k < a->contribution_count; k++)
         for (size_t l = 0; status == TW_OK && l < a->contributions[k].lane_count; l++)
             status = add_lane(s, r, &json, a, &a->contributions[k], &a->contributions[k].lanes[l], from, to);
     text_add_char(&json, ']');
+    end_names(s, r, &n);
     result_json(r, "lanes", json.bytes);
     text_clear(&json);
     return status;

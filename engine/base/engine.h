@@ -69,6 +69,7 @@ struct tw_engine {
     struct matching *matching;           /* NULL until the first pattern is matched */
     void (*progress)(void *host, const char *words); /* told now and then what long work is doing; may be NULL */
     void *progress_host;
+    const struct root_names *root_names; /* names by which algebraic numbers are printed; NULL: in full (expr/root_names.h) */
     FILE *trace;                         /* developers' dump of stages; NULL: off */
 };
 

@@ -7,6 +7,7 @@ const char *domain_word(domain_kind d)
 {
     switch (d) {
     case DOMAIN_RATIONAL: return "rational";
+    case DOMAIN_ALGEBRAIC: return "algebraic";
     case DOMAIN_FUNCTIONS: return "rational functions";
     case DOMAIN_CONSTANTS: return "constants";
     case DOMAIN_MIXED: return "mixed";

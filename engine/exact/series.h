@@ -14,6 +14,7 @@
 /* The words of export.md's field `domain`. */
 typedef enum domain_kind {
     DOMAIN_RATIONAL,  /* "rational" */
+    DOMAIN_ALGEBRAIC, /* "algebraic": of a number field, written with `root of` */
     DOMAIN_FUNCTIONS, /* "rational functions": of the other parameters, over Q */
     DOMAIN_CONSTANTS, /* "constants": expressions in fixed constants (pi, log(2), sqrt(2), psi values ...) */
     DOMAIN_MIXED      /* "mixed": parameters and constants */

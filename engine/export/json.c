@@ -2,7 +2,9 @@
  * the language's own syntax, so no reader rounds them. */
 #include <stdlib.h>
 
+#include "engine/ball/tape.h"
 #include "engine/export/format.h"
+#include "engine/expr/root_names.h"
 #include "engine/method/attach.h"
 
 static void add_key(text *out, const char *key)
@@ -81,7 +83,54 @@ static tw_status add_lane(tw_engine *e, text *out, const expansion *a, contribut
     return status;
 }
 
+static void collect_roots(tw_engine *e, root_names *n, const expansion *a, const contribution *c)
+{
+    root_names_collect(n, c->place, a->integral);
+    root_names_collect(n, c->prefactor, a->integral);
+    for (size_t k = 0; k < c->lane_count; k++) {
+        const lane *l = &c->lanes[k];
+        root_names_collect(n, l->constant, a->integral);
+        for (slong j = 0; l->c.x && j < l->c.count; j++) root_names_collect(n, coefficient_expr(e, &l->c, j), a->integral);
+    }
+}
+
+/* {"name": "r", "polynomial": "r^3 - r - 1", "value": "1.3247..."}: at least 60 digits. */
+static tw_status add_generator(tw_engine *e, text *out, const char *name, expr *root)
+{
+    enum { DIGITS = 60 };
+    acb_t z;
+    acb_init(z);
+    tw_status status = ball_value(e, z, root, 400);
+    text_add(out, "{\"name\": ");
+    json_string(out, name);
+    text_add(out, ", \"polynomial\": ");
+    json_expr(e, out, expr_open(e, root, expr_symbol(e, name)));
+    char *re = arb_get_str(acb_realref(z), DIGITS, ARB_STR_NO_RADIUS), *im = arb_get_str(acb_imagref(z), DIGITS, ARB_STR_NO_RADIUS);
+    text_addf(out, ", \"value\": \"%s", re);
+    if (!arb_is_zero(acb_imagref(z))) text_addf(out, " + (%s)*i", im);
+    text_add(out, "\"}");
+    flint_free(re);
+    flint_free(im);
+    acb_clear(z);
+    return status;
+}
+
+static tw_status add_named_contribution(tw_engine *e, text *out, const expansion *a, contribution *c, const root_names *n);
+
+/* Algebraic numbers are printed by the names of the contribution's generators. */
 static tw_status add_contribution(tw_engine *e, text *out, const expansion *a, contribution *c)
+{
+    root_names n;
+    root_names_init(&n);
+    collect_roots(e, &n, a, c);
+    e->root_names = &n;
+    tw_status status = add_named_contribution(e, out, a, c, &n);
+    e->root_names = NULL;
+    root_names_clear(&n);
+    return status;
+}
+
+static tw_status add_named_contribution(tw_engine *e, text *out, const expansion *a, contribution *c, const root_names *n)
 {
     text place;
     text_init(&place);
@@ -101,7 +150,12 @@ static tw_status add_contribution(tw_engine *e, text *out, const expansion *a, c
         if (k) text_add_char(out, ',');
         if (add_lane(e, out, a, c, &c->lanes[k]) != TW_OK) return TW_ERROR;
     }
-    text_addf(out, "],\n   \"domain\": \"%s\", \"generators\": []}", domain_word(c->domain));
+    text_addf(out, "],\n   \"domain\": \"%s\", \"generators\": [", domain_word(c->domain));
+    for (size_t k = 0; k < n->count; k++) {
+        if (k) text_add(out, ", ");
+        if (add_generator(e, out, n->names[k], n->roots[k]) != TW_OK) return TW_ERROR;
+    }
+    text_add(out, "]}");
     return TW_OK;
 }
 

@@ -3,6 +3,7 @@
  * is printed at a level, and a node that binds less tightly than the level asks for gets brackets. Canonical form is
  * only dressed up: 1/2*2^(1/2) is shown as sqrt(2)/2, -1*x + y as y - x. */
 #include "engine/expr/node.h"
+#include "engine/expr/root_names.h"
 
 #include <stdio.h>
 #include <stdlib.h>
@@ -688,6 +689,12 @@ static void print(printer *p, expr *a, int level)
     case EXPR_PRODUCT: print_product(p, a, false, level); break;
     case EXPR_POWER: print_lone_power(p, a, level); break;
     case EXPR_SUM: print_sum(p, a, level); break;
+    case EXPR_ROOT:
+        if (p->engine->root_names && root_name_of(p->engine->root_names, a)) {
+            text_add(p->out, root_name_of(p->engine->root_names, a));
+            break;
+        }
+        /* fall through */
     default:
         if (own_level(a) < level)
             text_add_char(p->out, '(');

@@ -548,23 +548,25 @@ tw_status drafts_add(tw_engine *e, drafts *d, const series *q, const kernel *k)
 
 /* ---- from drafts to lanes ---- */
 
-/* Does a hold a symbol (bit 1), a fixed constant that is no rational (bit 2)? */
+/* Does a hold a symbol (bit 1), a fixed constant that is no rational (bit 2), an algebraic number written as a root (4)? */
 static int expr_ingredients(expr *a)
 {
     if (a->kind == EXPR_NUMBER) return 0;
     if (a->kind == EXPR_SYMBOL) return 1;
     if (a->kind == EXPR_CONSTANT) return 2;
+    if (a->kind == EXPR_ROOT) return 4;
     bool arithmetic =
         a->kind == EXPR_SUM || a->kind == EXPR_PRODUCT ||
         (a->kind == EXPR_POWER && a->args[1]->kind == EXPR_NUMBER && fmpz_is_one(fmpq_denref(expr_number(a->args[1]))));
     int found = arithmetic ? 0 : 2;
-    for (uint32_t k = 0; k < a->count && found != 3; k++) found |= expr_ingredients(a->args[k]);
+    for (uint32_t k = 0; k < a->count && found != 7; k++) found |= expr_ingredients(a->args[k]);
     return found;
 }
 
 static domain_kind values_domain(expr *const *x, slong count)
 {
-    static const domain_kind kinds[] = {DOMAIN_RATIONAL, DOMAIN_FUNCTIONS, DOMAIN_CONSTANTS, DOMAIN_MIXED};
+    static const domain_kind kinds[] = {DOMAIN_RATIONAL,  DOMAIN_FUNCTIONS, DOMAIN_CONSTANTS, DOMAIN_MIXED,
+                                        DOMAIN_ALGEBRAIC, DOMAIN_MIXED,     DOMAIN_CONSTANTS, DOMAIN_MIXED};
     int found = 0;
     for (slong n = 0; n < count; n++) found |= expr_ingredients(x[n]);
     return kinds[found];
