@@ -330,7 +330,7 @@ static bool disc_patch(walker *w, double c, double width, bool choosy)
     arf_set_d(R, 5 * width);
     fine = slope_positive(w, centre, half) && disc_prove(size, w, centre, R);
     if (fine) {
-        slong bits = w->p->bits, length = DISC_LENGTH;
+        slong bits = w->p->bits, length = DISC_LENGTH + w->first / 6; /* the kept terms cancel like (t/rho)^first */
         q = patches_add(w->s, 1, length);
         fine = vanishes(w, c) || disc_series(q->poly, w, centre, half, length, bits);
         if (vanishes(w, c)) {

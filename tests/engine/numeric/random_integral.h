@@ -59,8 +59,9 @@ static inline void random_integral(dice *d, char *out, size_t room)
     static const char *const powers[] = {"", "", "", "x^(-1/2)*", "x^(-2/3)*", "x^(1/3)*", "sqrt(x)*", "x*", "x^(3/4)*"};
     static const char *const kernels[] = {"x", "x", "x", "x", "2*x", "x^2", "x^3", "x/3"};
     static const char *const phases[] = {"(x + x^2)", "sinh(x)", "(exp(x) - 1)", "(2*x + x^3)", "log(1 + x)", "(x + x^2/5 + x^4)"};
+    static const char *const last[] = {"(%s - x)^(-1/2)", "(%s - x)^(1/3)", "log(%s - x)", "(1 + %s - x)^(-1/3)"};
     char one[120], two[120], end[24];
-    bool parts = dice_roll(d, 4) == 0;
+    bool parts = dice_roll(d, 4) == 0, singular;
     random_factor(d, one, sizeof one);
     random_factor(d, two, sizeof two);
     if (dice_roll(d, 2))
@@ -69,10 +70,13 @@ static inline void random_integral(dice *d, char *out, size_t room)
         snprintf(end, sizeof end, "%d/%d", dice_between(d, 1, 5), dice_between(d, 1, 2));
     else
         snprintf(end, sizeof end, "inf");
+    singular = end[0] != 'i' && dice_roll(d, 3) == 0;
+    if (singular) /* at the far end, mostly */
+        snprintf(two, sizeof two, last[dice_roll(d, 4)], end);
     if (parts) {
         snprintf(out, room, "integral from 0 to %s of %s*%s*exp(-s*%s) dx", end, one, two, phases[dice_roll(d, 6)]);
     } else if (dice_roll(d, 6) == 0) {
-        snprintf(out, room, "integral from 1 to inf of %s*%s*exp(-s*x) dx", one, two);
+        snprintf(out, room, "integral from 1 to inf of %s*%s*exp(-s*x) dx", one, singular ? "1" : two);
     } else {
         const char *log_part = dice_roll(d, 8) == 0 ? "log(x)*" : "";
         snprintf(out, room, "integral from 0 to %s of %s%s%s*%s*exp(-s*%s) dx", end, powers[dice_roll(d, 9)], log_part, one, two,

@@ -18,18 +18,29 @@ typedef struct table_row {
     slong s, first; /* groups of powers x^n, n < first, are kept */
 } table_row;
 
-/* W1 to W4 at several s, and cases with a fractional power, a finite end, a logarithm, another kernel, a general phase. */
+/* W1 to W4 at several s, near the least term and with three terms, and cases with a fractional power, a finite end, a logarithm, another kernel, a general phase. */
 static const table_row table_rows[] = {
     {"W1", "integral from 0 to inf of exp(-s*x)/sqrt(1+x^2) dx", 5, 4},
+    {"W1", "integral from 0 to inf of exp(-s*x)/sqrt(1+x^2) dx", 5, 6},
     {"W1", "integral from 0 to inf of exp(-s*x)/sqrt(1+x^2) dx", 20, 20},
+    {"W1", "integral from 0 to inf of exp(-s*x)/sqrt(1+x^2) dx", 20, 6},
     {"W1", "integral from 0 to inf of exp(-s*x)/sqrt(1+x^2) dx", 100, 100},
+    {"W1", "integral from 0 to inf of exp(-s*x)/sqrt(1+x^2) dx", 100, 6},
     {"W2", "integral from 0 to inf of exp(-s*x)*cos(x)/(1+x) dx", 5, 4},
+    {"W2", "integral from 0 to inf of exp(-s*x)*cos(x)/(1+x) dx", 5, 3},
     {"W2", "integral from 0 to inf of exp(-s*x)*cos(x)/(1+x) dx", 20, 19},
+    {"W2", "integral from 0 to inf of exp(-s*x)*cos(x)/(1+x) dx", 20, 3},
+    {"W2", "integral from 0 to inf of exp(-s*x)*cos(x)/(1+x) dx", 100, 100},
     {"W2", "integral from 0 to inf of exp(-s*x)*cos(x)/(1+x) dx", 100, 3},
+    {"W3", "integral from 0 to inf of exp(-s*x)/((20*x-1)^2+1) dx", 5, 0},
     {"W3", "integral from 0 to inf of exp(-s*x)/((20*x-1)^2+1) dx", 20, 0},
     {"W3", "integral from 0 to inf of exp(-s*x)/((20*x-1)^2+1) dx", 100, 5},
+    {"W3", "integral from 0 to inf of exp(-s*x)/((20*x-1)^2+1) dx", 100, 3},
     {"W4", "integral from 0 to inf of exp(-s*x)*cosh(3*x)*sqrt(1+x) dx", 5, 6},
+    {"W4", "integral from 0 to inf of exp(-s*x)*cosh(3*x)*sqrt(1+x) dx", 5, 3},
     {"W4", "integral from 0 to inf of exp(-s*x)*cosh(3*x)*sqrt(1+x) dx", 20, 21},
+    {"W4", "integral from 0 to inf of exp(-s*x)*cosh(3*x)*sqrt(1+x) dx", 20, 3},
+    {"W4", "integral from 0 to inf of exp(-s*x)*cosh(3*x)*sqrt(1+x) dx", 100, 101},
     {"W4", "integral from 0 to inf of exp(-s*x)*cosh(3*x)*sqrt(1+x) dx", 100, 3},
     {"third root", "integral from 0 to inf of x^(-2/3)*exp(-s*x)/(1+x) dx", 10, 6},
     {"end", "integral from 0 to 2 of exp(-s*x)/(1+x)^2 dx", 10, 6},

@@ -95,7 +95,7 @@ static void not_analytic_on_the_path(void **state)
 /* The steps, weighed again at other s, still bound the rest: |R| <= int t^power H(t) exp(-s t) dt (DLMF 8.2.1 for the weights). */
 static void steps_hold_elsewhere(void **state)
 {
-    const table_row *row = table_rows + 3;
+    const table_row *row = table_rows + 6; /* W2, s = 5 */
     tw_engine *e = tw_engine_new();
     char *reason = NULL;
     problem *p = NULL;
