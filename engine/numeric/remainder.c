@@ -51,7 +51,12 @@ static void short_decimal(fmpq_t out, const arb_t x, slong digits, bool up)
     mag_init(m);
     arb_get_mag(m, x);
     fmpq_zero(out);
-    if (!mag_is_zero(m) && mag_is_finite(m)) {
+    if (up && !mag_is_zero(m) && mag_log2(m) < -1e6) { /* a tiny number rounded up generously */
+        fmpz_set_ui(ten, 10);
+        fmpz_pow_ui(ten, ten, 300000);
+        fmpq_set_fmpz(out, ten);
+        fmpq_inv(out, out);
+    } else if (!mag_is_zero(m) && mag_is_finite(m) && fabs(mag_log2(m)) < 1e7) {
         exponent = (slong)floor(mag_log2(m) * 0.30102999566398) - digits + 1;
         arb_set_ui(power, 10);
         arb_pow_ui(power, power, (ulong)labs(exponent), 128);
@@ -587,6 +592,27 @@ static bool is_alone(const expansion *a, size_t index)
 }
 
 /* One part of a contribution; *extra: terms of the last group that are not kept. */
+/* Are the bound's constants of a size that a formula can show? Where an amplitude oscillates far out, they may be beyond all measure. */
+static bool writable(const power_bound *b)
+{
+    enum { LOG2_MOST = 20000 };
+    double most = -HUGE_VAL;
+    mag_t m;
+    mag_init(m);
+    for (slong k = 0; k < (b->K + 1) * (b->K + 1); k++) {
+        arb_get_mag(m, b->table + k);
+        most = mag_is_zero(m) ? most : fmax(most, mag_log2(m));
+    }
+    arb_get_mag(m, b->end);
+    most = mag_is_zero(m) ? most : fmax(most, mag_log2(m));
+    for (slong k = 0; k < b->signed_count; k++) {
+        arb_get_mag(m, b->signed_part + k);
+        most = mag_is_zero(m) ? most : fmax(most, mag_log2(m));
+    }
+    mag_clear(m);
+    return most < LOG2_MOST;
+}
+
 static tw_status part_bound(tw_engine *e, remainder_bound *out, expansion *a, size_t index, size_t part, const env *at,
                             const env *values, slong *extra, expr **sum)
 {
@@ -597,6 +623,10 @@ static tw_status part_bound(tw_engine *e, remainder_bound *out, expansion *a, si
     tw_status status;
     power_bound_init(&b);
     status = power_bound_of(e, &b, a, index, part, at, out->terms, &made, extra, &reason);
+    if (status == TW_OK && made && !writable(&b)) {
+        made = false;
+        reason = base_copy("the bound is too large to be of use");
+    }
     if (status == TW_OK && made && (b.K > 0 || !exponent_exact(e, &b)) && !from_one(b.S0)) {
         made = false;
         reason = base_copy("the bound with logarithms or an irrational power holds from scale 1 on only");
