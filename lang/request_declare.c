@@ -6,6 +6,7 @@
 #include "engine/method/combine.h"
 #include "engine/method/descent.h"
 #include "engine/method/method.h"
+#include "engine/method/phase.h"
 #include "lang/request.h"
 
 static void declared(result *r, const statement *st)
@@ -164,6 +165,15 @@ static tw_status summarise(session *s, text *out, expr *a)
         return TW_OK;
     }
     if (descent_applies(a)) return summarise_path(s, out, a);
+    text oscillating;
+    text_init(&oscillating);
+    if (phase_summary(s->e, &oscillating, a)) {
+        add_dependence(s, out, a);
+        text_add(out, oscillating.bytes);
+        text_clear(&oscillating);
+        return TW_OK;
+    }
+    text_clear(&oscillating);
     reading seen;
     reading_init(&seen);
     tw_status status = integral_read(s->e, &seen, a);

@@ -84,7 +84,8 @@ static expr *turned_kernel(const point_work *w, const fmpq_t theta, expr **prefa
     }
     expr *i = expr_constant_of(e, CONSTANT_I);
     expr *angle = expr_mul(e, expr_fmpq(e, phi), expr_constant_of(e, CONSTANT_PI));
-    expr *scale = expr_pow(e, w->r->large, expr_fmpq(e, w->r->power)), *moving = expr_expand(e, expr_mul(e, scale, w->height));
+    expr *scale = expr_pow(e, w->r->large, expr_fmpq(e, w->r->power));
+    expr *moving = expr_expand(e, expr_mul(e, scale, w->height));
     fmpq_clear(phi);
     bool still = w->height && expr_is_zero(w->height);
     if (w->kernel == PHASE_EXP) {
@@ -204,8 +205,10 @@ static tw_status put_residue(point_work *w, const lane *l, const fmpq_t factor_p
         fmpq_add(theta, theta, d);
         if (w->tau < 0) fmpq_neg(theta, theta);
         fmpz_bin_uiui(binomial, (ulong)l->log_power, (ulong)m);
-        expr *half = expr_div(e, expr_constant_of(e, CONSTANT_PI), expr_mul(e, expr_int(e, 2), expr_fmpq(e, w->r->power)));
-        expr *constant = expr_mul(e, l->constant, expr_mul(e, expr_fmpz(e, binomial), expr_pow(e, half, expr_int(e, m))));
+        expr *twice = expr_mul(e, expr_int(e, 2), expr_fmpq(e, w->r->power));
+        expr *half = expr_div(e, expr_constant_of(e, CONSTANT_PI), twice);
+        expr *share = expr_mul(e, expr_fmpz(e, binomial), expr_pow(e, half, expr_int(e, m)));
+        expr *constant = expr_mul(e, l->constant, share);
         status = put_lane(w, constant, theta, l->log_power - m, exponent, by, x, count);
     }
     fmpz_clear(binomial);
@@ -299,9 +302,11 @@ static slong cut_contribution(contribution *c, bool small, slong terms)
             n++;
         }
     for (size_t k = 1; k < n; k++) /* in order of size */
-        for (size_t j = k; j > 0 && (fmpq_cmp(&list[j], &list[j - 1]) > 0) != small && !fmpq_equal(&list[j], &list[j - 1]);
-             j--)
+        for (size_t j = k; j > 0; j--) {
+            int order = fmpq_cmp(&list[j], &list[j - 1]);
+            if (order == 0 || (order > 0) == small) break;
             fmpq_swap(&list[j], &list[j - 1]);
+        }
     if ((slong)n > terms) {
         fmpq *last = &list[terms - 1];
         fmpq_t at;
@@ -489,7 +494,8 @@ static void record_points(tw_engine *e, expansion *out, const phase_reading *r)
                            expr_substitute(e, r->p, r->x, r->variable));
     if (shown) expr_print(e, &words, shown);
     for (size_t k = 0; k < r->point_count; k++) {
-        text_addf(&words, "%s %s%s = ", k ? "," : ";", r->stationary[k] ? "stationary at " : "end ", r->variable->is.name);
+        text_addf(&words, "%s %s%s = ", k ? "," : ";", r->stationary[k] ? "stationary at " : "end ",
+                  r->variable->is.name);
         expr_print(e, &words, r->points[k]);
     }
     s->form = text_take(&words);
@@ -501,7 +507,8 @@ static void record_points(tw_engine *e, expansion *out, const phase_reading *r)
 static const char *kernel_words(const phase_reading *r)
 {
     return r->parts[0].kernel == PHASE_EXP ? "each term of order alpha has the factor exp(i*tau*pi*alpha/2)"
-                                           : "the contributions of exp(i*phase) and exp(-i*phase) are added: a real result";
+                                           : "the contributions of exp(i*phase) and exp(-i*phase) are added: a real "
+                                             "result";
 }
 
 tw_status phase_expand(tw_engine *e, expansion *out, const phase_reading *r, slong terms)
@@ -524,8 +531,8 @@ tw_status phase_expand(tw_engine *e, expansion *out, const phase_reading *r, slo
     if (e->error.kind != ERROR_NONE) return TW_ERROR;
     if (out->contribution_count == 0)
         return engine_fail(e, ERROR_UNSUITABLE,
-                           "every term of every end vanishes: the integral is smaller than all powers of %s; `evaluate` "
-                           "gives its value",
+                           "every term of every end vanishes: the integral is smaller than all powers of %s; "
+                           "`evaluate` gives its value",
                            r->large->is.name);
     return TW_OK;
 }
@@ -560,8 +567,8 @@ static tw_status phase_extend(tw_engine *e, expansion *a, slong terms)
     expansion more;
     phase_reading_init(&r);
     expansion_init(&more);
-    tw_status status = phase_read(e, &r, a->integral, &why) == ANSWER_YES ? phase_expand(e, &more, &r, terms + terms / 2)
-                                                                           : TW_ERROR;
+    bool read = phase_read(e, &r, a->integral, &why) == ANSWER_YES;
+    tw_status status = read ? phase_expand(e, &more, &r, terms + terms / 2) : TW_ERROR;
     if (status == TW_OK) {
         contribution *list = a->contributions;
         size_t count = a->contribution_count;
@@ -570,8 +577,9 @@ static tw_status phase_extend(tw_engine *e, expansion *a, slong terms)
         more.contributions = list;
         more.contribution_count = count;
         for (size_t k = 0; k < a->contribution_count; k++) a->contributions[k].searched = terms;
-    } else if (e->error.kind == ERROR_NONE) {
-        engine_fail(e, ERROR_INTERNAL, "an oscillating integral could not be read again");
+    } else if (!read && e->error.kind == ERROR_NONE) { /* a sum with other integrals: its terms are all that is known */
+        for (size_t k = 0; k < a->contribution_count; k++) a->contributions[k].searched = terms;
+        status = TW_OK;
     }
     free(why);
     expansion_clear(&more);

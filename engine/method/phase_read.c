@@ -95,7 +95,8 @@ static answer read_kernel(tw_engine *e, phase_reading *r, expr *body, char **why
     expr *kernel = NULL, *q = expr_int(e, 1), *rest;
     for (size_t k = 0; k < n; k++) {
         if (is_kernel(factors[k], r->large, r->x)) {
-            if (kernel) return refuse(why, "two factors oscillate with the large parameter: write their product as a sum");
+            if (kernel)
+                return refuse(why, "two factors oscillate with the large parameter: write their product as a sum");
             kernel = factors[k];
         } else if (!expr_has(factors[k], r->x)) {
             r->outside = expr_mul(e, r->outside, factors[k]);
@@ -208,7 +209,8 @@ static bool add_roots(tw_engine *e, phase_reading *r, const fmpz_poly_t f)
     } else if (degree == 2) {
         expr *A = expr_fmpz(e, a), *B = expr_fmpz(e, b), *C = expr_fmpz(e, c);
         expr *square = expr_sub(e, expr_mul(e, B, B), expr_product(e, (expr *[]){expr_int(e, 4), A, C}, 3));
-        for (int sign = -1; sign <= 1 && square && expr_is_number(square) && fmpq_sgn(expr_number(square)) > 0; sign += 2) {
+        bool real = square && expr_is_number(square) && fmpq_sgn(expr_number(square)) > 0;
+        for (int sign = -1; sign <= 1 && real; sign += 2) {
             expr *root = expr_add(e, expr_neg(e, B), expr_mul(e, expr_int(e, sign), expr_sqrt(e, square)));
             root = expr_expand(e, expr_div(e, root, expr_mul(e, expr_int(e, 2), A)));
             if (lies_inside(e, r, root)) ok = ok && add_point(e, r, root);
@@ -419,7 +421,8 @@ static bool is_smooth_on(tw_engine *e, tape *values, double from, double to, int
     if (is_good(values, from, to)) return true;
     if (depth == 40 || --*work < 0 || !budget_ok(e)) return false;
     double middle = 0.5 * (from + to);
-    return is_smooth_on(e, values, from, middle, depth + 1, work) && is_smooth_on(e, values, middle, to, depth + 1, work);
+    return is_smooth_on(e, values, from, middle, depth + 1, work) &&
+           is_smooth_on(e, values, middle, to, depth + 1, work);
 }
 
 /* Analytic for all x >= 2^20, by a record. */
@@ -478,8 +481,8 @@ static answer check_smoothness(tw_engine *e, phase_reading *r, char **why)
             continue;
         }
         if (n == 1 && !is_smooth(e, r, f))
-            return refuse(why, "the amplitude or the phase is not seen to be analytic inside the path: split the integral "
-                               "where it changes and expand the parts");
+            return refuse(why, "the amplitude or the phase is not seen to be analytic inside the path: split the "
+                               "integral where it changes and expand the parts");
     }
     return ANSWER_YES;
 }
@@ -518,7 +521,27 @@ answer phase_read(tw_engine *e, phase_reading *r, expr *integral, char **why)
     if (a == ANSWER_YES) a = find_direction(e, r, why);
     if (a == ANSWER_YES) a = check_smoothness(e, r, why);
     if (a == ANSWER_YES) a = find_points(e, r, why);
-    if (e->error.kind == ERROR_TIME || e->error.kind == ERROR_MEMORY || e->error.kind == ERROR_INTERRUPT) return ANSWER_NO;
+    error_kind kind = e->error.kind;
+    if (kind == ERROR_TIME || kind == ERROR_MEMORY || kind == ERROR_INTERRUPT) return ANSWER_NO;
     engine_forgive(e);
     return a;
+}
+
+bool phase_summary(tw_engine *e, text *out, expr *integral)
+{
+    phase_reading r;
+    char *why = NULL;
+    phase_reading_init(&r);
+    bool yes = phase_read(e, &r, integral, &why) == ANSWER_YES;
+    if (yes) text_add(out, "; the kernel oscillates; critical points: ");
+    for (size_t k = 0; k < r.point_count && yes; k++) {
+        text_addf(out, "%s%s%s = ", k ? ", " : "", r.stationary[k] ? "" : "the end ", r.variable->is.name);
+        expr_print(e, out, r.points[k]);
+        if (r.stationary[k]) text_add(out, " (stationary)");
+    }
+    if (!yes && why) text_addf(out, "; the kernel oscillates, but %s", why);
+    yes = yes || why;
+    free(why);
+    phase_reading_clear(&r);
+    return yes;
 }

@@ -394,7 +394,8 @@ tw_status evaluate_expansion(tw_engine *e, number *out, expansion *a, const env 
         out->terms = o->terms >= 0 ? o->terms : a->terms_asked;
         out->terms_known = FLINT_MAX(out->terms, a->terms_asked);
         out->label = LABEL_PROVED;
-        if (turned_value(e, out->value, a, at, out->terms, bits) != TW_OK || conditions_at(e, &out->conditions, a, at) != TW_OK)
+        status = turned_value(e, out->value, a, at, out->terms, bits);
+        if (status != TW_OK || conditions_at(e, &out->conditions, a, at) != TW_OK)
             return TW_ERROR;
         if (!conditions_all_sure(&out->conditions))
             out->label = LABEL_CONDITIONAL;

@@ -432,7 +432,7 @@ static tw_status add_signed_part(tw_engine *e, expr **sum, arb_t lost, const pow
         arb_add(lost, lost, c, 128);
     }
     if (status == TW_OK) {
-        *sum = expr_add(e, *sum, expr_mul(e, modulus(e, inner), factor_rest));
+        *sum = expr_add(e, *sum, expr_mul(e, bound_modulus(e, inner), factor_rest));
         status = *sum ? TW_OK : TW_ERROR;
     }
     arb_clear(rounded);

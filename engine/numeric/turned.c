@@ -52,8 +52,8 @@ tw_status turned_at(tw_engine *e, point_bound *out, expansion *a, const env *at,
     tw_status status = quadrature(e, value, rest, at, DIGITS, true, NULL);
     out->label = LABEL_PROVED;
     if (status == TW_OK && !arb_contains_zero(acb_imagref(value)))
-        status = engine_fail(e, ERROR_UNAVAILABLE, "the expansion is complex there: expand its real and imaginary parts, "
-                                                   "with cos and sin in place of exp");
+        status = engine_fail(e, ERROR_UNAVAILABLE, "the expansion is complex there: expand its real and "
+                                                   "imaginary parts, with cos and sin in place of exp");
     arb_set(out->error, acb_realref(value));
     if (TW_BOUND_FACTOR != 1) arb_mul_2exp_si(out->error, out->error, -2);
     if (status != TW_OK && !is_fatal(e) && e->error.kind != ERROR_UNAVAILABLE) {
@@ -122,7 +122,8 @@ static double piece_bound_of(tape *values, double from, double to)
     arf_init(top);
     arb_set_d(acb_realref(x), 0.5 * (from + to));
     /* room for the rounding of the middle: neighbouring pieces leave no gap */
-    mag_set_d(arb_radref(acb_realref(x)), 0.5 * (to - from) * (1 + 1e-12) + 0x1p-50 * fmax(fabs(from), fabs(to)) + 1e-300);
+    double room = 0x1p-50 * fmax(fabs(from), fabs(to)) + 1e-300;
+    mag_set_d(arb_radref(acb_realref(x)), 0.5 * (to - from) * (1 + 1e-12) + room);
     tape_eval(v, values, x, true, 64);
     double out = INFINITY;
     if (acb_is_finite(v)) {
@@ -135,7 +136,8 @@ static double piece_bound_of(tape *values, double from, double to)
     return out;
 }
 
-/* An upper bound of int_from^to |h| dx, 0 < to - from: pieces are halved where they weigh most. INFINITY: none found. */
+/* An upper bound of int_from^to |h| dx, 0 < to - from: pieces are halved where they weigh most. INFINITY: none found.
+ */
 static double variation_on(tw_engine *e, tape *values, double from, double to)
 {
     enum { PIECES = 3000 };
@@ -343,16 +345,20 @@ tw_status turned_for_all(tw_engine *e, remainder_bound *out, expansion *a, const
     for (size_t k = 0; k < r.point_count; k++) stationary = stationary || r.stationary[k];
     slong M = 0;
     expr *extra = expr_int(e, 0);
-    if (status == TW_OK && (read != ANSWER_YES || stationary)) {
+    if (status == TW_OK && read != ANSWER_YES) {
+        status = say(reason, "it is a sum with other integrals: expand each by itself; at one value `evaluate` proves one");
+    } else if (status == TW_OK && stationary) {
         status = say(reason, "a stationary point counts: for all values no bound of its turned branch is known; at one "
                              "value `evaluate` proves one");
     } else if (status == TW_OK && expr_has(r.outside, r.large)) {
-        status = say(reason, "the factor in front of the integral holds the large parameter: expand the integral alone");
+        status = say(reason, "the factor in front of the integral holds the large parameter: expand the integral "
+                             "alone");
     } else if (status == TW_OK) {
         if (expansion_extend(e, a, out->terms + MORE + 1) != TW_OK) status = TW_ERROR;
         if (status == TW_OK) status = count_orders(e, a, &r, out->terms, &M, &extra);
         if (status == TW_OK && (M < 0 || M > ORDERS))
-            status = say(reason, "the amplitude is not smooth at an end, or too many terms are kept for the variation bound");
+            status = say(reason, "the amplitude is not smooth at an end, or too many terms are kept for the variation "
+                                 "bound");
         if (status == TW_OK && !*reason) {
             double C = ends_vanish(e, &r, M + 1) ? 0 : INFINITY;
             for (size_t k = 0; k < r.part_count && isfinite(C); k++) {

@@ -15,8 +15,10 @@ tw_status turned_at(tw_engine *e, point_bound *out, expansion *a, const env *at,
 bool turned_is_complex(const expansion *a);
 tw_status turned_value(tw_engine *e, acb_t value, expansion *a, const env *at, slong terms, slong bits);
 
-/* A bound for all values of the large parameter, where only ends count and the amplitude is smooth there: the next terms
- * and the total variation behind them (DLMF 2.3(i), the text before 2.3.6). *made false: *reason, fresh words, says why. */
-tw_status turned_for_all(tw_engine *e, remainder_bound *out, expansion *a, const env *values, bool *made, char **reason);
+/* A bound for all values of the large parameter, where only ends count and the amplitude is smooth there: the next
+ * terms and the total variation behind them (DLMF 2.3(i), the text before 2.3.6). *made false: *reason, fresh words,
+ * says why. */
+tw_status turned_for_all(tw_engine *e, remainder_bound *out, expansion *a, const env *values, bool *made,
+                         char **reason);
 
 #endif
