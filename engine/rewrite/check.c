@@ -40,12 +40,27 @@ static double seconds_now(void)
 static bool forgive_try(tw_engine *e, double deadline)
 {
     const error_kind k = e->error.kind;
-    if (k == ERROR_INTERRUPT || k == ERROR_MEMORY || k == ERROR_INTERNAL) return false;
+    if (k == ERROR_INTERRUPT || k == ERROR_MEMORY) return false;
     if (k == ERROR_TIME && deadline > 0 && seconds_now() >= deadline) return false;
     engine_forgive(e);
     return true;
 }
 
+typedef struct side_try {
+    tw_engine *e;
+    acb_ptr out;
+    expr *a;
+    slong digits;
+} side_try;
+
+static tw_status side_quadrature(void *host)
+{
+    const side_try *t = host;
+    const env nothing = {0, NULL, NULL};
+    return quadrature(t->e, t->out, t->a, &nothing, t->digits, true, NULL);
+}
+
+/* An edge of its own: a library call that goes on past this side's seconds is left, and only this side has no ball. */
 static tw_status side_value(checking *c, acb_t out, expr *a, slong digits, side_kind *kind)
 {
     tw_engine *e = c->e;
@@ -53,8 +68,8 @@ static tw_status side_value(checking *c, acb_t out, expr *a, slong digits, side_
     double own = now + side_seconds < c->until ? now + side_seconds : c->until;
     if (own < now + 0.05) own = now + 0.05;
     if (deadline <= 0 || own < deadline) e->deadline = own;
-    const env nothing = {0, NULL, NULL};
-    tw_status status = quadrature(e, out, a, &nothing, digits, true, NULL);
+    side_try here = {e, out, a, digits};
+    tw_status status = engine_protect(e, side_quadrature, &here);
     e->deadline = deadline;
     *kind = status == TW_OK && acb_is_finite(out) ? SIDE_BALL : SIDE_NOTHING;
     if (status == TW_OK) return TW_OK;
