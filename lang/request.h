@@ -66,6 +66,8 @@ request_function request_large, request_small, request_given, request_grant, req
     request_write, request_help, request_quit, request_derive, request_move, request_done, request_undo, request_replay,
     request_expansion_of, request_rule_from;
 request_function request_recurrence, request_check_recurrence, request_growth;
+/* "  the terms are least near n = s/2; the error there is about exp(-s)", where that is known soon. */
+tw_status growth_tell_least(session *s, result *r, expansion *a);
 request_function request_rule, request_pass, request_rewrite, request_check_rule, request_check_file, request_why_not;
 
 /* The steps of the open derivation, or an error when none is open; the steps of a kept one. */

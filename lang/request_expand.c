@@ -128,6 +128,7 @@ tw_status request_remainder(session *s, const statement *st, result *r, value **
         result_restart(r, "remainder");
         result_string(r, "of", x.name);
         describe_remainder(s, r, &x.kept->expansion, &bound);
+        status = growth_tell_least(s, r, &x.kept->expansion);
     }
     remainder_bound_clear(&bound);
     subject_clear(&x);

@@ -120,7 +120,8 @@ static void add_reach(session *s, text *t, const expansion *a, const lane *l, co
     acb_clear(z);
 }
 
-static void tell_least(session *s, result *r, const expansion *a, const lane *l, const large_order *g)
+/* before: how the line begins. */
+static void tell_least(session *s, result *r, const expansion *a, const lane *l, const large_order *g, const char *before)
 {
     if (g->m == 0) {
         result_line(r, "  the series converges where the terms fall: there is no least one");
@@ -128,7 +129,7 @@ static void tell_least(session *s, result *r, const expansion *a, const lane *l,
     }
     text t;
     text_init(&t);
-    text_add(&t, "  least term near n = ");
+    text_addf(&t, "  %s near n = ", before);
     add_reach(s, &t, a, l, g, g->m);
     text_add(&t, "; the error there is about exp(-");
     add_reach(s, &t, a, l, g, 1);
@@ -178,7 +179,7 @@ static tw_status tell_growth(session *s, result *r, text *json, const expansion 
     result_labelled(r, t.bytes, sure ? "proved" : "estimated", NULL);
     for (size_t k = 0; k < g->count; k++) tell_part(s, r, g, k);
     if (known->label == RECURRENCE_FITTED) result_line(r, "  from a recurrence that is fitted, not proved");
-    tell_least(s, r, a, l, g);
+    tell_least(s, r, a, l, g, "least term");
     add_object(s, json, l, g, t.bytes);
     text_clear(&t);
     return s->e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
@@ -260,6 +261,31 @@ static tw_status tell_all(session *s, result *r, expansion *a)
         status = engine_fail(s->e, ERROR_UNSUITABLE, "%s", why ? why : "the expansion has no coefficients");
     free(why);
     return status;
+}
+
+/* The first lane of the first dominant contribution, when its form is found quickly. */
+static void try_growth(session *s, result *r, expansion *a, contribution *c)
+{
+    const recurrence *known;
+    if (lane_recurrence(s->e, c, &c->lanes[0], a->large, &known) != TW_OK) return;
+    slong wanted = FLINT_MAX(known->needed, FLINT_MAX(known->order, 16)) + 1;
+    if (c->lanes[0].c.count < wanted && expansion_extend(s->e, a, wanted * (slong)c->lane_count) != TW_OK) return;
+    large_order g;
+    large_order_init(&g);
+    if (find_growth(s, &g, &c->lanes[0], known) == TW_OK && g.m > 0)
+        tell_least(s, r, a, &c->lanes[0], &g, "the terms are least");
+    large_order_clear(&g);
+}
+
+tw_status growth_tell_least(session *s, result *r, expansion *a)
+{
+    contribution *c = NULL;
+    for (size_t k = 0; k < a->contribution_count && !c; k++)
+        if (a->contributions[k].dominant) c = &a->contributions[k];
+    if (!c || c->terminates || c->lane_count == 0) return TW_OK;
+    double before = quick_begin(s->e, 1);
+    try_growth(s, r, a, c);
+    return quick_end(s->e, before) ? TW_OK : TW_ERROR;
 }
 
 tw_status request_growth(session *s, const statement *st, result *r, value **keep)

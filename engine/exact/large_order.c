@@ -7,6 +7,8 @@
 #include <stdlib.h>
 #include <string.h>
 
+#include "engine/exact/values.h"
+
 enum { PLACES = 160, CORRECTIONS = 10, ESTIMATE_BITS = 1600 };
 
 void large_order_init(large_order *g)
@@ -495,7 +497,8 @@ tw_status large_order_find(tw_engine *e, large_order *out, const recurrence *r, 
         }
         out->exact = true;
         out->count = 1;
-        out->distance = expr_call1(e, FUNCTION_ABS, one->f);
+        int sign = value_is_real(e, one->f) ? value_sign(e, one->f) : 2;
+        out->distance = sign == 1 ? one->f : sign == -1 ? expr_neg(e, one->f) : expr_call1(e, FUNCTION_ABS, one->f);
         return out->distance ? TW_OK : TW_ERROR;
     }
     return e->error.kind == ERROR_NONE ? find_by_fit(e, out, r, c, count) : TW_ERROR;

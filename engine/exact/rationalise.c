@@ -37,16 +37,15 @@ static bool is_circular(expr *f)
     return expr_is_call(f, FUNCTION_SIN) || expr_is_call(f, FUNCTION_COS) || expr_is_call(f, FUNCTION_TAN);
 }
 
-/* u = rate*x + rest; the rate when it is a rational number other than 0. */
-static bool linear_rate(tw_engine *e, expr *u, expr *x, fmpq_t rate, expr **rest)
+/* u = rate*x + rest with a rate other than 0 that is free of x. */
+static bool linear_rate(tw_engine *e, expr *u, expr *x, expr **rate, expr **rest)
 {
-    expr *slope = expr_derivative(e, u, x);
-    if (!slope) {
-        engine_forgive(e);
+    *rate = expr_derivative(e, u, x);
+    if (!*rate) {
+        if (e->error.kind == ERROR_VALUE) engine_forgive(e);
         return false;
     }
-    if (!expr_is_number(slope) || expr_is_zero(slope)) return false;
-    fmpq_set(rate, expr_number(slope));
+    if (expr_is_zero(*rate) || expr_has(*rate, x)) return false;
     *rest = expr_substitute(e, u, x, expr_int(e, 0));
     return *rest != NULL;
 }
@@ -54,13 +53,10 @@ static bool linear_rate(tw_engine *e, expr *u, expr *x, fmpq_t rate, expr **rest
 static void collect_rates(rates *r, expr *f)
 {
     if (!expr_has(f, r->x)) return;
-    if (r->circular ? is_circular(f) : is_hyperbolic(f)) {
-        fmpq_t rate;
-        expr *rest;
-        fmpq_init(rate);
-        if (linear_rate(r->e, f->args[0], r->x, rate, &rest)) add_rate(r, rate);
-        fmpq_clear(rate);
-    }
+    expr *rate, *rest;
+    if ((r->circular ? is_circular(f) : is_hyperbolic(f)) && linear_rate(r->e, f->args[0], r->x, &rate, &rest) &&
+        expr_is_number(rate))
+        add_rate(r, expr_number(rate));
     for (uint32_t k = 0; k < f->count; k++) collect_rates(r, f->args[k]);
 }
 
@@ -84,20 +80,17 @@ typedef struct change {
 
 static expr *change_in(const change *c, expr *f);
 
-/* w^k for the rate k*unit, w = (1 + y)/(1 - y). */
-static expr *exponential_power(const change *c, const fmpq_t rate)
+/* w^(rate/unit), w = (1 + y)/(1 - y). */
+static expr *exponential_power(const change *c, expr *rate)
 {
     tw_engine *e = c->e;
-    fmpq_t k;
-    fmpq_init(k);
-    fmpq_div(k, rate, c->unit);
-    expr *up = expr_add(e, expr_int(e, 1), c->y), *down = expr_sub(e, expr_int(e, 1), c->y), *power = expr_fmpq(e, k);
-    fmpq_clear(k);
+    expr *up = expr_add(e, expr_int(e, 1), c->y), *down = expr_sub(e, expr_int(e, 1), c->y);
+    expr *power = expr_div(e, rate, expr_fmpq(e, c->unit));
     return expr_mul(e, expr_pow(e, up, power), expr_pow(e, down, expr_neg(e, power)));
 }
 
 /* exp, cosh, sinh, tanh of rate*x (+ rest, exp only). */
-static expr *change_hyperbolic(const change *c, expr *f, const fmpq_t rate, expr *rest)
+static expr *change_hyperbolic(const change *c, expr *f, expr *rate, expr *rest)
 {
     tw_engine *e = c->e;
     expr *w = exponential_power(c, rate);
@@ -122,13 +115,14 @@ static void multiple_angle(tw_engine *e, slong k, expr *cosine, expr *sine, expr
     }
 }
 
-static expr *change_circular(const change *c, expr *f, const fmpq_t rate, expr *rest)
+static expr *change_circular(const change *c, expr *f, expr *rate, expr *rest)
 {
     enum { MULTIPLE_LIMIT = 12 };
     tw_engine *e = c->e;
+    if (!expr_is_number(rate)) return NULL;
     fmpq_t k;
     fmpq_init(k);
-    fmpq_div(k, rate, c->unit);
+    fmpq_div(k, expr_number(rate), c->unit);
     slong times = fmpz_fits_si(fmpq_numref(k)) ? fmpz_get_si(fmpq_numref(k)) : WORD_MAX;
     fmpq_clear(k);
     if (!expr_is_zero(rest) || labs(times) > MULTIPLE_LIMIT) return NULL;
@@ -147,14 +141,9 @@ static expr *change_call(const change *c, expr *f)
 {
     tw_engine *e = c->e;
     bool mine = !fmpq_is_zero(c->unit) && (c->circular ? is_circular(f) : is_hyperbolic(f));
-    fmpq_t rate;
-    expr *rest, *made = NULL;
-    fmpq_init(rate);
-    bool linear = mine && linear_rate(e, f->args[0], c->x, rate, &rest);
-    if (linear) made = c->circular ? change_circular(c, f, rate, rest) : change_hyperbolic(c, f, rate, rest);
-    fmpq_clear(rate);
-    if (linear) return made;
-    expr *args[4];
+    expr *rate, *rest, *args[4];
+    if (mine && linear_rate(e, f->args[0], c->x, &rate, &rest))
+        return c->circular ? change_circular(c, f, rate, rest) : change_hyperbolic(c, f, rate, rest);
     if (f->count > 4) return NULL;
     for (uint32_t k = 0; k < f->count; k++)
         if (!(args[k] = change_in(c, f->args[k]))) return NULL;
@@ -187,8 +176,33 @@ static expr *speed_of(const change *c, int which, expr *power)
     return expr_div(e, expr_div(e, expr_int(e, 2), expr_fmpq(e, c->unit)), below);
 }
 
+/* cosh, sinh, cos, sin as sums of exponentials, outside other functions and powers. */
+static expr *spread_exponentials(tw_engine *e, expr *f, expr *x)
+{
+    if (!f || !expr_has(f, x)) return f;
+    bool hyperbolic = expr_is_call(f, FUNCTION_COSH) || expr_is_call(f, FUNCTION_SINH);
+    if (hyperbolic || expr_is_call(f, FUNCTION_COS) || expr_is_call(f, FUNCTION_SIN)) {
+        expr *unit = hyperbolic ? expr_int(e, 1) : expr_constant_of(e, CONSTANT_I), *u = expr_mul(e, unit, f->args[0]);
+        expr *up = expr_call1(e, FUNCTION_EXP, u), *down = expr_call1(e, FUNCTION_EXP, expr_neg(e, u));
+        if (expr_is_call(f, FUNCTION_COSH) || expr_is_call(f, FUNCTION_COS))
+            return expr_div(e, expr_add(e, up, down), expr_int(e, 2));
+        return expr_div(e, expr_sub(e, up, down), expr_mul(e, expr_int(e, 2), unit));
+    }
+    if (f->kind != EXPR_SUM && f->kind != EXPR_PRODUCT) return f;
+    expr *made = expr_int(e, f->kind == EXPR_PRODUCT);
+    for (uint32_t k = 0; k < f->count && made; k++) {
+        expr *one = spread_exponentials(e, f->args[k], x);
+        made = f->kind == EXPR_SUM ? expr_add(e, made, one) : expr_mul(e, made, one);
+    }
+    return made;
+}
+
 bool change_variable(tw_engine *e, changed *out, int which, expr *p, expr *q, expr *x)
 {
+    if (which == CHANGE_SPREAD) {
+        *out = (changed){x, p, spread_exponentials(e, q, x)};
+        return out->q && out->q != q;
+    }
     change c = {.e = e, .x = x, .y = expr_fresh(e, "y"), .circular = which == CHANGE_CIRCULAR};
     rates r = {.e = e, .x = x, .circular = c.circular};
     fmpz_t d;

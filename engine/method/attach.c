@@ -392,7 +392,7 @@ static tw_status set_coefficients(const task *t, field *f, const telescope *s, f
         fmpz_mpoly_set(fmpz_mpoly_q_numref(&values[j]), &s->c[j], f->ctx);
         fmpz_mpoly_q_mul(&values[j], &values[j], &rising, f->ctx);
         status = field_pow(f, &power, &scale, t->h * j);
-        if (status == TW_OK) fmpz_mpoly_q_mul(&values[j], &values[j], &power, f->ctx);
+        if (status == TW_OK) field_mul(f, &values[j], &values[j], &power); /* with the relations of the generators */
         for (slong i = 1; i <= t->h && j > 0; i++) {
             fmpz_mpoly_q_add_si(&u, &z, t->h * j - i, f->ctx);
             fmpz_mpoly_q_mul(&rising, &rising, &u, f->ctx);
@@ -444,6 +444,34 @@ static tw_status keep_certificates(const task *t, recurrence *r, const telescope
     return TW_OK;
 }
 
+/* Where the polynomial vanishes must be known: constants with relations that the polynomials do not know (i, sqrt(2), pi)
+ * may not meet n in it. Reduced by the relations here. */
+static tw_status check_voids(const task *t, field *f, fmpz_mpoly_t voided)
+{
+    element value, one;
+    element_init(f, &value), element_init(f, &one);
+    fmpz_mpoly_q_one(&one, f->ctx);
+    fmpz_mpoly_set(fmpz_mpoly_q_numref(&value), voided, f->ctx);
+    field_mul(f, &value, &value, &one);
+    fmpz_mpoly_set(voided, fmpz_mpoly_q_numref(&value), f->ctx);
+    fmpz_mpoly_factor_t parts;
+    fmpz_mpoly_factor_init(parts, f->ctx);
+    bool good = !fmpz_mpoly_is_zero(voided, f->ctx) && fmpz_mpoly_factor(parts, voided, f->ctx);
+    for (slong k = 0; k < parts->num && good; k++) {
+        bool index = fmpz_mpoly_degree_si(parts->poly + k, field_variable(f, t->n), f->ctx) > 0, constants = false;
+        for (slong g = 0; g < f->count; g++)
+            constants = constants || (f->generators[g].closed &&
+                                      fmpz_mpoly_degree_si(parts->poly + k, f->room - 1 - g, f->ctx) > 0);
+        fmpz_mpoly_set(fmpz_mpoly_q_numref(&value), parts->poly + k, f->ctx);
+        fmpz_mpoly_one(fmpz_mpoly_q_denref(&value), f->ctx);
+        if (constants) good = !index && field_is_zero(f, &value) == ANSWER_NO;
+    }
+    fmpz_mpoly_factor_clear(parts, f->ctx);
+    element_clear(f, &value), element_clear(f, &one);
+    if (good || t->e->error.kind != ERROR_NONE) return t->e->error.kind == ERROR_NONE ? TW_OK : TW_ERROR;
+    return refuse(t, "where its certificate is void could not be told");
+}
+
 /* All pieces satisfy the recurrence of the first, or that of the sum is made. */
 static tw_status align_pieces(const task *t, field *f, telescope *list, const element *ratios)
 {
@@ -478,6 +506,7 @@ static tw_status find_in_field(const task *t, field *f, recurrence **out)
         fmpz_mpoly_init(voided, f->ctx);
         fmpz_mpoly_one(voided, f->ctx);
         for (size_t k = 0; k < t->count; k++) fmpz_mpoly_mul(voided, voided, list[k].content, f->ctx);
+        if (status == TW_OK) status = check_voids(t, f, voided);
         if (status == TW_OK) {
             *out = recurrence_new(t->e, f, t->n, a, order, voided);
             status = keep_certificates(t, *out, list);
@@ -602,17 +631,25 @@ static double now(void)
     return (double)t.tv_sec + 1e-9 * (double)t.tv_nsec;
 }
 
-tw_status lane_recurrence_if_quick(tw_engine *e, contribution *c, const lane *l, expr *large, const recurrence **out)
+double quick_begin(tw_engine *e, double seconds)
 {
-    double before = e->deadline, soon = now() + 2;
+    double before = e->deadline, soon = now() + seconds;
     if (before == 0 || soon < before) e->deadline = soon;
-    tw_status status = lane_recurrence(e, c, l, large, out);
-    e->deadline = before;
-    if (status == TW_OK) return TW_OK;
-    *out = NULL;
-    bool slow = e->error.kind == ERROR_TIME && (before == 0 || now() < before);
-    if (!slow && e->error.kind != ERROR_UNSUITABLE && e->error.kind != ERROR_UNDECIDED) return TW_ERROR;
-    engine_forgive(e);
-    return TW_OK;
+    return before;
 }
 
+bool quick_end(tw_engine *e, double before)
+{
+    e->deadline = before;
+    bool slow = e->error.kind == ERROR_TIME && (before == 0 || now() < before);
+    if (!slow && e->error.kind != ERROR_UNSUITABLE && e->error.kind != ERROR_UNDECIDED) return e->error.kind == ERROR_NONE;
+    engine_forgive(e);
+    return true;
+}
+
+tw_status lane_recurrence_if_quick(tw_engine *e, contribution *c, const lane *l, expr *large, const recurrence **out)
+{
+    double before = quick_begin(e, 2);
+    if (lane_recurrence(e, c, l, large, out) != TW_OK) *out = NULL;
+    return quick_end(e, before) ? TW_OK : TW_ERROR;
+}

@@ -20,6 +20,11 @@ tw_status lane_recurrence_if_quick(tw_engine *e, contribution *c, const lane *l,
 tw_status lane_recurrence_fitted(tw_engine *e, contribution *c, const lane *l, expr *large, bool small,
                                  const recurrence **out);
 
+/* What nobody asked for by name gets little time: begin gives the old deadline, which end puts back; end forgives an error
+ * that says only that it was too slow or has no answer, and is false on any other. */
+double quick_begin(tw_engine *e, double seconds);
+bool quick_end(tw_engine *e, double before);
+
 /* The certificates once more, by another way than the one that found them: as expressions, derived and brought to normal
  * form. ERROR_REFUTED when one does not hold. */
 tw_status recurrence_verify(tw_engine *e, const recurrence *r);

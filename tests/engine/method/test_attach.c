@@ -188,6 +188,77 @@ static void test_random(void **state)
            (long)greatest);
 }
 
+/* ---- two sides of an interior point ---- */
+
+/* Both branches p(x), p(-x), with the amplitudes q(x), q(-x). */
+static void test_interior(void **state)
+{
+    static const known cases[] = {
+        {NULL, "x^2 + x^3/3", "1", "c[n+1] = (6*n + 1)*(6*n + 5)/(48*(n + 1)) * c[n]",
+         "DLMF 9.7.2: u_k with zeta = 2 s/3, its ratio of neighbours"},
+        {NULL, "cosh(x) - 1", "1", "c[n+1] = -(2*n + 1)^2/(8*(n + 1)) * c[n]", "DLMF 10.40.2, nu = 0"},
+        {"nu > 0", "cosh(x) - 1", "cosh(nu*x)", "c[n+1] = -(2*n - 2*nu + 1)*(2*n + 2*nu + 1)/(8*(n + 1)) * c[n]",
+         "DLMF 10.40.2 with 10.17.1"},
+        {NULL, "1 - cos(x)", "1", "c[n+1] = (2*n + 1)^2/(8*(n + 1)) * c[n]", "DLMF 10.40.1, nu = 0"},
+    };
+    (void)state;
+    for (size_t k = 0; k < sizeof cases / sizeof *cases; k++) {
+        tw_engine *e = text_engine("s", LARGE_POSITIVE);
+        if (cases[k].given) text_given(e, cases[k].given);
+        expr *x = expr_symbol(e, "x"), *s = expr_symbol(e, "s"), *back = expr_neg(e, x), *inf = expr_constant_of(e, CONSTANT_INF);
+        expr *p = text_parse(e, cases[k].p), *q = text_parse(e, cases[k].q);
+        contribution c;
+        contribution_init(&c);
+        c.method = "watson";
+        c.prefactor = c.local.factor = expr_int(e, 1);
+        c.local.scale = s;
+        local_form_add(&c.local, x, inf, p, q);
+        local_form_add(&c.local, x, inf, expr_substitute(e, p, x, back), expr_substitute(e, q, x, back));
+        if (contribution_fill_directly(e, &c, s, false, 8, NULL) != TW_OK) fail_msg("%s: %s", cases[k].p, e->error.words);
+        assert_int_equal((int)c.lane_count, 1);
+        const recurrence *r = find(e, &c, 0, cases[k].source);
+        text t;
+        text_init(&t);
+        assert_int_equal(recurrence_print(e, &t, r), TW_OK);
+        assert_string_equal(t.bytes, cases[k].words);
+        text_clear(&t);
+        assert_int_equal(recurrence_verify(e, r), TW_OK);
+        contribution_clear(&c);
+        tw_engine_free(e);
+    }
+}
+
+/* ---- indices left out ---- */
+
+/* The certificate's denominator vanishes at n = 0, and the relation is false there. */
+static void test_void(void **state)
+{
+    (void)state;
+    tw_engine *e = text_engine("s", LARGE_POSITIVE);
+    contribution c;
+    make_contribution(e, &c, "x^3*(1 + 2/3*x)", "x*(1 - 2/3*x)^2", 120);
+    size_t left_out = 0;
+    for (size_t k = 0; k < c.lane_count; k++) {
+        const recurrence *r = find(e, &c, k, "void");
+        assert_int_equal(recurrence_verify(e, r), TW_OK);
+        if (r->void_count == 0) continue;
+        left_out++;
+        assert_int_equal(r->void_count, 1);
+        assert_int_equal(r->voids[0], 0);
+        expr **list = base_alloc((size_t)c.lanes[k].c.count * sizeof *list);
+        for (slong n = 0; n < c.lanes[k].c.count; n++) list[n] = coefficient_expr(e, &c.lanes[k].c, n);
+        assert_int_equal(recurrence_misfit(e, r, NULL, list, c.lanes[k].c.count), -1);
+        recurrence everywhere = *r;
+        everywhere.void_count = 0;
+        assert_int_equal(recurrence_misfit(e, &everywhere, NULL, list, c.lanes[k].c.count), 0);
+        free(list);
+        compare_run(e, r, &c.lanes[k], "void");
+    }
+    assert_true(left_out == 1);
+    contribution_clear(&c);
+    tw_engine_free(e);
+}
+
 /* ---- refusals ---- */
 
 static void test_none(void **state)
@@ -197,6 +268,9 @@ static void test_none(void **state)
     } cases[] = {
         {"x - log(1 + x)", "1/(1 + x)", "no finite recurrence exists"},
         {"x", "log(1 + x)^2", "no recurrence can be proved"},
+        {"x", "1/(1 + exp(2*x))", "no finite recurrence exists"},
+        {"x", "tan(x)/x", "no recurrence can be proved"},
+        {"x^2", "1/(2 + cos(x))", "no finite recurrence exists"},
     };
     (void)state;
     for (size_t k = 0; k < sizeof cases / sizeof *cases; k++) {
@@ -221,6 +295,8 @@ int main(void)
     const struct CMUnitTest tests[] = {
         cmocka_unit_test(test_known),
         cmocka_unit_test(test_random),
+        cmocka_unit_test(test_interior),
+        cmocka_unit_test(test_void),
         cmocka_unit_test(test_none),
     };
     return cmocka_run_group_tests(tests, NULL, NULL);
