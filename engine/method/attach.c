@@ -244,6 +244,22 @@ static bool has_periodic_poles(task *t, expr *q)
     return found;
 }
 
+/* p = b x + a function of exp(u x) or tan(u x/2), b not 0: a period adds a constant to p, so each critical value comes with
+ * infinitely many others. */
+static bool has_shifted_values(task *t, expr *p)
+{
+    tw_engine *e = t->e;
+    expr *slope = expr_derivative(e, p, t->x);
+    bool found = false;
+    for (int which = CHANGE_HYPERBOLIC; slope && which <= CHANGE_CIRCULAR && !found; which++) {
+        changed made;
+        if (!change_variable(e, &made, which, expr_int(e, 1), slope, t->x)) continue;
+        found = !change_variable(e, &made, which, expr_int(e, 1), p, t->x);
+    }
+    if (e->error.kind == ERROR_VALUE) engine_forgive(e);
+    return found;
+}
+
 /* Sequences with a finite recurrence have a Borel transform with finitely many singularities. */
 static tw_status refuse_kind(task *t, expr *p, expr *q)
 {
@@ -256,6 +272,9 @@ static tw_status refuse_kind(task *t, expr *p, expr *q)
     if (is_rational_with_logs(t, p, &log) && log)
         return refuse(t, "no finite recurrence exists: the exponent holds a logarithm, whose sheets give it infinitely many "
                          "critical values");
+    if (has_shifted_values(t, p))
+        return refuse(t, "no finite recurrence exists: the exponent holds its variable beside an exponential of it, so it has "
+                         "infinitely many critical values");
     if (pure && has_periodic_poles(t, q))
         return refuse(t, "no finite recurrence exists: the amplitude has a pole in each period, so infinitely many");
     t->impossible = false;

@@ -267,6 +267,7 @@ static void test_none(void **state)
         const char *p, *q, *part;
     } cases[] = {
         {"x - log(1 + x)", "1/(1 + x)", "no finite recurrence exists"},
+        {"exp(x) - x - 1", "exp(x)", "no finite recurrence exists"},
         {"x", "log(1 + x)^2", "no recurrence can be proved"},
         {"x", "1/(1 + exp(2*x))", "no finite recurrence exists"},
         {"x", "tan(x)/x", "no recurrence can be proved"},
