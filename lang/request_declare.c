@@ -327,7 +327,8 @@ tw_status request_drop(session *s, const statement *st, result *r, value **keep)
     (void)keep;
     syntax_name name = st->as.name;
     declared(r, st);
-    if (names_drop(&s->names, name.text) | names_drop(&s->rules, name.text)) return TW_OK;
+    bool value_gone = names_drop(&s->names, name.text), rule_gone = names_drop(&s->rules, name.text);
+    if (value_gone || rule_gone) return TW_OK;
     expr *symbol = expr_symbol(s->e, name.text);
     if (!symbol) return request_fail_at(s, name.at);
     if (!session_declares(s, symbol)) return session_unknown_name(s, name);

@@ -37,8 +37,8 @@ void phase_reading_clear(phase_reading *r);
  * kernel does oscillate, and is NULL where it does not. Errors: those of the budget. */
 answer phase_read(tw_engine *e, phase_reading *out, expr *integral, char **why);
 
-/* "; the kernel oscillates; critical points: the end x = 0, x = 1 (stationary)"; false: not an integral of this kind, nothing
- * is added. */
+/* "; the kernel oscillates; critical points: the end x = 0, x = 1 (stationary)"; false: not an integral of this kind,
+ * nothing is added. */
 bool phase_summary(tw_engine *e, text *out, expr *integral);
 
 /* The terms of every end and stationary point, into an expansion that has its integral set. */

@@ -346,7 +346,8 @@ tw_status turned_for_all(tw_engine *e, remainder_bound *out, expansion *a, const
     slong M = 0;
     expr *extra = expr_int(e, 0);
     if (status == TW_OK && read != ANSWER_YES) {
-        status = say(reason, "it is a sum with other integrals: expand each by itself; at one value `evaluate` proves one");
+        status = say(reason, "it is a sum with other integrals: expand each by itself; at one value `evaluate` proves "
+                             "one");
     } else if (status == TW_OK && stationary) {
         status = say(reason, "a stationary point counts: for all values no bound of its turned branch is known; at one "
                              "value `evaluate` proves one");
