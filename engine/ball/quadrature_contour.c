@@ -325,3 +325,30 @@ tw_status contour_path_read(contour_path *p, tw_engine *e, expr *contour)
     free(real);
     return status;
 }
+
+int contour_symmetry(tw_engine *e, expr *integral)
+{
+    expr *const *factors;
+    size_t count = expr_factors(&integral, &factors);
+    expr *contour = NULL, *outside = expr_int(e, 1);
+    for (size_t k = 0; k < count; k++) {
+        if (factors[k]->kind == EXPR_CONTOUR && !contour)
+            contour = factors[k];
+        else
+            outside = expr_mul(e, outside, factors[k]);
+    }
+    expr *turned = outside ? expr_mul(e, outside, expr_constant_of(e, CONSTANT_I)) : NULL;
+    if (!contour || !turned || contour->count < 3)
+        return 0;
+    contour_path p;
+    contour_path_init(&p);
+    bool imaginary = contour_path_read(&p, e, contour) == TW_OK && p.imaginary, real = false;
+    contour_path_clear(&p);
+    if (e->error.kind == ERROR_DIVERGENT || e->error.kind == ERROR_UNDECIDED || e->error.kind == ERROR_UNSUITABLE ||
+        e->error.kind == ERROR_VALUE)
+        engine_forgive(e);
+    if (imaginary && decide_real_value(e, outside))
+        return -1;
+    real = imaginary && decide_real_value(e, turned);
+    return real ? 1 : 0;
+}

@@ -27,4 +27,8 @@ void contour_path_clear(contour_path *p);
  * known of the integrand there). */
 tw_status contour_path_read(contour_path *p, tw_engine *e, expr *contour);
 
+/* Is the value of outside * contour (or a contour alone; no free symbols) real (1) or i times a real number (-1) by the symmetry of
+ * the path and the integrand? 0: not known. */
+int contour_symmetry(tw_engine *e, expr *integral);
+
 #endif

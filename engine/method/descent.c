@@ -574,6 +574,7 @@ tw_status descent_expand(tw_engine *e, expansion *out, expr *integral, slong ter
     const spot **at = base_alloc((d.found.count + 1) * sizeof *at);
     for (size_t k = 0; k < d.found.count && status == TW_OK && d.read_found; k++) {
         const share *h = d.found.list + k;
+        out->stokes_passed = out->stokes_passed || h->stokes;
         if (is_zero_share(h))
             continue;
         at[out->contribution_count] = h->at;

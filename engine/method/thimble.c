@@ -503,34 +503,39 @@ typedef struct survey {
     slong discs;
 } survey;
 
-/* The unit of the root lead^(-1/m), taken away from the cut. */
-static void first_direction(acb_t out, const spot *s, slong m)
+void half_root(acb_t out, const spot *s, slong m, slong bits)
 {
     acb_t q;
-    arb_t a;
     acb_init(q);
-    arb_init(a);
-    bool turned = !arb_is_nonnegative(acb_realref(s->lead)) && arf_sgn(arb_midref(acb_realref(s->lead))) < 0;
+    bool turned = arf_sgn(arb_midref(acb_realref(s->lead))) < 0; /* away from the root's cut */
     if (turned)
         acb_neg(q, s->lead);
     else
         acb_set(q, s->lead);
-    acb_inv(q, q, WORK_BITS);
-    acb_root_ui(q, q, (ulong)m, WORK_BITS);
+    acb_inv(q, q, bits);
+    acb_root_ui(q, q, (ulong)m, bits);
     if (turned) { /* times exp(-i pi/m) */
         acb_t w;
         fmpq_t t;
         acb_init(w);
         fmpq_init(t);
         fmpq_set_si(t, -1, (ulong)m);
-        arb_sin_cos_pi_fmpq(acb_imagref(w), acb_realref(w), t, WORK_BITS);
-        acb_mul(q, q, w, WORK_BITS);
+        arb_sin_cos_pi_fmpq(acb_imagref(w), acb_realref(w), t, bits);
+        acb_mul(q, q, w, bits);
         fmpq_clear(t);
         acb_clear(w);
     }
-    acb_abs(a, q, WORK_BITS);
-    acb_div_arb(out, q, a, WORK_BITS);
+    acb_set(out, q);
     acb_clear(q);
+}
+
+static void first_direction(acb_t out, const spot *s, slong m)
+{
+    arb_t a;
+    arb_init(a);
+    half_root(out, s, m, WORK_BITS);
+    acb_abs(a, out, WORK_BITS);
+    acb_div_arb(out, out, a, WORK_BITS);
     arb_clear(a);
 }
 

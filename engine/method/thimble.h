@@ -56,6 +56,14 @@ typedef struct chain {
 void chain_init(chain *c);
 void chain_clear(chain *c);
 
+/* A disc |z - c| <= r in which p is univalent, or own's root (p - p0)^(1/m) where `own` (a saddle; c its place) is given: there
+ * |p'/p'(c) - 1| <= kappa < 1 (for the root v = ((p - p0)/lead)^(1/m): |v' - 1| <= kappa), so that the image covers the disc of
+ * radius `reach` = (1 - kappa) r about the image of c, in units of p'(c). False: none was found. */
+bool univalent_disc(arb_t r, arb_t kappa, arb_t reach, const landscape *l, const acb_t c, const spot *own);
+
+/* lead^(-1/m) along D_0. */
+void half_root(acb_t out, const spot *s, slong m, slong bits);
+
 /* Follows from spot s the curve p = p(s) + sign*t*turn, t > 0, in the half branch whose first direction is `direction`, until
  * Re(p/turn) has changed by `span`; keeping away from `avoid` points (not counting s itself). first: greatest first distance from s.
  * False when the chain does not get there (a saddle on the way). */

@@ -188,6 +188,11 @@ static bool choose_radius(arb_t r, arb_t kappa, arb_t reach, const landscape *l,
     return found;
 }
 
+bool univalent_disc(arb_t r, arb_t kappa, arb_t reach, const landscape *l, const acb_t c, const spot *own)
+{
+    return choose_radius(r, kappa, reach, l, c, own, NULL, 0, NULL);
+}
+
 /* ---- steps ---- */
 
 /* Newton's iteration for p(z) = y from z; the result is exact. */

@@ -5,6 +5,7 @@
 #include <string.h>
 
 #include "engine/numeric/evaluate.h"
+#include "engine/numeric/complex.h"
 #include "engine/numeric/shared.h"
 #include "engine/numeric/terms.h"
 
@@ -137,6 +138,8 @@ tw_status compare_expansion(tw_engine *e, comparison *out, expansion *a, const e
     tw_status status = point_complete(e, a, at);
     if (status != TW_OK)
         return status;
+    if (expansion_is_complex(a))
+        return compare_complex(e, out, a, at);
     copy_point(&out->at, at);
     most = a->terms_asked;
     if (best_terms(e, a, at, most, &terms, &least) != TW_OK)

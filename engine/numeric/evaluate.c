@@ -7,6 +7,7 @@
 #include <string.h>
 
 #include "engine/numeric/problem.h"
+#include "engine/numeric/complex.h"
 #include "engine/numeric/shared.h"
 #include "engine/numeric/terms.h"
 #include "engine/numeric/turned.h"
@@ -390,6 +391,8 @@ tw_status evaluate_expansion(tw_engine *e, number *out, expansion *a, const env 
         return status;
     if (a->combined)
         return combined_number(e, out, a, at, o);
+    if (expansion_is_complex(a))
+        return evaluate_complex(e, out, a, at, o);
     if (turned_is_complex(a)) {
         out->terms = o->terms >= 0 ? o->terms : a->terms_asked;
         out->terms_known = FLINT_MAX(out->terms, a->terms_asked);

@@ -6,6 +6,7 @@
 #include <string.h>
 
 #include "engine/ball/decide.h"
+#include "engine/numeric/complex.h"
 #include "engine/numeric/shared.h"
 #include "engine/numeric/signs.h"
 #include "engine/numeric/split_off.h"
@@ -826,6 +827,19 @@ tw_status remainder_for_all(tw_engine *e, remainder_bound *out, expansion *a, co
     out->terms = terms;
     out->from = s0;
     status = conditions_at(e, &out->conditions, a, &values);
+    if (status == TW_OK && expansion_is_complex(a)) {
+        missing = missing_parameter(a, &values);
+        if (missing) {
+            text words;
+            text_init(&words);
+            text_addf(&words, "the parameter %s has no value", missing);
+            out->reason = text_take(&words);
+        } else {
+            status = remainder_complex(e, out, a, &values, s0);
+        }
+        env_free(&values);
+        return status;
+    }
     if (status == TW_OK && terms < 0)
         status = default_terms(e, out, a, &values, s0);
     missing = missing_parameter(a, &values);
