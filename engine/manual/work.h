@@ -68,14 +68,17 @@ int sign_on(tw_engine *e, expr *f, expr *x, expr *from, expr *to);
 answer converges_absolutely(tw_engine *e, expr *f, expr *x, expr *from, expr *to);
 /* Is f continuous in the open range (from, to), for certain? */
 bool is_smooth_inside(tw_engine *e, expr *f, expr *x, expr *from, expr *to);
-/* Is f = 0 for all values of its symbols? YES: proved. x: positive where it is not NULL. */
-bool is_identically_zero(tw_engine *e, expr *f, expr *x);
-/* Normal form for the form's texts: under the facts, with x positive when `positive`. */
-expr *tidy(tw_engine *e, expr *f, expr *x, bool positive);
 /* Is the range within the positive axis? */
 bool range_is_positive(tw_engine *e, expr *from);
 /* An error that a question may pass over; a spent budget stays. */
 bool forgive(tw_engine *e);
+
+/* ---- identity (identity.c) ---- */
+
+/* Is f = 0 for all values of its symbols? YES: proved. x: positive where it is not NULL. */
+bool is_identically_zero(tw_engine *e, expr *f, expr *x);
+/* Normal form for the form's texts: under the facts, with x positive when `positive`. */
+expr *tidy(tw_engine *e, expr *f, expr *x, bool positive);
 
 /* ---- antiderivatives (antiderivative.c) ---- */
 
