@@ -281,6 +281,56 @@ static void test_expand(void **state)
     tw_engine_free(e);
 }
 
+/* No method expands this kernel, so the remainder that was split off has to serve: at a point and for all values. */
+static void test_own_remainder(void **state)
+{
+    (void)state;
+    tw_engine *e = text_engine("s", LARGE_POSITIVE);
+    manual *m = begin(e, "integral from 0 to inf of erfc(sqrt(s*x))/(1 + x) dx");
+    made(m, simple(m, MANUAL_PARTS, NULL, "1/(1 + x)"));
+    made(m, expand_factor(m, "log(1 + x)", "0", 3));
+    made(m, simple(m, MANUAL_TERMWISE, NULL, NULL));
+    assert_true(manual_is_proved(m));
+    expansion a;
+    if (manual_expansion(m, &a) != TW_OK) fail_msg("%s", e->error.words);
+    assert_non_null(a.remainder);
+    expr *s = expr_symbol(e, "s"), *forty = expr_int(e, 40);
+    env at = {1, &s, &forty}, none = {0, NULL, NULL};
+    acb_t judge;
+    acb_init(judge);
+    assert_int_equal(quadrature(e, judge, m->typed, &at, 20, false, NULL), TW_OK);
+    for (slong terms = 0; terms <= 3; terms++) {
+        number n;
+        number_init(&n);
+        evaluate_options o = {0, terms, false};
+        if (evaluate_expansion(e, &n, &a, &at, &o) != TW_OK) fail_msg("%s", e->error.words);
+        assert_int_equal(n.label, LABEL_PROVED);
+        assert_true(acb_overlaps(judge, n.value));
+        number_clear(&n);
+        remainder_bound b;
+        remainder_bound_init(&b);
+        if (remainder_for_all(e, &b, &a, &none, terms, NULL) != TW_OK) fail_msg("%s", e->error.words);
+        if (b.bound) { /* |integral - sum| <= bound at s = 40, if it holds from there */
+            expr *sum = text_sum(e, &a, 0, terms), *gap = expr_sub(e, m->typed, sum);
+            expr *ratio = expr_div(e, expr_call1(e, FUNCTION_ABS, gap), b.bound);
+            acb_t r;
+            acb_init(r);
+            assert_int_equal(quadrature(e, r, ratio, &at, 8, true, NULL), TW_OK);
+            arf_t up;
+            arf_init(up);
+            arb_get_ubound_arf(up, acb_realref(r), 53);
+            assert_true(arf_get_d(up, ARF_RND_UP) <= 1.0000001);
+            arf_clear(up);
+            acb_clear(r);
+        }
+        remainder_bound_clear(&b);
+    }
+    acb_clear(judge);
+    expansion_clear(&a);
+    manual_release(m);
+    tw_engine_free(e);
+}
+
 static void test_swap(void **state)
 {
     (void)state;
@@ -307,7 +357,7 @@ static void test_wrong_rule(void **state)
     (void)state;
     tw_engine *e = text_engine("s", LARGE_POSITIVE);
     manual *m = begin(e, "integral from 0 to inf of exp(-s*x)/(1 + x) dx");
-    pattern_variable a = {.name = "a", .symbol = expr_symbol(e, "a")};
+    pattern_variable a = {.symbol = expr_symbol(e, "a"), .arity = 0};
     rule *wrong = rule_new(e, "wrong", &a, 1, text_parse(e, "1/(1 + a)"), text_parse(e, "1/(1 + 2*a)"), NULL, 0, NULL);
     if (!wrong) fail_msg("%s", e->error.words);
     pass *one = pass_of_rule(wrong), *parts[] = {one};
@@ -503,7 +553,7 @@ int main(void)
     const struct CMUnitTest tests[] = {
         cmocka_unit_test(test_substitute), cmocka_unit_test(test_wrong_inverse), cmocka_unit_test(test_parts),
         cmocka_unit_test(test_parameter),  cmocka_unit_test(test_split_and_pick), cmocka_unit_test(test_rotate),
-        cmocka_unit_test(test_expand),     cmocka_unit_test(test_swap),           cmocka_unit_test(test_wrong_rule),
+        cmocka_unit_test(test_expand),     cmocka_unit_test(test_own_remainder),     cmocka_unit_test(test_swap),           cmocka_unit_test(test_wrong_rule),
         cmocka_unit_test(test_begin),      cmocka_unit_test(test_replay),         cmocka_unit_test(test_random),
     };
     return cmocka_run_group_tests(tests, NULL, NULL);
