@@ -26,9 +26,9 @@ static const help_entry entries[] = {
      "Takes a condition as true from here on without proof. A result that needs\nit is `conditional` and lists it as granted.",
      "grant b > 2", NULL},
     {"let", HELP_DECLARE, HERE, "let NAME = EXPRESSION\nlet NAME(x, y) = EXPRESSION\nlet NAME = REQUEST",
-     "Names a value, a function, or what a request gives. Names in it are\nresolved now: a later `let` changes nothing earlier.",
+     "Names a value, a function, or what a request gives. Names in it are\nresolved now: a later `let` changes nothing earlier.\nSums, products, quotients, rational powers, logarithms and the derivative\nof expansions are expansions again: let L = log(A), let R = A/B.",
      "large s\nlet tilt(u) = 1/(1 + u)^2\nlet F = integral from 0 to inf of exp(-s*x)*tilt(3*x) dx\n"
-     "let A = expand F to 6 terms", NULL},
+     "let A = expand F to 6 terms\nlet L = log(A)\nevaluate L at s = 50", NULL},
     {"use", HELP_DECLARE, HERE, "use NAME\nuse \"FILE\"",
      "Runs a file: NAME is one of the standard library, \"FILE\" is looked for\nbeside the file that names it.",
      "use moments\nevaluate exponential_moment(3, 2)", NULL},
@@ -221,7 +221,9 @@ static const help_entry entries[] = {
     {"moments", HELP_METHOD, HERE, "expand INTEGRAL to N terms by moments",
      "Families known in closed form by differentiating in a parameter; the\nexpansion ends by itself and is exact.",
      "large s\nexpand integral from 0 to inf of x^3*exp(-s*x) dx to 4 terms by moments", NULL},
-    {"laplace", HELP_METHOD, LATER, "expand INTEGRAL to N terms by laplace", "Laplace's method (DLMF 2.3(iii)).",
+    {"laplace", HELP_METHOD, HERE, "expand INTEGRAL to N terms by laplace",
+     "Laplace's method (DLMF 2.3(iii)): a real exponent that is greatest at an end,\ninside, or at several points of equal depth; "
+     "kinks, powers f(x)^s, and\npoints that move with s. Points are exact: rational, algebraic, parameters.",
      "large s\nlet F = integral from -1 to 2 of exp(-s*(x^2 + x^4)) dx\nexpand F to 4 terms by laplace", NULL},
     {"phase", HELP_METHOD, HERE, "expand INTEGRAL to N terms by phase",
      "Stationary phase (DLMF 2.3(iv)): for cos, sin or exp(i ...) of the large\nparameter times a phase. Its ends and stationary points give the terms.",
