@@ -482,11 +482,18 @@ static bool solve_shares(matcher *m, view *g, const part *p, const goal *next)
 
 /* ---- sums and products: parts that are bound already ---- */
 
+/* Is the number term a part of the one that is there: of the same sign and not greater? */
+static bool number_is_within(expr *piece, expr *whole)
+{
+    const fmpq *p = expr_number(piece), *w = expr_number(whole);
+    return fmpq_sgn(p) == fmpq_sgn(w) && fmpq_sgn(p) * fmpq_cmp(w, p) >= 0;
+}
+
 /* Takes one term or factor out of the view. */
 static bool take_piece(matcher *m, view *g, expr *piece)
 {
     if (piece->kind == EXPR_NUMBER) {
-        if (g->product && expr_is_zero(piece)) return false;
+        if (g->product ? expr_is_zero(piece) : !g->exponent && !number_is_within(piece, g->number)) return false;
         g->number = g->product ? expr_div(m->e, g->number, piece) : expr_sub(m->e, g->number, piece);
         return g->number != NULL;
     }
@@ -664,6 +671,7 @@ static bool start_group(matcher *m, const part *p, expr *subject, const goal *ne
 {
     view g;
     view_init(m->e, &g, subject, p->kind == PART_PRODUCT);
+    g.exponent = p->exponent;
     if (!number_leaves(m, &g, p)) return passes_over(m) ? false : fail(m);
     const goal parts = {.part = p, .group = &g, .next = next};
     return solve_group(m, &parts);
@@ -676,8 +684,7 @@ static bool solve_power(matcher *m, const part *p, expr *subject, const goal *ne
     const bool is_power = subject->kind == EXPR_POWER;
     const goal exponent = {.part = p->parts[1], .subject = is_power ? subject->args[1] : expr_int(m->e, 1), .next = next};
     const goal base = {.part = p->parts[0], .subject = is_power ? subject->args[0] : subject, .next = &exponent};
-    if (!heads_agree(p, subject)) return false;
-    if (solve(m, &base)) return true;
+    if (heads_agree(p, subject) && solve(m, &base)) return true;
     return expr_is_one(subject) && p->may_vanish && solve_absent(m, p, next);
 }
 

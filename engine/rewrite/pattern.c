@@ -179,6 +179,7 @@ static part *compile_group(compiling *c, expr *form, uint32_t level, bool expone
     }
     sort_parts(a);
     for (size_t k = 0; k < a->count; k++) a->takers += is_taker(a->parts[k]);
+    a->exponent = exponent;
     a->alone = a->takers == a->count;
     a->free_number = !a->alone || exponent || (product ? fmpq_is_one(a->number) : fmpq_is_zero(a->number));
     return a;
@@ -284,7 +285,8 @@ pattern *pattern_new(tw_engine *e, const char *name, expr *form, const pattern_v
     p->name = name ? base_copy(name) : NULL;
     copy_variables(e, p, variables, count);
     compiling c = {.e = e, .p = p};
-    p->root = compile(&c, form, 0, false);
+    const bool group = form->kind == EXPR_SUM || form->kind == EXPR_PRODUCT; /* with a rest also without variables */
+    p->root = group ? compile_group(&c, form, 0, false) : compile(&c, form, 0, false);
     if (!p->root || check_variables(&c) != TW_OK) {
         pattern_free(p);
         return NULL;

@@ -25,6 +25,7 @@ typedef struct part {
     size_t variable;       /* VARIABLE, ROOTED, FUNCTION, CHECKED: which one */
     bool may_vanish;       /* a power whose exponent may be 0: as a factor it may be absent */
     bool free_number;      /* SUM, PRODUCT: may its variables take any number? see pattern.h */
+    bool exponent;         /* SUM, PRODUCT: is it an exponent? */
     bool alone;            /* SUM, PRODUCT: all its parts are variables */
     size_t count;          /* of parts; SUM, PRODUCT: fixed and composite ones first, then the `takers` */
     size_t takers;         /* SUM, PRODUCT: how many of the last parts are VARIABLE, ROOTED or FUNCTION */
@@ -55,6 +56,7 @@ typedef struct view {
     expr **left;         /* what is left of each: itself, a lower power of it, NULL when it is taken */
     expr *number;        /* the coefficient or number term that is left */
     expr *whole;         /* the sum or product itself */
+    bool exponent;       /* it is an exponent */
     struct candidates *candidates; /* for each part of the pattern where it may stand; NULL: not prepared */
 } view;
 
