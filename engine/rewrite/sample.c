@@ -101,7 +101,7 @@ static void put_beside(sampler *s, deck *d, const fmpq_t end, slong p, slong q, 
 }
 
 /* Distances from an end, small ones first. */
-static const slong steps[][2] = {{1, 50}, {1, 8}, {1, 3}, {1, 2}, {2, 3}, {1, 1}, {3, 2}, {2, 1}, {7, 3}, {3, 1}, {9, 2},
+static const slong steps[][2] = {{1, 400}, {1, 50}, {1, 8}, {1, 3}, {1, 2}, {2, 3}, {1, 1}, {3, 2}, {2, 1}, {7, 3}, {3, 1}, {9, 2},
                                  {6, 1}, {31, 3}};
 enum { STEP_COUNT = sizeof steps / sizeof *steps };
 
@@ -111,6 +111,8 @@ static void put_half_line(sampler *s, deck *d, const range *g)
     const fmpq *end = g->has_low ? g->low : g->high;
     if (!(g->has_low ? g->open_low : g->open_high)) deck_put(d, expr_fmpq(s->e, end));
     for (size_t k = 0; k < STEP_COUNT; k++) put_beside(s, d, end, sign * steps[k][0], steps[k][1], false);
+    deck_put(d, expr_mul(s->e, expr_frac(s->e, 1, 2), expr_fmpq(s->e, end))); /* the corner at 0, when it lies inside */
+    if (fmpq_sgn(end) * sign < 0) deck_put(d, expr_int(s->e, 0));
     for (int k = 0; k < 3; k++) put_beside(s, d, end, sign * (1 + random_below(s, 40)), 1 + random_below(s, 9), false);
 }
 
