@@ -267,6 +267,8 @@ static tw_status let_expression(session *s, const statement *st, result *r)
     if (status != TW_OK) return request_fail_at(s, x->at);
     value *v = value_new(VALUE_EXPRESSION);
     v->expression = a;
+    conditions_append(&v->conditions, &s->rests);
+    if (!conditions_all_sure(&s->rests)) result_conditions(r, &s->rests);
     names_set(&s->names, name.text, v);
     return TW_OK;
 }
@@ -279,6 +281,7 @@ static tw_status let_function(session *s, const statement *st, result *r)
         value_release(v);
         return TW_ERROR;
     }
+    conditions_append(&v->conditions, &s->rests);
     v->parameter_names = base_alloc((v->function.count + 1) * sizeof *v->parameter_names);
     for (size_t k = 0; k < v->function.count; k++) v->parameter_names[k] = base_copy(st->as.let.parameters[k].text);
     define(s, r, name, "function");

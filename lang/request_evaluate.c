@@ -42,6 +42,10 @@ static tw_status find_number(session *s, number *out, const task *t, const env *
     out->terms = -1;
     out->least_term = -1;
     if (quadrature(s->e, out->value, t->x.expression, at, t->digits, !t->typed_digits, NULL) != TW_OK) return TW_ERROR;
+    if (!conditions_all_sure(&s->rests)) {
+        out->label = LABEL_CONDITIONAL;
+        conditions_append(&out->conditions, &s->rests);
+    }
     if (acb_is_finite(out->value)) return TW_OK;
     return engine_fail(s->e, ERROR_PRECISION, "the value cannot be enclosed: it is not finite, or beyond every exponent");
 }

@@ -2,9 +2,10 @@
 #include <stdlib.h>
 #include <string.h>
 
-#include "engine/method/method.h"
+#include "engine/method/steps.h"
 #include "lang/describe.h"
 #include "lang/request.h"
+#include "lang/rules.h"
 
 enum { TERMS_LIMIT = 1000000 };
 
@@ -12,7 +13,8 @@ enum { TERMS_LIMIT = 1000000 };
 
 static tw_status check_method(session *s, syntax_name by)
 {
-    if (!by.text || method_find(by.text)) return TW_OK;
+    const value *own = by.text ? names_find(&s->rules, by.text) : NULL;
+    if (!by.text || method_find(by.text) || own) return TW_OK;
     if (method_is_planned(by.text)) return request_unavailable(s, by.at, by.text);
     size_t count;
     const method *const *methods = method_table(&count);
@@ -37,14 +39,50 @@ tw_status request_tell_expansion(session *s, result *r, const char *name, const 
     return s->json ? describe_object(s, r, name, &v->expansion) : TW_OK;
 }
 
+/* The integral is rewritten by a pass of the user, then expanded by the method that ends the pass, or one that fits. The
+ * steps and conditions of the pass come first. */
+static tw_status expand_by_pass(session *s, const value *own, expansion *out, expr *integral, slong terms,
+                                const char *name)
+{
+    pass *p = own->kind == VALUE_RULE ? pass_of_rule(own->rule) : pass_hold(own->pass);
+    rewriting w;
+    rewriting_init(&w);
+    tw_status status = session_check_pass(s, p);
+    if (status == TW_OK) status = pass_run(s->e, p, integral, &w);
+    if (status == TW_OK && !w.applied && !pass_method(p))
+        status = engine_fail(s->e, ERROR_UNSUITABLE, "the pass `%s` changes nothing here (`rewrite` and `why not RULE` say why)",
+                             name);
+    if (status == TW_OK) status = expand(s->e, out, w.after, terms, pass_method(p));
+    if (status == TW_OK) {
+        derivation all;
+        derivation_init(&all);
+        if (w.applied && out->derivation.count > 0 && strcmp(out->derivation.steps[0].rule, "as typed") == 0) {
+            free(out->derivation.steps[0].rule);
+            out->derivation.steps[0].rule = base_copy("as rewritten by the pass");
+        }
+        derivation_move(&all, &w.steps);
+        derivation_move(&all, &out->derivation);
+        derivation_clear(&out->derivation);
+        out->derivation = all;
+        if (w.applied) out->typed = integral;
+        conditions_append(&out->conditions, &w.conditions);
+    }
+    rewriting_clear(&w);
+    pass_release(p);
+    return status;
+}
+
 static tw_status expand_subject(session *s, const statement *st, result *r, const subject *x, value *v, slong terms)
 {
     syntax_name by = st->as.expand->by, as = st->as.expand->as;
     const char *name = s->let_name ? s->let_name : as.text ? as.text : title(x);
     if (x->kept)
         return request_fail(s, st->as.expand->subject->at, ERROR_VALUE, "`%s` is not an integral", x->name);
-    if (expand(s->e, &v->expansion, x->expression, terms, by.text) != TW_OK ||
-        request_tell_expansion(s, r, name, title(x), v) != TW_OK)
+    const value *own = by.text && !method_find(by.text) ? names_find(&s->rules, by.text) : NULL;
+    tw_status made = own ? expand_by_pass(s, own, &v->expansion, x->expression, terms, by.text)
+                         : expand(s->e, &v->expansion, x->expression, terms, by.text);
+    if (made == TW_OK) conditions_append(&v->expansion.conditions, &s->rests);
+    if (made != TW_OK || request_tell_expansion(s, r, name, title(x), v) != TW_OK)
         return request_fail_at(s, st->as.expand->subject->at);
     return TW_OK;
 }

@@ -4,6 +4,7 @@
 #include <string.h>
 
 #include "engine/export/format.h"
+#include "engine/method/steps.h"
 #include "lang/lower_rule.h"
 #include "lang/request.h"
 #include "lang/rules.h"
@@ -44,6 +45,9 @@ static tw_status no_such_pass(session *s, syntax_name name)
     suggestion near;
     suggestion_init(&near, name.text);
     names_each(&s->rules, offer_name, &near);
+    size_t count;
+    const pass_step *steps = steps_table(&count);
+    for (size_t k = 0; k < count; k++) suggestion_offer(&near, steps[k].name);
     if (near.best)
         return request_fail(s, name.at, ERROR_NAME, "no rule or pass is called `%s`; did you mean `%s`?", name.text,
                             near.best);
@@ -55,7 +59,11 @@ static pass *pass_by_name(session *s, syntax_name name)
     const value *v = names_find(&s->rules, name.text);
     if (v && v->kind == VALUE_RULE) return pass_of_rule(v->rule);
     if (v && v->kind == VALUE_PASS) return pass_named(name.text, pass_hold(v->pass));
-    no_such_pass(s, name);
+    const pass_step *x = steps_find(name.text);
+    if (x && (x->run || method_find(name.text))) return pass_of_step(x);
+    if (x) request_fail(s, name.at, ERROR_VALUE, "the step `%s` computes a series and works inside its method only: end the pass "
+                        "with the method's name", name.text);
+    else no_such_pass(s, name);
     return NULL;
 }
 
@@ -123,6 +131,32 @@ void show_rule_value(session *s, result *r, const char *name, const value *v)
     if (x->checked) result_line(r, "  %s%s%s", rule_status_word(x->status), x->finding ? ": " : "", x->finding ? x->finding : "");
     else result_line(r, "  not tried yet: `check rule %s` does, and its first use", name);
     if (x->file) result_line(r, "  from \"%s\"", x->file);
+}
+
+bool show_method(session *s, result *r, const char *name)
+{
+    (void)s;
+    const method *m = method_find(name);
+    const method_pass *p = method_pass_find(name);
+    const pass_step *x = steps_find(name);
+    if (!m && !x) return false;
+    result_string(r, m ? "method" : "step", name);
+    if (!p) {
+        result_line(r, "%s: %s", name, m ? m->title : x->summary);
+        return true;
+    }
+    result_string(r, "pass", p->strategy);
+    result_line(r, "%s: the method %s, as a pass over built-in steps", name, m->title);
+    result_line(r, "pass %s = %s", name, p->strategy);
+    size_t count;
+    const pass_step *steps = steps_table(&count);
+    for (size_t k = 0; k < count; k++) {
+        const char *at = strstr(p->strategy, steps[k].name);
+        if (!at || method_find(steps[k].name)) continue;
+        result_line(r, "  %-27s%s%s%s", steps[k].name, steps[k].summary, steps[k].source ? "  " : "",
+                    steps[k].source ? steps[k].source : "");
+    }
+    return true;
 }
 
 /* ---- rewrite ---- */
@@ -205,6 +239,7 @@ tw_status request_rewrite(session *s, const statement *st, result *r, value **ke
     rewriting w;
     rewriting_init(&w);
     tw_status status = session_check_pass(s, p);
+    conditions_append(&w.conditions, &s->rests);
     if (status == TW_OK) status = pass_run(s->e, p, before, &w);
     if (status == TW_OK) {
         rewriting_shown(s, r, before, &w);

@@ -167,6 +167,7 @@ tw_status request_show(session *s, const statement *st, result *r, value **keep)
     value *x = names_find(&s->rules, name.text);
     if (x) show_rule_value(s, r, name.text, x);
     shown = show_file(s, r, name.text) || shown || x;
+    shown = show_method(s, r, name.text) || shown;
     if (shown) return TW_OK;
     expr *symbol = expr_symbol(s->e, name.text);
     if (!symbol) return request_fail_at(s, name.at);

@@ -22,6 +22,9 @@ tw_status run_used_file(session *s, const char *path, bool again);
  * there is none. */
 bool show_file(session *s, result *r, const char *name);
 
+/* A built-in method as a pass, or a built-in step. False: no such name. */
+bool show_method(session *s, result *r, const char *name);
+
 /* A rule or a pass in full, for `show`. */
 void show_rule_value(session *s, result *r, const char *name, const value *v);
 

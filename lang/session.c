@@ -133,6 +133,7 @@ tw_status session_run(session *s, const statement *st, result *r)
     job j = {s, st, r};
     s->at = st->at;
     s->let_name = NULL;
+    conditions_clear(&s->rests);
     s->reads_move = false;
     s->move_new = NULL;
     engine_forgive(s->e);
@@ -170,6 +171,7 @@ static lower_meaning meaning_of(void *host, const char *name, expr **stands_for,
         return symbol && session_declares(s, symbol) ? MEANING_DECLARED : MEANING_FREE;
     }
     *stands_for = v->expression;
+    conditions_append(&s->rests, &v->conditions);
     if (v->kind == VALUE_EXPRESSION) return MEANING_VALUE;
     if (v->kind == VALUE_EXPANSION && v->expansion.integral) { /* its integral stands for it; `let` expands the whole again */
         slong terms = v->expansion.terms_asked;
@@ -186,7 +188,9 @@ static const lower_function *function_of(void *host, const char *name)
 {
     session *s = host;
     value *v = names_find(&s->names, name);
-    return v && v->kind == VALUE_FUNCTION ? &v->function : NULL;
+    if (!v || v->kind != VALUE_FUNCTION) return NULL;
+    conditions_append(&s->rests, &v->conditions);
+    return &v->function;
 }
 
 typedef struct function_offer {
@@ -330,6 +334,7 @@ void session_clear(session *s)
     free(s->open_name);
     names_clear(&s->rules);
     names_clear(&s->files);
+    conditions_clear(&s->rests);
     verdicts_free(s->verdicts);
     tw_engine_free(s->e);
     s->e = NULL;

@@ -83,6 +83,7 @@ typedef struct session {
     const char *file;      /* the file that runs, or NULL */
     unsigned line;         /* where in it the running statement begins */
     struct verdicts *verdicts; /* lang/verdicts.h; NULL: not read yet */
+    condition_list rests;  /* what the names met in this statement rest on: rewritten by rules that are not proved, ... */
     expr *current;         /* the expression that was rewritten last, for `why not`; NULL: none */
     bool quit;             /* `quit` has run */
     span at;               /* after a failure: where in the statement's source */

@@ -80,6 +80,7 @@ typedef struct expansion {
     expr *rest_floor;          /* p >= rest_floor > 0 in the rest, p measured from the dominant depth; NULL: no rest */
     expr *remainder;           /* read off a derivation by hand: the integral less all listed terms, exactly; else NULL */
     bool stokes_passed;      /* descent: a Stokes line; the path is two different sums of steepest curves */
+    expr *typed;             /* what `integral` came from by a user's pass; NULL: it is as typed */
     bool exact;              /* terminating and nothing left out: label `exact` */
     bool alternating_proved; /* reserved for numeric: set by bound_prepare */
     condition_list conditions;

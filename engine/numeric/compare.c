@@ -100,7 +100,7 @@ static tw_status judge(tw_engine *e, acb_t value, const comparison *c, expansion
     wanted = log2_mag(m) - 3.4;
     for (;;) {
         double radius;
-        status = quadrature(e, value, a->integral, at, digits, true, NULL);
+        status = quadrature(e, value, a->typed ? a->typed : a->integral, at, digits, true, NULL);
         if (status != TW_OK)
             break;
         mag_set(m, arb_radref(acb_realref(value)));

@@ -26,7 +26,8 @@ typedef struct rewriting {
 void rewriting_init(rewriting *w);
 void rewriting_clear(rewriting *w);
 
-/* A built-in step: rewrites subject or leaves *after NULL where it does not fit. Words in steps: name, source. */
+/* A built-in step: rewrites subject or leaves *after NULL where it does not fit; run NULL: a method, which leaves the
+ * expression alone. Words in steps: name, source. */
 typedef struct pass_step {
     const char *name, *source, *summary;
     tw_status (*run)(tw_engine *e, expr *subject, expr **after, condition_list *conditions);
