@@ -105,6 +105,7 @@ static void linear(const char *name, const char *text_of_rule, const char *term)
 
 int main(void)
 {
+    setvbuf(stdout, NULL, _IOLBF, 0);
     thousand("sin(k*x)", "rule r%d(a): sin(%d*x*a)*cos(a) becomes a");
     thousand("x^k under an integral", "rule r%d(a): integral from 0 to inf of x^%d*exp(-a*x)*cos(x) dx becomes a");
     thousand("numbers in a call", "rule r%d(a): J(%d, a)*K(1, a) becomes a");

@@ -264,10 +264,10 @@ static void test_library(void **state)
     const uint64_t trials = wanted ? strtoull(wanted, NULL, 10) : 150;
     printf("seed %llu\n", (unsigned long long)w.state);
     library l = {0, NULL};
-    char pattern[4096];
+    char names[4096];
     glob_t files;
-    snprintf(pattern, sizeof pattern, "%s/*.tw", folder ? folder : "stdlib");
-    if (glob(pattern, 0, NULL, &files) == 0)
+    snprintf(names, sizeof names, "%s/*.tw", folder ? folder : "stdlib");
+    if (glob(names, 0, NULL, &files) == 0)
         for (size_t k = 0; k < files.gl_pathc; k++) read_file(w.e, files.gl_pathv[k], &l);
     globfree(&files);
     /* about 12 mutants a rule */
