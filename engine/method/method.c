@@ -255,7 +255,7 @@ static expr **split_body(tw_engine *e, expr *integral, size_t *count)
 static tw_status expand_integral(tw_engine *e, expansion *out, expr *integral, slong terms, const char *by)
 {
     tw_status status = expand_one(e, out, integral, terms, by);
-    if (status == TW_OK || e->error.kind != ERROR_UNSUITABLE) return status;
+    if (status == TW_OK || (e->error.kind != ERROR_UNSUITABLE && e->error.kind != ERROR_UNAVAILABLE)) return status;
     tw_error first = {e->error.kind, base_copy(e->error.words)};
     engine_forgive(e);
     size_t count;

@@ -464,7 +464,9 @@ static bool end_is_quiet(tw_engine *e, const phase_reading *r, expr *q, bool rig
         growth_bound_clear(&g);
         f = d;
     }
-    if (e->error.kind == ERROR_UNDECIDED || e->error.kind == ERROR_DIVERGENT) engine_forgive(e);
+    error_kind kind = e->error.kind;
+    if (kind == ERROR_TIME || kind == ERROR_MEMORY || kind == ERROR_INTERRUPT) return false;
+    engine_forgive(e); /* nothing is known of the end: the condition stays open */
     return quiet;
 }
 
