@@ -13,6 +13,9 @@ endif
 ifdef SANITIZE
 BUILD  := build/sanitize
 CFLAGS := -O1 -g -fno-omit-frame-pointer -fsanitize=address,undefined -fno-sanitize-recover=undefined
+ifneq ($(findstring clang,$(CC)),)
+CFLAGS += -fsanitize=fuzzer-no-link # so that `make fuzz` uses the same objects
+endif
 endif
 
 ENGINE  := $(wildcard engine/*.c engine/*/*.c)
@@ -70,8 +73,8 @@ demo: all
 bench: all $(BENCH_X)
 	sh tests/bench/run.sh $(BUILD)
 
-fuzz:
-	sh tests/fuzz/run.sh
+fuzz: $(BUILD)/tests/engine/ball/test_growth
+	sh tests/fuzz/run.sh $(SECONDS)
 
 install: all
 	sh tools/install.sh $(BUILD) "$(DESTDIR)" "$(PREFIX)" $(VERSION)

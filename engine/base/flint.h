@@ -15,8 +15,10 @@
 #endif
 
 #include <flint/flint.h>
-#include <flint/arith.h>
+#include <flint/ulong_extras.h>
 #include <flint/fmpz.h>
+#include <flint/fmpz_vec.h>
+#include <flint/fmpz_factor.h>
 #include <flint/fmpz_poly.h>
 #include <flint/fmpz_poly_factor.h>
 #include <flint/fmpz_mpoly.h>
@@ -26,6 +28,7 @@
 #include <flint/fmpq_vec.h>
 
 #if __FLINT_RELEASE >= 30000
+#include <flint/bernoulli.h>
 #include <flint/arb.h>
 #include <flint/arb_poly.h>
 #include <flint/arb_hypgeom.h>
@@ -39,6 +42,7 @@
 #include <flint/ca.h>
 #include <flint/qqbar.h>
 #else
+#include <bernoulli.h>
 #include <arb.h>
 #include <arb_poly.h>
 #include <arb_hypgeom.h>

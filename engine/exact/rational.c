@@ -373,7 +373,7 @@ static void tan_of_variable(fmpq_poly_t out, slong n, int hyperbolic)
     fmpz_t common, t;
     fmpz_init(t);
     fmpz_init_set_ui(common, 1);
-    arith_bernoulli_number_vec(bernoulli, n + 2);
+    bernoulli_fmpq_vec_no_cache(bernoulli, 0, n + 2);
     fmpz_fac_ui(common, (ulong)(n + 1)); /* (2m)! divides it, and T_m = 2^(2m)(2^(2m) - 1) B_(2m)/(2m) is an integer */
     for (slong k = 1; k < n; k += 2) {
         slong two_m = k + 1;

@@ -231,7 +231,7 @@ static expr *zeta_value(tw_engine *e, slong n)
     fmpz_t t;
     fmpq_init(c);
     fmpz_init(t);
-    arith_bernoulli_number(c, (ulong)n);
+    bernoulli_fmpq_ui(c, (ulong)n);
     fmpz_fac_ui(t, (ulong)n);
     fmpq_div_fmpz(c, c, t);
     fmpz_one_2exp(t, n - 1);

@@ -192,11 +192,11 @@ static bool exact_zeta(tw_engine *e, expr *a, expr **value)
     fmpq_init(b);
     fmpz_init(f);
     if (n <= 0) { /* with B_1 = -1/2 the formula at n = 0 would need +1/2 */
-        arith_bernoulli_number(b, (ulong)(1 - n));
+        bernoulli_fmpq_ui(b, (ulong)(1 - n));
         fmpq_div_fmpz(b, b, (fmpz_set_si(f, n == 0 ? 1 : n - 1), f));
         *value = expr_fmpq(e, b);
     } else {
-        arith_bernoulli_number(b, (ulong)n);
+        bernoulli_fmpq_ui(b, (ulong)n);
         fmpq_abs(b, b);
         fmpz_fac_ui(f, (ulong)n);
         fmpq_div_fmpz(b, b, f);

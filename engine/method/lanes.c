@@ -94,7 +94,7 @@ static expr *zeta_value(tw_engine *e, slong n)
     fmpq_t b, f;
     fmpq_init(b);
     fmpq_init(f);
-    arith_bernoulli_number(b, (ulong)n);
+    bernoulli_fmpq_ui(b, (ulong)n);
     fmpq_abs(b, b);
     fmpz_fac_ui(fmpq_denref(f), (ulong)n);
     fmpz_one_2exp(fmpq_numref(f), (ulong)(n - 1));

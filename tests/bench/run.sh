@@ -1,6 +1,6 @@
 #!/bin/sh
-# Every measurement in one run, side by side: the C programs of this folder, then the program as a user starts it, then mpmath
-# on the same integrals. Medians; compare ratios, the machine may be shared. usage: run.sh BUILD
+# Every measurement in one run: the C programs of this folder, then the program as a user starts it, then the figures of the
+# README, quadrature beside mpmath among them. CPU times, medians. usage: run.sh BUILD
 build=$1
 for x in "$build"/tests/bench/bench_*; do
     if [ -x "$x" ] && [ -f "$x" ]; then
@@ -8,7 +8,7 @@ for x in "$build"/tests/bench/bench_*; do
         "$x"
     fi
 done
-for x in tests/bench/bench_*.py; do
-    printf '== %s\n' "$(basename "$x")"
-    python3 "$x" "$build"
-done
+printf '== bench_program.py\n'
+python3 tests/bench/bench_program.py "$build"
+printf '== figures.py\n'
+python3 tests/bench/figures.py "$build"
