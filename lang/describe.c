@@ -20,9 +20,12 @@ void describe_value(text *out, const acb_t z, slong digits)
         print_ball(out, acb_realref(z), digits);
         return;
     }
+    if (!arb_is_zero(acb_realref(z))) {
+        text_add_char(out, '(');
+        print_ball(out, acb_realref(z), digits);
+        text_add(out, ") + ");
+    }
     text_add_char(out, '(');
-    print_ball(out, acb_realref(z), digits);
-    text_add(out, ") + (");
     print_ball(out, acb_imagref(z), digits);
     text_add(out, ")*i");
 }
@@ -612,6 +615,13 @@ static void add_place_lines(session *s, result *r, const expansion *a)
     }
 }
 
+static bool is_listed(const condition_list *list, const condition *c)
+{
+    for (size_t k = 0; k < list->count; k++)
+        if (list->list[k].label == c->label && strcmp(list->list[k].words, c->words) == 0) return true;
+    return false;
+}
+
 tw_status describe_expansion(session *s, result *r, const char *name, expansion *a)
 {
     remainder_bound bound;
@@ -627,7 +637,15 @@ tw_status describe_expansion(session *s, result *r, const char *name, expansion 
     tw_status status = describe_coefficients(s, r, a, 0, -1);
     if (status == TW_OK) status = describe_bound(s, &bound, a);
     if (status == TW_OK) describe_remainder(s, r, a, &bound);
-    if (status == TW_OK) result_conditions(r, &a->conditions);
+    if (status == TW_OK) { /* those that the bound has not listed yet */
+        condition_list others;
+        conditions_init(&others);
+        for (size_t k = 0; k < a->conditions.count; k++)
+            if (!is_listed(&bound.conditions, &a->conditions.list[k]))
+                conditions_add(&others, a->conditions.list[k].words, a->conditions.list[k].relation, a->conditions.list[k].label);
+        result_conditions(r, &others);
+        conditions_clear(&others);
+    }
     remainder_bound_clear(&bound);
     return status;
 }

@@ -5,7 +5,7 @@
 
 #include "engine/export/format.h"
 
-/* mid * 10^exponent as text: plain notation from 10^least to 10^20, else with e. */
+/* mid * 10^exponent as text: plain notation from 10^least to 10^20 unless many zeros would end it, else with e. */
 static void add_decimal(text *out, const fmpz_t mid, const fmpz_t exponent, slong least)
 {
     fmpz_t m, ten, place;
@@ -26,7 +26,8 @@ static void add_decimal(text *out, const fmpz_t mid, const fmpz_t exponent, slon
     fmpz_add_si(lead, place, count - 1);
     if (fmpz_is_zero(m)) {
         text_add_char(out, '0');
-    } else if (fmpz_cmp_si(lead, least) < 0 || fmpz_cmp_si(lead, 20) > 0) {
+    } else if (fmpz_cmp_si(lead, least) < 0 || fmpz_cmp_si(lead, 20) > 0 ||
+               (fmpz_cmp_si(lead, 9) > 0 && fmpz_cmp_si(place, 4) > 0)) { /* zeros would only say how large it is */
         text_add_char(out, d[0]);
         if (count > 1) {
             text_add_char(out, '.');
