@@ -18,7 +18,7 @@
 #include "engine/exact/telescope.h"
 #include "engine/method/lanes.h"
 
-enum { ORDER_LIMIT = 12, PIECES_LIMIT = 12, ROOM_LIMIT = 24, SHIFT_LIMIT = 24 };
+enum { ORDER_LIMIT = 12, PIECES_LIMIT = 12, ROOM_LIMIT = 24, SHIFT_LIMIT = 24, SECONDS_MOST = 20 };
 
 struct recurrence_memo {
     size_t count;
@@ -604,14 +604,51 @@ static tw_status find_for_lane(tw_engine *e, const contribution *c, const lane *
     return TW_ERROR;
 }
 
+static double now(void)
+{
+    struct timespec t;
+    clock_gettime(CLOCK_MONOTONIC, &t);
+    return (double)t.tv_sec + 1e-9 * (double)t.tv_nsec;
+}
+
+double quick_begin(tw_engine *e, double seconds)
+{
+    double before = e->deadline, soon = now() + seconds;
+    if (before == 0 || soon < before) e->deadline = soon;
+    return before;
+}
+
+/* The search as one job: a library call that goes on past the deadline is left, and what it held is lost. */
+typedef struct find_job {
+    tw_engine *e;
+    const contribution *c;
+    const lane *l;
+    expr *large;
+    recurrence *made;
+    bool impossible;
+} find_job;
+
+static tw_status run_find(void *host)
+{
+    find_job *j = host;
+    return find_for_lane(j->e, j->c, j->l, j->large, &j->made, &j->impossible);
+}
+
 tw_status lane_recurrence(tw_engine *e, contribution *c, const lane *l, expr *large, const recurrence **out)
 {
     struct remembered *m = remember(c, l);
     if (!m->found && !m->why) {
-        recurrence *made = NULL;
-        tw_status status = find_for_lane(e, c, l, large, &made, &m->impossible);
-        if (status == TW_OK) m->found = made;
-        else if (e->error.kind == ERROR_UNSUITABLE) m->why = base_copy(e->error.words);
+        find_job job = {e, c, l, large, NULL, false};
+        double before = quick_begin(e, SECONDS_MOST);
+        tw_status status = engine_protect(e, run_find, &job);
+        e->deadline = before;
+        m->impossible = job.impossible;
+        if (status == TW_OK) m->found = job.made;
+        if (status != TW_OK && e->error.kind == ERROR_TIME && (before == 0 || now() < before)) {
+            engine_forgive(e);
+            engine_fail(e, ERROR_UNSUITABLE, "no recurrence was found within %d seconds", SECONDS_MOST);
+        }
+        if (status != TW_OK && e->error.kind == ERROR_UNSUITABLE) m->why = base_copy(e->error.words);
         if (status != TW_OK) return TW_ERROR;
     }
     *out = m->found;
@@ -623,7 +660,7 @@ tw_status lane_recurrence_fitted(tw_engine *e, contribution *c, const lane *l, e
 {
     struct remembered *m = remember(c, l);
     *out = m->fitted;
-    if (m->fit_tried || m->impossible || c->terminates) return TW_OK;
+    if (m->fit_tried || m->impossible || c->terminates || !l->c.q) return TW_OK;
     expr **list;
     slong found;
     if (lane_coefficients(e, c, l, large, small, GUESS_COEFFICIENTS, NULL, &list, &found) != TW_OK) return TW_ERROR;
@@ -641,20 +678,6 @@ tw_status lane_recurrence_fitted(tw_engine *e, contribution *c, const lane *l, e
     m->fit_tried = status == TW_OK;
     *out = m->fitted;
     return status;
-}
-
-static double now(void)
-{
-    struct timespec t;
-    clock_gettime(CLOCK_MONOTONIC, &t);
-    return (double)t.tv_sec + 1e-9 * (double)t.tv_nsec;
-}
-
-double quick_begin(tw_engine *e, double seconds)
-{
-    double before = e->deadline, soon = now() + seconds;
-    if (before == 0 || soon < before) e->deadline = soon;
-    return before;
 }
 
 bool quick_end(tw_engine *e, double before)
