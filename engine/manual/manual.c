@@ -620,11 +620,29 @@ expr *manual_value(const manual *m)
     return frame_value(m->e, manual_now(m));
 }
 
+/* Signs and convergence are decided from all facts, granted ones among them, without saying which were needed: so a
+ * granted fact about a symbol of the integral counts as needed. */
+static void add_granted(const manual *m, condition_list *out)
+{
+    for (size_t k = 0; k < m->fact_count; k++) {
+        if (m->fact_labels[k] != CONDITION_GRANTED) continue;
+        expr **symbols;
+        size_t n = expr_symbols(m->facts[k], &symbols);
+        bool speaks = false;
+        for (size_t j = 0; j < n; j++) speaks = speaks || expr_has(m->typed, symbols[j]);
+        free(symbols);
+        char *words = speaks ? expr_text(m->e, m->facts[k]) : NULL;
+        if (words) conditions_add(out, words, m->facts[k], CONDITION_GRANTED);
+        free(words);
+    }
+}
+
 void manual_conditions(const manual *m, condition_list *out)
 {
     conditions_add(out, CONVERGES, NULL,
                    manual_now(m)->converges ? CONDITION_PROVED : CONDITION_OPEN);
     for (size_t k = 0; k < m->record.count; k++) conditions_append(out, &m->record.steps[k].conditions);
+    add_granted(m, out);
 }
 
 bool manual_is_proved(const manual *m)

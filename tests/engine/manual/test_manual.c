@@ -372,6 +372,25 @@ static void test_wrong_rule(void **state)
     tw_engine_free(e);
 }
 
+/* What rests on a granted condition is not proved. */
+static void test_granted(void **state)
+{
+    (void)state;
+    tw_engine *e = text_engine("s", LARGE_POSITIVE);
+    text_given(e, "a > 0");
+    expr *a = expr_symbol(e, "a");
+    assert_int_equal(facts_add(e, expr_relation_of(e, RELATION_LESS, expr_int(e, 2), a), CONDITION_GRANTED), TW_OK);
+    manual *m = begin(e, "integral from 0 to inf of exp(-s*x)/(a - 2 + x) dx");
+    made(m, simple(m, MANUAL_PARTS, NULL, "exp(-s*x)"));
+    assert_false(manual_is_proved(m));
+    rule *r = manual_rule(m, "r");
+    assert_non_null(r);
+    assert_false(r->status == RULE_PROVED);
+    rule_release(r);
+    manual_release(m);
+    tw_engine_free(e);
+}
+
 static void test_begin(void **state)
 {
     (void)state;
@@ -554,7 +573,7 @@ int main(void)
         cmocka_unit_test(test_substitute), cmocka_unit_test(test_wrong_inverse), cmocka_unit_test(test_parts),
         cmocka_unit_test(test_parameter),  cmocka_unit_test(test_split_and_pick), cmocka_unit_test(test_rotate),
         cmocka_unit_test(test_expand),     cmocka_unit_test(test_own_remainder),     cmocka_unit_test(test_swap),           cmocka_unit_test(test_wrong_rule),
-        cmocka_unit_test(test_begin),      cmocka_unit_test(test_replay),         cmocka_unit_test(test_random),
+        cmocka_unit_test(test_granted),    cmocka_unit_test(test_begin),      cmocka_unit_test(test_replay),         cmocka_unit_test(test_random),
     };
     return cmocka_run_group_tests(tests, NULL, NULL);
 }
