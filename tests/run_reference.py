@@ -17,7 +17,7 @@ import os
 from reader import HERE
 
 FAMILIES = ("watson", "parts", "symbolic-parameter", "mellin-log", "laplace-interior", "laplace-endpoint",
-            "high-order-saddle", "laplace-multi", "bessel-kernel", "two-scale", "phase")
+            "high-order-saddle", "laplace-multi", "bessel-kernel", "two-scale", "phase", "descent")
 
 
 program = Program(sys.argv[1] if len(sys.argv) > 1 else "build")
