@@ -54,13 +54,13 @@ static const help_entry entries[] = {
      "that it starts from. `proved`: it\nfollows from an identity between rational functions, the certificate. `check\n"
      "recurrence` proves that identity anew by another way and compares with\ncoefficients computed directly; a typed "
      "recurrence is compared, and proved\nwhen it follows from the proved one.",
-     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/sqrt(4 + x^2) dx to 4 terms\nrecurrence of A\n"
-     "check recurrence of A\ncheck recurrence 4*c[n+1] = -(2*n + 1)^2*c[n] of A", NULL},
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 4 terms\nrecurrence of A\n"
+     "check recurrence of A\ncheck recurrence c[n+1] = -2*(n + 1)*(2*n + 1)*c[n] of A", NULL},
     {"growth", HELP_REQUEST, HERE, "growth of NAME",
      "The form of the coefficients for large n, K*Gamma(m*n + b)/F^n. F and b are\nexact, from the recurrence; K is exact where "
      "the recurrence has order one,\notherwise `estimated` from coefficients far out, with its spread. With it: near\nwhich n "
      "the terms are least, and how small the error can become.",
-     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/sqrt(4 + x^2) dx to 4 terms\ngrowth of A", NULL},
+     "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 4 terms\ngrowth of A", NULL},
     {"remainder", HELP_REQUEST, HERE, "remainder of NAME [with M terms]",
      "A bound for the integral minus the kept terms, as a formula that holds for\nall values of the large parameter from some "
      "value on, with the theorem or\ncomputation behind it.",
@@ -258,7 +258,7 @@ static const help_entry entries[] = {
     {"conditional", HELP_LABEL, HERE, NULL, "Rests on an open or granted condition; the result lists them.", NULL, "grant"},
     {"estimated", HELP_LABEL, HERE, NULL, "A figure without proof, from the next omitted terms.", NULL, "evaluate"},
     {"unknown", HELP_LABEL, HERE, NULL, "Nothing is claimed; the reason stands below.", NULL, "remainder"},
-    {"fitted", HELP_LABEL, LATER, NULL, "Of a recurrence: agrees with the computed coefficients, not proved.", NULL,
+    {"fitted", HELP_LABEL, HERE, NULL, "Of a recurrence: agrees with the computed coefficients, not proved.", NULL,
      "recurrence"},
     {"passed", HELP_LABEL, HERE, NULL, "Of a rule: tried at samples without a contradiction.", NULL, "check"},
     {"refuted", HELP_LABEL, HERE, NULL, "Contradicted by certified numbers.", NULL, "compare"},
