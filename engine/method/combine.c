@@ -1,6 +1,7 @@
-/* Arithmetic of expansions. The one idea: an expansion without logarithms is prefactor * lead * s^a * (1 + sum a_k s^(-k/d)),
- * and what is in the brackets is an ordinary power series, which products, powers and logarithms keep so; the error is not
- * carried through them term by term: a number is the same arithmetic on the balls of the parts (engine/numeric/combined.c). */
+/* Arithmetic of expansions. The one idea: an expansion without logarithms is prefactor * lead * s^a * (1 + sum a_k
+ * s^(-k/d)), and what is in the brackets is an ordinary power series, which products, powers and logarithms keep so;
+ * the error is not carried through them term by term: a number is the same arithmetic on the balls of the parts
+ * (engine/numeric/combined.c). */
 #include "engine/method/combine.h"
 
 #include <stdlib.h>
@@ -53,7 +54,9 @@ static expr *tidy(tw_engine *e, expr *a)
 static slong grid_index(const job *j, expr *from, expr *to, slong den)
 {
     expr *d = expr_mul(j->e, expr_int(j->e, den), j->small ? expr_sub(j->e, to, from) : expr_sub(j->e, from, to));
-    if (!d || !expr_is_number(d) || !fmpz_is_one(fmpq_denref(expr_number(d))) || !fmpz_fits_si(fmpq_numref(expr_number(d)))) return -1;
+    if (!d || !expr_is_number(d) || !fmpz_is_one(fmpq_denref(expr_number(d))) ||
+        !fmpz_fits_si(fmpq_numref(expr_number(d))))
+        return -1;
     return fmpz_get_si(fmpq_numref(expr_number(d)));
 }
 
@@ -77,7 +80,8 @@ static tw_status flatten(job *j, expansion *a, flat_term **list, size_t *count, 
         if (!front) front = c->prefactor;
         expr *ratio = normal_under_facts(e, expr_div(e, c->prefactor, front), &j->large, 1);
         if (!ratio) return TW_ERROR;
-        if (expr_has(ratio, j->large)) return refuse(j, "its points have prefactors that differ in the large parameter");
+        if (expr_has(ratio, j->large))
+            return refuse(j, "its points have prefactors that differ in the large parameter");
         term *order;
         slong found;
         if (expansion_order(e, a, k, j->terms + 1, &order, &found) != TW_OK) return TW_ERROR;
@@ -94,7 +98,8 @@ static tw_status flatten(job *j, expansion *a, flat_term **list, size_t *count, 
             end = expr_add(e, l->first_exponent, expr_fmpq(e, steps));
             fmpq_clear(steps);
             *list = base_resize(*list, (*count + 1) * sizeof **list);
-            (*list)[(*count)++] = (flat_term){end, expr_mul(e, ratio, expr_mul(e, l->constant, coefficient_expr(e, &l->c, order[n].n)))};
+            (*list)[(*count)++] =
+                (flat_term){end, expr_mul(e, ratio, expr_mul(e, l->constant, coefficient_expr(e, &l->c, order[n].n)))};
         }
         free(order);
         *last = base_resize(*last, (*last_count + 1) * sizeof **last);
@@ -144,7 +149,8 @@ static tw_status grid_of_expansion(job *j, grid *g, expansion *a)
                 if (a->contributions[k].dominant) g->prefactor = a->contributions[k].prefactor;
             g->lead = tidy(e, g->a[0]);
             g->exponent = top;
-            if (!g->lead || expr_is_zero(g->lead)) status = e->error.kind == ERROR_NONE ? refuse(j, "the leading terms cancel") : TW_ERROR;
+            if (!g->lead || expr_is_zero(g->lead))
+                status = e->error.kind == ERROR_NONE ? refuse(j, "the leading terms cancel") : TW_ERROR;
             for (slong n = 0; n < known && status == TW_OK; n++) {
                 g->a[n] = expr_is_zero(g->a[n]) ? g->a[n] : tidy(e, expr_div(e, g->a[n], g->lead));
                 if (!g->a[n]) status = TW_ERROR;
@@ -187,7 +193,8 @@ static tw_status grid_mul(job *j, grid *g, grid *h)
     for (slong k = 0; k < n; k++) {
         expr *sum = expr_int(e, 0);
         for (slong i = 0; i <= k; i++)
-            if (!expr_is_zero(g->a[i]) && !expr_is_zero(h->a[k - i])) sum = expr_add(e, sum, expr_mul(e, g->a[i], h->a[k - i]));
+            if (!expr_is_zero(g->a[i]) && !expr_is_zero(h->a[k - i]))
+                sum = expr_add(e, sum, expr_mul(e, g->a[i], h->a[k - i]));
         a[k] = sum ? tidy(e, sum) : NULL;
         if (!a[k] || !budget_ok(e)) {
             free(a);
@@ -250,8 +257,8 @@ static expr **grid_log(job *j, const grid *g)
     return l;
 }
 
-/* The exponent's terms with the large parameter: is exp(these) growing (1), decaying (-1), of no exponential size (0); 2: not
- * known. */
+/* The exponent's terms with the large parameter: is exp(these) growing (1), decaying (-1), of no exponential size (0);
+ * 2: not known. */
 static int exponential_size(job *j, expr *ratio)
 {
     tw_engine *e = j->e;
@@ -261,9 +268,12 @@ static int exponential_size(job *j, expr *ratio)
     for (size_t k = 0; k < count; k++) {
         expr *base, *power;
         expr_as_power(e, factors[k], &base, &power);
-        if (expr_is_call(factors[k], FUNCTION_EXP)) exponent = expr_add(e, exponent, factors[k]->args[0]);
-        else if (expr_has(power, j->large)) exponent = expr_add(e, exponent, expr_mul(e, power, expr_call1(e, FUNCTION_LOG, base)));
-        else if (expr_has(base, j->large) && base != j->large) return 2;
+        if (expr_is_call(factors[k], FUNCTION_EXP))
+            exponent = expr_add(e, exponent, factors[k]->args[0]);
+        else if (expr_has(power, j->large))
+            exponent = expr_add(e, exponent, expr_mul(e, power, expr_call1(e, FUNCTION_LOG, base)));
+        else if (expr_has(base, j->large) && base != j->large)
+            return 2;
     }
     exponent = exponent ? expr_expand(e, exponent) : NULL;
     if (!exponent || !expr_has(exponent, j->large)) return exponent ? 0 : 2;
@@ -296,7 +306,8 @@ static tw_status grid_add(job *j, grid *g, grid *h)
     }
     slong den = common_den(g, h);
     expr *gap = expr_sub(e, h->exponent, g->exponent);
-    if (!gap || !expr_is_number(gap) || fmpz_cmp_si(fmpq_denref(expr_number(gap)), 24) > 0) return refuse(j, "their exponents have no common step");
+    if (!gap || !expr_is_number(gap) || fmpz_cmp_si(fmpq_denref(expr_number(gap)), 24) > 0)
+        return refuse(j, "their exponents have no common step");
     slong q = fmpz_get_si(fmpq_denref(expr_number(gap)));
     den = den / (slong)n_gcd((ulong)den, (ulong)q) * q;
     refine(j, g, den);
@@ -416,8 +427,8 @@ static tw_status grid_of(job *j, grid *g, expr *f)
 
 /* ---- results ---- */
 
-static tw_status add_lane(job *j, contribution *c, expr *constant, slong log_power, expr *exponent, slong den, expr *const *x,
-                          slong count)
+static tw_status add_lane(job *j, contribution *c, expr *constant, slong log_power, expr *exponent, slong den,
+                          expr *const *x, slong count)
 {
     fmpq_t forward;
     fmpq_init(forward);
@@ -453,7 +464,8 @@ static slong grid_stride(expr *const *a, slong count)
 static tw_status finish_grid(job *j, const grid *g)
 {
     contribution *c = new_contribution(j, g->prefactor);
-    slong stride = n_gcd((ulong)grid_stride(g->a, g->count), (ulong)g->den), count = (g->count - 1) / stride + 1, kept = 0, found = 0;
+    slong stride = n_gcd((ulong)grid_stride(g->a, g->count), (ulong)g->den), count = (g->count - 1) / stride + 1,
+          kept = 0, found = 0;
     expr **x = base_alloc((size_t)count * sizeof *x);
     for (slong k = 0; k < count && found < j->terms; k++) {
         x[k] = g->a[k * stride];
@@ -487,12 +499,18 @@ static tw_status add_log_term(job *j, contribution *c, expr *scale, expr *t, con
     for (size_t k = 0; k < count && fine; k++) {
         expr *base, *exponent;
         expr_as_power(e, factors[k], &base, &exponent);
-        if (base == j->large && expr_is_number(exponent)) fmpq_add(power, power, expr_number(exponent));
-        else if (expr_is_call(base, FUNCTION_LOG) && base->args[0] == j->large && expr_is_int(exponent, 1)) logs++;
-        else if (expr_has(factors[k], j->large)) fine = false;
-        else constant = expr_mul(e, constant, factors[k]);
+        if (base == j->large && expr_is_number(exponent))
+            fmpq_add(power, power, expr_number(exponent));
+        else if (expr_is_call(base, FUNCTION_LOG) && base->args[0] == j->large && expr_is_int(exponent, 1))
+            logs++;
+        else if (expr_has(factors[k], j->large))
+            fine = false;
+        else
+            constant = expr_mul(e, constant, factors[k]);
     }
-    tw_status status = fine ? TW_OK : whole ? refuse(j, "the logarithm of the prefactor is no sum of powers") : TW_ERROR;
+    tw_status status = fine    ? TW_OK
+                       : whole ? refuse(j, "the logarithm of the prefactor is no sum of powers")
+                               : TW_ERROR;
     if (status == TW_OK) {
         expr *rest;
         expr_as_coefficient(e, constant, number, &rest);
@@ -576,7 +594,8 @@ static tw_status finish_log(job *j, const grid *g, expr *scale, expr *extra)
     fmpq_add(low, low, power);
     tw_status status = TW_OK;
     for (size_t k = 0; k < front_count && status == TW_OK; k++) status = add_log_term(j, c, scale, terms[k], low);
-    for (size_t k = 0; k < extra_count && status == TW_OK; k++) status = add_log_term(j, c, expr_int(e, 1), more[k], low);
+    for (size_t k = 0; k < extra_count && status == TW_OK; k++)
+        status = add_log_term(j, c, expr_int(e, 1), more[k], low);
     expr *exponent = expr_add(e, expr_fmpq(e, power), expr_frac(e, j->small ? stride : -stride, g->den));
     for (slong k = 0; k < kept; k++) x[k] = expr_mul(e, expr_fmpq(e, number), x[k]);
     if (kept > 0 && status == TW_OK) status = add_lane(j, c, rest, 0, exponent, g->den / stride, x, kept);
@@ -588,7 +607,8 @@ static tw_status finish_log(job *j, const grid *g, expr *scale, expr *extra)
     return status;
 }
 
-/* f = sum of weight_k * log(f_k) + extra: true, *inside = product of f_k^weight_k, weights rational up to a common *scale. */
+/* f = sum of weight_k * log(f_k) + extra: true, *inside = product of f_k^weight_k, weights rational up to a common
+ * *scale. */
 static bool read_logs(job *j, expr *f, expr **inside, expr **scale, expr **extra)
 {
     tw_engine *e = j->e;
@@ -605,9 +625,12 @@ static bool read_logs(job *j, expr *f, expr **inside, expr **scale, expr **extra
         size_t n = expr_factors(&terms[k], &factors);
         expr *log_of = NULL, *weight = expr_int(e, 1);
         for (size_t i = 0; i < n; i++) {
-            if (!has_integral(factors[i])) weight = expr_mul(e, weight, factors[i]);
-            else if (!log_of && expr_is_call(factors[i], FUNCTION_LOG)) log_of = factors[i]->args[0];
-            else return false;
+            if (!has_integral(factors[i]))
+                weight = expr_mul(e, weight, factors[i]);
+            else if (!log_of && expr_is_call(factors[i], FUNCTION_LOG))
+                log_of = factors[i]->args[0];
+            else
+                return false;
         }
         if (!log_of) return false;
         if (!*scale) *scale = weight;
@@ -642,7 +665,8 @@ static expr *with_symbols(tw_engine *e, const struct combination *c, expr *f)
 static tw_status combined_extend(tw_engine *e, expansion *a, slong terms)
 {
     for (size_t k = 0; k < a->contribution_count; k++)
-        if (contribution_count_terms(&a->contributions[k]) >= terms || terms <= a->contributions[k].searched) return TW_OK;
+        if (contribution_count_terms(&a->contributions[k]) >= terms || terms <= a->contributions[k].searched)
+            return TW_OK;
     expansion more;
     expansion_init(&more);
     tw_status status = combine(e, &more, a->integral, terms);
@@ -672,8 +696,8 @@ static void record(job *j, expr *f)
     s->before = f;
     text words;
     text_init(&words);
-    text_addf(&words, "%lu expansion%s; the series are combined exactly, numbers come from the parts' balls", (unsigned long)j->c->count,
-              j->c->count == 1 ? "" : "s");
+    text_addf(&words, "%lu expansion%s; the series are combined exactly, numbers come from the parts' balls",
+              (unsigned long)j->c->count, j->c->count == 1 ? "" : "s");
     s->detail = text_take(&words);
     s->after = f;
     for (size_t k = 0; k < j->c->count; k++) {
@@ -688,7 +712,8 @@ tw_status combine(tw_engine *e, expansion *out, expr *f, slong terms)
     job j = {.e = e, .out = out, .terms = terms};
     large_kind kind = facts_large(e, &j.large);
     if (kind == LARGE_NONE)
-        return engine_fail(e, ERROR_UNSUITABLE, "no parameter is declared large or small: say for example `large s` first");
+        return engine_fail(e, ERROR_UNSUITABLE,
+                           "no parameter is declared large or small: say for example `large s` first");
     j.small = kind == LARGE_SMALL;
     j.c = base_alloc(sizeof *j.c);
     memset(j.c, 0, sizeof *j.c);

@@ -26,7 +26,8 @@ static void collect(tw_engine *e, expr *f, expr *x, expr ***list, size_t *count)
     for (uint32_t k = 0; k < f->count; k++) collect(e, f->args[k], x, list, count);
 }
 
-static tw_status kinks_nested(tw_engine *e, expr *f, expr *x, expr *from, expr *to, expr ***places, size_t *count, int level)
+static tw_status kinks_nested(tw_engine *e, expr *f, expr *x, expr *from, expr *to, expr ***places, size_t *count,
+                              int level)
 {
     expr **deciding = NULL;
     size_t n = 0;
@@ -93,7 +94,8 @@ static int sign_inside(const stretch *s, expr *u)
     tw_engine *e = s->e;
     if (!u) return 2;
     if (expr_is_zero(u)) return 0;
-    expr *middle = expr_is_minus_inf(s->from) ? (expr_is_inf(s->to) ? expr_int(e, 0) : expr_sub(e, s->to, expr_int(e, 1)))
+    expr *middle = expr_is_minus_inf(s->from)
+                       ? (expr_is_inf(s->to) ? expr_int(e, 0) : expr_sub(e, s->to, expr_int(e, 1)))
                    : expr_is_inf(s->to) ? expr_add(e, s->from, expr_int(e, 1))
                                         : expr_mul(e, expr_frac(e, 1, 2), expr_add(e, s->from, s->to));
     expr *value = expr_substitute(e, u, s->x, middle);

@@ -17,7 +17,8 @@ static answer laplace_suits(tw_engine *e, const reading *r, char **why)
     if (dominant == 0 || r->points->local.count == 0)
         return suits_answer(why, ANSWER_NO, "no point of the path is known where the exponent is greatest");
     if (dominant > 1)
-        return suits_answer(why, ANSWER_YES, "the exponent is greatest at %lu points of equal depth", (unsigned long)dominant);
+        return suits_answer(why, ANSWER_YES, "the exponent is greatest at %lu points of equal depth",
+                            (unsigned long)dominant);
     char *place = expr_text(e, r->points->place);
     answer a = suits_answer(why, ANSWER_YES, "the exponent is greatest at %s%s = %s only", inside ? "" : "the end ",
                             r->original_variable->is.name, place ? place : "");
@@ -29,13 +30,15 @@ static void record_point(tw_engine *e, expansion *out, size_t k)
 {
     const contribution *c = &out->contributions[k];
     char *place = expr_text(e, c->place);
-    step *s = local_record_sum(e, out, k, "Laplace's method: take the exponent for the variable and integrate term by term",
-                               "DLMF 2.3.15");
+    step *s = local_record_sum(
+        e, out, k, "Laplace's method: take the exponent for the variable and integrate term by term", "DLMF 2.3.15");
     text words;
     text_init(&words);
-    text_addf(&words, "at %s = %s, %lu branch%s; t = p(x) turns each into int G(t)*exp(-scale*t) dt, and each term t^(z - 1) of "
-              "G gives Gamma(z)*scale^-z",
-              c->variable->is.name, place ? place : "", (unsigned long)c->local.count, c->local.count == 1 ? "" : "es");
+    text_addf(
+        &words,
+        "at %s = %s, %lu branch%s; t = p(x) turns each into int G(t)*exp(-scale*t) dt, and each term t^(z - 1) of "
+        "G gives Gamma(z)*scale^-z",
+        c->variable->is.name, place ? place : "", (unsigned long)c->local.count, c->local.count == 1 ? "" : "es");
     s->detail = text_take(&words);
     free(place);
 }

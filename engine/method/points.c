@@ -134,7 +134,9 @@ static tw_status slope_of_piece(tw_engine *e, path_piece *p, expr *x, expr *from
     expr *middle = inside_of(e, from, to);
     expr *value = middle ? expr_substitute(e, slope, x, middle) : NULL;
     int sign = 2;
-    if (value) sign = expr_is_closed_value(value) ? value_sign(e, value) : decide_sign(e, normal_under_facts(e, value, NULL, 0));
+    if (value)
+        sign =
+            expr_is_closed_value(value) ? value_sign(e, value) : decide_sign(e, normal_under_facts(e, value, NULL, 0));
     if (!value && e->error.kind == ERROR_VALUE) engine_forgive(e);
     if (sign != 1 && sign != -1 && from_stationary) sign = slope_beside(e, slope, x, from, 1);
     if (sign != 1 && sign != -1 && to_stationary) sign = slope_beside(e, slope, x, to, -1);
@@ -191,12 +193,15 @@ static tw_status mark_stationary(tw_engine *e, path_cut *c, expr *x)
             expr *slope = expr_derivative(e, c->pieces[k - 1 + (size_t)side].phase, x);
             expr *value = slope ? expr_substitute(e, slope, x, j->place) : NULL;
             value = value_canonical(e, value);
-            bool zero = value && (expr_is_zero(value) || (expr_is_closed_value(value) && value_is_zero(e, value) == ANSWER_YES));
+            bool zero = value &&
+                        (expr_is_zero(value) || (expr_is_closed_value(value) && value_is_zero(e, value) == ANSWER_YES));
             if (!value && e->error.kind == ERROR_VALUE) engine_forgive(e);
             /* a zero without a closed form was proved to be one when it was found; a pole has no finite value */
             if (value && !zero && j->turning && expr_is_closed_value(value)) zero = ball_holds_zero(e, value);
-            if (side) right = zero;
-            else left = zero;
+            if (side)
+                right = zero;
+            else
+                left = zero;
         }
         j->stationary = left && right;
     }
@@ -232,7 +237,8 @@ tw_status path_cut_make(tw_engine *e, path_cut *out, expr *phase, expr *amplitud
     }
     if (mark_stationary(e, out, x) != TW_OK) return TW_ERROR;
     for (size_t k = 0; k < out->count; k++)
-        if (slope_of_piece(e, &out->pieces[k], x, out->joints[k].place, out->joints[k + 1].place, is_finite_place(out->joints[k].place) && k > 0,
+        if (slope_of_piece(e, &out->pieces[k], x, out->joints[k].place, out->joints[k + 1].place,
+                           is_finite_place(out->joints[k].place) && k > 0,
                            is_finite_place(out->joints[k + 1].place) && k + 1 < out->count) != TW_OK)
             return TW_ERROR;
     return TW_OK;

@@ -1,6 +1,7 @@
-/* From a path cut into monotone pieces to the points that count. The one idea: a piece belongs to the joint at its lower
- * end; the lowest joints are the points that count, their pieces the branches, and what is left (other pieces, and the
- * part of a branch beyond the place where it stops being steep) is the rest, whose floor is read off its lower ends. */
+/* From a path cut into monotone pieces to the points that count. The one idea: a piece belongs to the joint at its
+ * lower end; the lowest joints are the points that count, their pieces the branches, and what is left (other pieces,
+ * and the part of a branch beyond the place where it stops being steep) is the rest, whose floor is read off its lower
+ * ends. */
 #include <stdlib.h>
 #include <string.h>
 
@@ -14,10 +15,10 @@
 typedef struct wells {
     frame *f;
     path_cut cut;
-    bool *lower;    /* per joint: the phase rises on both sides (or at the one side there is) */
-    bool *deepest;  /* per joint */
+    bool *lower;   /* per joint: the phase rises on both sides (or at the one side there is) */
+    bool *deepest; /* per joint */
     expr *depth;
-    expr *floor;    /* of the rest so far; NULL: no rest */
+    expr *floor; /* of the rest so far; NULL: no rest */
     bool floor_closed;
 } wells;
 
@@ -50,7 +51,8 @@ static expr *limit_at(tw_engine *e, expr *phase, expr *x, expr *where, int side)
         size_t best = 0;
         bool ordered = true;
         for (size_t k = 0; k < s.count; k++) {
-            if (!expr_is_number(s.strands[k].exponent)) ordered = false;
+            if (!expr_is_number(s.strands[k].exponent))
+                ordered = false;
             else if (expr_is_number(s.strands[best].exponent)) {
                 int order = fmpq_cmp(expr_number(s.strands[k].exponent), expr_number(s.strands[best].exponent));
                 if (order < 0 || (order == 0 && s.strands[k].log_power > s.strands[best].log_power)) best = k;
@@ -66,7 +68,8 @@ static expr *limit_at(tw_engine *e, expr *phase, expr *x, expr *where, int side)
             found = expr_int(e, 0);
             for (size_t k = 0; k < s.count; k++)
                 if (expr_is_zero(s.strands[k].exponent))
-                    found = expr_add(e, found, expr_mul(e, s.strands[k].constant, coefficient_expr(e, &s.strands[k].c, 0)));
+                    found =
+                        expr_add(e, found, expr_mul(e, s.strands[k].constant, coefficient_expr(e, &s.strands[k].c, 0)));
         }
     }
     series_clear(&s);
@@ -79,18 +82,19 @@ static expr *limit_at(tw_engine *e, expr *phase, expr *x, expr *where, int side)
 
 static tw_status growing(frame *f)
 {
-    return engine_fail(f->e, ERROR_DIVERGENT,
-                       "the kernel grows without limit along the path for large %s: the integral does not converge (is a "
-                       "minus sign missing in the exponent?)",
-                       f->r->large->is.name);
+    return engine_fail(
+        f->e, ERROR_DIVERGENT,
+        "the kernel grows without limit along the path for large %s: the integral does not converge (is a "
+        "minus sign missing in the exponent?)",
+        f->r->large->is.name);
 }
 
 static tw_status level_unknown(wells *w, size_t k)
 {
     tw_engine *e = w->f->e;
     char *words = expr_text(e, w->cut.joints[k].place);
-    engine_fail(e, ERROR_UNDECIDED, "how the exponent behaves at %s = %s is not known", w->f->r->original_variable->is.name,
-                words ? words : "");
+    engine_fail(e, ERROR_UNDECIDED, "how the exponent behaves at %s = %s is not known",
+                w->f->r->original_variable->is.name, words ? words : "");
     free(words);
     return TW_ERROR;
 }
@@ -104,7 +108,8 @@ static tw_status find_lower(wells *w)
     memset(w->deepest, 0, (n + 1) * sizeof *w->deepest);
     for (size_t k = 0; k < n; k++)
         if (w->cut.pieces[k].slope == 0)
-            return engine_fail(e, ERROR_UNSUITABLE, "the exponent is constant on a part of the path: split the integral there");
+            return engine_fail(e, ERROR_UNSUITABLE,
+                               "the exponent is constant on a part of the path: split the integral there");
     for (size_t k = 0; k <= n; k++) {
         joint_place *j = &w->cut.joints[k];
         w->lower[k] = (k == 0 || w->cut.pieces[k - 1].slope < 0) && (k == n || w->cut.pieces[k].slope > 0);
@@ -135,8 +140,9 @@ static tw_status find_deepest(wells *w)
             char *one = expr_text(e, frame_place(w->f, w->cut.joints[k].place)),
                  *two = expr_text(e, frame_place(w->f, w->cut.joints[best].place));
             const char *x = w->f->r->original_variable->is.name;
-            engine_fail(e, ERROR_UNDECIDED, "the facts do not say at which of %s = %s and %s = %s the kernel is greater", x,
-                        two ? two : "", x, one ? one : "");
+            engine_fail(e, ERROR_UNDECIDED,
+                        "the facts do not say at which of %s = %s and %s = %s the kernel is greater", x, two ? two : "",
+                        x, one ? one : "");
             free(one);
             free(two);
             return TW_ERROR;
@@ -151,9 +157,10 @@ static tw_status find_deepest(wells *w)
     w->depth = w->cut.joints[best].level;
     for (size_t k = 0; k <= w->cut.count; k++)
         if (w->deepest[k] && (expr_is_inf(w->cut.joints[k].place) || expr_is_minus_inf(w->cut.joints[k].place)))
-            return engine_fail(e, ERROR_DIVERGENT,
-                               "the kernel is greatest at infinity, where the exponent tends to a limit: no point of the "
-                               "path counts, and the kernel does not make the integral converge");
+            return engine_fail(
+                e, ERROR_DIVERGENT,
+                "the kernel is greatest at infinity, where the exponent tends to a limit: no point of the "
+                "path counts, and the kernel does not make the integral converge");
     return TW_OK;
 }
 
@@ -308,8 +315,10 @@ static bool pure_with_constant(tw_engine *e, expr *p, expr *y, expr **c, fmpq_t 
     size_t count = expr_factors(&p, &factors);
     expr *constant = expr_int(e, 1), *moving = expr_int(e, 1);
     for (size_t k = 0; k < count; k++) {
-        if (expr_has(factors[k], y)) moving = expr_mul(e, moving, factors[k]);
-        else constant = expr_mul(e, constant, factors[k]);
+        if (expr_has(factors[k], y))
+            moving = expr_mul(e, moving, factors[k]);
+        else
+            constant = expr_mul(e, constant, factors[k]);
     }
     *c = constant;
     return moving && constant && is_pure_power(e, moving, y, mu);
@@ -463,7 +472,9 @@ static tw_status add_lesser(wells *w, bool logarithmic, size_t *left_out)
     size_t *order = base_alloc(n * sizeof *order);
     for (size_t k = 0; k < n; k++) {
         const joint_place *j = &w->cut.joints[k];
-        if (!w->lower[k] || w->deepest[k] || expr_is_inf(j->place) || expr_is_minus_inf(j->place) || expr_is_inf(j->level)) continue;
+        if (!w->lower[k] || w->deepest[k] || expr_is_inf(j->place) || expr_is_minus_inf(j->place) ||
+            expr_is_inf(j->level))
+            continue;
         size_t at = count++;
         while (at > 0 && places_compare(e, j->level, w->cut.joints[order[at - 1]].level) < 0) {
             order[at] = order[at - 1];
@@ -473,7 +484,8 @@ static tw_status add_lesser(wells *w, bool logarithmic, size_t *left_out)
     }
     *left_out = count > LESSER_MOST ? count - LESSER_MOST : 0;
     tw_status status = TW_OK;
-    for (size_t k = 0; k < count && k < LESSER_MOST && status == TW_OK; k++) status = add_point(w, order[k], logarithmic);
+    for (size_t k = 0; k < count && k < LESSER_MOST && status == TW_OK; k++)
+        status = add_point(w, order[k], logarithmic);
     free(order);
     return status;
 }
@@ -498,7 +510,7 @@ static void record_points(wells *w, bool logarithmic, size_t left_out)
     }
     if (r->rest.count > 0) form = expr_add(e, form, local_form_integral(e, &r->rest));
     const critical_point *one = r->points;
-    const char *rule = dominant > 1                 ? "split at the points of equal depth"
+    const char *rule = dominant > 1                  ? "split at the points of equal depth"
                        : one->kind == POINT_INTERIOR ? "split at the critical point"
                        : expr_is_zero(one->place)    ? "find the critical point"
                                                      : "shift to the critical point";
@@ -506,8 +518,8 @@ static void record_points(wells *w, bool logarithmic, size_t left_out)
                  logarithmic ? "; there the variable is replaced by the logarithm of its ratio to the point" : "",
                  r->rest.count > 0 ? "; the part of the path away from there is exponentially small" : "");
     if (left_out > 0)
-        frame_record(f, "leave out lesser points", NULL, form, "%lu more points of lesser depth are not listed; the bound covers them",
-                     (unsigned long)left_out);
+        frame_record(f, "leave out lesser points", NULL, form,
+                     "%lu more points of lesser depth are not listed; the bound covers them", (unsigned long)left_out);
     text_clear(&places);
 }
 

@@ -1,6 +1,7 @@
-/* All zeros of a function on a range. The one idea: written as a quotient over its generators (x, exp(x), sqrt(1 + x^2),
- * ...) and factored, a function's zeros are those of the factors; a polynomial gives them exactly, a factor that holds x
- * only inside one function is solved by that function's inverse, and what is left is isolated by balls. */
+/* All zeros of a function on a range. The one idea: written as a quotient over its generators (x, exp(x), sqrt(1 +
+ * x^2),
+ * ...) and factored, a function's zeros are those of the factors; a polynomial gives them exactly, a factor that holds
+ * x only inside one function is solved by that function's inverse, and what is left is isolated by balls. */
 #include "engine/method/zeros.h"
 
 #include <stdlib.h>
@@ -21,7 +22,8 @@ void expr_list_add(expr ***list, size_t *count, expr *a)
     (*list)[(*count)++] = a;
 }
 
-static tw_status zeros_nested(tw_engine *e, expr *f, expr *x, expr *from, expr *to, expr ***list, size_t *count, int level);
+static tw_status zeros_nested(tw_engine *e, expr *f, expr *x, expr *from, expr *to, expr ***list, size_t *count,
+                              int level);
 
 static bool no_zero(tw_engine *e, expr *f, expr *x, expr *from, expr *to)
 {
@@ -75,7 +77,9 @@ static tw_status rational_roots(tw_engine *e, const fmpz_poly_t p, expr ***list,
 
 static tw_status ask_sign(tw_engine *e, expr *a, int *sign)
 {
-    *sign = expr_is_number(a) ? fmpq_sgn(expr_number(a)) : expr_is_closed_value(a) ? value_sign(e, a) : decide_sign(e, a);
+    *sign = expr_is_number(a)         ? fmpq_sgn(expr_number(a))
+            : expr_is_closed_value(a) ? value_sign(e, a)
+                                      : decide_sign(e, a);
     if (e->error.kind != ERROR_NONE) return TW_ERROR;
     if (*sign != 2) return TW_OK;
     char *words = expr_text(e, a);
@@ -131,11 +135,16 @@ static tw_status polynomial_zeros(tw_engine *e, expr *const *c, slong degree, ex
     tw_status status = TW_OK;
     bool binomial = true;
     for (slong k = 1; k < degree; k++) binomial = binomial && expr_is_zero(c[k]);
-    if (integer_polynomial(p, c, degree)) status = rational_roots(e, p, list, count);
-    else if (degree == 1) status = add_simple(e, list, count, expr_neg(e, expr_div(e, c[0], c[1])));
-    else if (binomial) status = binomial_zeros(e, c, degree, list, count);
-    else if (degree == 2) status = quadratic_zeros(e, c, list, count);
-    else *solved = false;
+    if (integer_polynomial(p, c, degree))
+        status = rational_roots(e, p, list, count);
+    else if (degree == 1)
+        status = add_simple(e, list, count, expr_neg(e, expr_div(e, c[0], c[1])));
+    else if (binomial)
+        status = binomial_zeros(e, c, degree, list, count);
+    else if (degree == 2)
+        status = quadratic_zeros(e, c, list, count);
+    else
+        *solved = false;
     fmpz_poly_clear(p);
     return status;
 }
@@ -146,8 +155,9 @@ static tw_status polynomial_zeros(tw_engine *e, expr *const *c, slong degree, ex
 static bool only_through(expr *f, expr *x, expr **g)
 {
     if (!expr_has(f, x)) return true;
-    bool atom = f->kind == EXPR_CALL || (f->kind == EXPR_POWER && (expr_has(f->args[1], x) || !expr_is_number(f->args[1]) ||
-                                                                   !fmpz_is_one(fmpq_denref(expr_number(f->args[1])))));
+    bool atom =
+        f->kind == EXPR_CALL || (f->kind == EXPR_POWER && (expr_has(f->args[1], x) || !expr_is_number(f->args[1]) ||
+                                                           !fmpz_is_one(fmpq_denref(expr_number(f->args[1])))));
     if (atom) {
         if (*g && *g != f) return false;
         *g = f;
@@ -194,7 +204,8 @@ static tw_status solve_periodic(tw_engine *e, expr *u, expr *base, expr *period,
         double first = arf_get_d(arb_midref(low), ARF_RND_FLOOR), last = arf_get_d(arb_midref(high), ARF_RND_CEIL);
         if (!(last - first < PERIODS_MOST) || !(first > -1e9) || !(last < 1e9)) status = refuse_zeros(e, u, x);
         for (slong n = (slong)first - 1; status == TW_OK && n <= (slong)last + 1; n++)
-            status = solve_inner(e, u, expr_add(e, base, expr_mul(e, expr_int(e, n), period)), x, from, to, list, count, level);
+            status = solve_inner(e, u, expr_add(e, base, expr_mul(e, expr_int(e, n), period)), x, from, to, list, count,
+                                 level);
     }
     arb_clear(low), arb_clear(high);
     acb_clear(a), acb_clear(b), acb_clear(c), acb_clear(d);
@@ -202,8 +213,8 @@ static tw_status solve_periodic(tw_engine *e, expr *u, expr *base, expr *period,
 }
 
 /* g = k for the function g of x; *solved false, without an error: no inverse is known here. */
-static tw_status solve_function(tw_engine *e, expr *g, expr *k, expr *x, expr *from, expr *to, expr ***list, size_t *count,
-                                int level, bool *solved)
+static tw_status solve_function(tw_engine *e, expr *g, expr *k, expr *x, expr *from, expr *to, expr ***list,
+                                size_t *count, int level, bool *solved)
 {
     expr *u = g->args[0], *one = expr_int(e, 1), *pi = expr_constant_of(e, CONSTANT_PI);
     expr *two_pi = expr_mul(e, expr_int(e, 2), pi), *v = NULL;
@@ -244,7 +255,8 @@ static tw_status solve_function(tw_engine *e, expr *g, expr *k, expr *x, expr *f
         if (solve_periodic(e, u, v, two_pi, x, from, to, list, count, level) != TW_OK) return TW_ERROR;
         return sign == 0 ? TW_OK : solve_periodic(e, u, other, two_pi, x, from, to, list, count, level);
     }
-    case FUNCTION_TAN: return solve_periodic(e, u, expr_call1(e, FUNCTION_ATAN, k), pi, x, from, to, list, count, level);
+    case FUNCTION_TAN:
+        return solve_periodic(e, u, expr_call1(e, FUNCTION_ATAN, k), pi, x, from, to, list, count, level);
     default: *solved = false; return TW_OK;
     }
 }
@@ -264,8 +276,8 @@ static expr *with_symbol(tw_engine *e, expr *f, expr *x, expr *g, expr *G)
 }
 
 /* f as a polynomial in one function of x. */
-static tw_status zeros_through(tw_engine *e, expr *f, expr *g, expr *x, expr *from, expr *to, expr ***list, size_t *count,
-                               int level, bool *solved)
+static tw_status zeros_through(tw_engine *e, expr *f, expr *g, expr *x, expr *from, expr *to, expr ***list,
+                               size_t *count, int level, bool *solved)
 {
     expr *G = expr_fresh(e, "g"), **c = NULL, **values = NULL;
     expr *in_g;
@@ -285,7 +297,8 @@ static tw_status zeros_through(tw_engine *e, expr *f, expr *g, expr *x, expr *fr
 
 /* ---- factors ---- */
 
-static tw_status factor_zeros(tw_engine *e, expr *f, expr *x, expr *from, expr *to, expr ***list, size_t *count, int level)
+static tw_status factor_zeros(tw_engine *e, expr *f, expr *x, expr *from, expr *to, expr ***list, size_t *count,
+                              int level)
 {
     expr **c, *g = NULL;
     slong degree;
@@ -344,12 +357,14 @@ static tw_status list_factors(tw_engine *e, expr *f, expr ***factors, size_t *co
 static void singular_parts(expr *f, expr *x, expr ***list, size_t *count)
 {
     if (!expr_has(f, x)) return;
-    bool fractional = f->kind == EXPR_POWER && (!expr_is_number(f->args[1]) || !fmpz_is_one(fmpq_denref(expr_number(f->args[1]))));
+    bool fractional =
+        f->kind == EXPR_POWER && (!expr_is_number(f->args[1]) || !fmpz_is_one(fmpq_denref(expr_number(f->args[1]))));
     if (fractional || expr_is_call(f, FUNCTION_LOG)) expr_list_add(list, count, f->args[0]);
     for (uint32_t k = 0; k < f->count; k++) singular_parts(f->args[k], x, list, count);
 }
 
-static tw_status zeros_nested(tw_engine *e, expr *f, expr *x, expr *from, expr *to, expr ***list, size_t *count, int level)
+static tw_status zeros_nested(tw_engine *e, expr *f, expr *x, expr *from, expr *to, expr ***list, size_t *count,
+                              int level)
 {
     expr **factors = NULL, **parts = NULL;
     size_t n = 0, m = 0;
@@ -377,12 +392,16 @@ tw_status zeros_between(tw_engine *e, expr *f, expr *x, expr *from, expr *to, ex
             break;
         }
         int low = places_compare(e, from, all[k]), high = places_compare(e, all[k], to);
-        if (e->error.kind != ERROR_NONE) status = TW_ERROR;
-        else if (low >= 0 && low != 2) continue;
-        else if (high >= 0 && high != 2) continue;
+        if (e->error.kind != ERROR_NONE)
+            status = TW_ERROR;
+        else if (low >= 0 && low != 2)
+            continue;
+        else if (high >= 0 && high != 2)
+            continue;
         else if (low == 2 || high == 2) {
             char *words = expr_text(e, all[k]);
-            status = engine_fail(e, ERROR_UNDECIDED, "the facts do not say where %s = %s lies on the path: declare it with `given`",
+            status = engine_fail(e, ERROR_UNDECIDED,
+                                 "the facts do not say where %s = %s lies on the path: declare it with `given`",
                                  x->is.name, words ? words : "");
             free(words);
         } else {

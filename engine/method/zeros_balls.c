@@ -1,7 +1,7 @@
 /* Zeros by balls. The one idea: bisection, where a box is done when a ball of f excludes 0, or a ball of f' does (then
- * the signs at its ends tell whether there is one zero), or it lies in the neighbourhood of a zero that is known exactly,
- * whose order m is known exactly too: f^(m) has no zero there, so f has no other. Zeros are given their exact name where
- * one is found and proved; else they are `root of f near a value`. */
+ * the signs at its ends tell whether there is one zero), or it lies in the neighbourhood of a zero that is known
+ * exactly, whose order m is known exactly too: f^(m) has no zero there, so f has no other. Zeros are given their exact
+ * name where one is found and proved; else they are `root of f near a value`. */
 #include "engine/method/zeros.h"
 
 #include <math.h>
@@ -31,7 +31,8 @@ typedef struct hunt {
 static tw_status give_up(hunt *h, double a, double b)
 {
     char *words = expr_text(h->e, h->f);
-    engine_fail(h->e, ERROR_UNDECIDED, "the zeros of %s between %.6g and %.6g could not be told apart", words ? words : "", a, b);
+    engine_fail(h->e, ERROR_UNDECIDED, "the zeros of %s between %.6g and %.6g could not be told apart",
+                words ? words : "", a, b);
     free(words);
     return TW_ERROR;
 }
@@ -206,8 +207,10 @@ static bool refine(hunt *h, arb_t z, double a, double b)
         double c = a + (b - a) / 2;
         int sign = sign_at_d(h, c);
         if (sign == 0 || c <= a || c >= b) break;
-        if (sign == left) a = c;
-        else b = c;
+        if (sign == left)
+            a = c;
+        else
+            b = c;
         if (b - a < 1e-12 * fmax(fabs(a), fabs(b))) break;
     }
     arb_set_d(z, a + (b - a) / 2);
@@ -222,11 +225,13 @@ static bool refine(hunt *h, arb_t z, double a, double b)
     bool proved = false;
     for (slong bits = FINE_BITS; bits >= 40 && !proved; bits -= 40) {
         arb_set_ui(step, 1);
-        arb_mul_2exp_si(step, step, arf_is_zero(arb_midref(z)) ? -bits : (slong)arf_abs_bound_lt_2exp_si(arb_midref(z)) - bits);
+        arb_mul_2exp_si(step, step,
+                        arf_is_zero(arb_midref(z)) ? -bits : (slong)arf_abs_bound_lt_2exp_si(arb_midref(z)) - bits);
         arb_sub(low, z, step, ARF_PREC_EXACT);
         arb_add(high, z, step, ARF_PREC_EXACT);
         int one = sign_at(h, low, 2 * FINE_BITS), two = sign_at(h, high, 2 * FINE_BITS);
-        proved = one != 0 && two != 0 && one != two && arf_cmp_d(arb_midref(low), a) >= 0 && arf_cmp_d(arb_midref(high), b) <= 0;
+        proved = one != 0 && two != 0 && one != two && arf_cmp_d(arb_midref(low), a) >= 0 &&
+                 arf_cmp_d(arb_midref(high), b) <= 0;
         if (!proved) { /* the Newton point may have left [a, b] by a rounding: its own ends decide */
             proved = one != 0 && two != 0 && one != two && one == left;
         }
@@ -271,8 +276,10 @@ static tw_status add_simple_zero(hunt *h, double a, double b)
     } else {
         expr *name = exact_zero(h, z);
         if (!name && h->e->error.kind == ERROR_NONE) name = name_root(h, z);
-        if (name) expr_list_add(h->list, h->count, name);
-        else status = TW_ERROR;
+        if (name)
+            expr_list_add(h->list, h->count, name);
+        else
+            status = TW_ERROR;
     }
     arb_clear(z);
     return status;
@@ -308,9 +315,12 @@ static tw_status search(hunt *h, double a, double b, int depth)
     _acb_vec_clear(jet, 2);
     arb_clear(other);
     acb_clear(box);
-    if (done || status != TW_OK || h->e->error.kind != ERROR_NONE) return h->e->error.kind == ERROR_NONE ? status : TW_ERROR;
+    if (done || status != TW_OK || h->e->error.kind != ERROR_NONE)
+        return h->e->error.kind == ERROR_NONE ? status : TW_ERROR;
     if (depth == DEPTH_MOST) return give_up(h, a, b);
-    double c = a > 0 && b > 4 * a ? sqrt(a) * sqrt(b) : b < 0 && a < 4 * b ? -sqrt(-a) * sqrt(-b) : a + 0.4871 * (b - a);
+    double c = a > 0 && b > 4 * a   ? sqrt(a) * sqrt(b)
+               : b < 0 && a < 4 * b ? -sqrt(-a) * sqrt(-b)
+                                    : a + 0.4871 * (b - a);
     return search(h, a, c, depth + 1) == TW_OK ? search(h, c, b, depth + 1) : TW_ERROR;
 }
 
