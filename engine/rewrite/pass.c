@@ -53,6 +53,7 @@ void pass_release(pass *p)
 {
     if (!p || --p->holders > 0) return;
     for (size_t k = 0; k < p->count; k++) pass_release(p->parts[k]);
+    pass_forget(p);
     rule_release(p->rule);
     free(p->parts);
     free(p->name);

@@ -41,8 +41,10 @@ typedef struct pass {
     const pass_step *step;
     size_t count;        /* THEN, OR: two or more; others: one; RULE, STEP: none */
     struct pass **parts; /* held */
+    struct runnable *ready; /* private to pass_run.c: made at the first run, or NULL */
 } pass;
 
+void pass_forget(pass *p); /* what was made ready for running; pass_release calls it */
 pass *pass_of_rule(rule *r);                 /* holds r */
 pass *pass_of_step(const pass_step *s);      /* s lives as long as the program */
 pass *pass_named(const char *name, pass *p); /* takes p over */

@@ -386,19 +386,24 @@ static void write_steps(runner *r, rewriting *out)
     }
 }
 
+void pass_forget(pass *p)
+{
+    if (p->ready) runnable_free(p->ready);
+    p->ready = NULL;
+}
+
 tw_status pass_run(tw_engine *e, const pass *p, expr *subject, rewriting *out)
 {
     if (!subject) return TW_ERROR;
     runner r = {.e = e};
-    runnable *ready = make_ready(e, p);
+    if (!p->ready) ((pass *)p)->ready = make_ready(e, p); /* the index of many rules is made once */
     struct facts *before = facts_copy(e);
-    tw_status status = run(&r, ready, subject, &out->after);
+    tw_status status = run(&r, p->ready, subject, &out->after);
     facts_restore(e, before);
     out->applied = status == TW_OK && out->after != subject;
     if (status == TW_OK) write_steps(&r, out);
     for (size_t k = 0; k < r.used_count; k++) conditions_clear(&r.used[k].conditions);
     free(r.used);
     free(r.memory);
-    runnable_free(ready);
     return status;
 }

@@ -78,10 +78,10 @@ static double per_term(const char *text_of_rule, const char *term, int n)
 {
     tw_engine *e = tw_engine_new();
     expr **terms = malloc((size_t)n * sizeof *terms), *after;
+    expr *form = text_parse(e, term), *k_symbol = expr_symbol(e, "k");
     for (int k = 0; k < n; k++) {
-        char words[200];
-        snprintf(words, sizeof words, term, k + 1, k + 1);
-        terms[k] = text_parse(e, words);
+        expr *number = expr_int(e, k + 1);
+        terms[k] = expr_substitute(e, form, k_symbol, number);
     }
     expr *sum = expr_sum(e, terms, (size_t)n);
     rule *r = text_rule(e, text_of_rule);
@@ -109,8 +109,8 @@ int main(void)
     thousand("sin(k*x)", "rule r%d(a): sin(%d*x*a)*cos(a) becomes a");
     thousand("x^k under an integral", "rule r%d(a): integral from 0 to inf of x^%d*exp(-a*x)*cos(x) dx becomes a");
     thousand("numbers in a call", "rule r%d(a): J(%d, a)*K(1, a) becomes a");
-    linear("each term by itself", "rule r(x): sin(x)^2 becomes (1 - cos(2*x))/2", "k%d*sin(%d*y)^2");
-    linear("terms in pairs", "rule r(a, b): log(a) + log(b) becomes log(a*b) when a != -1", "log(%d + k%d)");
-    linear("pairs that belong together", "rule r(x): sin(x)^2 + cos(x)^2 becomes 1", "(sin(%d*y)^2 + cos(%d*y)^2)");
+    linear("each term by itself", "rule r(x): sin(x)^2 becomes (1 - cos(2*x))/2", "k*sin(k*y)^2");
+    linear("terms in pairs", "rule r(a, b): log(a) + log(b) becomes log(a*b) when a != -1", "log(k + z)");
+    linear("pairs that belong together", "rule r(x): sin(x)^2 + cos(x)^2 becomes 1", "sin(k*y)^2 + cos(k*y)^2");
     return 0;
 }
