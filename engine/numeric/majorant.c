@@ -442,13 +442,13 @@ static double fit_size(majorant *m)
     return isfinite(size) ? size : HUGE_VAL;
 }
 
-/* Where the rest at S0 is small beside the bound, because h changes sign, one power cannot be near it: then the polynomial that
+/* Where the rest at S0 is small beside the bound (six times), because h changes sign, one power cannot be near it: then the polynomial that
  * serves best takes the bulk of h, with its sign. True unless the budget is spent. */
 static bool fit_choose(majorant *m, const arb_t sum)
 {
     double simple = fit_size(m), rest = fabs(arf_get_d(arb_midref(sum), ARF_RND_NEAR)), best = 0.6 * simple;
     slong chosen = 0;
-    if (m->K > 0 || simple <= 2.3 * rest)
+    if (m->K > 0 || simple <= 6 * rest)
         return true;
     for (slong fit = 1; fit <= FIT_MOST; fit++) {
         double size = fit_make(m, fit) ? fit_size(m) : HUGE_VAL;
