@@ -58,7 +58,7 @@ static const help_entry entries[] = {
      "check recurrence of A\ncheck recurrence c[n+1] = -2*(n + 1)*(2*n + 1)*c[n] of A", NULL},
     {"growth", HELP_REQUEST, HERE, "growth of NAME",
      "The form of the coefficients for large n, K*Gamma(m*n + b)/F^n. F and b are\nexact, from the recurrence; K is exact where "
-     "the recurrence has order one,\notherwise `estimated` from coefficients far out, with its spread. With it: near\nwhich n "
+     "the recurrence has order one,\notherwise `estimated` from coefficients far out, with its spread. With it:\nnear which n "
      "the terms are least, and how small the error can become.",
      "large s\nlet A = expand integral from 0 to inf of exp(-s*x)/(1 + x^2) dx to 4 terms\ngrowth of A", NULL},
     {"remainder", HELP_REQUEST, HERE, "remainder of NAME [with M terms]",
@@ -173,7 +173,7 @@ static const help_entry entries[] = {
      "seen to vanish and the\nsector to hold no singularity; else this stays an open condition.",
      "large s\nderive integral from 0 to inf of exp(i*s*x)/(1 + x) dx\n    rotate by pi/2\ndone", NULL},
     {"expand", HELP_MOVE, HERE, "expand FACTOR around POINT to N terms [in integral K]",
-     "In a derivation: puts the first N terms of the series of FACTOR in its place.\nThe rest stays as an exact integral, the "
+     "In a derivation: puts the first N terms of FACTOR's series in its place.\nThe rest stays as an exact integral, the "
      "remainder.",
      FADE "derive Fade\n    expand 1/sqrt(1 + x^2) around 0 to 4 terms\n    integrate termwise\ndone", NULL},
     {"swap", HELP_MOVE, HERE, "swap [in integral K]",

@@ -4,8 +4,6 @@
 build=$1
 here=$(cd "$(dirname "$0")/.." && pwd)
 cd "$here" || exit 1
-log=$(mktemp) || exit 1
-trap 'rm -f "$log"' EXIT
 passed=0 failed=0 skipped=0
 
 add() { # add NAME STATUS: reads $log
@@ -25,19 +23,25 @@ add() { # add NAME STATUS: reads $log
     if [ "$bad" -ne 0 ]; then cat "$log"; fi
 }
 
-one() { # one NAME COMMAND...
-    name=$1
-    shift
-    timeout 900 "$@" >"$log" 2>&1 </dev/null
-    add "$name" $?
-}
-
-for x in $(find "$build/tests/engine" "$build/tests/lang" -name 'test_*' -type f -perm -u+x 2>/dev/null | sort); do
-    one "${x#"$build"/}" "$x"
-done
-for x in tests/run_*.py; do
-    one "$x" python3 "$x" "$build"
-done
-case $build in *sanitize*) ;; *) one tests/shrunk.py python3 tests/shrunk.py ;; esac
+# Two tests at a time, or JOBS; each leaves its output and status in $work, read in order afterwards.
+work=$(mktemp -d) || exit 1
+trap 'rm -rf "$work"' EXIT
+{
+    find "$build/tests/engine" "$build/tests/lang" -name 'test_*' -type f -perm -u+x 2>/dev/null | sort
+    ls tests/run_*.py
+    case $build in *sanitize*) ;; *) echo tests/shrunk.py ;; esac
+} >"$work/list"
+build=$build work=$work xargs -P "${JOBS:-2}" -I '{}' sh -c '
+    out=$work/$(echo "{}" | tr / _)
+    case "{}" in
+    *.py) timeout 900 python3 "{}" "$build" >"$out" 2>&1 </dev/null ;;
+    *) timeout 900 "{}" >"$out" 2>&1 </dev/null ;;
+    esac
+    echo $? >"$out.status"' <"$work/list"
+while read -r x; do
+    out=$work/$(echo "$x" | tr / _)
+    log=$out
+    add "${x#"$build"/}" "$(cat "$out.status" 2>/dev/null || echo 1)"
+done <"$work/list"
 echo "$passed passed, $failed failed, $skipped skipped"
 [ "$failed" -eq 0 ]
