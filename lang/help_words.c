@@ -222,7 +222,7 @@ static const help_entry entries[] = {
      "Families known in closed form by differentiating in a parameter; the\nexpansion ends by itself and is exact.",
      "large s\nexpand integral from 0 to inf of x^3*exp(-s*x) dx to 4 terms by moments", NULL},
     {"laplace", HELP_METHOD, HERE, "expand INTEGRAL to N terms by laplace",
-     "Laplace's method (DLMF 2.3(iii)): a real exponent that is greatest at an end,\ninside, or at several points of equal depth; "
+     "Laplace's method (DLMF 2.3(iii)): a real exponent, greatest at an end,\ninside, or at several points of equal depth; "
      "kinks, powers f(x)^s, and\npoints that move with s. Points are exact: rational, algebraic, parameters.",
      "large s\nlet F = integral from -1 to 2 of exp(-s*(x^2 + x^4)) dx\nexpand F to 4 terms by laplace", NULL},
     {"phase", HELP_METHOD, HERE, "expand INTEGRAL to N terms by phase",
