@@ -128,7 +128,7 @@ static const help_entry entries[] = {
      "rewrite integral from 0 to inf of exp(-k*t) dt with halve\nwhy not halve", NULL},
     {"derive", HELP_RULE, HERE, "derive INTEGRAL\n    MOVES\ndone [as NAME]",
      "Opens a derivation by hand. Each line until `done` is a move on the current\nform; it is checked, by its theorem and by "
-     "certified balls at sample values\nof the parameters, before it is kept. `undo` takes the last one back, `steps`\nshows the "
+     "certified balls at sample values\nof the parameters, before it is kept. `undo` takes the last one back,\n`steps` shows the "
      "way so far, `show` the form with what it rests on.",
      FADE "derive Fade\n    substitute x = t/s\n    parts integrating exp(-t)\n    repeat parts 3 times\ndone as D\n"
      "let A = expansion of D\nevaluate A at s = 10", NULL},

@@ -13,6 +13,7 @@
 
 #include "engine/ball/decide.h"
 #include "engine/ball/growth.h"
+#include "engine/ball/sign.h"
 #include "engine/method/lanes.h"
 #include "engine/method/local.h"
 #include "engine/method/scale.h"
@@ -445,25 +446,103 @@ static tw_status expand_point(tw_engine *e, expansion *out, const phase_reading 
 
 /* ---- infinite ends ---- */
 
-/* D^n (q/p') tends to 0 and has finite variation there, n = 0, 1, 2: the integral converges and the end gives no term
- * of the first orders (DLMF 2.3.4). */
+/* Is f > 0 for all large x? */
+static bool is_positive_far_out(tw_engine *e, expr *f, expr *x)
+{
+    growth_program *t = growth_compile(e, f, x);
+    growth_bound g;
+    arf_t X;
+    acb_t v;
+    growth_bound_init(&g);
+    arf_init(X);
+    acb_init(v);
+    bool positive = false;
+    arf_set_ui(X, 16);
+    for (int tries = 0; t && !positive && tries < 24; tries++) {
+        if (growth_run(t, &g, X) && growth_is_real(t) && growth_is_nonzero(t)) {
+            arb_set_arf(acb_realref(v), X);
+            growth_value(v, t, acb_realref(v), 64);
+            positive = arb_is_positive(acb_realref(v));
+        }
+        arf_mul_2exp_si(X, X, 1);
+    }
+    growth_free(t);
+    growth_bound_clear(&g);
+    arf_clear(X);
+    acb_clear(v);
+    return positive;
+}
+
+/* Is f seen to be the germ at infinity of a Hardy field: made of x and real constants by arithmetic, real powers and
+ * logarithms of what is positive, exp, and functions that are integrals of such (Hardy 1910, ch. III; Rosenlicht 1983,
+ * Theorem 2)? */
+static bool is_hardy(tw_engine *e, expr *f, expr *x)
+{
+    if (f == x) return true;
+    if (!expr_has(f, x)) return sign_is_real(e, f);
+    switch ((expr_kind)f->kind) {
+    case EXPR_SUM:
+    case EXPR_PRODUCT:
+        break;
+    case EXPR_POWER:
+        if (!(expr_is_number(f->args[1]) && fmpz_is_one(fmpq_denref(expr_number(f->args[1])))) &&
+            !is_positive_far_out(e, f->args[0], x))
+            return false;
+        break;
+    case EXPR_CALL:
+        switch (f->is.function) {
+        case FUNCTION_LOG:
+        case FUNCTION_E1:
+            if (!is_positive_far_out(e, f->args[0], x)) return false;
+            break;
+        case FUNCTION_EXP:
+        case FUNCTION_SINH:
+        case FUNCTION_COSH:
+        case FUNCTION_TANH:
+        case FUNCTION_ATAN:
+        case FUNCTION_ASINH:
+        case FUNCTION_ERF:
+        case FUNCTION_ERFC:
+            break;
+        default:
+            return false;
+        }
+        break;
+    default:
+        return false;
+    }
+    for (uint32_t k = 0; k < f->count; k++)
+        if (!is_hardy(e, f->args[k], x)) return false;
+    return true;
+}
+
+/* Is f(y) = O(y^a) with a below the limit, or at it where may_meet? */
+static bool grows_at_most(tw_engine *e, expr *f, expr *y, slong limit, bool may_meet)
+{
+    growth_bound g;
+    fmpq_t top;
+    growth_bound_init(&g);
+    fmpq_init(top);
+    fmpq_set_si(top, limit, 1);
+    bool ok = f && growth_at_infinity(e, &g, f, y, NULL, 16) == TW_OK;
+    int order = fmpq_cmp(g.a, top);
+    ok = ok && (arb_is_positive(g.b) || (fmpq_is_zero(g.c) && (order < 0 || (may_meet && order == 0 && g.k <= 0))));
+    growth_bound_clear(&g);
+    fmpq_clear(top);
+    return ok;
+}
+
+/* The integral converges and the end gives no term of any order (DLMF 2.3.4): f = q/p' = O(y^a) with a < 0 and 1/p' =
+ * O(y) in a Hardy field, where f = O(y^a) gives f' = O(y^(a-1)) and every germ is monotone in the end (Rosenlicht 1983,
+ * Theorem 3); so D^n f, D f = f'/p', tends to 0 and has finite variation for each n. */
 static bool end_is_quiet(tw_engine *e, const phase_reading *r, expr *q, bool right)
 {
     expr *y = expr_fresh(e, "y"), *x = right ? y : expr_neg(e, y);
-    expr *slope = expr_derivative(e, r->p, r->x), *f = q;
-    bool quiet = true;
-    for (int n = 0; n < 3 && quiet; n++) {
-        f = expr_div(e, f, slope);
-        expr *there = expr_substitute(e, f, r->x, x), *d = expr_derivative(e, f, r->x);
-        growth_bound g;
-        growth_bound_init(&g);
-        quiet = there && growth_at_infinity(e, &g, there, y, NULL, 16) == TW_OK &&
-                (arb_is_positive(g.b) || (fmpq_is_zero(g.c) && fmpq_sgn(g.a) < 0));
-        there = d ? expr_substitute(e, d, r->x, x) : NULL;
-        quiet = quiet && there && growth_at_infinity(e, &g, there, y, NULL, 16) == TW_OK && growth_integrable(&g);
-        growth_bound_clear(&g);
-        f = d;
-    }
+    expr *slope = expr_derivative(e, r->p, r->x);
+    expr *f = expr_substitute(e, expr_div(e, q, slope), r->x, x);
+    expr *inverse = expr_substitute(e, expr_pow(e, slope, expr_int(e, -1)), r->x, x);
+    bool quiet = f && inverse && is_hardy(e, f, y) && is_hardy(e, inverse, y) && grows_at_most(e, f, y, 0, false) &&
+                 grows_at_most(e, inverse, y, 1, true);
     error_kind kind = e->error.kind;
     if (kind == ERROR_TIME || kind == ERROR_MEMORY || kind == ERROR_INTERRUPT) return false;
     engine_forgive(e); /* nothing is known of the end: the condition stays open */
