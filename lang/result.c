@@ -149,9 +149,11 @@ void result_labelled(result *r, const char *words, const char *known, const char
 
 void result_conditions(result *r, const condition_list *conditions)
 {
-    for (size_t k = 0; k < conditions->count; k++)
-        result_prose(r, "  rests on: %s (%s)", conditions->list[k].words,
-                    condition_label_word(conditions->list[k].label));
+    for (size_t k = 0; k < conditions->count; k++) {
+        const condition *c = &conditions->list[k];
+        if (c->label == CONDITION_OPEN || c->label == CONDITION_GRANTED)
+            result_prose(r, "  rests on: %s (%s)", c->words, condition_label_word(c->label));
+    }
 }
 
 bool result_show(const result *r, FILE *out, bool json)

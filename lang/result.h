@@ -39,6 +39,7 @@ void result_prose(result *r, const char *form, ...) __attribute__((format(printf
 /* An expression with how it is known behind it, the label in its own column. */
 void result_labelled(result *r, const char *words, const char *known, const char *manner);
 /* Conditions below a result: "  rests on: nu > -1 (granted)". */
+/* The open and granted ones only: on what is proved or given nothing rests that the user must look at. */
 void result_conditions(result *r, const condition_list *conditions);
 
 /* Writes one of the two faces; false when the stream is broken. */
