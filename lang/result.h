@@ -38,8 +38,8 @@ void result_expression(result *r, const char *form, ...) __attribute__((format(p
 void result_prose(result *r, const char *form, ...) __attribute__((format(printf, 2, 3)));
 /* An expression with how it is known behind it, the label in its own column. */
 void result_labelled(result *r, const char *words, const char *known, const char *manner);
-/* Conditions below a result: "  rests on: nu > -1 (granted)". */
-/* The open and granted ones only: on what is proved or given nothing rests that the user must look at. */
+/* Conditions below a result: "  rests on: nu > -1 (granted)". The open and granted ones only: on what is proved or given
+ * nothing rests that the user must look at. */
 void result_conditions(result *r, const condition_list *conditions);
 
 /* Writes one of the two faces; false when the stream is broken. */
