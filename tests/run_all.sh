@@ -26,12 +26,12 @@ add() { # add NAME STATUS: reads $log
 # Two tests at a time, or JOBS; each leaves its output and status in $work, read in order afterwards.
 work=$(mktemp -d) || exit 1
 trap 'rm -rf "$work"' EXIT
-{
-    find "$build/tests/engine" "$build/tests/lang" -name 'test_*' -type f -perm -u+x 2>/dev/null | sort
-    case $build in # these two run no program of this build
+{ # those that take longest first
+    case $build in # the last two run no program of this build
     *sanitize*) ls tests/run_*.py | grep -v run_stdlib ;;
     *) ls tests/run_*.py tests/shrunk.py ;;
     esac
+    find "$build/tests/engine" "$build/tests/lang" -name 'test_*' -type f -perm -u+x 2>/dev/null | sort -r
 } >"$work/list"
 build=$build work=$work xargs -P "${JOBS:-2}" -I '{}' sh -c '
     out=$work/$(echo "{}" | tr / _)
