@@ -373,7 +373,16 @@ static bool is_compared(const naive *n, expr *p, const theta *t)
         if (!value) continue;
         if (expr_is_number(value) ? occurrences(p, n->variables[k]) > 1 : !is_plain(value)) return false;
     }
-    return true;
+    expr *symbols[VARIABLES], *values[VARIABLES];
+    size_t count = 0;
+    for (int k = 0; k < VARIABLES; k++) {
+        if (!t->values[k]) continue;
+        symbols[count] = n->variables[k];
+        values[count++] = t->values[k];
+    }
+    expr *instance = expr_substitute_all(n->e, p, symbols, values, count);
+    assert_non_null(instance);
+    return is_plain(instance);
 }
 
 static bool collect(void *host, const match *m)
