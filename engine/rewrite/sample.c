@@ -93,6 +93,14 @@ static void deck_put(deck *d, expr *card)
     if (card && d->count < DECK_LIMIT) d->cards[d->count++] = card;
 }
 
+/* p/q, |p| <= top, q <= bottom. Drawn one after the other: arguments are evaluated in any order, and samples shall not
+ * depend on the compiler. */
+static expr *random_fraction(sampler *s, slong top, slong bottom)
+{
+    const slong p = random_below(s, 2 * top + 1) - top;
+    return expr_frac(s->e, p, 1 + random_below(s, bottom));
+}
+
 /* low + p/q, or high - p/q. */
 static void put_beside(sampler *s, deck *d, const fmpq_t end, slong p, slong q, bool integer)
 {
@@ -113,7 +121,10 @@ static void put_half_line(sampler *s, deck *d, const range *g)
     for (size_t k = 0; k < STEP_COUNT; k++) put_beside(s, d, end, sign * steps[k][0], steps[k][1], false);
     deck_put(d, expr_mul(s->e, expr_frac(s->e, 1, 2), expr_fmpq(s->e, end))); /* the corner at 0, when it lies inside */
     if (fmpq_sgn(end) * sign < 0) deck_put(d, expr_int(s->e, 0));
-    for (int k = 0; k < 3; k++) put_beside(s, d, end, sign * (1 + random_below(s, 40)), 1 + random_below(s, 9), false);
+    for (int k = 0; k < 3; k++) {
+        const slong p = 1 + random_below(s, 40), q = 1 + random_below(s, 9);
+        put_beside(s, d, end, sign * p, q, false);
+    }
 }
 
 static void put_between(sampler *s, deck *d, const range *g)
@@ -133,7 +144,7 @@ static void put_line(sampler *s, deck *d)
     for (size_t k = 1; k < STEP_COUNT; k++)
         for (slong sign = -1; sign <= 1; sign += 2) deck_put(d, expr_frac(s->e, sign * steps[k][0], steps[k][1]));
     deck_put(d, expr_int(s->e, 0));
-    for (int k = 0; k < 4; k++) deck_put(d, expr_frac(s->e, random_below(s, 41) - 20, 1 + random_below(s, 9)));
+    for (int k = 0; k < 4; k++) deck_put(d, random_fraction(s, 20, 9));
 }
 
 static void put_integers(sampler *s, deck *d, const range *g)
@@ -166,9 +177,10 @@ static void put_complex(sampler *s, deck *d)
         const slong *c = corners[k];
         deck_put(d, expr_add(s->e, expr_frac(s->e, c[0], c[1]), expr_mul(s->e, i, expr_frac(s->e, c[2], c[3]))));
     }
-    for (int k = 0; k < 6; k++)
-        deck_put(d, expr_add(s->e, expr_frac(s->e, random_below(s, 33) - 16, 1 + random_below(s, 7)),
-                             expr_mul(s->e, i, expr_frac(s->e, random_below(s, 33) - 16, 1 + random_below(s, 7)))));
+    for (int k = 0; k < 6; k++) {
+        expr *re = random_fraction(s, 16, 7), *im = random_fraction(s, 16, 7);
+        deck_put(d, expr_add(s->e, re, expr_mul(s->e, i, im)));
+    }
 }
 
 static void deck_values(sampler *s, deck *d)
