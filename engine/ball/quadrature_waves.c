@@ -180,8 +180,7 @@ expr *quad_tidy(tw_engine *e, expr *f, expr *x)
     expr **args = base_alloc(f->count * sizeof *args);
     for (uint32_t k = 0; k < f->count; k++)
         args[k] = quad_tidy(e, f->args[k], x);
-    expr *out = f->kind == EXPR_SUM ? expr_sum(e, args, f->count)
-              : f->kind == EXPR_PRODUCT ? expr_product(e, args, f->count) : expr_pow(e, args[0], args[1]);
+    expr *out = expr_rebuild(e, f, args);
     free(args);
     return out;
 }

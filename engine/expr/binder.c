@@ -71,7 +71,7 @@ static expr *walk_node(walk *w, expr *a, uint32_t level)
             return NULL;
         same = same && args[k] == a->args[k];
     }
-    expr *made = same ? a : node_rebuild(w->engine, a, args);
+    expr *made = same ? a : expr_rebuild(w->engine, a, args);
     if (made)
         memo_keep(&w->memo, a, key, (void *)made);
     return made;
@@ -303,7 +303,7 @@ expr *expr_piecewise(tw_engine *e, expr *const *conditions, expr *const *values,
     return piecewise;
 }
 
-expr *node_rebuild(tw_engine *e, expr *a, expr *const *args)
+expr *expr_rebuild(tw_engine *e, expr *a, expr *const *args)
 {
     switch (a->kind) {
     case EXPR_SUM: return expr_sum(e, args, a->count);

@@ -436,7 +436,7 @@ static expr *derive_piecewise(derivation_walk *w, expr *a)
         if (!args[k])
             return NULL;
     }
-    return node_rebuild(w->engine, a, args);
+    return expr_rebuild(w->engine, a, args);
 }
 
 /* The chain rule over the arguments of a pattern function. */
@@ -454,7 +454,7 @@ static expr *derive_apply(derivation_walk *w, expr *a)
             continue;
         memcpy(args, a->args, a->count * sizeof *args);
         args[1 + n + k] = expr_add(e, args[1 + n + k], expr_int(e, 1));
-        terms[count++] = args[1 + n + k] ? expr_mul(e, d, node_rebuild(e, a, args)) : NULL;
+        terms[count++] = args[1 + n + k] ? expr_mul(e, d, expr_rebuild(e, a, args)) : NULL;
     }
     return expr_sum(e, terms, count);
 }

@@ -102,6 +102,8 @@ expr *expr_div(tw_engine *e, expr *a, expr *b);
 expr *expr_pow(tw_engine *e, expr *base, expr *exponent);
 expr *expr_sqrt(tw_engine *e, expr *a);
 expr *expr_call(tw_engine *e, function_id f, expr *const *args, size_t n);
+/* a with other children (a->count of them), canonical again: for walks that change what stands inside. */
+expr *expr_rebuild(tw_engine *e, expr *a, expr *const *args);
 expr *expr_call1(tw_engine *e, function_id f, expr *a);
 expr *expr_integral(tw_engine *e, expr *variable, expr *from, expr *to, expr *body); /* body holds the symbol free */
 expr *expr_contour(tw_engine *e, expr *variable, expr *const *points, size_t n, expr *body);

@@ -18,8 +18,6 @@ expr *node_bound(tw_engine *e, uint32_t index);
 bool node_is_binder(expr *a);
 /* Is child k of n of a node of this kind under its binder? */
 bool node_child_is_under(expr_kind kind, size_t n, size_t k);
-/* a with other children, canonical again. */
-expr *node_rebuild(tw_engine *e, expr *a, expr *const *args);
 /* Binder from a body that already holds the bound variable. */
 expr *node_rebind(tw_engine *e, expr_kind kind, const char *name, expr *const *args, size_t n);
 

@@ -267,7 +267,7 @@ static expr *normal_node(normal_walk *w, expr *a)
     case EXPR_POWER: return merge_exponentials(w, normal_power(w, args[0], args[1]));
     case EXPR_CALL: return normal_call(w, a->is.function, args, a->count);
     case EXPR_PRODUCT: return merge_exponentials(w, expr_product(e, args, a->count));
-    default: return node_rebuild(e, a, args);
+    default: return expr_rebuild(e, a, args);
     }
 }
 

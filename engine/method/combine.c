@@ -653,11 +653,7 @@ static expr *with_symbols(tw_engine *e, const struct combination *c, expr *f)
         args[k] = with_symbols(e, c, f->args[k]);
         good = good && args[k];
     }
-    expr *made = !good                     ? NULL
-                 : f->kind == EXPR_SUM     ? expr_sum(e, args, f->count)
-                 : f->kind == EXPR_PRODUCT ? expr_product(e, args, f->count)
-                 : f->kind == EXPR_POWER   ? expr_pow(e, args[0], args[1])
-                                           : expr_call(e, f->is.function, args, f->count);
+    expr *made = good ? expr_rebuild(e, f, args) : NULL;
     free(args);
     return made;
 }

@@ -325,12 +325,7 @@ static expr *rebuild(tw_engine *e, expr *f, expr *x, expr *end)
         good = good && args[k];
         same = same && args[k] == f->args[k];
     }
-    expr *made = !good                     ? NULL
-                 : same                    ? f
-                 : f->kind == EXPR_SUM     ? expr_sum(e, args, f->count)
-                 : f->kind == EXPR_PRODUCT ? expr_product(e, args, f->count)
-                 : f->kind == EXPR_POWER   ? expr_pow(e, args[0], args[1])
-                                           : expr_call(e, f->is.function, args, f->count);
+    expr *made = !good ? NULL : same ? f : expr_rebuild(e, f, args);
     free(args);
     return made;
 }

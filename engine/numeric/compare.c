@@ -9,7 +9,7 @@
 #include "engine/numeric/shared.h"
 #include "engine/numeric/terms.h"
 
-enum { ROWS_MOST = 40, COMPARE_BITS = 192, DIGITS_MOST = 400 };
+enum { ROWS_MOST = 40, COMPARE_BITS = 192, ERROR_BITS = 2000, DIGITS_MOST = 400 };
 
 void comparison_init(comparison *c)
 {
@@ -32,7 +32,7 @@ void comparison_clear(comparison *c)
     comparison_init(c);
 }
 
-static void copy_point(env *to, const env *from)
+void comparison_at(env *to, const env *from)
 {
     to->count = from->count;
     to->symbols = base_alloc((from->count + 1) * sizeof *to->symbols);
@@ -116,14 +116,14 @@ static tw_status judge(tw_engine *e, acb_t value, const comparison *c, expansion
     return status;
 }
 
-static void judge_row(comparison_row *row, const acb_t value)
+void comparison_judge(comparison_row *row, const acb_t value)
 {
     mag_t least;
     arf_t low;
     mag_init(least);
     arf_init(low);
     acb_set(row->value, value);
-    acb_sub(row->error, value, row->sum, COMPARE_BITS + 1400);
+    acb_sub(row->error, value, row->sum, ERROR_BITS);
     acb_get_mag_lower(least, row->error);
     arf_set_mag(low, least);
     row->violated = row->label <= LABEL_PROVED && arf_cmp(low, arb_midref(row->bound)) > 0;
@@ -131,16 +131,33 @@ static void judge_row(comparison_row *row, const acb_t value)
     mag_clear(least);
 }
 
+slong comparison_rows(comparison *out, slong most, slong terms)
+{
+    const slong first = most > ROWS_MOST ? FLINT_MAX(1, FLINT_MIN(terms - ROWS_MOST / 2, most - ROWS_MOST + 1)) : 1;
+    out->count = (size_t)FLINT_MIN(most - first + 1, ROWS_MOST);
+    out->rows = base_alloc(out->count * sizeof *out->rows);
+    for (size_t r = 0; r < out->count; r++) {
+        comparison_row *row = out->rows + r;
+        memset(row, 0, sizeof *row);
+        acb_init(row->term);
+        acb_init(row->sum);
+        acb_init(row->value);
+        acb_init(row->error);
+        arb_init(row->bound);
+    }
+    return first;
+}
+
 tw_status compare_expansion(tw_engine *e, comparison *out, expansion *a, const env *at)
 {
-    slong most, terms, least, first = 1;
+    slong most, terms, least;
     acb_t value;
     tw_status status = point_complete(e, a, at);
     if (status != TW_OK)
         return status;
     if (expansion_is_complex(a))
         return compare_complex(e, out, a, at);
-    copy_point(&out->at, at);
+    comparison_at(&out->at, at);
     most = a->terms_asked;
     if (best_terms(e, a, at, most, &terms, &least) != TW_OK)
         return TW_ERROR;
@@ -153,25 +170,13 @@ tw_status compare_expansion(tw_engine *e, comparison *out, expansion *a, const e
             free(order);
             most = FLINT_MAX(1, FLINT_MIN(most, found));
         }
-    if (most > ROWS_MOST)
-        first = FLINT_MAX(1, FLINT_MIN(terms - ROWS_MOST / 2, most - ROWS_MOST + 1));
-    out->count = (size_t)FLINT_MIN(most - first + 1, ROWS_MOST);
-    out->rows = base_alloc(out->count * sizeof *out->rows);
-    for (size_t r = 0; r < out->count; r++) {
-        comparison_row *row = out->rows + r;
-        memset(row, 0, sizeof *row);
-        acb_init(row->term);
-        acb_init(row->sum);
-        acb_init(row->value);
-        acb_init(row->error);
-        arb_init(row->bound);
-    }
+    const slong first = comparison_rows(out, most, terms);
     acb_init(value);
     status = fill_rows(e, out, a, at, first);
     if (status == TW_OK)
         status = judge(e, value, out, a, at);
     for (size_t r = 0; r < out->count && status == TW_OK; r++)
-        judge_row(out->rows + r, value);
+        comparison_judge(out->rows + r, value);
     acb_clear(value);
     return status;
 }

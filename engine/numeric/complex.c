@@ -378,51 +378,17 @@ static tw_status judge_value(tw_engine *e, acb_t value, const comparison *c, exp
     return status;
 }
 
-static void judge_row(comparison_row *row, const acb_t value)
-{
-    mag_t least;
-    arf_t low;
-    mag_init(least);
-    arf_init(low);
-    acb_set(row->value, value);
-    acb_sub(row->error, value, row->sum, 2000);
-    acb_get_mag_lower(least, row->error);
-    arf_set_mag(low, least);
-    row->violated = row->label <= LABEL_PROVED && arf_cmp(low, arb_midref(row->bound)) > 0;
-    arf_clear(low);
-    mag_clear(least);
-}
-
 tw_status compare_complex(tw_engine *e, comparison *out, expansion *a, const env *at)
 {
-    enum { ROWS_MOST = 40 };
-    slong most = a->terms_asked, terms, least, first = 1;
+    slong most = a->terms_asked, terms, least;
     acb_t value;
     tw_status status = point_complete(e, a, at);
     if (status != TW_OK)
         return status;
-    out->at.count = at->count;
-    out->at.symbols = base_alloc((at->count + 1) * sizeof *out->at.symbols);
-    out->at.values = base_alloc((at->count + 1) * sizeof *out->at.values);
-    for (size_t k = 0; k < at->count; k++) {
-        out->at.symbols[k] = at->symbols[k];
-        out->at.values[k] = at->values[k];
-    }
+    comparison_at(&out->at, at);
     if (choose_terms(e, a, at, most, &terms, &least) != TW_OK)
         return TW_ERROR;
-    if (most > ROWS_MOST)
-        first = FLINT_MAX(1, FLINT_MIN(terms - ROWS_MOST / 2, most - ROWS_MOST + 1));
-    out->count = (size_t)FLINT_MIN(most - first + 1, ROWS_MOST);
-    out->rows = base_alloc(out->count * sizeof *out->rows);
-    for (size_t r = 0; r < out->count; r++) {
-        comparison_row *row = out->rows + r;
-        memset(row, 0, sizeof *row);
-        acb_init(row->term);
-        acb_init(row->sum);
-        acb_init(row->value);
-        acb_init(row->error);
-        arb_init(row->bound);
-    }
+    const slong first = comparison_rows(out, most, terms);
     acb_init(value);
     for (size_t r = 0; r < out->count && status == TW_OK; r++) {
         comparison_row *row = out->rows + r;
@@ -445,7 +411,7 @@ tw_status compare_complex(tw_engine *e, comparison *out, expansion *a, const env
     if (status == TW_OK)
         status = judge_value(e, value, out, a, at);
     for (size_t r = 0; r < out->count && status == TW_OK; r++)
-        judge_row(out->rows + r, value);
+        comparison_judge(out->rows + r, value);
     acb_clear(value);
     return status;
 }

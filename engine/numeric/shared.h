@@ -2,6 +2,7 @@
 #ifndef TW_NUMERIC_SHARED_H
 #define TW_NUMERIC_SHARED_H
 
+#include "engine/numeric/evaluate.h"
 #include "engine/numeric/panels.h"
 
 /* Tests build with -DTW_BOUND_FACTOR=0.3 to see that a wrong bound is noticed. */
@@ -46,5 +47,12 @@ expr *bound_modulus(tw_engine *e, expr *f);
 /* The number of terms with the least bound by the envelope of the terms at the point, at most `most`; *least: index of the least
  * term. */
 tw_status best_terms(tw_engine *e, expansion *a, const env *at, slong most, slong *terms, slong *least);
+
+/* Pieces of a comparison, for real and complex terms alike (compare.c). The point, copied: */
+void comparison_at(env *to, const env *from);
+/* Rows, initialised, for sums of `first`, first + 1, ... terms up to `most`, at most 40 around `terms`; returns first. */
+slong comparison_rows(comparison *out, slong most, slong terms);
+/* The certified value beside a row whose sum, bound and label stand: the error, and whether it violates a proved bound. */
+void comparison_judge(comparison_row *row, const acb_t value);
 
 #endif

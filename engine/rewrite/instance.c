@@ -98,7 +98,7 @@ static expr *apply_node(applying *w, expr *a)
         for (size_t k = 0; k < w->count; k++)
             if (w->variables[k].symbol == a->args[0] && w->variables[k].arity == expr_apply_arity(a) && w->values[k])
                 return apply_function(w, k, args, w->variables[k].arity);
-    return same ? a : node_rebuild(w->e, a, args);
+    return same ? a : expr_rebuild(w->e, a, args);
 }
 
 static expr *apply_walk(applying *w, expr *a)

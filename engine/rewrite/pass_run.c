@@ -242,7 +242,7 @@ static tw_status run_children(runner *r, const runnable *p, expr *a, inner_run *
             changed = changed || (status == TW_OK && args[k] != a->args[k]);
         }
     }
-    if (status == TW_OK && changed) *after = node_rebuild(r->e, a, args);
+    if (status == TW_OK && changed) *after = expr_rebuild(r->e, a, args);
     arena_release(&r->e->scratch, mark);
     return status == TW_OK && *after ? TW_OK : TW_ERROR;
 }

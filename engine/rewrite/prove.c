@@ -83,7 +83,7 @@ static expr *defined(tw_engine *e, expr *a)
         args[k] = defined(e, a->args[k]);
         if (!args[k]) made = NULL;
     }
-    if (made) made = a->kind == EXPR_CALL ? defined_call(e, a, args) : node_rebuild(e, a, args);
+    if (made) made = a->kind == EXPR_CALL ? defined_call(e, a, args) : expr_rebuild(e, a, args);
     arena_release(&e->scratch, mark);
     return made;
 }
