@@ -506,25 +506,32 @@ static bool airy_oscillating(growth_record *out, const growth_record *u, const g
     return ok;
 }
 
-/* Ai(u) = e^-zeta/(2 sqrt(pi) u^(1/4)) h, 1 - 5/(72 zeta) <= h <= 1 (DLMF 9.7.5, 9.7(iii)). */
-bool growth_ai(growth_record *out, const growth_record *u, const growth_place *p)
+/* sign -1: Ai(u) = e^-zeta/(sqrt(pi) u^(1/4)) h/2, 1 - 5/(72 zeta) <= h <= 1 (DLMF 9.7.5, 9.7(iii)).
+ * sign +1: Bi(u) = e^zeta/(sqrt(pi) u^(1/4)) (1 + r), |r| <= (chi(7/6) + 1) 5/(72 zeta), chi(7/6) < chi(2) = 2 (DLMF
+ * 9.7.7, 9.7(iii), 9.7.1: chi increases). */
+static bool airy(growth_record *out, const growth_record *u, slong sign, const growth_place *p)
 {
     growth_record inverse, zeta;
-    arb_t edge, slope, one;
+    arb_t edge, slope, h;
     record_init(&inverse);
     record_init(&zeta);
     arb_init(edge);
     arb_init(slope);
-    arb_init(one);
+    arb_init(h);
     bool ok;
     if (grows(&inverse, edge, u, p)) {
         ok = airy_exponent(&zeta, slope, u, edge, p);
-        arb_one(one);
-        arb_sub(slope, one, slope, p->prec);
-        arb_nonnegative_part(slope, slope);
-        arb_union(one, slope, one, p->prec);
-        arb_mul_2exp_si(one, one, -1);
-        ok = ok && airy_head(out, one, u, &zeta, -1, p);
+        arb_one(h);
+        if (sign < 0) {
+            arb_sub(slope, h, slope, p->prec);
+            arb_nonnegative_part(slope, slope);
+            arb_union(h, slope, h, p->prec);
+            arb_mul_2exp_si(h, h, -1);
+        } else {
+            arb_mul_ui(slope, slope, 3, p->prec);
+            arb_add_error(h, slope);
+        }
+        ok = ok && airy_head(out, h, u, &zeta, sign, p);
     } else {
         ok = airy_oscillating(out, u, p);
     }
@@ -532,37 +539,18 @@ bool growth_ai(growth_record *out, const growth_record *u, const growth_place *p
     record_clear(&zeta);
     arb_clear(edge);
     arb_clear(slope);
-    arb_clear(one);
+    arb_clear(h);
     return ok;
 }
 
-/* Bi(u) = e^zeta/(sqrt(pi) u^(1/4)) (1 + r), |r| <= (chi(7/6) + 1) 5/(72 zeta), chi(7/6) < chi(2) = 2 (DLMF 9.7.7,
- * 9.7(iii), 9.7.1: chi increases). */
+bool growth_ai(growth_record *out, const growth_record *u, const growth_place *p)
+{
+    return airy(out, u, -1, p);
+}
+
 bool growth_bi(growth_record *out, const growth_record *u, const growth_place *p)
 {
-    growth_record inverse, zeta;
-    arb_t edge, slope, one;
-    record_init(&inverse);
-    record_init(&zeta);
-    arb_init(edge);
-    arb_init(slope);
-    arb_init(one);
-    bool ok;
-    if (grows(&inverse, edge, u, p)) {
-        ok = airy_exponent(&zeta, slope, u, edge, p);
-        arb_one(one);
-        arb_mul_ui(slope, slope, 3, p->prec);
-        arb_add_error(one, slope);
-        ok = ok && airy_head(out, one, u, &zeta, 1, p);
-    } else {
-        ok = airy_oscillating(out, u, p);
-    }
-    record_clear(&inverse);
-    record_clear(&zeta);
-    arb_clear(edge);
-    arb_clear(slope);
-    arb_clear(one);
-    return ok;
+    return airy(out, u, 1, p);
 }
 
 /* ---- Bessel functions ---- */
